@@ -1,0 +1,190 @@
+"""The catalogue: one row per quantity, read by sheets, tables, axes, panels and records.
+
+A row is found by public name, optionally qualified by the object (``chamber.pressure`` before ``pressure``).
+Symbols are a small subset of LaTeX that `propkit.view.symbols` sets for every medium. Definitions follow
+the trade's usual ones; the ISO 80000 symbol is used where it has one.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+
+from propkit import units
+from propkit.errors import near_matches
+
+
+@dataclass(frozen=True, slots=True)
+class Kind:
+    """A kind of quantity: its SI unit and the units it is shown in, smallest first."""
+
+    name: str
+    unit: str
+    si: tuple[str, ...]
+    us: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Quantity:
+    """One catalogue row.
+
+    Parameters
+    ----------
+    name : str
+        Public name, full words.
+    kind : Kind
+        Kind of quantity: SI unit and display units.
+    symbol : str
+        Symbol in the LaTeX subset.
+    label : str
+        What a person reads, lower case.
+    definition : str
+        One line that says what is meant.
+    digits : int
+        Significant digits shown.
+    source : str
+        Key of `propkit.sources`, or empty.
+    """
+
+    name: str
+    kind: Kind
+    symbol: str
+    label: str
+    definition: str
+    digits: int = 5
+    source: str = ""
+
+    @property
+    def unit(self) -> str:
+        """SI unit in pint's spelling."""
+        return self.kind.unit
+
+    def shown_in(self, system: str = "SI", values: Iterable[float] = ()) -> str:
+        """Return the display unit for `values` (SI floats) in the system ``"SI"`` or ``"US"``."""
+        choices = self.kind.si if system == "SI" else self.kind.us
+        largest = max((abs(value) for value in values if value == value), default=0.0)
+        chosen = choices[0]
+        for unit in choices[1:]:
+            if largest and abs(units.convert(largest, self.unit, unit)) >= 1.0:
+                chosen = unit
+        return chosen
+
+
+NUMBER = Kind("number", "", ("",), ("",))
+PRESSURE = Kind("pressure", "Pa", ("Pa", "kPa", "MPa"), ("psi",))
+TEMPERATURE = Kind("temperature", "K", ("K",), ("degR",))
+LENGTH = Kind("length", "m", ("mm", "m"), ("inch",))
+ALTITUDE = Kind("altitude", "m", ("m", "km"), ("foot",))
+AREA = Kind("area", "m**2", ("mm**2", "m**2"), ("inch**2",))
+VOLUME = Kind("volume", "m**3", ("liter", "m**3"), ("foot**3",))
+MASS = Kind("mass", "kg", ("kg",), ("pound",))
+MASS_FLOW = Kind("mass flow", "kg/s", ("g/s", "kg/s"), ("pound/s",))
+MASS_FLUX = Kind("mass flux", "kg/(m**2*s)", ("kg/(m**2*s)",), ("pound/(foot**2*s)",))
+FORCE = Kind("force", "N", ("N", "kN", "MN"), ("lbf",))
+SPEED = Kind("speed", "m/s", ("m/s",), ("foot/s",))
+TIME = Kind("time", "s", ("ms", "s"), ("ms", "s"))
+DURATION = Kind("specific impulse", "s", ("s",), ("s",))
+DENSITY = Kind("density", "kg/m**3", ("kg/m**3",), ("pound/foot**3",))
+DENSITY_IMPULSE = Kind("density impulse", "N*s/m**3", ("N*s/m**3", "kN*s/m**3", "MN*s/m**3"), ("lbf*s/foot**3",))
+MOLAR_MASS = Kind("molar mass", "kg/mol", ("g/mol",), ("pound/pound_mole",))
+SPECIFIC_ENERGY = Kind("specific energy", "J/kg", ("kJ/kg", "MJ/kg"), ("Btu/pound",))
+MOLAR_ENERGY = Kind("molar energy", "J/mol", ("kJ/mol",), ("Btu/pound_mole",))
+SPECIFIC_HEAT = Kind("specific heat", "J/(kg*K)", ("J/(kg*K)", "kJ/(kg*K)"), ("Btu/(pound*degR)",))
+ANGLE = Kind("angle", "radian", ("degree",), ("degree",))
+AMOUNT = Kind("amount per mass", "mol/kg", ("mol/kg",), ("mol/kg",))
+HEAT_FLUX = Kind("heat flux", "W/m**2", ("kW/m**2", "MW/m**2"), ("Btu/(inch**2*s)",))
+POWER = Kind("power", "W", ("kW", "MW"), ("Btu/s",))
+IMPULSE = Kind("impulse", "N*s", ("N*s", "kN*s", "MN*s"), ("lbf*s",))
+HEAT_TRANSFER = Kind("heat transfer coefficient", "W/(m**2*K)", ("kW/(m**2*K)",), ("Btu/(inch**2*s*degR)",))
+TEXT = Kind("choice", "", ("",), ("",))
+
+_ROWS = (
+    # propellant case
+    Quantity("mixture_ratio", NUMBER, r"r", "mixture ratio", "oxidizer mass flow over fuel mass flow", 4),
+    Quantity("stoichiometric_mixture_ratio", NUMBER, r"r_{st}", "stoichiometric mixture ratio", "mixture ratio at which the valences balance", 4),
+    Quantity("equivalence_ratio", NUMBER, r"\phi", "equivalence ratio", "stoichiometric over actual mixture ratio; above 1 is fuel-rich", 4),
+    Quantity("bulk_density", DENSITY, r"\rho_{b}", "bulk density", "mass of both propellants over the volume they fill in the tanks", 4),
+    Quantity("enthalpy", SPECIFIC_ENERGY, r"h", "enthalpy", "specific enthalpy on the scale of formation enthalpies at 298.15 K", 6),
+    Quantity("elements", AMOUNT, r"b", "elements", "moles of atoms of each element per mass of propellant", 6),
+    Quantity("oxidizer", TEXT, r"", "oxidizer", "propellant that supplies the oxidizing elements"),
+    Quantity("fuel", TEXT, r"", "fuel", "propellant that is burnt"),
+    Quantity("thermo_basis", TEXT, r"", "thermodynamic basis", "species data that the equilibrium rests on"),
+    Quantity("oxidizer_temperature", TEMPERATURE, r"T_{ox}", "oxidizer temperature", "temperature at which the oxidizer is stored or fed", 5),
+    Quantity("fuel_temperature", TEMPERATURE, r"T_{fu}", "fuel temperature", "temperature at which the fuel is stored or fed", 5),
+    Quantity("oxidizer_pressure", PRESSURE, r"p_{ox}", "oxidizer pressure", "pressure at which the oxidizer is stored or fed", 4),
+    Quantity("fuel_pressure", PRESSURE, r"p_{fu}", "fuel pressure", "pressure at which the fuel is stored or fed", 4),
+    # chamber
+    Quantity("chamber.pressure", PRESSURE, r"p_{c}", "chamber pressure", "quoted chamber pressure, read as `pressure_at` says", 5),
+    Quantity("pressure_at", TEXT, r"", "pressure quoted at", "where the quoted chamber pressure holds"),
+    Quantity("contraction_ratio", NUMBER, r"\epsilon_{c}", "contraction ratio", "chamber cross-section over throat area", 4),
+    Quantity("cstar_efficiency", NUMBER, r"\eta_{c^{*}}", "c* efficiency", "delivered over theoretical characteristic velocity", 4),
+    Quantity("stagnation_pressure", PRESSURE, r"p_{0}", "stagnation pressure", "stagnation pressure at the nozzle inlet, the reference of c* and CF", 6),
+    Quantity("characteristic_velocity", SPEED, r"c^{*}", "characteristic velocity", "stagnation pressure times throat area over mass flow", 6),
+    Quantity("composition", NUMBER, r"x", "composition", "mole fractions of the gas", 5),
+    Quantity("gas_constant", SPECIFIC_HEAT, r"R", "gas constant", "molar gas constant over molar mass", 5),
+    Quantity("specific_heat", SPECIFIC_HEAT, r"c_{p}", "specific heat, equilibrium", "isobaric heat capacity with the composition following equilibrium", 5),
+    Quantity("frozen_specific_heat", SPECIFIC_HEAT, r"c_{p,f}", "specific heat, frozen", "isobaric heat capacity at fixed composition", 5),
+    Quantity("frozen_isentropic_exponent", NUMBER, r"\gamma_{f}", "isentropic exponent, frozen", "ratio of the heat capacities at fixed composition", 5),
+    # state
+    Quantity("pressure", PRESSURE, r"p", "pressure", "static pressure, absolute", 5),
+    Quantity("temperature", TEMPERATURE, r"T", "temperature", "static temperature, absolute", 6),
+    Quantity("density", DENSITY, r"\rho", "density", "static density", 5),
+    Quantity("velocity", SPEED, r"u", "velocity", "flow velocity along the axis", 6),
+    Quantity("mach", NUMBER, r"M", "Mach number", "velocity over sound speed", 5),
+    Quantity("sound_speed", SPEED, r"a", "sound speed", "speed of sound of the flow model", 6),
+    Quantity("molar_mass", MOLAR_MASS, r"\mathrm{M}", "molar mass", "mass over moles of gas", 6),
+    Quantity("isentropic_exponent", NUMBER, r"\gamma", "isentropic exponent", "d ln p / d ln rho at constant entropy", 5),
+    Quantity("entropy", SPECIFIC_HEAT, r"s", "entropy", "specific entropy, 1 bar standard state", 6),
+    Quantity("mass_flux", MASS_FLUX, r"\rho u", "mass flux", "mass flow per area", 6),
+    Quantity("condensed_mass_fraction", NUMBER, r"w_{c}", "condensed mass fraction", "mass of liquids and solids over total mass", 4),
+    # nozzle
+    Quantity("flow", TEXT, r"", "flow model", "how composition behaves in the nozzle"),
+    Quantity("freeze_at", TEXT, r"", "frozen from", "where the composition freezes"),
+    Quantity("exponent", TEXT, r"", "exponent used", "which isentropic exponent constant-property flow takes"),
+    Quantity("area_ratio", NUMBER, r"\epsilon", "area ratio", "exit area over throat area", 5),
+    Quantity("exit_pressure", PRESSURE, r"p_{e}", "exit pressure", "static pressure at the nozzle exit", 5),
+    Quantity("throat_diameter", LENGTH, r"d_{t}", "throat diameter", "geometric throat diameter", 5),
+    Quantity("throat_area", AREA, r"A_{t}", "throat area", "geometric throat area", 5),
+    Quantity("exit_diameter", LENGTH, r"d_{e}", "exit diameter", "geometric exit diameter", 5),
+    Quantity("exit_area", AREA, r"A_{e}", "exit area", "geometric exit area", 5),
+    Quantity("discharge_coefficient", NUMBER, r"C_{d}", "discharge coefficient", "effective over geometric throat area", 4),
+    Quantity("sizing_ambient", PRESSURE, r"p_{a}", "ambient pressure of the sizing", "ambient pressure at which the thrust is asked for", 5),
+    Quantity("mass_flow", MASS_FLOW, r"\dot{m}", "mass flow", "propellant mass flow through the throat", 5),
+    Quantity("stations", TEXT, r"", "stations", "flow state at the stations of the nozzle"),
+    # performance
+    Quantity("ambient", PRESSURE, r"p_{a}", "ambient pressure", "pressure of the surroundings", 5),
+    Quantity("ambient_pressure", PRESSURE, r"p_{a}", "ambient pressure", "pressure of the surroundings", 5),
+    Quantity("thrust", FORCE, r"F", "thrust", "full-flowing thrust at the given ambient pressure", 5),
+    Quantity("thrust_vacuum", FORCE, r"F_{vac}", "thrust in vacuum", "full-flowing thrust against no ambient pressure", 5),
+    Quantity("specific_impulse", DURATION, r"I_{sp}", "specific impulse", "thrust over weight flow of propellant at standard gravity", 5),
+    Quantity("specific_impulse_vacuum", DURATION, r"I_{sp,vac}", "specific impulse in vacuum", "vacuum thrust over weight flow of propellant at standard gravity", 5),
+    Quantity("thrust_coefficient", NUMBER, r"C_{F}", "thrust coefficient", "thrust over stagnation pressure times throat area", 5),
+    Quantity("thrust_coefficient_vacuum", NUMBER, r"C_{F,vac}", "thrust coefficient in vacuum", "vacuum thrust over stagnation pressure times throat area", 5),
+    Quantity("effective_exhaust_velocity", SPEED, r"c", "effective exhaust velocity", "thrust over mass flow", 6),
+    Quantity("density_impulse", DENSITY_IMPULSE, r"I_{\rho}", "density impulse", "specific impulse times standard gravity times bulk density", 5),
+    Quantity("oxidizer_mass_flow", MASS_FLOW, r"\dot{m}_{ox}", "oxidizer mass flow", "oxidizer part of the propellant mass flow", 5),
+    Quantity("fuel_mass_flow", MASS_FLOW, r"\dot{m}_{fu}", "fuel mass flow", "fuel part of the propellant mass flow", 5),
+    # propellants
+    Quantity("formula", TEXT, r"", "formula", "atoms of one formula unit"),
+    Quantity("role", TEXT, r"", "role", "what the propellant serves as"),
+    Quantity("name", TEXT, r"", "name", "the analyst's name for the object"),
+    Quantity("molar_enthalpy", MOLAR_ENERGY, r"H", "assigned enthalpy", "enthalpy per mole on the scale of formation enthalpies at 298.15 K", 6),
+    Quantity("propellant_temperature", TEMPERATURE, r"T", "temperature", "temperature of the propellant", 5),
+)
+
+CATALOGUE: dict[str, Quantity] = {row.name: row for row in _ROWS}
+
+
+def quantity(name: str, owner: str = "") -> Quantity:
+    """Return the catalogue row of a public name; `owner` (``"chamber"``) is tried first as a prefix.
+
+    Raises
+    ------
+    KeyError
+        For a name that is not catalogued.
+    """
+    row = CATALOGUE.get(f"{owner}.{name}") if owner else None
+    row = row or CATALOGUE.get(name)
+    if row is None:
+        raise KeyError(f"no quantity {name!r} in the catalogue; nearest: {near_matches(name, CATALOGUE)}")
+    return row

@@ -1,0 +1,104 @@
+"""Named arrays with units, and figures made of them: what a drawing or a plot shows, as neutral data.
+
+The same figure feeds the static SVG of a sheet and the live plot, so both hold the same numbers.
+Values are in display units already; `unit` says which.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Literal
+
+
+@dataclass(frozen=True, slots=True)
+class Series:
+    """A named array of numbers in one unit.
+
+    Parameters
+    ----------
+    label : str
+        What a person reads.
+    values : tuple of float
+        Numbers in `unit`; NaN makes a gap.
+    unit : str
+        Unit in pint's spelling; ``""`` for a pure number.
+    symbol : str
+        Symbol in the LaTeX subset of the catalogue; may be empty.
+    """
+
+    label: str
+    values: tuple[float, ...]
+    unit: str = ""
+    symbol: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Axis:
+    """One axis: label, symbol, unit, scale and, where wanted, fixed limits."""
+
+    label: str
+    unit: str = ""
+    symbol: str = ""
+    scale: Literal["linear", "log"] = "linear"
+    low: float | None = None
+    high: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Line:
+    """A line through points; `fill` closes it to the axis, `closed` makes it an outline (a wall, a body)."""
+
+    x: Series
+    y: Series
+    colour: int | Literal["ink", "accent", "quiet"] = 0
+    dash: Literal["solid", "dashed", "dotted"] = "solid"
+    closed: bool = False
+    fill: bool = False
+    label: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Bars:
+    """Horizontal bars, one per category, longest first as given; `texts` are written at their ends."""
+
+    categories: tuple[str, ...]
+    values: Series
+    texts: tuple[str, ...] = ()
+    colour: int | Literal["ink", "accent", "quiet"] = 0
+
+
+@dataclass(frozen=True, slots=True)
+class Mark:
+    """A marked point with a short label: the current design on a curve, a station on a wall."""
+
+    x: float
+    y: float
+    label: str
+    colour: int | Literal["ink", "accent", "quiet"] = "accent"
+
+
+@dataclass(frozen=True, slots=True)
+class Rule:
+    """A thin line across the figure at one value of one axis, with a label (the stoichiometric ratio)."""
+
+    axis: Literal["x", "y"]
+    at: float
+    label: str
+    dash: Literal["solid", "dashed", "dotted"] = "dotted"
+
+
+@dataclass(frozen=True, slots=True)
+class Figure:
+    """One figure: axes and layers, with a text that replaces it for those who cannot see it.
+
+    `equal_aspect` draws both axes to one scale (a nozzle to scale). `bare` hides axes and ticks.
+    """
+
+    name: str
+    title: str
+    alt: str
+    x: Axis
+    y: Axis
+    layers: tuple[Line | Bars | Mark | Rule, ...] = field(default_factory=tuple)
+    equal_aspect: bool = False
+    bare: bool = False
