@@ -1,0 +1,1 @@
+"""The immutable objects: propellant case, chamber, nozzle, performance."""
