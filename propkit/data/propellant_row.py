@@ -35,8 +35,8 @@ class PropellantRow:
     """One propellant or ingredient of a library, in SI.
 
     `molar_enthalpy` and `molar_mass` are for one mole of `formula`; `specific_enthalpy` is the assigned enthalpy
-    (formation at 298.15 K and the change to the state of the row) of one kilogram. `mixture` has the mass fractions of
-    the rows that it was summed from, and is empty for a row of its own.
+    (formation at 298.15 K and the change to the state of the row) of one kilogram. `components` has the rows that it was
+    summed from with their mass fractions, and is empty for a row of its own.
     """
 
     name: str
@@ -54,7 +54,7 @@ class PropellantRow:
     trust: str
     saturated: bool = False
     aliases: tuple[str, ...] = ()
-    mixture: tuple[tuple[str, float], ...] = ()
+    components: tuple[tuple[PropellantRow, float], ...] = ()
     mixing_enthalpy: float = 0.0
     coolprop_fluid: str | None = None
     density: float | None = None
@@ -76,6 +76,11 @@ class PropellantRow:
     def role(self) -> str:
         """Return the main role."""
         return self.roles[0]
+
+    @property
+    def mixture(self) -> dict[str, float]:
+        """Return ingredient name -> mass fraction; empty for a row of its own."""
+        return {row.name: share for row, share in self.components}
 
     @property
     def elements(self) -> dict[str, float]:

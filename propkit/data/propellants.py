@@ -23,12 +23,15 @@ from propkit.errors import InputError, Problem, StorageError, near_matches
 LIBRARY_FILE = "propellants.toml"
 _LARGEST_FILE = 4_000_000
 
-_COMBUSTION_ROLES: Mapping[str, tuple[str, ...]] = {
-    "oxidizer": ("oxidizer", "diluent", "ingredient"),
-    "fuel": ("fuel", "diluent", "ingredient", "monopropellant"),
-    "monopropellant": ("monopropellant", "ingredient"),
-    "cold gas": ("cold gas",),
+_SERVES: Mapping[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
+    "oxidizer": (("oxidizer",), ("diluent",)),
+    "fuel": (("fuel",), ("diluent", "ingredient", "monopropellant")),
+    "monopropellant": (("monopropellant",), ("ingredient",)),
+    "cold gas": (("cold gas",), ()),
 }
+"""Use -> roles that serve, and roles that serve as well unless the propellant is of the opposite kind."""
+
+_OPPOSITE = {"oxidizer": "fuel", "fuel": "oxidizer"}
 
 
 @lru_cache(maxsize=1)
@@ -117,7 +120,7 @@ def suggestions(name: str, rows: Mapping[str, PropellantRow] | None = None, coun
         return []
     spelled: dict[str, list[str]] = {}
     for key, row in known.items():
-        for text in (key, *row.aliases, row.title, *([row.formula] if not row.mixture else [])):
+        for text in (key, *row.aliases, row.title, *([row.formula] if not row.components else [])):
             spelled.setdefault(_folded(text), []).append(key)
     found = list(spelled.get(wanted, []))
     for text in near_matches(wanted, spelled, count=6):
@@ -142,7 +145,11 @@ def role_problem(name: str, roles: Sequence[str], wanted: str) -> Problem | None
     Problem or None
         Names the input, the propellant with its roles, and what to try.
     """
-    if not roles or any(role in _COMBUSTION_ROLES[wanted] for role in roles):
+    serve, serve_as_well = _SERVES[wanted]
+    opposite = _OPPOSITE.get(wanted)
+    if not roles or any(role in serve for role in roles):
+        return None
+    if opposite not in roles and any(role in serve_as_well for role in roles):
         return None
     if wanted == "oxidizer" and "fuel" in roles:
         hint = "The oxidizer comes first: PropellantCase(oxidizer, fuel). Are the two swapped?"
@@ -209,7 +216,7 @@ def _of_formula(fields: Mapping[str, Any], elements: dict[str, float]) -> dict[s
         "element_counts": tuple(elements.items()),
         "molar_mass": mass,
         "molar_enthalpy": float(per_mole),
-        "mixture": (),
+        "components": (),
         "mixing_enthalpy": 0.0,
         "density": fields.get("density_kg_m3"),
     }
@@ -230,7 +237,7 @@ def _mixture_problems(
     problems = []
     for part in fields["mixture"]:
         row = _component(part, rows, origin)
-        if row is not None and not row.mixture:
+        if row is not None and not row.components:
             continue
         inside = "the name of a row with a formula of its own"
         if part in tables or row is not None:
@@ -265,7 +272,7 @@ def _of_mixture(fields: Mapping[str, Any], rows: Mapping[str, PropellantRow], or
         "element_counts": tuple(elements.items()),
         "molar_mass": mass,
         "molar_enthalpy": specific * mass,
-        "mixture": tuple(shares.items()),
+        "components": tuple((known[part], share) for part, share in shares.items()),
         "mixing_enthalpy": mixing,
         "density": fields.get("density_kg_m3") or _ideal_density(shares, known),
     }
@@ -293,7 +300,7 @@ def _row(name: str, fields: Mapping[str, Any], basic: dict[str, Any], origin: st
         coolprop_fluid=fields.get("coolprop_fluid"),
         density_temperature=fields.get("density_temperature_K"),
         density_slope=fields.get("density_slope_kg_m3_K"),
-        density_source=fields.get("density_source", "ideal volumes of its ingredients" if basic["mixture"] else ""),
+        density_source=fields.get("density_source", "ideal volumes of its ingredients" if basic["components"] else ""),
         heat_capacity=fields.get("heat_capacity_J_kg_K"),
         heat_capacity_range=None if bounds is None else (float(bounds[0]), float(bounds[1])),
         heat_capacity_source=fields.get("heat_capacity_source", ""),
