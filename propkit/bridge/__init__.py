@@ -1,0 +1,1 @@
+"""The one place for Cantera and CoolProp."""

@@ -1,0 +1,1 @@
+"""Pure functions: SI floats and arrays in and out, numpy and scipy only."""
