@@ -65,6 +65,7 @@ class Calculation:
     """Base of the objects. Subclasses declare inputs and results and implement `_calculate`."""
 
     kind: ClassVar[str] = ""
+    title: ClassVar[str] = ""
     upstream_input: ClassVar[str] = ""
     headline: ClassVar[tuple[str, ...]] = ()
     declared_inputs: ClassVar[Mapping[str, Input]] = MappingProxyType({})
@@ -126,9 +127,26 @@ class Calculation:
     def _calculate(self) -> Outcome:
         raise NotImplementedError
 
-    def _subtitle(self) -> str:
-        """One line that tells the object from others of its kind."""
+    def subtitle(self) -> str:
+        """Return one line that tells the object from others of its kind."""
         return ""
+
+    def shows_input(self, name: str) -> bool:
+        """Whether the sheet lists the input: those given and the defaults that matter."""
+        return name in self._typed or self._values.get(name) is not None
+
+    def input_text(self, name: str) -> str:
+        """Return an input of a kind of its own as text."""
+        return str(self._values[name])
+
+    def typed_text(self, name: str) -> str:
+        """Return an input as it was typed, as text."""
+        typed = self._typed[name]
+        return typed if isinstance(typed, str) else f"{typed}"
+
+    def si_name(self) -> str:
+        """Return the analyst's name for the object, or an empty text."""
+        return str(self._values["name"])
 
     def _own_assumptions(self) -> tuple[Assumption, ...]:
         return ()

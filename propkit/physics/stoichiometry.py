@@ -1,0 +1,118 @@
+"""Mixture arithmetic: valences, stoichiometric mixture ratio, mixing of two streams by mass."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import numpy as np
+
+from propkit.physics.arrays import Array, Values, values
+
+VALENCES: Mapping[str, int] = {
+    "C": 4, "H": 1, "O": -2, "N": 0, "F": -1, "Cl": -1, "Br": -1, "I": -1, "Al": 3, "B": 3, "Be": 2, "Li": 1, "Na": 1, "K": 1,
+    "Mg": 2, "Ca": 2, "Si": 4, "S": 4, "P": 5, "Ti": 4, "Zr": 4, "Fe": 3, "He": 0, "Ne": 0, "Ar": 0, "Kr": 0, "Xe": 0,
+}  # fmt: skip
+"""Oxidation valence of each element in the burnt products; those of C, H, Al, O, F, Cl, N and noble gases are the usual ones."""
+
+
+def net_valence(elements: Mapping[str, float]) -> float:
+    """Return the net oxidation valence of a set of atoms.
+
+    Parameters
+    ----------
+    elements : mapping
+        Element symbol -> moles of atoms, per formula unit [1] or per mass [mol/kg].
+
+    Returns
+    -------
+    float
+        Positive for a fuel, negative for an oxidizer, in the unit of `elements`.
+
+    Raises
+    ------
+    KeyError
+        For an element without a valence in `VALENCES`.
+
+    Notes
+    -----
+    Methane: 4 + 4 = 8; oxygen: -4; so 16 g of methane take 2 mol of oxygen.
+
+    Source
+    ------
+    Common practice, no source.
+    """
+    return float(sum(VALENCES[symbol] * amount for symbol, amount in elements.items()))
+
+
+def stoichiometric_mixture_ratio(oxidizer: Mapping[str, float], fuel: Mapping[str, float]) -> float:
+    """Return the mixture ratio by mass at which the valences balance.
+
+    Parameters
+    ----------
+    oxidizer, fuel : mapping
+        Element symbol -> moles of atoms per mass of the stream [mol/kg].
+
+    Returns
+    -------
+    float
+        Mass of oxidizer over mass of fuel [1]; NaN where the pair cannot balance (a fuel and a fuel).
+
+    Notes
+    -----
+    r_st = V_fuel / -V_oxidizer with the net valences per mass of both streams.
+
+    Source
+    ------
+    Common practice, no source.
+    """
+    rich, lean = net_valence(fuel), net_valence(oxidizer)
+    return rich / -lean if rich > 0.0 and lean < 0.0 else float("nan")
+
+
+def mix(mixture_ratio: Values, oxidizer: Values, fuel: Values) -> Array:
+    """Return a per-mass property of a mixture of two streams.
+
+    Parameters
+    ----------
+    mixture_ratio : float or array
+        Mass of oxidizer over mass of fuel [1], shape (case,) or scalar, above 0.
+    oxidizer, fuel : float or array
+        The property per mass of each stream, broadcast against the ratio (enthalpy [J/kg], atoms [mol/kg], volume [m3/kg]).
+
+    Returns
+    -------
+    array
+        (r x_oxidizer + x_fuel) / (1 + r), in the unit of the property.
+
+    Source
+    ------
+    Definition.
+    """
+    ratio = values(mixture_ratio)
+    return np.asarray((ratio * values(oxidizer) + values(fuel)) / (1.0 + ratio))
+
+
+def bulk_density(mixture_ratio: Values, oxidizer_density: Values, fuel_density: Values) -> Array:
+    """Return the mass of both propellants over the volume they fill.
+
+    Parameters
+    ----------
+    mixture_ratio : float or array
+        Mass of oxidizer over mass of fuel [1], above 0.
+    oxidizer_density, fuel_density : float or array
+        Densities as stored [kg/m3], above 0.
+
+    Returns
+    -------
+    array
+        Bulk density [kg/m3].
+
+    Notes
+    -----
+    rho_b = (1 + r) / (r/rho_ox + 1/rho_fu).
+
+    Source
+    ------
+    Definition.
+    """
+    return 1.0 / mix(mixture_ratio, 1.0 / values(oxidizer_density), 1.0 / values(fuel_density))
