@@ -1,0 +1,473 @@
+"""`Propellant`: one propellant or ingredient, from the library or of the analyst's own."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from dataclasses import replace as changed
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, ClassVar, Self
+
+from propkit import quantities, units
+from propkit.constants import REFERENCE_PRESSURE, REFERENCE_TEMPERATURE
+from propkit.data import propellants as library_data
+from propkit.data.atomic_weights import ATOMIC_WEIGHTS
+from propkit.data.formula import molar_mass, parse_formula
+from propkit.data.propellant_row import PHASES, ROLES, PropellantRow
+from propkit.errors import InputError, Problem
+from propkit.model.base import Calculation, Outcome
+from propkit.model.declare import (
+    Bounds,
+    ChoiceInput,
+    CustomInput,
+    Declared,
+    NumberResult,
+    QuantityInput,
+    QuantityResult,
+    TextInput,
+    as_text,
+)
+from propkit.model.doubts import Doubt
+from propkit.physics.stoichiometry import VALENCES, net_valence
+from propkit.report import Column, Section, Table, UnitSystem
+from propkit.series import Axis, Bars, Figure, Series
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+_WITH_LIBRARY_NAME = ("name", "library_name", "enthalpy", "density", "role", "hazard", "source", "heat_capacity", "heat_capacity_range")
+_STATED_ELSEWHERE = "A row of the library brings its own; give formula and enthalpy instead of library_name for another."
+
+
+def _read_enthalpy(name: str, value: Any) -> tuple[str, float]:
+    """Return (unit, value in it): J/mol of the formula or J/kg; a bare number could be either and is refused."""
+    if not isinstance(value, str) and not hasattr(value, "units"):
+        hint = 'A number alone could be per mole or per mass: write "-24.717 kJ/mol" (of the formula) or "-1768 kJ/kg".'
+        raise InputError(Problem(name, as_text(value), "an enthalpy with its unit", hint))
+    for unit in ("J/mol", "J/kg"):
+        try:
+            return unit, units.to_si(value, unit, name)
+        except InputError:
+            continue
+    try:
+        units.to_si(value, "J/mol", name)
+    except InputError as error:
+        problem = error.problems[0]
+        allowed = 'an enthalpy per mole of the formula or per mass, for example "-24.717 kJ/mol" or "-1768 kJ/kg"'
+        raise InputError(Problem(name, problem.value, allowed, problem.hint)) from error
+    raise AssertionError
+
+
+def _read_range(name: str, value: Any) -> tuple[float, float]:
+    """Return two temperatures [K], the lower first."""
+    allowed = 'two temperatures, the lower first, for example ("260 K", "340 K")'
+    if not isinstance(value, list | tuple) or len(value) != 2:
+        raise InputError(Problem(name, as_text(value), allowed))
+    low, high = (units.to_si(entry, "K", name) for entry in value)
+    if not 0.0 < low < high:
+        raise InputError(Problem(name, as_text(value), allowed))
+    return low, high
+
+
+def _read_formula(name: str, value: Any) -> str:
+    parse_formula(value, name)
+    return str(value)
+
+
+def _read_library_name(name: str, value: Any) -> str:
+    return library_data.find(value, input_name=name).name
+
+
+class Propellant(Calculation):
+    """One propellant or ingredient.
+
+    Notes
+    -----
+    Enthalpies are on the scale of formation enthalpies at 298.15 K: zero for O2, H2, N2, F2, Cl2 gas, graphite and
+    aluminium at 298.15 K and 1 bar. `row` has everything as SI floats.
+    """
+
+    kind: ClassVar[str] = "propellant"
+    title: ClassVar[str] = "Propellant"
+    headline: ClassVar[tuple[str, ...]] = ("specific_enthalpy", "density")
+
+    formula: CustomInput = CustomInput(
+        doc='atoms of one formula unit, for example "C H1.95"', reader=_read_formula, default=None
+    )
+    enthalpy: CustomInput = CustomInput(
+        doc="assigned enthalpy at the given temperature, per mole of the formula or per mass", reader=_read_enthalpy, default=None
+    )
+    density: QuantityInput = QuantityInput(
+        doc="density at the state of the propellant", default=None, bounds=Bounds(above=0.0, at_most=25_000.0)
+    )
+    temperature: QuantityInput = QuantityInput(
+        doc="temperature that the enthalpy is for; 298.15 K unless given", default=None, bounds=Bounds(above=0.0, at_most=2000.0)
+    )
+    pressure: QuantityInput = QuantityInput(
+        doc="pressure of the propellant; 1 bar unless given", default=None, bounds=Bounds(above=0.0, at_most=1e9)
+    )
+    role: ChoiceInput = ChoiceInput(choices=ROLES, doc="what it serves as; not checked where not given", default=None)
+    phase: ChoiceInput = ChoiceInput(choices=PHASES, doc="state of aggregation; liquid unless given", default=None)
+    heat_capacity: QuantityInput = QuantityInput(
+        doc="specific heat, for other stored temperatures", default=None, bounds=Bounds(above=0.0, at_most=1e5)
+    )
+    heat_capacity_range: CustomInput = CustomInput(
+        doc="temperatures between which the specific heat holds", reader=_read_range, default=None
+    )
+    hazard: TextInput = TextInput(doc="one line on what can hurt", default=None)
+    source: TextInput = TextInput(doc="where the enthalpy comes from", default=None)
+    library_name: CustomInput = CustomInput(
+        doc="name of a row of the library, instead of formula and enthalpy", reader=_read_library_name, default=None
+    )
+
+    molar_mass: QuantityResult = QuantityResult(source="Atomic weights of Cantera.", doc="mass of one mole of the formula")
+    molar_enthalpy: QuantityResult = QuantityResult(doc="assigned enthalpy per mole of the formula")
+    specific_enthalpy: QuantityResult = QuantityResult(doc="assigned enthalpy per mass")
+    oxygen_balance: NumberResult = NumberResult(doc="oxygen left over or missing, over the mass")
+    freezing_point: QuantityResult = QuantityResult(doc="freezing point")
+    boiling_point: QuantityResult = QuantityResult(doc="boiling point at 101.325 kPa")
+    vapour_pressure: QuantityResult = QuantityResult(doc="vapour pressure at 298.15 K")
+
+    if TYPE_CHECKING:
+        _row: PropellantRow
+
+    @classmethod
+    def from_library(cls, name: str, *, library: str | Path | None = None) -> Propellant:
+        """Return a propellant of the library that comes with propkit, or of a TOML file of one's own.
+
+        Parameters
+        ----------
+        name : str
+            Library name.
+        library : str or Path, optional
+            A library file; the propellant then holds the values of the row itself and no longer needs the file.
+
+        Raises
+        ------
+        InputError
+            For an unknown name (near matches are named), or a bad file: file, row and field.
+        StorageError
+            When the file cannot be read.
+        """
+        if library is None:
+            return Propellant(library_name=name)
+        row = library_data.find(name, library_data.load_library(library), "name")
+        return of_row(row)
+
+    # -- calculation -----------------------------------------------------------------------------
+
+    def _check(self, bad: set[str]) -> list[Problem]:
+        typed = self._typed
+        if "library_name" in typed or "library_name" in bad:
+            return [
+                Problem(name, "given beside library_name", "left out", _STATED_ELSEWHERE)
+                for name in typed
+                if name not in _WITH_LIBRARY_NAME
+            ]
+        problems = []
+        if "formula" not in typed and "formula" not in bad:
+            problems.append(
+                Problem("formula", "missing", 'given, for example formula="C H1.95"', "Or pk.Propellant.from_library(name).")
+            )
+        if "enthalpy" not in typed and "enthalpy" not in bad:
+            problems.append(Problem("enthalpy", "missing", 'given, for example enthalpy="-24.717 kJ/mol"', ""))
+        if "heat_capacity_range" in typed and "heat_capacity" not in typed and "heat_capacity" not in bad:
+            problems.append(Problem("heat_capacity_range", "given alone", "given together with heat_capacity"))
+        return problems
+
+    def _calculate(self) -> Outcome:
+        row = self._make_row()
+        object.__setattr__(self, "_row", row)
+        results = {
+            "molar_mass": row.molar_mass,
+            "molar_enthalpy": row.molar_enthalpy,
+            "specific_enthalpy": row.specific_enthalpy,
+        }
+        for name in ("density", "temperature", "pressure", "heat_capacity", "freezing_point", "boiling_point", "vapour_pressure"):
+            value = getattr(row, name)
+            if value is not None:
+                results[name] = float(value)
+        absent = {name: f"{row.name} has no {name} in its data" for name in ("density", "freezing_point", "boiling_point", "vapour_pressure")}
+        if all(symbol in VALENCES for symbol in row.elements):
+            results["oxygen_balance"] = -net_valence(row.elements) / 2.0 * ATOMIC_WEIGHTS["O"] * 1e-3 / row.molar_mass
+        return Outcome(results=results, absent=absent, doubts=tuple(self._doubts(row)), held=row)
+
+    def _make_row(self) -> PropellantRow:
+        values = self._values
+        if values["library_name"] is not None:
+            return self._with_changes(library_data.find(values["library_name"]))
+        elements = parse_formula(values["formula"])
+        mass = molar_mass(elements)
+        unit, enthalpy = values["enthalpy"]
+        bounds = values["heat_capacity_range"]
+        return PropellantRow(
+            name=values["name"] or values["formula"],
+            title=values["name"] or values["formula"],
+            roles=() if values["role"] is None else (values["role"],),
+            phase=values["phase"] or "liquid",
+            formula=" ".join(values["formula"].split()),
+            element_counts=tuple(elements.items()),
+            molar_mass=mass,
+            molar_enthalpy=enthalpy if unit == "J/mol" else enthalpy * mass,
+            temperature=values["temperature"] or REFERENCE_TEMPERATURE,
+            pressure=values["pressure"] or REFERENCE_PRESSURE,
+            hazard=values["hazard"] or "",
+            source=values["source"] or "as given",
+            trust="",
+            density=values["density"],
+            density_source="as given" if values["density"] is not None else "",
+            heat_capacity=values["heat_capacity"],
+            heat_capacity_range=bounds,
+            heat_capacity_source="as given" if values["heat_capacity"] is not None else "",
+        )
+
+    def _with_changes(self, row: PropellantRow) -> PropellantRow:
+        """Return a library row with what the analyst gave instead."""
+        values, typed = self._values, self._typed
+        changes: dict[str, Any] = {name: values[name] for name in ("hazard", "source", "heat_capacity_range") if name in typed}
+        for name in ("density", "heat_capacity"):
+            if name in typed:
+                changes |= {name: values[name], f"{name}_source": "as given"}
+        if "density" in typed:
+            changes["density_temperature"] = None
+        if "role" in typed:
+            changes["roles"] = (values["role"],)
+        if "enthalpy" in typed:
+            unit, enthalpy = values["enthalpy"]
+            changes["molar_enthalpy"] = enthalpy if unit == "J/mol" else enthalpy * row.molar_mass
+            changes.setdefault("source", "as given")
+        if values["name"]:
+            changes["name"] = values["name"]
+        return changed(row, **changes) if changes else row
+
+    def _doubts(self, row: PropellantRow) -> Iterator[Doubt]:
+        if row.trust == "weak":
+            yield Doubt(f"The enthalpy of {row.name} is an estimate or its sources disagree. {row.note}".strip(), code="weak enthalpy", about="specific_enthalpy")
+        if row.heat_capacity is not None and row.heat_capacity_range is None:
+            yield Doubt(f"No range was given for the specific heat of {row.name}.", code="no range", about="heat_capacity")
+
+    # -- access ----------------------------------------------------------------------------------
+
+    @property
+    def row(self) -> PropellantRow:
+        """Everything about the propellant as SI floats and texts, read-only."""
+        return self._row
+
+    @property
+    def elements(self) -> pd.Series[float]:
+        """Atoms of one formula unit: index element symbol, value count [1]."""
+        import pandas as pd
+
+        return pd.Series(self._row.elements, name="elements", dtype=float).rename_axis("element")
+
+    @property
+    def roles(self) -> tuple[str, ...]:
+        """Everything it can serve as, the main role first; empty where nobody stated one."""
+        return self._row.roles
+
+    def attribute(self, name: str) -> Any:
+        """Return what reading the attribute `name` gives: a fresh quantity, a float or a text; None where the data have none."""
+        if name == "name":
+            return self._row.name
+        if name == "role":
+            return self._row.roles[0] if self._row.roles else None
+        if name in ("formula", "phase", "hazard", "source"):
+            return getattr(self._row, name)
+        if name == "heat_capacity_range":
+            return self._row.heat_capacity_range
+        if name == "enthalpy":
+            return units.quantity(self._row.molar_enthalpy, "J/mol")
+        entry: Declared | None = getattr(type(self), name, None)
+        if not isinstance(entry, Declared):
+            return super().attribute(name)
+        value = self._outcome.results.get(name, self._values.get(name))
+        if isinstance(value, int | float) and entry.quantity.unit:
+            return units.quantity(value, entry.quantity.unit)
+        return value
+
+    # -- display ---------------------------------------------------------------------------------
+
+    @property
+    def _from_row_alone(self) -> bool:
+        return [name for name in self._typed if name != "name"] == ["library_name"] and not self._values["name"]
+
+    def _code(self, names: Mapping[int, str]) -> str:
+        if self._from_row_alone:
+            return f"pk.Propellant.from_library({self._typed['library_name']!r})"
+        return super()._code(names)
+
+    def subtitle(self) -> str:
+        """Return the propellant in plain words."""
+        row = self._row
+        return row.title if row.title == row.name else f"{row.name}: {row.title}"
+
+    def input_text(self, name: str) -> str:
+        """Return an input of a kind of its own as text."""
+        value = self._values[name]
+        if name == "enthalpy":
+            unit, enthalpy = value
+            return f"{enthalpy / 1e3:.6g} k{unit}"
+        if name == "heat_capacity_range":
+            return f"{value[0]:g} to {value[1]:g} K"
+        return str(value)
+
+    def cautions(self) -> tuple[str, ...]:
+        """Return the hazard line."""
+        row = self._row
+        return (f"{row.name}: {row.hazard}",) if row.hazard else ()
+
+    def sections(self, units: UnitSystem) -> Iterator[Section]:
+        """Yield identity, storage and source of the row, and what other sources give."""
+        row = self._row
+        lines = [f"Formula {row.formula}. State: {row.state_text}."]
+        if row.roles:
+            lines.append(f"Serves as {', '.join(row.roles)}.")
+        if row.density is not None:
+            at = f" at {row.density_temperature:g} K" if row.density_temperature else ""
+            lines.append(f"Density{at}: {row.density_source or 'no source stated'}.")
+        lines.append(f"Enthalpy: {row.source}.{f' Trust: {row.trust}.' if row.trust else ''}")
+        lines += [text for text in (row.note, row.impulse_note) if text]
+        yield Section("about", "About these data", lines=tuple(lines))
+        if row.other_values:
+            yield self._other_values(units)
+
+    def _other_values(self, system: UnitSystem) -> Section:
+        row = self._row
+        quantity = quantities.quantity("molar_enthalpy")
+        listed = (row.molar_enthalpy, *(other.molar_enthalpy for other in row.other_values))
+        unit = quantity.shown_in(system, listed)
+        values = tuple(units.convert(value, quantity.unit, unit) for value in listed)
+        difference = tuple(value - values[0] for value in values)
+        table = Table(
+            "sources",
+            "What the sources say",
+            "source",
+            ("used here", *(other.source for other in row.other_values)),
+            (
+                Column("molar_enthalpy", quantity.label, quantity.symbol, unit, quantity.digits, values),
+                Column("difference", "difference", "", unit, 3, difference),
+            ),
+        )
+        return Section("sources", table.title, table=table)
+
+    def figures(self, system: UnitSystem) -> tuple[Figure, ...]:
+        """Return what the propellant is made of: mass fraction of each element."""
+        row = self._row
+        parts = {symbol: count * ATOMIC_WEIGHTS[symbol] * 1e-3 / row.molar_mass for symbol, count in row.element_counts}
+        ordered = dict(sorted(parts.items(), key=lambda item: -item[1]))
+        bars = Bars(
+            tuple(ordered),
+            Series("mass fraction", tuple(100.0 * value for value in ordered.values()), "percent"),
+            tuple(f"{100.0 * value:.1f} %" for value in ordered.values()),
+            colour="accent",
+        )
+        alt = "Mass fractions: " + ", ".join(f"{symbol} {100.0 * value:.1f} %" for symbol, value in ordered.items())
+        axes = Axis("mass fraction", "percent", low=0.0, high=100.0), Axis("")
+        return (Figure("elements", "What it is made of", alt, *axes, layers=(bars,)),)
+
+    def recipe(self) -> dict[str, Any]:
+        """Return a JSON-able mapping that rebuilds this propellant."""
+        made = super().recipe()
+        made["object"] = "Propellant"
+        return made
+
+    def with_name(self, name: str) -> Self:
+        """Return the same propellant under another name."""
+        return self.replace(name=name)
+
+
+def of_row(row: PropellantRow) -> Propellant:
+    """Return a propellant that holds the values of a row itself, so that it no longer needs its library file."""
+    if not row.library:
+        return Propellant(library_name=row.name)
+    from propkit.data.formula import formula_text
+
+    given: dict[str, Any] = {
+        "name": row.name,
+        "formula": formula_text(row.elements, digits=17),
+        "enthalpy": f"{row.molar_enthalpy!r} J/mol",
+        "temperature": row.temperature,
+        "pressure": row.pressure,
+        "phase": row.phase,
+        "role": row.role,
+        "hazard": row.hazard[:200],
+        "source": row.source[:200],
+    }
+    for name in ("density", "heat_capacity", "heat_capacity_range"):
+        if (value := getattr(row, name)) is not None:
+            given[name] = value
+    return Propellant(**given)
+
+
+def as_propellant(name: str, value: Any) -> Propellant:
+    """Return a propellant from a library name or a propellant: the reader of inputs that take one.
+
+    Raises
+    ------
+    InputError
+        For an unknown name, with near matches, or a value that is neither.
+    """
+    if isinstance(value, Propellant):
+        return value
+    if isinstance(value, str):
+        return Propellant(library_name=library_data.find(value, input_name=name).name)
+    raise InputError(Problem(name, as_text(value), "a library name or a pk.Propellant", 'For example "LOX".'))
+
+
+def propellants(library: str | Path | None = None) -> pd.DataFrame:
+    """Return the library as a table, to search and to sort.
+
+    Parameters
+    ----------
+    library : str or Path, optional
+        A library file of one's own; the library that comes with propkit unless given.
+
+    Returns
+    -------
+    DataFrame
+        Index library name; columns title, role (the main one), roles, phase, formula, enthalpy (assigned, J/mol of the
+        formula), specific_enthalpy, molar_mass, temperature and pressure of the row, density, freezing_point,
+        boiling_point, vapour_pressure, hazard, source, trust, note. Numbers are SI floats; units in ``attrs["units"]``.
+    """
+    import pandas as pd
+
+    rows = library_data.library() if library is None else library_data.load_library(library)
+    frame = pd.DataFrame.from_records([_record_of(row) for row in rows.values()], index=pd.Index(list(rows), name="name"))
+    frame.attrs["units"] = dict(_FRAME_UNITS)
+    return frame
+
+
+_FRAME_UNITS = {
+    "enthalpy": "J/mol",
+    "specific_enthalpy": "J/kg",
+    "molar_mass": "kg/mol",
+    "temperature": "K",
+    "pressure": "Pa",
+    "density": "kg/m**3",
+    "freezing_point": "K",
+    "boiling_point": "K",
+    "vapour_pressure": "Pa",
+}
+
+
+def _record_of(row: PropellantRow) -> dict[str, Any]:
+    nothing = float("nan")
+    return {
+        "title": row.title,
+        "role": row.role,
+        "roles": ", ".join(row.roles),
+        "phase": row.phase,
+        "formula": row.formula,
+        "enthalpy": row.molar_enthalpy,
+        "specific_enthalpy": row.specific_enthalpy,
+        "molar_mass": row.molar_mass,
+        "temperature": row.temperature,
+        "pressure": row.pressure,
+        "density": nothing if row.density is None else row.density,
+        "freezing_point": nothing if row.freezing_point is None else row.freezing_point,
+        "boiling_point": nothing if row.boiling_point is None else row.boiling_point,
+        "vapour_pressure": nothing if row.vapour_pressure is None else row.vapour_pressure,
+        "hazard": row.hazard,
+        "source": row.source,
+        "trust": row.trust,
+        "note": " ".join(text for text in (row.note, row.impulse_note) if text),
+    }
