@@ -50,7 +50,9 @@ class StoredState:
     source: str
 
 
-def stored_state(row: PropellantRow, temperature: float | None = None, pressure: float | None = None) -> StoredState:
+def stored_state(
+    row: PropellantRow, temperature: float | None = None, pressure: float | None = None, input_name: str = "temperature"
+) -> StoredState:
     """Return the stored state of a propellant at an asked temperature and pressure.
 
     Parameters
@@ -60,8 +62,10 @@ def stored_state(row: PropellantRow, temperature: float | None = None, pressure:
     temperature : float, optional
         Temperature [K]; that of the row unless given.
     pressure : float, optional
-        Absolute pressure [Pa]. Unless given: that of the row, or the vapour pressure where a liquid needs more than that
-        to stay one; a gas is taken as ideal.
+        Absolute pressure [Pa]. Unless given: that of the row, or the vapour pressure where a liquid needs more than
+        that to stay one; a gas is taken as ideal.
+    input_name : str
+        Name of the temperature input for the error text.
 
     Returns
     -------
@@ -95,10 +99,11 @@ def stored_state(row: PropellantRow, temperature: float | None = None, pressure:
         return StoredState(at, pressure or row.pressure, 0.0, row.density, row.phase, (), "the library row itself")
     raise InputError(
         Problem(
-            "temperature",
+            input_name,
             f"{at:g} K for {row.name!r}",
             f"{row.temperature:g} K, the temperature of its row",
-            "No specific heat of it is known here: give the propellant one (heat_capacity=), or its enthalpy at that temperature.",
+            "No specific heat of it is known here: give the propellant one (heat_capacity=), or its enthalpy at that "
+            "temperature.",
         )
     )
 
@@ -108,18 +113,22 @@ def stored_state(row: PropellantRow, temperature: float | None = None, pressure:
 
 def _fluid(row: PropellantRow) -> Any:
     try:
-        from CoolProp import AbstractState
+        from CoolProp.CoolProp import AbstractState
     except ImportError as error:
-        raise MissingExtraError("CoolProp", "fluids", f"The stored state of {row.name} at another temperature or pressure") from error
+        raise MissingExtraError(
+            "CoolProp", "fluids", f"The stored state of {row.name} at another temperature or pressure"
+        ) from error
     try:
-        return AbstractState("HEOS", row.coolprop_fluid)
+        return AbstractState("HEOS", row.coolprop_fluid or "")
     except ValueError as error:
         raise InputError(
             Problem("coolprop_fluid", repr(row.coolprop_fluid), "a fluid that CoolProp knows", f"Row {row.name!r}.")
         ) from error
 
 
-def _update(fluid: Any, row: PropellantRow, pair: str, first: float, second: float, at: float, pressure: float | None) -> None:
+def _update(
+    fluid: Any, row: PropellantRow, pair: str, first: float, second: float, at: float, pressure: float | None
+) -> None:
     import CoolProp
 
     try:
@@ -128,7 +137,9 @@ def _update(fluid: Any, row: PropellantRow, pair: str, first: float, second: flo
         where = f"{at:g} K" if pressure is None else f"{at:g} K and {pressure / 1e5:.4g} bar"
         frozen = row.freezing_point is not None and at < row.freezing_point
         why = f"it is below the freezing point, {row.freezing_point:g} K" if frozen else f"CoolProp says: {error}"
-        raise RangeError(f"{row.name} has no fluid state at {where}: {why}.", temperature=at, pressure=pressure) from error
+        raise RangeError(
+            f"{row.name} has no fluid state at {where}: {why}.", temperature=at, pressure=pressure
+        ) from error
 
 
 def _reference_enthalpy(fluid: Any, row: PropellantRow) -> float:
@@ -148,8 +159,8 @@ def _from_coolprop(row: PropellantRow, at: float, pressure: float | None) -> Sto
     warnings: list[str] = []
     if row.freezing_point is not None and at < row.freezing_point - 0.01:
         warnings.append(
-            f"{row.name} at {at:g} K is below its freezing point ({row.freezing_point:g} K): the value is that of the liquid, "
-            f"the heat of fusion is left out."
+            f"{row.name} at {at:g} K is below its freezing point ({row.freezing_point:g} K): the value is that of the "
+            f"liquid, the heat of fusion is left out."
         )
     below_critical = at < fluid.T_critical()
     vapour_pressure = None
@@ -177,14 +188,14 @@ def _pressure_taken(
         return REFERENCE_PRESSURE, not condensed
     if vapour_pressure is None:
         warnings.append(
-            f"{row.name} at {at:g} K is above its critical temperature and no pressure was given: taken as an ideal gas, the heat "
-            f"of vaporisation in the enthalpy. Give the pressure it is fed at."
+            f"{row.name} at {at:g} K is above its critical temperature and no pressure was given: taken as an ideal gas, "
+            f"the heat of vaporisation in the enthalpy. Give the pressure it is fed at."
         )
         return REFERENCE_PRESSURE, True
     if vapour_pressure > row.pressure * (1.0 + _NEAR_SATURATION):
         warnings.append(
-            f"{row.name} at {at:g} K is a liquid only above {vapour_pressure / 1e5:.3g} bar: taken as the saturated liquid. "
-            f"Give the pressure it is stored at."
+            f"{row.name} at {at:g} K is a liquid only above {vapour_pressure / 1e5:.3g} bar: taken as the saturated "
+            f"liquid. Give the pressure it is stored at."
         )
     return max(min(row.pressure, SEA_LEVEL_PRESSURE), vapour_pressure), False
 
@@ -227,7 +238,8 @@ def _from_heat_capacity(row: PropellantRow, specific_heat: float, at: float, pre
     low, high = row.heat_capacity_range or (row.temperature, row.temperature)
     if not low <= at <= high:
         warnings.append(
-            f"{row.name} at {at:g} K is outside the range of its specific heat, {low:g} to {high:g} K: held constant beyond it."
+            f"{row.name} at {at:g} K is outside the range of its specific heat, {low:g} to {high:g} K: held constant "
+            f"beyond it."
         )
     density, slope = _density(row, at), row.density_slope or 0.0
     per_mass = specific_heat * (at - row.temperature)
@@ -236,7 +248,9 @@ def _from_heat_capacity(row: PropellantRow, specific_heat: float, at: float, pre
     elif row.phase == "gas":
         density = taken * row.molar_mass / (GAS_CONSTANT * at)
     kept = "" if slope or density is None or row.phase == "gas" else "; density of the row kept"
-    source = f"specific heat {specific_heat:g} J/(kg K) held constant ({row.heat_capacity_source or 'of the row'}){kept}"
+    source = (
+        f"specific heat {specific_heat:g} J/(kg K) held constant ({row.heat_capacity_source or 'of the row'}){kept}"
+    )
     return StoredState(at, taken, per_mass * row.molar_mass, density, row.phase, tuple(warnings), source)
 
 
@@ -252,22 +266,26 @@ def _limits(row: PropellantRow, at: float, pressure: float | None) -> list[str]:
     warnings = []
     if row.freezing_point is not None and row.phase == "liquid" and at < row.freezing_point:
         warnings.append(
-            f"{row.name} at {at:g} K is below its freezing point ({row.freezing_point:g} K): the heat of fusion is left out."
+            f"{row.name} at {at:g} K is below its freezing point ({row.freezing_point:g} K): the heat of fusion is left "
+            f"out."
         )
     if row.freezing_point is not None and row.phase == "solid" and at > row.freezing_point:
-        warnings.append(f"{row.name} at {at:g} K is above its melting point ({row.freezing_point:g} K): the heat of fusion is left out.")
+        warnings.append(
+            f"{row.name} at {at:g} K is above its melting point ({row.freezing_point:g} K): the heat of fusion is left "
+            f"out."
+        )
     if row.boiling_point is None or row.phase != "liquid":
         return warnings
     boiling = vapour_pressure_estimate(row, at)
     if pressure is None and at > row.boiling_point + 0.5 and boiling > row.pressure:
         warnings.append(
-            f"{row.name} at {at:g} K is above its boiling point at 1 atm ({row.boiling_point:g} K): a liquid only under "
-            f"pressure, about {boiling / 1e5:.2g} bar. Taken as a liquid."
+            f"{row.name} at {at:g} K is above its boiling point at 1 atm ({row.boiling_point:g} K): a liquid only "
+            f"under pressure, about {boiling / 1e5:.2g} bar. Taken as a liquid."
         )
     if pressure is not None and pressure < 0.9 * boiling:
         warnings.append(
-            f"{row.name} at {at:g} K and {pressure / 1e5:.3g} bar is below its vapour pressure (about {boiling / 1e5:.2g} bar): "
-            f"it would boil. Taken as a liquid, the heat of vaporisation is left out."
+            f"{row.name} at {at:g} K and {pressure / 1e5:.3g} bar is below its vapour pressure (about {boiling / 1e5:.2g} "
+            f"bar): it would boil. Taken as a liquid, the heat of vaporisation is left out."
         )
     return warnings
 
@@ -289,8 +307,8 @@ def vapour_pressure_estimate(row: PropellantRow, temperature: float) -> float:
 
     Notes
     -----
-    Clausius-Clapeyron through the boiling point; its slope from the vapour pressure at 298.15 K, else from Trouton's rule
-    (entropy of vaporisation 88 J/(mol K)). Good for saying that a liquid would boil, not for more.
+    Clausius-Clapeyron through the boiling point; its slope from the vapour pressure at 298.15 K, else from Trouton's
+    rule (entropy of vaporisation 88 J/(mol K)). Good for saying that a liquid would boil, not for more.
     """
     boiling = row.boiling_point
     if boiling is None:
@@ -310,7 +328,9 @@ def _from_ingredients(row: PropellantRow, at: float, pressure: float | None) -> 
     warnings = _limits(row, at, pressure)
     per_mass, volume_ratio = 0.0, 0.0
     for part, share in row.components:
-        start, end = (_ingredient(row, part, point, where) for point, where in ((row.temperature, row.pressure), (at, taken)))
+        start, end = (
+            _ingredient(row, part, point, where) for point, where in ((row.temperature, row.pressure), (at, taken))
+        )
         per_mass += share * (end.enthalpy_change - start.enthalpy_change) / part.molar_mass
         if start.density and end.density and not math.isnan(volume_ratio):
             volume_ratio += share / end.density if row.density is None else share * start.density / end.density
@@ -321,10 +341,13 @@ def _from_ingredients(row: PropellantRow, at: float, pressure: float | None) -> 
         density: float | None = taken * row.molar_mass / (GAS_CONSTANT * at)
         if taken > _IDEAL_UP_TO:
             warnings.append(
-                f"{row.name} at {taken / 1e5:.3g} bar is summed from ideal gases: the real-gas change of its enthalpy is neglected."
+                f"{row.name} at {taken / 1e5:.3g} bar is summed from ideal gases: the real-gas change of its enthalpy "
+                f"is neglected."
             )
         if row.boiling_point is not None and at < row.boiling_point:
-            warnings.append(f"{row.name} at {at:g} K is below its boiling point ({row.boiling_point:g} K): taken as a gas.")
+            warnings.append(
+                f"{row.name} at {at:g} K is below its boiling point ({row.boiling_point:g} K): taken as a gas."
+            )
     else:
         density = None if math.isnan(volume_ratio) or row.density is None else row.density / volume_ratio
     source = "sum over its ingredients, heat of mixing unchanged: " + ", ".join(part.name for part, _ in row.components)
@@ -335,11 +358,18 @@ def _ingredient(row: PropellantRow, part: PropellantRow, at: float, pressure: fl
     """Return the state of one ingredient inside a mixture: of the phase of the mixture, whatever it would be alone."""
     if row.phase == "gas":
         return stored_state(part, at)
-    if part.phase == "liquid" and part.coolprop_fluid and part.freezing_point is not None and at < part.freezing_point + 0.1:
+    if (
+        part.phase == "liquid"
+        and part.coolprop_fluid
+        and part.freezing_point is not None
+        and at < part.freezing_point + 0.1
+    ):
         warm, colder = (_ingredient(row, part, part.freezing_point + step, pressure) for step in (5.1, 0.1))
         slope = (warm.enthalpy_change - colder.enthalpy_change) / 5.0
         change = colder.enthalpy_change + slope * (at - part.freezing_point - 0.1)
-        return StoredState(at, pressure, change, colder.density, part.phase, (), "in solution below its own freezing point")
+        return StoredState(
+            at, pressure, change, colder.density, part.phase, (), "in solution below its own freezing point"
+        )
     if part.coolprop_fluid and part.phase == "liquid":
         fluid = _fluid(part)
         if at < fluid.T_critical():

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 from typing import Final
 
+# fmt: off
 ATOMIC_WEIGHTS: Final[dict[str, float]] = {
     "H": 1.008, "He": 4.002602, "Li": 6.94, "Be": 9.0121831, "B": 10.81, "C": 12.011, "N": 14.007,
     "O": 15.999, "F": 18.998403163, "Ne": 20.1797, "Na": 22.98976928, "Mg": 24.305, "Al": 26.9815384,
@@ -22,4 +23,5 @@ ATOMIC_WEIGHTS: Final[dict[str, float]] = {
     "W": 183.84, "Re": 186.207, "Os": 190.23, "Ir": 192.217, "Pt": 195.084, "Au": 196.96657, "Hg": 200.592,
     "Tl": 204.38, "Pb": 207.2, "Bi": 208.9804, "Th": 232.0377, "Pa": 231.03588, "U": 238.02891,
 }
-"""Symbol -> standard atomic weight [kg/kmol]: Cantera 3.2.0, after IUPAC 2018; elements without a stable isotope have none."""
+# fmt: on
+"""Symbol -> atomic weight [kg/kmol], Cantera 3.2.0 (IUPAC 2018); elements without a stable isotope have none."""

@@ -47,7 +47,9 @@ def parse_formula(text: str, name: str = "formula") -> dict[str, float]:
         raise InputError(Problem(name, repr(text), _ALLOWED, "Give the formula as text."))
     shown = repr(text) if len(text) <= 60 else repr(f"{text[:57]}...")
     if len(text) > _LONGEST or not text.strip():
-        raise InputError(Problem(name, shown, _ALLOWED, "A formula cannot be empty." if not text.strip() else "That is too long."))
+        raise InputError(
+            Problem(name, shown, _ALLOWED, "A formula cannot be empty." if not text.strip() else "That is too long.")
+        )
     plain = text.translate(_SUBSCRIPTS)
     counts: dict[str, float] = {}
     position = 0

@@ -35,8 +35,8 @@ class PropellantRow:
     """One propellant or ingredient of a library, in SI.
 
     `molar_enthalpy` and `molar_mass` are for one mole of `formula`; `specific_enthalpy` is the assigned enthalpy
-    (formation at 298.15 K and the change to the state of the row) of one kilogram. `components` has the rows that it was
-    summed from with their mass fractions, and is empty for a row of its own.
+    (formation at 298.15 K and the change to the state of the row) of one kilogram. `components` has the rows that it
+    was summed from with their mass fractions, and is empty for a row of its own.
     """
 
     name: str

@@ -65,7 +65,9 @@ def load_library(path: str | Path) -> Mapping[str, PropellantRow]:
     file = Path(path)
     try:
         if file.stat().st_size > _LARGEST_FILE:
-            raise StorageError(f"{file} has more than {_LARGEST_FILE // 1_000_000} MB; that is not a propellant library.")
+            raise StorageError(
+                f"{file} has more than {_LARGEST_FILE // 1_000_000} MB; that is not a propellant library."
+            )
         text = file.read_text(encoding="utf-8")
     except UnicodeDecodeError as error:
         raise InputError(Problem(str(file), "not text in UTF-8", "a TOML file", "")) from error
@@ -106,7 +108,9 @@ def find(name: str, rows: Mapping[str, PropellantRow] | None = None, input_name:
             Problem(input_name, repr(name)[:60], "a library name or a pk.Propellant", 'For example "LOX".'), near=[]
         )
     near = suggestions(name, known)
-    raise InputError(Problem(input_name, repr(name[:60]), "a name of the library or a pk.Propellant", _near_text(near)), near=near)
+    raise InputError(
+        Problem(input_name, repr(name[:60]), "a name of the library or a pk.Propellant", _near_text(near)), near=near
+    )
 
 
 def suggestions(name: str, rows: Mapping[str, PropellantRow] | None = None, count: int = 4) -> list[str]:

@@ -8,6 +8,8 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any, ClassVar, Self
 
 from propkit import quantities, units
+from propkit.bridge.stored_state import stored_state
+from propkit.chain.case import Stream
 from propkit.constants import REFERENCE_PRESSURE, REFERENCE_TEMPERATURE
 from propkit.data import propellants as library_data
 from propkit.data.atomic_weights import ATOMIC_WEIGHTS
@@ -34,8 +36,20 @@ from propkit.series import Axis, Bars, Figure, Series
 if TYPE_CHECKING:
     import pandas as pd
 
-_WITH_LIBRARY_NAME = ("name", "library_name", "enthalpy", "density", "role", "hazard", "source", "heat_capacity", "heat_capacity_range")
-_STATED_ELSEWHERE = "A row of the library brings its own; give formula and enthalpy instead of library_name for another."
+_WITH_LIBRARY_NAME = (
+    "name",
+    "library_name",
+    "enthalpy",
+    "density",
+    "role",
+    "hazard",
+    "source",
+    "heat_capacity",
+    "heat_capacity_range",
+)
+_STATED_ELSEWHERE = (
+    "A row of the library brings its own; give formula and enthalpy instead of library_name for another."
+)
 
 
 def _read_enthalpy(name: str, value: Any) -> tuple[str, float]:
@@ -94,13 +108,17 @@ class Propellant(Calculation):
         doc='atoms of one formula unit, for example "C H1.95"', reader=_read_formula, default=None
     )
     enthalpy: CustomInput = CustomInput(
-        doc="assigned enthalpy at the given temperature, per mole of the formula or per mass", reader=_read_enthalpy, default=None
+        doc="assigned enthalpy at the given temperature, per mole of the formula or per mass",
+        reader=_read_enthalpy,
+        default=None,
     )
     density: QuantityInput = QuantityInput(
         doc="density at the state of the propellant", default=None, bounds=Bounds(above=0.0, at_most=25_000.0)
     )
     temperature: QuantityInput = QuantityInput(
-        doc="temperature that the enthalpy is for; 298.15 K unless given", default=None, bounds=Bounds(above=0.0, at_most=2000.0)
+        doc="temperature that the enthalpy is for; 298.15 K unless given",
+        default=None,
+        bounds=Bounds(above=0.0, at_most=2000.0),
     )
     pressure: QuantityInput = QuantityInput(
         doc="pressure of the propellant; 1 bar unless given", default=None, bounds=Bounds(above=0.0, at_most=1e9)
@@ -119,16 +137,15 @@ class Propellant(Calculation):
         doc="name of a row of the library, instead of formula and enthalpy", reader=_read_library_name, default=None
     )
 
-    molar_mass: QuantityResult = QuantityResult(source="Atomic weights of Cantera.", doc="mass of one mole of the formula")
+    molar_mass: QuantityResult = QuantityResult(
+        source="Atomic weights of Cantera.", doc="mass of one mole of the formula"
+    )
     molar_enthalpy: QuantityResult = QuantityResult(doc="assigned enthalpy per mole of the formula")
     specific_enthalpy: QuantityResult = QuantityResult(doc="assigned enthalpy per mass")
     oxygen_balance: NumberResult = NumberResult(doc="oxygen left over or missing, over the mass")
     freezing_point: QuantityResult = QuantityResult(doc="freezing point")
     boiling_point: QuantityResult = QuantityResult(doc="boiling point at 101.325 kPa")
     vapour_pressure: QuantityResult = QuantityResult(doc="vapour pressure at 298.15 K")
-
-    if TYPE_CHECKING:
-        _row: PropellantRow
 
     @classmethod
     def from_library(cls, name: str, *, library: str | Path | None = None) -> Propellant:
@@ -166,7 +183,9 @@ class Propellant(Calculation):
         problems = []
         if "formula" not in typed and "formula" not in bad:
             problems.append(
-                Problem("formula", "missing", 'given, for example formula="C H1.95"', "Or pk.Propellant.from_library(name).")
+                Problem(
+                    "formula", "missing", 'given, for example formula="C H1.95"', "Or pk.Propellant.from_library(name)."
+                )
             )
         if "enthalpy" not in typed and "enthalpy" not in bad:
             problems.append(Problem("enthalpy", "missing", 'given, for example enthalpy="-24.717 kJ/mol"', ""))
@@ -176,17 +195,27 @@ class Propellant(Calculation):
 
     def _calculate(self) -> Outcome:
         row = self._make_row()
-        object.__setattr__(self, "_row", row)
         results = {
             "molar_mass": row.molar_mass,
             "molar_enthalpy": row.molar_enthalpy,
             "specific_enthalpy": row.specific_enthalpy,
         }
-        for name in ("density", "temperature", "pressure", "heat_capacity", "freezing_point", "boiling_point", "vapour_pressure"):
+        for name in (
+            "density",
+            "temperature",
+            "pressure",
+            "heat_capacity",
+            "freezing_point",
+            "boiling_point",
+            "vapour_pressure",
+        ):
             value = getattr(row, name)
             if value is not None:
                 results[name] = float(value)
-        absent = {name: f"{row.name} has no {name} in its data" for name in ("density", "freezing_point", "boiling_point", "vapour_pressure")}
+        absent = {
+            name: f"{row.name} has no {name} in its data"
+            for name in ("density", "freezing_point", "boiling_point", "vapour_pressure")
+        }
         if all(symbol in VALENCES for symbol in row.elements):
             results["oxygen_balance"] = -net_valence(row.elements) / 2.0 * ATOMIC_WEIGHTS["O"] * 1e-3 / row.molar_mass
         return Outcome(results=results, absent=absent, doubts=tuple(self._doubts(row)), held=row)
@@ -223,7 +252,9 @@ class Propellant(Calculation):
     def _with_changes(self, row: PropellantRow) -> PropellantRow:
         """Return a library row with what the analyst gave instead."""
         values, typed = self._values, self._typed
-        changes: dict[str, Any] = {name: values[name] for name in ("hazard", "source", "heat_capacity_range") if name in typed}
+        changes: dict[str, Any] = {
+            name: values[name] for name in ("hazard", "source", "heat_capacity_range") if name in typed
+        }
         for name in ("density", "heat_capacity"):
             if name in typed:
                 changes |= {name: values[name], f"{name}_source": "as given"}
@@ -241,41 +272,78 @@ class Propellant(Calculation):
 
     def _doubts(self, row: PropellantRow) -> Iterator[Doubt]:
         if row.trust == "weak":
-            yield Doubt(f"The enthalpy of {row.name} is an estimate or its sources disagree. {row.note}".strip(), code="weak enthalpy", about="specific_enthalpy")
+            yield Doubt(
+                f"The enthalpy of {row.name} is an estimate or its sources disagree. {row.note}".strip(),
+                code="weak enthalpy",
+                about="specific_enthalpy",
+            )
         if row.heat_capacity is not None and row.heat_capacity_range is None:
-            yield Doubt(f"No range was given for the specific heat of {row.name}.", code="no range", about="heat_capacity")
+            yield Doubt(
+                f"No range was given for the specific heat of {row.name}.", code="no range", about="heat_capacity"
+            )
 
     # -- access ----------------------------------------------------------------------------------
 
     @property
     def row(self) -> PropellantRow:
         """Everything about the propellant as SI floats and texts, read-only."""
-        return self._row
+        found: PropellantRow = self._outcome.held
+        return found
 
     @property
     def elements(self) -> pd.Series[float]:
         """Atoms of one formula unit: index element symbol, value count [1]."""
         import pandas as pd
 
-        return pd.Series(self._row.elements, name="elements", dtype=float).rename_axis("element")
+        return pd.Series(self.row.elements, name="elements", dtype=float).rename_axis("element")
+
+    @property
+    def label(self) -> str:
+        """What to call it in a line of text: the analyst's name, the library name, or the formula."""
+        return self.row.name
 
     @property
     def roles(self) -> tuple[str, ...]:
         """Everything it can serve as, the main role first; empty where nobody stated one."""
-        return self._row.roles
+        return self.row.roles
+
+    def stream(
+        self, temperature: float | None = None, pressure: float | None = None, role: str = ""
+    ) -> tuple[Stream, tuple[str, ...]]:
+        """Return the propellant as a stream at a stored state, and what to doubt about it.
+
+        Parameters
+        ----------
+        temperature, pressure : float, optional
+            State as stored or fed [K], [Pa]; that of the propellant's data unless given.
+        role : str
+            Use of the stream (``"fuel"``), for the name of the input in an error text.
+
+        Returns
+        -------
+        Stream, tuple of str
+            Atoms [mol/kg], enthalpy [J/kg], density [kg/m3]; warnings.
+        """
+        row = self.row
+        name = f"{role}_temperature" if role else "temperature"
+        state = stored_state(row, temperature, pressure, name)
+        atoms = {symbol: count / row.molar_mass for symbol, count in row.element_counts}
+        enthalpy = row.specific_enthalpy + state.enthalpy_change / row.molar_mass
+        density = float("nan") if state.density is None else state.density
+        return Stream(atoms, enthalpy, density), state.warnings
 
     def attribute(self, name: str) -> Any:
-        """Return what reading the attribute `name` gives: a fresh quantity, a float or a text; None where the data have none."""
+        """Return what reading `name` gives: a fresh quantity, a float or a text; None where the data have none."""
         if name == "name":
-            return self._row.name
+            return self.row.name
         if name == "role":
-            return self._row.roles[0] if self._row.roles else None
+            return self.row.roles[0] if self.row.roles else None
         if name in ("formula", "phase", "hazard", "source"):
-            return getattr(self._row, name)
+            return getattr(self.row, name)
         if name == "heat_capacity_range":
-            return self._row.heat_capacity_range
+            return self.row.heat_capacity_range
         if name == "enthalpy":
-            return units.quantity(self._row.molar_enthalpy, "J/mol")
+            return units.quantity(self.row.molar_enthalpy, "J/mol")
         entry: Declared | None = getattr(type(self), name, None)
         if not isinstance(entry, Declared):
             return super().attribute(name)
@@ -297,7 +365,7 @@ class Propellant(Calculation):
 
     def subtitle(self) -> str:
         """Return the propellant in plain words."""
-        row = self._row
+        row = self.row
         return row.title if row.title == row.name else f"{row.name}: {row.title}"
 
     def input_text(self, name: str) -> str:
@@ -312,12 +380,12 @@ class Propellant(Calculation):
 
     def cautions(self) -> tuple[str, ...]:
         """Return the hazard line."""
-        row = self._row
+        row = self.row
         return (f"{row.name}: {row.hazard}",) if row.hazard else ()
 
-    def sections(self, units: UnitSystem) -> Iterator[Section]:
+    def sections(self, system: UnitSystem) -> Iterator[Section]:
         """Yield identity, storage and source of the row, and what other sources give."""
-        row = self._row
+        row = self.row
         lines = [f"Formula {row.formula}. State: {row.state_text}."]
         if row.roles:
             lines.append(f"Serves as {', '.join(row.roles)}.")
@@ -328,10 +396,10 @@ class Propellant(Calculation):
         lines += [text for text in (row.note, row.impulse_note) if text]
         yield Section("about", "About these data", lines=tuple(lines))
         if row.other_values:
-            yield self._other_values(units)
+            yield self._other_values(system)
 
     def _other_values(self, system: UnitSystem) -> Section:
-        row = self._row
+        row = self.row
         quantity = quantities.quantity("molar_enthalpy")
         listed = (row.molar_enthalpy, *(other.molar_enthalpy for other in row.other_values))
         unit = quantity.shown_in(system, listed)
@@ -349,9 +417,9 @@ class Propellant(Calculation):
         )
         return Section("sources", table.title, table=table)
 
-    def figures(self, system: UnitSystem) -> tuple[Figure, ...]:
+    def figures(self, system: UnitSystem = "SI") -> tuple[Figure, ...]:
         """Return what the propellant is made of: mass fraction of each element."""
-        row = self._row
+        row = self.row
         parts = {symbol: count * ATOMIC_WEIGHTS[symbol] * 1e-3 / row.molar_mass for symbol, count in row.element_counts}
         ordered = dict(sorted(parts.items(), key=lambda item: -item[1]))
         bars = Bars(
@@ -431,7 +499,9 @@ def propellants(library: str | Path | None = None) -> pd.DataFrame:
     import pandas as pd
 
     rows = library_data.library() if library is None else library_data.load_library(library)
-    frame = pd.DataFrame.from_records([_record_of(row) for row in rows.values()], index=pd.Index(list(rows), name="name"))
+    frame = pd.DataFrame.from_records(
+        [_record_of(row) for row in rows.values()], index=pd.Index(list(rows), name="name")
+    )
     frame.attrs["units"] = dict(_FRAME_UNITS)
     return frame
 
