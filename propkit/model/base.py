@@ -89,15 +89,14 @@ class Calculation:
             for name, entry in vars(ancestor).items():
                 if isinstance(entry, Input):
                     inputs[name] = entry
+                    results.pop(name, None)
                 elif isinstance(entry, Result):
                     results[name] = entry
+                    inputs.pop(name, None)
         hidden = getattr(cls, "undeclared", ())
         title = inputs.pop("name")
         inputs = {name: entry for name, entry in inputs.items() if name not in hidden}
         inputs["name"] = title
-        for entry in (*vars(cls).values(),):
-            if isinstance(entry, Declared):
-                entry.owner = cls.kind
         cls.declared_inputs = MappingProxyType(inputs)
         cls.declared_results = MappingProxyType(results)
         cls.__signature__ = binding.signature(inputs)  # type: ignore[attr-defined]
@@ -135,6 +134,10 @@ class Calculation:
         """Whether the sheet lists the input: those given and the defaults that matter."""
         return name in self._typed or self._values.get(name) is not None
 
+    def resolved(self) -> tuple[str, ...]:
+        """Return the names of inputs that were not given and follow from the others; sheets list them as results."""
+        return tuple(name for group in self.groups for name in group if name not in self._typed)
+
     def input_text(self, name: str) -> str:
         """Return an input of a kind of its own as text."""
         return str(self._values[name])
@@ -144,7 +147,7 @@ class Calculation:
         typed = self._typed[name]
         return typed if isinstance(typed, str) else f"{typed}"
 
-    def si_name(self) -> str:
+    def given_name(self) -> str:
         """Return the analyst's name for the object, or an empty text."""
         return str(self._values["name"])
 
@@ -237,6 +240,11 @@ class Calculation:
         """Return an input, a result or a dotted name such as ``exit.pressure`` as an SI float."""
         state, _, quantity = name.partition(".")
         return getattr(self, state).si(quantity) if quantity else self.si(name)  # type: ignore[no-any-return]
+
+    def given_or_result(self, name: str) -> Any:
+        """Return what was given for an input in SI, else the result; None where this recipe has neither."""
+        value = self._values.get(name) if name in self._typed else None
+        return self._outcome.results.get(name, self._values.get(name)) if value is None else value
 
     def has(self, name: str) -> bool:
         """Whether this recipe has the input or result `name`."""

@@ -24,7 +24,7 @@ def row_of(calculation: Calculation, name: str, system: UnitSystem) -> Row:
     typed = calculation.inputs.get(name, "")
     relation, source = (entry.relation, entry.source) if isinstance(entry, Result) else ("", "")
     doubts = tuple(str(doubt) for doubt in calculation.own_warnings if doubt.about == name)
-    value = calculation.si(name) if calculation.has(name) else None
+    value = calculation.given_or_result(name)
     if isinstance(entry, CustomInput) and not isinstance(value, float):
         value = calculation.input_text(name)
     shown, unit = in_display(quantity, value, system)
@@ -66,18 +66,16 @@ def report_of(calculation: Calculation, system: UnitSystem, render: Callable[[Re
         if name not in (upstream, "name") and calculation.shows_input(name)
     ]
     named = {row.name for row in given}
-    results = [
-        row_of(calculation, name, system)
-        for name, entry in calculation.declared_results.items()
-        if entry.shown and name not in named and calculation.has(name)
-    ]
+    listed = [name for name in calculation.resolved() if name not in named]
+    listed += [name for name, entry in calculation.declared_results.items() if entry.shown and name not in named]
+    results = [row_of(calculation, name, system) for name in listed if calculation.has(name)]
     headline = [row_of(calculation, name, system) for name in calculation.headline if calculation.has(name)]
     whole = tuple(str(doubt) for doubt in calculation.own_warnings if not doubt.about)
     above = calculation.upstream.warnings if calculation.upstream is not None else ()
     return Report(
         kind=calculation.title,
-        title=calculation.si_name() or calculation.subtitle(),
-        subtitle=calculation.subtitle() if calculation.si_name() else "",
+        title=calculation.given_name() or calculation.subtitle(),
+        subtitle=calculation.subtitle() if calculation.given_name() else "",
         units=system,
         headline=tuple(headline),
         given=tuple(given),

@@ -1,0 +1,68 @@
+"""Drawings of the objects as neutral figures."""
+
+from __future__ import annotations
+
+import math
+from typing import TYPE_CHECKING
+
+from propkit import units
+from propkit.report import UnitSystem
+from propkit.series import Axis, Figure, Line, Mark, Series
+
+if TYPE_CHECKING:
+    from propkit.model.nozzle import Nozzle
+
+SCHEMATIC_HALF_ANGLE = math.radians(15.0)
+"""Half-angle of the divergent part where no contour is given [rad]: the drawing says that its length is schematic."""
+
+
+def nozzle_figures(nozzle: Nozzle, system: UnitSystem) -> tuple[Figure, ...]:
+    """Return the outline of the nozzle to scale: radii are computed, lengths schematic without a contour."""
+    unit = "m" if system == "SI" else "inch"
+    throat, lip = nozzle.si("throat_diameter") / 2.0, nozzle.si("exit_diameter") / 2.0
+    ratio = nozzle.chamber.si("contraction_ratio")
+    chamber = throat * math.sqrt(ratio if math.isfinite(ratio) else 6.0)
+    wall = schematic_wall(throat, lip, chamber)
+    upper = [(x, r) for x, r in wall]
+    outline = [*upper, *((x, -r) for x, r in reversed(upper))]
+    scale = units.convert(1.0, "m", unit)
+    xs, ys = (tuple(scale * point[axis] for point in outline) for axis in (0, 1))
+    body = Line(Series("axial position", xs, unit, "x"), Series("radius", ys, unit, "r"), colour="ink", closed=True, fill=True)
+    end = wall[-1][0]
+    marks = (
+        Mark(0.0, scale * throat, f"throat {scale * 2 * throat:.4g} {units.shown_unit(unit)}"),
+        Mark(scale * end, scale * lip, f"exit {scale * 2 * lip:.4g} {units.shown_unit(unit)}"),
+    )
+    alt = f"Nozzle outline: throat diameter {scale * 2 * throat:.4g} {units.shown_unit(unit)}, exit diameter {scale * 2 * lip:.4g}, area ratio {nozzle.si('area_ratio'):.4g}"
+    title = "Nozzle, diameters to scale; length schematic (15° cone)"
+    return (Figure("outline", title, alt, Axis("axial position", unit, "x"), Axis("radius", unit, "r"), (body, *marks), equal_aspect=True),)
+
+
+def schematic_wall(throat: float, lip: float, chamber: float) -> list[tuple[float, float]]:
+    """Return wall points (x, r) [m] from the chamber to the lip with x = 0 at the throat."""
+    points = [(-2.2 * chamber, chamber), (-1.2 * (chamber - throat) - 0.8 * throat, chamber)]
+    arc = 1.5 * throat
+    angle = math.radians(40.0)
+    start = throat + arc * (1.0 - math.cos(angle))
+    if start < chamber:
+        points.append((-arc * math.sin(angle) - (chamber - start) / math.tan(angle), chamber))
+        points[1] = points[2]
+        points.pop()
+    for step in range(8, 0, -1):
+        turn = angle * step / 8.0
+        radius = throat + arc * (1.0 - math.cos(turn))
+        if radius < chamber:
+            points.append((-arc * math.sin(turn), radius))
+    points.append((0.0, throat))
+    down = 0.4 * throat
+    for step in range(1, 7):
+        turn = SCHEMATIC_HALF_ANGLE * step / 6.0
+        radius = throat + down * (1.0 - math.cos(turn))
+        if radius < lip:
+            points.append((down * math.sin(turn), radius))
+    x, r = points[-1]
+    if lip > r:
+        points.append((x + (lip - r) / math.tan(SCHEMATIC_HALF_ANGLE), lip))
+    if points[0][0] >= points[1][0]:
+        points[0] = (points[1][0] - chamber, chamber)
+    return points

@@ -1,0 +1,473 @@
+"""The nozzle: expansion of the chamber gas, and the sizes that pass it."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping
+from typing import TYPE_CHECKING, Any, Self
+
+import numpy as np
+
+from propkit import units
+from propkit.chain import nozzle as stage
+from propkit.chain import sizing
+from propkit.errors import InputError, NotAvailableError, Problem, RangeError
+from propkit.model import sheet
+from propkit.model.ambient import read_ambient
+from propkit.model.base import Calculation, Outcome
+from propkit.model.chamber import Chamber
+from propkit.model.declare import Bounds, ChoiceInput, CustomInput, NumberInput, QuantityInput, QuantityResult, as_text
+from propkit.model.doubts import Assumption, Doubt
+from propkit.model.state import STATE_FIELDS, State
+from propkit.report import Section, UnitSystem
+from propkit.series import Figure
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    from propkit.model.declare import NumberLike, QuantityLike
+
+FLOWS = ("shifting", "frozen", "constant-property")
+EXPONENTS = ("equilibrium", "frozen")
+SIZES = (*sizing.THROAT_SIZES, *sizing.EXIT_SIZES, *sizing.FLOW_SIZES)
+EXPANSIONS = ("area_ratio", "exit_pressure")
+STATION_COLUMNS = ("pressure", "temperature", "density", "velocity", "mach", "sound_speed", "molar_mass", "isentropic_exponent", "enthalpy", "entropy")
+_LENGTHS = Bounds(at_least=1e-5, at_most=100.0)
+_AREAS = Bounds(at_least=1e-10, at_most=1e4)
+
+
+def read_nozzle(name: str, value: Any) -> Nozzle:
+    """Return `value` when it is a nozzle."""
+    if isinstance(value, Nozzle):
+        return value
+    raise InputError(Problem(name, as_text(value), "a pk.Nozzle", "Chain the objects: case, chamber, nozzle, performance."))
+
+
+def read_chamber(name: str, value: Any) -> Chamber:
+    """Return `value` when it is a chamber."""
+    if isinstance(value, Chamber):
+        return value
+    raise InputError(Problem(name, as_text(value), "a pk.Chamber", "Chain the objects: case, chamber, nozzle, performance."))
+
+
+def read_freeze(name: str, value: Any) -> str | float:
+    """Return where the composition freezes: a word, or an area ratio above 1."""
+    if value in ("chamber", "throat"):
+        return str(value)
+    allowed = "'chamber', 'throat' or a supersonic area ratio above 1"
+    try:
+        ratio = units.to_si(value, "", name)
+    except InputError as error:
+        raise InputError(Problem(name, as_text(value), allowed)) from error
+    if not 1.0 < ratio <= 1e4:
+        raise InputError(Problem(name, as_text(value), allowed))
+    return ratio
+
+
+class Nozzle(Calculation):
+    """Expansion of the chamber gas through a throat to an exit, and its sizes.
+
+    Parameters
+    ----------
+    chamber : Chamber
+        The chamber upstream.
+    area_ratio, exit_pressure : number, quantity
+        One of the two says how far the gas expands: exit area over throat area [1], or static exit pressure [Pa].
+    throat_diameter, throat_area, exit_diameter, exit_area, mass_flow, thrust : quantity
+        One size; or one throat size with one exit size and nothing else. `thrust` goes with `sizing_ambient`.
+    flow : str
+        ``"shifting"``, ``"frozen"`` or ``"constant-property"``; the default is shifting, or constant-property where the
+        chamber allows nothing else.
+    freeze_at : str or float
+        Frozen flow only: ``"chamber"`` (default, nozzle-inlet gas), ``"throat"`` or a supersonic area ratio.
+    exponent : str
+        Constant-property flow only: ``"equilibrium"`` (default) or ``"frozen"`` isentropic exponent of the reservoir.
+    discharge_coefficient : float
+        Effective over geometric throat area [1], above 0.5 and at most 1.
+    name : str
+        Title of the sheet.
+
+    Raises
+    ------
+    InputError
+        Listing every input that is wrong, missing or clashing.
+    RangeError, ConvergenceError
+        When the flow has no solution inside the data, or an iteration does not converge; the error carries the state.
+    """
+
+    kind = "nozzle"
+    title = "Nozzle"
+    upstream_input = "chamber"
+    headline = ("mass_flow", "throat_diameter", "exit_diameter", "area_ratio")
+
+    chamber = CustomInput(doc="the chamber upstream", reader=read_chamber, kw_only=False, quantity="name")
+    area_ratio = NumberInput(doc="exit area over throat area", default=None, bounds=Bounds(at_least=1.0, at_most=1e4), hint="Did you pass throat over exit?")
+    exit_pressure = QuantityInput(doc="static pressure at the exit", default=None, bounds=Bounds(at_least=0.1, at_most=1e8))
+    throat_diameter = QuantityInput(doc="geometric throat diameter", default=None, bounds=_LENGTHS)
+    throat_area = QuantityInput(doc="geometric throat area", default=None, bounds=_AREAS)
+    exit_diameter = QuantityInput(doc="geometric exit diameter", default=None, bounds=_LENGTHS)
+    exit_area = QuantityInput(doc="geometric exit area", default=None, bounds=_AREAS)
+    mass_flow = QuantityInput(doc="mass flow to be passed", default=None, bounds=Bounds(at_least=1e-9, at_most=1e6))
+    thrust = QuantityInput(doc="thrust to be delivered at sizing_ambient", default=None, bounds=Bounds(at_least=1e-6, at_most=1e9))
+    sizing_ambient = CustomInput(doc="surroundings at which the thrust is asked for", default=None, reader=read_ambient)
+    flow = ChoiceInput(doc="how composition behaves in the nozzle", choices=FLOWS, default=None)
+    freeze_at = CustomInput(doc="where the composition freezes, frozen flow only", default=None, reader=read_freeze)
+    exponent = ChoiceInput(doc="isentropic exponent of constant-property flow", choices=EXPONENTS, default=None)
+    discharge_coefficient = NumberInput(doc="effective over geometric throat area", default=1.0, bounds=Bounds(above=0.5, at_most=1.0))
+
+    characteristic_velocity = QuantityResult(relation="characteristic_velocity", source="definition")
+
+    # -- checks over several inputs -------------------------------------------------------------
+
+    def _check(self, bad: set[str]) -> list[Problem]:
+        problems = list(self._size_problems(bad))
+        if "chamber" in bad or "flow" in bad:
+            return problems
+        flow = self._flow()
+        allowed = self._values["chamber"].flows
+        if flow not in allowed:
+            problems.append(Problem("flow", repr(flow), " or ".join(map(repr, allowed)), self._values["chamber"].flow_reason))
+        if self._values["freeze_at"] is not None and flow != "frozen":
+            problems.append(Problem("freeze_at", as_text(self._typed["freeze_at"]), "left out unless flow is 'frozen'", f"The flow is {flow!r}."))
+        if self._values["exponent"] is not None and flow != "constant-property":
+            problems.append(Problem("exponent", repr(self._typed["exponent"]), "left out unless flow is 'constant-property'", f"The flow is {flow!r}."))
+        if self._values["exponent"] is not None and not self._values["chamber"].has("frozen_isentropic_exponent"):
+            problems.append(Problem("exponent", repr(self._typed["exponent"]), "left out for a gas with a given exponent"))
+        return problems
+
+    def _size_problems(self, bad: set[str]) -> Iterator[Problem]:
+        expansion = [name for name in EXPANSIONS if name in self._typed or name in bad]
+        throat = [name for name in sizing.THROAT_SIZES if name in self._typed or name in bad]
+        lips = [name for name in sizing.EXIT_SIZES if name in self._typed or name in bad]
+        flows = [name for name in sizing.FLOW_SIZES if name in self._typed or name in bad]
+        given = [*expansion, *throat, *lips, *flows]
+        shown = ", ".join(f"{name}={as_text(self._typed.get(name, '?'))}" for name in given) or "missing"
+        wanted = "one of area_ratio or exit_pressure with one size (" + ", ".join(SIZES) + "), or one throat size with one exit size"
+        two_sizes = len(throat) == 1 and len(lips) == 1 and not flows and not expansion
+        one_size = len(expansion) == 1 and len(throat) + len(lips) + len(flows) == 1
+        if not (two_sizes or one_size):
+            missing = not expansion or not (throat or lips or flows)
+            hint = "Add what is missing." if missing and len(given) <= 1 else "Leave out what is too much."
+            yield Problem("nozzle size", shown, wanted, hint)
+        if two_sizes and not bad & set(given):
+            ratio = self._size_ratio()
+            if not 1.0 <= ratio <= 1e4:
+                yield Problem(lips[0], as_text(self._typed[lips[0]]), "an exit at least as large as the throat", f"The area ratio comes out as {ratio:.4g}.")
+        if flows == ["thrust"] and self._values["sizing_ambient"] is None and "sizing_ambient" not in bad:
+            yield Problem("sizing_ambient", "missing", "given with thrust", 'For example sizing_ambient="vacuum", or use Nozzle.sized_for.')
+        if "thrust" not in flows and "sizing_ambient" in self._typed:
+            yield Problem("sizing_ambient", as_text(self._typed["sizing_ambient"]), "left out unless the nozzle is sized for a thrust")
+
+    def _size_ratio(self) -> float:
+        areas = [
+            float(sizing.area_of(name, self._values[name]))
+            for group in (sizing.EXIT_SIZES, sizing.THROAT_SIZES)
+            for name in group
+            if name in self._typed
+        ]
+        return areas[0] / areas[1]
+
+    def displaced(self, typed: dict[str, Any], changes: Mapping[str, Any]) -> dict[str, Any]:
+        """Return `typed` without the sizes that the changes displace: naming one member of a group displaces the others."""
+        kept = dict(typed)
+        throat, lips, flows, expansion = (set(group) for group in (sizing.THROAT_SIZES, sizing.EXIT_SIZES, sizing.FLOW_SIZES, EXPANSIONS))
+        named = set(changes)
+        drop: set[str] = set()
+        two_sizes = bool(throat & set(typed)) and bool(lips & set(typed))
+        if named & throat and named & lips:
+            drop = throat | lips | flows | expansion
+        elif two_sizes:
+            drop |= throat if named & throat else set()
+            drop |= lips if named & (lips | expansion) else set()
+            drop |= throat if named & flows else set()
+        elif named & (throat | lips | flows):
+            drop = throat | lips | flows
+        drop |= expansion if named & expansion else set()
+        if drop & {"thrust"} and "thrust" not in named:
+            drop.add("sizing_ambient")
+        for name in drop:
+            kept.pop(name, None)
+        if named & {"flow"} and changes.get("flow") != "frozen" and "freeze_at" not in named:
+            kept.pop("freeze_at", None)
+        if named & {"flow"} and changes.get("flow") != "constant-property" and "exponent" not in named:
+            kept.pop("exponent", None)
+        return kept
+
+    def _flow(self) -> str:
+        return str(self._values["flow"] or self._values["chamber"].flows[0])
+
+    # -- the calculation -------------------------------------------------------------------------
+
+    def _calculate(self) -> Outcome:
+        chamber: Chamber = self._values["chamber"]
+        flow = self._flow()
+        self._values["flow"] = flow
+        if flow == "frozen":
+            self._values["freeze_at"] = self._values["freeze_at"] or "chamber"
+        if flow == "constant-property" and chamber.has("frozen_isentropic_exponent"):
+            self._values["exponent"] = self._values["exponent"] or "equilibrium"
+        discharge = self._values["discharge_coefficient"]
+        ratio, pressure = self._values["area_ratio"], self._values["exit_pressure"]
+        if ratio is None and pressure is None:
+            ratio = self._size_ratio()
+        expansion = stage.expand(
+            chamber.held,
+            flow=flow,
+            freeze_at=self._values["freeze_at"],
+            exponent=self._values["exponent"],
+            area_ratio=None if ratio is None else ratio / discharge,
+            exit_pressure=pressure,
+        )
+        self._refuse(expansion, pressure)
+        geometric = ratio if ratio is not None else float(expansion.area_ratio[0]) * discharge
+        return self._sized(chamber, expansion, geometric)
+
+    def _refuse(self, expansion: stage.Expansion, pressure: float | None) -> None:
+        throat_pressure = float(expansion.throat.pressure[0])
+        if pressure is not None and pressure > throat_pressure:
+            raise InputError(
+                Problem("exit_pressure", f"{pressure:g} Pa", f"at most the throat pressure, {throat_pressure:g} Pa", "A nozzle with an exit accelerates the gas beyond its throat.")
+            )
+        expansion.raise_for_status(self.kind)
+
+    def _sized(self, chamber: Chamber, expansion: stage.Expansion, ratio: float) -> Outcome:
+        name = next(name for name in SIZES if name in self._typed)
+        ambient = self._values["sizing_ambient"]
+        sizes = sizing.size(
+            name,
+            self._values[name],
+            mass_flux=expansion.mass_flux,
+            area_ratio=ratio,
+            exit_velocity=expansion.exit.velocity,
+            exit_pressure=expansion.exit.pressure,
+            ambient=ambient.pressure if ambient is not None else 0.0,
+            discharge_coefficient=self._values["discharge_coefficient"],
+            cstar_efficiency=chamber.si("cstar_efficiency"),
+        )
+        throat_area, exit_area, mass_flow = (float(getattr(sizes, field)[0]) for field in ("throat_area", "exit_area", "mass_flow"))
+        if not (throat_area > 0.0 and math.isfinite(throat_area)):
+            raise RangeError(
+                f"No size gives a thrust of {self._values['thrust']:g} N at an ambient pressure of {ambient.pressure:g} Pa: this expansion "
+                f"delivers no thrust there (exit pressure {float(expansion.exit.pressure[0]):g} Pa). Choose a smaller area_ratio.",
+                throat_area=throat_area,
+            )
+        area = {"throat": throat_area, "exit": exit_area}
+        results = {f"{where}_area": value for where, value in area.items()}
+        results |= {f"{where}_diameter": math.sqrt(4.0 * value / math.pi) for where, value in area.items()}
+        results |= {"area_ratio": ratio, "mass_flow": mass_flow, "exit_pressure": float(expansion.exit.pressure[0])}
+        results["characteristic_velocity"] = chamber.si("stagnation_pressure") * throat_area / mass_flow
+        if name in self._typed:
+            results[name] = self._values[name]
+        if ambient is not None:
+            results["sizing_ambient"] = ambient.pressure
+        absent = {
+            "thrust": "the nozzle was not sized for a thrust; pk.Performance(nozzle, ambient=...).thrust has the thrust",
+            "sizing_ambient": "the nozzle was not sized for a thrust",
+            "freeze_at": "only frozen flow freezes its composition",
+            "exponent": "only constant-property flow of a chamber gas chooses its exponent",
+        }
+        return Outcome(results, absent, tuple(self._doubts(expansion)), expansion)
+
+    def _doubts(self, expansion: stage.Expansion) -> Iterator[Doubt]:
+        for text, about in expansion.doubts():
+            yield Doubt(text, code="data-range", about=about)
+
+    # -- constructors and states ------------------------------------------------------------------
+
+    @classmethod
+    def sized_for(
+        cls,
+        chamber: Chamber,
+        *,
+        thrust: QuantityLike,
+        ambient: QuantityLike,
+        area_ratio: NumberLike | None = None,
+        exit_pressure: QuantityLike | None = None,
+        flow: str | None = None,
+        freeze_at: str | float | None = None,
+        exponent: str | None = None,
+        discharge_coefficient: NumberLike = 1.0,
+        name: str = "",
+    ) -> Self:
+        """Return the nozzle that delivers `thrust` at `ambient`: sugar for ``Nozzle(..., thrust=..., sizing_ambient=...)``.
+
+        Parameters
+        ----------
+        chamber : Chamber
+            The chamber upstream.
+        thrust, ambient : quantity
+            Thrust [N], and the surroundings at which it is asked for.
+        area_ratio, exit_pressure, flow, freeze_at, exponent, discharge_coefficient, name
+            As for `Nozzle`.
+
+        Raises
+        ------
+        RangeError
+            When no size delivers that thrust there.
+        """
+        chosen = {
+            "area_ratio": area_ratio,
+            "exit_pressure": exit_pressure,
+            "flow": flow,
+            "freeze_at": freeze_at,
+            "exponent": exponent,
+            "discharge_coefficient": None if discharge_coefficient == 1.0 else discharge_coefficient,
+            "name": name or None,
+        }
+        named: dict[str, Any] = {key: value for key, value in chosen.items() if value is not None}
+        return cls(chamber, thrust=thrust, sizing_ambient=ambient, **named)
+
+    @property
+    def inlet(self) -> State:
+        """State at the nozzle inlet: at the contraction ratio, or at rest where the contraction is infinite."""
+        return self._state("nozzle inlet", "inlet")
+
+    @property
+    def throat(self) -> State:
+        """State at the throat."""
+        return self._state("throat", "throat")
+
+    @property
+    def exit(self) -> State:
+        """State at the exit."""
+        return self._state("exit", "exit")
+
+    def _state(self, station: str, attribute: str) -> State:
+        return self.lazily(attribute, lambda: _state_of(station, getattr(self.held, attribute)))
+
+    def state_paths(self) -> tuple[str, ...]:
+        """Return the dotted names of the states' properties."""
+        return tuple(f"{state}.{field}" for state in ("inlet", "throat", "exit") for field in STATE_FIELDS)
+
+    @property
+    def case(self) -> Any:
+        """The propellant case upstream."""
+        return self.chamber.case
+
+    def at(self, *, area_ratio: NumberLike | None = None, pressure: QuantityLike | None = None, branch: str = "supersonic") -> State:
+        """Return the flow state at a local area ratio or at a pressure.
+
+        Parameters
+        ----------
+        area_ratio : number
+            Local area over throat area [1], at least 1; `branch` says on which side of the throat.
+        pressure : quantity
+            Static pressure [Pa], below the stagnation pressure. Give one of the two.
+        branch : str
+            ``"supersonic"`` (default) or ``"subsonic"``.
+
+        Raises
+        ------
+        InputError
+            For a value that no state of this flow has.
+        """
+        if branch not in ("supersonic", "subsonic"):
+            raise InputError(Problem("branch", as_text(branch), "'supersonic' or 'subsonic'"))
+        if (area_ratio is None) == (pressure is None):
+            raise InputError(Problem("area_ratio", "missing" if area_ratio is None else "given beside pressure", "given, or pressure in its place", "Give one of the two."))
+        if area_ratio is not None:
+            ratio = units.to_si(area_ratio, "", "area_ratio")
+            if not 1.0 <= ratio <= 1e6:
+                raise InputError(Problem("area_ratio", as_text(area_ratio), "at least 1 and at most 1e+06"))
+            flow = stage.state_at(self.held, area_ratio=ratio / self.si("discharge_coefficient"), supersonic=branch == "supersonic")
+            label = f"{branch}, area ratio {ratio:g}"
+        else:
+            wanted = units.to_si(pressure, "Pa", "pressure")
+            stagnation = self.chamber.si("stagnation_pressure")
+            if not 0.0 < wanted <= stagnation:
+                raise InputError(Problem("pressure", as_text(pressure), f"above 0 and at most the stagnation pressure, {stagnation:g} Pa"))
+            flow = stage.state_at(self.held, pressure=wanted)
+            label = f"pressure {wanted:g} Pa"
+        stage.raise_for(flow, label, self.held)
+        return _state_of(label, flow)
+
+    @property
+    def stations(self) -> pd.DataFrame:
+        """Flow states as a table: index station, SI floats; units in ``attrs["units"]``."""
+        import pandas as pd
+
+        states = self.all_states()
+        columns = [name for name in STATE_FIELDS if any(name in state.names() for state in states)]
+        frame = pd.DataFrame(
+            {name: [state.si(name) if name in state.names() else float("nan") for state in states] for name in columns},
+            index=pd.Index([state.station for state in states], name="station"),
+        )
+        frame.attrs["units"] = {name: getattr(State, name).quantity.unit for name in columns}
+        return frame
+
+    def all_states(self) -> tuple[State, ...]:
+        """Return the states from the injector face, or the reservoir, to the exit."""
+        return (*self.chamber.states(), self.inlet, self.throat, self.exit)
+
+    # -- display -----------------------------------------------------------------------------------
+
+    def _shown_input(self, name: str, value: Any) -> Any:
+        return units.quantity(value, "Pa") if name == "sizing_ambient" else value
+
+    def input_text(self, name: str) -> str:
+        """Return a choice as text."""
+        value = self._values[name]
+        return str(getattr(value, "text", value))
+
+    def shows_input(self, name: str) -> bool:
+        """Show what was given, and the flow model always."""
+        always = {"flow", "freeze_at", "exponent", "discharge_coefficient"}
+        return name in self._typed or (name in always and self._values[name] is not None)
+
+    def resolved(self) -> tuple[str, ...]:
+        """Return the inputs that were not given and follow from the others."""
+        return tuple(name for name in (*EXPANSIONS, *SIZES[:-1]) if name not in self._typed)
+
+    def subtitle(self) -> str:
+        """Return the chamber, area ratio and flow."""
+        return f"{self.chamber.subtitle()}, area ratio {self.si('area_ratio'):.4g}, {self.flow}"
+
+    def _own_assumptions(self) -> tuple[Assumption, ...]:
+        words = {
+            "shifting": "Composition follows chemical equilibrium through the nozzle (shifting).",
+            "frozen": f"Composition is frozen from {self._frozen_text()}.",
+            "constant-property": "Gas constant and isentropic exponent are those of the reservoir throughout.",
+        }
+        made = [
+            Assumption("flow", words[self.flow], self.kind_of("flow"), "mass_flow"),
+            Assumption("isentropic", "The flow is one-dimensional and isentropic from the nozzle inlet on.", "method", "specific_impulse"),
+        ]
+        if self.discharge_coefficient == 1.0:
+            made.append(Assumption("discharge", "The whole throat area passes flow (discharge coefficient 1).", self.kind_of("discharge_coefficient"), "mass_flow"))
+        return tuple(made)
+
+    def _frozen_text(self) -> str:
+        at = self._values["freeze_at"]
+        return {"chamber": "the nozzle inlet", "throat": "the throat"}.get(str(at), f"area ratio {at}")
+
+    def flow_sections(self, system: UnitSystem) -> Iterator[Section]:
+        """Yield the stations and the composition along the nozzle."""
+        yield sheet.station_table(self.all_states(), (*STATION_COLUMNS, "condensed_mass_fraction"), system)
+        section = self.composition_section()
+        if section is not None:
+            yield section
+
+    def composition_section(self) -> Section | None:
+        """Return mole fractions at the stations, or None for a gas without composition."""
+        return sheet.composition_along(self.held.compositions())
+
+    def sections(self, system: UnitSystem) -> Iterator[Section]:
+        """Yield stations, composition and assumptions."""
+        yield from self.flow_sections(system)
+        yield sheet.assumption_section(self)
+
+    def figures(self, system: UnitSystem = "SI") -> tuple[Figure, ...]:
+        """Return the nozzle to scale with its stations."""
+        from propkit.model import drawings
+
+        return drawings.nozzle_figures(self, system)
+
+
+def _state_of(station: str, flow: Any) -> State:
+    values = {name: float(getattr(flow, name)[0]) for name in STATE_FIELDS if getattr(flow, name, None) is not None}
+    values = {name: value for name, value in values.items() if np.isfinite(value)}
+    if values.get("condensed_mass_fraction") == 0.0:
+        del values["condensed_mass_fraction"]
+    return State(station, values, {"condensed_mass_fraction": "the gas holds no condensed species"})
+
+
