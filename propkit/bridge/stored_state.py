@@ -188,8 +188,8 @@ def _pressure_taken(
         return REFERENCE_PRESSURE, not condensed
     if vapour_pressure is None:
         warnings.append(
-            f"{row.name} at {at:g} K is above its critical temperature and no pressure was given: taken as an ideal gas, "
-            f"the heat of vaporisation in the enthalpy. Give the pressure it is fed at."
+            f"{row.name} at {at:g} K is above its critical temperature and no pressure was given: taken as an ideal "
+            f"gas, the heat of vaporisation in the enthalpy. Give the pressure it is fed at."
         )
         return REFERENCE_PRESSURE, True
     if vapour_pressure > row.pressure * (1.0 + _NEAR_SATURATION):
@@ -266,13 +266,13 @@ def _limits(row: PropellantRow, at: float, pressure: float | None) -> list[str]:
     warnings = []
     if row.freezing_point is not None and row.phase == "liquid" and at < row.freezing_point:
         warnings.append(
-            f"{row.name} at {at:g} K is below its freezing point ({row.freezing_point:g} K): the heat of fusion is left "
-            f"out."
+            f"{row.name} at {at:g} K is below its freezing point ({row.freezing_point:g} K): the heat of fusion is "
+            f"left out."
         )
     if row.freezing_point is not None and row.phase == "solid" and at > row.freezing_point:
         warnings.append(
-            f"{row.name} at {at:g} K is above its melting point ({row.freezing_point:g} K): the heat of fusion is left "
-            f"out."
+            f"{row.name} at {at:g} K is above its melting point ({row.freezing_point:g} K): the heat of fusion is "
+            f"left out."
         )
     if row.boiling_point is None or row.phase != "liquid":
         return warnings
@@ -284,8 +284,8 @@ def _limits(row: PropellantRow, at: float, pressure: float | None) -> list[str]:
         )
     if pressure is not None and pressure < 0.9 * boiling:
         warnings.append(
-            f"{row.name} at {at:g} K and {pressure / 1e5:.3g} bar is below its vapour pressure (about {boiling / 1e5:.2g} "
-            f"bar): it would boil. Taken as a liquid, the heat of vaporisation is left out."
+            f"{row.name} at {at:g} K and {pressure / 1e5:.3g} bar is below its vapour pressure (about "
+            f"{boiling / 1e5:.2g} bar): it would boil. Taken as a liquid, the heat of vaporisation is left out."
         )
     return warnings
 

@@ -7,7 +7,7 @@ from dataclasses import replace as changed
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, ClassVar, Self
 
-from propkit import quantities, units
+from propkit import units
 from propkit.bridge.stored_state import stored_state
 from propkit.chain.case import Stream
 from propkit.constants import REFERENCE_PRESSURE, REFERENCE_TEMPERATURE
@@ -16,6 +16,7 @@ from propkit.data.atomic_weights import ATOMIC_WEIGHTS
 from propkit.data.formula import molar_mass, parse_formula
 from propkit.data.propellant_row import PHASES, ROLES, PropellantRow
 from propkit.errors import InputError, Problem
+from propkit.model import propellant_sheet
 from propkit.model.base import Calculation, Outcome
 from propkit.model.declare import (
     Bounds,
@@ -29,12 +30,15 @@ from propkit.model.declare import (
     as_text,
 )
 from propkit.model.doubts import Doubt
+from propkit.model.propellant_table import propellants
 from propkit.physics.stoichiometry import VALENCES, net_valence
-from propkit.report import Column, Section, Table, UnitSystem
-from propkit.series import Axis, Bars, Figure, Series
+from propkit.report import Section, UnitSystem
+from propkit.series import Figure
 
 if TYPE_CHECKING:
     import pandas as pd
+
+__all__ = ["Propellant", "as_propellant", "of_row", "propellants"]
 
 _WITH_LIBRARY_NAME = (
     "name",
@@ -385,52 +389,13 @@ class Propellant(Calculation):
 
     def sections(self, system: UnitSystem) -> Iterator[Section]:
         """Yield identity, storage and source of the row, and what other sources give."""
-        row = self.row
-        lines = [f"Formula {row.formula}. State: {row.state_text}."]
-        if row.roles:
-            lines.append(f"Serves as {', '.join(row.roles)}.")
-        if row.density is not None:
-            at = f" at {row.density_temperature:g} K" if row.density_temperature else ""
-            lines.append(f"Density{at}: {row.density_source or 'no source stated'}.")
-        lines.append(f"Enthalpy: {row.source}.{f' Trust: {row.trust}.' if row.trust else ''}")
-        lines += [text for text in (row.note, row.impulse_note) if text]
-        yield Section("about", "About these data", lines=tuple(lines))
-        if row.other_values:
-            yield self._other_values(system)
-
-    def _other_values(self, system: UnitSystem) -> Section:
-        row = self.row
-        quantity = quantities.quantity("molar_enthalpy")
-        listed = (row.molar_enthalpy, *(other.molar_enthalpy for other in row.other_values))
-        unit = quantity.shown_in(system, listed)
-        values = tuple(units.convert(value, quantity.unit, unit) for value in listed)
-        difference = tuple(value - values[0] for value in values)
-        table = Table(
-            "sources",
-            "What the sources say",
-            "source",
-            ("used here", *(other.source for other in row.other_values)),
-            (
-                Column("molar_enthalpy", quantity.label, quantity.symbol, unit, quantity.digits, values),
-                Column("difference", "difference", "", unit, 3, difference),
-            ),
-        )
-        return Section("sources", table.title, table=table)
+        yield propellant_sheet.about(self.row)
+        if self.row.other_values:
+            yield propellant_sheet.other_values(self.row, system)
 
     def figures(self, system: UnitSystem = "SI") -> tuple[Figure, ...]:
         """Return what the propellant is made of: mass fraction of each element."""
-        row = self.row
-        parts = {symbol: count * ATOMIC_WEIGHTS[symbol] * 1e-3 / row.molar_mass for symbol, count in row.element_counts}
-        ordered = dict(sorted(parts.items(), key=lambda item: -item[1]))
-        bars = Bars(
-            tuple(ordered),
-            Series("mass fraction", tuple(100.0 * value for value in ordered.values()), "percent"),
-            tuple(f"{100.0 * value:.1f} %" for value in ordered.values()),
-            colour="accent",
-        )
-        alt = "Mass fractions: " + ", ".join(f"{symbol} {100.0 * value:.1f} %" for symbol, value in ordered.items())
-        axes = Axis("mass fraction", "percent", low=0.0, high=100.0), Axis("")
-        return (Figure("elements", "What it is made of", alt, *axes, layers=(bars,)),)
+        return (propellant_sheet.element_bars(self.row),)
 
     def recipe(self) -> dict[str, Any]:
         """Return a JSON-able mapping that rebuilds this propellant."""
@@ -479,65 +444,3 @@ def as_propellant(name: str, value: Any) -> Propellant:
     if isinstance(value, str):
         return Propellant(library_name=library_data.find(value, input_name=name).name)
     raise InputError(Problem(name, as_text(value), "a library name or a pk.Propellant", 'For example "LOX".'))
-
-
-def propellants(library: str | Path | None = None) -> pd.DataFrame:
-    """Return the library as a table, to search and to sort.
-
-    Parameters
-    ----------
-    library : str or Path, optional
-        A library file of one's own; the library that comes with propkit unless given.
-
-    Returns
-    -------
-    DataFrame
-        Index library name; columns title, role (the main one), roles, phase, formula, enthalpy (assigned, J/mol of the
-        formula), specific_enthalpy, molar_mass, temperature and pressure of the row, density, freezing_point,
-        boiling_point, vapour_pressure, hazard, source, trust, note. Numbers are SI floats; units in ``attrs["units"]``.
-    """
-    import pandas as pd
-
-    rows = library_data.library() if library is None else library_data.load_library(library)
-    frame = pd.DataFrame.from_records(
-        [_record_of(row) for row in rows.values()], index=pd.Index(list(rows), name="name")
-    )
-    frame.attrs["units"] = dict(_FRAME_UNITS)
-    return frame
-
-
-_FRAME_UNITS = {
-    "enthalpy": "J/mol",
-    "specific_enthalpy": "J/kg",
-    "molar_mass": "kg/mol",
-    "temperature": "K",
-    "pressure": "Pa",
-    "density": "kg/m**3",
-    "freezing_point": "K",
-    "boiling_point": "K",
-    "vapour_pressure": "Pa",
-}
-
-
-def _record_of(row: PropellantRow) -> dict[str, Any]:
-    nothing = float("nan")
-    return {
-        "title": row.title,
-        "role": row.role,
-        "roles": ", ".join(row.roles),
-        "phase": row.phase,
-        "formula": row.formula,
-        "enthalpy": row.molar_enthalpy,
-        "specific_enthalpy": row.specific_enthalpy,
-        "molar_mass": row.molar_mass,
-        "temperature": row.temperature,
-        "pressure": row.pressure,
-        "density": nothing if row.density is None else row.density,
-        "freezing_point": nothing if row.freezing_point is None else row.freezing_point,
-        "boiling_point": nothing if row.boiling_point is None else row.boiling_point,
-        "vapour_pressure": nothing if row.vapour_pressure is None else row.vapour_pressure,
-        "hazard": row.hazard,
-        "source": row.source,
-        "trust": row.trust,
-        "note": " ".join(text for text in (row.note, row.impulse_note) if text),
-    }
