@@ -156,6 +156,10 @@ def _reference_enthalpy(fluid: Any, row: PropellantRow) -> float:
 def _from_coolprop(row: PropellantRow, at: float, pressure: float | None) -> StoredState:
     fluid = _fluid(row)
     reference = _reference_enthalpy(fluid, row)
+    if at > fluid.Tmax():
+        raise RangeError(
+            f"{row.name} has no fluid state at {at:g} K: CoolProp has it up to {fluid.Tmax():g} K.", temperature=at
+        )
     warnings: list[str] = []
     if row.freezing_point is not None and at < row.freezing_point - 0.01:
         warnings.append(

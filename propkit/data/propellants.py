@@ -247,7 +247,7 @@ def _mixture_problems(
         if part in tables or row is not None:
             hint = "A mixture of mixtures is not read: write it out in its ingredients."
         else:
-            hint = _near_text(suggestions(part, rows or None))
+            hint = _near_text(suggestions(part, {**(library() if origin else {}), **rows}))
         problems.append(Problem(f"{file}: [{name}] mixture", repr(part), inside, hint))
     return problems
 
