@@ -284,8 +284,8 @@ class Criterion:
     """One separation criterion.
 
     `pressure(ambient, stagnation, mach)` gives the separation pressure [Pa] at a wall Mach number;
-    `ambient(exit_pressure, stagnation, exit_mach)` the ambient pressure [Pa] at which it holds at the lip; `relation` is
-    the key of the latter in `RELATIONS`.
+    `ambient(exit_pressure, stagnation, exit_mach)` the ambient pressure [Pa] at which it holds at the lip; `relation`
+    is the key of the latter in `RELATIONS`.
     """
 
     name: str
