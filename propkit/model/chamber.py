@@ -98,8 +98,6 @@ class Chamber(Calculation):
             pressure=self._values["pressure"],
             contraction_ratio=self._values["contraction_ratio"],
             pressure_at=self._values["pressure_at"],
-            condensed=case.condensed_products,
-            composition=case.fixed_composition,
         )
         combustion.raise_for_status(self.kind)
         face = combustion.injector

@@ -17,7 +17,7 @@ from propkit.model import sheet
 from propkit.model.base import Calculation, Outcome
 from propkit.model.declare import Bounds, ChoiceInput, CustomInput, NumberInput, NumberResult, QuantityInput, QuantityResult
 from propkit.model.doubts import Assumption, Doubt
-from propkit.model.propellant import Propellant
+from propkit.model.propellant import Propellant, as_propellant
 from propkit.report import Column, Section, Table, UnitSystem
 from propkit.series import Axis, Bars, Figure, Series
 
@@ -38,17 +38,6 @@ class CaseArrays:
     oxidizer: stage.Stream | None = None
     fuel: stage.Stream | None = None
     mixture_ratio: float = float("nan")
-
-
-def read_propellant(name: str, value: Any) -> Propellant:
-    """Return the propellant that `value` names or is."""
-    if isinstance(value, Propellant):
-        return value
-    if isinstance(value, str):
-        return Propellant.from_library(library.find(value, input_name=name).name)
-    raise InputError(
-        Problem(name, repr(value)[:60], "a name from pk.propellants() or a pk.Propellant", 'For example "LOX", or pk.Propellant(...) for one\'s own.')
-    )
 
 
 class PropellantCase(Calculation):
@@ -87,8 +76,8 @@ class PropellantCase(Calculation):
     headline = ("mixture_ratio", "equivalence_ratio", "bulk_density")
     groups = (("mixture_ratio", "equivalence_ratio"),)
 
-    oxidizer = CustomInput(doc="propellant that supplies the oxidizing elements", reader=read_propellant, kw_only=False)
-    fuel = CustomInput(doc="propellant that is burnt", reader=read_propellant, kw_only=False)
+    oxidizer = CustomInput(doc="propellant that supplies the oxidizing elements", reader=as_propellant, kw_only=False)
+    fuel = CustomInput(doc="propellant that is burnt", reader=as_propellant, kw_only=False)
     mixture_ratio = NumberInput(doc="oxidizer mass flow over fuel mass flow", default=None, bounds=_RATIOS)
     equivalence_ratio = NumberInput(doc="stoichiometric over actual mixture ratio; above 1 is fuel-rich", default=None, bounds=_RATIOS)
     oxidizer_temperature = QuantityInput(doc="temperature of the oxidizer as stored or fed", default=None, bounds=_TEMPERATURES)
@@ -179,7 +168,7 @@ class PropellantCase(Calculation):
     def _own_assumptions(self) -> tuple[Assumption, ...]:
         basis = self.si("thermo_basis")
         made = [
-            Assumption("basis", f"Thermodynamic basis {basis}: {bases.BASIS_TITLES[basis]}.", self.kind_of("thermo_basis"), "enthalpy"),
+            Assumption("basis", f"Thermodynamic basis {basis}: {bases.load_basis(str(basis)).title}.", self.kind_of("thermo_basis"), "enthalpy"),
             Assumption("ideal-gas", "Products are a mixture of ideal gases.", "method", "enthalpy"),
             Assumption("no-condensation", "Products are gases only: no liquid or solid forms.", "default", "composition"),
         ]

@@ -15,6 +15,7 @@ CLASSES = {
     "Nozzle": "propkit.model.nozzle",
     "Performance": "propkit.model.performance",
     "Propellant": "propkit.model.propellant",
+    "Blend": "propkit.model.blend",
 }
 """Class name -> module. A recipe that names anything else is refused."""
 

@@ -133,6 +133,22 @@ def composition_table(fractions: Iterable[tuple[str, float]], note: str = "") ->
     return Section("composition", "Composition", table=table)
 
 
+def composition_along(stations: list[tuple[str, list[tuple[str, float]]]], smallest: float = 1e-4) -> Section | None:
+    """Return mole fractions with stations across, species down, the largest at the first station first; None without composition."""
+    if not stations:
+        return None
+    shown: dict[str, None] = {}
+    for _, pairs in stations:
+        shown.update({name: None for name, value in pairs if value >= smallest})
+    first = dict(stations[0][1])
+    names = sorted(shown, key=lambda name: -first[name])
+    columns = tuple(
+        Column(station, station, "x", "", 5, tuple(dict(pairs)[name] for name in names)) for station, pairs in stations
+    )
+    note = f"Mole fractions, species of {smallest:g} and above at some station."
+    return Section("composition", "Composition", table=Table("composition", "Composition", "species", tuple(names), columns, note))
+
+
 def assumption_section(calculation: Calculation) -> Section:
     """Return the assumptions in words."""
     lines = tuple(f"{entry.statement}{' (default)' if entry.origin == 'default' else ''}" for entry in calculation.assumptions)

@@ -1,0 +1,171 @@
+"""Chamber stage: combustion to equilibrium at the injector face, and the nozzle-inlet state that follows from it."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+
+from propkit.bridge.basis import load_basis
+from propkit.chain import outcome, warnings
+from propkit.chain.case import Mixture
+from propkit.constants import GAS_CONSTANT
+from propkit.physics import combustor, equilibrium, expansion, gas_dynamics
+from propkit.physics.arrays import Array, Values, values
+from propkit.physics.equilibrium import EquilibriumState
+from propkit.physics.expansion import FlowState
+from propkit.physics.thermodynamics import SpeciesTable
+
+INJECTOR_RESULTS = (
+    "pressure", "temperature", "density", "molar_mass", "gas_constant", "isentropic_exponent", "frozen_isentropic_exponent",
+    "specific_heat", "frozen_specific_heat", "sound_speed",
+)  # fmt: skip
+"""Results of the chamber that are properties of the state at the injector face."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Combustion:
+    """Combustion of a batch: the state at the injector face, at the nozzle inlet and brought to rest there.
+
+    `inlet` is the static state at the nozzle inlet (that of `stagnation` where the contraction is infinite), `throat` the throat of
+    shifting flow, `characteristic_velocity` the theoretical value [m/s]. `contraction_ratio` is infinite where not given.
+    """
+
+    table: SpeciesTable
+    atoms: Array
+    enthalpy: Array
+    injector: EquilibriumState
+    inlet: EquilibriumState
+    inlet_velocity: Array
+    stagnation: EquilibriumState
+    throat: FlowState
+    contraction_ratio: Array
+    characteristic_velocity: Array
+
+    def raise_for_status(self, what: str, index: int = 0) -> None:
+        """Raise when a case has no solution."""
+        outcome.raise_for(self.injector, "combustion at the injector face", index)
+        outcome.raise_for(self.stagnation, "stagnation state at the nozzle inlet", index)
+        outcome.raise_for(self.throat, "throat", index)
+
+    def composition(self, index: int = 0) -> list[tuple[str, float]]:
+        """Return species and mole fractions at the injector face, the largest first."""
+        return sorted_fractions(self.table, self.injector.amounts[index])
+
+    def injector_values(self, index: int = 0) -> dict[str, float]:
+        """Return the state at the injector face as the properties of a station."""
+        face = self.injector
+        values_there = {name: float(getattr(face, name)[index]) for name in ("pressure", "temperature", "density")}
+        values_there |= {"velocity": 0.0, "mach": 0.0}
+        values_there |= {name: float(getattr(face, name)[index]) for name in ("sound_speed", "molar_mass", "isentropic_exponent", "enthalpy", "entropy")}
+        return values_there
+
+    def doubts(self, index: int = 0) -> Iterator[tuple[str, str, str]]:
+        """Yield doubts as text, code and the result they are about."""
+        yield from warnings.composition_range(self.table, self.injector.amounts[index], float(self.injector.temperature[index]), "the injector face", "temperature")
+        yield from warnings.supersaturation(self.table, self.injector.take([index]), "the injector face", "temperature")
+
+
+def combust(
+    mixture: Mixture,
+    basis: str,
+    *,
+    pressure: Values,
+    contraction_ratio: Values = np.inf,
+    pressure_at: str = "injector",
+) -> Combustion:
+    """Return the combustion of a mixture at each pressure.
+
+    Parameters
+    ----------
+    mixture : Mixture
+        Atoms and enthalpy per mass, a batch.
+    basis : str
+        Name of the thermodynamic basis.
+    pressure : float or array
+        Quoted chamber pressure [Pa], read as `pressure_at` says.
+    contraction_ratio : float or array
+        Chamber area over effective throat area [1], above 1; infinite for a chamber at rest.
+    pressure_at : str
+        ``"injector"``, ``"nozzle stagnation"`` or ``"nozzle inlet static"``.
+    """
+    table = load_basis(basis).table(mixture.symbols)
+    count = len(mixture.atoms)
+    p = np.broadcast_to(values(pressure), (count,)).astype(float)
+    ratio = np.broadcast_to(values(contraction_ratio), (count,)).astype(float)
+    if np.isfinite(ratio).any():
+        return _contracted(table, mixture, p, ratio, pressure_at)
+    face = equilibrium.solve(table, mixture.atoms, pressure=p, enthalpy=mixture.enthalpy)
+    throat = expansion.throat(expansion.shifting(table, mixture.atoms, face))
+    cstar = p / throat.mass_flux
+    return Combustion(table, mixture.atoms, mixture.enthalpy, face, face, np.zeros(count), face, throat, ratio, cstar)
+
+
+def _contracted(table: SpeciesTable, mixture: Mixture, pressure: Array, ratio: Array, pressure_at: str) -> Combustion:
+    found = combustor.combustor(table, mixture.atoms, mixture.enthalpy, pressure, ratio, pressure_at)
+    cstar = found.stagnation.pressure / found.throat.mass_flux
+    return Combustion(
+        table, mixture.atoms, mixture.enthalpy, found.injector, found.inlet, found.inlet_velocity, found.stagnation, found.throat, ratio, cstar
+    )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class GivenGas:
+    """A gas of given properties at rest and at the nozzle inlet, a batch."""
+
+    isentropic_exponent: Array
+    gas_constant: Array
+    temperature: Array
+    injector_pressure: Array
+    stagnation_pressure: Array
+    contraction_ratio: Array
+    characteristic_velocity: Array
+
+    def raise_for_status(self, what: str, index: int = 0) -> None:
+        """Do nothing: closed forms always converge."""
+
+    def specific_heat(self, index: int = 0) -> float:
+        """Return the isobaric heat capacity [J/(kg K)]."""
+        gamma = float(self.isentropic_exponent[index])
+        return gamma / (gamma - 1.0) * float(self.gas_constant[index])
+
+    def injector_values(self, index: int = 0) -> dict[str, float]:
+        """Return the state at the injector face as the properties of a station."""
+        pressure, temperature = float(self.injector_pressure[index]), float(self.temperature[index])
+        gas_constant, gamma = float(self.gas_constant[index]), float(self.isentropic_exponent[index])
+        return {
+            "pressure": pressure,
+            "temperature": temperature,
+            "density": pressure / (gas_constant * temperature),
+            "velocity": 0.0,
+            "mach": 0.0,
+            "sound_speed": float(np.sqrt(gamma * gas_constant * temperature)),
+            "molar_mass": GAS_CONSTANT / gas_constant,
+            "isentropic_exponent": gamma,
+        }
+
+
+def given_gas(
+    *,
+    pressure: Values,
+    temperature: Values,
+    gas_constant: Values,
+    isentropic_exponent: Values,
+    contraction_ratio: Values = np.inf,
+    pressure_at: str = "injector",
+) -> GivenGas:
+    """Return the reservoir of a gas of constant properties; arguments as for `combust`, temperature at rest [K]."""
+    arrays = np.broadcast_arrays(*(np.atleast_1d(values(v)) for v in (pressure, temperature, gas_constant, isentropic_exponent, contraction_ratio)))
+    p, t, r, gamma, ratio = (np.array(array, dtype=float) for array in arrays)
+    injector, stagnation = combustor.constant_property_pressures(p, gamma, ratio, pressure_at)
+    cstar = gas_dynamics.characteristic_velocity(t, r, gamma)
+    return GivenGas(gamma, r, t, injector, stagnation, ratio, np.asarray(cstar))
+
+
+def sorted_fractions(table: SpeciesTable, amounts: Array) -> list[tuple[str, float]]:
+    """Return species and mole fractions, the largest first."""
+    fractions = amounts / amounts.sum()
+    order = np.argsort(-fractions, kind="stable")
+    return [(table.names[k], float(fractions[k])) for k in order]
+

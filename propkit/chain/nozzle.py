@@ -1,0 +1,133 @@
+"""Nozzle stage: expansion of a reservoir to its throat and exit in the chosen flow model."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from propkit.chain import outcome, warnings
+from propkit.chain.chamber import Combustion, GivenGas, sorted_fractions
+from propkit.physics import expansion
+from propkit.physics.arrays import Array, Values, values
+from propkit.physics.expansion import FlowState, Isentrope
+from propkit.physics.thermodynamics import SpeciesTable
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Expansion:
+    """Expansion of a batch: inlet, throat and exit states and the flow per effective throat area.
+
+    `mass_flux` [kg/(m2 s)] is that of the throat; `area_ratio` [1] is exit area over effective throat area; `isentrope` holds the flow
+    model, `table` its species (None for a gas of given properties).
+    """
+
+    isentrope: Isentrope
+    inlet: FlowState
+    throat: FlowState
+    exit: FlowState
+    mass_flux: Array
+    area_ratio: Array
+    table: SpeciesTable | None
+
+    def raise_for_status(self, what: str, index: int = 0) -> None:
+        """Raise when a case has no solution."""
+        for state, where in ((self.throat, "throat"), (self.exit, "exit of the nozzle"), (self.inlet, "nozzle inlet")):
+            outcome.raise_for(state, where, index)
+
+    def doubts(self, index: int = 0) -> Iterator[tuple[str, str]]:
+        """Yield doubts about the states as text and the result they are about."""
+        if self.table is None:
+            return
+        for state, where in ((self.throat, "the throat"), (self.exit, "the exit")):
+            if state.amounts is None:
+                continue
+            for text, _, about in warnings.composition_range(self.table, state.amounts[index], float(state.temperature[index]), where, "stations"):
+                yield text, about
+            for text, _, about in warnings.supersaturation(self.table, state.take([index]), where, "stations"):
+                yield text, about
+
+    def compositions(self, index: int = 0) -> list[tuple[str, list[tuple[str, float]]]]:
+        """Return station and (species, mole fraction) pairs for the stations; empty for a gas of given properties."""
+        if self.table is None:
+            return []
+        listed = (("nozzle inlet", self.inlet), ("throat", self.throat), ("exit", self.exit))
+        return [(name, sorted_fractions(self.table, state.amounts[index])) for name, state in listed if state.amounts is not None]
+
+
+def expand(
+    reservoir: Combustion | GivenGas,
+    *,
+    flow: str,
+    freeze_at: str | float | None = None,
+    exponent: str | None = None,
+    area_ratio: Values | None = None,
+    exit_pressure: Values | None = None,
+) -> Expansion:
+    """Return the expansion of a reservoir in a flow model to an area ratio or an exit pressure.
+
+    Parameters
+    ----------
+    reservoir : Combustion or GivenGas
+        What the chamber stage yields.
+    flow : str
+        ``"shifting"``, ``"frozen"`` or ``"constant-property"``.
+    freeze_at : str or float
+        Frozen flow: ``"chamber"``, ``"throat"`` or a supersonic area ratio over the effective throat.
+    exponent : str
+        Constant-property flow of a chamber gas: ``"equilibrium"`` or ``"frozen"``.
+    area_ratio, exit_pressure : float or array
+        One of exit area over effective throat area [1] and static exit pressure [Pa].
+    """
+    isentrope = _isentrope(reservoir, flow, freeze_at, exponent)
+    throat = expansion.throat(isentrope)
+    flux = throat.mass_flux
+    if area_ratio is not None:
+        ratio = np.broadcast_to(values(area_ratio), flux.shape).astype(float)
+        exit_state = expansion.at_area_ratio(isentrope, flux, ratio, throat)
+    else:
+        pressure = np.broadcast_to(values(exit_pressure), flux.shape).astype(float)  # type: ignore[arg-type]
+        exit_state = expansion.at_pressure(isentrope, np.minimum(pressure, throat.pressure), throat)
+        ratio = flux / exit_state.mass_flux
+    inlet = _inlet(reservoir, isentrope, throat)
+    return Expansion(isentrope, inlet, throat, exit_state, flux, ratio, getattr(reservoir, "table", None))
+
+
+def _isentrope(reservoir: Combustion | GivenGas, flow: str, freeze_at: str | float | None, exponent: str | None) -> Isentrope:
+    if isinstance(reservoir, GivenGas):
+        return expansion.perfect_gas(reservoir.isentropic_exponent, reservoir.gas_constant, reservoir.temperature, reservoir.stagnation_pressure)
+    rest = reservoir.stagnation
+    shifting = expansion.shifting(reservoir.table, reservoir.atoms, rest)
+    if flow == "shifting":
+        return shifting
+    if flow == "constant-property":
+        gamma = rest.isentropic_exponent if exponent == "equilibrium" else rest.frozen_isentropic_exponent
+        return expansion.perfect_gas(gamma, rest.gas_constant, rest.temperature, rest.pressure, rest.enthalpy, rest.entropy)
+    if freeze_at == "chamber":
+        inlet = reservoir.inlet
+        return expansion.frozen(reservoir.table, inlet.amounts, rest.enthalpy, rest.entropy, rest.pressure, rest.temperature)
+    return expansion.frozen_from(shifting, reservoir.throat, None if freeze_at == "throat" else float(freeze_at))  # type: ignore[arg-type]
+
+
+def _inlet(reservoir: Combustion | GivenGas, isentrope: Isentrope, throat: FlowState) -> FlowState:
+    """Return the state at the contraction ratio, or at rest where the contraction is infinite."""
+    ratio = reservoir.contraction_ratio
+    finite = np.isfinite(ratio)
+    rest = expansion.at_pressure(isentrope, isentrope.pressure)
+    if not finite.any():
+        return rest
+    return expansion.at_area_ratio(isentrope, throat.mass_flux, np.where(finite, ratio, 1e6), throat, supersonic=False)
+
+
+def state_at(found: Expansion, *, area_ratio: float | None = None, pressure: float | None = None, supersonic: bool = True) -> FlowState:
+    """Return the state at a local area over effective throat area, or at a pressure [Pa]."""
+    if pressure is not None:
+        return expansion.at_pressure(found.isentrope, pressure, found.throat)
+    return expansion.at_area_ratio(found.isentrope, found.mass_flux, np.array([area_ratio]), found.throat, supersonic)
+
+
+def raise_for(state: FlowState, what: str, found: Any) -> None:
+    """Raise when the state asked for has no solution."""
+    outcome.raise_for(state, f"state at {what}")

@@ -1,0 +1,44 @@
+"""From the status of a batch to an error that carries the state: a case that does not converge is never a number."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+
+from propkit.errors import ConvergenceError, RangeError
+
+CONVERGED, NOT_CONVERGED, OUT_OF_RANGE = 0, 1, 2
+
+
+def raise_for(state: Any, what: str, index: int = 0) -> None:
+    """Raise when a case of a batch has no solution.
+
+    Parameters
+    ----------
+    state : EquilibriumState or FlowState
+        Batch with `status` and, where it has them, `iterations` and `residual`.
+    what : str
+        What was being solved, for the message.
+    index : int
+        Case of the batch.
+
+    Raises
+    ------
+    RangeError
+        When there is no solution inside the range of the data.
+    ConvergenceError
+        When the iteration did not converge.
+    """
+    status = int(np.atleast_1d(state.status)[index])
+    if status == CONVERGED:
+        return
+    carried = {name: _scalar(getattr(state, name), index) for name in ("pressure", "temperature", "iterations", "residual") if getattr(state, name, None) is not None}
+    reached = ", ".join(f"{name} {value:.6g}" for name, value in carried.items() if np.isfinite(value))
+    if status == OUT_OF_RANGE:
+        raise RangeError(f"The {what} has no solution inside the range of the species data (state reached: {reached}).", **carried)
+    raise ConvergenceError(f"The {what} did not converge (state reached: {reached}). Nothing is returned rather than a doubtful number.", **carried)
+
+
+def _scalar(values: Any, index: int) -> float:
+    return float(np.atleast_1d(values)[index])
