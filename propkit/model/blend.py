@@ -75,15 +75,8 @@ class Blend(Propellant):
     """
 
     title: ClassVar[str] = "Blend"
-    undeclared: ClassVar[tuple[str, ...]] = (
-        "formula",
-        "enthalpy",
-        "temperature",
-        "pressure",
-        "phase",
-        "heat_capacity",
-        "heat_capacity_range",
-        "library_name",
+    undeclared: ClassVar[tuple[str, ...]] = tuple(
+        name for name in Propellant.declared_inputs if name not in ("density", "role", "hazard", "source", "name")
     )
 
     ingredients: CustomInput = CustomInput(
@@ -127,7 +120,7 @@ class Blend(Propellant):
         return PropellantRow(
             name=name,
             title=values["name"] or _name_of(parts),
-            roles=(values["role"],) if values["role"] else _roles_of([row for row, _ in parts]),
+            roles=values["role"] or _roles_of([row for row, _ in parts]),
             phase=main.phase,
             formula=formula_text(elements),
             element_counts=tuple(elements.items()),
@@ -137,7 +130,7 @@ class Blend(Propellant):
             pressure=max(row.pressure for row, _ in parts),
             hazard=values["hazard"] or _hazard_of(parts),
             source=values["source"] or f"sum over {', '.join(row.name for row, _ in parts)}, {self._mixing_text()}",
-            trust=max((row.trust for row, _ in parts if row.trust in TRUST), key=TRUST.index, default=""),
+            trust=_trust_of([row.trust for row, _ in parts]),
             components=tuple(parts),
             mixing_enthalpy=mixing,
             density=density,
@@ -163,10 +156,10 @@ class Blend(Propellant):
         weak = [part.name for part, _ in row.components if part.trust == "weak"]
         if weak:
             text = f"The enthalpy of {', '.join(weak)} is an estimate or its sources disagree."
-            yield Doubt(text, code="weak enthalpy", about="specific_enthalpy")
+            yield Doubt(text, code="weak-enthalpy", about="specific_enthalpy")
         known = _library_mixing(row) if self._values["mixing_enthalpy"] is None else ""
         if known:
-            yield Doubt(f"Heat of mixing neglected. {known}", code="mixing heat", about="specific_enthalpy")
+            yield Doubt(f"Heat of mixing neglected. {known}", code="mixing-heat", about="specific_enthalpy")
         temperatures = [part.temperature for part, _ in row.components]
         if max(temperatures) - min(temperatures) > _SAME_TEMPERATURE:
             listed = ", ".join(f"{part.name} {part.temperature:g} K" for part, _ in row.components)
@@ -184,6 +177,8 @@ class Blend(Propellant):
         """Return what reading the attribute `name` gives."""
         if name == "ingredients":
             return {part.label: share for part, share in self._values["ingredients"]}
+        if name == "mixing_enthalpy" and self._values[name] is None:
+            return None
         return super().attribute(name)
 
     def input_text(self, name: str) -> str:
@@ -224,12 +219,6 @@ class Blend(Propellant):
         pairs = given.pop("ingredients")
         inside = ", ".join(f"{part!r}: {share!r}" for part, share in pairs)
         return "pk.blend({" + inside + "}" + "".join(f", {name}={value!r}" for name, value in given.items()) + ")"
-
-    def recipe(self) -> dict[str, Any]:
-        """Return a JSON-able mapping that rebuilds this blend."""
-        made = super().recipe()
-        made["object"] = "Blend"
-        return made
 
 
 def blend(
@@ -300,6 +289,11 @@ def _mass_of(row: PropellantRow, by: str) -> float:
 
 def _name_of(parts: Sequence[tuple[PropellantRow, float]]) -> str:
     return " + ".join(f"{100.0 * share:.3g} % {row.name}" for row, share in parts)
+
+
+def _trust_of(trusts: Sequence[str]) -> str:
+    """Return the least of the trusts; empty when one is not known."""
+    return max(trusts, key=TRUST.index) if all(trust in TRUST for trust in trusts) else ""
 
 
 def _ideal_density(parts: Sequence[tuple[PropellantRow, float]]) -> float | None:

@@ -2,11 +2,26 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 from propkit import quantities, units
 from propkit.data.atomic_weights import ATOMIC_WEIGHTS
 from propkit.data.propellant_row import PropellantRow
+from propkit.model.sheet import row_of
 from propkit.report import Column, Section, Table, UnitSystem
 from propkit.series import Axis, Bars, Figure, Series
+
+if TYPE_CHECKING:
+    from propkit.model.propellant import Propellant
+
+
+def limits(propellant: Propellant, names: tuple[str, ...], system: UnitSystem) -> Section:
+    """Return the state of the data and the storage limits, as far as known."""
+    shown = [name for name in names if name in propellant.declared_inputs and propellant.has(name)]
+    shown = [name for name in shown if name not in propellant.inputs]
+    return Section(
+        "storage", "State and storage limits", rows=tuple(row_of(propellant, name, system) for name in shown)
+    )
 
 
 def about(row: PropellantRow) -> Section:
