@@ -168,7 +168,7 @@ class Blend(Propellant):
 
     def _own_assumptions(self) -> tuple[Assumption, ...]:
         origin = "default" if self._values["mixing_enthalpy"] is None else "given"
-        made = [Assumption("mixing", f"{self._mixing_text().capitalize()}.", origin, "specific_enthalpy")]
+        made = [Assumption("mixing", f"H{self._mixing_text()[1:]}.", origin, "specific_enthalpy")]
         if self._values["density"] is None and self.row.density is not None:
             made.append(Assumption("ideal-volumes", "Volumes of the ingredients add up.", "default", "density"))
         return tuple(made)
@@ -271,7 +271,9 @@ def blend(
     given: dict[str, Any] = {key: value for key, value in optional.items() if value is not None}
     if name:
         given["name"] = name
-    return Blend(typed, by=by, **given)
+    if by != "mass":
+        given["by"] = by
+    return Blend(typed, **given)
 
 
 def _is_pairs(pairs: Any) -> bool:
