@@ -46,6 +46,11 @@ def reach(method: str) -> Callable[..., Any]:
     return served
 
 
+def render(report: Report, medium: str) -> str:
+    """Render a report; the view is imported when something is shown, not before."""
+    return reach("render")(report, medium)  # type: ignore[no-any-return]
+
+
 @dataclass(slots=True)
 class Outcome:
     """What a calculation yields: eager results in SI, why others are absent, doubts, and what downstream needs."""
@@ -362,7 +367,7 @@ class Calculation:
         """
         from propkit.model import sheet
 
-        return sheet.report_of(self, _unit_system(units), reach("render"))
+        return sheet.report_of(self, _unit_system(units), render)
 
     def to_frame(self, units: UnitSystem = "SI") -> pd.DataFrame:
         """Return inputs and results as a table: index public name; columns symbol, value, unit, kind, relation, source."""
@@ -380,7 +385,7 @@ class Calculation:
         """
         from propkit.model import working
 
-        return working.working_of(self, result, _unit_system(units), reach("render"))
+        return working.working_of(self, result, _unit_system(units), render)
 
     def record(self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "") -> Any:
         """Return the calculation record of the whole chain, which a reviewer can recompute."""

@@ -122,6 +122,11 @@ class Performance(Calculation):
     """Exit pressure over ambient pressure below which separation is to be expected (Summerfield et al. 1954: 0.4)."""
 
     @property
+    def delivered_velocity(self) -> float:
+        """Delivered velocity at the exit [m/s]: the ideal one times the c* efficiency."""
+        return float(self.nozzle.exit.si("velocity") * self.nozzle.chamber.si("cstar_efficiency"))
+
+    @property
     def chamber(self) -> Any:
         """The chamber upstream."""
         return self.nozzle.chamber

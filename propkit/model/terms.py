@@ -1,0 +1,215 @@
+"""Which relation gives a result, the numbers that go into it, and the conditions that an iterated state satisfies."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from typing import Any
+
+import numpy as np
+
+from propkit.constants import GAS_CONSTANT
+from propkit.model.conditions import condition, element_conditions
+from propkit.physics import stoichiometry
+from propkit.report import Step
+
+SIZED = {
+    "throat_diameter": "circle_diameter",
+    "exit_diameter": "circle_diameter",
+    "throat_area": "circle_area",
+    "exit_area": "circle_area",
+}
+
+
+def key_for(link: Any, name: str) -> str:
+    """Return the key of the relation that gives a result of this recipe, or of its conditions."""
+    entry = link.declared_results.get(name)
+    if link.kind == "nozzle":
+        return _nozzle_key(link, name) or (entry.relation if entry is not None else "")
+    if entry is None:
+        return name
+    if name == "mass_flow" and link.kind == "performance":
+        return key_for(link.nozzle, name) or "mass_flow"
+    if name.endswith("_vacuum"):
+        return name.removesuffix("_vacuum")
+    return str(entry.relation)
+
+
+def _nozzle_key(nozzle: Any, name: str) -> str:
+    given = set(nozzle.inputs)
+    if name == "mass_flow":
+        return "mass_flow"
+    if name in ("throat_diameter", "exit_diameter"):
+        return "circle_diameter"
+    if name == "throat_area":
+        if "throat_diameter" in given:
+            return "circle_area"
+        if "mass_flow" in given:
+            return "throat_area_for_mass_flow"
+        return "throat_area_for_thrust" if "thrust" in given else "throat_area_of_exit"
+    if name == "exit_area":
+        return "circle_area" if "exit_diameter" in given else "exit_area_of_ratio"
+    if name == "area_ratio":
+        return "area_ratio_of_fluxes" if "exit_pressure" in given else "area_ratio_of_areas"
+    return ""
+
+
+def values_for(link: Any, key: str, name: str) -> dict[str, float]:
+    """Return the numbers that go into a relation [SI], by the names that the relation uses."""
+    return {"case": _case, "chamber": _chamber, "nozzle": _nozzle, "performance": _performance}[link.kind](link, key, name)
+
+
+def _case(case: Any, key: str, name: str) -> dict[str, float]:
+    held = case.held
+    found = {entry: case.si(entry) for entry in ("mixture_ratio", "equivalence_ratio", "stoichiometric_mixture_ratio") if case.has(entry)}
+    for role in ("oxidizer", "fuel"):
+        stream = getattr(held, role)
+        if stream is not None:
+            found |= {
+                f"{role}_enthalpy": float(stream.enthalpy),
+                f"{role}_density": float(stream.density),
+                f"{role}_valence": stoichiometry.net_valence(stream.elements),
+            }
+    return found
+
+
+def _chamber(chamber: Any, key: str, name: str) -> dict[str, float]:
+    names = ("pressure", "temperature", "density", "gas_constant", "molar_mass", "isentropic_exponent", "frozen_specific_heat", "sound_speed", "stagnation_pressure")
+    found = {entry: chamber.si(entry) for entry in names if chamber.has(entry)}
+    found["stagnation_temperature"] = found["temperature"]
+    return found
+
+
+def _nozzle(nozzle: Any, key: str, name: str) -> dict[str, float]:
+    chamber, held = nozzle.chamber, nozzle.held
+    found = {entry: nozzle.si(entry) for entry in ("throat_area", "exit_area", "mass_flow", "discharge_coefficient", "area_ratio", "characteristic_velocity")}
+    found |= {
+        "throat_mass_flux": float(held.mass_flux[0]),
+        "local_mass_flux": nozzle.exit.si("density") * nozzle.exit.si("velocity") / nozzle.si("discharge_coefficient"),
+        "cstar_efficiency": chamber.si("cstar_efficiency"),
+        "stagnation_pressure": chamber.si("stagnation_pressure"),
+    }
+    if key == "circle_area":
+        found["diameter"] = nozzle.si(name.replace("area", "diameter"))
+    if key == "circle_diameter":
+        found["area"] = nozzle.si(name.replace("diameter", "area"))
+    if key == "throat_area_for_thrust":
+        found["thrust"] = nozzle.si("thrust")
+        found["thrust_coefficient"] = nozzle.si("thrust") / (found["stagnation_pressure"] * found["throat_area"])
+    return found
+
+
+def _performance(performance: Any, key: str, name: str) -> dict[str, float]:
+    nozzle = performance.nozzle
+    if name == "mass_flow":
+        return _nozzle(nozzle, key, name)
+    suffix = "_vacuum" if name.endswith("_vacuum") else ""
+    found = {
+        "mass_flow": performance.si("mass_flow"),
+        "thrust": performance.si(f"thrust{suffix}"),
+        "specific_impulse": performance.si("specific_impulse"),
+        "exit_velocity": performance.delivered_velocity,
+        "exit_pressure": nozzle.exit.si("pressure"),
+        "ambient_pressure": 0.0 if suffix else performance.si("ambient"),
+        "exit_area": nozzle.si("exit_area"),
+        "throat_area": nozzle.si("throat_area"),
+        "stagnation_pressure": nozzle.chamber.si("stagnation_pressure"),
+    }
+    case = nozzle.chamber.case_or_none
+    if case is not None:
+        found |= {entry: case.si(entry) for entry in ("mixture_ratio", "bulk_density") if case.has(entry)}
+    return found
+
+
+def supporting(link: Any, name: str) -> Iterator[tuple[str, str, Mapping[str, float]]]:
+    """Yield (name, relation key, numbers) of the relations that feed the first one."""
+    nozzle = {"nozzle": lambda: link, "performance": lambda: link.nozzle}.get(link.kind)
+    if nozzle is None:
+        return
+    flow = nozzle()
+    if name in ("mass_flow", "throat_area", "throat_diameter", "characteristic_velocity"):
+        throat = {entry: flow.throat.si(entry) for entry in ("density", "velocity")}
+        yield "throat_mass_flux", "mass_flux", throat
+        if flow.flow == "constant-property":
+            yield "mass_flow_in_closed_form", "choked_mass_flux", reservoir_of(flow)
+    if name.startswith(("thrust", "specific_impulse", "effective_exhaust")) and link.kind == "performance":
+        yield "delivered_velocity", "delivered_velocity", {
+            "exit_velocity": flow.exit.si("velocity"),
+            "cstar_efficiency": flow.chamber.si("cstar_efficiency"),
+            "divergence_factor": 1.0,
+        }
+
+
+def reservoir_of(nozzle: Any) -> dict[str, float]:
+    """Return the reservoir of constant-property flow as the closed forms name it."""
+    gas = nozzle.held.isentrope
+    return {
+        "stagnation_pressure": float(gas.pressure[0]),
+        "stagnation_temperature": float(gas.temperature[0]),
+        "gas_constant": float(gas.gas_constant[0]),
+        "isentropic_exponent": float(gas.gamma[0]),
+    }
+
+
+def conditions(link: Any, name: str) -> Iterator[Step]:
+    """Yield the conditions that the iterated states behind a result satisfy."""
+    if link.kind == "case":
+        return
+    if link.kind == "chamber":
+        if link.upstream is not None:
+            yield from _chamber_conditions(link, name)
+        return
+    nozzle = link if link.kind == "nozzle" else link.nozzle
+    if name in ("mass_flow", "throat_area", "throat_diameter", "characteristic_velocity"):
+        yield from state_conditions(nozzle, "throat")
+    elif link.kind == "performance" or name in ("exit_area", "exit_diameter", "area_ratio", "exit_pressure"):
+        yield from state_conditions(nozzle, "exit")
+
+
+def _chamber_conditions(chamber: Any, name: str) -> Iterator[Step]:
+    held = chamber.held
+    face = held.injector
+    yield condition(
+        "enthalpy", "enthalpy at the injector face [J/kg]", "enthalpy of the products = enthalpy of the propellants",
+        r"\sum_j n_j H_j(T) = h", float(face.enthalpy[0]), float(held.enthalpy[0]), "conservation",
+        scale=float(face.gas_constant[0] * face.temperature[0]),
+    )  # fmt: skip
+    yield from element_conditions(held.table.elements, held.atoms[0], face.amounts[0] @ held.table.composition)
+    if name == "characteristic_velocity":
+        throat = held.throat
+        yield condition("mach", "Mach number at the throat", "u = a", "M_t = 1", float(throat.velocity[0]), float(throat.sound_speed[0]), "conservation")
+        flux = float(held.stagnation.pressure[0]) / float(throat.mass_flux[0])
+        yield condition("cstar", "characteristic velocity [m/s]", "c* = p0 / (rho u) at the throat", r"c^{*} = p_0 / (\rho u)_t", chamber.si(name), flux, "definition")
+    if np.isfinite(held.contraction_ratio[0]) and name in ("stagnation_pressure", "pressure", "characteristic_velocity"):
+        yield from _combustor_conditions(held)
+
+
+def _combustor_conditions(held: Any) -> Iterator[Step]:
+    inlet, velocity = held.inlet, float(held.inlet_velocity[0])
+    density, pressure = float(inlet.density[0]), float(inlet.pressure[0])
+    face = float(held.injector.pressure[0])
+    yield condition("combustor_momentum", "momentum from the face to the nozzle inlet [Pa]", "p + rho u^2 = p at the face", r"p + \rho u^2 = p_{inj}", pressure + density * velocity**2, face, "conservation")
+    rest = float(inlet.enthalpy[0]) + 0.5 * velocity**2
+    scale = float(inlet.gas_constant[0] * inlet.temperature[0])
+    yield condition("combustor_energy", "energy from the face to the nozzle inlet [J/kg]", "h + u^2/2 = h at the face", r"h + u^2/2 = h", rest, float(held.enthalpy[0]), "conservation", scale)
+    flux = float(held.throat.mass_flux[0])
+    yield condition("combustor_mass", "mass flow over throat area [kg/(m2 s)]", "rho u at the inlet times the contraction ratio = rho u at the throat", r"\rho u \epsilon_c = (\rho u)_t", density * velocity * float(held.contraction_ratio[0]), flux, "conservation")
+
+
+def state_conditions(nozzle: Any, state: str) -> Iterator[Step]:
+    """Yield the conditions that a state of the nozzle satisfies."""
+    held = nozzle.held
+    there = getattr(held, state)
+    isentrope = held.isentrope
+    gas_constant = GAS_CONSTANT / float(there.molar_mass[0])
+    rest = float(there.enthalpy[0]) + 0.5 * float(there.velocity[0]) ** 2
+    scale = gas_constant * float(there.temperature[0])
+    if state == "throat":
+        yield condition("mach", "Mach number at the throat", "u = a", "M_t = 1", float(there.velocity[0]), float(there.sound_speed[0]), "conservation")
+    if state == "exit":
+        ratio = float(held.mass_flux[0] / there.mass_flux[0])
+        yield condition("area_ratio", "area ratio of the flow", "rho u at the throat over rho u at the exit = area ratio over discharge coefficient", r"(\rho u)_t / (\rho u)_e = \epsilon / C_d", ratio, float(held.area_ratio[0]), "conservation")
+    yield condition("stagnation_enthalpy", f"energy at the {state} [J/kg]", "h + u^2/2 = stagnation enthalpy", r"h + u^2/2 = h_0", rest, float(isentrope.enthalpy[0]), "conservation", scale)
+    yield condition("entropy", f"entropy at the {state} [J/(kg K)]", "s = entropy of the reservoir", r"s = s_0", float(there.entropy[0]), float(isentrope.entropy[0]), "conservation", gas_constant)
+    if held.table is not None and there.amounts is not None:
+        chamber = nozzle.chamber.held
+        yield from element_conditions(held.table.elements, chamber.atoms[0], there.amounts[0] @ held.table.composition)
