@@ -45,7 +45,7 @@ def test_the_change_is_continuous_at_the_row(name):
 
 @pytest.mark.parametrize(
     ("name", "temperature", "vaporisation"),
-    [  # kJ/mol at the normal boiling point, handbook values from memory; 0.8 %: the pressures lie either side of boiling
+    [  # kJ/mol at the normal boiling point, handbook values from memory; 0.8 %: pressures either side of boiling
         ("LOX", 90.188, 6.82), ("LN2", 77.355, 5.57), ("LCH4", 111.667, 8.17), ("ammonia", 239.82, 23.33),
         ("propane", 231.04, 18.78), ("water", 373.12, 40.65), ("methanol", 337.63, 35.21),
     ],
@@ -83,7 +83,7 @@ def test_para_hydrogen_stays_para():
 
 
 def test_heated_fuel_above_the_critical_point():
-    """Methane from a cooling jacket: 300 K, 15 MPa. Density about 112 kg/m3 (ideal gas 96.5; compressibility below 1)."""
+    """Methane from a cooling jacket: 300 K, 15 MPa. Denser than the ideal gas (96.5 kg/m3)."""
     hot = state("LCH4", 300.0, 15e6)
     assert hot.phase == "supercritical"
     assert "is supercritical, the library row is a liquid" in hot.warnings[0]
@@ -171,7 +171,7 @@ def test_coolprop_is_imported_on_first_use_only():
 
 
 def test_specific_heat_gives_the_enthalpy():
-    """Hydrazine warmed by 40 K takes 40 K times its molar heat capacity, 98.9 J/(mol K) (CRC Handbook, via chemicals)."""
+    """Hydrazine warmed by 40 K takes 40 K times 98.9 J/(mol K), its heat capacity (CRC Handbook, via chemicals)."""
     warm = state("hydrazine", 338.15)
     assert warm.enthalpy_change == pytest.approx(40.0 * 98.9, rel=2e-4)
     assert warm.warnings == ()
@@ -272,6 +272,6 @@ def test_water_in_a_blend_may_be_colder_than_ice():
 
 
 def test_peroxide_solution_heat_capacity():
-    """90 % peroxide: about 2.77 kJ/(kg K) near room temperature (mass-weighted; handbooks give 2.7 to 2.8, from memory)."""
+    """90 % peroxide: about 2.77 kJ/(kg K) near room temperature (mass-weighted; 2.7 to 2.8 from memory)."""
     warm = state("HTP-90", 308.15)
     assert warm.enthalpy_change / ROWS["HTP-90"].molar_mass / 10.0 == pytest.approx(2770.0, rel=0.02)

@@ -2,8 +2,8 @@
 
 Sources: CoolProp (equations of state) for the step from the ideal gas at 298.15 K to the state of the row; Cantera's
 nasa_gas.yaml (NASA TM-4513) for the gas; `chemicals` for CRC Handbook, NIST WebBook, JANAF and Active Thermochemical
-Tables values. Tolerance 0.2 kJ/mol (0.15 for cryogens), the spread of careful evaluations; what exceeds it is listed below
-with its reason.
+Tables values. Tolerance 0.2 kJ/mol (0.15 for cryogens), the spread of careful evaluations; what exceeds it is listed
+below with its reason.
 """
 
 import pytest
@@ -15,8 +15,8 @@ SPECIES = {
     "Ethane": "C2H6", "Ethylene": "C2H4", "n-Propane": "C3H8", "Propylene": "C3H6,propylene", "Propyne": "C3H4,propyne",
     "n-Butane": "C4H10,n-butane", "IsoButane": "C4H10,isobutane", "DimethylEther": "CH3OCH3", "Ammonia": "NH3",
     "Ethanol": "C2H5OH", "Methanol": "CH3OH", "Water": "H2O", "NitrousOxide": "N2O", "EthyleneOxide": "C2H4O,ethylen",
-    "n-Heptane": "C7H16,n-heptane", "CarbonDioxide": "CO2", "Argon": "Ar", "Helium": "He", "Krypton": "Kr", "Xenon": "Xe",
-    "Neon": "Ne",
+    "n-Heptane": "C7H16,n-heptane", "CarbonDioxide": "CO2", "Argon": "Ar", "Helium": "He", "Krypton": "Kr",
+    "Xenon": "Xe", "Neon": "Ne",
 }  # fmt: skip
 """CoolProp fluid -> species of nasa_gas.yaml."""
 
@@ -71,13 +71,17 @@ AGAINST_TABLES = {
 """(row, table) further than 0.2 kJ/mol: row less table [kJ/mol] and reason."""
 
 CAS = {
-    "NTO": "10544-72-6", "hydrogen peroxide": "7722-84-1", "nitric acid": "7697-37-2", "AP": "7790-98-9", "AN": "6484-52-2",
-    "propane-ambient": "74-98-6", "ethanol": "64-17-5", "methanol": "67-56-1", "isopropanol": "67-63-0", "MMH": "60-34-4",
-    "UDMH": "57-14-7", "hydrazine": "302-01-2", "n-dodecane": "112-40-3", "n-heptane": "142-82-5", "isooctane": "540-84-1",
+    "NTO": "10544-72-6", "hydrogen peroxide": "7722-84-1", "nitric acid": "7697-37-2", "AP": "7790-98-9",
+    "AN": "6484-52-2",
+    "propane-ambient": "74-98-6", "ethanol": "64-17-5", "methanol": "67-56-1", "isopropanol": "67-63-0",
+    "MMH": "60-34-4",
+    "UDMH": "57-14-7", "hydrazine": "302-01-2", "n-dodecane": "112-40-3", "n-heptane": "142-82-5",
+    "isooctane": "540-84-1",
     "toluene": "108-88-3", "acetone": "67-64-1", "furfuryl alcohol": "98-00-0", "turpentine": "80-56-8",
     "aniline": "62-53-3", "triethylamine": "121-44-8", "nitromethane": "75-52-5", "isopropyl nitrate": "1712-64-7",
     "n-propyl nitrate": "627-13-4", "paraffin": "544-85-4", "Al": "7429-90-5", "water": "7732-18-5", "RDX": "121-82-4",
-    "HMX": "2691-41-0", "GOX": "7782-44-7", "GH2": "1333-74-0", "GN2": "7727-37-9", "GHe": "7440-59-7", "argon": "7440-37-1",
+    "HMX": "2691-41-0", "GOX": "7782-44-7", "GH2": "1333-74-0", "GN2": "7727-37-9", "GHe": "7440-59-7",
+    "argon": "7440-37-1",
     "krypton": "7439-90-9", "xenon": "7440-63-3", "CO2": "124-38-9", "GCH4": "74-82-8", "N2O-gas": "10024-97-2",
     "ethane-gas": "74-84-0", "propane-gas": "74-98-6", "butane-gas": "106-97-8",
 }  # fmt: skip
@@ -168,7 +172,7 @@ def test_listed_differences_are_still_needed():
 
 
 def test_kerosene_models_burn_with_the_heat_of_the_specification():
-    """Net heat of combustion 43.0 to 43.4 MJ/kg (kerosene specifications, from memory); CO2 -393.51, H2O(g) -241.826."""
+    """Net heat of combustion 43.0 to 43.4 MJ/kg (specifications, from memory); CO2 -393.51, H2O(g) -241.826."""
     for name, carbon, hydrogen in (("RP-1", 1.0, 1.95), ("Jet-A", 12.0, 23.0)):
         row = library()[name]
         burnt = carbon * -393.51e3 + hydrogen / 2.0 * -241.826e3

@@ -12,10 +12,12 @@ from propkit.data.propellants import find, library, load_library, role_problem, 
 from propkit.errors import InputError, StorageError
 
 CONTRACT = (
-    "LOX GOX LF2 NTO MON-3 MON-10 MON-25 HTP-85 HTP-90 HTP-98 N2O N2O-gas air LH2 LH2-normal GH2 LCH4 GCH4 RP-1 Jet-A "
-    "ethanol ethanol-75 ethanol-92 methanol isopropanol ammonia MMH UDMH hydrazine A-50 propane ethane ethylene propylene "
-    "butane HTPB paraffin PE PMMA ABS AP AN Al water GN2 GHe argon CO2"
-).split() + ["nitric acid", "natural gas", "furfuryl alcohol"]
+    "LOX", "GOX", "LF2", "NTO", "MON-3", "MON-10", "MON-25", "HTP-85", "HTP-90", "HTP-98", "N2O", "N2O-gas", "air",
+    "LH2", "LH2-normal", "GH2", "LCH4", "GCH4", "RP-1", "Jet-A", "ethanol", "ethanol-75", "ethanol-92", "methanol",
+    "isopropanol", "ammonia", "MMH", "UDMH", "hydrazine", "A-50", "propane", "ethane", "ethylene", "propylene",
+    "butane", "HTPB", "paraffin", "PE", "PMMA", "ABS", "AP", "AN", "Al", "water", "GN2", "GHe", "argon", "CO2",
+    "nitric acid", "natural gas", "furfuryl alcohol",
+)  # fmt: skip
 
 GOOD = """
 [fuel]
@@ -127,17 +129,19 @@ def test_hopeless_name_points_to_the_list():
 
 @pytest.mark.parametrize("value", [None, 5, True, ["LOX"], b"LOX"])
 def test_a_name_is_text(value):
-    with pytest.raises(InputError, match="a library name or a pk.Propellant"):
+    with pytest.raises(InputError, match=r"a library name or a pk\.Propellant"):
         find(value)
 
 
 @given(st.text(max_size=40))
 @settings(max_examples=50, deadline=None)
 def test_any_text_is_a_name_or_a_clear_error(text):
-    try:
+    if text in library():
         assert find(text).name == text
-    except InputError as error:
-        assert error.problems[0].name == "propellant"
+        return
+    with pytest.raises(InputError) as caught:
+        find(text)
+    assert caught.value.problems[0].name == "propellant"
 
 
 @pytest.mark.parametrize(
@@ -162,8 +166,9 @@ def test_wrong_role_is_told(name, wanted, words):
 
 @pytest.mark.parametrize(
     ("name", "wanted"),
-    [("LOX", "oxidizer"), ("water", "fuel"), ("water", "oxidizer"), ("hydrazine", "fuel"), ("hydrazine", "monopropellant"),
-     ("AP", "oxidizer"), ("Al", "fuel"), ("GN2", "cold gas"), ("AP", "monopropellant"), ("nitromethane", "fuel")],
+    [("LOX", "oxidizer"), ("water", "fuel"), ("water", "oxidizer"), ("hydrazine", "fuel"),
+     ("hydrazine", "monopropellant"), ("AP", "oxidizer"), ("Al", "fuel"), ("GN2", "cold gas"),
+     ("AP", "monopropellant"), ("nitromethane", "fuel")],
 )  # fmt: skip
 def test_right_role_passes(name, wanted):
     assert role_problem(name, library()[name].roles, wanted) is None
@@ -225,7 +230,7 @@ def test_enthalpy_by_mass_is_the_same_thing(tmp_path):
         ("298.15", "298.15\ndensty_kg_m3 = 1", "densty_kg_m3", "Did you mean density_kg_m3"),
         ("298.15", "298.15\nsaturated = 1", "saturated", "true or false"),
         ("298.15", "298.15\nheat_capacity_J_kg_K = 2000", "heat_capacity_range_K", "given together"),
-        ("298.15", "298.15\nheat_capacity_J_kg_K = 2000\nheat_capacity_range_K = [400, 300]", "heat_capacity_range_K", "the lower first"),
+        ("298.15", "298.15\nheat_capacity_J_kg_K = 9e2\nheat_capacity_range_K = [4, 3]", "heat_capacity_range_K", "lower"),
         ("298.15", "298.15\nmixture_by = \"mass\"", "mixture_by", "given without `mixture`"),
         ("298.15", "298.15\nother_values = [{ source = 'x' }]", "other_values", "a list of tables"),
         ("298.15", "298.15\naliases = [3]", "aliases", "a list of texts"),
@@ -242,7 +247,17 @@ def test_bad_row_names_file_row_and_field(tmp_path, old, new, field, words):
     assert words in message
 
 
-MIX = '[mix]\ntitle = "A mix"\nroles = ["fuel"]\nphase = "liquid"\nmixture = %s\ntemperature_K = 298.15\nhazard = "None"\nsource = "a test"\ntrust = "weak"\n'
+MIX = """
+[mix]
+title = "A mix"
+roles = ["fuel"]
+phase = "liquid"
+mixture = %s
+temperature_K = 298.15
+hazard = "None"
+source = "a test"
+trust = "weak"
+"""
 
 
 @pytest.mark.parametrize(
