@@ -1,76 +1,122 @@
-"""Chemical equilibrium of an ideal-gas mixture for a whole batch at once.
+"""Chemical equilibrium of a batch of cases at given (p, h), (p, s) or (p, T), with its derivatives.
 
-Gibbs energy is minimised in the element-potential form (Huff, Gordon & Morrell, NACA Report 1037, 1951; White, Johnson & Dantzig 1958;
-Smith & Missen 1982): every Newton step is one stacked solve of (elements + 2) square systems. Amounts are kept as logarithms, so that
-traces never go negative. Convergence is decided case by case; converged cases leave the batch.
+A single case is a batch of one. A case without a solution is never an exception here: its `status` says so, and every
+number of it is NaN except what the iteration reached.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass, fields, replace
-from typing import Any, Literal
+from dataclasses import dataclass, fields
+from typing import Any, Final
 
 import numpy as np
 import numpy.typing as npt
 
 from propkit.constants import GAS_CONSTANT
-from propkit.physics.arrays import Array, Values, values
+from propkit.errors import InputError
+from propkit.physics.arrays import Array, Values, require, values
+from propkit.physics.equilibrium_newton import FlowCondition, Given, Integers, Outcome, Problem, Unknowns, iterate
+from propkit.physics.equilibrium_search import cold_start, search
 from propkit.physics.thermodynamics import SpeciesTable
 
-Mode = Literal["temperature", "enthalpy", "entropy"]
+CONVERGED: Final = 0
+NOT_CONVERGED: Final = 1
+OUT_OF_RANGE: Final = 2
+"""No solution between the lowest temperature searched and the highest of the species data."""
 
-CONVERGED, NOT_CONVERGED, OUT_OF_RANGE = 0, 1, 2
-TOLERANCE = 1e-11
-MOST_ITERATIONS = 120
-FIRST_TEMPERATURE = 3500.0
-COLDEST, HOTTEST = 5.0, 20_000.0
-_BIG_STEP = 2.0
-_TRACE_LOG = -18.0
-_TRACE_GROWTH = -9.0
-_HEAVY = 6.0
+BLOCK: Final = 2500
+"""Cases worked on together; larger blocks leave the cache."""
+
+_LOWEST_LOG: Final = -700.0
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class EquilibriumState:
-    """Equilibrium states of a batch, SI, shape (case,) unless said otherwise.
+    """The state of each case of a batch at chemical equilibrium.
 
-    `log_amounts` and `amounts` are ln and moles per mass [mol/kg], shape (case, species). `status` is 0 where converged, 1 where not, 2 where
-    there is no solution inside the range of the data.
+    Parameters
+    ----------
+    pressure, temperature : array
+        p [Pa], T [K], shape (case,).
+    amounts : array
+        Moles of each species in a kilogram [mol/kg], shape (case, species).
+    gas_moles : array
+        Moles of gas in a kilogram [mol/kg].
+    density : array
+        Mass over volume of the gas [kg/m3]; liquids and solids take no volume.
+    enthalpy, entropy : array
+        h [J/kg], s [J/(kg K)].
+    specific_heat, frozen_specific_heat : array
+        cp [J/(kg K)] with the composition following, and with the composition held.
+    isentropic_exponent, frozen_isentropic_exponent : array
+        (d ln p / d ln rho) at constant entropy, with the composition following, and with it held.
+    dlnv_dlnt, dlnv_dlnp : array
+        (d ln V / d ln T) at constant p and (d ln V / d ln p) at constant T.
+    element_potentials : array
+        Chemical potential of each element over R T, shape (case, element).
+    iterations : array of int
+        Steps of the iteration.
+    residual : array
+        Largest relative residual of element balance, gas, equilibrium and energy.
+    status : array of int
+        0 converged, 1 not converged, 2 no solution inside the data range.
+    condensed_mass_fraction : array
+        Mass fraction of liquids and solids.
     """
 
     pressure: Array
     temperature: Array
     amounts: Array
-    log_amounts: Array
+    gas_moles: Array
+    density: Array
     enthalpy: Array
     entropy: Array
-    molar_mass: Array
-    density: Array
-    gas_constant: Array
     specific_heat: Array
     frozen_specific_heat: Array
     isentropic_exponent: Array
     frozen_isentropic_exponent: Array
-    sound_speed: Array
     dlnv_dlnt: Array
     dlnv_dlnp: Array
-    iterations: npt.NDArray[np.int64]
+    element_potentials: Array
+    iterations: Integers
     residual: Array
-    status: npt.NDArray[np.int64]
+    status: Integers
+    condensed_mass_fraction: Array
+
+    @property
+    def molar_mass(self) -> Array:
+        """Mass over moles of gas [kg/mol]."""
+        return 1.0 / self.gas_moles
+
+    @property
+    def gas_constant(self) -> Array:
+        """Specific gas constant [J/(kg K)], so that p = rho R T."""
+        return GAS_CONSTANT * self.gas_moles
 
     @property
     def mole_fractions(self) -> Array:
-        """Moles of each species over all moles, shape (case, species)."""
+        """Moles of each species over all moles, liquids and solids included; shape (case, species)."""
         return np.asarray(self.amounts / self.amounts.sum(axis=1, keepdims=True))
 
+    @property
+    def sound_speed(self) -> Array:
+        """Speed of sound with the composition following [m/s]."""
+        return np.sqrt(self.isentropic_exponent * self.gas_constant * self.temperature)
+
+    @property
+    def frozen_sound_speed(self) -> Array:
+        """Speed of sound with the composition held [m/s]."""
+        return np.sqrt(self.frozen_isentropic_exponent * self.gas_constant * self.temperature)
+
     def take(self, index: Any) -> EquilibriumState:
-        """Return the cases of `index`."""
-        return replace(self, **{field.name: getattr(self, field.name)[index] for field in fields(self)})
+        """Return some cases as a smaller batch; an integer gives a batch of one."""
+        rows = np.atleast_1d(np.arange(self.pressure.size)[index])
+        return EquilibriumState(*(getattr(self, part.name)[rows] for part in fields(self)))
 
 
 def solve(
     table: SpeciesTable,
-    elements: Array,
+    elements: Values,
     *,
     pressure: Values,
     temperature: Values | None = None,
@@ -78,243 +124,195 @@ def solve(
     entropy: Values | None = None,
     guess: EquilibriumState | None = None,
 ) -> EquilibriumState:
-    """Return the equilibrium of each case at a pressure and one of temperature, enthalpy and entropy.
+    """Chemical equilibrium at given pressure and one of temperature, enthalpy and entropy.
 
     Parameters
     ----------
     table : SpeciesTable
-        Gas species.
+        The species of the case.
     elements : array
-        Moles of atoms per mass [mol/kg], shape (case, element), all above 0, in the order of ``table.elements``.
+        Moles of atoms in a kilogram in the order of `table.elements` [mol/kg], 0 or more, shape (case, element).
     pressure : float or array
-        [Pa], above 0.
-    temperature, enthalpy, entropy : float or array
-        Exactly one of [K], [J/kg], [J/(kg K)].
-    guess : EquilibriumState
-        States near the solution, one for each case.
+        p [Pa], above 0, shape (case,).
+    temperature : float or array, optional
+        T [K], above 0.
+    enthalpy : float or array, optional
+        h [J/kg].
+    entropy : float or array, optional
+        s [J/(kg K)].
+    guess : EquilibriumState, optional
+        A state of the same cases nearby.
 
     Returns
     -------
     EquilibriumState
-        Never raises for a case that fails: `status` says.
+        The states; `status` says which cases have none.
 
-    Source
+    Raises
     ------
-    NACA Report 1037 (1951); W. R. Smith and R. W. Missen, Chemical Reaction Equilibrium Analysis, 1982.
+    InputError
+        Unless exactly one of temperature, enthalpy and entropy is given, or where a number is outside its range.
+
+    Notes
+    -----
+    Least Gibbs energy at given elements; ideal gas, liquids and solids pure and without volume. Species whose elements
+    do not all occur in a case do not occur in its solution.
+
+    Source: NACA Report 1037; Smith & Missen, Chemical Reaction Equilibrium Analysis (1982).
     """
-    atoms = np.atleast_2d(values(elements))
-    count = len(atoms)
-    given = {"temperature": temperature, "enthalpy": enthalpy, "entropy": entropy}
-    named = [(mode, value) for mode, value in given.items() if value is not None]
-    if len(named) != 1:
-        raise TypeError("give exactly one of temperature, enthalpy, entropy")
-    mode, target = named[0]
-    aim = np.broadcast_to(values(target), (count,)).astype(float)
-    p = np.broadcast_to(values(pressure), (count,)).astype(float)
-    log_t, log_n, log_total = _start(table, atoms, aim if mode == "temperature" else None, guess)
-    work = _Newton(table, atoms, np.log(p / table.reference_pressure), mode, aim)  # type: ignore[arg-type]
-    iterations, residual, done = work.run(log_t, log_n, log_total)
-    status = np.where(done, CONVERGED, NOT_CONVERGED)
-    state = _state(table, atoms, p, np.exp(log_t), log_n, iterations, residual, status)
-    return _checked_range(table, state, mode, aim)
+    b = np.atleast_2d(values(elements))
+    given, wanted = _given(temperature, enthalpy, entropy)
+    if b.shape[1] != len(table.elements):
+        raise InputError(f"`elements` has {b.shape[1]} columns; the table has the elements {', '.join(table.elements)}.")
+    p, target = (np.array(np.broadcast_to(values(part), b.shape[0])) for part in (pressure, wanted))
+    require(p > 0.0, "pressure", p, "above 0")
+    require(b >= 0.0, "elements", b, "0 or more")
+    require(b.sum(axis=1) > 0.0, "elements", b.sum(axis=1), "above 0 for at least one element")
+    if given == "temperature":
+        require(target > 0.0, "temperature", target, "above 0")
+    return solve_batch(table, b, p, given, target, guess)
 
 
-def _start(table: SpeciesTable, atoms: Array, temperature: Array | None, guess: EquilibriumState | None) -> tuple[Array, Array, Array]:
-    count = len(atoms)
-    if guess is not None:
-        log_n = np.array(guess.log_amounts)
-        log_t = np.log(guess.temperature if temperature is None else temperature)
-        return np.array(log_t), log_n, np.log(np.exp(log_n).sum(axis=1))
-    size = table.composition.sum(axis=1)
-    likely = np.exp(-_HEAVY * np.maximum(size - 2.0, 0.0))
-    total = 0.5 * atoms.sum(axis=1)
-    log_n = np.log(total)[:, None] + np.log(likely / likely.sum())
-    log_t = np.log(np.full(count, FIRST_TEMPERATURE) if temperature is None else temperature)
-    return np.array(log_t), log_n, np.log(total)
+def _given(temperature: Values | None, enthalpy: Values | None, entropy: Values | None) -> tuple[Given, Values]:
+    wanted: dict[Given, Values | None] = {"temperature": temperature, "enthalpy": enthalpy, "entropy": entropy}
+    given: list[tuple[Given, Values]] = [(name, value) for name, value in wanted.items() if value is not None]
+    if len(given) != 1:
+        raise InputError("Give exactly one of `temperature`, `enthalpy` and `entropy`.")
+    return given[0]
 
 
-class _Newton:
-    """Damped Newton iteration over the logarithms of amounts, total amount and temperature."""
-
-    def __init__(self, table: SpeciesTable, atoms: Array, log_p: Array, mode: Mode, aim: Array) -> None:
-        self.table, self.atoms, self.log_p, self.mode, self.aim = table, atoms, log_p, mode, aim
-
-    def run(self, log_t: Array, log_n: Array, log_total: Array) -> tuple[npt.NDArray[np.int64], Array, npt.NDArray[np.bool_]]:
-        """Iterate in place; return iterations, residual and convergence of each case."""
-        count = len(log_t)
-        iterations = np.zeros(count, dtype=np.int64)
-        residual = np.full(count, np.inf)
-        done = np.zeros(count, dtype=bool)
-        active = np.arange(count)
-        for step in range(1, MOST_ITERATIONS + 1):
-            t, n, total = log_t[active], log_n[active], log_total[active]
-            change_n, change_total, change_t, error = self._step(active, t, n, total)
-            damping = _damping(n, total, change_n, change_total, change_t)
-            log_n[active] = np.maximum(n + damping[:, None] * change_n, total[:, None] - 1500.0)
-            log_total[active] = total + damping * change_total
-            log_t[active] = np.clip(t + damping * change_t, np.log(COLDEST), np.log(HOTTEST))
-            iterations[active] = step
-            residual[active] = error
-            good = (error < TOLERANCE) & (damping == 1.0)
-            done[active[good]] = True
-            active = active[~good & np.isfinite(error)]
-            if not len(active):
-                break
-        return iterations, residual, done
-
-    def _step(self, active: npt.NDArray[np.int64], t: Array, n: Array, total: Array) -> tuple[Array, Array, Array, Array]:
-        table, a = self.table, self.table.composition
-        cp, h, s = table.properties(np.exp(t))[:3]
-        amounts = np.exp(n)
-        mu = h - s + n - total[:, None] + self.log_p[active][:, None]
-        matrix, right = _element_system(a, amounts, total)
-        elements = a.shape[1]
-        b = self.atoms[active]
-        sums = amounts @ a
-        weighted = amounts * mu
-        right[:, :elements] = b - sums + weighted @ a
-        right[:, elements] = np.exp(total) - amounts.sum(axis=1) + weighted.sum(axis=1)
-        if self.mode == "temperature":
-            solution = _solve(matrix[:, :-1, :-1], right[:, :-1])
-            change_t = np.zeros(len(t))
-            energy = change_t
-        else:
-            energy = self._energy_row(active, matrix, right, t, n, total, amounts, mu, cp, h, s)
-            solution = _solve(matrix, right)
-            change_t = solution[:, -1]
-        change_total = solution[:, elements]
-        change_n = solution[:, :elements] @ a.T + change_total[:, None] - mu
-        if self.mode != "temperature":
-            change_n += h * change_t[:, None]
-        share = amounts / np.exp(total)[:, None]
-        error = np.maximum.reduce(
-            [
-                np.abs(share * change_n).max(axis=1),
-                np.abs(change_total),
-                np.abs(change_t),
-                np.abs(b - sums).max(axis=1) / b.max(axis=1),
-                energy,
-            ]
-        )
-        return change_n, change_total, change_t, np.where(np.isfinite(error), error, np.inf)
-
-    def _energy_row(
-        self, active: Any, matrix: Array, right: Array, t: Array, n: Array, total: Array, amounts: Array, mu: Array, cp: Array, h: Array, s: Array
-    ) -> Array:
-        a, elements = self.table.composition, self.table.composition.shape[1]
-        nh = amounts * h
-        matrix[:, :elements, -1] = nh @ a
-        matrix[:, elements, -1] = nh.sum(axis=1)
-        scale = GAS_CONSTANT * np.exp(total)
-        if self.mode == "enthalpy":
-            weight, held = nh, nh.sum(axis=1)
-            missing = self.aim[active] / (GAS_CONSTANT * np.exp(t)) - held
-            matrix[:, -1, elements] = held
-        else:
-            local = s - (n - total[:, None]) - self.log_p[active][:, None]
-            weight = amounts * local
-            held = weight.sum(axis=1)
-            missing = self.aim[active] / GAS_CONSTANT - held + np.exp(total) - amounts.sum(axis=1)
-            matrix[:, -1, elements] = held
-        matrix[:, -1, :elements] = weight @ a
-        matrix[:, -1, -1] = (amounts * cp).sum(axis=1) + (weight * h).sum(axis=1)
-        right[:, -1] = missing + (weight * mu).sum(axis=1)
-        if self.mode == "entropy":
-            matrix[:, -1, elements] -= 0.0
-        return np.abs(missing) * GAS_CONSTANT / scale
-
-
-def _element_system(a: Array, amounts: Array, total: Array) -> tuple[Array, Array]:
-    """Return the matrix of the element and total-amount rows, with room for the energy row, and an empty right side."""
-    count, elements = len(amounts), a.shape[1]
-    matrix = np.zeros((count, elements + 2, elements + 2))
-    matrix[:, :elements, :elements] = (amounts[:, None, :] * a.T[None]) @ a
-    sums = amounts @ a
-    matrix[:, :elements, elements] = sums
-    matrix[:, elements, :elements] = sums
-    matrix[:, elements, elements] = amounts.sum(axis=1) - np.exp(total)
-    return matrix, np.zeros((count, elements + 2))
-
-
-def _solve(matrix: Array, right: Array) -> Array:
-    """Solve the stack; rows and columns scaled, with a vanishing ridge for potentials that nothing fixes."""
-    diagonal = np.abs(np.einsum("kii->ki", matrix))
-    scale = 1.0 / np.sqrt(np.where(diagonal > 0.0, diagonal, 1.0))
-    scaled = matrix * scale[:, :, None] * scale[:, None, :]
-    np.einsum("kii->ki", scaled)[...] += 1e-15
-    try:
-        return np.asarray(np.linalg.solve(scaled, (right * scale)[..., None])[..., 0] * scale)
-    except np.linalg.LinAlgError:
-        return np.stack([np.linalg.lstsq(m, r, rcond=None)[0] * s for m, r, s in zip(scaled, right * scale, scale, strict=True)])
-
-
-def _damping(n: Array, total: Array, change_n: Array, change_total: Array, change_t: Array) -> Array:
-    """Return the share of the step to take: bounded for temperature, total and major species; traces must stay traces."""
-    share = n - total[:, None]
-    major = share > _TRACE_LOG
-    largest = np.where(major, np.abs(change_n), 0.0).max(axis=1)
-    worst = np.maximum.reduce([largest, 5.0 * np.abs(change_total), 5.0 * np.abs(change_t)])
-    with np.errstate(divide="ignore", invalid="ignore"):
-        damping = np.minimum(1.0, _BIG_STEP / worst)
-        growth = change_n - change_total[:, None]
-        room = np.where(~major & (growth > 0.0) & (share + growth > _TRACE_GROWTH), (_TRACE_GROWTH - share) / growth, 1.0)
-    return np.asarray(np.minimum(np.nan_to_num(damping, nan=0.1), room.min(axis=1)))
-
-
-def _state(
-    table: SpeciesTable, atoms: Array, pressure: Array, temperature: Array, log_n: Array, iterations: Any, residual: Array, status: Any
+def solve_batch(
+    table: SpeciesTable,
+    elements: Array,
+    pressure: Array,
+    given: Given,
+    target: Array,
+    guess: EquilibriumState | None = None,
+    condition: FlowCondition | None = None,
 ) -> EquilibriumState:
-    """Return the properties of converged amounts, with the derivatives from the converged matrix."""
-    cp, h, s = table.properties(temperature)[:3]
-    n = np.exp(log_n)
-    moles = n.sum(axis=1)
-    a, elements = table.composition, table.composition.shape[1]
-    matrix, right = _element_system(a, n, np.log(moles))
-    both = np.zeros((len(n), elements + 1, 2))
-    nh = n * h
-    both[:, :elements, 0] = -(nh @ a)
-    both[:, elements, 0] = -nh.sum(axis=1)
-    both[:, :elements, 1] = n @ a
-    both[:, elements, 1] = moles
-    derivative = np.stack([_solve(matrix[:, :-1, :-1], both[:, :, k]) for k in range(2)], axis=2)
-    dlnv_dlnt = 1.0 + derivative[:, elements, 0]
-    dlnv_dlnp = derivative[:, elements, 1] - 1.0
-    change = derivative[:, :elements, 0] @ a.T + derivative[:, elements, 0][:, None] + h
-    frozen = GAS_CONSTANT * (n * cp).sum(axis=1)
-    specific = frozen + GAS_CONSTANT * (nh * change).sum(axis=1)
-    gas_constant = GAS_CONSTANT * moles
+    """Solve a batch of arrays already checked, block by block; cases with the same elements present go together.
+
+    Parameters
+    ----------
+    table : SpeciesTable
+        The species.
+    elements : array
+        Moles of atoms in a kilogram [mol/kg], shape (case, element).
+    pressure : array
+        p [Pa], or a first guess of it where there is a condition.
+    given : {"temperature", "enthalpy", "entropy"}
+        What is held together with the pressure.
+    target : array
+        T [K], h [J/kg] or s [J/(kg K)].
+    guess : EquilibriumState, optional
+        A state of the same cases nearby.
+    condition : FlowCondition, optional
+        Moves the pressure.
+
+    Returns
+    -------
+    EquilibriumState
+        The states.
+    """
+    state = _empty(pressure.size, table)
+    for rows, mask in _patterns(elements > 0.0):
+        part, species = (table, np.arange(len(table.names))) if mask.all() else table.part(mask)
+        for first in range(0, rows.size, BLOCK):
+            block = rows[first : first + BLOCK]
+            problem = Problem(part, elements[np.ix_(block, mask)], given, target[block], _renumbered(condition, block))
+            start = cold_start(problem, pressure[block])
+            if guess is not None:
+                _warm(start, guess, block, species, mask, given)
+            outcome = iterate(problem, start)
+            outside = _retry(problem, pressure[block], outcome)
+            _fill(state, block, species, mask, problem, outcome, outside)
+    return state
+
+
+def _renumbered(condition: FlowCondition | None, block: Integers) -> FlowCondition | None:
+    """Return the condition for a block, whose cases are numbered from zero."""
+    if condition is None:
+        return None
+    whole = condition
+    return lambda trial, number: whole(trial, block[number])
+
+
+def _patterns(present: npt.NDArray[np.bool_]) -> list[tuple[Integers, npt.NDArray[np.bool_]]]:
+    """Return (cases, elements present) for every pattern of elements present in the batch."""
+    if present.all():
+        return [(np.arange(present.shape[0]), np.ones(present.shape[1], dtype=bool))]
+    patterns, inverse = np.unique(present, axis=0, return_inverse=True)
+    return [(np.flatnonzero(inverse.ravel() == number), pattern) for number, pattern in enumerate(patterns)]
+
+
+def _warm(start: Unknowns, guess: EquilibriumState, block: Integers, species: Integers, mask: npt.NDArray[np.bool_], given: Given) -> None:
+    """Overwrite a cold start with a state nearby, where that state is a solution; the pressure stays."""
+    good = np.flatnonzero((guess.status[block] == CONVERGED) & np.isfinite(guess.temperature[block]))
+    if not good.size:
+        return
+    rows = block[good]
+    gas = start.log_amounts.shape[1]
+    with np.errstate(divide="ignore"):
+        start.log_amounts[good] = np.maximum(np.log(guess.amounts[np.ix_(rows, species[:gas])]), _LOWEST_LOG)
+    start.potentials[good] = guess.element_potentials[np.ix_(rows, mask)]
+    start.log_moles[good] = np.log(guess.gas_moles[rows])
+    if given != "temperature":
+        start.log_temperature[good] = np.log(guess.temperature[rows])
+
+
+def _retry(problem: Problem, pressure: Array, outcome: Outcome) -> npt.NDArray[np.bool_]:
+    """Solve what the plain iteration left, the slow way; return which cases lie outside the data range."""
+    outside = np.zeros(pressure.size, dtype=bool)
+    left = np.flatnonzero(~outcome.converged)
+    if not left.size or problem.condition is not None:
+        return outside
+    part = Problem(problem.table, problem.elements[left], problem.given, problem.target[left])
+    again = iterate(part, cold_start(part, pressure[left]))
+    outcome.put(left[again.converged], again.take(again.converged))
+    left = left[~again.converged]
+    if left.size:
+        part = Problem(problem.table, problem.elements[left], problem.given, problem.target[left])
+        slow, outside[left] = search(part, pressure[left])
+        outcome.put(left, slow)
+    return outside
+
+
+def _empty(count: int, table: SpeciesTable) -> EquilibriumState:
+    """Return a batch of `count` states without numbers."""
+    def blank() -> Array:
+        return np.full(count, np.nan)
+
+    state = EquilibriumState(*(blank() for _ in fields(EquilibriumState)))
+    object.__setattr__(state, "amounts", np.zeros((count, len(table.names))))
+    object.__setattr__(state, "element_potentials", np.zeros((count, len(table.elements))))
+    object.__setattr__(state, "iterations", np.zeros(count, dtype=np.intp))
+    object.__setattr__(state, "status", np.full(count, NOT_CONVERGED))
+    object.__setattr__(state, "condensed_mass_fraction", np.zeros(count))
+    return state
+
+
+def _fill(state: EquilibriumState, block: Integers, species: Integers, mask: npt.NDArray[np.bool_], problem: Problem, outcome: Outcome, outside: npt.NDArray[np.bool_]) -> None:
+    """Write the outcome of a block into the states."""
+    x, table = outcome.unknowns, problem.table
+    gas = table.gas_count
+    temperature, moles = np.exp(x.log_temperature), np.exp(x.log_moles)
+    enthalpy, entropy, heat_capacity = outcome.sums.T
+    heating_moles, heating, isentropic_moles, isentropic = outcome.slopes.T
+    state.pressure[block] = table.reference_pressure * np.exp(x.log_pressure)
+    state.temperature[block] = temperature
+    state.amounts[np.ix_(block, species[:gas])] = np.exp(x.log_amounts)
+    state.gas_moles[block] = moles
+    state.density[block] = state.pressure[block] / (GAS_CONSTANT * moles * temperature)
+    state.enthalpy[block] = GAS_CONSTANT * temperature * enthalpy
+    state.entropy[block] = GAS_CONSTANT * entropy
+    state.frozen_specific_heat[block] = GAS_CONSTANT * heat_capacity
     with np.errstate(divide="ignore", invalid="ignore"):
-        exponent = 1.0 / (-dlnv_dlnp - gas_constant * dlnv_dlnt**2 / specific)
-    log_x = log_n - np.log(moles)[:, None]
-    entropy = GAS_CONSTANT * (n * (s - log_x)).sum(axis=1) - gas_constant * np.log(pressure / table.reference_pressure)
-    return EquilibriumState(
-        pressure=pressure,
-        temperature=temperature,
-        amounts=n,
-        log_amounts=log_n,
-        enthalpy=GAS_CONSTANT * temperature * nh.sum(axis=1),
-        entropy=entropy,
-        molar_mass=1.0 / moles,
-        density=pressure / (gas_constant * temperature),
-        gas_constant=gas_constant,
-        specific_heat=specific,
-        frozen_specific_heat=frozen,
-        isentropic_exponent=exponent,
-        frozen_isentropic_exponent=frozen / (frozen - gas_constant),
-        sound_speed=np.sqrt(np.abs(exponent) * gas_constant * temperature),
-        dlnv_dlnt=dlnv_dlnt,
-        dlnv_dlnp=dlnv_dlnp,
-        iterations=iterations,
-        residual=residual,
-        status=status,
-    )
-
-
-def _checked_range(table: SpeciesTable, state: EquilibriumState, mode: str, aim: Array) -> EquilibriumState:
-    """Return the state with status 2 where the temperature left the range of the data."""
-    status = state.status.copy()
-    outside = (state.temperature > float(table.temperature_high.max())) | (state.temperature < COLDEST * 1.001)
-    if mode == "enthalpy":
-        outside |= state.temperature < float(table.temperature_low.min())
-    status[outside] = OUT_OF_RANGE
-    return replace(state, status=status)
+        state.specific_heat[block] = GAS_CONSTANT / heating
+        state.frozen_isentropic_exponent[block] = heat_capacity / (heat_capacity - moles)
+        state.isentropic_exponent[block] = 1.0 / (1.0 - isentropic_moles - isentropic)
+        state.dlnv_dlnt[block] = 1.0 + heating_moles / heating
+        state.dlnv_dlnp[block] = isentropic_moles + isentropic - 1.0 - state.dlnv_dlnt[block] ** 2 * moles * heating
+    state.element_potentials[np.ix_(block, np.flatnonzero(mask))] = x.potentials
+    state.iterations[block] = outcome.iterations
+    state.residual[block] = outcome.residual
+    state.status[block] = np.where(outside, OUT_OF_RANGE, np.where(outcome.converged, CONVERGED, NOT_CONVERGED))
