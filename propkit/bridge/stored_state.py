@@ -111,7 +111,8 @@ def stored_state(
 # ---- CoolProp ---------------------------------------------------------------------------------------------------
 
 
-def _fluid(row: PropellantRow) -> Any:
+def open_fluid(row: PropellantRow) -> Any:
+    """Return CoolProp's equation of state of a row's fluid, a fresh one: it is never shared between threads."""
     try:
         from CoolProp.CoolProp import AbstractState
     except ImportError as error:
@@ -154,7 +155,7 @@ def _reference_enthalpy(fluid: Any, row: PropellantRow) -> float:
 
 
 def _from_coolprop(row: PropellantRow, at: float, pressure: float | None) -> StoredState:
-    fluid = _fluid(row)
+    fluid = open_fluid(row)
     reference = _reference_enthalpy(fluid, row)
     if at > fluid.Tmax():
         raise RangeError(
@@ -375,7 +376,7 @@ def _ingredient(row: PropellantRow, part: PropellantRow, at: float, pressure: fl
             at, pressure, change, colder.density, part.phase, (), "in solution below its own freezing point"
         )
     if part.coolprop_fluid and part.phase == "liquid":
-        fluid = _fluid(part)
+        fluid = open_fluid(part)
         if at < fluid.T_critical():
             _update(fluid, part, "QT_INPUTS", 0.0, at, at, pressure)
             pressure = max(pressure, float(fluid.p()) * (1.0 + 2.0 * _NEAR_SATURATION))

@@ -353,14 +353,14 @@ def of_row(row: PropellantRow) -> Propellant:
 
 
 def as_propellant(name: str, value: Any) -> Propellant:
-    """Return a propellant from a library name or a propellant: the reader of inputs that take one.
+    """Return a propellant from a library name, a propellant, or ingredients with their mass fractions.
 
     Parameters
     ----------
     name : str
         Name of the input, for the error text.
-    value : str or Propellant
-        What was given.
+    value : str, Propellant or mapping
+        What was given; ``{"LOX": 0.7, "LF2": 0.3}`` is a blend by mass.
 
     Returns
     -------
@@ -370,12 +370,16 @@ def as_propellant(name: str, value: Any) -> Propellant:
     Raises
     ------
     InputError
-        For an unknown name, with near matches, or a value that is neither.
+        For an unknown name, with near matches, or a value that is none of these.
     """
     if isinstance(value, Propellant):
         return value
     if isinstance(value, str):
         return Propellant(library_name=library_data.find(value, input_name=name).name)
+    if isinstance(value, Mapping):
+        from propkit.model.blend import blend
+
+        return blend(value)
     raise InputError(Problem(name, as_text(value), "a library name or a pk.Propellant", 'For example "LOX".'))
 
 

@@ -230,7 +230,7 @@ def test_enthalpy_by_mass_is_the_same_thing(tmp_path):
         ("298.15", "298.15\ndensty_kg_m3 = 1", "densty_kg_m3", "Did you mean density_kg_m3"),
         ("298.15", "298.15\nsaturated = 1", "saturated", "true or false"),
         ("298.15", "298.15\nheat_capacity_J_kg_K = 2000", "heat_capacity_range_K", "given together"),
-        ("298.15", "298.15\nheat_capacity_J_kg_K = 9e2\nheat_capacity_range_K = [4, 3]", "heat_capacity_range_K", "lower"),
+        ("298.15", "9.0\nheat_capacity_J_kg_K = 9e2\nheat_capacity_range_K = [4, 3]", "heat_capacity_range_K", "two"),
         ("298.15", "298.15\nmixture_by = \"mass\"", "mixture_by", "given without `mixture`"),
         ("298.15", "298.15\nother_values = [{ source = 'x' }]", "other_values", "a list of tables"),
         ("298.15", "298.15\naliases = [3]", "aliases", "a list of texts"),

@@ -240,6 +240,7 @@ def test_reader_of_propellant_inputs():
     lot = pk.Propellant(**LOT)
     assert as_propellant("fuel", lot) is lot
     assert as_propellant("fuel", "LCH4") == pk.Propellant.from_library("LCH4")
+    assert as_propellant("oxidizer", {"LOX": 0.7, "LF2": 0.3}) == pk.blend({"LOX": 0.7, "LF2": 0.3})
     for value in (5, None, ["LOX"]):
         with pytest.raises(pk.InputError, match="`fuel` is"):
             as_propellant("fuel", value)
