@@ -6,7 +6,20 @@ import platform
 from importlib import metadata
 
 NUMERIC = ("numpy", "scipy", "cantera")
-OTHERS = ("pandas", "pint", "rfc8785", "jsonschema", "CoolProp", "ipywidgets", "anywidget", "bokeh", "jupyterlab", "nbclient", "nbconvert", "typst")
+OTHERS = (
+    "pandas",
+    "pint",
+    "rfc8785",
+    "jsonschema",
+    "CoolProp",
+    "ipywidgets",
+    "anywidget",
+    "bokeh",
+    "jupyterlab",
+    "nbclient",
+    "nbconvert",
+    "typst",
+)
 
 
 def version_of(package: str) -> str | None:

@@ -58,12 +58,21 @@ class Combustion:
         face = self.injector
         values_there = {name: float(getattr(face, name)[index]) for name in ("pressure", "temperature", "density")}
         values_there |= {"velocity": 0.0, "mach": 0.0}
-        values_there |= {name: float(getattr(face, name)[index]) for name in ("sound_speed", "molar_mass", "isentropic_exponent", "enthalpy", "entropy")}
+        values_there |= {
+            name: float(getattr(face, name)[index])
+            for name in ("sound_speed", "molar_mass", "isentropic_exponent", "enthalpy", "entropy")
+        }
         return values_there
 
     def doubts(self, index: int = 0) -> Iterator[tuple[str, str, str]]:
         """Yield doubts as text, code and the result they are about."""
-        yield from warnings.composition_range(self.table, self.injector.amounts[index], float(self.injector.temperature[index]), "the injector face", "temperature")
+        yield from warnings.composition_range(
+            self.table,
+            self.injector.amounts[index],
+            float(self.injector.temperature[index]),
+            "the injector face",
+            "temperature",
+        )
         yield from warnings.supersaturation(self.table, self.injector.take([index]), "the injector face", "temperature")
 
 
@@ -106,7 +115,16 @@ def _contracted(table: SpeciesTable, mixture: Mixture, pressure: Array, ratio: A
     found = combustor.combustor(table, mixture.atoms, mixture.enthalpy, pressure, ratio, pressure_at)
     cstar = found.stagnation.pressure / found.throat.mass_flux
     return Combustion(
-        table, mixture.atoms, mixture.enthalpy, found.injector, found.inlet, found.inlet_velocity, found.stagnation, found.throat, ratio, cstar
+        table,
+        mixture.atoms,
+        mixture.enthalpy,
+        found.injector,
+        found.inlet,
+        found.inlet_velocity,
+        found.stagnation,
+        found.throat,
+        ratio,
+        cstar,
     )
 
 
@@ -156,7 +174,12 @@ def given_gas(
     pressure_at: str = "injector",
 ) -> GivenGas:
     """Return the reservoir of a gas of constant properties; arguments as for `combust`, temperature at rest [K]."""
-    arrays = np.broadcast_arrays(*(np.atleast_1d(values(v)) for v in (pressure, temperature, gas_constant, isentropic_exponent, contraction_ratio)))
+    arrays = np.broadcast_arrays(
+        *(
+            np.atleast_1d(values(v))
+            for v in (pressure, temperature, gas_constant, isentropic_exponent, contraction_ratio)
+        )
+    )
     p, t, r, gamma, ratio = (np.array(array, dtype=float) for array in arrays)
     injector, stagnation = combustor.constant_property_pressures(p, gamma, ratio, pressure_at)
     cstar = gas_dynamics.characteristic_velocity(t, r, gamma)
@@ -168,4 +191,3 @@ def sorted_fractions(table: SpeciesTable, amounts: Array) -> list[tuple[str, flo
     fractions = amounts / amounts.sum()
     order = np.argsort(-fractions, kind="stable")
     return [(table.names[k], float(fractions[k])) for k in order]
-

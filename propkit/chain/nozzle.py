@@ -44,7 +44,9 @@ class Expansion:
         for state, where in ((self.throat, "the throat"), (self.exit, "the exit")):
             if state.amounts is None:
                 continue
-            for text, _, about in warnings.composition_range(self.table, state.amounts[index], float(state.temperature[index]), where, "stations"):
+            for text, _, about in warnings.composition_range(
+                self.table, state.amounts[index], float(state.temperature[index]), where, "stations"
+            ):
                 yield text, about
             for text, _, about in warnings.supersaturation(self.table, state.take([index]), where, "stations"):
                 yield text, about
@@ -54,7 +56,11 @@ class Expansion:
         if self.table is None:
             return []
         listed = (("nozzle inlet", self.inlet), ("throat", self.throat), ("exit", self.exit))
-        return [(name, sorted_fractions(self.table, state.amounts[index])) for name, state in listed if state.amounts is not None]
+        return [
+            (name, sorted_fractions(self.table, state.amounts[index]))
+            for name, state in listed
+            if state.amounts is not None
+        ]
 
 
 def expand(
@@ -95,19 +101,27 @@ def expand(
     return Expansion(isentrope, inlet, throat, exit_state, flux, ratio, getattr(reservoir, "table", None))
 
 
-def _isentrope(reservoir: Combustion | GivenGas, flow: str, freeze_at: str | float | None, exponent: str | None) -> Isentrope:
+def _isentrope(
+    reservoir: Combustion | GivenGas, flow: str, freeze_at: str | float | None, exponent: str | None
+) -> Isentrope:
     if isinstance(reservoir, GivenGas):
-        return expansion.perfect_gas(reservoir.isentropic_exponent, reservoir.gas_constant, reservoir.temperature, reservoir.stagnation_pressure)
+        return expansion.perfect_gas(
+            reservoir.isentropic_exponent, reservoir.gas_constant, reservoir.temperature, reservoir.stagnation_pressure
+        )
     rest = reservoir.stagnation
     shifting = expansion.shifting(reservoir.table, reservoir.atoms, rest)
     if flow == "shifting":
         return shifting
     if flow == "constant-property":
         gamma = rest.isentropic_exponent if exponent == "equilibrium" else rest.frozen_isentropic_exponent
-        return expansion.perfect_gas(gamma, rest.gas_constant, rest.temperature, rest.pressure, rest.enthalpy, rest.entropy)
+        return expansion.perfect_gas(
+            gamma, rest.gas_constant, rest.temperature, rest.pressure, rest.enthalpy, rest.entropy
+        )
     if freeze_at == "chamber":
         inlet = reservoir.inlet
-        return expansion.frozen(reservoir.table, inlet.amounts, rest.enthalpy, rest.entropy, rest.pressure, rest.temperature)
+        return expansion.frozen(
+            reservoir.table, inlet.amounts, rest.enthalpy, rest.entropy, rest.pressure, rest.temperature
+        )
     return expansion.frozen_from(shifting, reservoir.throat, None if freeze_at == "throat" else float(freeze_at))  # type: ignore[arg-type]
 
 
@@ -121,7 +135,9 @@ def _inlet(reservoir: Combustion | GivenGas, isentrope: Isentrope, throat: FlowS
     return expansion.at_area_ratio(isentrope, throat.mass_flux, np.where(finite, ratio, 1e6), throat, supersonic=False)
 
 
-def state_at(found: Expansion, *, area_ratio: float | None = None, pressure: float | None = None, supersonic: bool = True) -> FlowState:
+def state_at(
+    found: Expansion, *, area_ratio: float | None = None, pressure: float | None = None, supersonic: bool = True
+) -> FlowState:
     """Return the state at a local area over effective throat area, or at a pressure [Pa]."""
     if pressure is not None:
         return expansion.at_pressure(found.isentrope, pressure, found.throat)

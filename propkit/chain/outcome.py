@@ -33,11 +33,20 @@ def raise_for(state: Any, what: str, index: int = 0) -> None:
     status = int(np.atleast_1d(state.status)[index])
     if status == CONVERGED:
         return
-    carried = {name: _scalar(getattr(state, name), index) for name in ("pressure", "temperature", "iterations", "residual") if getattr(state, name, None) is not None}
+    carried = {
+        name: _scalar(getattr(state, name), index)
+        for name in ("pressure", "temperature", "iterations", "residual")
+        if getattr(state, name, None) is not None
+    }
     reached = ", ".join(f"{name} {value:.6g}" for name, value in carried.items() if np.isfinite(value))
     if status == OUT_OF_RANGE:
-        raise RangeError(f"The {what} has no solution inside the range of the species data (state reached: {reached}).", **carried)
-    raise ConvergenceError(f"The {what} did not converge (state reached: {reached}). Nothing is returned rather than a doubtful number.", **carried)
+        raise RangeError(
+            f"The {what} has no solution inside the range of the species data (state reached: {reached}).", **carried
+        )
+    raise ConvergenceError(
+        f"The {what} did not converge (state reached: {reached}). Nothing is returned rather than a doubtful number.",
+        **carried,
+    )
 
 
 def _scalar(values: Any, index: int) -> float:

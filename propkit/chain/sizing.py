@@ -74,6 +74,8 @@ def size(
     elif name == "mass_flow":
         throat = values(given) / per_area
     else:
-        throat = values(given) / thrust.thrust(per_area, efficiency * values(exit_velocity), exit_pressure, ambient, ratio)
+        throat = values(given) / thrust.thrust(
+            per_area, efficiency * values(exit_velocity), exit_pressure, ambient, ratio
+        )
     throat, ratio, per_area = np.broadcast_arrays(throat, ratio, per_area)
     return Sizes(np.array(throat), throat * ratio, np.array(ratio), throat * per_area)

@@ -15,11 +15,15 @@ CONCERNED = 1e-6
 """Mole fraction above which a species outside its range is worth a warning."""
 
 
-def composition_range(table: SpeciesTable, amounts: Array, temperature: float, where: str, about: str) -> Iterator[tuple[str, str, str]]:
+def composition_range(
+    table: SpeciesTable, amounts: Array, temperature: float, where: str, about: str
+) -> Iterator[tuple[str, str, str]]:
     """Yield a doubt when species that matter are outside the range of their data."""
     fractions = amounts / amounts.sum()
     gas = ~table.condensed
-    beyond = gas & (fractions > CONCERNED) & ((temperature < table.temperature_low) | (temperature > table.temperature_high))
+    beyond = (
+        gas & (fractions > CONCERNED) & ((temperature < table.temperature_low) | (temperature > table.temperature_high))
+    )
     if beyond.any():
         names = ", ".join(table.names[k] for k in np.argsort(-fractions) if beyond[k])
         side = "below" if temperature < float(table.temperature_low[beyond].max()) else "above"

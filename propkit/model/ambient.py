@@ -55,7 +55,12 @@ def read_ambient(name: str, value: Any) -> Ambient:
     low, high = atmosphere.LOWEST, atmosphere.HIGHEST
     if not low <= altitude <= high:
         raise InputError(
-            Problem(name, as_text(value), f"an altitude from {low / 1e3:g} km to {high / 1e3:g} km", 'Above that, "vacuum" is meant.')
+            Problem(
+                name,
+                as_text(value),
+                f"an altitude from {low / 1e3:g} km to {high / 1e3:g} km",
+                'Above that, "vacuum" is meant.',
+            )
         )
     return Ambient(float(atmosphere.pressure(altitude)), altitude, f"{altitude / 1e3:g} km")
 

@@ -17,7 +17,17 @@ from typing import TYPE_CHECKING, Any, ClassVar, Self, TypeVar, dataclass_transf
 from propkit import units as unit_text
 from propkit.errors import InputError, NotAvailableError, Problem
 from propkit.model import binding, paths
-from propkit.model.declare import ChoiceInput, CustomInput, Declared, FlagInput, Input, NumberInput, QuantityInput, Result, TextInput
+from propkit.model.declare import (
+    ChoiceInput,
+    CustomInput,
+    Declared,
+    FlagInput,
+    Input,
+    NumberInput,
+    QuantityInput,
+    Result,
+    TextInput,
+)
 from propkit.model.doubts import Assumption, Doubt
 
 if TYPE_CHECKING:
@@ -234,7 +244,9 @@ class Calculation:
             return outcome.results[name]
         value = self._values.get(name)
         if value is None:
-            raise NotAvailableError(outcome.absent.get(name, f"{type(self).__name__} has no {name} in this recipe"), name=name)
+            raise NotAvailableError(
+                outcome.absent.get(name, f"{type(self).__name__} has no {name} in this recipe"), name=name
+            )
         return value  # type: ignore[no-any-return]
 
     def state_paths(self) -> tuple[str, ...]:
@@ -274,7 +286,11 @@ class Calculation:
         if name in self._typed:
             return "given"
         entry = self.declared_inputs.get(name)
-        return "default" if entry is not None and self._values.get(name) is not None and name not in self._outcome.results else "computed"
+        return (
+            "default"
+            if entry is not None and self._values.get(name) is not None and name not in self._outcome.results
+            else "computed"
+        )
 
     @property
     def held(self) -> Any:

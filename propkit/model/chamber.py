@@ -11,7 +11,16 @@ from propkit.constants import GAS_CONSTANT
 from propkit.errors import InputError, NotAvailableError, Problem
 from propkit.model import sheet
 from propkit.model.base import Calculation, Outcome
-from propkit.model.declare import Bounds, ChoiceInput, CustomInput, NumberInput, NumberResult, QuantityInput, QuantityResult, as_text
+from propkit.model.declare import (
+    Bounds,
+    ChoiceInput,
+    CustomInput,
+    NumberInput,
+    NumberResult,
+    QuantityInput,
+    QuantityResult,
+    as_text,
+)
 from propkit.model.doubts import Assumption, Doubt
 from propkit.model.propellant_case import PropellantCase
 from propkit.model.state import State
@@ -36,7 +45,9 @@ def read_case(name: str, value: Any) -> PropellantCase:
     """Return `value` when it is a propellant case."""
     if isinstance(value, PropellantCase):
         return value
-    raise InputError(Problem(name, as_text(value), "a pk.PropellantCase", "Chain the objects: case, chamber, nozzle, performance."))
+    raise InputError(
+        Problem(name, as_text(value), "a pk.PropellantCase", "Chain the objects: case, chamber, nozzle, performance.")
+    )
 
 
 class Chamber(Calculation):
@@ -74,9 +85,22 @@ class Chamber(Calculation):
 
     case = CustomInput(doc="the propellants upstream", reader=read_case, kw_only=False, quantity="name")
     pressure = QuantityInput(doc="quoted chamber pressure, absolute", bounds=PRESSURES)
-    pressure_at = ChoiceInput(doc="where the quoted pressure holds", choices=PRESSURE_PLACES, default=PRESSURE_PLACES[0])
-    contraction_ratio = NumberInput(doc="chamber area over throat area", default=math.inf, bounds=CONTRACTIONS, hint=_HINT_CONTRACTION, infinite=True)
-    cstar_efficiency = NumberInput(doc="delivered over theoretical characteristic velocity", default=1.0, bounds=EFFICIENCIES, hint=_HINT_EFFICIENCY)
+    pressure_at = ChoiceInput(
+        doc="where the quoted pressure holds", choices=PRESSURE_PLACES, default=PRESSURE_PLACES[0]
+    )
+    contraction_ratio = NumberInput(
+        doc="chamber area over throat area",
+        default=math.inf,
+        bounds=CONTRACTIONS,
+        hint=_HINT_CONTRACTION,
+        infinite=True,
+    )
+    cstar_efficiency = NumberInput(
+        doc="delivered over theoretical characteristic velocity",
+        default=1.0,
+        bounds=EFFICIENCIES,
+        hint=_HINT_EFFICIENCY,
+    )
 
     temperature = QuantityResult(relation="chamber_equilibrium", source="rn1037")
     characteristic_velocity = QuantityResult(relation="theoretical_characteristic_velocity", source="definition")
@@ -101,7 +125,11 @@ class Chamber(Calculation):
         )
         combustion.raise_for_status(self.kind)
         face = combustion.injector
-        results = {name: float(getattr(face, name)[0]) for name in stage.INJECTOR_RESULTS if math.isfinite(getattr(face, name)[0])}
+        results = {
+            name: float(getattr(face, name)[0])
+            for name in stage.INJECTOR_RESULTS
+            if math.isfinite(getattr(face, name)[0])
+        }
         results["stagnation_pressure"] = float(combustion.stagnation.pressure[0])
         results["characteristic_velocity"] = float(combustion.characteristic_velocity[0])
         pressure = self._values["pressure"]
@@ -170,7 +198,11 @@ class Chamber(Calculation):
 
     def states(self) -> tuple[State, ...]:
         """Return the states that belong to the chamber: the injector face, where it differs from the nozzle inlet."""
-        return (self.lazily("injector", lambda: State("injector face", self.held.injector_values())),) if self._shows_face() else ()
+        return (
+            (self.lazily("injector", lambda: State("injector face", self.held.injector_values())),)
+            if self._shows_face()
+            else ()
+        )
 
     def _shows_face(self) -> bool:
         return math.isfinite(self._values["contraction_ratio"])
@@ -180,7 +212,11 @@ class Chamber(Calculation):
         return f"{self.case.subtitle()}, {self._values['pressure'] / 1e6:.4g} MPa"
 
     def _own_assumptions(self) -> tuple[Assumption, ...]:
-        made = [Assumption("equilibrium", "Combustion reaches chemical equilibrium, without heat loss.", "method", "temperature")]
+        made = [
+            Assumption(
+                "equilibrium", "Combustion reaches chemical equilibrium, without heat loss.", "method", "temperature"
+            )
+        ]
         return (*made, *self._common_assumptions())
 
     def _common_assumptions(self) -> tuple[Assumption, ...]:
@@ -191,14 +227,20 @@ class Chamber(Calculation):
             text = f"Combustion at constant area (contraction ratio {ratio:g}) conserves mass, momentum and energy; the pressure holds at the {self._values['pressure_at']}."
         made = [Assumption("contraction", text, self.kind_of("contraction_ratio"), "mass_flow")]
         eta = self._values["cstar_efficiency"]
-        text = "Combustion is complete (c* efficiency 1)." if eta == 1.0 else f"Combustion delivers {eta:g} of the theoretical characteristic velocity."
+        text = (
+            "Combustion is complete (c* efficiency 1)."
+            if eta == 1.0
+            else f"Combustion delivers {eta:g} of the theoretical characteristic velocity."
+        )
         made.append(Assumption("cstar-efficiency", text, self.kind_of("cstar_efficiency"), "mass_flow"))
         return tuple(made)
 
     def sections(self, system: UnitSystem) -> Iterator[Section]:
         """Yield composition and assumptions."""
         pairs = [(name, value) for name, value in self.held.composition() if value >= COMPOSITION_SHOWN]
-        yield sheet.composition_table(pairs, f"Mole fractions of {COMPOSITION_SHOWN:g} and above, at the injector face.")
+        yield sheet.composition_table(
+            pairs, f"Mole fractions of {COMPOSITION_SHOWN:g} and above, at the injector face."
+        )
         yield sheet.assumption_section(self)
 
     def figures(self, system: UnitSystem = "SI") -> tuple[Figure, ...]:
@@ -207,8 +249,19 @@ class Chamber(Calculation):
         percent = tuple(100.0 * value for _, value in pairs)
         texts = tuple(f"{value:.2f} %" if value < 10.0 else f"{value:.1f} %" for value in percent)
         bars = Bars(tuple(name for name, _ in pairs), Series("mole fraction", percent, "percent", "x"), texts)
-        alt = "Largest mole fractions: " + ", ".join(f"{name} {text}" for (name, _), text in zip(pairs, texts, strict=True))
-        return (Figure("composition", "Composition of the gas", alt, Axis("mole fraction", "percent", "x", low=0.0), Axis(""), (bars,)),)
+        alt = "Largest mole fractions: " + ", ".join(
+            f"{name} {text}" for (name, _), text in zip(pairs, texts, strict=True)
+        )
+        return (
+            Figure(
+                "composition",
+                "Composition of the gas",
+                alt,
+                Axis("mole fraction", "percent", "x", low=0.0),
+                Axis(""),
+                (bars,),
+            ),
+        )
 
 
 class GasChamber(Chamber):
@@ -231,14 +284,27 @@ class GasChamber(Chamber):
         @property
         def case(self) -> Any:
             """Raise: a gas given outright has no propellant case."""
-            raise NotAvailableError("the chamber is of a gas given outright: it has no propellant case; pk.Chamber(case, ...) has one")
+            raise NotAvailableError(
+                "the chamber is of a gas given outright: it has no propellant case; pk.Chamber(case, ...) has one"
+            )
 
     def _check(self, bad: set[str]) -> list[Problem]:
         given = [name for name in self.groups[0] if name in self._typed]
         if len(given) == 2:
-            return [Problem("molar_mass", f"{self._typed['molar_mass']} beside a gas_constant", "given alone", "Give one of the two.")]
+            return [
+                Problem(
+                    "molar_mass",
+                    f"{self._typed['molar_mass']} beside a gas_constant",
+                    "given alone",
+                    "Give one of the two.",
+                )
+            ]
         if not given and not bad & set(self.groups[0]):
-            return [Problem("molar_mass", "missing", "given, or gas_constant in its place", 'For example molar_mass="22 g/mol".')]
+            return [
+                Problem(
+                    "molar_mass", "missing", "given, or gas_constant in its place", 'For example molar_mass="22 g/mol".'
+                )
+            ]
         return []
 
     def _calculate(self) -> Outcome:
@@ -283,7 +349,10 @@ class GasChamber(Chamber):
         return f"gas of exponent {self.si('isentropic_exponent'):.4g} at {self.si('temperature'):.5g} K, {self._values['pressure'] / 1e6:.4g} MPa"
 
     def _own_assumptions(self) -> tuple[Assumption, ...]:
-        return (Assumption("given-gas", "Gas properties are given, not computed, and constant.", "given", "temperature"), *self._common_assumptions())
+        return (
+            Assumption("given-gas", "Gas properties are given, not computed, and constant.", "given", "temperature"),
+            *self._common_assumptions(),
+        )
 
     def sections(self, system: UnitSystem) -> Iterator[Section]:
         """Yield the assumptions."""
@@ -292,5 +361,3 @@ class GasChamber(Chamber):
     def figures(self, system: UnitSystem = "SI") -> tuple[Figure, ...]:
         """Return nothing: a gas without composition has no bars."""
         return ()
-
-

@@ -59,7 +59,12 @@ class Bounds:
         shown = units.shown_unit(unit)
         parts = [
             f"{word} {limit:g}{f' {shown}' if shown else ''}"
-            for word, limit in (("at least", self.at_least), ("above", self.above), ("at most", self.at_most), ("below", self.below))
+            for word, limit in (
+                ("at least", self.at_least),
+                ("above", self.above),
+                ("at most", self.at_most),
+                ("below", self.below),
+            )
             if limit is not None
         ]
         return " and ".join(parts)
@@ -180,7 +185,16 @@ class NumberInput(Input):
 class ChoiceInput(Input):
     """One of a few words."""
 
-    def __init__(self, *, choices: tuple[str, ...], doc: str, default: Any = REQUIRED, kw_only: bool = True, hint: str = "", quantity: str = "") -> None:
+    def __init__(
+        self,
+        *,
+        choices: tuple[str, ...],
+        doc: str,
+        default: Any = REQUIRED,
+        kw_only: bool = True,
+        hint: str = "",
+        quantity: str = "",
+    ) -> None:
         super().__init__(doc=doc, default=default, kw_only=kw_only, hint=hint, quantity=quantity)
         self.choices = choices
 
@@ -291,7 +305,9 @@ class Result(Declared):
         Whether the sheet lists it among the results.
     """
 
-    def __init__(self, *, relation: str = "", source: str = "", quantity: str = "", doc: str = "", shown: bool = True) -> None:
+    def __init__(
+        self, *, relation: str = "", source: str = "", quantity: str = "", doc: str = "", shown: bool = True
+    ) -> None:
         super().__init__(quantity=quantity, doc=doc)
         self.relation = relation
         self.source = source

@@ -27,7 +27,9 @@ def nozzle_figures(nozzle: Nozzle, system: UnitSystem) -> tuple[Figure, ...]:
     outline = [*upper, *((x, -r) for x, r in reversed(upper))]
     scale = units.convert(1.0, "m", unit)
     xs, ys = (tuple(scale * point[axis] for point in outline) for axis in (0, 1))
-    body = Line(Series("axial position", xs, unit, "x"), Series("radius", ys, unit, "r"), colour="ink", closed=True, fill=True)
+    body = Line(
+        Series("axial position", xs, unit, "x"), Series("radius", ys, unit, "r"), colour="ink", closed=True, fill=True
+    )
     end = wall[-1][0]
     marks = (
         Mark(0.0, scale * throat, f"throat {scale * 2 * throat:.4g} {units.shown_unit(unit)}"),
@@ -35,7 +37,17 @@ def nozzle_figures(nozzle: Nozzle, system: UnitSystem) -> tuple[Figure, ...]:
     )
     alt = f"Nozzle outline: throat diameter {scale * 2 * throat:.4g} {units.shown_unit(unit)}, exit diameter {scale * 2 * lip:.4g}, area ratio {nozzle.si('area_ratio'):.4g}"
     title = "Nozzle, diameters to scale; length schematic (15° cone)"
-    return (Figure("outline", title, alt, Axis("axial position", unit, "x"), Axis("radius", unit, "r"), (body, *marks), equal_aspect=True),)
+    return (
+        Figure(
+            "outline",
+            title,
+            alt,
+            Axis("axial position", unit, "x"),
+            Axis("radius", unit, "r"),
+            (body, *marks),
+            equal_aspect=True,
+        ),
+    )
 
 
 def schematic_wall(throat: float, lip: float, chamber: float) -> list[tuple[float, float]]:

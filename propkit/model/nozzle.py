@@ -11,7 +11,7 @@ import numpy as np
 from propkit import units
 from propkit.chain import nozzle as stage
 from propkit.chain import sizing
-from propkit.errors import InputError, NotAvailableError, Problem, RangeError
+from propkit.errors import InputError, Problem, RangeError
 from propkit.model import sheet
 from propkit.model.ambient import read_ambient
 from propkit.model.base import Calculation, Outcome
@@ -31,7 +31,18 @@ FLOWS = ("shifting", "frozen", "constant-property")
 EXPONENTS = ("equilibrium", "frozen")
 SIZES = (*sizing.THROAT_SIZES, *sizing.EXIT_SIZES, *sizing.FLOW_SIZES)
 EXPANSIONS = ("area_ratio", "exit_pressure")
-STATION_COLUMNS = ("pressure", "temperature", "density", "velocity", "mach", "sound_speed", "molar_mass", "isentropic_exponent", "enthalpy", "entropy")
+STATION_COLUMNS = (
+    "pressure",
+    "temperature",
+    "density",
+    "velocity",
+    "mach",
+    "sound_speed",
+    "molar_mass",
+    "isentropic_exponent",
+    "enthalpy",
+    "entropy",
+)
 _LENGTHS = Bounds(at_least=1e-5, at_most=100.0)
 _AREAS = Bounds(at_least=1e-10, at_most=1e4)
 
@@ -40,14 +51,18 @@ def read_nozzle(name: str, value: Any) -> Nozzle:
     """Return `value` when it is a nozzle."""
     if isinstance(value, Nozzle):
         return value
-    raise InputError(Problem(name, as_text(value), "a pk.Nozzle", "Chain the objects: case, chamber, nozzle, performance."))
+    raise InputError(
+        Problem(name, as_text(value), "a pk.Nozzle", "Chain the objects: case, chamber, nozzle, performance.")
+    )
 
 
 def read_chamber(name: str, value: Any) -> Chamber:
     """Return `value` when it is a chamber."""
     if isinstance(value, Chamber):
         return value
-    raise InputError(Problem(name, as_text(value), "a pk.Chamber", "Chain the objects: case, chamber, nozzle, performance."))
+    raise InputError(
+        Problem(name, as_text(value), "a pk.Chamber", "Chain the objects: case, chamber, nozzle, performance.")
+    )
 
 
 def read_freeze(name: str, value: Any) -> str | float:
@@ -101,19 +116,30 @@ class Nozzle(Calculation):
     headline = ("mass_flow", "throat_diameter", "exit_diameter", "area_ratio")
 
     chamber = CustomInput(doc="the chamber upstream", reader=read_chamber, kw_only=False, quantity="name")
-    area_ratio = NumberInput(doc="exit area over throat area", default=None, bounds=Bounds(at_least=1.0, at_most=1e4), hint="Did you pass throat over exit?")
-    exit_pressure = QuantityInput(doc="static pressure at the exit", default=None, bounds=Bounds(at_least=0.1, at_most=1e8))
+    area_ratio = NumberInput(
+        doc="exit area over throat area",
+        default=None,
+        bounds=Bounds(at_least=1.0, at_most=1e4),
+        hint="Did you pass throat over exit?",
+    )
+    exit_pressure = QuantityInput(
+        doc="static pressure at the exit", default=None, bounds=Bounds(at_least=0.1, at_most=1e8)
+    )
     throat_diameter = QuantityInput(doc="geometric throat diameter", default=None, bounds=_LENGTHS)
     throat_area = QuantityInput(doc="geometric throat area", default=None, bounds=_AREAS)
     exit_diameter = QuantityInput(doc="geometric exit diameter", default=None, bounds=_LENGTHS)
     exit_area = QuantityInput(doc="geometric exit area", default=None, bounds=_AREAS)
     mass_flow = QuantityInput(doc="mass flow to be passed", default=None, bounds=Bounds(at_least=1e-9, at_most=1e6))
-    thrust = QuantityInput(doc="thrust to be delivered at sizing_ambient", default=None, bounds=Bounds(at_least=1e-6, at_most=1e9))
+    thrust = QuantityInput(
+        doc="thrust to be delivered at sizing_ambient", default=None, bounds=Bounds(at_least=1e-6, at_most=1e9)
+    )
     sizing_ambient = CustomInput(doc="surroundings at which the thrust is asked for", default=None, reader=read_ambient)
     flow = ChoiceInput(doc="how composition behaves in the nozzle", choices=FLOWS, default=None)
     freeze_at = CustomInput(doc="where the composition freezes, frozen flow only", default=None, reader=read_freeze)
     exponent = ChoiceInput(doc="isentropic exponent of constant-property flow", choices=EXPONENTS, default=None)
-    discharge_coefficient = NumberInput(doc="effective over geometric throat area", default=1.0, bounds=Bounds(above=0.5, at_most=1.0))
+    discharge_coefficient = NumberInput(
+        doc="effective over geometric throat area", default=1.0, bounds=Bounds(above=0.5, at_most=1.0)
+    )
 
     characteristic_velocity = QuantityResult(relation="characteristic_velocity", source="definition")
 
@@ -126,13 +152,31 @@ class Nozzle(Calculation):
         flow = self._flow()
         allowed = self._values["chamber"].flows
         if flow not in allowed:
-            problems.append(Problem("flow", repr(flow), " or ".join(map(repr, allowed)), self._values["chamber"].flow_reason))
+            problems.append(
+                Problem("flow", repr(flow), " or ".join(map(repr, allowed)), self._values["chamber"].flow_reason)
+            )
         if self._values["freeze_at"] is not None and flow != "frozen":
-            problems.append(Problem("freeze_at", as_text(self._typed["freeze_at"]), "left out unless flow is 'frozen'", f"The flow is {flow!r}."))
+            problems.append(
+                Problem(
+                    "freeze_at",
+                    as_text(self._typed["freeze_at"]),
+                    "left out unless flow is 'frozen'",
+                    f"The flow is {flow!r}.",
+                )
+            )
         if self._values["exponent"] is not None and flow != "constant-property":
-            problems.append(Problem("exponent", repr(self._typed["exponent"]), "left out unless flow is 'constant-property'", f"The flow is {flow!r}."))
+            problems.append(
+                Problem(
+                    "exponent",
+                    repr(self._typed["exponent"]),
+                    "left out unless flow is 'constant-property'",
+                    f"The flow is {flow!r}.",
+                )
+            )
         if self._values["exponent"] is not None and not self._values["chamber"].has("frozen_isentropic_exponent"):
-            problems.append(Problem("exponent", repr(self._typed["exponent"]), "left out for a gas with a given exponent"))
+            problems.append(
+                Problem("exponent", repr(self._typed["exponent"]), "left out for a gas with a given exponent")
+            )
         return problems
 
     def _size_problems(self, bad: set[str]) -> Iterator[Problem]:
@@ -142,7 +186,11 @@ class Nozzle(Calculation):
         flows = [name for name in sizing.FLOW_SIZES if name in self._typed or name in bad]
         given = [*expansion, *throat, *lips, *flows]
         shown = ", ".join(f"{name}={as_text(self._typed.get(name, '?'))}" for name in given) or "missing"
-        wanted = "one of area_ratio or exit_pressure with one size (" + ", ".join(SIZES) + "), or one throat size with one exit size"
+        wanted = (
+            "one of area_ratio or exit_pressure with one size ("
+            + ", ".join(SIZES)
+            + "), or one throat size with one exit size"
+        )
         two_sizes = len(throat) == 1 and len(lips) == 1 and not flows and not expansion
         one_size = len(expansion) == 1 and len(throat) + len(lips) + len(flows) == 1
         if not (two_sizes or one_size):
@@ -152,11 +200,25 @@ class Nozzle(Calculation):
         if two_sizes and not bad & set(given):
             ratio = self._size_ratio()
             if not 1.0 <= ratio <= 1e4:
-                yield Problem(lips[0], as_text(self._typed[lips[0]]), "an exit at least as large as the throat", f"The area ratio comes out as {ratio:.4g}.")
+                yield Problem(
+                    lips[0],
+                    as_text(self._typed[lips[0]]),
+                    "an exit at least as large as the throat",
+                    f"The area ratio comes out as {ratio:.4g}.",
+                )
         if flows == ["thrust"] and self._values["sizing_ambient"] is None and "sizing_ambient" not in bad:
-            yield Problem("sizing_ambient", "missing", "given with thrust", 'For example sizing_ambient="vacuum", or use Nozzle.sized_for.')
+            yield Problem(
+                "sizing_ambient",
+                "missing",
+                "given with thrust",
+                'For example sizing_ambient="vacuum", or use Nozzle.sized_for.',
+            )
         if "thrust" not in flows and "sizing_ambient" in self._typed:
-            yield Problem("sizing_ambient", as_text(self._typed["sizing_ambient"]), "left out unless the nozzle is sized for a thrust")
+            yield Problem(
+                "sizing_ambient",
+                as_text(self._typed["sizing_ambient"]),
+                "left out unless the nozzle is sized for a thrust",
+            )
 
     def _size_ratio(self) -> float:
         areas = [
@@ -170,7 +232,9 @@ class Nozzle(Calculation):
     def displaced(self, typed: dict[str, Any], changes: Mapping[str, Any]) -> dict[str, Any]:
         """Return `typed` without the sizes that the changes displace: naming one member of a group displaces the others."""
         kept = dict(typed)
-        throat, lips, flows, expansion = (set(group) for group in (sizing.THROAT_SIZES, sizing.EXIT_SIZES, sizing.FLOW_SIZES, EXPANSIONS))
+        throat, lips, flows, expansion = (
+            set(group) for group in (sizing.THROAT_SIZES, sizing.EXIT_SIZES, sizing.FLOW_SIZES, EXPANSIONS)
+        )
         named = set(changes)
         drop: set[str] = set()
         two_sizes = bool(throat & set(typed)) and bool(lips & set(typed))
@@ -226,7 +290,12 @@ class Nozzle(Calculation):
         throat_pressure = float(expansion.throat.pressure[0])
         if pressure is not None and pressure > throat_pressure:
             raise InputError(
-                Problem("exit_pressure", f"{pressure:g} Pa", f"at most the throat pressure, {throat_pressure:g} Pa", "A nozzle with an exit accelerates the gas beyond its throat.")
+                Problem(
+                    "exit_pressure",
+                    f"{pressure:g} Pa",
+                    f"at most the throat pressure, {throat_pressure:g} Pa",
+                    "A nozzle with an exit accelerates the gas beyond its throat.",
+                )
             )
         expansion.raise_for_status(self.kind)
 
@@ -244,7 +313,9 @@ class Nozzle(Calculation):
             discharge_coefficient=self._values["discharge_coefficient"],
             cstar_efficiency=chamber.si("cstar_efficiency"),
         )
-        throat_area, exit_area, mass_flow = (float(getattr(sizes, field)[0]) for field in ("throat_area", "exit_area", "mass_flow"))
+        throat_area, exit_area, mass_flow = (
+            float(getattr(sizes, field)[0]) for field in ("throat_area", "exit_area", "mass_flow")
+        )
         if not (throat_area > 0.0 and math.isfinite(throat_area)):
             raise RangeError(
                 f"No size gives a thrust of {self._values['thrust']:g} N at an ambient pressure of {ambient.pressure:g} Pa: this expansion "
@@ -344,7 +415,9 @@ class Nozzle(Calculation):
         """The propellant case upstream."""
         return self.chamber.case
 
-    def at(self, *, area_ratio: NumberLike | None = None, pressure: QuantityLike | None = None, branch: str = "supersonic") -> State:
+    def at(
+        self, *, area_ratio: NumberLike | None = None, pressure: QuantityLike | None = None, branch: str = "supersonic"
+    ) -> State:
         """Return the flow state at a local area ratio or at a pressure.
 
         Parameters
@@ -364,18 +437,31 @@ class Nozzle(Calculation):
         if branch not in ("supersonic", "subsonic"):
             raise InputError(Problem("branch", as_text(branch), "'supersonic' or 'subsonic'"))
         if (area_ratio is None) == (pressure is None):
-            raise InputError(Problem("area_ratio", "missing" if area_ratio is None else "given beside pressure", "given, or pressure in its place", "Give one of the two."))
+            raise InputError(
+                Problem(
+                    "area_ratio",
+                    "missing" if area_ratio is None else "given beside pressure",
+                    "given, or pressure in its place",
+                    "Give one of the two.",
+                )
+            )
         if area_ratio is not None:
             ratio = units.to_si(area_ratio, "", "area_ratio")
             if not 1.0 <= ratio <= 1e6:
                 raise InputError(Problem("area_ratio", as_text(area_ratio), "at least 1 and at most 1e+06"))
-            flow = stage.state_at(self.held, area_ratio=ratio / self.si("discharge_coefficient"), supersonic=branch == "supersonic")
+            flow = stage.state_at(
+                self.held, area_ratio=ratio / self.si("discharge_coefficient"), supersonic=branch == "supersonic"
+            )
             label = f"{branch}, area ratio {ratio:g}"
         else:
             wanted = units.to_si(pressure, "Pa", "pressure")
             stagnation = self.chamber.si("stagnation_pressure")
             if not 0.0 < wanted <= stagnation:
-                raise InputError(Problem("pressure", as_text(pressure), f"above 0 and at most the stagnation pressure, {stagnation:g} Pa"))
+                raise InputError(
+                    Problem(
+                        "pressure", as_text(pressure), f"above 0 and at most the stagnation pressure, {stagnation:g} Pa"
+                    )
+                )
             flow = stage.state_at(self.held, pressure=wanted)
             label = f"pressure {wanted:g} Pa"
         stage.raise_for(flow, label, self.held)
@@ -430,10 +516,22 @@ class Nozzle(Calculation):
         }
         made = [
             Assumption("flow", words[self.flow], self.kind_of("flow"), "mass_flow"),
-            Assumption("isentropic", "The flow is one-dimensional and isentropic from the nozzle inlet on.", "method", "specific_impulse"),
+            Assumption(
+                "isentropic",
+                "The flow is one-dimensional and isentropic from the nozzle inlet on.",
+                "method",
+                "specific_impulse",
+            ),
         ]
         if self.discharge_coefficient == 1.0:
-            made.append(Assumption("discharge", "The whole throat area passes flow (discharge coefficient 1).", self.kind_of("discharge_coefficient"), "mass_flow"))
+            made.append(
+                Assumption(
+                    "discharge",
+                    "The whole throat area passes flow (discharge coefficient 1).",
+                    self.kind_of("discharge_coefficient"),
+                    "mass_flow",
+                )
+            )
         return tuple(made)
 
     def _frozen_text(self) -> str:
@@ -469,5 +567,3 @@ def _state_of(station: str, flow: Any) -> State:
     if values.get("condensed_mass_fraction") == 0.0:
         del values["condensed_mass_fraction"]
     return State(station, values, {"condensed_mass_fraction": "the gas holds no condensed species"})
-
-

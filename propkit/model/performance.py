@@ -65,7 +65,14 @@ class Performance(Calculation):
         ambient, pressure = self._values["ambient"].pressure, self._values["nozzle"].chamber.si("stagnation_pressure")
         if ambient < pressure:
             return []
-        return [Problem("ambient", f"{ambient:g} Pa", f"below the chamber's stagnation pressure, {pressure:g} Pa", "Nothing would flow out.")]
+        return [
+            Problem(
+                "ambient",
+                f"{ambient:g} Pa",
+                f"below the chamber's stagnation pressure, {pressure:g} Pa",
+                "Nothing would flow out.",
+            )
+        ]
 
     def _calculate(self) -> Outcome:
         nozzle: Nozzle = self._values["nozzle"]
@@ -90,9 +97,13 @@ class Performance(Calculation):
             results["oxidizer_mass_flow"] = float(stoichiometry.mix(ratio, results["mass_flow"], 0.0))
             results["fuel_mass_flow"] = float(stoichiometry.mix(ratio, 0.0, results["mass_flow"]))
         else:
-            absent["oxidizer_mass_flow"] = absent["fuel_mass_flow"] = "the gas has no mixture ratio: it is not made from an oxidizer and a fuel"
+            absent["oxidizer_mass_flow"] = absent["fuel_mass_flow"] = (
+                "the gas has no mixture ratio: it is not made from an oxidizer and a fuel"
+            )
         if case is not None and case.has("bulk_density"):
-            results["density_impulse"] = float(thrust.density_impulse(results["specific_impulse"], case.si("bulk_density")))
+            results["density_impulse"] = float(
+                thrust.density_impulse(results["specific_impulse"], case.si("bulk_density"))
+            )
         else:
             absent["density_impulse"] = "the bulk density of the propellants is not known"
         return Outcome(results, absent, tuple(self._doubts(results, nozzle, ambient.pressure)))
@@ -100,10 +111,16 @@ class Performance(Calculation):
     def _doubts(self, results: dict[str, float], nozzle: Nozzle, ambient: float) -> Iterator[Doubt]:
         exit_state = nozzle.exit
         if results["thrust"] < 0.0:
-            yield Doubt("The thrust is negative: the surroundings push harder than the jet; the nozzle cannot run like this.", code="negative-thrust", about="thrust")
+            yield Doubt(
+                "The thrust is negative: the surroundings push harder than the jet; the nozzle cannot run like this.",
+                code="negative-thrust",
+                about="thrust",
+            )
         shock = 0.0
         if exit_state.si("mach") > 1.0:
-            shock = exit_state.si("pressure") * float(waves.shock_pressure_ratio(exit_state.si("mach"), exit_state.si("isentropic_exponent")))
+            shock = exit_state.si("pressure") * float(
+                waves.shock_pressure_ratio(exit_state.si("mach"), exit_state.si("isentropic_exponent"))
+            )
             if ambient > shock:
                 yield Doubt(
                     f"The ambient pressure exceeds the {shock / 1e3:.4g} kPa that a normal shock at the lip sustains: the nozzle does not flow full and the value is not delivered.",
@@ -149,8 +166,15 @@ class Performance(Calculation):
 
     def _own_assumptions(self) -> tuple[Assumption, ...]:
         return (
-            Assumption("full-flow", "The nozzle flows full; separation is warned of, not modelled.", "method", "thrust"),
-            Assumption("one-dimensional", "One-dimensional flow: no divergence, friction or kinetic loss is taken off.", "default", "specific_impulse"),
+            Assumption(
+                "full-flow", "The nozzle flows full; separation is warned of, not modelled.", "method", "thrust"
+            ),
+            Assumption(
+                "one-dimensional",
+                "One-dimensional flow: no divergence, friction or kinetic loss is taken off.",
+                "default",
+                "specific_impulse",
+            ),
         )
 
     def cross_check(self) -> Any:
@@ -186,9 +210,22 @@ class Performance(Calculation):
         xs = tuple(float(altitude / scale) for altitude in altitudes)
         line = Line(Series("altitude", xs, length), Series("thrust", tuple(shown), unit, "F"), colour="accent")
         ambient: Ambient = self._values["ambient"]
-        at = ambient.altitude if ambient.altitude is not None else (60e3 if ambient.pressure <= pressures[-1] else float(atmosphere.altitude_of_pressure(ambient.pressure)))
+        at = (
+            ambient.altitude
+            if ambient.altitude is not None
+            else (
+                60e3 if ambient.pressure <= pressures[-1] else float(atmosphere.altitude_of_pressure(ambient.pressure))
+            )
+        )
         mark = Mark(min(max(at, 0.0), 60e3) / scale, units.convert(self.si("thrust"), row.unit, unit), ambient.text)
         alt = f"Thrust against altitude: {shown[0]:.4g} {units.shown_unit(unit)} at sea level, {shown[-1]:.4g} at 60 km"
-        return (Figure("altitude", "Thrust against altitude", alt, Axis("altitude", length), Axis("thrust", unit, "F"), (line, mark)),)
-
-
+        return (
+            Figure(
+                "altitude",
+                "Thrust against altitude",
+                alt,
+                Axis("altitude", length),
+                Axis("thrust", unit, "F"),
+                (line, mark),
+            ),
+        )

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -12,10 +12,18 @@ from propkit import units
 from propkit.bridge import basis as bases
 from propkit.chain import case as stage
 from propkit.data import propellants as library
-from propkit.errors import InputError, NotAvailableError, Problem
+from propkit.errors import InputError, Problem
 from propkit.model import sheet
 from propkit.model.base import Calculation, Outcome
-from propkit.model.declare import Bounds, ChoiceInput, CustomInput, NumberInput, NumberResult, QuantityInput, QuantityResult
+from propkit.model.declare import (
+    Bounds,
+    ChoiceInput,
+    CustomInput,
+    NumberInput,
+    NumberResult,
+    QuantityInput,
+    QuantityResult,
+)
 from propkit.model.doubts import Assumption, Doubt
 from propkit.model.propellant import Propellant, as_propellant
 from propkit.report import Column, Section, Table, UnitSystem
@@ -79,12 +87,18 @@ class PropellantCase(Calculation):
     oxidizer = CustomInput(doc="propellant that supplies the oxidizing elements", reader=as_propellant, kw_only=False)
     fuel = CustomInput(doc="propellant that is burnt", reader=as_propellant, kw_only=False)
     mixture_ratio = NumberInput(doc="oxidizer mass flow over fuel mass flow", default=None, bounds=_RATIOS)
-    equivalence_ratio = NumberInput(doc="stoichiometric over actual mixture ratio; above 1 is fuel-rich", default=None, bounds=_RATIOS)
-    oxidizer_temperature = QuantityInput(doc="temperature of the oxidizer as stored or fed", default=None, bounds=_TEMPERATURES)
+    equivalence_ratio = NumberInput(
+        doc="stoichiometric over actual mixture ratio; above 1 is fuel-rich", default=None, bounds=_RATIOS
+    )
+    oxidizer_temperature = QuantityInput(
+        doc="temperature of the oxidizer as stored or fed", default=None, bounds=_TEMPERATURES
+    )
     fuel_temperature = QuantityInput(doc="temperature of the fuel as stored or fed", default=None, bounds=_TEMPERATURES)
     oxidizer_pressure = QuantityInput(doc="pressure of the oxidizer as stored or fed", default=None, bounds=_PRESSURES)
     fuel_pressure = QuantityInput(doc="pressure of the fuel as stored or fed", default=None, bounds=_PRESSURES)
-    thermo_basis = ChoiceInput(doc="species data that the equilibrium rests on", choices=bases.BASES, default=bases.BASES[0])
+    thermo_basis = ChoiceInput(
+        doc="species data that the equilibrium rests on", choices=bases.BASES, default=bases.BASES[0]
+    )
 
     stoichiometric_mixture_ratio = NumberResult(relation="stoichiometric_mixture_ratio", source="common-practice")
     bulk_density = QuantityResult(relation="bulk_density", source="definition")
@@ -101,9 +115,18 @@ class PropellantCase(Calculation):
         given = [name for name in self.groups[0] if name in self._typed]
         if len(given) == 2:
             values = f"{self._typed[given[0]]} beside equivalence_ratio {self._typed[given[1]]}"
-            problems.append(Problem("mixture_ratio", values, "given alone or left to equivalence_ratio", "Give one of the two."))
+            problems.append(
+                Problem("mixture_ratio", values, "given alone or left to equivalence_ratio", "Give one of the two.")
+            )
         elif not given and not bad & set(self.groups[0]):
-            problems.append(Problem("mixture_ratio", "missing", "given, or equivalence_ratio in its place", "For example mixture_ratio=3.4."))
+            problems.append(
+                Problem(
+                    "mixture_ratio",
+                    "missing",
+                    "given, or equivalence_ratio in its place",
+                    "For example mixture_ratio=3.4.",
+                )
+            )
         return problems
 
     def _calculate(self) -> Outcome:
@@ -119,7 +142,12 @@ class PropellantCase(Calculation):
         if ratio is None:
             if not np.isfinite(stoichiometric):
                 raise InputError(
-                    Problem("equivalence_ratio", str(self._typed["equivalence_ratio"]), "left out for this pair", "It has no stoichiometric mixture; give mixture_ratio.")
+                    Problem(
+                        "equivalence_ratio",
+                        str(self._typed["equivalence_ratio"]),
+                        "left out for this pair",
+                        "It has no stoichiometric mixture; give mixture_ratio.",
+                    )
                 )
             ratio = stoichiometric / self._values["equivalence_ratio"]
         mixture = stage.two_streams(oxidizer, fuel, ratio)
@@ -129,12 +157,16 @@ class PropellantCase(Calculation):
             results["stoichiometric_mixture_ratio"] = stoichiometric
             results["equivalence_ratio"] = stoichiometric / ratio
         else:
-            absent["stoichiometric_mixture_ratio"] = absent["equivalence_ratio"] = "the valences of this pair do not balance at any mixture ratio"
+            absent["stoichiometric_mixture_ratio"] = absent["equivalence_ratio"] = (
+                "the valences of this pair do not balance at any mixture ratio"
+            )
         if np.isfinite(mixture.density[0]):
             results["bulk_density"] = float(mixture.density[0])
         else:
             unknown = [role for role in ROLES if not np.isfinite(streams[role].density)]
-            absent["bulk_density"] = f"the density of the {' and the '.join(unknown)} is not known; give a pk.Propellant with density="
+            absent["bulk_density"] = (
+                f"the density of the {' and the '.join(unknown)} is not known; give a pk.Propellant with density="
+            )
         return Outcome(results, absent, tuple(doubts), CaseArrays(mixture, oxidizer, fuel, ratio))
 
     def _stream(self, role: str) -> tuple[stage.Stream, tuple[str, ...]]:
@@ -168,20 +200,36 @@ class PropellantCase(Calculation):
     def _own_assumptions(self) -> tuple[Assumption, ...]:
         basis = self.si("thermo_basis")
         made = [
-            Assumption("basis", f"Thermodynamic basis {basis}: {bases.load_basis(str(basis)).title}.", self.kind_of("thermo_basis"), "enthalpy"),
+            Assumption(
+                "basis",
+                f"Thermodynamic basis {basis}: {bases.load_basis(str(basis)).title}.",
+                self.kind_of("thermo_basis"),
+                "enthalpy",
+            ),
             Assumption("ideal-gas", "Products are a mixture of ideal gases.", "method", "enthalpy"),
-            Assumption("no-condensation", "Products are gases only: no liquid or solid forms.", "default", "composition"),
+            Assumption(
+                "no-condensation", "Products are gases only: no liquid or solid forms.", "default", "composition"
+            ),
         ]
         for role in ROLES:
             propellant: Propellant = self._values[role]
             origin = "given" if f"{role}_temperature" in self._typed else "default"
             temperature = self._values[f"{role}_temperature"] or propellant.row.temperature
-            made.append(Assumption(f"{role}-state", f"{role.capitalize()} {propellant.label} enters at {temperature:.5g} K.", origin, "enthalpy"))
+            made.append(
+                Assumption(
+                    f"{role}-state",
+                    f"{role.capitalize()} {propellant.label} enters at {temperature:.5g} K.",
+                    origin,
+                    "enthalpy",
+                )
+            )
         return tuple(made)
 
     def cautions(self) -> tuple[str, ...]:
         """Hazard line of each propellant."""
-        return tuple(f"{self._values[role].label}: {self._values[role].hazard}" for role in ROLES if self._values[role].hazard)
+        return tuple(
+            f"{self._values[role].label}: {self._values[role].hazard}" for role in ROLES if self._values[role].hazard
+        )
 
     def sections(self, system: UnitSystem) -> Iterator[Section]:
         """Yield propellants, elements and assumptions."""
@@ -203,11 +251,22 @@ class PropellantCase(Calculation):
         columns = (
             Column("propellant", "propellant", "", "", 0, tuple(propellant.label for _, propellant, _ in rows)),
             Column("formula", "formula", "", "", 0, tuple(propellant.formula for _, propellant, _ in rows)),
-            Column("enthalpy", "enthalpy", "h", energy_unit, 6, tuple(units.convert(float(s.enthalpy), "J/kg", energy_unit) for _, _, s in rows)),
+            Column(
+                "enthalpy",
+                "enthalpy",
+                "h",
+                energy_unit,
+                6,
+                tuple(units.convert(float(s.enthalpy), "J/kg", energy_unit) for _, _, s in rows),
+            ),
             Column("density", "density", r"\rho", density_unit, 4, tuple(density(s) for _, _, s in rows)),
-            Column("source", "source of the enthalpy", "", "", 0, tuple(propellant.source for _, propellant, _ in rows)),
+            Column(
+                "source", "source of the enthalpy", "", "", 0, tuple(propellant.source for _, propellant, _ in rows)
+            ),
         )
-        return Section("propellants", "Propellants", table=Table("propellants", "Propellants", "stream", ROLES, columns))
+        return Section(
+            "propellants", "Propellants", table=Table("propellants", "Propellants", "stream", ROLES, columns)
+        )
 
     def figures(self, system: UnitSystem = "SI") -> tuple[Figure, ...]:
         """Return the shares of both propellants by mass and, where densities are known, by volume."""
@@ -217,11 +276,17 @@ class PropellantCase(Calculation):
         categories = [f"{label}, mass" for label in labels]
         if self.has("bulk_density"):
             bulk = self.si("bulk_density")
-            shares += [share * bulk / float(getattr(self.held, role).density) for share, role in zip(shares, ROLES, strict=True)]
+            shares += [
+                share * bulk / float(getattr(self.held, role).density)
+                for share, role in zip(shares, ROLES, strict=True)
+            ]
             categories += [f"{label}, volume" for label in labels]
         percent = tuple(100.0 * share for share in shares)
         texts = tuple(f"{value:.1f} %" for value in percent)
         bars = Bars(tuple(categories), Series("share", percent, "percent"), texts)
         alt = "Shares of the propellants: " + ", ".join(f"{c} {t}" for c, t in zip(categories, texts, strict=True))
-        return (Figure("shares", "Shares in the tanks", alt, Axis("share", "percent", low=0.0, high=100.0), Axis(""), (bars,)),)
-
+        return (
+            Figure(
+                "shares", "Shares in the tanks", alt, Axis("share", "percent", low=0.0, high=100.0), Axis(""), (bars,)
+            ),
+        )

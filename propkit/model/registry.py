@@ -32,7 +32,11 @@ def build(recipe: Mapping[str, Any], depth: int = 0) -> Any:
     """
     if depth > DEEPEST:
         raise RecordError("the recipe is nested too deeply")
-    if not isinstance(recipe, Mapping) or set(recipe) != {"object", "inputs"} or not isinstance(recipe["inputs"], Mapping):
+    if (
+        not isinstance(recipe, Mapping)
+        or set(recipe) != {"object", "inputs"}
+        or not isinstance(recipe["inputs"], Mapping)
+    ):
         raise RecordError("a recipe has the two entries 'object' and 'inputs'")
     name = recipe["object"]
     if name not in CLASSES:
@@ -44,7 +48,9 @@ def build(recipe: Mapping[str, Any], depth: int = 0) -> Any:
     except TypeError as error:
         raise RecordError(f"the inputs of {name} in the recipe are not those of a {name}: {error}") from error
     except InputError as error:
-        raise RecordError(f"the inputs of {name} in the recipe are refused: {error}", problems=error.problems) from error
+        raise RecordError(
+            f"the inputs of {name} in the recipe are refused: {error}", problems=error.problems
+        ) from error
 
 
 def _value(value: Any, depth: int) -> Any:

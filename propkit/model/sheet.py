@@ -109,7 +109,9 @@ def frame_of(calculation: Calculation, system: UnitSystem) -> pd.DataFrame:
     return frame
 
 
-def station_table(states: Iterable[State], columns: Iterable[str], system: UnitSystem, title: str = "Stations") -> Section:
+def station_table(
+    states: Iterable[State], columns: Iterable[str], system: UnitSystem, title: str = "Stations"
+) -> Section:
     """Return the stations as a section: stations down, quantities across."""
     listed = list(states)
     made = []
@@ -146,12 +148,16 @@ def composition_along(stations: list[tuple[str, list[tuple[str, float]]]], small
         Column(station, station, "x", "", 5, tuple(dict(pairs)[name] for name in names)) for station, pairs in stations
     )
     note = f"Mole fractions, species of {smallest:g} and above at some station."
-    return Section("composition", "Composition", table=Table("composition", "Composition", "species", tuple(names), columns, note))
+    return Section(
+        "composition", "Composition", table=Table("composition", "Composition", "species", tuple(names), columns, note)
+    )
 
 
 def assumption_section(calculation: Calculation) -> Section:
     """Return the assumptions in words."""
-    lines = tuple(f"{entry.statement}{' (default)' if entry.origin == 'default' else ''}" for entry in calculation.assumptions)
+    lines = tuple(
+        f"{entry.statement}{' (default)' if entry.origin == 'default' else ''}" for entry in calculation.assumptions
+    )
     return Section("assumptions", "Assumptions", lines=lines)
 
 

@@ -55,12 +55,18 @@ def _nozzle_key(nozzle: Any, name: str) -> str:
 
 def values_for(link: Any, key: str, name: str) -> dict[str, float]:
     """Return the numbers that go into a relation [SI], by the names that the relation uses."""
-    return {"case": _case, "chamber": _chamber, "nozzle": _nozzle, "performance": _performance}[link.kind](link, key, name)
+    return {"case": _case, "chamber": _chamber, "nozzle": _nozzle, "performance": _performance}[link.kind](
+        link, key, name
+    )
 
 
 def _case(case: Any, key: str, name: str) -> dict[str, float]:
     held = case.held
-    found = {entry: case.si(entry) for entry in ("mixture_ratio", "equivalence_ratio", "stoichiometric_mixture_ratio") if case.has(entry)}
+    found = {
+        entry: case.si(entry)
+        for entry in ("mixture_ratio", "equivalence_ratio", "stoichiometric_mixture_ratio")
+        if case.has(entry)
+    }
     for role in ("oxidizer", "fuel"):
         stream = getattr(held, role)
         if stream is not None:
@@ -73,7 +79,17 @@ def _case(case: Any, key: str, name: str) -> dict[str, float]:
 
 
 def _chamber(chamber: Any, key: str, name: str) -> dict[str, float]:
-    names = ("pressure", "temperature", "density", "gas_constant", "molar_mass", "isentropic_exponent", "frozen_specific_heat", "sound_speed", "stagnation_pressure")
+    names = (
+        "pressure",
+        "temperature",
+        "density",
+        "gas_constant",
+        "molar_mass",
+        "isentropic_exponent",
+        "frozen_specific_heat",
+        "sound_speed",
+        "stagnation_pressure",
+    )
     found = {entry: chamber.si(entry) for entry in names if chamber.has(entry)}
     found["stagnation_temperature"] = found["temperature"]
     return found
@@ -81,7 +97,17 @@ def _chamber(chamber: Any, key: str, name: str) -> dict[str, float]:
 
 def _nozzle(nozzle: Any, key: str, name: str) -> dict[str, float]:
     chamber, held = nozzle.chamber, nozzle.held
-    found = {entry: nozzle.si(entry) for entry in ("throat_area", "exit_area", "mass_flow", "discharge_coefficient", "area_ratio", "characteristic_velocity")}
+    found = {
+        entry: nozzle.si(entry)
+        for entry in (
+            "throat_area",
+            "exit_area",
+            "mass_flow",
+            "discharge_coefficient",
+            "area_ratio",
+            "characteristic_velocity",
+        )
+    }
     found |= {
         "throat_mass_flux": float(held.mass_flux[0]),
         "local_mass_flux": nozzle.exit.si("density") * nozzle.exit.si("velocity") / nozzle.si("discharge_coefficient"),
@@ -132,11 +158,15 @@ def supporting(link: Any, name: str) -> Iterator[tuple[str, str, Mapping[str, fl
         if flow.flow == "constant-property":
             yield "mass_flow_in_closed_form", "choked_mass_flux", reservoir_of(flow)
     if name.startswith(("thrust", "specific_impulse", "effective_exhaust")) and link.kind == "performance":
-        yield "delivered_velocity", "delivered_velocity", {
-            "exit_velocity": flow.exit.si("velocity"),
-            "cstar_efficiency": flow.chamber.si("cstar_efficiency"),
-            "divergence_factor": 1.0,
-        }
+        yield (
+            "delivered_velocity",
+            "delivered_velocity",
+            {
+                "exit_velocity": flow.exit.si("velocity"),
+                "cstar_efficiency": flow.chamber.si("cstar_efficiency"),
+                "divergence_factor": 1.0,
+            },
+        )
 
 
 def reservoir_of(nozzle: Any) -> dict[str, float]:
@@ -176,10 +206,30 @@ def _chamber_conditions(chamber: Any, name: str) -> Iterator[Step]:
     yield from element_conditions(held.table.elements, held.atoms[0], face.amounts[0] @ held.table.composition)
     if name == "characteristic_velocity":
         throat = held.throat
-        yield condition("mach", "Mach number at the throat", "u = a", "M_t = 1", float(throat.velocity[0]), float(throat.sound_speed[0]), "conservation")
+        yield condition(
+            "mach",
+            "Mach number at the throat",
+            "u = a",
+            "M_t = 1",
+            float(throat.velocity[0]),
+            float(throat.sound_speed[0]),
+            "conservation",
+        )
         flux = float(held.stagnation.pressure[0]) / float(throat.mass_flux[0])
-        yield condition("cstar", "characteristic velocity [m/s]", "c* = p0 / (rho u) at the throat", r"c^{*} = p_0 / (\rho u)_t", chamber.si(name), flux, "definition")
-    if np.isfinite(held.contraction_ratio[0]) and name in ("stagnation_pressure", "pressure", "characteristic_velocity"):
+        yield condition(
+            "cstar",
+            "characteristic velocity [m/s]",
+            "c* = p0 / (rho u) at the throat",
+            r"c^{*} = p_0 / (\rho u)_t",
+            chamber.si(name),
+            flux,
+            "definition",
+        )
+    if np.isfinite(held.contraction_ratio[0]) and name in (
+        "stagnation_pressure",
+        "pressure",
+        "characteristic_velocity",
+    ):
         yield from _combustor_conditions(held)
 
 
@@ -187,12 +237,37 @@ def _combustor_conditions(held: Any) -> Iterator[Step]:
     inlet, velocity = held.inlet, float(held.inlet_velocity[0])
     density, pressure = float(inlet.density[0]), float(inlet.pressure[0])
     face = float(held.injector.pressure[0])
-    yield condition("combustor_momentum", "momentum from the face to the nozzle inlet [Pa]", "p + rho u^2 = p at the face", r"p + \rho u^2 = p_{inj}", pressure + density * velocity**2, face, "conservation")
+    yield condition(
+        "combustor_momentum",
+        "momentum from the face to the nozzle inlet [Pa]",
+        "p + rho u^2 = p at the face",
+        r"p + \rho u^2 = p_{inj}",
+        pressure + density * velocity**2,
+        face,
+        "conservation",
+    )
     rest = float(inlet.enthalpy[0]) + 0.5 * velocity**2
     scale = float(inlet.gas_constant[0] * inlet.temperature[0])
-    yield condition("combustor_energy", "energy from the face to the nozzle inlet [J/kg]", "h + u^2/2 = h at the face", r"h + u^2/2 = h", rest, float(held.enthalpy[0]), "conservation", scale)
+    yield condition(
+        "combustor_energy",
+        "energy from the face to the nozzle inlet [J/kg]",
+        "h + u^2/2 = h at the face",
+        r"h + u^2/2 = h",
+        rest,
+        float(held.enthalpy[0]),
+        "conservation",
+        scale,
+    )
     flux = float(held.throat.mass_flux[0])
-    yield condition("combustor_mass", "mass flow over throat area [kg/(m2 s)]", "rho u at the inlet times the contraction ratio = rho u at the throat", r"\rho u \epsilon_c = (\rho u)_t", density * velocity * float(held.contraction_ratio[0]), flux, "conservation")
+    yield condition(
+        "combustor_mass",
+        "mass flow over throat area [kg/(m2 s)]",
+        "rho u at the inlet times the contraction ratio = rho u at the throat",
+        r"\rho u \epsilon_c = (\rho u)_t",
+        density * velocity * float(held.contraction_ratio[0]),
+        flux,
+        "conservation",
+    )
 
 
 def state_conditions(nozzle: Any, state: str) -> Iterator[Step]:
@@ -204,12 +279,46 @@ def state_conditions(nozzle: Any, state: str) -> Iterator[Step]:
     rest = float(there.enthalpy[0]) + 0.5 * float(there.velocity[0]) ** 2
     scale = gas_constant * float(there.temperature[0])
     if state == "throat":
-        yield condition("mach", "Mach number at the throat", "u = a", "M_t = 1", float(there.velocity[0]), float(there.sound_speed[0]), "conservation")
+        yield condition(
+            "mach",
+            "Mach number at the throat",
+            "u = a",
+            "M_t = 1",
+            float(there.velocity[0]),
+            float(there.sound_speed[0]),
+            "conservation",
+        )
     if state == "exit":
         ratio = float(held.mass_flux[0] / there.mass_flux[0])
-        yield condition("area_ratio", "area ratio of the flow", "rho u at the throat over rho u at the exit = area ratio over discharge coefficient", r"(\rho u)_t / (\rho u)_e = \epsilon / C_d", ratio, float(held.area_ratio[0]), "conservation")
-    yield condition("stagnation_enthalpy", f"energy at the {state} [J/kg]", "h + u^2/2 = stagnation enthalpy", r"h + u^2/2 = h_0", rest, float(isentrope.enthalpy[0]), "conservation", scale)
-    yield condition("entropy", f"entropy at the {state} [J/(kg K)]", "s = entropy of the reservoir", r"s = s_0", float(there.entropy[0]), float(isentrope.entropy[0]), "conservation", gas_constant)
+        yield condition(
+            "area_ratio",
+            "area ratio of the flow",
+            "rho u at the throat over rho u at the exit = area ratio over discharge coefficient",
+            r"(\rho u)_t / (\rho u)_e = \epsilon / C_d",
+            ratio,
+            float(held.area_ratio[0]),
+            "conservation",
+        )
+    yield condition(
+        "stagnation_enthalpy",
+        f"energy at the {state} [J/kg]",
+        "h + u^2/2 = stagnation enthalpy",
+        r"h + u^2/2 = h_0",
+        rest,
+        float(isentrope.enthalpy[0]),
+        "conservation",
+        scale,
+    )
+    yield condition(
+        "entropy",
+        f"entropy at the {state} [J/(kg K)]",
+        "s = entropy of the reservoir",
+        r"s = s_0",
+        float(there.entropy[0]),
+        float(isentrope.entropy[0]),
+        "conservation",
+        gas_constant,
+    )
     if held.table is not None and there.amounts is not None:
         chamber = nozzle.chamber.held
         yield from element_conditions(held.table.elements, chamber.atoms[0], there.amounts[0] @ held.table.composition)

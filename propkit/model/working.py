@@ -14,7 +14,10 @@ from propkit.report import Report, Row, Step, UnitSystem
 if TYPE_CHECKING:
     from propkit.model.base import Calculation
 
-def working_of(calculation: Calculation, result: str, system: UnitSystem, render: Callable[[Report, str], str]) -> Report:
+
+def working_of(
+    calculation: Calculation, result: str, system: UnitSystem, render: Callable[[Report, str], str]
+) -> Report:
     """Return the working of a result of the chain as a report.
 
     Raises
@@ -33,7 +36,9 @@ def working_of(calculation: Calculation, result: str, system: UnitSystem, render
         row = _state_row(link, state, quantity, system)
     else:
         if name not in link.declared_results and name not in link.resolved():
-            raise InputError(f"{result!r} was given, not computed: its working is the input itself ({link.typed_text(name) if name in link.inputs else 'default'}).")
+            raise InputError(
+                f"{result!r} was given, not computed: its working is the input itself ({link.typed_text(name) if name in link.inputs else 'default'})."
+            )
         if not link.has(name):
             link.si(name)
         row = sheet.row_of(link, name, system)
@@ -79,7 +84,17 @@ def relation_step(key: str, values: Mapping[str, float], name: str, result: Row 
 def _plain_row(key: str, name: str, value: float) -> Row:
     relation = RELATIONS[key]
     label = name.replace("_", " ")
-    return Row(name, label, relation.result.symbol, value, relation.result.unit, 6, "computed", relation=key, source=relation.source)
+    return Row(
+        name,
+        label,
+        relation.result.symbol,
+        value,
+        relation.result.unit,
+        6,
+        "computed",
+        relation=key,
+        source=relation.source,
+    )
 
 
 def _state_row(link: Calculation, state: str, quantity: str, system: UnitSystem) -> Row:
@@ -87,7 +102,9 @@ def _state_row(link: Calculation, state: str, quantity: str, system: UnitSystem)
 
     entry = quantities.quantity(quantity, "state")
     value, unit = sheet.in_display(entry, getattr(link, state).si(quantity), system)
-    return Row(f"{state}.{quantity}", f"{entry.label} at the {state}", entry.symbol, value, unit, entry.digits, "computed")
+    return Row(
+        f"{state}.{quantity}", f"{entry.label} at the {state}", entry.symbol, value, unit, entry.digits, "computed"
+    )
 
 
 def state_steps(link: Any, state: str, quantity: str) -> Iterator[Step]:

@@ -49,7 +49,10 @@ def test_display_units_convert():
 
     for row in quantities.CATALOGUE.values():
         for unit in (*row.kind.si, *row.kind.us):
-            assert units.convert(units.convert(1.0, row.unit, unit), unit, row.unit) == pytest.approx(1.0, rel=1e-12), (row.name, unit)
+            assert units.convert(units.convert(1.0, row.unit, unit), unit, row.unit) == pytest.approx(1.0, rel=1e-12), (
+                row.name,
+                unit,
+            )
 
 
 def test_public_names_resolve():
@@ -64,10 +67,18 @@ def test_public_functions_take_no_catch_all_keywords(path):
     tree = ast.parse(path.read_text(encoding="utf-8"))
     allowed = {"replace", "__init__", "__init_subclass__"}
     for node in ast.walk(tree):
-        if isinstance(node, ast.FunctionDef | ast.AsyncFunctionDef) and node.args.kwarg and not node.name.startswith("_"):
+        if (
+            isinstance(node, ast.FunctionDef | ast.AsyncFunctionDef)
+            and node.args.kwarg
+            and not node.name.startswith("_")
+        ):
             assert node.name in allowed, f"{path.name}: {node.name} takes **{node.args.kwarg.arg}"
 
 
 def test_modules_stay_small():
-    long = {str(path.relative_to(ROOT)): lines for path in ROOT.rglob("*.py") if (lines := len(path.read_text(encoding="utf-8").splitlines())) > 600}
+    long = {
+        str(path.relative_to(ROOT)): lines
+        for path in ROOT.rglob("*.py")
+        if (lines := len(path.read_text(encoding="utf-8").splitlines())) > 600
+    }
     assert not long

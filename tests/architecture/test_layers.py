@@ -51,10 +51,19 @@ def test_a_module_imports_only_layers_above(path):
 def test_physics_needs_numpy_and_scipy_only():
     for path in (ROOT / "physics").glob("*.py"):
         for node in ast.walk(ast.parse(path.read_text(encoding="utf-8"))):
-            names = [alias.name for alias in node.names] if isinstance(node, ast.Import) else [node.module or ""] if isinstance(node, ast.ImportFrom) else []
+            names = (
+                [alias.name for alias in node.names]
+                if isinstance(node, ast.Import)
+                else [node.module or ""]
+                if isinstance(node, ast.ImportFrom)
+                else []
+            )
             for name in names:
                 top = name.split(".")[0]
-                assert top in sys.stdlib_module_names or top in ("numpy", "scipy", "propkit", "__future__"), (path.name, name)
+                assert top in sys.stdlib_module_names or top in ("numpy", "scipy", "propkit", "__future__"), (
+                    path.name,
+                    name,
+                )
 
 
 def test_the_downward_table_is_the_only_way_down_and_every_entry_resolves():

@@ -90,18 +90,42 @@ OTHERS = [
     (lambda: pk.Nozzle(chamber(), area_ratio=20, throat_area=-0.01), "throat_area", "at least"),
     (lambda: pk.Nozzle(chamber(), area_ratio=20, throat_area=0.01, flow="shiftin"), "flow", "'shifting'"),
     (lambda: pk.Nozzle(chamber(), area_ratio=20, throat_area=0.01, freeze_at="throat"), "freeze_at", "frozen"),
-    (lambda: pk.Nozzle(chamber(), area_ratio=20, throat_area=0.01, flow="frozen", freeze_at=0.5), "freeze_at", "above 1"),
+    (
+        lambda: pk.Nozzle(chamber(), area_ratio=20, throat_area=0.01, flow="frozen", freeze_at=0.5),
+        "freeze_at",
+        "above 1",
+    ),
     (lambda: pk.Nozzle(chamber(), area_ratio=20, throat_area=0.01, exponent="frozen"), "exponent", "constant-property"),
-    (lambda: pk.Nozzle(chamber(), area_ratio=20, throat_area=0.01, discharge_coefficient=1.1), "discharge_coefficient", "at most 1"),
+    (
+        lambda: pk.Nozzle(chamber(), area_ratio=20, throat_area=0.01, discharge_coefficient=1.1),
+        "discharge_coefficient",
+        "at most 1",
+    ),
     (lambda: pk.Nozzle(7, area_ratio=20, throat_area=0.01), "chamber", "pk.Chamber"),
     (lambda: pk.Performance(chamber(), ambient="vacuum"), "nozzle", "pk.Nozzle"),
-    (lambda: pk.Chamber.from_gas(pressure=7e6, temperature=3000, isentropic_exponent=0.9, molar_mass=0.02), "isentropic_exponent", "above 1"),
-    (lambda: pk.Chamber.from_gas(pressure=7e6, temperature=3000, isentropic_exponent=1.2), "molar_mass", "gas_constant"),
-    (lambda: pk.Chamber.from_gas(pressure=7e6, temperature=3000, isentropic_exponent=1.2, molar_mass=0.02, gas_constant=400), "molar_mass", "one of the two"),
+    (
+        lambda: pk.Chamber.from_gas(pressure=7e6, temperature=3000, isentropic_exponent=0.9, molar_mass=0.02),
+        "isentropic_exponent",
+        "above 1",
+    ),
+    (
+        lambda: pk.Chamber.from_gas(pressure=7e6, temperature=3000, isentropic_exponent=1.2),
+        "molar_mass",
+        "gas_constant",
+    ),
+    (
+        lambda: pk.Chamber.from_gas(
+            pressure=7e6, temperature=3000, isentropic_exponent=1.2, molar_mass=0.02, gas_constant=400
+        ),
+        "molar_mass",
+        "one of the two",
+    ),
 ]
 
 
-@pytest.mark.parametrize(("make", "name", "words"), OTHERS, ids=[f"{name}-{index}" for index, (_, name, _) in enumerate(OTHERS)])
+@pytest.mark.parametrize(
+    ("make", "name", "words"), OTHERS, ids=[f"{name}-{index}" for index, (_, name, _) in enumerate(OTHERS)]
+)
 def test_other_bad_inputs_name_themselves(make, name, words):
     with pytest.raises(pk.InputError) as caught:
         make()
@@ -110,7 +134,21 @@ def test_other_bad_inputs_name_themselves(make, name, words):
     assert "it must be" in str(caught.value)
 
 
-AMBIENTS = ["sealevel please", "1 K", "-5 kPa", "7 MPa", "10 MPa", -1.0, math.nan, None, True, "12", "1000 km", "12 km 3", "20 psig"]
+AMBIENTS = [
+    "sealevel please",
+    "1 K",
+    "-5 kPa",
+    "7 MPa",
+    "10 MPa",
+    -1.0,
+    math.nan,
+    None,
+    True,
+    "12",
+    "1000 km",
+    "12 km 3",
+    "20 psig",
+]
 
 
 @pytest.mark.parametrize("value", AMBIENTS, ids=repr)
@@ -124,7 +162,12 @@ def test_bad_ambients_are_refused(value):
 def test_all_bad_and_missing_inputs_stand_in_one_error():
     with pytest.raises(pk.InputError) as caught:
         pk.Chamber("no case", pressure="7 psig", cstar_efficiency=2, contraction_ratio=0.5)
-    assert [problem.name for problem in caught.value.problems] == ["case", "pressure", "contraction_ratio", "cstar_efficiency"]
+    assert [problem.name for problem in caught.value.problems] == [
+        "case",
+        "pressure",
+        "contraction_ratio",
+        "cstar_efficiency",
+    ]
 
 
 def test_an_unknown_keyword_is_a_type_error_with_near_matches():
@@ -181,13 +224,22 @@ def test_an_attribute_cannot_be_set(perf):
 
 
 def test_at_refuses_what_no_state_has(nozzle):
-    for keywords in ({}, {"area_ratio": 3, "pressure": 1e5}, {"area_ratio": 0.5}, {"pressure": "20 MPa"}, {"pressure": 0.0}, {"area_ratio": 3, "branch": "sub"}):
+    for keywords in (
+        {},
+        {"area_ratio": 3, "pressure": 1e5},
+        {"area_ratio": 0.5},
+        {"pressure": "20 MPa"},
+        {"pressure": 0.0},
+        {"area_ratio": 3, "branch": "sub"},
+    ):
         with pytest.raises(pk.InputError):
             nozzle.at(**keywords)
 
 
 def test_a_gas_hotter_than_the_data_is_a_range_error():
-    hot = pk.Propellant(name="hot", formula="H2", enthalpy="900 kJ/mol", density="1 kg/m3", temperature="298.15 K", role="fuel")
+    hot = pk.Propellant(
+        name="hot", formula="H2", enthalpy="900 kJ/mol", density="1 kg/m3", temperature="298.15 K", role="fuel"
+    )
     with pytest.raises(pk.RangeError) as caught:
         pk.Chamber(pk.PropellantCase("GOX", hot, mixture_ratio=1.0), pressure="1 MPa")
     assert caught.value.data["temperature"] > 0

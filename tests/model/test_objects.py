@@ -55,7 +55,11 @@ def test_recipes_and_code_rebuild_the_chain(perf):
         perf.replace({"nozzle.flow": "frozen", "nozzle.freeze_at": "throat"}),
         perf.replace({"chamber.contraction_ratio": 3, "chamber.cstar_efficiency": "97 %"}),
         pk.Performance(
-            pk.Nozzle(pk.Chamber.from_gas(pressure="7 MPa", temperature=3000, molar_mass="22 g/mol", isentropic_exponent=1.2), area_ratio=9, exit_area="0.1 m2"),
+            pk.Nozzle(
+                pk.Chamber.from_gas(pressure="7 MPa", temperature=3000, molar_mass="22 g/mol", isentropic_exponent=1.2),
+                area_ratio=9,
+                exit_area="0.1 m2",
+            ),
             ambient="12 km",
         ),
     ]
@@ -68,7 +72,14 @@ def test_recipes_and_code_rebuild_the_chain(perf):
 
 
 def test_an_own_propellant_survives_recipe_code_and_pickle():
-    own = pk.Propellant(name="RP-1 lot 7", formula="C H1.95", enthalpy="-24.717 kJ/mol", density="810 kg/m3", temperature="298.15 K", role="fuel")
+    own = pk.Propellant(
+        name="RP-1 lot 7",
+        formula="C H1.95",
+        enthalpy="-24.717 kJ/mol",
+        density="810 kg/m3",
+        temperature="298.15 K",
+        role="fuel",
+    )
     case = pk.PropellantCase("LOX", own, mixture_ratio=2.3)
     assert from_recipe(case.recipe()) == case
     assert pickle.loads(pickle.dumps(case)) == case
@@ -118,7 +129,15 @@ def test_every_legal_size_gives_the_same_nozzle(chamber, nozzle):
     ]
     for inputs in same:
         other = pk.Nozzle(chamber, **inputs)
-        for name in ("throat_area", "exit_area", "area_ratio", "mass_flow", "throat_diameter", "exit_diameter", "exit_pressure"):
+        for name in (
+            "throat_area",
+            "exit_area",
+            "area_ratio",
+            "mass_flow",
+            "throat_diameter",
+            "exit_diameter",
+            "exit_pressure",
+        ):
             assert other.si(name) == pytest.approx(nozzle.si(name), rel=1e-10), (inputs, name)
 
 
@@ -151,7 +170,9 @@ def test_results_and_frames_agree(perf):
 
 
 def test_lazy_results_are_safe_in_threads(case):
-    perf = pk.Performance(pk.Nozzle(pk.Chamber(case, pressure="5 MPa"), area_ratio=20, throat_diameter=0.1), ambient="vacuum")
+    perf = pk.Performance(
+        pk.Nozzle(pk.Chamber(case, pressure="5 MPa"), area_ratio=20, throat_diameter=0.1), ambient="vacuum"
+    )
     seen, start = [], threading.Barrier(6)
 
     def look():
@@ -167,14 +188,27 @@ def test_lazy_results_are_safe_in_threads(case):
 
 
 def test_a_recipe_that_names_anything_else_is_refused():
-    for recipe in ({}, {"object": "os.system", "inputs": {}}, {"object": "Chamber", "inputs": []}, {"object": "Chamber", "inputs": {"bad": 1}}, 7):
+    for recipe in (
+        {},
+        {"object": "os.system", "inputs": {}},
+        {"object": "Chamber", "inputs": []},
+        {"object": "Chamber", "inputs": {"bad": 1}},
+        7,
+    ):
         with pytest.raises(pk.RecordError):
             from_recipe(recipe)
 
 
 def test_every_result_has_a_working_that_holds(perf):
-    contracted = perf.replace({"chamber.contraction_ratio": 2.5, "chamber.cstar_efficiency": 0.96, "nozzle.discharge_coefficient": 0.98})
-    for one in (perf, contracted, contracted.replace({"nozzle.flow": "frozen"}), perf.replace({"nozzle.flow": "constant-property"})):
+    contracted = perf.replace(
+        {"chamber.contraction_ratio": 2.5, "chamber.cstar_efficiency": 0.96, "nozzle.discharge_coefficient": 0.98}
+    )
+    for one in (
+        perf,
+        contracted,
+        contracted.replace({"nozzle.flow": "frozen"}),
+        perf.replace({"nozzle.flow": "constant-property"}),
+    ):
         for link in one.chain():
             for name in (*link.declared_results, *link.resolved()):
                 if not link.has(name):
@@ -193,12 +227,16 @@ def test_the_written_relation_gives_the_result(perf):
     from propkit.model import terms
     from propkit.physics.relations import RELATIONS
 
-    one = perf.replace({"chamber.contraction_ratio": 2.5, "chamber.cstar_efficiency": 0.96, "nozzle.discharge_coefficient": 0.98})
+    one = perf.replace(
+        {"chamber.contraction_ratio": 2.5, "chamber.cstar_efficiency": 0.96, "nozzle.discharge_coefficient": 0.98}
+    )
     checked = 0
     for link in one.chain():
         for name in (*link.declared_results, *link.resolved()):
             key = terms.key_for(link, name)
             if link.has(name) and key in RELATIONS:
-                assert RELATIONS[key].evaluate(terms.values_for(link, key, name)) == pytest.approx(link.si(name), rel=1e-12), (link.kind, name)
+                assert RELATIONS[key].evaluate(terms.values_for(link, key, name)) == pytest.approx(
+                    link.si(name), rel=1e-12
+                ), (link.kind, name)
                 checked += 1
     assert checked >= 22
