@@ -392,6 +392,8 @@ _ROWS = (
         "enthalpy of the mixture less that of its ingredients",
         4,
     ),
+    Quantity("saturated", TEXT, r"", "saturated", "whether a liquid is at its own vapour pressure"),
+    Quantity("coolprop_fluid", TEXT, r"", "CoolProp fluid", "name of the equation of state that gives other stored states"),
     Quantity("phase", TEXT, r"", "phase", "state of aggregation"),
     Quantity("hazard", TEXT, r"", "hazard", "what can hurt"),
     Quantity("source", TEXT, r"", "source", "where the enthalpy comes from"),
