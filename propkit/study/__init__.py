@@ -1,0 +1,1 @@
+"""Studies over the chain: sweeps, uncertainty, sensitivity, and where their blocks run."""

@@ -1,0 +1,529 @@
+"""Uncertainty of results from that of inputs: first order, and by trials of whole distributions.
+
+Both work on any batch function `evaluate`: inputs as arrays by path in, results as arrays by name out, NaN where
+a trial has no solution. It must be pure; for processes and clusters it must be picklable.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, field
+from itertools import pairwise
+from typing import Any, Literal
+
+import numpy as np
+import numpy.typing as npt
+
+from propkit.errors import ConvergenceError, InputError, Problem
+from propkit.study.executors import BlockRun, run_blocks
+from propkit.study.joint import JointInputs, Reach, check_seed
+
+Array = npt.NDArray[np.float64]
+Evaluate = Callable[[dict[str, Array]], Mapping[str, Array]]
+
+COVERAGE = 0.95
+"""Coverage probability of the intervals."""
+BLOCK = 2500
+"""Trials in one block."""
+ADAPTIVE_ROUND = 10_000
+"""Trials between two looks at the tolerance: max(100/(1 - p) rounded up, 10 000), JCGM 101 clause 7.9.4 b."""
+ADAPTIVE_MOST = 1_000_000
+"""Trials after which an adaptive run stops whatever it has reached."""
+
+
+@dataclass(frozen=True, slots=True)
+class FirstOrder:
+    """First-order uncertainty of several results.
+
+    Parameters
+    ----------
+    paths, results : tuple of str
+        Inputs and results, in the order of the arrays.
+    nominal : array
+        Results at the nominal inputs.
+    derivatives : array, shape (results, inputs)
+        Sensitivity coefficients, result per input in SI.
+    covariance : array, shape (results, results)
+        Covariance of the results.
+    shares : array, shape (results, inputs)
+        Share of each input in the variance of a result; they add up to 1, and with correlated inputs may be negative.
+    curvature : array, shape (results, inputs)
+        Second-order over first-order effect of one standard uncertainty [1].
+    """
+
+    paths: tuple[str, ...]
+    results: tuple[str, ...]
+    nominal: Array
+    derivatives: Array
+    covariance: Array
+    shares: Array
+    curvature: Array
+
+    @property
+    def standard_uncertainty(self) -> Array:
+        """Standard uncertainty of each result."""
+        deviations: Array = np.sqrt(np.maximum(np.diag(self.covariance), 0.0))
+        return deviations
+
+    @property
+    def bent(self) -> tuple[tuple[str, str], ...]:
+        """Pairs of result and input with a curvature above a tenth that matters: first order is doubtful there."""
+        share = np.abs(self.shares) > 0.01
+        found = np.argwhere((self.curvature > 0.1) & share)
+        return tuple((self.results[i], self.paths[j]) for i, j in found)
+
+
+@dataclass(frozen=True, slots=True)
+class Stability:
+    """What an adaptive run reached for one result.
+
+    Parameters
+    ----------
+    tolerance : float
+        Numerical tolerance: half a unit of the last significant digit asked of the standard uncertainty.
+    reached : float
+        Twice the largest standard deviation among the averages of value, uncertainty and both ends of the interval.
+    """
+
+    tolerance: float
+    reached: float
+
+    @property
+    def stable(self) -> bool:
+        """Whether the result is stabilised in the sense of clause 7.9."""
+        return self.reached <= self.tolerance
+
+
+@dataclass(frozen=True, slots=True)
+class Trials:
+    """Results of trials (Monte Carlo).
+
+    Parameters
+    ----------
+    results : tuple of str
+        Names, in the order of the arrays.
+    nominal, mean, standard_uncertainty, low, high : array
+        At the nominal inputs; over the trials; ends of the probabilistically symmetric 95 % interval.
+    samples : int
+        Trials evaluated.
+    valid : int
+        Trials with a solution, on which the statistics rest.
+    seed : int
+        Seed of the run.
+    values : array, shape (results, samples)
+        Result of every trial; NaN where a trial has no solution.
+    stability : tuple of Stability
+        What an adaptive run reached, by result; empty with a fixed number of trials.
+    notes : tuple of str
+        What a reader should know about the run.
+    reach : tuple of Reach
+        Inputs that left their legal range, with counts.
+    interrupted : bool
+        Whether the run was stopped before its end.
+    """
+
+    results: tuple[str, ...]
+    nominal: Array
+    mean: Array
+    standard_uncertainty: Array
+    low: Array
+    high: Array
+    samples: int
+    valid: int
+    seed: int
+    values: Array = field(repr=False)
+    stability: tuple[Stability, ...] = ()
+    notes: tuple[str, ...] = ()
+    reach: tuple[Reach, ...] = ()
+    interrupted: bool = False
+
+
+def first_order(
+    evaluate: Evaluate,
+    inputs: JointInputs,
+    derivatives: Mapping[str, Mapping[str, float]] | None = None,
+) -> FirstOrder:
+    """Return the first-order uncertainty of every result.
+
+    Parameters
+    ----------
+    evaluate : callable
+        Batch function: arrays by path in, arrays by result out.
+    inputs : JointInputs
+        Uncertain inputs.
+    derivatives : mapping of result to mapping of path to float, optional
+        Sensitivity coefficients where they are known exactly; others are found by differences.
+
+    Returns
+    -------
+    FirstOrder
+        Values, sensitivities, covariance and budget.
+
+    Raises
+    ------
+    InputError
+        When the results do not exist at the nominal inputs or one standard uncertainty away from them.
+
+    Notes
+    -----
+    u(y)² = c V cᵀ with the sensitivity coefficients c and the covariance matrix V of the inputs. Differences use
+    one and half a standard uncertainty to both sides (as the GUM suggests, 5.1.3 note 2), extrapolated to nothing by
+    Richardson; near the end of a legal range they shrink or stay on one side.
+
+    Source: JCGM 100:2008, 5.1.2 equation (10) and 5.2.2 equation (13).
+    """
+    points, weights, second = _stencil(inputs)
+    answers = {name: np.asarray(values, dtype=np.float64) for name, values in evaluate(points).items()}
+    results = tuple(answers)
+    table = np.array([answers[name] for name in results])
+    bad = [name for name, row in zip(results, table, strict=True) if not np.isfinite(row).all()]
+    if bad:
+        raise InputError(
+            f"{', '.join(bad)} cannot be computed at or within one standard uncertainty of the nominal inputs; "
+            "use a smaller uncertainty, or trials (samples=...), which count such cases",
+            results=tuple(bad),
+        )
+    deviations = inputs.deviations
+    slopes = np.einsum("rps,ps->rp", table[:, 1:].reshape(len(results), len(deviations), -1), weights)
+    slopes += table[:, :1] * (-weights.sum(axis=1))[None, :]
+    bends = np.einsum("rps,ps->rp", table[:, 1:].reshape(len(results), len(deviations), -1), second)
+    bends += table[:, :1] * (-second.sum(axis=1))[None, :]
+    for place, name in enumerate(results):
+        for path, value in (derivatives or {}).get(name, {}).items():
+            slopes[place, inputs.paths.index(path)] = value
+    covariance = slopes @ inputs.covariance @ slopes.T
+    variance = np.diag(covariance)[:, None]
+    mixed = slopes * (slopes @ inputs.covariance)
+    # both arrays are divided only where there is something to divide by
+    shares = np.divide(mixed, variance, out=np.zeros_like(mixed), where=variance > 0.0)
+    effect = np.abs(slopes) * deviations
+    bent = 0.5 * np.abs(bends) * deviations**2
+    curvature = np.divide(bent, effect, out=np.zeros_like(bent), where=effect > 0.0)
+    return FirstOrder(inputs.paths, results, table[:, 0], slopes, covariance, shares, curvature)
+
+
+def _stencil(inputs: JointInputs) -> tuple[dict[str, Array], Array, Array]:
+    """Return the points of the differences (nominal first), and weights of the first and second derivative."""
+    nominal = np.array(list(inputs.nominal.values()))
+    deviations = inputs.deviations
+    count = len(nominal)
+    points = np.tile(nominal, (1 + 4 * count, 1))
+    first, second = np.zeros((count, 4)), np.zeros((count, 4))
+    for place, path in enumerate(inputs.paths):
+        low, high = inputs.bounds.get(path, (-math.inf, math.inf))
+        below, above = nominal[place] - low, high - nominal[place]
+        step = deviations[place]
+        if min(below, above) >= 0.01 * step:
+            step = min(step, below, above)
+            offsets = np.array([-step, -0.5 * step, 0.5 * step, step])
+            first[place] = np.array([1.0, -8.0, 8.0, -1.0]) / (6.0 * step)
+            second[place] = np.array([-1.0, 16.0, 16.0, -1.0]) / (3.0 * step**2)
+        else:
+            step = math.copysign(min(step, max(below, above)), above - below)
+            offsets = step * np.array([0.25, 0.5, 0.75, 1.0])
+            first[place] = np.array([16.0, -12.0, 16.0 / 3.0, -1.0]) / step
+            second[place] = np.array([-416.0 / 3.0, 152.0, -224.0 / 3.0, 44.0 / 3.0]) / step**2
+        rows = slice(1 + 4 * place, 5 + 4 * place)
+        points[rows, place] = nominal[place] + offsets
+    return {path: points[:, place].copy() for place, path in enumerate(inputs.paths)}, first, second
+
+
+def monte_carlo(
+    evaluate: Evaluate,
+    inputs: JointInputs,
+    samples: int | Literal["adaptive"],
+    seed: int,
+    *,
+    executor: Any = None,
+    progress: bool | Callable[[int, int, float], None] = True,
+    block: int = BLOCK,
+    illegal: Literal["refuse", "leave out"] = "refuse",
+    most: int = ADAPTIVE_MOST,
+    should_stop: Callable[[], bool] | None = None,
+) -> Trials:
+    """Return the distribution of every result over trials of the inputs.
+
+    Parameters
+    ----------
+    evaluate : callable
+        Batch function: arrays by path in, arrays by result out, NaN where a trial has no solution.
+    inputs : JointInputs
+        Uncertain inputs.
+    samples : int or "adaptive"
+        Number of trials (at least 100), or as many as one significant digit of every standard uncertainty needs.
+    seed : int
+        Seed of the draws, at least 0.
+    executor : executor, dask client or None
+        Where the blocks run.
+    progress : bool or callable
+        Whether to show a bar for a run of more than a second.
+    block : int
+        Trials in one block.
+    illegal : str
+        What to do with draws outside the legal range of an input: ``"refuse"`` the run before it starts, or
+        ``"leave out"`` those trials and count them.
+    most : int
+        Largest number of trials of an adaptive run.
+    should_stop : callable, optional
+        Asked between blocks; a true answer stops the run.
+
+    Returns
+    -------
+    Trials
+        Values, standard uncertainties and intervals.
+
+    Raises
+    ------
+    InputError
+        For a number of trials or a seed that is none, or draws outside a legal range.
+    ConvergenceError
+        When fewer than half of the trials have a solution.
+
+    Notes
+    -----
+    Standard uncertainty: standard deviation over the trials (clause 7.6). Interval: probabilistically symmetric,
+    from the ordered values (clause 7.7.2). Adaptive: rounds of 10 000 trials until twice the standard deviation of
+    the averages over rounds of value, uncertainty and both ends is within the tolerance, for every result.
+
+    Source: JCGM 101:2008, clauses 7.5 to 7.9.
+    """
+    seed = check_seed(seed)
+    run = _Run(evaluate, inputs, seed, block, executor, progress, should_stop)
+    adaptive = samples == "adaptive"
+    total = _checked_samples(samples, most)
+    reach = inputs.reach(seed, run.sizes(ADAPTIVE_ROUND if adaptive else total))
+    if reach and illegal == "refuse":
+        hint = 'use a bounded distribution (pk.Uniform, pk.Triangular) or illegal="leave out"'
+        raise InputError("; ".join(map(str, reach)) + f". Nothing was run: {hint}.", reach=reach)
+    if not adaptive:
+        run.more(total)
+        return run.trials(())
+    stability: tuple[Stability, ...] = ()
+    while run.asked < most and not run.stopped:
+        run.more(min(ADAPTIVE_ROUND, most - run.asked))
+        stability = run.stability()
+        if stability and all(entry.stable for entry in stability):
+            break
+    return run.trials(stability)
+
+
+class _Run:
+    """Trials gathered round by round."""
+
+    def __init__(
+        self,
+        evaluate: Evaluate,
+        inputs: JointInputs,
+        seed: int,
+        block: int,
+        executor: Any,
+        progress: bool | Callable[[int, int, float], None],
+        should_stop: Callable[[], bool] | None,
+    ) -> None:
+        self.work = _Work(evaluate, inputs, seed)
+        self.inputs = inputs
+        self.seed = seed
+        self.block = block
+        self.options: dict[str, Any] = {"executor": executor, "progress": progress, "should_stop": should_stop}
+        nominal = evaluate({path: np.array([value]) for path, value in inputs.nominal.items()})
+        self.results = tuple(nominal)
+        self.nominal = np.array([float(np.asarray(nominal[name])[0]) for name in self.results])
+        self.values = np.empty((len(self.results), 0))
+        self.rounds: list[int] = []
+        self.notes: list[str] = []
+        self.asked = 0
+        self.blocks = 0
+        self.illegal = 0
+        self.stopped = False
+
+    def sizes(self, count: int) -> list[int]:
+        """Return the sizes of the blocks of `count` trials."""
+        whole, rest = divmod(count, self.block)
+        return [self.block] * whole + ([rest] if rest else [])
+
+    def more(self, count: int) -> None:
+        """Run `count` more trials."""
+        sizes = self.sizes(count)
+        blocks = [(self.blocks + place, size) for place, size in enumerate(sizes)]
+        fresh = np.full((len(self.results), count), np.nan)
+        filled = 0
+
+        def keep(index: int, answer: Any) -> None:
+            nonlocal filled
+            values, illegal = answer
+            fresh[:, filled : filled + values.shape[1]] = values
+            filled += values.shape[1]
+            self.illegal += illegal
+
+        run: BlockRun = run_blocks(self.work, blocks, keep, sizes=sizes, noun="trials", **self.options)
+        self.stopped = run.interrupted
+        self.notes.extend(run.notes)
+        self.values = np.concatenate([self.values, fresh[:, :filled]], axis=1)
+        self.rounds.append(filled)
+        self.asked += count
+        self.blocks += len(blocks)
+
+    def stability(self) -> tuple[Stability, ...]:
+        """Return what the rounds so far have reached; empty with fewer than two."""
+        if len(self.rounds) < 2 or self.stopped:
+            return ()
+        ends = np.cumsum([0, *self.rounds])
+        parts = np.array([_statistics(self.values[:, low:high]) for low, high in pairwise(ends)])
+        scatter = parts.std(axis=0, ddof=1) / math.sqrt(len(parts))
+        whole = _statistics(self.values)[1]
+        return tuple(
+            Stability(tolerance(float(u)), float(2.0 * scatter[:, place].max())) for place, u in enumerate(whole)
+        )
+
+    def trials(self, stability: tuple[Stability, ...]) -> Trials:
+        """Return the statistics over everything that was run."""
+        valid = np.isfinite(self.values).all(axis=0)
+        count, samples = int(valid.sum()), self.values.shape[1]
+        if samples < 2 or count < 0.5 * samples:
+            if self.stopped and samples < 2:
+                raise ConvergenceError(
+                    "the run was interrupted before its first block ended: there is nothing to show", samples=samples
+                )
+            raise ConvergenceError(f"only {count} of {samples} trials have a solution", samples=samples, valid=count)
+        mean, deviation, low, high = _statistics(self.values)
+        reach = self.inputs.reach(self.seed, [size for entry in self.rounds for size in self.sizes(entry)])
+        notes = [*self.notes, *map(str, reach)]
+        failed = samples - count - self.illegal
+        if self.illegal:
+            notes.append(f"{self.illegal} trials with illegal inputs are left out")
+        if failed > 0:
+            notes.append(f"{failed} trials have no solution and are left out")
+        unstable = [name for name, entry in zip(self.results, stability, strict=False) if not entry.stable]
+        if stability:
+            notes.append(_reached(samples, unstable))
+        return Trials(
+            self.results,
+            self.nominal,
+            mean,
+            deviation,
+            low,
+            high,
+            samples,
+            count,
+            self.seed,
+            self.values,
+            stability,
+            tuple(dict.fromkeys(notes)),
+            reach,
+            self.stopped,
+        )
+
+
+def _reached(samples: int, unstable: Sequence[str]) -> str:
+    goal = "one significant digit of the standard uncertainty"
+    if not unstable:
+        return f"{goal} is reached for every result after {samples} trials"
+    return f"{goal} is not reached for {', '.join(unstable)} after {samples} trials"
+
+
+@dataclass(frozen=True, slots=True)
+class _Work:
+    """One block of trials: draws its inputs, leaves illegal draws out and evaluates the rest."""
+
+    evaluate: Evaluate
+    inputs: JointInputs
+    seed: int
+
+    def __call__(self, block: tuple[int, int]) -> tuple[Array, int]:
+        number, size = block
+        drawn = self.inputs.draw(self.seed, number, size)
+        good = self.inputs.legal(drawn)
+        if good.all():
+            answers = self.evaluate(drawn)
+            return np.array([np.asarray(values, dtype=np.float64) for values in answers.values()]), 0
+        # the nominal values stand in for illegal draws, so that the shape and the work stay the same
+        nominal = self.inputs.nominal
+        answers = self.evaluate({path: np.where(good, values, nominal[path]) for path, values in drawn.items()})
+        table = np.array([np.asarray(values, dtype=np.float64) for values in answers.values()])
+        table[:, ~good] = np.nan
+        return table, int(np.count_nonzero(~good))
+
+
+def _checked_samples(samples: object, most: int) -> int:
+    if samples == "adaptive":
+        return most
+    if isinstance(samples, bool) or not isinstance(samples, int | np.integer) or samples < 100:
+        raise InputError(Problem("samples", repr(samples), "'adaptive' or an integer of at least 100"))
+    return int(samples)
+
+
+def _statistics(values: Array) -> Array:
+    """Return mean, standard deviation and both ends of the interval of each row, over its valid columns."""
+    good = values[:, np.isfinite(values).all(axis=0)]
+    count = good.shape[1]
+    low, high = interval_ranks(count)
+    ordered = np.sort(good, axis=1)
+    # deviations from the first trial keep the digits of results whose spread is small
+    shifted = good - good[:, :1]
+    statistics: Array = np.array(
+        [
+            good[:, 0] + shifted.mean(axis=1),
+            shifted.std(axis=1, ddof=1),
+            ordered[:, low],
+            ordered[:, high],
+        ]
+    )
+    return statistics
+
+
+def interval_ranks(count: int, coverage: float = COVERAGE) -> tuple[int, int]:
+    """Return the places (from 0) of the ends of the probabilistically symmetric interval in ordered trials.
+
+    Parameters
+    ----------
+    count : int
+        Number of trials, at least 2.
+    coverage : float
+        Coverage probability [1].
+
+    Returns
+    -------
+    tuple of int
+        Places of the low and the high end.
+
+    Notes
+    -----
+    q = pM where that is whole, else its integer part after adding 1/2; r = (M - q)/2 where whole, else the integer
+    part of (M - q + 1)/2; the interval runs from the r-th to the (r + q)-th ordered value.
+
+    Source: JCGM 101:2008, 7.7.1 and 7.7.2.
+    """
+    product = coverage * count
+    held = round(product) if abs(product - round(product)) < 1e-9 * count else int(product + 0.5)
+    rest = count - held
+    start = rest // 2 if rest % 2 == 0 else (rest + 1) // 2
+    low = max(start, 1) - 1
+    return low, min(low + held, count - 1)
+
+
+def tolerance(uncertainty: float, digits: int = 1) -> float:
+    """Return the numerical tolerance of a standard uncertainty: half a unit of its last significant digit.
+
+    Parameters
+    ----------
+    uncertainty : float
+        Standard uncertainty, any unit.
+    digits : int
+        Significant digits that count.
+
+    Returns
+    -------
+    float
+        Tolerance in the same unit; 0 for no uncertainty.
+
+    Notes
+    -----
+    Source: JCGM 101:2008, 7.9.2.
+    """
+    if not uncertainty > 0.0:
+        return 0.0
+    exponent = math.floor(math.log10(uncertainty)) - (digits - 1)
+    if round(uncertainty / 10.0**exponent) >= 10**digits:
+        exponent += 1
+    return 0.5 * 10.0**exponent
