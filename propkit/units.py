@@ -185,7 +185,8 @@ def shown_unit(unit: str) -> str:
 def _registry() -> pint.UnitRegistry[Any]:
     import pint
 
-    return pint.get_application_registry()
+    registry: pint.UnitRegistry[Any] = pint.get_application_registry()  # type: ignore[no-untyped-call]
+    return registry
 
 
 def _scale(expression: str, unit: str) -> tuple[float, float] | None:

@@ -327,7 +327,8 @@ class Calculation:
         InputError
             For a path that is unknown, ambiguous or no input, or a value that is not legal.
         """
-        return paths.replace(self, {**(changes or {}), **inputs})
+        rebuilt: Self = paths.replace(self, {**(changes or {}), **inputs})
+        return rebuilt
 
     def displaced(self, typed: dict[str, Any], changes: Mapping[str, Any]) -> dict[str, Any]:
         """Return `typed` without the members of a group that `changes` names another member of."""

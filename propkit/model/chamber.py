@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, ClassVar
 
 from propkit.chain import chamber as stage
 from propkit.constants import GAS_CONSTANT
@@ -80,22 +80,22 @@ class Chamber(Calculation):
     title = "Chamber"
     upstream_input = "case"
     headline = ("temperature", "characteristic_velocity", "molar_mass")
-    flows = ("shifting", "frozen", "constant-property")
-    flow_reason = ""
+    flows: ClassVar[tuple[str, ...]] = ("shifting", "frozen", "constant-property")
+    flow_reason: ClassVar[str] = ""
 
-    case = CustomInput(doc="the propellants upstream", reader=read_case, kw_only=False, quantity="name")
-    pressure = QuantityInput(doc="quoted chamber pressure, absolute", bounds=PRESSURES)
-    pressure_at = ChoiceInput(
+    case: CustomInput = CustomInput(doc="the propellants upstream", reader=read_case, kw_only=False, quantity="name")
+    pressure: QuantityInput = QuantityInput(doc="quoted chamber pressure, absolute", bounds=PRESSURES)
+    pressure_at: ChoiceInput = ChoiceInput(
         doc="where the quoted pressure holds", choices=PRESSURE_PLACES, default=PRESSURE_PLACES[0]
     )
-    contraction_ratio = NumberInput(
+    contraction_ratio: NumberInput = NumberInput(
         doc="chamber area over throat area",
         default=math.inf,
         bounds=CONTRACTIONS,
         hint=_HINT_CONTRACTION,
         infinite=True,
     )
-    cstar_efficiency = NumberInput(
+    cstar_efficiency: NumberInput = NumberInput(
         doc="delivered over theoretical characteristic velocity",
         default=1.0,
         bounds=EFFICIENCIES,
@@ -192,7 +192,7 @@ class Chamber(Calculation):
         import pandas as pd
 
         pairs = self.held.composition()
-        series = pd.Series({name: value for name, value in pairs}, name="composition", dtype=float)
+        series = pd.Series(dict(pairs), name="composition", dtype=float)
         series.attrs["units"] = ""
         return series
 
@@ -269,15 +269,15 @@ class GasChamber(Chamber):
 
     upstream_input = ""
     headline = ("temperature", "characteristic_velocity", "molar_mass")
-    flows = ("constant-property",)
-    flow_reason = "A gas given by its exponent has no composition to shift or freeze."
+    flows: ClassVar[tuple[str, ...]] = ("constant-property",)
+    flow_reason: ClassVar[str] = "A gas given by its exponent has no composition to shift or freeze."
     groups = (("molar_mass", "gas_constant"),)
     undeclared = ("case",)
 
-    temperature = QuantityInput(doc="stagnation temperature", bounds=Bounds(at_least=10.0, at_most=20_000.0))
-    isentropic_exponent = NumberInput(doc="ratio of the heat capacities", bounds=Bounds(above=1.0, at_most=2.0))
-    molar_mass = QuantityInput(doc="mass per amount of gas", default=None, bounds=Bounds(at_least=1e-3, at_most=1.0))
-    gas_constant = QuantityInput(doc="specific gas constant", default=None, bounds=Bounds(at_least=8.0, at_most=8400.0))
+    temperature: QuantityInput = QuantityInput(doc="stagnation temperature", bounds=Bounds(at_least=10.0, at_most=20_000.0))
+    isentropic_exponent: NumberInput = NumberInput(doc="ratio of the heat capacities", bounds=Bounds(above=1.0, at_most=2.0))
+    molar_mass: QuantityInput = QuantityInput(doc="mass per amount of gas", default=None, bounds=Bounds(at_least=1e-3, at_most=1.0))
+    gas_constant: QuantityInput = QuantityInput(doc="specific gas constant", default=None, bounds=Bounds(at_least=8.0, at_most=8400.0))
 
     if not TYPE_CHECKING:
 

@@ -247,6 +247,10 @@ class CustomInput(Input):
     def __get__(self, instance: Any, owner: Any) -> Any:
         return self if instance is None else instance.attribute(self.name)
 
+    if TYPE_CHECKING:
+
+        def __set__(self, instance: Any, value: Any) -> None: ...
+
 
 class FlagInput(Input):
     """A yes-or-no choice."""

@@ -115,29 +115,29 @@ class Nozzle(Calculation):
     upstream_input = "chamber"
     headline = ("mass_flow", "throat_diameter", "exit_diameter", "area_ratio")
 
-    chamber = CustomInput(doc="the chamber upstream", reader=read_chamber, kw_only=False, quantity="name")
-    area_ratio = NumberInput(
+    chamber: CustomInput = CustomInput(doc="the chamber upstream", reader=read_chamber, kw_only=False, quantity="name")
+    area_ratio: NumberInput = NumberInput(
         doc="exit area over throat area",
         default=None,
         bounds=Bounds(at_least=1.0, at_most=1e4),
         hint="Did you pass throat over exit?",
     )
-    exit_pressure = QuantityInput(
+    exit_pressure: QuantityInput = QuantityInput(
         doc="static pressure at the exit", default=None, bounds=Bounds(at_least=0.1, at_most=1e8)
     )
-    throat_diameter = QuantityInput(doc="geometric throat diameter", default=None, bounds=_LENGTHS)
-    throat_area = QuantityInput(doc="geometric throat area", default=None, bounds=_AREAS)
-    exit_diameter = QuantityInput(doc="geometric exit diameter", default=None, bounds=_LENGTHS)
-    exit_area = QuantityInput(doc="geometric exit area", default=None, bounds=_AREAS)
-    mass_flow = QuantityInput(doc="mass flow to be passed", default=None, bounds=Bounds(at_least=1e-9, at_most=1e6))
-    thrust = QuantityInput(
+    throat_diameter: QuantityInput = QuantityInput(doc="geometric throat diameter", default=None, bounds=_LENGTHS)
+    throat_area: QuantityInput = QuantityInput(doc="geometric throat area", default=None, bounds=_AREAS)
+    exit_diameter: QuantityInput = QuantityInput(doc="geometric exit diameter", default=None, bounds=_LENGTHS)
+    exit_area: QuantityInput = QuantityInput(doc="geometric exit area", default=None, bounds=_AREAS)
+    mass_flow: QuantityInput = QuantityInput(doc="mass flow to be passed", default=None, bounds=Bounds(at_least=1e-9, at_most=1e6))
+    thrust: QuantityInput = QuantityInput(
         doc="thrust to be delivered at sizing_ambient", default=None, bounds=Bounds(at_least=1e-6, at_most=1e9)
     )
-    sizing_ambient = CustomInput(doc="surroundings at which the thrust is asked for", default=None, reader=read_ambient)
-    flow = ChoiceInput(doc="how composition behaves in the nozzle", choices=FLOWS, default=None)
-    freeze_at = CustomInput(doc="where the composition freezes, frozen flow only", default=None, reader=read_freeze)
-    exponent = ChoiceInput(doc="isentropic exponent of constant-property flow", choices=EXPONENTS, default=None)
-    discharge_coefficient = NumberInput(
+    sizing_ambient: CustomInput = CustomInput(doc="surroundings at which the thrust is asked for", default=None, reader=read_ambient)
+    flow: ChoiceInput = ChoiceInput(doc="how composition behaves in the nozzle", choices=FLOWS, default=None)
+    freeze_at: CustomInput = CustomInput(doc="where the composition freezes, frozen flow only", default=None, reader=read_freeze)
+    exponent: ChoiceInput = ChoiceInput(doc="isentropic exponent of constant-property flow", choices=EXPONENTS, default=None)
+    discharge_coefficient: NumberInput = NumberInput(
         doc="effective over geometric throat area", default=1.0, bounds=Bounds(above=0.5, at_most=1.0)
     )
 

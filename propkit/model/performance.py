@@ -44,8 +44,8 @@ class Performance(Calculation):
     upstream_input = "nozzle"
     headline = ("thrust", "specific_impulse", "mass_flow")
 
-    nozzle = CustomInput(doc="the nozzle", reader=read_nozzle, kw_only=False, quantity="name")
-    ambient = CustomInput(doc="surroundings: sea level, vacuum, a pressure or an altitude", reader=read_ambient)
+    nozzle: CustomInput = CustomInput(doc="the nozzle", reader=read_nozzle, kw_only=False, quantity="name")
+    ambient: CustomInput = CustomInput(doc="surroundings: sea level, vacuum, a pressure or an altitude", reader=read_ambient)
 
     thrust = QuantityResult(relation="thrust", source="conservation")
     specific_impulse = QuantityResult(relation="specific_impulse", source="definition")

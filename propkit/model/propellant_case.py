@@ -84,19 +84,19 @@ class PropellantCase(Calculation):
     headline = ("mixture_ratio", "equivalence_ratio", "bulk_density")
     groups = (("mixture_ratio", "equivalence_ratio"),)
 
-    oxidizer = CustomInput(doc="propellant that supplies the oxidizing elements", reader=as_propellant, kw_only=False)
-    fuel = CustomInput(doc="propellant that is burnt", reader=as_propellant, kw_only=False)
-    mixture_ratio = NumberInput(doc="oxidizer mass flow over fuel mass flow", default=None, bounds=_RATIOS)
-    equivalence_ratio = NumberInput(
+    oxidizer: CustomInput = CustomInput(doc="propellant that supplies the oxidizing elements", reader=as_propellant, kw_only=False)
+    fuel: CustomInput = CustomInput(doc="propellant that is burnt", reader=as_propellant, kw_only=False)
+    mixture_ratio: NumberInput = NumberInput(doc="oxidizer mass flow over fuel mass flow", default=None, bounds=_RATIOS)
+    equivalence_ratio: NumberInput = NumberInput(
         doc="stoichiometric over actual mixture ratio; above 1 is fuel-rich", default=None, bounds=_RATIOS
     )
-    oxidizer_temperature = QuantityInput(
+    oxidizer_temperature: QuantityInput = QuantityInput(
         doc="temperature of the oxidizer as stored or fed", default=None, bounds=_TEMPERATURES
     )
-    fuel_temperature = QuantityInput(doc="temperature of the fuel as stored or fed", default=None, bounds=_TEMPERATURES)
-    oxidizer_pressure = QuantityInput(doc="pressure of the oxidizer as stored or fed", default=None, bounds=_PRESSURES)
-    fuel_pressure = QuantityInput(doc="pressure of the fuel as stored or fed", default=None, bounds=_PRESSURES)
-    thermo_basis = ChoiceInput(
+    fuel_temperature: QuantityInput = QuantityInput(doc="temperature of the fuel as stored or fed", default=None, bounds=_TEMPERATURES)
+    oxidizer_pressure: QuantityInput = QuantityInput(doc="pressure of the oxidizer as stored or fed", default=None, bounds=_PRESSURES)
+    fuel_pressure: QuantityInput = QuantityInput(doc="pressure of the fuel as stored or fed", default=None, bounds=_PRESSURES)
+    thermo_basis: ChoiceInput = ChoiceInput(
         doc="species data that the equilibrium rests on", choices=bases.BASES, default=bases.BASES[0]
     )
 
