@@ -393,6 +393,7 @@ _ROWS = (
         4,
     ),
     Quantity("saturated", TEXT, r"", "saturated", "whether a liquid is at its own vapour pressure"),
+    Quantity("species", TEXT, r"", "species", "formula key of an unreacting gas in the species data"),
     Quantity("coolprop_fluid", TEXT, r"", "CoolProp fluid", "name of the equation of state that gives other stored states"),
     Quantity("phase", TEXT, r"", "phase", "state of aggregation"),
     Quantity("hazard", TEXT, r"", "hazard", "what can hurt"),

@@ -57,6 +57,7 @@ class PropellantRow:
     components: tuple[tuple[PropellantRow, float], ...] = ()
     mixing_enthalpy: float = 0.0
     coolprop_fluid: str | None = None
+    species: str | None = None
     density: float | None = None
     density_temperature: float | None = None
     density_slope: float | None = None
@@ -81,6 +82,20 @@ class PropellantRow:
     def mixture(self) -> dict[str, float]:
         """Return ingredient name -> mass fraction; empty for a row of its own."""
         return {row.name: share for row, share in self.components}
+
+    @property
+    def gas_composition(self) -> dict[str, float]:
+        """Return species -> mole fraction of a gas of known composition; empty where it is not known."""
+        if self.species is not None:
+            return {self.species: 1.0}
+        found: dict[str, float] = {}
+        for row, share in self.components:
+            inside = row.gas_composition
+            if not inside:
+                return {}
+            for species, fraction in inside.items():
+                found[species] = found.get(species, 0.0) + share * self.molar_mass / row.molar_mass * fraction
+        return found
 
     @property
     def elements(self) -> dict[str, float]:

@@ -103,6 +103,7 @@ FIELDS: Mapping[str, Field] = {
     "pressure_kPa": Field(_number(0.001, 1e6, "kPa"), "pressure of the row; 100 kPa unless given"),
     "saturated": Field(_flag, "true for a liquid at its vapour pressure"),
     "coolprop_fluid": Field(_text, "name of the fluid in CoolProp, where it has it"),
+    "species": Field(_text, "formula key of the gas in the species data, for a gas that does not react: N2"),
     "density_kg_m3": Field(_number(1e-3, 25000, "kg/m3"), "density at the state of the row"),
     "density_temperature_K": Field(_number(1, 2000, "K"), "temperature of the density where it is another one"),
     "density_slope_kg_m3_K": Field(_number(-50, 0, "kg/m3/K"), "change of density with temperature"),

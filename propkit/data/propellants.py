@@ -302,6 +302,7 @@ def _row(name: str, fields: Mapping[str, Any], basic: dict[str, Any], origin: st
         saturated=fields.get("saturated", False),
         aliases=tuple(fields.get("aliases", ())),
         coolprop_fluid=fields.get("coolprop_fluid"),
+        species=fields.get("species"),
         density_temperature=fields.get("density_temperature_K"),
         density_slope=fields.get("density_slope_kg_m3_K"),
         density_source=fields.get("density_source", "ideal volumes of its ingredients" if basic["components"] else ""),

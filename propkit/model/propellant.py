@@ -44,7 +44,7 @@ _TEMPERATURES = Bounds(above=0.0, at_most=6000.0)
 _PRESSURES = Bounds(above=0.0, at_most=1e9)
 _LIMITS = ("freezing_point", "boiling_point", "vapour_pressure")
 _FIGURES = ("density", "temperature", "pressure", "heat_capacity", *_LIMITS)
-_OWN_ONLY = ("formula", "temperature", "pressure", "phase", "saturated", "coolprop_fluid")
+_OWN_ONLY = ("formula", "temperature", "pressure", "phase", "saturated", "coolprop_fluid", "species")
 _STATED_ELSEWHERE = "A row of the library brings its own; for another give formula and enthalpy, without library_name."
 
 
@@ -61,8 +61,8 @@ class Propellant(Calculation):
         The state; 298.15 K and 1 bar unless given.
     role : str, optional
         "oxidizer" | "fuel" | "monopropellant" | "cold gas" | "ingredient" | "diluent", or several with commas.
-    phase, saturated, heat_capacity, heat_capacity_range, coolprop_fluid : optional
-        What other stored states need.
+    phase, saturated, heat_capacity, heat_capacity_range, coolprop_fluid, species : optional
+        What other stored states and unreacting flow need.
     freezing_point, boiling_point, vapour_pressure, hazard, source, name : optional
         What the sheet shows and warnings rest on.
     library_name : str
@@ -121,6 +121,9 @@ class Propellant(Calculation):
     boiling_point: QuantityInput = QuantityInput(doc="boiling point at 101.325 kPa", default=None, bounds=_TEMPERATURES)
     vapour_pressure: QuantityInput = QuantityInput(doc="vapour pressure at 298.15 K", default=None, bounds=_PRESSURES)
     coolprop_fluid: TextInput = TextInput(doc="name of the fluid in CoolProp, for other stored states", default=None)
+    species: TextInput = TextInput(
+        doc="formula key of an unreacting gas in the species data, for cold gas", default=None
+    )
     hazard: TextInput = TextInput(doc="one line on what can hurt", default=None)
     source: TextInput = TextInput(doc="where the enthalpy comes from", default=None)
     library_name: CustomInput = CustomInput(
@@ -268,6 +271,7 @@ class Propellant(Calculation):
             "source",
             "saturated",
             "coolprop_fluid",
+            "species",
             "heat_capacity_range",
         ):
             return getattr(row, name)

@@ -93,6 +93,7 @@ def row_of(values: Mapping[str, Any]) -> PropellantRow:
         source=values["source"] or "as given",
         trust="",
         coolprop_fluid=values["coolprop_fluid"],
+        species=values["species"],
         density=values["density"],
         density_source="" if values["density"] is None else "as given",
         heat_capacity=values["heat_capacity"],
@@ -142,8 +143,8 @@ def inputs_of(row: PropellantRow) -> dict[str, Any]:
         "source": row.source[:200],
         "name": row.name,
     }
-    optional = ("density", "heat_capacity", "heat_capacity_range", "coolprop_fluid", "freezing_point", "boiling_point")
-    for name in (*optional, "vapour_pressure"):
+    optional = ("density", "heat_capacity", "heat_capacity_range", "coolprop_fluid", "species")
+    for name in (*optional, "freezing_point", "boiling_point", "vapour_pressure"):
         if (value := getattr(row, name)) is not None:
             given[name] = value
     if row.saturated:

@@ -327,3 +327,30 @@ def test_the_example_of_the_documentation_loads(tmp_path):
     text = resources.files("propkit.data").joinpath("README.md").read_text(encoding="utf-8")
     rows = load_library(write(tmp_path, text.split("```toml")[1].split("```")[0]))
     assert len(rows) == 2
+
+
+# ---- gases that flow unreacted --------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize("name", [name for name, row in library().items() if row.phase == "gas"])
+def test_a_gas_row_is_made_of_species_of_the_data(name):
+    from propkit.bridge.basis import load_basis
+    from propkit.data.formula import molar_mass
+
+    row = library()[name]
+    fractions = row.gas_composition
+    assert math.fsum(fractions.values()) == pytest.approx(1.0, rel=1e-12)
+    table = load_basis("tm4513").table(sorted(row.elements))
+    known = dict(zip(table.names, table.composition, strict=True))
+    elements = dict.fromkeys(table.elements, 0.0)
+    for species, fraction in fractions.items():
+        for symbol, count in zip(table.elements, known[species], strict=True):
+            elements[symbol] += fraction * float(count)
+    for symbol, count in row.element_counts:
+        assert elements[symbol] == pytest.approx(count, rel=1e-9)
+    assert molar_mass(elements) == pytest.approx(row.molar_mass, rel=1e-9)
+
+
+def test_a_reacting_row_has_no_gas_composition():
+    assert library()["LOX"].gas_composition == {}
+    assert library()["A-50"].gas_composition == {}
