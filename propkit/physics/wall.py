@@ -15,9 +15,17 @@ import numpy as np
 from propkit.errors import InputError, Problem
 from propkit.physics.arrays import Array, Values, values
 
-_NODES, _WEIGHTS = np.polynomial.legendre.leggauss(24)
-_SHARES: Final[Array] = 0.5 * (_NODES + 1.0)
-_SHARE_WEIGHTS: Final[Array] = 0.5 * _WEIGHTS
+_NODES, _WEIGHTS = np.polynomial.legendre.leggauss(20)
+_ARC_PANELS: Final = (0.0, 1.0)
+_CURVE_PANELS: Final = (0.0, 0.03, 0.2, 1.0)
+"""Panels of the quadrature: graded towards the start of a divergent, where pressure falls as the root of the area."""
+
+
+def _rule(panels: Sequence[float]) -> tuple[Array, Array]:
+    """Return shares and weights of Gauss-Legendre quadrature on each panel."""
+    edges = values(panels)
+    width = np.diff(edges)[:, None]
+    return (edges[:-1, None] + 0.5 * width * (_NODES + 1.0)).ravel(), (0.5 * width * _WEIGHTS).ravel()
 
 
 @dataclass(frozen=True, slots=True)
@@ -133,17 +141,18 @@ def draw(segments: Sequence[Segment], count: int = 33) -> Wall:
 
 
 def quadrature(segments: Sequence[Segment]) -> Wall:
-    """Return the wall as quadrature points: 24 Gauss-Legendre points on each segment."""
+    """Return the wall as quadrature points: 20 Gauss-Legendre points on each arc, three times that on a curve."""
     columns: list[list[Array]] = [[] for _ in range(7)]
     for segment in segments:
-        dx, dr = segment.slopes(_SHARES)
+        shares, weights = _rule(_CURVE_PANELS if isinstance(segment, Curve) else _ARC_PANELS)
+        dx, dr = segment.slopes(shares)
         parts = (
-            *segment.points(_SHARES),
-            segment.angles(_SHARES),
-            segment.curvatures(_SHARES),
-            dx * _SHARE_WEIGHTS,
-            dr * _SHARE_WEIGHTS,
-            np.hypot(dx, dr) * _SHARE_WEIGHTS,
+            *segment.points(shares),
+            segment.angles(shares),
+            segment.curvatures(shares),
+            dx * weights,
+            dr * weights,
+            np.hypot(dx, dr) * weights,
         )
         for column, part in zip(columns, parts, strict=True):
             column.append(part)

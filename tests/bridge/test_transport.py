@@ -26,9 +26,7 @@ PURE = [
 @pytest.mark.parametrize("temperature", [400.0, 800.0])
 def test_pure_gases_against_coolprop(key: str, fluid: str, temperature: float) -> None:
     coolprop = pytest.importorskip("CoolProp.CoolProp")
-    limit = coolprop.PropsSI("Tmax", fluid)
-    if temperature > limit:
-        pytest.skip(f"the correlation ends at {limit:g} K")
+    temperature = min(temperature, coolprop.PropsSI("Tmax", fluid))
     found = transport.mixture_transport(temperature, 1e5, {key: 1.0})
     at = ("T", temperature, "P", 1e5, fluid)
     assert found.viscosity == pytest.approx(coolprop.PropsSI("V", *at), rel=0.05)

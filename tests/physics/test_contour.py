@@ -12,7 +12,7 @@ from hypothesis import strategies as st
 from scipy.integrate import trapezoid
 
 from propkit.errors import InputError
-from propkit.physics import contour, wall
+from propkit.physics import contour, gas_dynamics, wall
 from propkit.physics.bell_table import bell_angles, inside_table
 
 FIFTEEN = math.radians(15.0)
@@ -135,6 +135,24 @@ def test_chamber_holds_its_volume(throat_radius: float, contraction: float, more
     least = wall.volume(contour.convergent(throat_radius, contraction)) / (math.pi * throat_radius**2)
     pieces = contour.chamber(throat_radius, contraction, least * (1.0 + more))
     assert wall.volume(pieces) == pytest.approx(least * (1.0 + more) * math.pi * throat_radius**2, rel=1e-10)
+
+
+@pytest.mark.parametrize("divergent", [contour.cone(0.05, 40.0, FIFTEEN), contour.bell(0.05, 40.0)])
+def test_wall_pressure_and_momentum_balance_agree(divergent: tuple[wall.Segment, ...]) -> None:
+    """One-dimensional flow, exponent 1.22: (p + rho u^2) A at the inlet plus the wall's push is that at the exit."""
+    pieces = (*contour.convergent(0.05, 3.0), *divergent)
+    points = wall.quadrature(pieces)
+    ratio = np.maximum((points.r / 0.05) ** 2, 1.0)
+    subsonic = gas_dynamics.mach_from_area_ratio(ratio, 1.22, "subsonic")
+    mach = np.where(points.x < 0.0, subsonic, gas_dynamics.mach_from_area_ratio(ratio, 1.22))
+
+    def stream_force(area_ratio: float, branch: str) -> float:
+        m = gas_dynamics.mach_from_area_ratio(area_ratio, 1.22, branch)  # type: ignore[arg-type]
+        force = gas_dynamics.pressure_ratio(m, 1.22) * (1.0 + 1.22 * m**2) * area_ratio
+        return 6e6 * float(force) * math.pi * 0.05**2
+
+    push = wall.wall_force(6e6 * gas_dynamics.pressure_ratio(mach, 1.22), points)
+    assert stream_force(3.0, "subsonic") + push == pytest.approx(stream_force(40.0, "supersonic"), rel=1e-9)
 
 
 def test_default_convergent_makes_room() -> None:
