@@ -123,7 +123,9 @@ def mixture_transport(
     The model's conductivity of steam is 23 % above the reference correlation at 1000 K (viscosity within 8 %), so
     Prandtl numbers of gases rich in steam come out low and Bartz's coefficient up to some 10 % high.
 
-    Source: Cantera; GRI-Mech 3.0 transport data; 2 % and 10 % are limits of this toolkit.
+    Source
+    ------
+    Cantera; GRI-Mech 3.0 transport data; 2 % and 10 % are limits of this toolkit.
     """
     total = _checked_total(temperature, pressure, mole_fractions)
     shares = {key: share / total for key, share in mole_fractions.items() if share > 0.0}

@@ -115,7 +115,9 @@ def geopotential_altitude(altitude: Values) -> Array:
     -----
     H = r0 Z / (r0 + Z).
 
-    Source: US Standard Atmosphere 1976, equation 18.
+    Source
+    ------
+    US Standard Atmosphere 1976, equation 18.
 
     Examples
     --------
@@ -139,9 +141,9 @@ def geometric_altitude(geopotential: Values) -> Array:
     array
         Geometric altitude [m], shape of `geopotential`.
 
-    Notes
-    -----
-    Source: US Standard Atmosphere 1976, equation 19.
+    Source
+    ------
+    US Standard Atmosphere 1976, equation 19.
 
     Examples
     --------
@@ -268,7 +270,9 @@ def temperature(altitude: Values) -> Array:
     -----
     Layers of table 4 up to 86 km; above, the closed forms of section 1.2.5 over the molar mass ratio.
 
-    Source: US Standard Atmosphere 1976, equations 23, 25-31.
+    Source
+    ------
+    US Standard Atmosphere 1976, equations 23, 25-31.
 
     Examples
     --------
@@ -301,9 +305,9 @@ def kinetic_temperature(altitude: Values) -> Array:
     RangeError
         Outside -5 to 150 km.
 
-    Notes
-    -----
-    Source: US Standard Atmosphere 1976, equations 23, 25-31.
+    Source
+    ------
+    US Standard Atmosphere 1976, equations 23, 25-31.
 
     Examples
     --------
@@ -336,7 +340,9 @@ def pressure(altitude: Values) -> Array:
     -----
     Equations 33a and 33b in the layers; above 86 km printed rows joined in ln p with the hydrostatic slope.
 
-    Source: US Standard Atmosphere 1976, equations 33a, 33b and table I (rows above 86 km from memory).
+    Source
+    ------
+    US Standard Atmosphere 1976, equations 33a, 33b and table I (rows above 86 km from memory).
 
     Examples
     --------
@@ -370,7 +376,9 @@ def density(altitude: Values) -> Array:
     -----
     rho = p M0 / (R* T_M), T_M the molecular-scale temperature.
 
-    Source: US Standard Atmosphere 1976, equation 42.
+    Source
+    ------
+    US Standard Atmosphere 1976, equation 42.
 
     Examples
     --------
@@ -402,7 +410,9 @@ def sound_speed(altitude: Values) -> Array:
     -----
     a = sqrt(1.4 R* T_M / M0).
 
-    Source: US Standard Atmosphere 1976, equation 50.
+    Source
+    ------
+    US Standard Atmosphere 1976, equation 50.
 
     Examples
     --------
@@ -434,7 +444,9 @@ def altitude_of_pressure(pressure: Values) -> Array:
     -----
     Closed form in the layers, bisection of the interpolant above 86 km.
 
-    Source: US Standard Atmosphere 1976, equations 33a, 33b solved for the altitude.
+    Source
+    ------
+    US Standard Atmosphere 1976, equations 33a, 33b solved for the altitude.
 
     Examples
     --------

@@ -68,7 +68,9 @@ def bell_angles(area_ratio: Values, length_fraction: Values) -> tuple[Array, Arr
     -----
     Linear in ln(area ratio) and in length.
 
-    Source: Rao (1960), chart of wall angles, from memory (1 degree).
+    Source
+    ------
+    Rao (1960), chart of wall angles, from memory (1 degree).
 
     Examples
     --------

@@ -65,9 +65,9 @@ def reference_temperature(temperature: Values, wall_temperature: Values, adiabat
     array
         Temperature [K] at which the low-speed friction law is evaluated.
 
-    Notes
-    -----
-    Source: E. R. G. Eckert, J. Aeronautical Sciences 22 (1955) 585-587.
+    Source
+    ------
+    E. R. G. Eckert, J. Aeronautical Sciences 22 (1955) 585-587.
 
     Examples
     --------
@@ -95,7 +95,9 @@ def form_parameter(temperature: Values, wall_temperature: Values, adiabatic_wall
     -----
     H = 9/7 Tw/T + Taw/T - 1, from Crocco's linear relation of total enthalpy and velocity.
 
-    Source: Schlichting, Boundary-Layer Theory, chapter XXIII (Crocco), from memory.
+    Source
+    ------
+    Schlichting, Boundary-Layer Theory, chapter XXIII (Crocco), from memory.
 
     Examples
     --------
@@ -130,7 +132,9 @@ def momentum_thickness(flow: WallFlow) -> Array:
     cf/2 = 0.0128 (rho* u theta/mu*)^(-1/4) rho*/rho. With y = theta^(5/4): dy/ds = 5/4 (a - b y), solved with its
     integrating factor; trapezoids between points, so use some 200 points or more.
 
-    Source: Schlichting, Boundary-Layer Theory (momentum integral and friction law); Eckert (1955); from memory.
+    Source
+    ------
+    Schlichting, Boundary-Layer Theory (momentum integral and friction law); Eckert (1955); from memory.
     """
     require(np.diff(flow.length) > 0.0, "length", np.diff(flow.length), "rising along the wall")
     for name in ("radius", "velocity", "density", "temperature", "viscosity"):
@@ -176,7 +180,9 @@ def boundary_layer_drag(
     dF = 2 pi re rho u^2 theta cos a: momentum deficit at the lip, to first order in thickness over radius, the mass
     flow held; the displacement of the throat belongs to the discharge coefficient and is not in it.
 
-    Source: conservation of momentum; bookkeeping of CPIA Publication 246.
+    Source
+    ------
+    Conservation of momentum; bookkeeping of CPIA Publication 246.
 
     Examples
     --------

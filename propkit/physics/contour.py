@@ -73,7 +73,9 @@ def cone_length(
     -----
     L = [Rt (sqrt(eps) - 1) + R (1/cos a - 1)] / tan a.
 
-    Source: geometry; without the arc Sutton & Biblarz print 8.07 throat radii for 15 deg, area ratio 10 (from memory).
+    Source
+    ------
+    Geometry; without the arc Sutton & Biblarz print 8.07 throat radii for 15 deg, area ratio 10 (from memory).
 
     Examples
     --------
@@ -111,9 +113,9 @@ def cone(
     InputError
         Outside the ranges, or where the arc alone already reaches the exit radius.
 
-    Notes
-    -----
-    Source: geometry.
+    Source
+    ------
+    Geometry.
     """
     exit_radius = _checked_radii(throat_radius, area_ratio)
     require(0.0 < half_angle < 0.5 * np.pi, "half_angle", np.degrees(half_angle), "above 0 and below 90 degrees")
@@ -169,7 +171,9 @@ def bell(
     -----
     A parabola with given end tangents exists where the chord is steeper than the lip and flatter than the throat angle.
 
-    Source: Rao (1960).
+    Source
+    ------
+    Rao (1960).
     """
     exit_radius = _checked_radii(throat_radius, area_ratio)
     require(
@@ -241,9 +245,9 @@ def convergent(
     InputError
         Outside the ranges, or for a half-angle that does not fit.
 
-    Notes
-    -----
-    Source: geometry; arc of 1.5 throat radii after Rao (1960), the rest common practice, no source.
+    Source
+    ------
+    Geometry; arc of 1.5 throat radii after Rao (1960), the rest common practice, no source.
     """
     require(throat_radius > 0.0, "throat_radius", throat_radius, "above 0")
     require(
@@ -311,7 +315,9 @@ def chamber(
     -----
     L* = V/At; the cylinder has the length that is left, (L* At - V_convergent)/(eps_c At).
 
-    Source: Sutton & Biblarz, chapter 8 (definition of L*).
+    Source
+    ------
+    Sutton & Biblarz, chapter 8 (definition of L*).
     """
     pieces = convergent(throat_radius, contraction_ratio, half_angle, upstream_arc, inlet_arc)
     throat_area = np.pi * throat_radius**2
@@ -352,7 +358,9 @@ def stay_time(volume: Values, density: Values, mass_flow: Values) -> Array:
     -----
     The volume is taken as filled with burnt gas at the chamber state.
 
-    Source: Sutton & Biblarz, chapter 8.
+    Source
+    ------
+    Sutton & Biblarz, chapter 8.
     """
     return values(volume) * values(density) / values(mass_flow)
 

@@ -57,7 +57,9 @@ def temperature_ratio(mach: Values, isentropic_exponent: Values) -> Array:
     -----
     T/T0 = 1 / (1 + (g - 1)/2 M^2).
 
-    Source: NACA Report 1135, equation 43.
+    Source
+    ------
+    NACA Report 1135, equation 43.
 
     Examples
     --------
@@ -92,7 +94,9 @@ def pressure_ratio(mach: Values, isentropic_exponent: Values) -> Array:
     -----
     p/p0 = (T/T0)^(g/(g - 1)).
 
-    Source: NACA Report 1135, equation 44.
+    Source
+    ------
+    NACA Report 1135, equation 44.
 
     Examples
     --------
@@ -127,7 +131,9 @@ def density_ratio(mach: Values, isentropic_exponent: Values) -> Array:
     -----
     rho/rho0 = (T/T0)^(1/(g - 1)).
 
-    Source: NACA Report 1135, equation 45.
+    Source
+    ------
+    NACA Report 1135, equation 45.
 
     Examples
     --------
@@ -167,7 +173,9 @@ def area_ratio(mach: Values, isentropic_exponent: Values) -> Array:
     -----
     A/A* = 1/M [2/(g + 1) (1 + (g - 1)/2 M^2)]^((g + 1)/(2 (g - 1))).
 
-    Source: NACA Report 1135, equation 80.
+    Source
+    ------
+    NACA Report 1135, equation 80.
 
     Examples
     --------
@@ -207,7 +215,9 @@ def mach_from_area_ratio(area_ratio: Values, isentropic_exponent: Values, branch
     -----
     Newton in ln M. ln(A/A*) is convex in ln M, so the iteration converges from any start on its branch.
 
-    Source: NACA Report 1135, equation 80, inverted.
+    Source
+    ------
+    NACA Report 1135, equation 80, inverted.
 
     Examples
     --------
@@ -255,7 +265,9 @@ def mach_from_pressure_ratio(pressure_ratio: Values, isentropic_exponent: Values
     -----
     M^2 = 2/(g - 1) [(p/p0)^(-(g - 1)/g) - 1].
 
-    Source: NACA Report 1135, equation 44, inverted.
+    Source
+    ------
+    NACA Report 1135, equation 44, inverted.
 
     Examples
     --------
@@ -291,7 +303,9 @@ def mach_from_temperature_ratio(temperature_ratio: Values, isentropic_exponent: 
     -----
     M^2 = 2/(g - 1) (T0/T - 1).
 
-    Source: NACA Report 1135, equation 43, inverted.
+    Source
+    ------
+    NACA Report 1135, equation 43, inverted.
 
     Examples
     --------
@@ -325,7 +339,9 @@ def choked_mass_flux_function(isentropic_exponent: Values) -> Array:
     -----
     sqrt(g) (2/(g + 1))^((g + 1)/(2 (g - 1))).
 
-    Source: closed form, from NACA Report 1135, equations 43, 44 at M = 1; value at 1.4: handbook, from memory.
+    Source
+    ------
+    Closed form, from NACA Report 1135, equations 43, 44 at M = 1; value at 1.4: handbook, from memory.
 
     Examples
     --------
@@ -366,7 +382,9 @@ def choked_mass_flux(
     -----
     m'/A* = p0 / sqrt(R T0) sqrt(g) (2/(g + 1))^((g + 1)/(2 (g - 1))).
 
-    Source: closed form; the example (LOX/RP-1 reservoir at 7 MPa) is common practice, no source.
+    Source
+    ------
+    Closed form; the example (LOX/RP-1 reservoir at 7 MPa) is common practice, no source.
 
     Examples
     --------
@@ -406,7 +424,9 @@ def characteristic_velocity(stagnation_temperature: Values, gas_constant: Values
     -----
     c* = sqrt(R T0) / [sqrt(g) (2/(g + 1))^((g + 1)/(2 (g - 1)))].
 
-    Source: Sutton & Biblarz, chapter 3 (closed form); the example is arithmetic.
+    Source
+    ------
+    Sutton & Biblarz, chapter 3 (closed form); the example is arithmetic.
 
     Examples
     --------
@@ -446,7 +466,9 @@ def exhaust_velocity(
     -----
     u = sqrt(2 g/(g - 1) R T0 [1 - (p/p0)^((g - 1)/g)]).
 
-    Source: Sutton & Biblarz, chapter 3 (closed form). Example: NACA Report 1135 at M = 2, u = M sqrt(g R T).
+    Source
+    ------
+    Sutton & Biblarz, chapter 3 (closed form). Example: NACA Report 1135 at M = 2, u = M sqrt(g R T).
 
     Examples
     --------
@@ -491,7 +513,9 @@ def thrust_coefficient(
     -----
     CF = sqrt(2 g^2/(g - 1) (2/(g + 1))^((g + 1)/(g - 1)) [1 - (pe/p0)^((g - 1)/g)]) + (pe/p0 - pa/p0) eps.
 
-    Source: Sutton & Biblarz, chapter 3 (closed form). Example: the largest coefficient at exponent 1.2, from memory.
+    Source
+    ------
+    Sutton & Biblarz, chapter 3 (closed form). Example: the largest coefficient at exponent 1.2, from memory.
 
     Examples
     --------

@@ -40,7 +40,9 @@ def recovery_factor(prandtl: Values) -> Array:
     -----
     r = Pr^(1/3).
 
-    Source: Bartz (1957); Schlichting, Boundary-Layer Theory.
+    Source
+    ------
+    Bartz (1957); Schlichting, Boundary-Layer Theory.
 
     Examples
     --------
@@ -78,7 +80,9 @@ def adiabatic_wall_temperature(static_temperature: Values, stagnation_temperatur
     -----
     Taw = T + Pr^(1/3) (T0 - T).
 
-    Source: Bartz (1957).
+    Source
+    ------
+    Bartz (1957).
 
     Examples
     --------
@@ -120,7 +124,9 @@ def property_correction(
     -----
     sigma = [1/2 Tw/T0 (1 + (g - 1)/2 M^2) + 1/2]^-(0.8 - w/5) [1 + (g - 1)/2 M^2]^-(w/5), w = 0.6.
 
-    Source: Bartz (1957).
+    Source
+    ------
+    Bartz (1957).
 
     Examples
     --------
@@ -181,7 +187,9 @@ def heat_transfer_coefficient(
     -----
     h = [0.026/Dt^0.2 (mu^0.2 cp/Pr^0.6) (p0/c*)^0.8 (Dt/R)^0.1] (At/A)^0.9 sigma.
 
-    Source: Bartz (1957).
+    Source
+    ------
+    Bartz (1957).
 
     Examples
     --------
@@ -234,7 +242,9 @@ def heat_flux(coefficient: Values, adiabatic_wall_temperature: Values, wall_temp
     -----
     q = h (Taw - Tw).
 
-    Source: Bartz (1957).
+    Source
+    ------
+    Bartz (1957).
 
     Examples
     --------
@@ -274,9 +284,9 @@ def heat_load(flux: Values, wall: Wall) -> float:
     float
         Integral of 2 pi r q over the wall length [W].
 
-    Notes
-    -----
-    Source: geometry.
+    Source
+    ------
+    Geometry.
     """
     return float(np.sum(2.0 * np.pi * values(flux) * wall.r * wall.ds))
 
@@ -307,7 +317,9 @@ def coolant_temperature_rise(heat_load: Values, coolant_mass_flow: Values, coola
     -----
     dT = Q / (m' c).
 
-    Source: conservation of energy.
+    Source
+    ------
+    Conservation of energy.
 
     Examples
     --------
@@ -344,7 +356,9 @@ def estimated_viscosity(molar_mass: Values, temperature: Values) -> Array:
     -----
     46.6e-10 sqrt(M) T^0.6 lbm/(in s) with M in lbm/lbmol and T in degrees Rankine.
 
-    Source: Bartz (1957), estimated properties; from memory.
+    Source
+    ------
+    Bartz (1957), estimated properties; from memory.
 
     Examples
     --------
@@ -379,7 +393,9 @@ def estimated_prandtl(isentropic_exponent: Values) -> Array:
     -----
     Pr = 4 g / (9 g - 5).
 
-    Source: Bartz (1957), after Eucken.
+    Source
+    ------
+    Bartz (1957), after Eucken.
 
     Examples
     --------

@@ -80,9 +80,9 @@ def ledger(ideal: float, losses: Iterable[Loss]) -> tuple[Entry, ...]:
     InputError
         For an unknown or repeated name, a ratio outside 0 to 1, or a decrement below 0 or above what is left.
 
-    Notes
-    -----
-    Source: CPIA Publication 246.
+    Source
+    ------
+    CPIA Publication 246.
 
     Examples
     --------
@@ -144,9 +144,9 @@ def ratio_of_decrement(decrement: Values, before: Values) -> Array:
     InputError
         Outside the ranges stated.
 
-    Notes
-    -----
-    Source: CPIA Publication 246.
+    Source
+    ------
+    CPIA Publication 246.
 
     Examples
     --------
@@ -180,7 +180,9 @@ def cone_divergence_factor(half_angle: Values) -> Array:
     -----
     lambda = (1 + cos a)/2.
 
-    Source: Sutton & Biblarz, chapter 3: 0.983 at 15 degrees (from memory).
+    Source
+    ------
+    Sutton & Biblarz, chapter 3: 0.983 at 15 degrees (from memory).
 
     Examples
     --------
@@ -216,7 +218,9 @@ def bell_divergence_factor(throat_to_lip_angle: Values, lip_angle: Values) -> Ar
     -----
     lambda = (1 + cos((a + b)/2))/2.
 
-    Source: Rao (1960) as used in propulsion handbooks; area ratio 25, 80 % bell: 0.987 (from memory).
+    Source
+    ------
+    Rao (1960) as used in propulsion handbooks; area ratio 25, 80 % bell: 0.987 (from memory).
 
     Examples
     --------
@@ -254,7 +258,9 @@ def divergence_ratio(divergence_factor: Values, momentum_thrust: Values, pressur
     -----
     (lambda m' u + (pe - pa) Ae)/(m' u + (pe - pa) Ae).
 
-    Source: Sutton & Biblarz, chapter 3.
+    Source
+    ------
+    Sutton & Biblarz, chapter 3.
 
     Examples
     --------
@@ -293,7 +299,9 @@ def kinetics_ratio(shifting: Values, frozen: Values, share: Values = KINETICS_SH
     -----
     1 - share (1 - frozen/shifting). The share falls with pressure and size.
 
-    Source: common practice, no source.
+    Source
+    ------
+    Common practice, no source.
 
     Examples
     --------
@@ -327,9 +335,9 @@ def boundary_layer_ratio(drag: Values, thrust: Values) -> Array:
     InputError
         Outside the ranges stated.
 
-    Notes
-    -----
-    Source: CPIA Publication 246.
+    Source
+    ------
+    CPIA Publication 246.
 
     Examples
     --------
@@ -367,7 +375,9 @@ def two_phase_ratio(condensed_mass_fraction: Values, velocity_lag: Values, momen
     -----
     1 - share w lag: momentum balance with the gas expansion unchanged.
 
-    Source: conservation of momentum.
+    Source
+    ------
+    Conservation of momentum.
 
     Examples
     --------

@@ -51,7 +51,9 @@ def summerfield_pressure(ambient_pressure: Values) -> Array:
     -----
     ps = 0.4 pa, from hot-gas cones of about 15 degrees and pressure ratios above 20.
 
-    Source: Summerfield, Foster & Swan (1954).
+    Source
+    ------
+    Summerfield, Foster & Swan (1954).
 
     Examples
     --------
@@ -87,7 +89,9 @@ def kalt_badal_pressure(ambient_pressure: Values, stagnation_pressure: Values) -
     -----
     ps/pa = 2/3 (p0/pa)^(-0.2).
 
-    Source: Kalt & Badal (1965).
+    Source
+    ------
+    Kalt & Badal (1965).
 
     Examples
     --------
@@ -124,7 +128,9 @@ def schmucker_pressure(ambient_pressure: Values, mach: Values) -> Array:
     -----
     ps/pa = (1.88 M - 1)^(-0.64).
 
-    Source: Schmucker (1973).
+    Source
+    ------
+    Schmucker (1973).
 
     Examples
     --------
@@ -159,7 +165,9 @@ def summerfield_ambient(exit_pressure: Values) -> Array:
     -----
     pa = pe / 0.4.
 
-    Source: Summerfield, Foster & Swan (1954).
+    Source
+    ------
+    Summerfield, Foster & Swan (1954).
 
     Examples
     --------
@@ -194,7 +202,9 @@ def kalt_badal_ambient(exit_pressure: Values, stagnation_pressure: Values) -> Ar
     -----
     pa = (3/2 pe p0^0.2)^(1/1.2), the criterion solved for pa.
 
-    Source: Kalt & Badal (1965).
+    Source
+    ------
+    Kalt & Badal (1965).
 
     Examples
     --------
@@ -229,7 +239,9 @@ def schmucker_ambient(exit_pressure: Values, exit_mach: Values) -> Array:
     -----
     pa = pe (1.88 Me - 1)^0.64, the criterion solved for pa.
 
-    Source: Schmucker (1973).
+    Source
+    ------
+    Schmucker (1973).
 
     Examples
     --------
@@ -268,7 +280,9 @@ def lip_shock_ambient(exit_pressure: Values, exit_mach: Values, isentropic_expon
     -----
     p2 = pe (2 g Me^2 - (g - 1)) / (g + 1).
 
-    Source: NACA Report 1135, equation 93.
+    Source
+    ------
+    NACA Report 1135, equation 93.
 
     Examples
     --------
@@ -349,9 +363,9 @@ def separation_share(
         Fractional index of the first crossing of wall and separation pressure, linear in their logarithms between
         stations; NaN where the nozzle flows full; 0 where the flow would separate at the first station.
 
-    Notes
-    -----
-    Source: Criterion given.
+    Source
+    ------
+    Criterion given.
     """
     p, m = values(pressure), np.maximum(values(mach), 1.0)
     if ambient_pressure <= 0.0:
@@ -396,7 +410,9 @@ def separated_thrust(
     F = m' u + (p - pa) A at the separation point: the wall beyond it is taken to be at ambient pressure on both sides.
     The pressure there is really some per cent below ambient and recovers towards the lip: an upper estimate.
 
-    Source: conservation of momentum; the ambient-pressure wall is common practice, no source.
+    Source
+    ------
+    Conservation of momentum; the ambient-pressure wall is common practice, no source.
 
     Examples
     --------

@@ -207,7 +207,9 @@ def wall_volume(segments: Sequence[Segment], thickness: Values) -> float:
     2 pi times the integral of (r + n cos a)(1 - n k) over thickness n and wall length, a wall angle, k its rate of
     turn: exact for a shell bounded by the parallel surface.
 
-    Source: Pappus' theorem.
+    Source
+    ------
+    Pappus' theorem.
     """
     t = float(values(thickness))
     wall = quadrature(segments)

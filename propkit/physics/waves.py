@@ -35,7 +35,9 @@ def shock_mach(mach: Values, isentropic_exponent: Values) -> Array:
     -----
     M2^2 = ((g - 1) M^2 + 2) / (2 g M^2 - (g - 1)).
 
-    Source: NACA Report 1135, equation 96.
+    Source
+    ------
+    NACA Report 1135, equation 96.
 
     Examples
     --------
@@ -70,7 +72,9 @@ def shock_pressure_ratio(mach: Values, isentropic_exponent: Values) -> Array:
     -----
     p2/p1 = (2 g M^2 - (g - 1)) / (g + 1).
 
-    Source: NACA Report 1135, equation 93.
+    Source
+    ------
+    NACA Report 1135, equation 93.
 
     Examples
     --------
@@ -105,7 +109,9 @@ def shock_density_ratio(mach: Values, isentropic_exponent: Values) -> Array:
     -----
     rho2/rho1 = (g + 1) M^2 / ((g - 1) M^2 + 2).
 
-    Source: NACA Report 1135, equation 94.
+    Source
+    ------
+    NACA Report 1135, equation 94.
 
     Examples
     --------
@@ -140,7 +146,9 @@ def shock_temperature_ratio(mach: Values, isentropic_exponent: Values) -> Array:
     -----
     T2/T1 = (p2/p1) / (rho2/rho1).
 
-    Source: NACA Report 1135, equation 95.
+    Source
+    ------
+    NACA Report 1135, equation 95.
 
     Examples
     --------
@@ -174,7 +182,9 @@ def shock_stagnation_pressure_ratio(mach: Values, isentropic_exponent: Values) -
     -----
     p02/p01 = (rho2/rho1)^(g/(g - 1)) (p2/p1)^(-1/(g - 1)).
 
-    Source: NACA Report 1135, equation 99.
+    Source
+    ------
+    NACA Report 1135, equation 99.
 
     Examples
     --------
@@ -209,7 +219,9 @@ def prandtl_meyer_angle(mach: Values, isentropic_exponent: Values) -> Array:
     -----
     nu = k arctan(b/k) - arctan(b), k = sqrt((g + 1)/(g - 1)), b = sqrt(M^2 - 1).
 
-    Source: NACA Report 1135, equation 171c.
+    Source
+    ------
+    NACA Report 1135, equation 171c.
 
     Examples
     --------
@@ -245,7 +257,9 @@ def mach_from_prandtl_meyer_angle(angle: Values, isentropic_exponent: Values) ->
     -----
     Bisection in arctan(sqrt(M^2 - 1)), in which the angle rises monotonically.
 
-    Source: NACA Report 1135, equation 171c, inverted.
+    Source
+    ------
+    NACA Report 1135, equation 171c, inverted.
 
     Examples
     --------

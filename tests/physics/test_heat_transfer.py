@@ -24,6 +24,27 @@ def test_coefficient_by_hand() -> None:
     assert float(wider) == pytest.approx(10991.38712 / 2.0**4.5, rel=1e-9)
 
 
+def test_coefficient_of_a_handbook_example() -> None:
+    """A design handbook's kerosene engine, from memory (5 %): throat 24.9 in, arcs 18.68 and 4.76 in, 4.18e-6 lb/(in s),
+    0.485 Btu/(lb R), Pr 0.816, 1000 psia, c* 5660 ft/s: 0.0027 Btu/(in2 s F) before (At/A)^0.9 sigma."""
+    inch, pound, psi, foot, btu = 0.0254, 0.45359237, 6894.757293, 0.3048, 1055.05585
+    found = heat_transfer.heat_transfer_coefficient(
+        24.9 * inch,
+        0.5 * (18.68 + 4.76) * inch,
+        4.18e-6 * pound / inch,
+        0.485 * btu / pound * 1.8,
+        0.816,
+        1000.0 * psi,
+        5660.0 * foot,
+        1.0,
+        1.0,
+    )
+    assert float(found) / (btu * 1.8 / inch**2) == pytest.approx(0.0027, rel=0.05)
+    # its viscosity at 22.5 lb/lbmol and 6140 R, by the estimate it uses
+    estimate = float(heat_transfer.estimated_viscosity(0.0225, 6140.0 / 1.8))
+    assert estimate == pytest.approx(4.18e-6 * pound / inch, rel=0.05)
+
+
 def test_property_correction_by_hand() -> None:
     """Desk calculator: Tw 800 K, T0 3500 K, M 2.3, exponent 1.2: 1.2418154552; with Tw = T0 at rest 1."""
     found = heat_transfer.property_correction(800.0, 3500.0, 2.3, 1.2)
