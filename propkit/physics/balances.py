@@ -107,3 +107,18 @@ def mach(velocity: Values, sound_speed: Values) -> Array:
 def area_ratio_of_fluxes(throat_mass_flux: Values, local_mass_flux: Values) -> Array:
     """Return local area over throat area from the mass fluxes [kg/(m2 s)] by continuity."""
     return values(throat_mass_flux) / values(local_mass_flux)
+
+
+def area_ratio_of_areas(exit_area: Values, throat_area: Values) -> Array:
+    """Return exit over throat area from both areas [m2]."""
+    return values(exit_area) / values(throat_area)
+
+
+def exit_area_of_ratio(area_ratio: Values, throat_area: Values) -> Array:
+    """Return the exit area [m2] of an area ratio and a throat area [m2]."""
+    return values(area_ratio) * values(throat_area)
+
+
+def throat_area_of_exit(exit_area: Values, area_ratio: Values) -> Array:
+    """Return the throat area [m2] of an exit area [m2] and an area ratio."""
+    return values(exit_area) / values(area_ratio)

@@ -193,6 +193,27 @@ _LIST = (
         balances.area_ratio_of_fluxes,
         "conservation",
     ),
+    relation(
+        "area_ratio_of_areas",
+        TERMS["area_ratio"],
+        "{exit_area} / {throat_area}",
+        balances.area_ratio_of_areas,
+        "definition",
+    ),
+    relation(
+        "exit_area_of_ratio",
+        TERMS["exit_area"],
+        "{area_ratio} * {throat_area}",
+        balances.exit_area_of_ratio,
+        "definition",
+    ),
+    relation(
+        "throat_area_of_exit",
+        TERMS["throat_area"],
+        "{exit_area} / {area_ratio}",
+        balances.throat_area_of_exit,
+        "definition",
+    ),
     relation("circle_area", TERMS["area"], "pi / 4 * {diameter} ** 2", thrust.circle_area, "definition"),
     relation("circle_diameter", TERMS["diameter"], "sqrt(4 / pi * {area})", thrust.circle_diameter, "definition"),
     relation(
