@@ -163,7 +163,9 @@ def solve(
     b = np.atleast_2d(values(elements))
     given, wanted = _given(temperature, enthalpy, entropy)
     if b.shape[1] != len(table.elements):
-        raise InputError(f"`elements` has {b.shape[1]} columns; the table has the elements {', '.join(table.elements)}.")
+        raise InputError(
+            f"`elements` has {b.shape[1]} columns; the table has the elements {', '.join(table.elements)}."
+        )
     p, target = (np.array(np.broadcast_to(values(part), b.shape[0])) for part in (pressure, wanted))
     require(p > 0.0, "pressure", p, "above 0")
     require(b >= 0.0, "elements", b, "0 or more")
@@ -245,7 +247,14 @@ def _patterns(present: npt.NDArray[np.bool_]) -> list[tuple[Integers, npt.NDArra
     return [(np.flatnonzero(inverse.ravel() == number), pattern) for number, pattern in enumerate(patterns)]
 
 
-def _warm(start: Unknowns, guess: EquilibriumState, block: Integers, species: Integers, mask: npt.NDArray[np.bool_], given: Given) -> None:
+def _warm(
+    start: Unknowns,
+    guess: EquilibriumState,
+    block: Integers,
+    species: Integers,
+    mask: npt.NDArray[np.bool_],
+    given: Given,
+) -> None:
     """Overwrite a cold start with a state nearby, where that state is a solution; the pressure stays."""
     good = np.flatnonzero((guess.status[block] == CONVERGED) & np.isfinite(guess.temperature[block]))
     if not good.size:
@@ -279,6 +288,7 @@ def _retry(problem: Problem, pressure: Array, outcome: Outcome) -> npt.NDArray[n
 
 def _empty(count: int, table: SpeciesTable) -> EquilibriumState:
     """Return a batch of `count` states without numbers."""
+
     def blank() -> Array:
         return np.full(count, np.nan)
 
@@ -291,7 +301,15 @@ def _empty(count: int, table: SpeciesTable) -> EquilibriumState:
     return state
 
 
-def _fill(state: EquilibriumState, block: Integers, species: Integers, mask: npt.NDArray[np.bool_], problem: Problem, outcome: Outcome, outside: npt.NDArray[np.bool_]) -> None:
+def _fill(
+    state: EquilibriumState,
+    block: Integers,
+    species: Integers,
+    mask: npt.NDArray[np.bool_],
+    problem: Problem,
+    outcome: Outcome,
+    outside: npt.NDArray[np.bool_],
+) -> None:
     """Write the outcome of a block into the states."""
     x, table = outcome.unknowns, problem.table
     gas = table.gas_count

@@ -276,7 +276,18 @@ def evaluate(problem: Problem, elements: Array, x: Unknowns) -> Sums:
     shortfall[:, :last] = elements - matrix[:, :last, last]
     shortfall[:, last] = moles - total
     enthalpy = matrix[:, size, last].copy()
-    sums = Sums(matrix, shortfall, correction, h, q, moles, enthalpy, enthalpy - _dot(n, mu), heat_capacity, np.abs(nq).sum(axis=1) / moles)
+    sums = Sums(
+        matrix,
+        shortfall,
+        correction,
+        h,
+        q,
+        moles,
+        enthalpy,
+        enthalpy - _dot(n, mu),
+        heat_capacity,
+        np.abs(nq).sum(axis=1) / moles,
+    )
     if slots:
         _add_slots(problem.table, every, x, sums, size)
     matrix[:, size, size] += sums.heat_capacity
@@ -384,7 +395,9 @@ def iterate(problem: Problem, start: Unknowns, iterations: int = ITERATIONS) -> 
         done = (residual <= TOLERANCE) | ((residual <= _STALLED_TOLERANCE) & (residual >= 0.5 * before))
         leaving = np.ones_like(done) if step == iterations else done | ~np.isfinite(residual)
         if leaving.any():
-            _store(out, number[leaving], x.take(leaving), sums, solution, leaving, done[leaving], residual[leaving], step)
+            _store(
+                out, number[leaving], x.take(leaving), sums, solution, leaving, done[leaving], residual[leaving], step
+            )
             if leaving.all():
                 break
             keep = ~leaving
@@ -424,7 +437,9 @@ def _solve(problem: Problem, sums: Sums, x: Unknowns, target: Array) -> tuple[Ar
     return solution, energy
 
 
-def _flow(condition: FlowCondition, sums: Sums, x: Unknowns, solution: Array, energy: Array, number: Integers) -> tuple[Array, Array]:
+def _flow(
+    condition: FlowCondition, sums: Sums, x: Unknowns, solution: Array, energy: Array, number: Integers
+) -> tuple[Array, Array]:
     """Return the residual of the flow condition and the step in ln p that removes it."""
     last = x.potentials.shape[1]
     heat = energy + _dot(x.potentials, sums.shortfall[:, :last]) + sums.shortfall[:, last]
@@ -440,7 +455,9 @@ def _flow(condition: FlowCondition, sums: Sums, x: Unknowns, solution: Array, en
     return residual, np.clip(-residual / slope, -_PRESSURE_STEP, _PRESSURE_STEP)
 
 
-def _advance(problem: Problem, x: Unknowns, sums: Sums, solution: Array, pressure_step: Array | None, bounds: Array) -> None:
+def _advance(
+    problem: Problem, x: Unknowns, sums: Sums, solution: Array, pressure_step: Array | None, bounds: Array
+) -> None:
     """Take the step, shortened where it is too long; changes `x`."""
     last = x.potentials.shape[1]
     step = solution[:, :, 0]
@@ -461,14 +478,29 @@ def _advance(problem: Problem, x: Unknowns, sums: Sums, solution: Array, pressur
     x.potentials += factor[:, None] * step[:, :last]
     x.log_moles += factor * dlnn
     x.log_temperature += factor * dlnt
-    np.clip(x.log_temperature, np.log(LOWEST_TEMPERATURE), np.log(problem.table.temperature_high.max()), out=x.log_temperature)
+    np.clip(
+        x.log_temperature,
+        np.log(LOWEST_TEMPERATURE),
+        np.log(problem.table.temperature_high.max()),
+        out=x.log_temperature,
+    )
     if pressure_step is not None:
         x.log_pressure += factor * pressure_step
     if x.slots.shape[1]:
         x.slot_amounts += factor[:, None] * step[:, last + 2 :]
 
 
-def _store(out: Outcome, rows: Integers, x: Unknowns, sums: Sums, solution: Array, chosen: Any, done: Any, residual: Array, step: int) -> None:
+def _store(
+    out: Outcome,
+    rows: Integers,
+    x: Unknowns,
+    sums: Sums,
+    solution: Array,
+    chosen: Any,
+    done: Any,
+    residual: Array,
+    step: int,
+) -> None:
     """Keep the end of the cases that leave the batch; the gas of a converged case is put exactly at equilibrium."""
     last = x.potentials.shape[1]
     x.log_amounts[done] -= sums.distance[chosen][done]

@@ -94,7 +94,9 @@ def search(problem: Problem, pressure: Array, slots: int = 0) -> tuple[Outcome, 
     return outcome, outside
 
 
-def _level(problem: Problem, pressure: Array, log_temperature: Array, slots: int) -> tuple[Array, npt.NDArray[np.bool_]]:
+def _level(
+    problem: Problem, pressure: Array, log_temperature: Array, slots: int
+) -> tuple[Array, npt.NDArray[np.bool_]]:
     """Return h [J/kg] or s [J/(kg K)] at a temperature, and where that was solved."""
     fixed = replace(problem, given="temperature", target=np.exp(log_temperature))
     outcome = iterate(fixed, cold_start(fixed, pressure, slots))

@@ -1,0 +1,130 @@
+"""Flow in chemical equilibrium everywhere: throat and area ratio found inside the equilibrium iteration itself.
+
+The pressure is one more unknown of each Newton step. The step at constant pressure leads to the isentrope, the response
+to pressure at constant entropy leads along it, and the flow condition says how far.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import Final
+
+import numpy as np
+
+from propkit.constants import GAS_CONSTANT
+from propkit.physics import gas_dynamics
+from propkit.physics.arrays import Array
+from propkit.physics.equilibrium import EquilibriumState, solve_batch
+from propkit.physics.equilibrium_newton import FlowCondition, FlowTrial, Integers
+from propkit.physics.expansion_state import FlowState, choose, take_cases, velocity
+from propkit.physics.thermodynamics import SpeciesTable
+
+_LOWEST_EXPONENT: Final = 1.02
+_SMALLEST_HEAD: Final = 1e-12
+"""Smallest share of R T0 / M that the kinetic energy is taken to be while the iteration runs."""
+
+_AT_THROAT: Final = 1e-12
+"""ln of the area ratio below which the throat itself is meant."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Shifting:
+    """The isentrope of a gas in equilibrium everywhere.
+
+    Parameters
+    ----------
+    table : SpeciesTable
+        The species.
+    elements : array
+        Moles of atoms in a kilogram [mol/kg], shape (case, element).
+    enthalpy, entropy, pressure : array
+        h0 [J/kg], s [J/(kg K)], p0 [Pa] of the gas at rest.
+    reservoir : EquilibriumState
+        The gas at rest.
+    """
+
+    table: SpeciesTable
+    elements: Array
+    enthalpy: Array
+    entropy: Array
+    pressure: Array
+    reservoir: EquilibriumState
+
+    def take(self, rows: Integers) -> Shifting:
+        """Return some cases as a smaller batch."""
+        return take_cases(self, rows)
+
+    def at_pressure(self, pressure: Array, near: FlowState | None = None) -> FlowState:
+        """Return the state at a pressure [Pa]."""
+        known = self.reservoir if near is None or near.equilibrium is None else near.equilibrium
+        return self._state(self._solve(pressure, known, None))
+
+    def throat(self) -> FlowState:
+        """Return the state of largest mass flux: Mach 1 with the composition following."""
+        gamma = np.maximum(self.reservoir.isentropic_exponent, _LOWEST_EXPONENT)
+        pressure = self.pressure * gas_dynamics.pressure_ratio(1.0, gamma)
+        return self._state(self._solve(pressure, self.reservoir, self._sonic))
+
+    def at_mass_flux(self, mass_flux: Array, at_throat: FlowState, supersonic: bool) -> FlowState:
+        """Return the state at a mass flux [kg/(m2 s)] on one side of the throat."""
+        ratio = at_throat.mass_flux / mass_flux
+        gamma = np.maximum(at_throat.isentropic_exponent, _LOWEST_EXPONENT)
+        usable = np.where(np.isfinite(ratio) & (ratio >= 1.0), ratio, 1.0)
+        mach = gas_dynamics.mach_from_area_ratio(usable, gamma, "supersonic" if supersonic else "subsonic")
+        fall = gas_dynamics.pressure_ratio(mach, gamma) / gas_dynamics.pressure_ratio(1.0, gamma)
+        if supersonic:
+            pressure = at_throat.pressure * fall
+        else:
+            pressure = np.minimum(at_throat.pressure * fall, self.pressure * (1.0 - 1e-9))
+        known = at_throat.equilibrium if at_throat.equilibrium is not None else self.reservoir
+        goal = np.log(mass_flux)
+
+        def condition(trial: FlowTrial, number: Integers) -> tuple[Array, Array]:
+            return self._flux(trial, number, goal[number])
+
+        found = self._state(self._solve(pressure, known, condition))
+        return choose(found, at_throat, np.abs(np.log(ratio)) < _AT_THROAT)
+
+    def _solve(self, pressure: Array, near: EquilibriumState, condition: FlowCondition | None) -> EquilibriumState:
+        exponent = np.maximum(near.isentropic_exponent, _LOWEST_EXPONENT)
+        with np.errstate(invalid="ignore"):
+            temperature = near.temperature * (pressure / near.pressure) ** ((exponent - 1.0) / exponent)
+        guess = replace(near, temperature=temperature)
+        return solve_batch(self.table, self.elements, pressure, "entropy", self.entropy, guess, condition)
+
+    def _kinetic(self, trial: FlowTrial, number: Integers) -> tuple[Array, Array]:
+        """Return u^2 and R T / M of a trial [m2/s2]."""
+        thermal = GAS_CONSTANT * np.exp(trial.log_moles + trial.log_temperature)
+        square = 2.0 * (self.enthalpy[number] - trial.enthalpy)
+        return np.maximum(square, _SMALLEST_HEAD * thermal), thermal
+
+    def _sonic(self, trial: FlowTrial, number: Integers) -> tuple[Array, Array]:
+        """Return ln M^2 and its slope, the change of the isentropic exponent left out of the slope."""
+        square, thermal = self._kinetic(trial, number)
+        turning = trial.moles_slope + trial.temperature_slope
+        return np.log(square * (1.0 - turning) / thermal), -2.0 * thermal / square - turning
+
+    def _flux(self, trial: FlowTrial, number: Integers, goal: Array) -> tuple[Array, Array]:
+        """Return ln of the mass flux over the wanted one, and its slope 1/gamma - R T / (M u^2)."""
+        square, thermal = self._kinetic(trial, number)
+        log_density = trial.log_pressure + np.log(self.table.reference_pressure / thermal)
+        turning = trial.moles_slope + trial.temperature_slope
+        return log_density + 0.5 * np.log(square) - goal, 1.0 - turning - thermal / square
+
+    def _state(self, found: EquilibriumState) -> FlowState:
+        return FlowState(
+            pressure=found.pressure,
+            temperature=found.temperature,
+            density=found.density,
+            velocity=velocity(self.enthalpy, found.enthalpy),
+            sound_speed=found.sound_speed,
+            molar_mass=found.molar_mass,
+            isentropic_exponent=found.isentropic_exponent,
+            enthalpy=found.enthalpy,
+            entropy=found.entropy,
+            status=found.status,
+            iterations=found.iterations,
+            residual=found.residual,
+            amounts=found.amounts,
+            equilibrium=found,
+        )
