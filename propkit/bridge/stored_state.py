@@ -18,6 +18,7 @@ _NEAR_SATURATION = 5e-3
 _VANISHING_PRESSURE = 1.0
 _IDEAL_UP_TO = 5e5
 _TROUTON = 88.0
+_EXTRAPOLATED = 1.5
 _SAME_TEMPERATURE = 1e-9
 
 
@@ -157,11 +158,7 @@ def _reference_enthalpy(fluid: Any, row: PropellantRow) -> float:
 def _from_coolprop(row: PropellantRow, at: float, pressure: float | None) -> StoredState:
     fluid = open_fluid(row)
     reference = _reference_enthalpy(fluid, row)
-    if at > fluid.Tmax():
-        raise RangeError(
-            f"{row.name} has no fluid state at {at:g} K: CoolProp has it up to {fluid.Tmax():g} K.", temperature=at
-        )
-    warnings: list[str] = []
+    warnings = _hot_limit(row, at, float(fluid.Tmax()))
     if row.freezing_point is not None and at < row.freezing_point - 0.01:
         warnings.append(
             f"{row.name} at {at:g} K is below its freezing point ({row.freezing_point:g} K): the value is that of the "
@@ -180,6 +177,17 @@ def _from_coolprop(row: PropellantRow, at: float, pressure: float | None) -> Sto
     kind = "ideal gas of CoolProp" if ideal else "CoolProp"
     source = f"{kind}, {row.coolprop_fluid}: enthalpy from {row.state_text} to {at:g} K and {taken / 1e5:.4g} bar"
     return StoredState(at, taken, change, density, phase, tuple(warnings), source)
+
+
+def _hot_limit(row: PropellantRow, at: float, highest: float) -> list[str]:
+    """Return a warning above the range of the equation of state; refuse what is far above it."""
+    if at > _EXTRAPOLATED * highest:
+        raise RangeError(
+            f"{row.name} has no fluid state at {at:g} K: CoolProp has it up to {highest:g} K.", temperature=at
+        )
+    if at > highest:
+        return [f"{row.name} at {at:g} K is above the range of its equation of state ({highest:g} K): extrapolated."]
+    return []
 
 
 def _pressure_taken(
@@ -341,7 +349,7 @@ def _from_ingredients(row: PropellantRow, at: float, pressure: float | None) -> 
             volume_ratio += share / end.density if row.density is None else share * start.density / end.density
         else:
             volume_ratio = math.nan
-        warnings += [text for text in end.warnings if "range of its specific heat" in text]
+        warnings += [text for text in end.warnings if "specific heat" in text]
     if row.phase == "gas":
         density: float | None = taken * row.molar_mass / (GAS_CONSTANT * at)
         if taken > _IDEAL_UP_TO:
@@ -381,5 +389,7 @@ def _ingredient(row: PropellantRow, part: PropellantRow, at: float, pressure: fl
             _update(fluid, part, "QT_INPUTS", 0.0, at, at, pressure)
             pressure = max(pressure, float(fluid.p()) * (1.0 + 2.0 * _NEAR_SATURATION))
     if part.coolprop_fluid is None and part.heat_capacity is None and not part.components:
-        return StoredState(at, pressure, 0.0, part.density, part.phase, (), "no specific heat: unchanged")
+        moved = abs(at - part.temperature) > 0.02
+        text = f"No specific heat of {part.name} is known: its share of the enthalpy is left as it is."
+        return StoredState(at, pressure, 0.0, part.density, part.phase, (text,) if moved else (), "unchanged")
     return stored_state(part, at, pressure)

@@ -1,5 +1,7 @@
 """Stored states: enthalpy change, density, phase and warnings."""
 
+import contextlib
+import itertools
 import subprocess
 import sys
 from dataclasses import replace
@@ -275,3 +277,40 @@ def test_peroxide_solution_heat_capacity():
     """90 % peroxide: about 2.77 kJ/(kg K) near room temperature (mass-weighted; 2.7 to 2.8 from memory)."""
     warm = state("HTP-90", 308.15)
     assert warm.enthalpy_change / ROWS["HTP-90"].molar_mass / 10.0 == pytest.approx(2770.0, rel=0.02)
+
+
+def test_an_ingredient_without_a_specific_heat_is_told():
+    import propkit as pk
+
+    made = pk.blend({"RDX": 0.5, "HTPB": 0.5})
+    assert any("No specific heat of RDX is known" in text for text in made.stream(310.0)[1])
+    assert made.stream()[1] == ()
+
+
+# ---- over the whole range -------------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize("pressure", [1e5, 5e6, 3e7])
+@pytest.mark.parametrize("name", FLUIDS)
+def test_enthalpy_rises_with_temperature(name, pressure):
+    """Heat capacities are positive, through boiling as well; density is positive and a state is one of four phases."""
+    row = ROWS[name]
+    low = max(row.freezing_point * 1.08, 15.0)
+    temperatures = [low + (520.0 - low) * step / 40 for step in range(41)]
+    states = []
+    for temperature in temperatures:
+        with contextlib.suppress(RangeError):  # solid under pressure, or below the range: refused, never wrong
+            states.append(state(name, temperature, pressure))
+    assert len(states) >= 30
+    changes = [found.enthalpy_change for found in states]
+    assert all(later > sooner for sooner, later in itertools.pairwise(changes))
+    assert all(found.density > 0.0 for found in states)
+    assert {found.phase for found in states} <= {"liquid", "gas", "supercritical"}
+    crossed = [any("the library row is" in text for text in found.warnings) for found in states]
+    assert all(warned == (found.phase != row.phase) for warned, found in zip(crossed, states, strict=True))
+
+
+def test_above_the_range_of_the_equation_of_state():
+    assert "extrapolated" in state("ethylene", 500.0, 5e6).warnings[0]
+    with pytest.raises(RangeError, match="CoolProp has it up to 450 K"):
+        state("ethylene", 700.0, 5e6)
