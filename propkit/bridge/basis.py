@@ -294,7 +294,7 @@ def _updated(records: tuple[_Record, ...]) -> tuple[_Record, ...]:
             changed.append(record)
             continue
         shift = updates[record.key] / GAS_CONSTANT - reference_enthalpy(record)
-        low, high = (part[:5] + (part[5] + shift,) + part[6:] for part in (record.low, record.high))
+        low, high = ((*part[:5], part[5] + shift, *part[6:]) for part in (record.low, record.high))
         changed.append(replace(record, low=low, high=high))
     return tuple(changed)
 

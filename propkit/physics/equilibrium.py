@@ -114,6 +114,14 @@ class EquilibriumState:
         return EquilibriumState(*(getattr(self, part.name)[rows] for part in fields(self)))
 
 
+def choose(first: EquilibriumState, second: EquilibriumState, where: npt.NDArray[np.bool_]) -> EquilibriumState:
+    """Return `first` with the cases of `where` taken from `second`."""
+    pairs = ((getattr(first, part.name), getattr(second, part.name)) for part in fields(EquilibriumState))
+    return EquilibriumState(
+        *(np.where(where if mine.ndim == 1 else where[:, None], theirs, mine) for mine, theirs in pairs)
+    )
+
+
 def solve(
     table: SpeciesTable,
     elements: Values,
