@@ -16,14 +16,13 @@ import numpy as np
 import numpy.typing as npt
 
 from propkit.errors import ConvergenceError, InputError, Problem
+from propkit.study.coverage import Stability, statistics, tolerance
+from propkit.study.differences import Evaluate, stencil
 from propkit.study.executors import BlockRun, run_blocks
 from propkit.study.joint import JointInputs, Reach, check_seed
 
 Array = npt.NDArray[np.float64]
-Evaluate = Callable[[dict[str, Array]], Mapping[str, Array]]
 
-COVERAGE = 0.95
-"""Coverage probability of the intervals."""
 BLOCK = 2500
 """Trials in one block."""
 ADAPTIVE_ROUND = 10_000
@@ -72,27 +71,6 @@ class FirstOrder:
         share = np.abs(self.shares) > 0.01
         found = np.argwhere((self.curvature > 0.1) & share)
         return tuple((self.results[i], self.paths[j]) for i, j in found)
-
-
-@dataclass(frozen=True, slots=True)
-class Stability:
-    """What an adaptive run reached for one result.
-
-    Parameters
-    ----------
-    tolerance : float
-        Numerical tolerance: half a unit of the last significant digit asked of the standard uncertainty.
-    reached : float
-        Twice the largest standard deviation among the averages of value, uncertainty and both ends of the interval.
-    """
-
-    tolerance: float
-    reached: float
-
-    @property
-    def stable(self) -> bool:
-        """Whether the result is stabilised in the sense of clause 7.9."""
-        return self.reached <= self.tolerance
 
 
 @dataclass(frozen=True, slots=True)
@@ -173,8 +151,12 @@ def first_order(
 
     Source: JCGM 100:2008, 5.1.2 equation (10) and 5.2.2 equation (13).
     """
-    points, weights, second = _stencil(inputs)
-    answers = {name: np.asarray(values, dtype=np.float64) for name, values in evaluate(points).items()}
+    limits = np.array([inputs.bounds.get(path, (-math.inf, math.inf)) for path in inputs.paths])
+    deviations = inputs.deviations
+    around = stencil(np.array(list(inputs.nominal.values())), deviations, limits[:, 0], limits[:, 1])
+    answers = {
+        name: np.asarray(values, dtype=np.float64) for name, values in evaluate(around.inputs(inputs.paths)).items()
+    }
     results = tuple(answers)
     table = np.array([answers[name] for name in results])
     bad = [name for name, row in zip(results, table, strict=True) if not np.isfinite(row).all()]
@@ -184,11 +166,7 @@ def first_order(
             "use a smaller uncertainty, or trials (samples=...), which count such cases",
             results=tuple(bad),
         )
-    deviations = inputs.deviations
-    slopes = np.einsum("rps,ps->rp", table[:, 1:].reshape(len(results), len(deviations), -1), weights)
-    slopes += table[:, :1] * (-weights.sum(axis=1))[None, :]
-    bends = np.einsum("rps,ps->rp", table[:, 1:].reshape(len(results), len(deviations), -1), second)
-    bends += table[:, :1] * (-second.sum(axis=1))[None, :]
+    slopes, bends = around.slopes(table), around.bends(table)
     for place, name in enumerate(results):
         for path, value in (derivatives or {}).get(name, {}).items():
             slopes[place, inputs.paths.index(path)] = value
@@ -201,32 +179,6 @@ def first_order(
     bent = 0.5 * np.abs(bends) * deviations**2
     curvature = np.divide(bent, effect, out=np.zeros_like(bent), where=effect > 0.0)
     return FirstOrder(inputs.paths, results, table[:, 0], slopes, covariance, shares, curvature)
-
-
-def _stencil(inputs: JointInputs) -> tuple[dict[str, Array], Array, Array]:
-    """Return the points of the differences (nominal first), and weights of the first and second derivative."""
-    nominal = np.array(list(inputs.nominal.values()))
-    deviations = inputs.deviations
-    count = len(nominal)
-    points = np.tile(nominal, (1 + 4 * count, 1))
-    first, second = np.zeros((count, 4)), np.zeros((count, 4))
-    for place, path in enumerate(inputs.paths):
-        low, high = inputs.bounds.get(path, (-math.inf, math.inf))
-        below, above = nominal[place] - low, high - nominal[place]
-        step = deviations[place]
-        if min(below, above) >= 0.01 * step:
-            step = min(step, below, above)
-            offsets = np.array([-step, -0.5 * step, 0.5 * step, step])
-            first[place] = np.array([1.0, -8.0, 8.0, -1.0]) / (6.0 * step)
-            second[place] = np.array([-1.0, 16.0, 16.0, -1.0]) / (3.0 * step**2)
-        else:
-            step = math.copysign(min(step, max(below, above)), above - below)
-            offsets = step * np.array([0.25, 0.5, 0.75, 1.0])
-            first[place] = np.array([16.0, -12.0, 16.0 / 3.0, -1.0]) / step
-            second[place] = np.array([-416.0 / 3.0, 152.0, -224.0 / 3.0, 44.0 / 3.0]) / step**2
-        rows = slice(1 + 4 * place, 5 + 4 * place)
-        points[rows, place] = nominal[place] + offsets
-    return {path: points[:, place].copy() for place, path in enumerate(inputs.paths)}, first, second
 
 
 def monte_carlo(
@@ -369,9 +321,9 @@ class _Run:
         if len(self.rounds) < 2 or self.stopped:
             return ()
         ends = np.cumsum([0, *self.rounds])
-        parts = np.array([_statistics(self.values[:, low:high]) for low, high in pairwise(ends)])
+        parts = np.array([statistics(self.values[:, low:high]) for low, high in pairwise(ends)])
         scatter = parts.std(axis=0, ddof=1) / math.sqrt(len(parts))
-        whole = _statistics(self.values)[1]
+        whole = statistics(self.values)[1]
         return tuple(
             Stability(tolerance(float(u)), float(2.0 * scatter[:, place].max())) for place, u in enumerate(whole)
         )
@@ -386,7 +338,7 @@ class _Run:
                     "the run was interrupted before its first block ended: there is nothing to show", samples=samples
                 )
             raise ConvergenceError(f"only {count} of {samples} trials have a solution", samples=samples, valid=count)
-        mean, deviation, low, high = _statistics(self.values)
+        mean, deviation, low, high = statistics(self.values)
         reach = self.inputs.reach(self.seed, [size for entry in self.rounds for size in self.sizes(entry)])
         notes = [*self.notes, *map(str, reach)]
         failed = samples - count - self.illegal
@@ -451,79 +403,3 @@ def _checked_samples(samples: object, most: int) -> int:
     if isinstance(samples, bool) or not isinstance(samples, int | np.integer) or samples < 100:
         raise InputError(Problem("samples", repr(samples), "'adaptive' or an integer of at least 100"))
     return int(samples)
-
-
-def _statistics(values: Array) -> Array:
-    """Return mean, standard deviation and both ends of the interval of each row, over its valid columns."""
-    good = values[:, np.isfinite(values).all(axis=0)]
-    count = good.shape[1]
-    low, high = interval_ranks(count)
-    ordered = np.sort(good, axis=1)
-    # deviations from the first trial keep the digits of results whose spread is small
-    shifted = good - good[:, :1]
-    statistics: Array = np.array(
-        [
-            good[:, 0] + shifted.mean(axis=1),
-            shifted.std(axis=1, ddof=1),
-            ordered[:, low],
-            ordered[:, high],
-        ]
-    )
-    return statistics
-
-
-def interval_ranks(count: int, coverage: float = COVERAGE) -> tuple[int, int]:
-    """Return the places (from 0) of the ends of the probabilistically symmetric interval in ordered trials.
-
-    Parameters
-    ----------
-    count : int
-        Number of trials, at least 2.
-    coverage : float
-        Coverage probability [1].
-
-    Returns
-    -------
-    tuple of int
-        Places of the low and the high end.
-
-    Notes
-    -----
-    q = pM where that is whole, else its integer part after adding 1/2; r = (M - q)/2 where whole, else the integer
-    part of (M - q + 1)/2; the interval runs from the r-th to the (r + q)-th ordered value.
-
-    Source: JCGM 101:2008, 7.7.1 and 7.7.2.
-    """
-    product = coverage * count
-    held = round(product) if abs(product - round(product)) < 1e-9 * count else int(product + 0.5)
-    rest = count - held
-    start = rest // 2 if rest % 2 == 0 else (rest + 1) // 2
-    low = max(start, 1) - 1
-    return low, min(low + held, count - 1)
-
-
-def tolerance(uncertainty: float, digits: int = 1) -> float:
-    """Return the numerical tolerance of a standard uncertainty: half a unit of its last significant digit.
-
-    Parameters
-    ----------
-    uncertainty : float
-        Standard uncertainty, any unit.
-    digits : int
-        Significant digits that count.
-
-    Returns
-    -------
-    float
-        Tolerance in the same unit; 0 for no uncertainty.
-
-    Notes
-    -----
-    Source: JCGM 101:2008, 7.9.2.
-    """
-    if not uncertainty > 0.0:
-        return 0.0
-    exponent = math.floor(math.log10(uncertainty)) - (digits - 1)
-    if round(uncertainty / 10.0**exponent) >= 10**digits:
-        exponent += 1
-    return 0.5 * 10.0**exponent

@@ -10,9 +10,10 @@ import numpy as np
 import numpy.typing as npt
 
 from propkit.errors import ConvergenceError, InputError, MissingExtraError, Problem
+from propkit.study.differences import Evaluate
 from propkit.study.executors import run_blocks
 from propkit.study.joint import JointInputs, check_seed
-from propkit.study.propagation import BLOCK, Evaluate
+from propkit.study.propagation import BLOCK
 
 Array = npt.NDArray[np.float64]
 

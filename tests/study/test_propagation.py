@@ -12,9 +12,10 @@ from scipy import stats
 from uncertainties import umath
 
 from propkit.errors import ConvergenceError, InputError
+from propkit.study.coverage import interval_ranks, tolerance
 from propkit.study.distributions import Normal, Triangular, Uniform
 from propkit.study.joint import JointInputs
-from propkit.study.propagation import first_order, interval_ranks, monte_carlo, tolerance
+from propkit.study.propagation import first_order, monte_carlo
 from propkit.study.rounding import rounded
 
 
