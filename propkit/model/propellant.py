@@ -246,7 +246,7 @@ class Propellant(Calculation):
         Returns
         -------
         Stream, tuple of str
-            Atoms [mol/kg], enthalpy [J/kg], density [kg/m3]; warnings.
+            Atoms [mol/kg], enthalpy [J/kg], density [kg/m3]; warnings of the propellant and of the stored state.
 
         Raises
         ------
@@ -258,7 +258,7 @@ class Propellant(Calculation):
         atoms = {symbol: count / row.molar_mass for symbol, count in row.element_counts}
         enthalpy = row.specific_enthalpy + state.enthalpy_change / row.molar_mass
         density = float("nan") if state.density is None else state.density
-        return Stream(atoms, enthalpy, density), state.warnings
+        return Stream(atoms, enthalpy, density), (*(str(doubt) for doubt in self.warnings), *state.warnings)
 
     def attribute(self, name: str) -> Any:
         """Return what reading `name` gives: a fresh quantity, a float or a text; None where the data have none."""

@@ -284,7 +284,7 @@ def test_an_ingredient_without_a_specific_heat_is_told():
 
     made = pk.blend({"RDX": 0.5, "HTPB": 0.5})
     assert any("No specific heat of RDX is known" in text for text in made.stream(310.0)[1])
-    assert made.stream()[1] == ()
+    assert not any("specific heat" in text for text in made.stream()[1])
 
 
 # ---- over the whole range -------------------------------------------------------------------------------------------

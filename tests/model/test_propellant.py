@@ -255,6 +255,13 @@ def test_stream_is_per_kilogram():
     assert sum(weights[symbol] * amount for symbol, amount in stream.elements.items()) == pytest.approx(1.0, rel=1e-12)
 
 
+def test_doubts_travel_into_the_case():
+    case = pk.PropellantCase("LOX", "HTPB", mixture_ratio=2.4)
+    assert any("an estimate or its sources disagree" in text for text in case.warnings)
+    blended = pk.PropellantCase("LOX", {"ethanol": 0.9, "water": 0.1}, mixture_ratio=1.4)
+    assert any("Heat of mixing neglected" in text for text in blended.warnings)
+
+
 def test_doubts_travel():
     assert "an estimate or its sources disagree" in pk.Propellant.from_library("HTPB").warnings[0]
     assert pk.Propellant.from_library("LOX").warnings == ()
