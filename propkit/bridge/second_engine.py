@@ -212,7 +212,7 @@ class _Solver:
             "pressure": float(gas.P),
             "temperature": t,
             "density": float(gas.density),
-            "velocity": speed if gas.P < self.p0 * (1.0 - 1e-12) else 0.0,
+            "velocity": speed if self.p0 * (1.0 - 1e-12) > gas.P else 0.0,
             "molar_mass": float(gas.mean_molecular_weight) * 1e-3,
             "enthalpy": float(gas.h),
             "entropy": float(gas.s),
