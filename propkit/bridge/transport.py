@@ -28,9 +28,11 @@ SOURCE: Final = (
 _OTHER_NAMES: Final = {
     "Ar": "AR",
     "C2H2 (acetylene)": "C2H2",
+    "C2H3 (vinyl)": "C2H3",
     "C3H7 (n-propyl)": "C3H7",
     "C3H7 (i-propyl)": "C3H7",
     "CH2CO (ketene)": "CH2CO",
+    "CHCO (ketyl)": "HCCO",
     "CH3CHO (ethanal)": "CH3CHO",
     "HCHO (formaldehyde)": "CH2O",
 }
@@ -49,6 +51,7 @@ _NUMBERS: Final = (
 """The numbers of one species' transport data, as Cantera names them, SI units."""
 
 _TRACE: Final = 1e-9
+"""Mole fraction below which a species is passed over."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -128,7 +131,7 @@ def mixture_transport(
     Cantera; GRI-Mech 3.0 transport data; 2 % and 10 % are limits of this toolkit.
     """
     total = _checked_total(temperature, pressure, mole_fractions)
-    shares = {key: share / total for key, share in mole_fractions.items() if share > 0.0}
+    shares = {key: float(share) / total for key, share in mole_fractions.items() if share > _TRACE * total}
     missing = {key: share for key, share in shares.items() if _name(key) not in _parameters()}
     left_out = sum(missing.values())
     ordered = tuple(sorted(missing, key=lambda key: -missing[key]))
@@ -140,7 +143,7 @@ def mixture_transport(
             left_out=left_out,
             species=ordered,
         )
-    kept = {key: share for key, share in shares.items() if key not in missing and share > _TRACE}
+    kept = {key: share for key, share in shares.items() if key not in missing}
     phase = _phase(tuple(kept), thermo_basis)
     phase.TPX = temperature, pressure, kept
     viscosity, conductivity, heat = float(phase.viscosity), float(phase.thermal_conductivity), float(phase.cp_mass)

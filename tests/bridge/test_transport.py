@@ -70,6 +70,8 @@ def test_pressure_and_scale_do_not_matter() -> None:
 def test_other_spellings_are_known() -> None:
     mixed = transport.mixture_transport(1500.0, 1e6, {"H2": 0.7, "C2H2 (acetylene)": 0.2, "HCHO (formaldehyde)": 0.1})
     assert mixed.left_out == 0.0
+    for key in transport._OTHER_NAMES:
+        assert transport.mixture_transport(1500.0, 1e6, {"H2": 0.5, key: 0.5}).left_out == 0.0, key
     with pytest.raises(NotAvailableError, match="vinylidene"):
         transport.mixture_transport(1500.0, 1e6, {"H2": 0.7, "C2H2 (vinylidene)": 0.3})
 
