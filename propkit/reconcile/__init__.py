@@ -1,0 +1,1 @@
+"""Reconciliation: figures and measurements that must agree with each other."""
