@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -106,6 +106,7 @@ def combust(
     if np.isfinite(ratio).any():
         return _contracted(table, mixture, p, ratio, pressure_at)
     face = equilibrium.solve(table, mixture.atoms, pressure=p, enthalpy=mixture.enthalpy)
+    face = replace(face, pressure=p)
     throat = expansion.throat(expansion.shifting(table, mixture.atoms, face))
     cstar = p / throat.mass_flux
     return Combustion(table, mixture.atoms, mixture.enthalpy, face, face, np.zeros(count), face, throat, ratio, cstar)

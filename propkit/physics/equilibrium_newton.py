@@ -143,12 +143,14 @@ class Problem:
     target: Array
     condition: FlowCondition | None = None
     bordered: Array = field(init=False)
+    atoms: Array = field(init=False)
     products: Array = field(init=False)
 
     def __post_init__(self) -> None:
         gas = self.table.gas_count
         self.bordered = np.hstack([self.table.composition[:gas], np.ones((gas, 1))])
         size = self.bordered.shape[1]
+        self.atoms = np.ascontiguousarray(self.bordered[:, :-1].T)
         self.products = (self.bordered[:, :, None] * self.bordered[:, None, :]).reshape(gas, size * size)
 
     def log_bounds(self) -> Array:
@@ -176,8 +178,8 @@ class Sums:
         What the q terms add to every row.
     gas_enthalpy, distance : array
         h/(R T) and q of each gas species.
-    moles : array
-        The variable N [mol/kg].
+    moles, total : array
+        The variable N, and the sum of the amounts [mol/kg].
     enthalpy, entropy, heat_capacity : array
         H/(R T), S/R and frozen cp/R of one kilogram [mol/kg].
     residual : array
@@ -190,6 +192,7 @@ class Sums:
     gas_enthalpy: Array
     distance: Array
     moles: Array
+    total: Array
     enthalpy: Array
     entropy: Array
     heat_capacity: Array
@@ -257,42 +260,33 @@ def evaluate(problem: Problem, elements: Array, x: Unknowns) -> Sums:
     gas, cases, size = problem.table.gas_count, x.log_moles.size, problem.bordered.shape[1]
     last, slots = size - 1, x.slots.shape[1]
     every = problem.table.properties(np.exp(x.log_temperature))
-    h, cp = every.enthalpy[:, :gas], every.heat_capacity[:, :gas]
+    cp, h, _, mu = every if not slots else (part[:, :gas] for part in every)
     n = np.exp(x.log_amounts)
-    mu = every.gibbs_energy[:, :gas] + x.log_amounts
+    mu = mu + x.log_amounts
     mu += (x.log_pressure - x.log_moles)[:, None]
-    q = mu - x.potentials @ problem.bordered[:, :last].T
+    q = mu - x.potentials @ problem.atoms
     nh, nq = n * h, n * q
-    matrix = np.zeros((cases, size + 1 + slots, size + 1 + slots))
+    width = size + 1 + slots
+    matrix, sides = np.zeros((cases, width, width)), np.zeros((2, cases, width))
+    shortfall, correction = sides
     matrix[:, :size, :size] = (n @ problem.products).reshape(cases, size, size)
     total, moles = matrix[:, last, last].copy(), np.exp(x.log_moles)
-    matrix[:, last, last] = total - moles
+    matrix[:, last, last] -= moles
     matrix[:, size, :size] = matrix[:, :size, size] = nh @ problem.bordered
     heat_capacity = _dot(n, cp)
     matrix[:, size, size] = _dot(nh, h)
-    correction, shortfall = np.zeros(matrix.shape[:2]), np.zeros(matrix.shape[:2])
     correction[:, :size] = nq @ problem.bordered
     correction[:, size] = _dot(nq, h)
     shortfall[:, :last] = elements - matrix[:, :last, last]
     shortfall[:, last] = moles - total
     enthalpy = matrix[:, size, last].copy()
-    sums = Sums(
-        matrix,
-        shortfall,
-        correction,
-        h,
-        q,
-        moles,
-        enthalpy,
-        enthalpy - _dot(n, mu),
-        heat_capacity,
-        np.abs(nq).sum(axis=1) / moles,
-    )
+    distant = np.abs(nq).sum(axis=1) / moles
+    sums = Sums(matrix, shortfall, correction, h, q, moles, total, enthalpy, enthalpy - _dot(n, mu), heat_capacity, distant)
     if slots:
         _add_slots(problem.table, every, x, sums, size)
     matrix[:, size, size] += sums.heat_capacity
     missing = np.abs(shortfall[:, :last] / elements).max(axis=1)
-    sums.residual = np.maximum(np.maximum(sums.residual, missing), np.abs(total / moles - 1.0))
+    sums.residual = np.maximum(np.maximum(sums.residual, missing), np.abs(shortfall[:, last]) / moles)
     return sums
 
 
@@ -340,14 +334,14 @@ def solve_scaled(matrix: Array, right: Array, moles: Array, elements: int) -> Ar
         Shape (case, size, columns); not finite where a system has no solution.
     """
     diagonal = np.einsum("ijj->ij", matrix)
-    scale = np.ones(matrix.shape[:2])
-    scale[:, : elements + 2] = 1.0 / np.sqrt(np.maximum(np.abs(diagonal[:, : elements + 2]), _TINY))
-    scale[:, elements] = 1.0 / np.sqrt(moles)
-    matrix *= scale[:, :, None]
-    matrix *= scale[:, None, :]
-    diagonal = np.einsum("ijj->ij", matrix)
+    scale = np.abs(diagonal)
+    scale[:, elements] = moles
+    scale[:, elements + 2 :] = 1.0
+    np.maximum(scale, _TINY, out=scale)
+    scale = 1.0 / np.sqrt(scale)
+    matrix *= scale[:, :, None] * scale[:, None, :]
     diagonal[:, :elements] += _REGULARISATION
-    bad = ~np.isfinite(matrix.reshape(matrix.shape[0], -1).sum(axis=1))
+    bad = ~np.isfinite(matrix.sum(axis=(1, 2)))
     if bad.any():
         matrix[bad] = np.eye(matrix.shape[1])
     right = right * scale[:, :, None]
@@ -391,7 +385,7 @@ def iterate(problem: Problem, start: Unknowns, iterations: int = ITERATIONS) -> 
         pressure_step = None
         if problem.condition is not None:
             flow, pressure_step = _flow(problem.condition, sums, x, solution, energy, number)
-            residual = np.maximum(residual, np.abs(flow))
+            residual = np.maximum(residual, np.minimum(np.abs(flow), np.abs(pressure_step)))
         done = (residual <= TOLERANCE) | ((residual <= _STALLED_TOLERANCE) & (residual >= 0.5 * before))
         leaving = np.ones_like(done) if step == iterations else done | ~np.isfinite(residual)
         if leaving.any():
@@ -428,9 +422,8 @@ def _solve(problem: Problem, sums: Sums, x: Unknowns, target: Array) -> tuple[Ar
         right[:, size, 0] += energy + _dot(x.potentials, sums.shortfall[:, :last]) + sums.shortfall[:, last]
     right[:, size, 1] = 1.0
     right[:, : size + 1, 2] = sums.matrix[:, last, : size + 1]
-    total = sums.matrix[:, last, last] + sums.moles
-    right[:, last, 2] = total
-    right[:, size, 2] += total
+    right[:, last, 2] = sums.total
+    right[:, size, 2] += sums.total
     solution = solve_scaled(sums.matrix, right, sums.moles, last)
     if problem.given == "temperature":
         solution[:, :, 0] -= (solution[:, size, 0] / solution[:, size, 1])[:, None] * solution[:, :, 1]

@@ -22,6 +22,9 @@ from propkit.physics.thermodynamics import SpeciesTable
 __all__ = ["FlowState", "Frozen", "FrozenFrom", "Isentrope", "PerfectGas", "Shifting", "at_area_ratio", "at_pressure",
            "frozen", "frozen_from", "perfect_gas", "shifting", "throat"]  # fmt: skip
 
+_WIDE = 10.0
+"""Subsonic area ratio above which the velocity is taken from the mass flux."""
+
 
 def shifting(table: SpeciesTable, elements: Array, reservoir: EquilibriumState) -> Shifting:
     """Return the isentrope of a gas in equilibrium everywhere.
@@ -197,7 +200,8 @@ def at_area_ratio(
 
     Notes
     -----
-    rho u A = rho* u* A*.
+    rho u A = rho* u* A*. On the subsonic side the velocity is the mass flux over the density: in a wide chamber the
+    difference of two enthalpies would leave only noise.
 
     Source: conservation of mass.
     """
@@ -206,4 +210,5 @@ def at_area_ratio(
     good = ratio >= 1.0 - 1e-12
     goal = np.broadcast_to(values(mass_flux), shape) / np.where(good, np.maximum(ratio, 1.0), 1.0)
     found = isentrope.at_mass_flux(goal, isentrope.throat() if at_throat is None else at_throat, supersonic)
-    return replace(found, status=np.where(good, found.status, OUT_OF_RANGE))
+    velocity = found.velocity if supersonic else np.where(ratio > _WIDE, goal / found.density, found.velocity)
+    return replace(found, velocity=velocity, status=np.where(good, found.status, OUT_OF_RANGE))

@@ -23,6 +23,12 @@ _LOWEST_EXPONENT: Final = 1.02
 _SMALLEST_HEAD: Final = 1e-12
 """Smallest share of R T0 / M that the kinetic energy is taken to be while the iteration runs."""
 
+_SLOW: Final = 0.02
+"""Dynamic over stagnation pressure below which a subsonic search starts from the gas at rest."""
+
+_NEAR_THROAT: Final = 0.1
+"""ln of the area ratio below which the search follows the square root of ln A, which runs straight through the throat."""
+
 _AT_THROAT: Final = 1e-12
 """ln of the area ratio below which the throat itself is meant."""
 
@@ -75,12 +81,20 @@ class Shifting:
         if supersonic:
             pressure = at_throat.pressure * fall
         else:
-            pressure = np.minimum(at_throat.pressure * fall, self.pressure * (1.0 - 1e-9))
-        known = at_throat.equilibrium if at_throat.equilibrium is not None else self.reservoir
-        goal = np.log(mass_flux)
+            head = 0.5 * mass_flux**2 / self.reservoir.density
+            slow = self.pressure - head
+            pressure = np.where(head < _SLOW * self.pressure, slow, np.minimum(at_throat.pressure * fall, slow))
+        known = at_throat.equilibrium if at_throat.equilibrium is not None and supersonic else self.reservoir
+        goal, log_top = np.log(mass_flux), np.log(at_throat.mass_flux)
+        wanted = np.sqrt(2.0 * np.maximum(log_top - goal, 0.0))
 
         def condition(trial: FlowTrial, number: Integers) -> tuple[Array, Array]:
-            return self._flux(trial, number, goal[number])
+            flux, slope, mach = self._flux(trial, number)
+            missing, root = flux - goal[number], wanted[number]
+            side = np.where((mach > 1.0) == supersonic, 1.0, -1.0)
+            distance = side * np.sqrt(2.0 * np.maximum(log_top[number] - flux, _SMALLEST_HEAD))
+            near = root < np.sqrt(2.0 * _NEAR_THROAT)
+            return np.where(near, distance - root, missing), np.where(near, -slope / distance, slope)
 
         found = self._state(self._solve(pressure, known, condition))
         return choose(found, at_throat, np.abs(np.log(ratio)) < _AT_THROAT)
@@ -104,12 +118,12 @@ class Shifting:
         turning = trial.moles_slope + trial.temperature_slope
         return np.log(square * (1.0 - turning) / thermal), -2.0 * thermal / square - turning
 
-    def _flux(self, trial: FlowTrial, number: Integers, goal: Array) -> tuple[Array, Array]:
-        """Return ln of the mass flux over the wanted one, and its slope 1/gamma - R T / (M u^2)."""
+    def _flux(self, trial: FlowTrial, number: Integers) -> tuple[Array, Array, Array]:
+        """Return ln of the mass flux, its slope 1/gamma - R T / (M u^2), and the Mach number."""
         square, thermal = self._kinetic(trial, number)
         log_density = trial.log_pressure + np.log(self.table.reference_pressure / thermal)
         turning = trial.moles_slope + trial.temperature_slope
-        return log_density + 0.5 * np.log(square) - goal, 1.0 - turning - thermal / square
+        return log_density + 0.5 * np.log(square), 1.0 - turning - thermal / square, np.sqrt(np.abs(square * (1.0 - turning) / thermal))
 
     def _state(self, found: EquilibriumState) -> FlowState:
         return FlowState(
