@@ -3,8 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
-from typing import Any
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -97,6 +96,8 @@ def expand(
         pressure = np.broadcast_to(values(exit_pressure), flux.shape).astype(float)  # type: ignore[arg-type]
         exit_state = expansion.at_pressure(isentrope, np.minimum(pressure, throat.pressure), throat)
         ratio = flux / exit_state.mass_flux
+    if isinstance(isentrope, expansion.FrozenFrom) and freeze_at != "throat":
+        exit_state = _beyond_sonic(isentrope, exit_state)
     inlet = _inlet(reservoir, isentrope, throat)
     return Expansion(isentrope, inlet, throat, exit_state, flux, ratio, getattr(reservoir, "table", None))
 
@@ -125,6 +126,13 @@ def _isentrope(
     return expansion.frozen_from(shifting, reservoir.throat, None if freeze_at == "throat" else float(freeze_at))  # type: ignore[arg-type]
 
 
+def _beyond_sonic(isentrope: expansion.FrozenFrom, exit_state: FlowState) -> FlowState:
+    """Return the exit with status 2 where the composition would freeze before the sonic point of the frozen gas."""
+    there = isentrope.after.at_pressure(isentrope.place.pressure)
+    early = there.velocity < there.sound_speed
+    return replace(exit_state, status=np.where(early, outcome.OUT_OF_RANGE, exit_state.status))
+
+
 def _inlet(reservoir: Combustion | GivenGas, isentrope: Isentrope, throat: FlowState) -> FlowState:
     """Return the state at the contraction ratio, or at rest where the contraction is infinite."""
     ratio = reservoir.contraction_ratio
@@ -143,7 +151,3 @@ def state_at(
         return expansion.at_pressure(found.isentrope, pressure, found.throat)
     return expansion.at_area_ratio(found.isentrope, found.mass_flux, np.array([area_ratio]), found.throat, supersonic)
 
-
-def raise_for(state: FlowState, what: str, found: Any) -> None:
-    """Raise when the state asked for has no solution."""
-    outcome.raise_for(state, f"state at {what}")

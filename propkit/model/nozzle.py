@@ -10,7 +10,7 @@ import numpy as np
 
 from propkit import units
 from propkit.chain import nozzle as stage
-from propkit.chain import sizing
+from propkit.chain import outcome, sizing
 from propkit.errors import InputError, Problem, RangeError
 from propkit.model import sheet
 from propkit.model.ambient import read_ambient
@@ -297,6 +297,16 @@ class Nozzle(Calculation):
                     "A nozzle with an exit accelerates the gas beyond its throat.",
                 )
             )
+        frozen_late = isinstance(self._values["freeze_at"], float)
+        if frozen_late and outcome.OUT_OF_RANGE in (int(expansion.exit.status[0]), int(expansion.throat.status[0])):
+            raise InputError(
+                Problem(
+                    "freeze_at",
+                    as_text(self._typed["freeze_at"]),
+                    "an area ratio beyond the frozen sonic point",
+                    "Take a larger area ratio, or 'throat'.",
+                )
+            )
         expansion.raise_for_status(self.kind)
 
     def _sized(self, chamber: Chamber, expansion: stage.Expansion, ratio: float) -> Outcome:
@@ -342,6 +352,10 @@ class Nozzle(Calculation):
     def _doubts(self, expansion: stage.Expansion) -> Iterator[Doubt]:
         for text, about in expansion.doubts():
             yield Doubt(text, code="data-range", about=about)
+        late, ratio = self._values["freeze_at"], float(expansion.area_ratio[0]) * self._values["discharge_coefficient"]
+        if isinstance(late, float) and late >= ratio:
+            text = f"The composition freezes at area ratio {late:g}, beyond the exit at {ratio:.4g}: the flow is shifting all the way."
+            yield Doubt(text, code="freezes-beyond-exit", about="flow")
 
     # -- constructors and states ------------------------------------------------------------------
 
@@ -464,7 +478,18 @@ class Nozzle(Calculation):
                 )
             flow = stage.state_at(self.held, pressure=wanted)
             label = f"pressure {wanted:g} Pa"
-        stage.raise_for(flow, label, self.held)
+        if self.flow == "frozen" and int(flow.status[0]) == outcome.OUT_OF_RANGE:
+            name = "pressure" if area_ratio is None else "area_ratio"
+            given = as_text(pressure if area_ratio is None else area_ratio)
+            raise InputError(
+                Problem(
+                    name,
+                    given,
+                    "outside the gap between the freezing point and the frozen sonic point",
+                    "Frozen flow returns no state there.",
+                )
+            )
+        outcome.raise_for(flow, f"state at {label}")
         return _state_of(label, flow)
 
     @property
