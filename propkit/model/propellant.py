@@ -46,6 +46,9 @@ _LIMITS = ("freezing_point", "boiling_point", "vapour_pressure")
 _FIGURES = ("density", "temperature", "pressure", "heat_capacity", *_LIMITS)
 _OWN_ONLY = ("formula", "temperature", "pressure", "phase", "saturated", "coolprop_fluid", "species")
 _STATED_ELSEWHERE = "A row of the library brings its own; for another give formula and enthalpy, without library_name."
+_STORED_ELSEWHERE = (
+    "A row has its own state; another stored state is an input of the case: oxidizer_temperature=, fuel_pressure=."
+)
 
 
 class Propellant(Calculation):
@@ -171,7 +174,10 @@ class Propellant(Calculation):
             problems.append(Problem("heat_capacity_range", "given alone", "given together with heat_capacity"))
         if "library_name" in typed or "library_name" in bad:
             beside = [name for name in typed if name in _OWN_ONLY]
-            return [Problem(name, "given beside library_name", "left out", _STATED_ELSEWHERE) for name in beside]
+            hints = {
+                name: _STORED_ELSEWHERE if name in ("temperature", "pressure") else _STATED_ELSEWHERE for name in beside
+            }
+            return [Problem(name, "given beside library_name", "left out", hints[name]) for name in beside]
         for name, example in (("formula", '"C H1.95"'), ("enthalpy", '"-24.717 kJ/mol"')):
             if name not in typed and name not in bad:
                 hint = "Or take a row of the library: pk.Propellant.from_library(name)." if name == "formula" else ""
@@ -258,7 +264,11 @@ class Propellant(Calculation):
         atoms = {symbol: count / row.molar_mass for symbol, count in row.element_counts}
         enthalpy = row.specific_enthalpy + state.enthalpy_change / row.molar_mass
         density = float("nan") if state.density is None else state.density
-        return Stream(atoms, enthalpy, density), (*(str(doubt) for doubt in self.warnings), *state.warnings)
+        doubts = [*(str(doubt) for doubt in self.warnings), *state.warnings]
+        if row.phase == "gas" and pressure is None and row.density is not None:
+            where = f"; give {role}_pressure" if role else ""
+            doubts.append(f"The density of {row.name} is that of the gas at {state.pressure / 1e5:.3g} bar{where}.")
+        return Stream(atoms, enthalpy, density), tuple(doubts)
 
     def attribute(self, name: str) -> Any:
         """Return what reading `name` gives: a fresh quantity, a float or a text; None where the data have none."""

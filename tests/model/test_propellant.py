@@ -255,6 +255,20 @@ def test_stream_is_per_kilogram():
     assert sum(weights[symbol] * amount for symbol, amount in stream.elements.items()) == pytest.approx(1.0, rel=1e-12)
 
 
+def test_a_gas_says_at_which_pressure_its_density_is():
+    pytest.importorskip("CoolProp")
+    case = pk.PropellantCase("GOX", "RP-1", mixture_ratio=2.4)
+    assert any("GOX is that of the gas at 1 bar; give oxidizer_pressure" in text for text in case.warnings)
+    fed = pk.PropellantCase("GOX", "RP-1", mixture_ratio=2.4, oxidizer_pressure="20 MPa")
+    assert not any("density" in text for text in fed.warnings)
+    assert fed.si("bulk_density") > 50.0 * case.si("bulk_density")
+
+
+def test_another_state_of_a_row_points_to_the_case():
+    with pytest.raises(pk.InputError, match="oxidizer_temperature="):
+        pk.Propellant.from_library("LOX").replace(temperature="80 K")
+
+
 def test_doubts_travel_into_the_case():
     case = pk.PropellantCase("LOX", "HTPB", mixture_ratio=2.4)
     assert any("an estimate or its sources disagree" in text for text in case.warnings)
