@@ -230,9 +230,7 @@ def solve_batch(
         for first in range(0, rows.size, BLOCK):
             block = rows[first : first + BLOCK]
             problem = Problem(part, elements[np.ix_(block, mask)], given, target[block], _renumbered(condition, block))
-            start = cold_start(problem, pressure[block])
-            if guess is not None:
-                _warm(start, guess, block, species, mask, given)
+            start = _start(problem, pressure[block], guess, block, species, mask)
             outcome = iterate(problem, start)
             outside = _retry(problem, pressure[block], outcome)
             _fill(state, block, species, mask, problem, outcome, outside)
@@ -255,26 +253,34 @@ def _patterns(present: npt.NDArray[np.bool_]) -> list[tuple[Integers, npt.NDArra
     return [(np.flatnonzero(inverse.ravel() == number), pattern) for number, pattern in enumerate(patterns)]
 
 
-def _warm(
-    start: Unknowns,
-    guess: EquilibriumState,
+def _start(
+    problem: Problem,
+    pressure: Array,
+    guess: EquilibriumState | None,
     block: Integers,
     species: Integers,
     mask: npt.NDArray[np.bool_],
-    given: Given,
-) -> None:
-    """Overwrite a cold start with a state nearby, where that state is a solution; the pressure stays."""
-    good = np.flatnonzero((guess.status[block] == CONVERGED) & np.isfinite(guess.temperature[block]))
-    if not good.size:
-        return
-    rows = block[good]
-    gas = start.log_amounts.shape[1]
+) -> Unknowns:
+    """Return the first guess of a block: a state nearby where there is one that is a solution, else a cold start."""
+    if guess is None:
+        return cold_start(problem, pressure)
+    good = guess.status[block] == CONVERGED
+    rows, gas = block[good], problem.table.gas_count
     with np.errstate(divide="ignore"):
-        start.log_amounts[good] = np.maximum(np.log(guess.amounts[np.ix_(rows, species[:gas])]), _LOWEST_LOG)
-    start.potentials[good] = guess.element_potentials[np.ix_(rows, mask)]
-    start.log_moles[good] = np.log(guess.gas_moles[rows])
-    if given != "temperature":
-        start.log_temperature[good] = np.log(guess.temperature[rows])
+        warm = Unknowns(
+            log_amounts=np.maximum(np.log(guess.amounts[rows[:, None], species[:gas]]), _LOWEST_LOG),
+            potentials=guess.element_potentials[rows[:, None], mask],
+            log_moles=np.log(guess.gas_moles[rows]),
+            log_temperature=np.log(problem.target[good] if problem.given == "temperature" else guess.temperature[rows]),
+            log_pressure=np.log(pressure[good] / problem.table.reference_pressure),
+            slots=np.zeros((rows.size, 0), dtype=np.intp),
+            slot_amounts=np.zeros((rows.size, 0)),
+        )
+    if good.all():
+        return warm
+    start = cold_start(problem, pressure)
+    start.put(np.flatnonzero(good), warm)
+    return start
 
 
 def _retry(problem: Problem, pressure: Array, outcome: Outcome) -> npt.NDArray[np.bool_]:

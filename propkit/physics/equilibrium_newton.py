@@ -145,6 +145,7 @@ class Problem:
     bordered: Array = field(init=False)
     atoms: Array = field(init=False)
     products: Array = field(init=False)
+    log_bounds: Array = field(init=False)
 
     def __post_init__(self) -> None:
         gas = self.table.gas_count
@@ -152,8 +153,9 @@ class Problem:
         size = self.bordered.shape[1]
         self.atoms = np.ascontiguousarray(self.bordered[:, :-1].T)
         self.products = (self.bordered[:, :, None] * self.bordered[:, None, :]).reshape(gas, size * size)
+        self.log_bounds = self._log_bounds()
 
-    def log_bounds(self) -> Array:
+    def _log_bounds(self) -> Array:
         """Return ln of what the elements of each case could form of each gas species at most, shape (case, species)."""
         log_elements = np.log(self.elements)
         bounds = np.full((self.elements.shape[0], self.table.gas_count), np.inf)
@@ -376,7 +378,7 @@ def iterate(problem: Problem, start: Unknowns, iterations: int = ITERATIONS) -> 
     out = Outcome(start.take(np.arange(count)), np.full((count, 3), np.nan), np.full((count, 4), np.nan),
                   np.full(count, iterations), np.full(count, np.inf), np.zeros(count, dtype=bool))  # fmt: skip
     number, x, elements, target = np.arange(count), start.take(np.arange(count)), problem.elements, problem.target
-    bounds = problem.log_bounds() + _ROOM_ABOVE_BOUND
+    bounds = problem.log_bounds + _ROOM_ABOVE_BOUND
     before = np.full(count, np.inf)
     for step in range(iterations + 1):
         sums = evaluate(problem, elements, x)

@@ -46,7 +46,7 @@ def cold_start(problem: Problem, pressure: Array, slots: int = 0) -> Unknowns:
     log_moles = np.log(problem.elements.sum(axis=1) / _ATOMS_PER_MOLECULE)
     temperature = problem.target if problem.given == "temperature" else np.full(cases, _FIRST_TEMPERATURE)
     return Unknowns(
-        log_amounts=np.minimum(log_moles[:, None] + weight[None, :], problem.log_bounds()).reshape(cases, gas),
+        log_amounts=np.minimum(log_moles[:, None] + weight[None, :], problem.log_bounds).reshape(cases, gas),
         potentials=np.zeros_like(problem.elements),
         log_moles=log_moles,
         log_temperature=np.log(temperature),

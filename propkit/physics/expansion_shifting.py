@@ -29,6 +29,9 @@ _SLOW: Final = 0.02
 _NEAR_THROAT: Final = 0.1
 """ln of the area ratio below which the search follows the square root of ln A, which runs straight through the throat."""
 
+_LARGEST_CHANGE: Final = 0.1
+"""Largest d ln gamma / d ln p that is believed."""
+
 _AT_THROAT: Final = 1e-12
 """ln of the area ratio below which the throat itself is meant."""
 
@@ -69,7 +72,7 @@ class Shifting:
         """Return the state of largest mass flux: Mach 1 with the composition following."""
         gamma = np.maximum(self.reservoir.isentropic_exponent, _LOWEST_EXPONENT)
         pressure = self.pressure * gas_dynamics.pressure_ratio(1.0, gamma)
-        return self._state(self._solve(pressure, self.reservoir, self._sonic))
+        return self._state(self._solve(pressure, self.reservoir, _Sonic(self)))
 
     def at_mass_flux(self, mass_flux: Array, at_throat: FlowState, supersonic: bool) -> FlowState:
         """Return the state at a mass flux [kg/(m2 s)] on one side of the throat."""
@@ -106,21 +109,15 @@ class Shifting:
         guess = replace(near, temperature=temperature)
         return solve_batch(self.table, self.elements, pressure, "entropy", self.entropy, guess, condition)
 
-    def _kinetic(self, trial: FlowTrial, number: Integers) -> tuple[Array, Array]:
+    def kinetic(self, trial: FlowTrial, number: Integers) -> tuple[Array, Array]:
         """Return u^2 and R T / M of a trial [m2/s2]."""
         thermal = GAS_CONSTANT * np.exp(trial.log_moles + trial.log_temperature)
         square = 2.0 * (self.enthalpy[number] - trial.enthalpy)
         return np.maximum(square, _SMALLEST_HEAD * thermal), thermal
 
-    def _sonic(self, trial: FlowTrial, number: Integers) -> tuple[Array, Array]:
-        """Return ln M^2 and its slope, the change of the isentropic exponent left out of the slope."""
-        square, thermal = self._kinetic(trial, number)
-        turning = trial.moles_slope + trial.temperature_slope
-        return np.log(square * (1.0 - turning) / thermal), -2.0 * thermal / square - turning
-
     def _flux(self, trial: FlowTrial, number: Integers) -> tuple[Array, Array, Array]:
         """Return ln of the mass flux, its slope 1/gamma - R T / (M u^2), and the Mach number."""
-        square, thermal = self._kinetic(trial, number)
+        square, thermal = self.kinetic(trial, number)
         log_density = trial.log_pressure + np.log(self.table.reference_pressure / thermal)
         turning = trial.moles_slope + trial.temperature_slope
         return log_density + 0.5 * np.log(square), 1.0 - turning - thermal / square, np.sqrt(np.abs(square * (1.0 - turning) / thermal))
@@ -142,3 +139,23 @@ class Shifting:
             amounts=found.amounts,
             equilibrium=found,
         )
+
+
+class _Sonic:
+    """The condition Mach 1, with the change of the isentropic exponent taken from the step before."""
+
+    def __init__(self, isentrope: Shifting) -> None:
+        self.isentrope = isentrope
+        self.log_pressure = np.full(isentrope.pressure.shape, np.nan)
+        self.log_exponent = np.zeros_like(self.log_pressure)
+
+    def __call__(self, trial: FlowTrial, number: Integers) -> tuple[Array, Array]:
+        """Return ln M^2 and its slope."""
+        square, thermal = self.isentrope.kinetic(trial, number)
+        turning = trial.moles_slope + trial.temperature_slope
+        log_exponent = -np.log(1.0 - turning)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            change = (log_exponent - self.log_exponent[number]) / (trial.log_pressure - self.log_pressure[number])
+        self.log_pressure[number], self.log_exponent[number] = trial.log_pressure, log_exponent
+        change = np.clip(np.where(np.isfinite(change), change, 0.0), -_LARGEST_CHANGE, _LARGEST_CHANGE)
+        return np.log(square / thermal) - log_exponent, -2.0 * thermal / square - turning - change

@@ -40,7 +40,17 @@ class StandardProperties(NamedTuple):
     gibbs_energy: Array
 
 
-def powers(temperature: Array) -> tuple[Array, Array, Array]:
+_EXPONENTS = np.array([0.0, 1.0, 2.0, 3.0, 4.0, -1.0, 0.0])
+_FACTORS = np.array(
+    [
+        [1.0, 1.0, 1.0, 1.0, 1.0, 0.0, 0.0],
+        [1.0, 1.0 / 2.0, 1.0 / 3.0, 1.0 / 4.0, 1.0 / 5.0, 1.0, 0.0],
+        [0.0, 1.0, 1.0 / 2.0, 1.0 / 3.0, 1.0 / 4.0, 0.0, 1.0],
+    ]
+)[:, None, :]
+
+
+def powers(temperature: Array) -> Array:
     """Return what multiplies the seven coefficients in cp/R, h/(R T) and s/R.
 
     Parameters
@@ -50,8 +60,8 @@ def powers(temperature: Array) -> tuple[Array, Array, Array]:
 
     Returns
     -------
-    tuple of three arrays
-        For cp/R, h/(R T) and s/R, each of shape (case, 7).
+    array
+        For cp/R, h/(R T) and s/R, shape (3, case, 7).
 
     Notes
     -----
@@ -59,26 +69,9 @@ def powers(temperature: Array) -> tuple[Array, Array, Array]:
 
     Source: NASA TM-4513, equations 1 to 3 (seven coefficients in each range).
     """
-    t = temperature
-    t2 = t * t
-    cp = np.zeros((t.size, _COEFFICIENTS))
-    cp[:, 0] = 1.0
-    cp[:, 1] = t
-    cp[:, 2] = t2
-    cp[:, 3] = t2 * t
-    cp[:, 4] = t2 * t2
-    h = cp * _ENTHALPY_FACTORS
-    h[:, 5] = 1.0 / t
-    s = np.empty_like(cp)
-    s[:, 0] = np.log(t)
-    s[:, 1:5] = cp[:, 1:5] * _ENTROPY_FACTORS
-    s[:, 5] = 0.0
-    s[:, 6] = 1.0
-    return cp, h, s
-
-
-_ENTHALPY_FACTORS = np.array([1.0, 1.0 / 2.0, 1.0 / 3.0, 1.0 / 4.0, 1.0 / 5.0, 0.0, 0.0])
-_ENTROPY_FACTORS = np.array([1.0, 1.0 / 2.0, 1.0 / 3.0, 1.0 / 4.0])
+    factors = _FACTORS * temperature[:, None] ** _EXPONENTS
+    factors[2, :, 0] = np.log(temperature)
+    return factors
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -153,7 +146,7 @@ class SpeciesTable:
         Source: NASA TM-4513, equations 1 to 3.
         """
         t = np.atleast_1d(values(temperature))
-        cp, h, s = (apply_segments(part, self.interval(t), self.segments) for part in powers(t))
+        cp, h, s = apply_segments(powers(t), self.interval(t), self.segments)
         return StandardProperties(cp, h, s, h - s)
 
     def interval(self, temperature: Array) -> npt.NDArray[np.intp]:
@@ -219,7 +212,7 @@ def apply_segments(factors: Array, interval: npt.NDArray[np.intp], segments: Arr
     Parameters
     ----------
     factors : array
-        Powers of temperature, shape (case, 7).
+        Powers of temperature, shape (3, case, 7).
     interval : array of int
         Interval of each case.
     segments : array
@@ -228,15 +221,15 @@ def apply_segments(factors: Array, interval: npt.NDArray[np.intp], segments: Arr
     Returns
     -------
     array
-        Shape (case, species).
+        cp/R, h/(R T), s/R, shape (3, case, species).
     """
-    first = int(interval[0]) if interval.size else 0
-    if interval.size == 0 or (interval == first).all():
-        return np.asarray(factors @ segments[first])
-    out = np.empty((factors.shape[0], segments.shape[2]))
+    count, first = interval.size, int(interval[0])
+    if count == 1 or (interval == first).all():
+        return (factors.reshape(3 * count, _COEFFICIENTS) @ segments[first]).reshape(3, count, -1)
+    out = np.empty((3, count, segments.shape[2]))
     for number in np.unique(interval):
         rows = np.flatnonzero(interval == number)
-        out[rows] = factors[rows] @ segments[number]
+        out[:, rows] = (factors[:, rows].reshape(-1, _COEFFICIENTS) @ segments[number]).reshape(3, rows.size, -1)
     return out
 
 
