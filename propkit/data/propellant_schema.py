@@ -29,7 +29,7 @@ def _flag(value: Any) -> str | None:
 
 
 def _is_number(value: Any) -> bool:
-    return isinstance(value, (int, float)) and not isinstance(value, bool) and math.isfinite(value)
+    return isinstance(value, (int, float)) and not isinstance(value, bool) and -1e300 < value < 1e300
 
 
 def _number(low: float, high: float, unit: str) -> Callable[[Any], str | None]:

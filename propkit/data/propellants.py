@@ -185,8 +185,12 @@ def _folded(text: str) -> str:
 def _rows_from_text(text: str, file: str, origin: str) -> dict[str, PropellantRow]:
     try:
         tables = tomllib.loads(text)
-    except (tomllib.TOMLDecodeError, RecursionError) as error:
+    except (ValueError, RecursionError) as error:
         raise InputError(Problem(file, "not TOML", "a TOML file with one table a propellant", f"{error}.")) from error
+    return _rows_from_tables(tables, file, origin)
+
+
+def _rows_from_tables(tables: Mapping[str, Any], file: str, origin: str) -> dict[str, PropellantRow]:
     problems = [problem for name, row in tables.items() for problem in row_problems(file, name, row)]
     if not tables:
         problems.append(Problem(file, "empty", "one table a propellant", ""))

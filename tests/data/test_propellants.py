@@ -8,6 +8,7 @@ from hypothesis import strategies as st
 
 from propkit.data import propellants as library_data
 from propkit.data.propellant_row import PHASES, ROLES, TRUST
+from propkit.data.propellant_schema import FIELDS
 from propkit.data.propellants import find, library, load_library, role_problem, suggestions
 from propkit.errors import InputError, StorageError
 
@@ -223,6 +224,8 @@ def test_enthalpy_by_mass_is_the_same_thing(tmp_path):
         ("-20.0", "nan", "enthalpy_kJ_mol", "a number from"),
         ("-20.0", "inf", "enthalpy_kJ_mol", "a number from"),
         ("-20.0", "true", "enthalpy_kJ_mol", "a number from"),
+        ("-20.0", "1" + 400 * "0", "enthalpy_kJ_mol", "a number from"),
+        ("-20.0", "2026-12-01", "enthalpy_kJ_mol", "a number from"),
         ("enthalpy_kJ_mol = -20.0\n", "", "enthalpy_kJ_mol", "missing"),
         ("enthalpy_kJ_mol = -20.0", "enthalpy_kJ_mol = -20.0\nenthalpy_kJ_kg = -3", "enthalpy_kJ_mol", "given twice"),
         ("298.15", "-5", "temperature_K", "a number from 1 to 2000 K"),
@@ -278,6 +281,34 @@ def test_bad_mixture_names_file_row_and_field(tmp_path, mixture, field, words):
     assert words in str(caught.value)
 
 
+ANYTHING = st.recursive(
+    st.none()
+    | st.booleans()
+    | st.integers()
+    | st.floats()
+    | st.text(max_size=12)
+    | st.sampled_from(["fuel", "C H2", "water"]),
+    lambda inside: st.lists(inside, max_size=3) | st.dictionaries(st.text(max_size=6), inside, max_size=3),
+    max_leaves=6,
+)
+
+
+@given(st.dictionaries(st.sampled_from([*FIELDS, "nonsense"]), ANYTHING, min_size=1, max_size=4))
+@settings(max_examples=300, deadline=None)
+def test_no_table_makes_another_error_than_a_clear_one(changes):
+    import tomllib
+
+    fields = {**tomllib.loads(GOOD)["fuel"], **changes}
+    try:
+        rows = library_data._rows_from_tables({"fuel": fields}, "mine.toml", "mine.toml")
+    except InputError as error:
+        names = [problem.name for problem in error.problems]
+    else:
+        names = []
+        assert math.isfinite(rows["fuel"].specific_enthalpy)
+    assert all(name.startswith("mine.toml: [fuel] ") for name in names)
+
+
 def test_everything_wrong_is_listed_at_once(tmp_path):
     bad = GOOD.replace("298.15", "-1").replace('"liquid"', '"wet"') + "[other]\ntitle = 'x'\n"
     with pytest.raises(InputError) as caught:
@@ -290,7 +321,13 @@ def test_everything_wrong_is_listed_at_once(tmp_path):
 
 @pytest.mark.parametrize(
     ("text", "words"),
-    [("[fuel\n", "not TOML"), ("", "empty"), ("x = 3\n", "a table of fields"), ("a = " + "[" * 5000, "not TOML")],
+    [
+        ("[fuel\n", "not TOML"),
+        ("", "empty"),
+        ("x = 3\n", "a table of fields"),
+        ("a = " + "[" * 5000, "not TOML"),
+        ("a = " + "9" * 5000, "not TOML"),
+    ],
 )
 def test_file_that_is_no_library(tmp_path, text, words):
     with pytest.raises(InputError, match=words):
