@@ -274,10 +274,11 @@ class Nozzle(Calculation):
         ratio, pressure = self._values["area_ratio"], self._values["exit_pressure"]
         if ratio is None and pressure is None:
             ratio = self._size_ratio()
+        freeze_at = self._values["freeze_at"]
         expansion = stage.expand(
             chamber.held,
             flow=flow,
-            freeze_at=self._values["freeze_at"],
+            freeze_at=freeze_at / discharge if isinstance(freeze_at, float) else freeze_at,
             exponent=self._values["exponent"],
             area_ratio=None if ratio is None else ratio / discharge,
             exit_pressure=pressure,
