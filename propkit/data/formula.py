@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping
+from decimal import Decimal
 
 from propkit.data.atomic_weights import ATOMIC_WEIGHTS
 from propkit.errors import InputError, Problem, near_matches
@@ -15,6 +16,7 @@ from propkit.errors import InputError, Problem, near_matches
 _TERM = re.compile(r"\s*(?P<symbol>[A-Z][a-z]?)(?P<count>\d+(?:\.\d*)?|\.\d+)?")
 _SUBSCRIPTS = str.maketrans("₀₁₂₃₄₅₆₇₈₉", "0123456789")
 _LONGEST = 200
+_LARGEST_COUNT = 1e6
 _ALLOWED = 'element symbols with optional counts, for example "C H1.95", "C2H6O" or "N2 O4"'
 _ORDER = ("C", "H", "N", "O", "F", "Cl")
 
@@ -65,6 +67,10 @@ def parse_formula(text: str, name: str = "formula") -> dict[str, float]:
             raise InputError(Problem(name, shown, _ALLOWED, f"The count of {symbol} is zero: leave the element out."))
         counts[symbol] = counts.get(symbol, 0.0) + count
         position = match.end()
+        if not 1e-9 <= counts[symbol] <= _LARGEST_COUNT:
+            raise InputError(
+                Problem(name, shown, _ALLOWED, f"The count of {symbol} is beyond {_LARGEST_COUNT:g} or nearly 0.")
+            )
     return counts
 
 
@@ -92,7 +98,8 @@ def formula_text(elements: Mapping[str, float], digits: int = 6) -> str:
 
 
 def _count_text(count: float, digits: int) -> str:
-    return "" if count == 1.0 else f"{count:.{digits}g}" if count >= 1e-4 else f"{count:.9f}".rstrip("0")
+    text = f"{count:.{digits}g}"
+    return "" if text == "1" else format(Decimal(text), "f") if "e" in text else text
 
 
 def _hint(rest: str) -> str:

@@ -18,6 +18,7 @@ from propkit.errors import InputError, Problem, near_matches
 from propkit.model.declare import as_text
 
 _ENTHALPY = 'an enthalpy per mole of the formula or per mass, for example "-24.717 kJ/mol" or "-1768 kJ/kg"'
+_LARGEST_ENTHALPY = 1e9
 _RANGE = 'two temperatures, the lower first, for example ("260 K", "340 K")'
 
 
@@ -27,14 +28,16 @@ def enthalpy(name: str, value: Any) -> tuple[str, float]:
         hint = "A number alone could be per mole or per mass."
         raise InputError(Problem(name, as_text(value), _ENTHALPY, hint))
     try:
-        return "J/kg", units.to_si(value, "J/kg", name)
+        unit, assigned = "J/kg", units.to_si(value, "J/kg", name)
     except InputError:
-        pass
-    try:
-        return "J/mol", units.to_si(value, "J/mol", name)
-    except InputError as error:
-        problem = error.problems[0]
-        raise InputError(Problem(name, problem.value, _ENTHALPY, problem.hint)) from error
+        try:
+            unit, assigned = "J/mol", units.to_si(value, "J/mol", name)
+        except InputError as error:
+            problem = error.problems[0]
+            raise InputError(Problem(name, problem.value, _ENTHALPY, problem.hint)) from error
+    if abs(assigned) > _LARGEST_ENTHALPY:
+        raise InputError(Problem(name, as_text(value), f"within 1e9 {unit} of zero", "Is the unit right?"))
+    return unit, assigned
 
 
 def temperature_range(name: str, value: Any) -> tuple[float, float]:

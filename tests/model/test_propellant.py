@@ -199,6 +199,8 @@ def test_user_library_name_with_near_matches(file):
         ({"enthalpy": "3 MPa"}, "an enthalpy per mole of the formula or per mass"),
         ({"enthalpy": "-24,7 kJ/mol"}, "decimal sign as a point"),
         ({"enthalpy": True}, "`enthalpy` is True"),
+        ({"enthalpy": "-1e30 kJ/mol"}, "within 1e9 J/mol of zero"),
+        ({"formula": "C1 H" + "9" * 50}, "beyond 1e+06"),
         ({"formula": "(CH3)2"}, "Parentheses are not read"),
         ({"formula": 5}, "Give the formula as text"),
         ({"density": "0 kg/m3"}, "above 0 kg/m³"),
