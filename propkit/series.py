@@ -46,7 +46,10 @@ class Axis:
 
 @dataclass(frozen=True, slots=True)
 class Line:
-    """A line through points; `fill` closes it to the axis, `closed` makes it an outline (a wall, a body)."""
+    """A line through points; `fill` closes it to the axis, `closed` makes it an outline (a wall, a body).
+
+    `hover` holds further series over the same points, which a live plot tells under the pointer and a drawing leaves out.
+    """
 
     x: Series
     y: Series
@@ -55,6 +58,7 @@ class Line:
     closed: bool = False
     fill: bool = False
     label: str = ""
+    hover: tuple[Series, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

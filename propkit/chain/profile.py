@@ -1,0 +1,54 @@
+"""Profile stage: the flow states of one expansion at many local area ratios, as one batch."""
+
+from __future__ import annotations
+
+from dataclasses import fields, is_dataclass, replace
+from typing import Any
+
+import numpy as np
+
+from propkit.chain.nozzle import Expansion
+from propkit.physics import expansion
+from propkit.physics.arrays import Array, Values, values
+from propkit.physics.equilibrium import CONVERGED, EquilibriumState
+from propkit.physics.expansion import FlowState
+
+
+def along(found: Expansion, area_ratio: Values, *, supersonic: bool, index: int = 0) -> dict[str, Array]:
+    """Return the flow along a nozzle at local area ratios on one side of the throat.
+
+    Parameters
+    ----------
+    found : Expansion
+        What the nozzle stage yields.
+    area_ratio : float or array
+        Local area over effective throat area [1], 1 or more, shape (point,).
+    supersonic : bool
+        On which side of the throat.
+    index : int
+        Which case of the batch.
+
+    Returns
+    -------
+    dict of str to array
+        Pressure [Pa], temperature [K], velocity [m/s], Mach number [1], density [kg/m3], shape (point,); NaN where this flow
+        has no state.
+    """
+    ratio = np.atleast_1d(values(area_ratio)).astype(float)
+    cases = np.full(len(ratio), index)
+    isentrope = _repeated(found.isentrope, cases)
+    states = expansion.at_area_ratio(isentrope, found.mass_flux[cases], ratio, found.throat.take(cases), supersonic)
+    good = states.status == CONVERGED
+    return {name: np.where(good, getattr(states, name), np.nan) for name in ("pressure", "temperature", "velocity", "mach", "density")}
+
+
+def _repeated(part: Any, cases: Array) -> Any:
+    """Return a batch object with its cases taken as `cases` says, the parts of an isentrope included."""
+    if isinstance(part, EquilibriumState | FlowState):
+        return part.take(cases)
+    if isinstance(part, np.ndarray):
+        return part[cases]
+    if is_dataclass(part) and not isinstance(part, type):
+        changed = {field.name: _repeated(getattr(part, field.name), cases) for field in fields(part) if field.name != "table"}
+        return replace(part, **changed)
+    return part
