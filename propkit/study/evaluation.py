@@ -1,0 +1,458 @@
+"""An object as a batch function: arrays of some of its inputs in, arrays of its results out.
+
+The stages of `chain/` are called just as the objects call them, with arrays where the objects have single values, at
+the same tolerance, so that a batch of one gives the object's own numbers. Recipes that have no batch form yet are
+rebuilt object by object: slower, the same numbers.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from propkit import quantities
+from propkit.chain import case as case_stage
+from propkit.chain import chamber as chamber_stage
+from propkit.chain import nozzle as nozzle_stage
+from propkit.chain import performance as performance_stage
+from propkit.chain import sizing
+from propkit.constants import GAS_CONSTANT
+from propkit.errors import InputError, Problem, PropkitError
+from propkit.model import paths
+from propkit.model.base import Calculation
+from propkit.model.chamber import Chamber, GasChamber
+from propkit.model.declare import Bounds, CustomInput, NumberInput, QuantityInput
+from propkit.model.nozzle import SIZES, Nozzle
+from propkit.model.performance import Performance
+from propkit.model.propellant_case import ROLES, PropellantCase
+from propkit.model.state import STATE_FIELDS
+from propkit.physics import stoichiometry, thrust
+
+Array = npt.NDArray[np.float64]
+
+_ENTHALPY = "enthalpy"
+_LARGEST_AMBIENT = 1e9
+
+
+@dataclass(frozen=True, slots=True)
+class Variable:
+    """An input that can be varied: path, nominal SI value, SI unit, legal range and catalogue key."""
+
+    path: str
+    nominal: float
+    unit: str
+    low: float
+    high: float
+    quantity: str
+
+
+def variable(target: Calculation, path: str) -> Variable:
+    """Return an input of the chain of `target` as a variable.
+
+    Parameters
+    ----------
+    target : Calculation
+        The object.
+    path : str
+        Path of a numeric input, or ``case.oxidizer.enthalpy`` and ``case.fuel.enthalpy``: assigned molar enthalpies.
+
+    Returns
+    -------
+    Variable
+        With the whole path.
+
+    Raises
+    ------
+    InputError
+        For a path that is unknown, ambiguous, no number, or without a value in this recipe.
+    """
+    assigned = _assigned_enthalpy(target, path)
+    if assigned is not None:
+        return assigned
+    place = paths.resolve(target, path, results=False)
+    link = target.chain()[place.position]
+    entry = link.declared_inputs[place.name]
+    is_ambient = isinstance(entry, CustomInput) and place.name == "ambient"
+    if not (isinstance(entry, QuantityInput | NumberInput) or is_ambient):
+        raise InputError(Problem(place.path, "a choice", "an input that is a number", "A study varies choices."))
+    if not link.has(place.name):
+        raise InputError(
+            Problem(
+                place.path, "not part of this recipe", "an input with a value", "Give it to the object first (replace)."
+            )
+        )
+    found = link.given_or_result(place.name)
+    nominal = float(found.pressure if hasattr(found, "pressure") else found)
+    if not math.isfinite(nominal):
+        raise InputError(Problem(place.path, f"{nominal:g}", "finite", "Give the object a finite value first."))
+    low, high = (0.0, _LARGEST_AMBIENT) if is_ambient else _range(entry.bounds)
+    return Variable(place.path, nominal, entry.quantity.unit, low, high, f"{link.kind}.{place.name}")
+
+
+def _range(bounds: Bounds) -> tuple[float, float]:
+    low = bounds.at_least if bounds.at_least is not None else -math.inf
+    high = bounds.at_most if bounds.at_most is not None else math.inf
+    if bounds.above is not None:
+        low = math.nextafter(bounds.above, math.inf)
+    if bounds.below is not None:
+        high = math.nextafter(bounds.below, -math.inf)
+    return low, high
+
+
+def _assigned_enthalpy(target: Calculation, path: str) -> Variable | None:
+    parts = path.split(".")
+    if parts[-1] != _ENTHALPY or len(parts) < 2 or parts[-2] not in ROLES or parts[:-2] not in ([], ["case"]):
+        return None
+    role = parts[-2]
+    case = target.chain()[0]
+    if type(case) is not PropellantCase:
+        raise InputError(Problem(path, "not part of this recipe", "an input of a case with an oxidizer and a fuel"))
+    propellant = case._values[role]
+    stream = getattr(case.held, role)
+    molar_mass = float(propellant.row.molar_mass)
+    return Variable(
+        f"case.{role}.{_ENTHALPY}", float(stream.enthalpy) * molar_mass, "J/mol", -math.inf, math.inf, "molar_enthalpy"
+    )
+
+
+@dataclass(frozen=True)
+class ChainFunction:
+    """A batch function of the chain that ends in `target`; picklable.
+
+    Parameters
+    ----------
+    target : Calculation
+        The object whose results are wanted.
+    variables : tuple of str
+        Whole paths of the inputs that vary (see `variable`).
+    results : tuple of str
+        Names of results: bare for those of the object itself, with their prefix upstream.
+
+    Notes
+    -----
+    A call takes arrays by path and gives arrays by result: NaN where a case has no solution, or is one that the
+    object refuses.
+    """
+
+    target: Calculation
+    variables: tuple[str, ...]
+    results: tuple[str, ...]
+    template: Calculation = field(init=False, repr=False, compare=False)
+    batched: bool = field(init=False, repr=False, compare=False)
+
+    def __post_init__(self) -> None:
+        known = [variable(self.target, path) for path in self.variables]
+        changed = {entry.path: entry.nominal for entry in known if not _is_enthalpy(entry.path)}
+        template = self.target.replace(changed) if changed else self.target
+        object.__setattr__(self, "template", template)
+        object.__setattr__(self, "batched", all(type(link) in _BATCHED for link in template.chain()))
+        if not self.batched and any(_is_enthalpy(path) for path in self.variables):
+            raise InputError("assigned enthalpies cannot be varied in this recipe")
+
+    def __call__(self, inputs: Mapping[str, Array]) -> dict[str, Array]:
+        """Return the results at every case."""
+        if not self.batched:
+            return self._one_by_one(inputs)
+        count = len(next(iter(inputs.values())))
+        with np.errstate(all="ignore"):
+            batch = _Batch(self.template, inputs, count)
+            own = f"{self.template.kind}."
+            found = {}
+            for name in self.results:
+                values = batch.results.get(own + name, batch.results.get(name))
+                if values is None:
+                    raise InputError(Problem(name, "not available", "a result of this recipe"))
+                found[name] = np.where(batch.good, np.broadcast_to(values, (count,)), np.nan)
+            return found
+
+    def _one_by_one(self, inputs: Mapping[str, Array]) -> dict[str, Array]:
+        count = len(next(iter(inputs.values())))
+        found = {name: np.full(count, np.nan) for name in self.results}
+        for place in range(count):
+            try:
+                made = self.template.replace({path: float(values[place]) for path, values in inputs.items()})
+                row = [paths.value_of(made, name) for name in self.results]
+            except PropkitError:
+                continue
+            for name, value in zip(self.results, row, strict=True):
+                found[name][place] = value
+        return found
+
+
+def own_results(target: Calculation) -> tuple[str, ...]:
+    """Return the names of the declared results that the object has."""
+    return tuple(name for name in target.declared_results if target.has(name))
+
+
+def result_name(target: Calculation, path: str) -> str:
+    """Return how a result is called in tables: bare where it is the object's own, with its prefix else.
+
+    Raises
+    ------
+    InputError
+        For a path that is unknown, ambiguous, or that this recipe does not have.
+    """
+    place = paths.resolve(target, path)
+    link = target.chain()[place.position]
+    try:
+        value = link.si_of(place.name)
+    except AttributeError as error:
+        raise InputError(Problem(path, "not available", "a result of this recipe", str(error))) from error
+    if isinstance(value, str):
+        raise InputError(Problem(path, repr(value), "a result that is a number"))
+    return place.name if link is target.chain()[-1] else place.path
+
+
+def result_quantity(target: Calculation, name: str) -> quantities.Quantity:
+    """Return the catalogue row of a result."""
+    place = paths.resolve(target, name)
+    return quantities.quantity(place.name.rpartition(".")[2], target.chain()[place.position].kind)
+
+
+def _is_enthalpy(path: str) -> bool:
+    return path.split(".")[-2:-1] != [] and path.split(".")[-2] in ROLES and path.endswith(f".{_ENTHALPY}")
+
+
+_BATCHED = (PropellantCase, Chamber, GasChamber, Nozzle, Performance)
+
+
+class _Batch:
+    """The stages of a chain over a batch; `results` by whole path, `good` where every stage has a solution."""
+
+    def __init__(self, target: Calculation, inputs: Mapping[str, Array], count: int) -> None:
+        self.inputs, self.count = inputs, count
+        self.good = np.ones(count, dtype=bool)
+        self.results: dict[str, Any] = {}
+        self.mixture: case_stage.Mixture | None = None
+        self.ratio: Array | None = None
+        stages = {PropellantCase: self._case, Chamber: self._chamber, GasChamber: self._gas, Nozzle: self._nozzle}
+        for link in target.chain():
+            for name in link.declared_inputs:
+                if f"{link.kind}.{name}" in inputs:
+                    self.results[f"{link.kind}.{name}"] = inputs[f"{link.kind}.{name}"]
+            stages.get(type(link), self._performance)(link)
+
+    def value(self, link: Calculation, name: str) -> Any:
+        """Return an input as an array where it varies, else as the object has it."""
+        return self.inputs.get(f"{link.kind}.{name}", link._values[name])
+
+    def array(self, link: Calculation, name: str) -> Array:
+        """Return an input as an array."""
+        return np.broadcast_to(np.asarray(self.value(link, name), dtype=np.float64), (self.count,)).astype(np.float64)
+
+    def keep(self, link: Calculation, results: Mapping[str, Any]) -> None:
+        """Note results of an object."""
+        self.results.update({f"{link.kind}.{name}": values for name, values in results.items()})
+
+    def _case(self, link: Calculation) -> None:
+        oxidizer, fuel = (self._stream(link, role) for role in ROLES)
+        stoichiometric = case_stage.mixture_ratio_of(oxidizer, fuel, 1.0)
+        if link._values["mixture_ratio"] is not None:
+            self.ratio = self.array(link, "mixture_ratio")
+        else:
+            self.ratio = stoichiometric / self.array(link, "equivalence_ratio")
+        self.mixture = case_stage.two_streams(oxidizer, fuel, self.ratio)
+        self.keep(
+            link,
+            {
+                "mixture_ratio": self.ratio,
+                "equivalence_ratio": stoichiometric / self.ratio,
+                "stoichiometric_mixture_ratio": stoichiometric,
+                "enthalpy": self.mixture.enthalpy,
+                "bulk_density": self.mixture.density,
+            },
+        )
+
+    def _stream(self, link: Calculation, role: str) -> case_stage.Stream:
+        stream: case_stage.Stream = getattr(link.held, role)
+        enthalpy: Any = stream.enthalpy
+        density: Any = stream.density
+        stored = [f"{link.kind}.{role}_{name}" for name in ("temperature", "pressure")]
+        if any(path in self.inputs for path in stored):
+            temperature, pressure = (self.value(link, f"{role}_{name}") for name in ("temperature", "pressure"))
+            enthalpy, density = self._stored(link._values[role], temperature, pressure, role)
+        assigned = self.inputs.get(f"case.{role}.{_ENTHALPY}")
+        if assigned is not None:
+            molar_mass = float(link._values[role].row.molar_mass)
+            enthalpy = enthalpy + (assigned / molar_mass - float(getattr(link.held, role).enthalpy))
+        return case_stage.Stream(stream.elements, enthalpy, density)
+
+    def _stored(self, propellant: Any, temperature: Any, pressure: Any, role: str) -> tuple[Array, Array]:
+        columns = [
+            [None] * self.count if value is None else np.broadcast_to(value, (self.count,)).tolist()
+            for value in (temperature, pressure)
+        ]
+        known: dict[tuple[Any, Any], tuple[float, float]] = {}
+        for pair in zip(*columns, strict=True):
+            if pair not in known:
+                try:
+                    stream, _ = propellant.stream(*pair, role)
+                    known[pair] = (float(stream.enthalpy), float(stream.density))
+                except PropkitError:
+                    known[pair] = (math.nan, math.nan)
+        pairs = np.array([known[pair] for pair in zip(*columns, strict=True)])
+        nominal = propellant.stream(None, None, role)[0]
+        bad = ~np.isfinite(pairs[:, 0])
+        self.good &= ~bad
+        return np.where(bad, float(nominal.enthalpy), pairs[:, 0]), pairs[:, 1]
+
+    def _chamber(self, link: Calculation) -> None:
+        assert self.mixture is not None
+        self.reservoir: Any = chamber_stage.combust(
+            self.mixture,
+            link._values["thermo_basis"] if "thermo_basis" in link._values else link.upstream.si("thermo_basis"),  # type: ignore[arg-type,union-attr]
+            pressure=self.array(link, "pressure"),
+            contraction_ratio=self.array(link, "contraction_ratio"),
+            pressure_at=link._values["pressure_at"],
+        )
+        face, rest = self.reservoir.injector, self.reservoir.stagnation
+        self.good &= (face.status == 0) & (rest.status == 0) & (self.reservoir.throat.status == 0)
+        self.rest_pressure, self.efficiency = rest.pressure, self.array(link, "cstar_efficiency")
+        self.keep(link, {name: getattr(face, name) for name in chamber_stage.INJECTOR_RESULTS})
+        self.keep(
+            link,
+            {
+                "stagnation_pressure": rest.pressure,
+                "characteristic_velocity": self.reservoir.characteristic_velocity,
+                "cstar_efficiency": self.efficiency,
+                "contraction_ratio": self.reservoir.contraction_ratio,
+            },
+        )
+
+    def _gas(self, link: Calculation) -> None:
+        given = link._values["gas_constant"] is not None
+        gas_constant = self.array(link, "gas_constant") if given else GAS_CONSTANT / self.array(link, "molar_mass")
+        self.reservoir = chamber_stage.given_gas(
+            pressure=self.array(link, "pressure"),
+            temperature=self.array(link, "temperature"),
+            gas_constant=gas_constant,
+            isentropic_exponent=self.array(link, "isentropic_exponent"),
+            contraction_ratio=self.array(link, "contraction_ratio"),
+            pressure_at=link._values["pressure_at"],
+        )
+        gas = self.reservoir
+        self.rest_pressure, self.efficiency = gas.stagnation_pressure, self.array(link, "cstar_efficiency")
+        self.keep(
+            link,
+            {
+                "pressure": gas.injector_pressure,
+                "temperature": gas.temperature,
+                "density": gas.injector_pressure / (gas_constant * gas.temperature),
+                "sound_speed": np.sqrt(gas.isentropic_exponent * gas_constant * gas.temperature),
+                "isentropic_exponent": gas.isentropic_exponent,
+                "gas_constant": gas_constant,
+                "molar_mass": GAS_CONSTANT / gas_constant,
+                "stagnation_pressure": gas.stagnation_pressure,
+                "characteristic_velocity": gas.characteristic_velocity,
+                "cstar_efficiency": self.efficiency,
+                "contraction_ratio": gas.contraction_ratio,
+            },
+        )
+
+    def _nozzle(self, link: Calculation) -> None:
+        values = link._values
+        discharge = self.array(link, "discharge_coefficient")
+        given = [name for name in ("area_ratio", "exit_pressure") if name in link.inputs]
+        if given == ["exit_pressure"]:
+            ratio, pressure = None, self.array(link, "exit_pressure")
+        else:
+            ratio, pressure = (self.array(link, "area_ratio") if given else self._size_ratio(link)), None
+            possible = (ratio >= 1.0) & (ratio <= 1e4)
+            self.good &= possible
+            ratio = np.where(possible, ratio, 10.0)
+        expansion = nozzle_stage.expand(
+            self.reservoir,
+            flow=values["flow"],
+            freeze_at=values["freeze_at"],
+            exponent=values["exponent"],
+            area_ratio=None if ratio is None else ratio / discharge,
+            exit_pressure=pressure,
+        )
+        self.good &= (expansion.throat.status == 0) & (expansion.exit.status == 0) & (expansion.inlet.status == 0)
+        if pressure is not None:
+            self.good &= pressure <= expansion.throat.pressure
+        geometric = ratio if ratio is not None else expansion.area_ratio * discharge
+        self._sized(link, expansion, geometric, discharge)
+
+    def _size_ratio(self, link: Calculation) -> Array:
+        lip, throat = (
+            next(sizing.area_of(name, self.array(link, name)) for name in group if name in link.inputs)
+            for group in (sizing.EXIT_SIZES, sizing.THROAT_SIZES)
+        )
+        ratio: Array = np.asarray(lip) / np.asarray(throat)
+        return ratio
+
+    def _sized(self, link: Calculation, expansion: nozzle_stage.Expansion, ratio: Array, discharge: Array) -> None:
+        name = next(name for name in SIZES if name in link.inputs)
+        ambient = link._values["sizing_ambient"]
+        sizes = sizing.size(
+            name,
+            self.array(link, name),
+            mass_flux=expansion.mass_flux,
+            area_ratio=ratio,
+            exit_velocity=expansion.exit.velocity,
+            exit_pressure=expansion.exit.pressure,
+            ambient=ambient.pressure if ambient is not None else 0.0,
+            discharge_coefficient=discharge,
+            cstar_efficiency=self.efficiency,
+        )
+        self.good &= sizes.throat_area > 0.0
+        self.expansion, self.sizes = expansion, sizes
+        self.keep(
+            link,
+            {
+                "throat_area": sizes.throat_area,
+                "exit_area": sizes.exit_area,
+                "throat_diameter": np.sqrt(4.0 * sizes.throat_area / math.pi),
+                "exit_diameter": np.sqrt(4.0 * sizes.exit_area / math.pi),
+                "area_ratio": ratio,
+                "mass_flow": sizes.mass_flow,
+                "exit_pressure": expansion.exit.pressure,
+                "characteristic_velocity": self.rest_pressure * sizes.throat_area / sizes.mass_flow,
+            },
+        )
+        if name == "thrust":
+            self.keep(link, {"thrust": self.array(link, name)})
+        for place in ("inlet", "throat", "exit"):
+            state = getattr(expansion, place)
+            fields = {f"{place}.{name}": getattr(state, name, None) for name in STATE_FIELDS}
+            self.keep(link, {name: values for name, values in fields.items() if values is not None})
+
+    def _performance(self, link: Calculation) -> None:
+        exit_state, sizes = self.expansion.exit, self.sizes
+        given = self.inputs.get("performance.ambient")
+        ambient = np.broadcast_to(link._values["ambient"].pressure if given is None else given, (self.count,))
+        self.good &= ambient < self.rest_pressure
+        delivered = performance_stage.deliver(
+            mass_flow=sizes.mass_flow,
+            exit_velocity=exit_state.velocity,
+            exit_pressure=exit_state.pressure,
+            exit_area=sizes.exit_area,
+            throat_area=sizes.throat_area,
+            stagnation_pressure=self.rest_pressure,
+            ambient=ambient,
+            cstar_efficiency=self.efficiency,
+        )
+        self.keep(link, {name: getattr(delivered, name) for name in performance_stage.Delivery.__slots__})
+        self.keep(link, {"mass_flow": sizes.mass_flow, "ambient": ambient})
+        if self.ratio is not None and self.mixture is not None:
+            self.keep(
+                link,
+                {
+                    "oxidizer_mass_flow": stoichiometry.mix(self.ratio, sizes.mass_flow, 0.0),
+                    "fuel_mass_flow": stoichiometry.mix(self.ratio, 0.0, sizes.mass_flow),
+                    "density_impulse": thrust.density_impulse(delivered.specific_impulse, self.mixture.density),
+                },
+            )
+
+
+def function_of(target: Calculation, inputs: Sequence[str], results: Sequence[str] | None = None) -> ChainFunction:
+    """Return the batch function of an object over paths, with the results asked for or all its own."""
+    known = tuple(variable(target, path).path for path in inputs)
+    names = own_results(target) if results is None else tuple(result_name(target, name) for name in results)
+    return ChainFunction(target, known, names)
