@@ -29,7 +29,6 @@ ALIASES = {
     "deg": "degree",
     "sec": "second",
     "%": "percent",
-    "lbmol": "pound_mole",
 }
 """Unit names read in addition to pint's own."""
 

@@ -41,6 +41,7 @@ DOWNWARD = {
     "record_bundle": "propkit.record:bundle_of",
     "panel": "propkit.panels:panel_of",
     "plot": "propkit.plots:plot_of",
+    "figure": "propkit.plots.build:build",
 }
 """Method -> "module:function": the only references from the model to layers below it."""
 
@@ -428,8 +429,9 @@ class Calculation:
         return iter(())
 
     def cautions(self) -> tuple[str, ...]:
-        """Hazard lines of what the object is about."""
-        return tuple(line for link in self.chain()[:-1] for line in link.cautions())
+        """Hazard lines of what the chain is about, each once."""
+        above = self.upstream
+        return above.cautions() if above is not None else ()
 
 
 def display_bundle(calculation: Calculation, include: Any, exclude: Any) -> dict[str, Any]:

@@ -239,7 +239,7 @@ class Chamber(Calculation):
         """Yield composition and assumptions."""
         pairs = [(name, value) for name, value in self.held.composition() if value >= COMPOSITION_SHOWN]
         yield sheet.composition_table(
-            pairs, f"Mole fractions of {COMPOSITION_SHOWN:g} and above, at the injector face."
+            pairs, f"Mole fractions of {COMPOSITION_SHOWN:.5f} and above, at the injector face."
         )
         yield sheet.assumption_section(self)
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING
 
-from propkit import units
+from propkit import quantities, units
 from propkit.report import UnitSystem
 from propkit.series import Axis, Figure, Line, Mark, Series
 
@@ -32,8 +32,8 @@ def nozzle_figures(nozzle: Nozzle, system: UnitSystem) -> tuple[Figure, ...]:
     )
     end = wall[-1][0]
     marks = (
-        Mark(0.0, scale * throat, f"throat {scale * 2 * throat:.4g} {units.shown_unit(unit)}"),
-        Mark(scale * end, scale * lip, f"exit {scale * 2 * lip:.4g} {units.shown_unit(unit)}"),
+        Mark(0.0, scale * throat, f"throat {_diameter('throat_diameter', nozzle, system)}"),
+        Mark(scale * end, scale * lip, f"exit {_diameter('exit_diameter', nozzle, system)}"),
     )
     alt = f"Nozzle outline: throat diameter {scale * 2 * throat:.4g} {units.shown_unit(unit)}, exit diameter {scale * 2 * lip:.4g}, area ratio {nozzle.si('area_ratio'):.4g}"
     title = "Nozzle, diameters to scale; length schematic (15° cone)"
@@ -48,6 +48,12 @@ def nozzle_figures(nozzle: Nozzle, system: UnitSystem) -> tuple[Figure, ...]:
             equal_aspect=True,
         ),
     )
+
+
+def _diameter(name: str, nozzle: Nozzle, system: UnitSystem) -> str:
+    row = quantities.quantity(name)
+    unit = row.shown_in(system, (nozzle.si(name),))
+    return f"{units.convert(nozzle.si(name), row.unit, unit):.4g} {units.shown_unit(unit)}"
 
 
 def schematic_wall(throat: float, lip: float, chamber: float) -> list[tuple[float, float]]:

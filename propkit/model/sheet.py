@@ -145,7 +145,7 @@ def composition_along(stations: list[tuple[str, list[tuple[str, float]]]], small
     first = dict(stations[0][1])
     names = sorted(shown, key=lambda name: -first[name])
     columns = tuple(
-        Column(station, station, "x", "", 5, tuple(dict(pairs)[name] for name in names)) for station, pairs in stations
+        Column(station, station, "x", "", 4, tuple(dict(pairs)[name] for name in names)) for station, pairs in stations
     )
     note = f"Mole fractions, species of {smallest:g} and above at some station."
     return Section(

@@ -1,0 +1,118 @@
+r"""Reports as LaTeX: plain ``tabular`` and ``\paragraph``-free, to be put into a document."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Iterable
+
+from propkit.report import Report, Row, Section, Step, Table
+from propkit.view import cells, numbers
+from propkit.view.symbols import latex_species
+
+_ESCAPES = {
+    "\\": r"\textbackslash{}", "&": r"\&", "%": r"\%", "$": r"\$", "#": r"\#", "_": r"\_", "{": r"\{", "}": r"\}",
+    "~": r"\textasciitilde{}", "^": r"\textasciicircum{}", "<": r"\textless{}", ">": r"\textgreater{}", "\n": " ",
+}  # fmt: skip
+_MARKS = {"given": r"$\bullet$", "default": r"$\circ$", "computed": "="}
+_LETTERS = str.maketrans({"°": r"$^\circ$", "²": "$^2$", "³": "$^3$", "·": r"$\cdot$", "−": "--", "×": r"$\times$"})
+
+
+def escaped(text: str) -> str:
+    """Return a text in which nothing is a LaTeX command."""
+    return "".join(_ESCAPES.get(letter, letter) for letter in text).translate(_LETTERS)
+
+
+def unit_text(unit: str) -> str:
+    """Return a unit for LaTeX text."""
+    return escaped(cells.unit_text(unit)) if unit else ""
+
+
+def render(report: Report) -> str:
+    """Return the report as LaTeX."""
+    head = rf"\textbf{{{escaped(report.kind)}}}: {escaped(report.title)}" if report.title else rf"\textbf{{{escaped(report.kind)}}}"
+    blocks = [head]
+    if report.subtitle:
+        blocks.append(escaped(report.subtitle))
+    for rows in (report.headline, report.given):
+        if rows:
+            blocks.append(_rows(rows))
+    shown = {row.name for row in report.headline}
+    rest = [row for row in report.results if row.name not in shown]
+    if rest:
+        blocks.append(_rows(rest))
+    blocks += [_step(step) for step in report.steps]
+    blocks += [_section(section) for section in report.sections]
+    for title, lines in (("Warnings", report.doubts), ("Cautions", report.cautions)):
+        if lines:
+            blocks.append(_items(title, lines))
+    return "\n\n".join(blocks) + "\n"
+
+
+def _value(row: Row) -> str:
+    if row.value is None:
+        return "not available"
+    if isinstance(row.value, str):
+        return escaped(row.value)
+    sure = rf" \pm {numbers.latex(row.uncertainty, 2)}" if row.uncertainty is not None else ""
+    return f"${numbers.latex(row.value, row.digits)}{sure}$"
+
+
+def _rows(rows: Iterable[Row]) -> str:
+    lines = [r"\begin{tabular}{clrll}"]
+    for row in rows:
+        sign = f"${row.symbol}$" if row.symbol else ""
+        doubts = "".join(rf"; \emph{{{escaped(doubt)}}}" for doubt in row.doubts)
+        lines.append(rf"{_MARKS[row.kind]} & {escaped(row.label)}{doubts} {sign} & {_value(row)} & {unit_text(row.unit)} \\")
+    lines.append(r"\end{tabular}")
+    return "\n".join(lines).replace("{clrll}", "{clrl}")
+
+
+def _section(section: Section) -> str:
+    blocks = [rf"\textit{{{escaped(section.title)}}}"]
+    if section.rows:
+        blocks.append(_rows(section.rows))
+    if section.table is not None:
+        blocks.append(_table(section.table))
+    if section.lines:
+        blocks.append(_items("", section.lines))
+    return "\n\n".join(blocks)
+
+
+def _items(title: str, lines: Iterable[str]) -> str:
+    body = "\n".join(rf"\item {escaped(line)}" for line in lines)
+    head = rf"\textit{{{title}}}" + "\n\n" if title else ""
+    return rf"{head}\begin{{itemize}}" + f"\n{body}\n" + r"\end{itemize}"
+
+
+def _table(table: Table) -> str:
+    form = "l" + "".join("r" if cells.numeric(column) else "l" for column in table.columns)
+    heads = [escaped(table.index_label)]
+    for column in table.columns:
+        name = f"${column.symbol}$" if column.symbol and not cells.is_species(table.index_label) else escaped(column.label)
+        unit = unit_text(column.unit)
+        heads.append(f"{name} [{unit}]" if unit else name)
+    lines = [rf"\begin{{tabular}}{{{form}}}", " & ".join(heads) + r" \\ \hline"]
+    for position, entry in enumerate(table.index):
+        row = [f"${latex_species(entry)}$" if cells.is_species(table.index_label) else escaped(entry)]
+        for column in table.columns:
+            value = column.values[position]
+            row.append("" if value is None else escaped(value) if isinstance(value, str) else f"${numbers.latex(value, column.digits)}$")
+        lines.append(" & ".join(row) + r" \\")
+    lines.append(r"\end{tabular}")
+    note = f"\n\n{escaped(table.note)}" if table.note else ""
+    return "\n".join(lines) + note
+
+
+def _step(step: Step) -> str:
+    lines = [rf"\textit{{{escaped(step.label)}}}", f"\\[ {step.latex} \\]"]
+    if step.left is not None and step.right is not None:
+        lines.append(rf"\[ {numbers.latex(step.left, 10)} = {numbers.latex(step.right, 10)} \]")
+        lines.append(f"residual ${numbers.latex(step.residual or 0.0, 2)}$")
+    else:
+        lines.append(rf"\[ {step.numbers_latex} \]")
+        if step.result is not None:
+            lines.append(f"{_value(step.result)} {unit_text(step.result.unit)}")
+    if step.source:
+        lines.append(escaped(cells.reference(step.source)))
+    return "\n\n".join(lines)
+

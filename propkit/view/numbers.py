@@ -1,0 +1,60 @@
+"""Numbers as a person reads them: significant digits, grouped from five digits on, a true minus, powers of ten written out."""
+
+from __future__ import annotations
+
+import math
+
+THIN = "\u202f"
+MINUS = "\u2212"
+_SUPERSCRIPTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
+
+
+def rounded(value: float, digits: int) -> str:
+    """Return a number with `digits` significant digits in plain notation (``3594.58``, ``2.903e-05``)."""
+    if not math.isfinite(value):
+        return {math.inf: "infinite", -math.inf: "-infinite"}.get(value, "-")
+    if value == 0.0:
+        return "0"
+    exponent = math.floor(math.log10(abs(value)))
+    if exponent >= 7 or exponent < -4:
+        mantissa, _, power = f"{value:.{max(digits - 1, 0)}e}".partition("e")
+        return f"{mantissa}e{int(power)}"
+    return f"{value:.{max(digits - 1 - exponent, 0)}f}"
+
+
+def pretty(value: float, digits: int) -> str:
+    """Return a number as it is set in a sheet: ``12 345.6``, ``2.903 × 10⁻⁵``."""
+    text = rounded(value, digits)
+    mantissa, letter, power = text.partition("e")
+    if not letter or not power.lstrip("-").isdigit():
+        return grouped(text) if text[-1:].isdigit() else text
+    return f"{grouped(mantissa)}{THIN}×{THIN}10{power.translate(_SUPERSCRIPTS)}"
+
+
+def grouped(text: str) -> str:
+    """Return a plain number grouped by threes on both sides of the point from five digits on, with a true minus."""
+    sign, body = (MINUS, text[1:]) if text.startswith("-") else ("", text)
+    whole, point, part = body.partition(".")
+    if len(whole) > 4:
+        head = len(whole) % 3
+        groups = ([whole[:head]] if head else []) + [whole[k : k + 3] for k in range(head, len(whole), 3)]
+        whole = THIN.join(groups)
+    return f"{sign}{whole}{point}{part}"
+
+
+def aligned(texts: list[str]) -> list[str]:
+    """Return numbers padded behind, so that right alignment puts their decimal signs under each other."""
+    parts = [(text, len(text.partition(".")[2]) if "." in text else -1) for text in texts]
+    widest = max((length for _, length in parts), default=-1)
+    if widest < 0:
+        return texts
+    return [text + ("\u2008" if length < 0 else "") + "\u2007" * (widest - max(length, 0)) for text, length in parts]
+
+
+def latex(value: float, digits: int) -> str:
+    r"""Return a number in LaTeX: ``2.903 \times 10^{-5}``."""
+    text = rounded(value, digits)
+    mantissa, letter, power = text.partition("e")
+    if letter and power.lstrip("-").isdigit():
+        return rf"{mantissa} \times 10^{{{power}}}"
+    return rf"\text{{{text}}}" if not text[-1:].isdigit() else text

@@ -1,0 +1,25 @@
+"""Colours of the project: one accent and a colour-blind-safe set for series, the same in SVG, Bokeh, panel and PDF."""
+
+from __future__ import annotations
+
+from typing import Final
+
+INK: Final = "#1d2733"
+QUIET: Final = "#5d6b78"
+HAIRLINE: Final = "#c9d1d8"
+PLATE: Final = "#fcfbf8"
+ACCENT: Final = "#b3481b"
+"""Burnt sienna: answers, given values, the current design."""
+ACCENT_DARK: Final = "#f0905f"
+DOUBT: Final = "#8a6100"
+DOUBT_DARK: Final = "#e9bd57"
+BAR_DARK: Final = "#7fb0dd"
+
+SERIES: Final = ("#2f5d8a", "#b3481b", "#3d8c7d", "#c79a2b", "#7a5c9e", "#8f9aa3")
+"""Slate blue, sienna, sea green, ochre, plum, grey: told apart by lightness too, and with the usual colour deficiencies."""
+
+
+def colour(which: int | str) -> str:
+    """Return the colour of a series number, or of ``ink``, ``accent``, ``quiet``."""
+    named = {"ink": INK, "accent": ACCENT, "quiet": QUIET}
+    return named[which] if isinstance(which, str) else SERIES[which % len(SERIES)]
