@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 SOURCES: dict[str, str] = {
-    "definition": "Definition of the quantity (see the catalogue row).",
+    "definition": "Definition of the quantity.",
     "si-brochure": "BIPM, The International System of Units (SI Brochure), 9th edition, 2019.",
     "codata-2018": "E. Tiesinga et al., CODATA recommended values of the fundamental physical constants: 2018, Rev. Mod. Phys. 93 (2021) 025010.",
     "tm4513": "B. J. McBride, S. Gordon, M. A. Reno, Coefficients for Calculating Thermodynamic and Transport Properties of Individual "
