@@ -28,6 +28,11 @@ _PUBLIC = {
     "blend": "propkit.model.blend",
     "propellants": "propkit.model.propellant",
     "load_propellants": "propkit.model.propellant",
+    "Uncertainty": "propkit.study.uncertainty",
+    "Normal": "propkit.study.distributions",
+    "Uniform": "propkit.study.distributions",
+    "Triangular": "propkit.study.distributions",
+    "Empirical": "propkit.study.distributions",
     "Record": "propkit.record",
     "show_versions": "propkit.versions",
     "PropkitError": "propkit.errors",
@@ -76,4 +81,9 @@ if TYPE_CHECKING:
     from propkit.model.propellant_case import PropellantCase as PropellantCase
     from propkit.model.state import State as State
     from propkit.record import Record as Record
+    from propkit.study.distributions import Empirical as Empirical
+    from propkit.study.distributions import Normal as Normal
+    from propkit.study.distributions import Triangular as Triangular
+    from propkit.study.distributions import Uniform as Uniform
+    from propkit.study.uncertainty import Uncertainty as Uncertainty
     from propkit.versions import show_versions as show_versions

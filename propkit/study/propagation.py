@@ -25,6 +25,8 @@ Array = npt.NDArray[np.float64]
 
 BLOCK = 2500
 """Trials in one block."""
+NOTHING = 1e-11
+"""Share of a value below which a spread is rounding."""
 ADAPTIVE_ROUND = 10_000
 """Trials between two looks at the tolerance: max(100/(1 - p) rounded up, 10 000), JCGM 101 clause 7.9.4 b."""
 ADAPTIVE_MOST = 1_000_000
@@ -170,6 +172,10 @@ def first_order(
     for place, name in enumerate(results):
         for path, value in (derivatives or {}).get(name, {}).items():
             slopes[place, inputs.paths.index(path)] = value
+    # differences leave rounding where an input has no effect
+    effects = np.abs(slopes) * deviations
+    floor = np.maximum(1e-9 * effects.max(axis=1), NOTHING * np.abs(table[:, 0]))
+    slopes = np.where(effects > floor[:, None], slopes, 0.0)
     covariance = slopes @ inputs.covariance @ slopes.T
     variance = np.diag(covariance)[:, None]
     mixed = slopes * (slopes @ inputs.covariance)
