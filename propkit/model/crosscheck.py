@@ -21,12 +21,13 @@ class CrossCheck:
     """An independent solution of chamber, throat and exit, beside ours.
 
     `stations` and `differences` map station (``chamber``, ``throat``, ``exit``) and quantity to the second engine's SI value and to
-    (ours - theirs) / theirs; enthalpy and entropy relative to R T and R. `largest` is the largest of them.
+    (ours - theirs) / theirs; enthalpy and entropy relative to R T and R. `ours` holds the values compared with. `largest` is the largest of them.
     """
 
     engine: str
     stations: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
     differences: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
+    ours: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
 
     @property
     def largest(self) -> float:
@@ -62,18 +63,20 @@ def cross_check(performance: Performance) -> CrossCheck:
         held.atoms[0].tolist(),
         enthalpy=float(held.stagnation.enthalpy[0]),
         pressure=float(held.stagnation.pressure[0]),
-        flow=nozzle.flow,  # type: ignore[arg-type]
+        flow=nozzle.flow,
         area_ratio=nozzle.si("area_ratio") / discharge,
         freeze_at=freeze_at / discharge if isinstance(freeze_at, float) else freeze_at,
         inlet_pressure=float(held.inlet.pressure[0]),
     )
     if solution.reason:
         raise NotAvailableError(solution.reason)
-    differences = solution.differences(_ours(performance))
+    ours = _ours(performance)
+    differences = solution.differences(ours)
     return CrossCheck(
         solution.engine,
         {_STATIONS[name]: dict(values) for name, values in solution.stations.items()},
         {_STATIONS[name]: values for name, values in differences.items()},
+        {_STATIONS[name]: values for name, values in ours.items()},
     )
 
 

@@ -14,7 +14,7 @@ from propkit.record import build, schema
 from propkit.record.canonical import canonical_bytes, digest_of, sealed, whole_digest
 from propkit.record.outcome import Verification
 from propkit.record.storage import write_atomically
-from propkit.record.verify import verify_document
+from propkit.record.verify import seal_checks, verify_document
 
 WRITERS = {
     ".html": "propkit.memo.record_page:record_page",
@@ -89,6 +89,11 @@ class Record:
                 raise RecordError("the recipe of the record makes an object that the record does not hold")
             self._calculation = made
         return self._calculation
+
+    @property
+    def sealed(self) -> bool:
+        """Whether both digests are those of the document: it was not changed since it was sealed."""
+        return all(check.status == "same" for check in seal_checks(self._document, self._seals))
 
     def verify(self, name: str = "record") -> Verification:
         """Return what comes out when everything is recomputed from the inputs and compared.

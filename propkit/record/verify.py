@@ -8,7 +8,8 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 from typing import Any
 
-from propkit.errors import PropkitError
+from propkit.bridge.second_engine import SecondSolution
+from propkit.errors import PropkitError, RecordError
 from propkit.model.base import Calculation, from_recipe
 from propkit.record.build import FREE_TEXT, SMALLEST_FRACTION, content_of
 from propkit.record.canonical import digest_of, whole_digest
@@ -43,37 +44,64 @@ def verify_document(document: Mapping[str, Any], name: str, seals: tuple[str, st
     Verification
         What was compared, and the outcome.
     """
-    checks = list(_seal_checks(document, seals or (digest_of(document["content"]), whole_digest(document))))
+    checks = [*seal_checks(document, seals or (digest_of(document["content"]), whole_digest(document)))]
     if migrated_from is not None:
         checks.append(Check("schema", "noted", f"written in version {migrated_from}, read through its migrations"))
-    versions = _version_notes(document["provenance"]["versions"])
-    checks += versions
-    content = document["content"]
     try:
-        calculation = from_recipe(content["recipe"])
-        if not isinstance(calculation, Calculation) or not hasattr(calculation, "chain") or calculation.kind not in content["objects"]:
-            raise PropkitError(f"the recipe makes a {getattr(calculation, 'kind', 'thing')!r} that the record does not hold")
-        texts = {entry: str(content[entry]) for entry in FREE_TEXT}
-        again = content_of(calculation, texts, SMALLEST_FRACTION * (1.0 - _EDGE))
+        again = recomputed(document["content"])
     except PropkitError as error:
         checks.append(Check("recompute", "differs", f"the record cannot be recomputed: {error.message}"))
-        return Verification(name, document["digest"], _label(content), tuple(checks), ())
+        return Verification(name, document["digest"], _label(document["content"]), tuple(checks), ())
+    return judged(document, again, name, tuple(checks))
+
+
+def recomputed(content: Mapping[str, Any]) -> dict[str, Any]:
+    """Return the content that the recipe of a record gives now.
+
+    Raises
+    ------
+    PropkitError
+        When the recipe is refused, has no solution, or makes an object that the record does not hold.
+    """
+    calculation = from_recipe(content["recipe"])
+    if not isinstance(calculation, Calculation) or calculation.kind not in content["objects"]:
+        raise RecordError(f"its recipe makes a {getattr(calculation, 'kind', 'thing')}, which the record does not hold")
+    texts = {entry: str(content[entry]) for entry in FREE_TEXT}
+    return content_of(calculation, texts, SMALLEST_FRACTION * (1.0 - _EDGE))
+
+
+def judged(document: Mapping[str, Any], again: Mapping[str, Any], name: str, seals: tuple[Check, ...] = ()) -> Verification:
+    """Return the comparison of a document with its content computed again.
+
+    Parameters
+    ----------
+    document : mapping
+        A record.
+    again : mapping
+        Its content as `recomputed` gives it.
+    name : str
+        What to call it.
+    seals : tuple of Check
+        Checks that come first.
+    """
+    content = document["content"]
+    versions = _version_notes(document["provenance"]["versions"])
     found = [leaf for leaf in leaves(content, again) if leaf.path not in FREE_TEXT and not _on_the_edge(leaf)]
-    found = [_engine_difference(leaf, content) for leaf in found]
-    data, data_leaves = _data_notes(found)
-    checks += data
+    found = _engine_judged(found, content)
+    data, noted = _data_notes(found)
     moved = bool(data) or any(check.name.removeprefix("version of ") in _CAN_MOVE_NUMBERS for check in versions)
-    compared = tuple(leaf for leaf in found if leaf.path not in data_leaves)
-    checks += _comparison_checks(compared, moved)
-    checks.append(Check("free text", "noted", "title, author, purpose and notes follow from nothing and are not checked"))
-    return Verification(name, document["digest"], _label(content), tuple(checks), compared)
+    compared = tuple(leaf for leaf in found if leaf.path not in noted)
+    free = Check("free text", "noted", "title, author, purpose and notes follow from nothing and are not checked")
+    checks = (*seals, *versions, *data, *_comparison_checks(compared, moved), free)
+    return Verification(name, document["digest"], _label(content), checks, compared)
 
 
 def _label(content: Mapping[str, Any]) -> str:
     return str(content["title"] or content["description"])
 
 
-def _seal_checks(document: Mapping[str, Any], computed: tuple[str, str]) -> Iterator[Check]:
+def seal_checks(document: Mapping[str, Any], computed: tuple[str, str]) -> Iterator[Check]:
+    """Yield whether the stored digests are those of the document; `computed` holds content digest and digest."""
     stored = (document["provenance"]["content_digest"], document["digest"])
     for label, kept, found in zip(("content digest", "digest"), stored, computed, strict=True):
         if kept == found:
@@ -128,5 +156,18 @@ def _on_the_edge(leaf: Leaf) -> bool:
     return len(sides) == 1 and isinstance(sides[0], float) and abs(sides[0] / SMALLEST_FRACTION - 1.0) <= _EDGE
 
 
-def _engine_difference(leaf: Leaf, content: Mapping[str, Any]) -> Leaf:
-    return leaf
+def _engine_judged(found: list[Leaf], content: Mapping[str, Any]) -> list[Leaf]:
+    """Return the leaves with the differences of the second engine judged by the record's own two solutions.
+
+    They are noise near 1e-10: computed on another machine they differ, but they always follow from the two solutions
+    beside them, which are recomputed themselves.
+    """
+    stored = content["second_engine"]
+    try:
+        solution = SecondSolution(str(stored["engine"]), stored["stations"])
+        own = solution.differences(stored["ours"])
+    except (KeyError, TypeError, AttributeError, ZeroDivisionError):
+        return found
+    prefix = "second_engine.differences"
+    kept = [leaf for leaf in found if not leaf.path.startswith(f"{prefix}.")]
+    return [*kept, *leaves(stored.get("differences", {}), own, prefix)]

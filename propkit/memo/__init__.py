@@ -1,0 +1,1 @@
+"""Memos: notebooks executed and bound, records set as pages, PDF and archives."""

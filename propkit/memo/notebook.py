@@ -1,0 +1,156 @@
+"""From a notebook to its memo: execute, bind the records, write everything beside each other."""
+
+from __future__ import annotations
+
+import copy
+import json
+import re
+import unicodedata
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+from propkit import units
+from propkit.errors import MissingExtraError
+from propkit.memo import execute as execution
+from propkit.memo.blocks import blocks_of, title_of, without_title
+from propkit.memo.page import Bound, notebook_page
+from propkit.record.containers import Contents, records_of
+from propkit.record.record import Record
+from propkit.record.storage import make_folder, write_atomically
+
+_HEADLINES = {
+    "performance": (("thrust", "thrust"), ("specific_impulse", "specific impulse"), ("mass_flow", "mass flow")),
+    "nozzle": (("mass_flow", "mass flow"), ("throat_diameter", "throat diameter"), ("exit_diameter", "exit diameter")),
+    "chamber": (("temperature", "temperature"), ("characteristic_velocity", "characteristic velocity")),
+    "case": (("mixture_ratio", "mixture ratio"), ("bulk_density", "bulk density")),
+}
+
+
+@dataclass(slots=True)
+class Written:
+    """What was written, and what went wrong while the notebook was executed."""
+
+    written: list[Path] = field(default_factory=list)
+    error: str = ""
+
+
+def write_memo(
+    path: str | Path,
+    out: str | Path | None = None,
+    *,
+    execute: bool = True,
+    timeout: int = 600,
+    say: Callable[[str], None] = print,
+) -> Written:
+    """Execute a notebook and write the executed notebook, its HTML and PDF memos and the records it carries.
+
+    Parameters
+    ----------
+    path : str or Path
+        The notebook.
+    out : str or Path, optional
+        Folder to write to; the notebook's own unless given.
+    execute : bool
+        False takes an already executed notebook as it is.
+    timeout : int
+        Seconds that one cell may take.
+    say : callable
+        Told what happens.
+
+    Returns
+    -------
+    Written
+        The files, and the error of a cell that raised: the partial notebook is kept then.
+
+    Raises
+    ------
+    StorageError, RecordError, MissingExtraError
+        When the notebook cannot be read, a file cannot be written, or the memo extra is absent.
+    """
+    notebook_path = Path(path)
+    notebook = execution.read_notebook(notebook_path)
+    folder = make_folder(out if out is not None else notebook_path.parent)
+    outcome = Written()
+    if execute:
+        say(f"executing {notebook_path.name}: this runs its code, in this Python")
+        outcome.error = execution.execute(notebook, notebook_path.resolve().parent, timeout, say)
+        data = _notebook_bytes(notebook)
+        suffix = ".partial.ipynb" if outcome.error and folder.resolve() == notebook_path.resolve().parent else ".ipynb"
+        outcome.written.append(write_atomically(folder / f"{notebook_path.stem}{suffix}", data))
+    else:
+        data = _notebook_bytes(notebook)
+    contents = records_of(".ipynb", data, notebook_path.name)
+    bound = _bind(contents)
+    blocks = list(blocks_of(notebook))
+    title = title_of(blocks, notebook_path.stem.replace("_", " "))
+    page = notebook_page(title, notebook_path.name, without_title(blocks), bound, outcome.error)
+    outcome.written.append(write_atomically(folder / f"{notebook_path.stem}.html", page.encode()))
+    _write_pdf(folder / f"{notebook_path.stem}.pdf", title, notebook_path.name, without_title(blocks), bound, outcome, say)
+    taken: set[str] = set()
+    for entry in bound:
+        outcome.written.append(entry.record.save(folder / f"{_file_name(entry.record, taken)}.record.json"))
+    for entry in bound:
+        say(f"{entry.record.title}: {entry.headline} ({entry.verification.status})")
+    return outcome
+
+
+def _write_pdf(path: Path, title: str, source: str, blocks: list[Any], bound: list[Bound], outcome: Written, say: Callable[[str], None]) -> None:
+    try:
+        from propkit.memo.notebook_pdf import notebook_pdf
+    except ImportError:
+        return
+    try:
+        outcome.written.append(write_atomically(path, notebook_pdf(title, source, blocks, bound, outcome.error)))
+    except MissingExtraError as error:
+        say(f"no PDF: {error}")
+
+
+def _notebook_bytes(notebook: Any) -> bytes:
+    from nbformat.v4.rwbase import split_lines
+
+    divided = split_lines(copy.deepcopy(notebook))
+    return (json.dumps(divided, indent=1, ensure_ascii=False, sort_keys=True, allow_nan=False) + "\n").encode()
+
+
+def _bind(contents: Contents) -> list[Bound]:
+    """Return the records of a notebook, each once, with their verification, in the order of the notebook."""
+    made: dict[str, Bound] = {}
+    for entry in contents.found:
+        if entry.record.digest not in made:
+            made[entry.record.digest] = Bound(entry.record, entry.record.verify(entry.place), headline(entry.record))
+    return list(made.values())
+
+
+def headline(record: Record) -> str:
+    """Return the answer of a record in one line, in display units."""
+    from propkit import quantities
+
+    content = record.content
+    kind = content["object"]
+    stored: Mapping[str, Any] = content["objects"][kind]
+    parts = []
+    for name, words in _HEADLINES[kind]:
+        entry = stored["results"].get(name) or stored["inputs"].get(name)
+        if entry is None or not isinstance(entry["value"], int | float):
+            continue
+        quantity = quantities.quantity(name, kind)
+        unit = quantity.shown_in("SI", (entry["value"],))
+        value = units.convert(float(entry["value"]), quantity.unit, unit)
+        parts.append(f"{words} {value:.{quantity.digits}g} {units.shown_unit(unit)}".strip())
+    return ", ".join(parts)
+
+
+def _file_name(record: Record, taken: set[str]) -> str:
+    plain = unicodedata.normalize("NFKD", record.title).encode("ascii", "ignore").decode()
+    name = re.sub(r"[^a-z0-9]+", "-", plain.casefold()).strip("-")[:60].strip("-") or "record"
+    unique, number = name, 1
+    while unique in taken:
+        number += 1
+        unique = f"{name}-{number}"
+    taken.add(unique)
+    return unique
+
+
+

@@ -1,0 +1,170 @@
+"""The HTML memo of a notebook: one file, no script, no load from anywhere, readable on a phone and on paper."""
+
+from __future__ import annotations
+
+import base64
+import html
+import re
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+
+from propkit.memo import equations
+from propkit.memo.blocks import Block
+from propkit.memo.clean import clean
+from propkit.memo.style import PAGE_STYLE
+from propkit.record.build import CAUTIONS
+from propkit.record.containers import record_template
+from propkit.record.outcome import Verification
+from propkit.record.record import Record
+
+
+@dataclass(frozen=True, slots=True)
+class Bound:
+    """A record as a memo binds it: the record, its verification, and its headline in words."""
+
+    record: Record
+    verification: Verification
+    headline: str
+
+
+def notebook_page(title: str, source: str, blocks: Sequence[Block], records: Sequence[Bound], error: str = "") -> str:
+    """Return the memo of an executed notebook as a whole page.
+
+    Parameters
+    ----------
+    title : str
+        Title of the memo.
+    source : str
+        Name of the notebook.
+    blocks : sequence of Block
+        What the notebook holds.
+    records : sequence of Bound
+        The records that it carries.
+    error : str
+        What went wrong while it was executed.
+    """
+    styles: dict[str, None] = {}
+    body = [_block(block, styles) for block in blocks if block.kind != "code"]
+    parts = [
+        title_block(title, [("notebook", source), *_facts(records)]),
+        f'<p class="failure">The notebook stopped: {html.escape(error)}</p>' if error else "",
+        summary(records),
+        f'<main class="narrative">{"".join(body)}</main>',
+        record_section(records),
+        cautions(CAUTIONS),
+        _code_appendix(blocks),
+        "".join(record_template(bound.record) for bound in records),
+    ]
+    return whole_page(title, "".join(parts), styles)
+
+
+def whole_page(title: str, body: str, styles: Iterable[str] = ()) -> str:
+    """Return a page of a body: language, character set, style sheets."""
+    sheets = "\n".join((PAGE_STYLE, *styles))
+    policy = "default-src 'none'; img-src data:; style-src 'unsafe-inline'"
+    return (
+        '<!doctype html>\n<html lang="en">\n<head>\n<meta charset="utf-8">\n'
+        f'<meta http-equiv="Content-Security-Policy" content="{policy}">\n'
+        '<meta name="viewport" content="width=device-width, initial-scale=1">\n'
+        f'<meta name="generator" content="propkit">\n<title>{html.escape(title)}</title>\n<style>{sheets}</style>\n</head>\n'
+        f"<body><article>{body}</article></body>\n</html>\n"
+    )
+
+
+def title_block(title: str, facts: Iterable[tuple[str, str]]) -> str:
+    """Return the title block: title, then facts as pairs."""
+    listed = "".join(f"<div><dt>{html.escape(name)}</dt><dd>{html.escape(value)}</dd></div>" for name, value in facts if value)
+    return f'<header class="title-block"><h1>{html.escape(title)}</h1><dl>{listed}</dl></header>'
+
+
+def _facts(records: Sequence[Bound]) -> list[tuple[str, str]]:
+    if not records:
+        return []
+    last = records[-1].record
+    content, provenance = last.content, last.provenance
+    return [
+        ("author", content["author"]),
+        ("purpose", content["purpose"]),
+        ("date", provenance["time"].replace("T", " ").replace("Z", " UTC")),
+        ("computed with", f"propkit {provenance['versions']['propkit']}"),
+        ("record", f"{last.digest[7:19]} ({last.digest[:6]}, first 12 digits)"),
+    ]
+
+
+def summary(records: Sequence[Bound]) -> str:
+    """Return the answer that the analyst came for, from the last record."""
+    if not records:
+        return ""
+    last = records[-1]
+    return f'<section class="summary"><p class="headline">{html.escape(last.headline)}</p><p class="quiet">{html.escape(last.record.content["description"])}</p></section>'
+
+
+def record_section(records: Sequence[Bound]) -> str:
+    """Return the records with their digests and what recomputing them gave."""
+    if not records:
+        return '<section><h2>Records</h2><p>This notebook shows no object that carries a record.</p></section>'
+    rows = "".join(
+        f"<tr><td>{html.escape(bound.record.title)}</td><td class='digest'>{bound.record.digest[7:]}</td>"
+        f"<td>{html.escape(bound.verification.status)}, {len(bound.verification.leaves)} values</td></tr>"
+        for bound in records
+    )
+    return (
+        "<section><h2>Records</h2><p>Each record was recomputed from its inputs when this memo was written, and compared value by value. "
+        "This page carries them: <code>propkit verify</code> on this file does the same again.</p>"
+        f'<table class="records"><thead><tr><th>record</th><th>SHA-256</th><th>outcome</th></tr></thead><tbody>{rows}</tbody></table></section>'
+    )
+
+
+def cautions(lines: Iterable[str]) -> str:
+    """Return the cautions."""
+    listed = "".join(f"<li>{html.escape(line)}</li>" for line in lines)
+    return f'<section class="cautions"><h2>Cautions</h2><ul>{listed}</ul></section>'
+
+
+def _code_appendix(blocks: Sequence[Block]) -> str:
+    code = [block for block in blocks if block.kind == "code"]
+    if not code:
+        return ""
+    cells = "".join(f'<div class="cell"><span class="number">{block.cell}</span>{highlighted(block.text)}</div>' for block in code)
+    return f'<section class="appendix"><h2>Code</h2><p class="quiet">What was executed, in this order.</p>{cells}</section>'
+
+
+def highlighted(code: str) -> str:
+    """Return Python code with its comments, names and texts told apart."""
+    try:
+        from pygments import highlight
+        from pygments.formatters import HtmlFormatter
+        from pygments.lexers import PythonLexer
+    except ImportError:
+        return f"<pre>{html.escape(code)}</pre>"
+    made: str = highlight(code, PythonLexer(), HtmlFormatter(nowrap=True))
+    return f"<pre>{made}</pre>"
+
+
+def _block(block: Block, styles: dict[str, None]) -> str:
+    if block.kind == "markdown":
+        return f'<div class="prose">{markdown_html(block.text)}</div>'
+    if block.kind == "html":
+        text, sheets = clean(block.text)
+        styles.update(dict.fromkeys(sheets))
+        return f'<div class="output">{text}</div>'
+    if block.kind == "picture":
+        return f'<div class="output">{_picture(block)}</div>'
+    if block.kind == "error":
+        return f'<p class="failure">{html.escape(block.text)}</p>'
+    return f'<div class="output"><pre class="printed">{html.escape(block.text)}</pre></div>'
+
+
+def _picture(block: Block) -> str:
+    data = base64.b64encode(block.text.encode()).decode() if block.media == "image/svg+xml" else re.sub(r"[^A-Za-z0-9+/=]", "", block.text)
+    return f'<img alt="figure of cell {block.cell}" src="data:{block.media};base64,{data}">'
+
+
+def markdown_html(text: str) -> str:
+    """Return Markdown as clean HTML with its equations as pictures."""
+    import mistune
+
+    marked, found = equations.take_out(text)
+    render = mistune.create_markdown(escape=False, plugins=["table", "strikethrough", "footnotes", "def_list"])
+    made, _ = clean(str(render(marked)))
+    return equations.put_back(made, found)
