@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from propkit import units
 from propkit.report import Column, Report, Row
-from propkit.sources import reference
 
 MARKS = {"given": "●", "default": "○", "computed": "="}
 """How given, default and computed are told apart without colour."""
@@ -34,12 +33,6 @@ def legend_of(report: Report) -> list[str]:
     """Return the kinds of rows that the report has, for the legend of the marks."""
     present = {row.kind for row in report.rows()}
     return [kind for kind, _ in LEGEND if kind in present]
-
-
-def sources_of(report: Report) -> list[tuple[str, str]]:
-    """Return (key, full reference) of every source that the rows and steps name, in order of appearance."""
-    keys = [row.source for row in report.rows()] + [step.source for step in report.steps]
-    return [(key, reference(key)) for key in dict.fromkeys(key for key in keys if key)]
 
 
 def is_species(index_label: str) -> bool:

@@ -10,6 +10,7 @@ from collections.abc import Iterable
 from html import escape
 
 from propkit.report import Column, Report, Row, Section, Step, Table
+from propkit.sources import reference
 from propkit.view import cells, equations, numbers, svg
 from propkit.view.style import STYLE
 from propkit.view.symbols import html_species, html_symbol
@@ -31,10 +32,16 @@ def render(report: Report) -> str:
     if sections:
         parts.append(f"<div class='propkit-parts'>{''.join(sections)}</div>")
     if report.cautions:
-        parts.append("<p class='propkit-note'>Cautions. " + " ".join(escape(_sentence(line)) for line in report.cautions) + "</p>")
+        parts.append(
+            "<p class='propkit-note'>Cautions. "
+            + " ".join(escape(_sentence(line)) for line in report.cautions)
+            + "</p>"
+        )
     legend = cells.legend_of(report)
     if legend:
-        parts.append("<p class='propkit-legend'>" + " &#160; ".join(f"{cells.MARKS[kind]} {kind}" for kind in legend) + "</p>")
+        parts.append(
+            "<p class='propkit-legend'>" + " &#160; ".join(f"{cells.MARKS[kind]} {kind}" for kind in legend) + "</p>"
+        )
     return "".join(parts) + "</div>"
 
 
@@ -84,7 +91,9 @@ def _body(report: Report) -> str:
     if rest:
         columns.append(f"<div>{_rows(rest, 'Results')}</div>")
     if report.figures:
-        pictures = "".join(f"<img src='{svg.data_uri(figure)}' alt='{escape(figure.alt)}'>" for figure in report.figures)
+        pictures = "".join(
+            f"<img src='{svg.data_uri(figure)}' alt='{escape(figure.alt)}'>" for figure in report.figures
+        )
         columns.append(f"<div class='propkit-pic'>{pictures}</div>")
     return f"<div class='propkit-body'>{''.join(columns)}</div>" if columns else ""
 
@@ -117,7 +126,9 @@ def _section(section: Section) -> str:
         inner.append(_table(section.table))
     if section.lines:
         items = "".join(f"<li>{escape(line)}</li>" for line in section.lines)
-        inner.append(f"<table role='presentation'><caption>{escape(section.title)}</caption></table><ul class='propkit-lines'>{items}</ul>")
+        inner.append(
+            f"<table role='presentation'><caption>{escape(section.title)}</caption></table><ul class='propkit-lines'>{items}</ul>"
+        )
     return f"<div{' class=propkit-full' if wide else ''}>{''.join(inner)}</div>"
 
 
@@ -130,7 +141,11 @@ def _table(table: Table) -> str:
     if bars:
         heads.append("<th class='propkit-barcell'></th>")
     texts = [_column_texts(column) for column in table.columns]
-    largest = max((value for value in table.columns[0].values if isinstance(value, int | float)), default=1.0) if bars else 1.0
+    largest = (
+        max((value for value in table.columns[0].values if isinstance(value, int | float)), default=1.0)
+        if bars
+        else 1.0
+    )
     body = []
     for position, entry in enumerate(table.index):
         name = html_species(entry) if species else escape(entry)
@@ -141,7 +156,9 @@ def _table(table: Table) -> str:
         if bars:
             value = table.columns[0].values[position]
             share = 100.0 * float(value) / float(largest) if isinstance(value, int | float) and largest else 0.0
-            row.append(f"<td class='propkit-barcell' aria-hidden='true'><span class='propkit-bar' style='width:{share:.1f}%'></span></td>")
+            row.append(
+                f"<td class='propkit-barcell' aria-hidden='true'><span class='propkit-bar' style='width:{share:.1f}%'></span></td>"
+            )
         body.append(f"<tr>{''.join(row)}</tr>")
     note = f"<p class='propkit-note'>{escape(table.note)}</p>" if table.note else ""
     return (
@@ -160,7 +177,10 @@ def _head(column: Column, species: bool) -> str:
 
 def _column_texts(column: Column) -> list[str]:
     written = html_species if column.name == "formula" else escape
-    plain = ["" if value is None else written(value) if isinstance(value, str) else numbers.pretty(value, column.digits) for value in column.values]
+    plain = [
+        "" if value is None else written(value) if isinstance(value, str) else numbers.pretty(value, column.digits)
+        for value in column.values
+    ]
     numeric = [isinstance(value, int | float) for value in column.values]
     padded = iter(numbers.aligned([text for text, number in zip(plain, numeric, strict=True) if number]))
     return [next(padded) if number else text for text, number in zip(plain, numeric, strict=True)]
@@ -170,17 +190,23 @@ def _equation(latex: str, text: str) -> str:
     drawn = equations.svg_of(latex)
     if drawn is None:
         return f"<p><code>{escape(text)}</code></p>"
-    source = base64.b64encode(drawn.encode()).decode()
+    source = base64.b64encode(drawn[0].encode()).decode()
     return f"<p class='propkit-eq'><img src='data:image/svg+xml;base64,{source}' alt='{escape(text)}'></p>"
 
 
 def _step(step: Step) -> str:
     parts = [f"<p class='propkit-steptitle'>{escape(step.label)}</p>", _equation(step.latex, step.text)]
-    parts.append(_equation(step.numbers_latex, step.numbers) if step.numbers_latex else f"<p><code>{escape(step.numbers)}</code></p>")
+    parts.append(
+        _equation(step.numbers_latex, step.numbers)
+        if step.numbers_latex
+        else f"<p><code>{escape(step.numbers)}</code></p>"
+    )
     if step.result is not None:
-        parts.append(f"<p>= <b>{value_html(step.result)}</b> <span class='propkit-u'>{escape(cells.unit_text(step.result.unit))}</span></p>")
+        parts.append(
+            f"<p>= <b>{value_html(step.result)}</b> <span class='propkit-u'>{escape(cells.unit_text(step.result.unit))}</span></p>"
+        )
     if step.source:
-        parts.append(f"<p class='propkit-note'>{escape(cells.reference(step.source))}</p>")
+        parts.append(f"<p class='propkit-note'>{escape(reference(step.source))}</p>")
     return f"<div class='propkit-step'>{''.join(parts)}</div>"
 
 
@@ -188,14 +214,16 @@ def _conditions(steps: list[Step]) -> str:
     """Return the conditions that iterated states satisfy as one table, both sides evaluated."""
     if not steps:
         return ""
-    sides = [numbers.aligned([numbers.grouped(f"{getattr(step, side):.9g}") for step in steps]) for side in ("left", "right")]
+    sides = [
+        numbers.aligned([numbers.grouped(f"{getattr(step, side):.9g}") for step in steps]) for side in ("left", "right")
+    ]
     rows = []
     for step, left, right in zip(steps, *sides, strict=True):
         rows.append(
             f"<tr><th scope='row'>{escape(step.label)}</th><td>{_equation(step.latex, step.text)}</td><td class='propkit-n'>{left}</td>"
             f"<td class='propkit-n'>{right}</td><td class='propkit-n'>{numbers.pretty(step.residual or 0.0, 2)}</td></tr>"
         )
-    sources = "; ".join(dict.fromkeys(cells.reference(step.source).rstrip(".") for step in steps if step.source))
+    sources = "; ".join(dict.fromkeys(reference(step.source).rstrip(".") for step in steps if step.source))
     return (
         "<div class='propkit-wide'><table><caption>Conditions that the states satisfy</caption><thead><tr><th scope='col'>condition</th>"
         "<th scope='col'>relation</th><th scope='col' class='propkit-n'>left side</th><th scope='col' class='propkit-n'>right side</th>"

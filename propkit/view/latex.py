@@ -2,10 +2,10 @@ r"""Reports as LaTeX: plain ``tabular`` and ``\paragraph``-free, to be put into 
 
 from __future__ import annotations
 
-import re
 from collections.abc import Iterable
 
 from propkit.report import Report, Row, Section, Step, Table
+from propkit.sources import reference
 from propkit.view import cells, numbers
 from propkit.view.symbols import latex_species
 
@@ -29,7 +29,11 @@ def unit_text(unit: str) -> str:
 
 def render(report: Report) -> str:
     """Return the report as LaTeX."""
-    head = rf"\textbf{{{escaped(report.kind)}}}: {escaped(report.title)}" if report.title else rf"\textbf{{{escaped(report.kind)}}}"
+    head = (
+        rf"\textbf{{{escaped(report.kind)}}}: {escaped(report.title)}"
+        if report.title
+        else rf"\textbf{{{escaped(report.kind)}}}"
+    )
     blocks = [head]
     if report.subtitle:
         blocks.append(escaped(report.subtitle))
@@ -62,7 +66,9 @@ def _rows(rows: Iterable[Row]) -> str:
     for row in rows:
         sign = f"${row.symbol}$" if row.symbol else ""
         doubts = "".join(rf"; \emph{{{escaped(doubt)}}}" for doubt in row.doubts)
-        lines.append(rf"{_MARKS[row.kind]} & {escaped(row.label)}{doubts} {sign} & {_value(row)} & {unit_text(row.unit)} \\")
+        lines.append(
+            rf"{_MARKS[row.kind]} & {escaped(row.label)}{doubts} {sign} & {_value(row)} & {unit_text(row.unit)} \\"
+        )
     lines.append(r"\end{tabular}")
     return "\n".join(lines).replace("{clrll}", "{clrl}")
 
@@ -88,7 +94,9 @@ def _table(table: Table) -> str:
     form = "l" + "".join("r" if cells.numeric(column) else "l" for column in table.columns)
     heads = [escaped(table.index_label)]
     for column in table.columns:
-        name = f"${column.symbol}$" if column.symbol and not cells.is_species(table.index_label) else escaped(column.label)
+        name = (
+            f"${column.symbol}$" if column.symbol and not cells.is_species(table.index_label) else escaped(column.label)
+        )
         unit = unit_text(column.unit)
         heads.append(f"{name} [{unit}]" if unit else name)
     lines = [rf"\begin{{tabular}}{{{form}}}", " & ".join(heads) + r" \\ \hline"]
@@ -96,7 +104,13 @@ def _table(table: Table) -> str:
         row = [f"${latex_species(entry)}$" if cells.is_species(table.index_label) else escaped(entry)]
         for column in table.columns:
             value = column.values[position]
-            row.append("" if value is None else escaped(value) if isinstance(value, str) else f"${numbers.latex(value, column.digits)}$")
+            row.append(
+                ""
+                if value is None
+                else escaped(value)
+                if isinstance(value, str)
+                else f"${numbers.latex(value, column.digits)}$"
+            )
         lines.append(" & ".join(row) + r" \\")
     lines.append(r"\end{tabular}")
     note = f"\n\n{escaped(table.note)}" if table.note else ""
@@ -113,6 +127,5 @@ def _step(step: Step) -> str:
         if step.result is not None:
             lines.append(f"{_value(step.result)} {unit_text(step.result.unit)}")
     if step.source:
-        lines.append(escaped(cells.reference(step.source)))
+        lines.append(escaped(reference(step.source)))
     return "\n\n".join(lines)
-

@@ -6,6 +6,7 @@ import re
 from collections.abc import Iterable
 
 from propkit.report import Report, Row, Section, Step, Table
+from propkit.sources import reference
 from propkit.view import cells, numbers
 from propkit.view.symbols import text_species, text_symbol
 
@@ -14,7 +15,13 @@ _SPECIAL = re.compile(r"([\\`*_{}\[\]()#+!|<>~&$-])")
 
 def escaped(text: str) -> str:
     """Return a text in which nothing is Markdown or HTML."""
-    return _SPECIAL.sub(r"\\\1", text).replace("\\<", "&lt;").replace("\\>", "&gt;").replace("\\&", "&amp;").replace("\n", " ")
+    return (
+        _SPECIAL.sub(r"\\\1", text)
+        .replace("\\<", "&lt;")
+        .replace("\\>", "&gt;")
+        .replace("\\&", "&amp;")
+        .replace("\n", " ")
+    )
 
 
 def render(report: Report) -> str:
@@ -58,7 +65,9 @@ def _rows(rows: Iterable[Row], head: str) -> str:
         sure = f" ± {numbers.pretty(row.uncertainty, 2)}" if row.uncertainty is not None else ""
         doubts = "".join(f"<br>⚠ {escaped(doubt)}" for doubt in row.doubts)
         sign = escaped(text_symbol(row.symbol))
-        lines.append(f"| {cells.MARKS[row.kind]} | {escaped(row.label)}{doubts} | {sign} | {value_text(row)}{sure} | {cells.unit_text(row.unit)}{typed} |")
+        lines.append(
+            f"| {cells.MARKS[row.kind]} | {escaped(row.label)}{doubts} | {sign} | {value_text(row)}{sure} | {cells.unit_text(row.unit)}{typed} |"
+        )
     return "\n".join(lines)
 
 
@@ -79,13 +88,22 @@ def _table(table: Table) -> str:
         unit = cells.unit_text(column.unit)
         name = text_symbol(column.symbol) if column.symbol and not cells.is_species(table.index_label) else column.label
         heads.append(escaped(name) + (f" [{unit}]" if unit else ""))
-    lines = ["| " + " | ".join(heads) + " |", "|---|" + "|".join("---:" if cells.numeric(column) else "---" for column in table.columns) + "|"]
+    lines = [
+        "| " + " | ".join(heads) + " |",
+        "|---|" + "|".join("---:" if cells.numeric(column) else "---" for column in table.columns) + "|",
+    ]
     for position, entry in enumerate(table.index):
         name = text_species(entry) if cells.is_species(table.index_label) else entry
         row = [escaped(name)]
         for column in table.columns:
             value = column.values[position]
-            row.append("" if value is None else escaped(value) if isinstance(value, str) else numbers.pretty(value, column.digits))
+            row.append(
+                ""
+                if value is None
+                else escaped(value)
+                if isinstance(value, str)
+                else numbers.pretty(value, column.digits)
+            )
         lines.append("| " + " | ".join(row) + " |")
     return "\n".join(lines) + (f"\n\n{escaped(table.note)}" if table.note else "")
 
@@ -101,5 +119,5 @@ def _step(step: Step) -> str:
         if step.result is not None:
             lines.append(f"- result: {value_text(step.result)} {cells.unit_text(step.result.unit)}")
     if step.source:
-        lines.append(f"- source: {escaped(cells.reference(step.source))}")
+        lines.append(f"- source: {escaped(reference(step.source))}")
     return "\n".join(lines)

@@ -46,7 +46,9 @@ def data_uri(figure: Figure) -> str:
     return f"data:image/svg+xml;base64,{base64.b64encode(draw(figure).encode()).decode()}"
 
 
-def _text(x: float, y: float, text: str, *, size: int = 10, anchor: str = "start", colour: str = palette.INK, weight: str = "") -> str:
+def _text(
+    x: float, y: float, text: str, *, size: int = 10, anchor: str = "start", colour: str = palette.INK, weight: str = ""
+) -> str:
     bold = f" font-weight='{weight}'" if weight else ""
     return f"<text x='{_n(x)}' y='{_n(y)}' {_FONT} font-size='{size}' text-anchor='{anchor}' fill='{colour}'{bold}>{escape(text)}</text>"
 
@@ -101,17 +103,25 @@ def _to_scale(figure: Figure, width: int, height: int) -> str:
         points = [place(x, y) for x, y in zip(line.x.values, line.y.values, strict=True)]
         fill = palette.SERIES[0] if line.fill else "none"
         opacity = " fill-opacity='.10'" if line.fill else ""
-        out.append(f"<path d='{_path(points, line.closed)}' fill='{fill}'{opacity} stroke='{palette.colour(line.colour)}' stroke-width='1.4' stroke-linejoin='round'{_DASH[line.dash]}/>")
+        out.append(
+            f"<path d='{_path(points, line.closed)}' fill='{fill}'{opacity} stroke='{palette.colour(line.colour)}' stroke-width='1.4' stroke-linejoin='round'{_DASH[line.dash]}/>"
+        )
     left, right = place(low_x, 0)[0], place(high_x, 0)[0]
-    out.append(f"<path d='M{_n(left - 6)} {_n(y0)}H{_n(right + 6)}' stroke='{palette.QUIET}' stroke-width='.8' stroke-dasharray='9 3 2 3'/>")
+    out.append(
+        f"<path d='M{_n(left - 6)} {_n(y0)}H{_n(right + 6)}' stroke='{palette.QUIET}' stroke-width='.8' stroke-dasharray='9 3 2 3'/>"
+    )
     for mark in (layer for layer in figure.layers if isinstance(layer, Mark)):
         x, y = place(mark.x, mark.y)
         low = place(mark.x, -mark.y)[1]
         out.append(f"<path d='M{_n(x)} {_n(y)}V{_n(low)}' stroke='{palette.colour(mark.colour)}' stroke-width='1'/>")
-        out.append(f"<circle cx='{_n(x)}' cy='{_n(y)}' r='2.2' fill='{palette.colour(mark.colour)}'/><circle cx='{_n(x)}' cy='{_n(low)}' r='2.2' fill='{palette.colour(mark.colour)}'/>")
+        out.append(
+            f"<circle cx='{_n(x)}' cy='{_n(y)}' r='2.2' fill='{palette.colour(mark.colour)}'/><circle cx='{_n(x)}' cy='{_n(low)}' r='2.2' fill='{palette.colour(mark.colour)}'/>"
+        )
         half = 3.0 * len(mark.label)
         at = min(max(x, half + 8), width - half - 8)
-        out.append(_text(at, min(low + 14, height - 6), mark.label, anchor="middle", colour=palette.colour(mark.colour)))
+        out.append(
+            _text(at, min(low + 14, height - 6), mark.label, anchor="middle", colour=palette.colour(mark.colour))
+        )
     return "".join(out)
 
 
@@ -123,7 +133,7 @@ def ticks(low: float, high: float, count: int = 5) -> list[float]:
     power = 10.0 ** math.floor(math.log10(raw))
     step = next(factor * power for factor in (1, 2, 2.5, 5, 10) if factor * power >= raw * 0.999)
     first = math.ceil(low / step - 1e-9)
-    return [round(k * step, 12) for k in range(first, int(math.floor(high / step + 1e-9)) + 1)]
+    return [round(k * step, 12) for k in range(first, math.floor(high / step + 1e-9) + 1)]
 
 
 def _limits(axis: Axis, values: list[float], zero: bool) -> tuple[float, float]:
@@ -148,8 +158,16 @@ def _curves(figure: Figure, width: int, height: int) -> str:
     lines = [layer for layer in figure.layers if isinstance(layer, Line)]
     marks = [layer for layer in figure.layers if isinstance(layer, Mark)]
     rules = [layer for layer in figure.layers if isinstance(layer, Rule)]
-    xs = [x for line in lines for x in line.x.values] + [mark.x for mark in marks] + [rule.at for rule in rules if rule.axis == "x"]
-    ys = [y for line in lines for y in line.y.values] + [mark.y for mark in marks] + [rule.at for rule in rules if rule.axis == "y"]
+    xs = (
+        [x for line in lines for x in line.x.values]
+        + [mark.x for mark in marks]
+        + [rule.at for rule in rules if rule.axis == "x"]
+    )
+    ys = (
+        [y for line in lines for y in line.y.values]
+        + [mark.y for mark in marks]
+        + [rule.at for rule in rules if rule.axis == "y"]
+    )
     log_x, log_y = figure.x.scale == "log", figure.y.scale == "log"
     low_x, high_x = _limits(figure.x, [_log(x, log_x) for x in xs], False)
     low_y, high_y = _limits(figure.y, [_log(y, log_y) for y in ys], not log_y)
@@ -177,10 +195,14 @@ def _curves(figure: Figure, width: int, height: int) -> str:
         out.append(_rule(rule, place, left, right, top, bottom, width))
     for line in lines:
         points = [place(x, y) for x, y in zip(line.x.values, line.y.values, strict=True)]
-        out.append(f"<path d='{_path(points, line.closed)}' fill='none' stroke='{palette.colour(line.colour)}' stroke-width='1.8' stroke-linejoin='round'{_DASH[line.dash]}/>")
+        out.append(
+            f"<path d='{_path(points, line.closed)}' fill='none' stroke='{palette.colour(line.colour)}' stroke-width='1.8' stroke-linejoin='round'{_DASH[line.dash]}/>"
+        )
     named = [line for line in lines if line.label]
     for position, line in enumerate(named if len(named) > 1 else []):
-        out.append(f"<path d='M{right - 88} {top + 4 + 13 * position}h14' stroke='{palette.colour(line.colour)}' stroke-width='2'{_DASH[line.dash]}/>")
+        out.append(
+            f"<path d='M{right - 88} {top + 4 + 13 * position}h14' stroke='{palette.colour(line.colour)}' stroke-width='2'{_DASH[line.dash]}/>"
+        )
         out.append(_text(right - 70, top + 7.5 + 13 * position, line.label, size=9, colour=palette.QUIET))
     for mark in marks:
         out.append(_mark(mark, place, right, top))
@@ -203,9 +225,13 @@ def _rule(rule: Rule, place: object, left: int, right: int, top: int, bottom: in
         x = place(rule.at, 0)[0]  # type: ignore[operator]
         near = "end" if x > width * 0.7 else "start"
         shift = -4 if near == "end" else 4
-        return f"<path d='M{_n(x)} {top}V{bottom}' stroke='{palette.QUIET}' stroke-width='1'{dash}/>" + _text(x + shift, top + 9, rule.label, size=9, anchor=near, colour=palette.QUIET)
+        return f"<path d='M{_n(x)} {top}V{bottom}' stroke='{palette.QUIET}' stroke-width='1'{dash}/>" + _text(
+            x + shift, top + 9, rule.label, size=9, anchor=near, colour=palette.QUIET
+        )
     y = place(0, rule.at)[1]  # type: ignore[operator]
-    return f"<path d='M{left} {_n(y)}H{right}' stroke='{palette.QUIET}' stroke-width='1'{dash}/>" + _text(right, y - 4, rule.label, size=9, anchor="end", colour=palette.QUIET)
+    return f"<path d='M{left} {_n(y)}H{right}' stroke='{palette.QUIET}' stroke-width='1'{dash}/>" + _text(
+        right, y - 4, rule.label, size=9, anchor="end", colour=palette.QUIET
+    )
 
 
 def _mark(mark: Mark, place: object, right: int, top: int) -> str:
@@ -214,4 +240,7 @@ def _mark(mark: Mark, place: object, right: int, top: int) -> str:
     near = "end" if x > right - 80 else "start"
     shift = -8 if near == "end" else 8
     above = y + 14 if y < top + 12 else y - 7
-    return f"<circle cx='{_n(x)}' cy='{_n(y)}' r='4' fill='{colour}' stroke='{palette.PLATE}' stroke-width='1.2'/>" + _text(x + shift, above, mark.label, anchor=near, colour=colour, weight="bold")
+    return (
+        f"<circle cx='{_n(x)}' cy='{_n(y)}' r='4' fill='{colour}' stroke='{palette.PLATE}' stroke-width='1.2'/>"
+        + _text(x + shift, above, mark.label, anchor=near, colour=colour, weight="bold")
+    )

@@ -6,6 +6,7 @@ Symbols are a small subset of LaTeX: letters, ``\dot{m}``, Greek names, ``\mathr
 from __future__ import annotations
 
 import re
+import unicodedata
 from html import escape
 
 _GREEK = {
@@ -72,7 +73,10 @@ def html_symbol(symbol: str) -> str:
         return f"<{tag}>{shown}</{tag}>"
 
     def plain(text: str) -> str:
-        return "".join(f"<i>{escape(part)}</i>" if part.isalpha() else escape(part) for part in re.findall(r"[^\W\d_]+|[\W\d_]+", text))
+        return "".join(
+            f"<i>{escape(part)}</i>" if part.isalpha() else escape(part)
+            for part in re.findall(r"[^\W\d_]+|[\W\d_]+", text)
+        )
 
     return _walk(symbol, script, plain, lambda text: escape(text))
 
@@ -85,7 +89,7 @@ def text_symbol(symbol: str) -> str:
         whole = all(a != b or a in "*" for a, b in zip(shown, moved, strict=True))
         return moved if whole else (f"_{shown}" if shift == "_" else f"^{shown}")
 
-    return _walk(symbol, script, str, str)
+    return unicodedata.normalize("NFC", _walk(symbol, script, str, str))
 
 
 def latex_symbol(symbol: str) -> str:

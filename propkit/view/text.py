@@ -6,6 +6,7 @@ import textwrap
 from collections.abc import Iterable
 
 from propkit.report import Report, Row, Section, Step, Table
+from propkit.sources import reference
 from propkit.view import cells, numbers
 from propkit.view.symbols import text_species, text_symbol
 
@@ -95,7 +96,10 @@ def _table(table: Table) -> list[str]:
         head = text_symbol(column.symbol) or column.label
         if cells.is_species(table.index_label) and len(table.columns) > 1:
             head = column.label
-        body = ["" if value is None else value if isinstance(value, str) else numbers.rounded(value, column.digits) for value in column.values]
+        body = [
+            "" if value is None else value if isinstance(value, str) else numbers.rounded(value, column.digits)
+            for value in column.values
+        ]
         blocks.append([head, cells.unit_text(column.unit), *body])
     lines: list[str] = []
     start = 1
@@ -112,7 +116,9 @@ def _table(table: Table) -> list[str]:
             for k, width in zip(chosen, widths, strict=True):
                 text = blocks[k][row]
                 wide = width + _marks(text)
-                parts.append(f"{text:<{wide}}" if k == 0 or not cells.numeric(table.columns[k - 1]) else f"{text:>{wide}}")
+                parts.append(
+                    f"{text:<{wide}}" if k == 0 or not cells.numeric(table.columns[k - 1]) else f"{text:>{wide}}"
+                )
             lines.append("  " + "  ".join(parts))
         if start >= len(blocks):
             break
@@ -124,19 +130,27 @@ def _table(table: Table) -> list[str]:
 def _step(step: Step) -> list[str]:
     lines = [f"{step.label}"]
     if step.left is not None and step.right is not None:
-        lines += [f"  condition  {step.text}", f"  values     {step.left:.10g} = {step.right:.10g}", f"  residual   {step.residual:.1e}"]
+        lines += [
+            f"  condition  {step.text}",
+            f"  values     {step.left:.10g} = {step.right:.10g}",
+            f"  residual   {step.residual:.1e}",
+        ]
     else:
         lines += [f"  relation   {step.text}", f"  numbers    {step.numbers}"]
         if step.result is not None and isinstance(step.result.value, int | float):
             value = numbers.rounded(step.result.value, step.result.digits)
             lines.append(f"  result     {value} {cells.unit_text(step.result.unit)}")
     if step.source:
-        lines += textwrap.wrap(f"source     {cells.reference(step.source)}", WIDTH - 2, initial_indent="  ", subsequent_indent=" " * 13)
+        lines += textwrap.wrap(
+            f"source     {reference(step.source)}", WIDTH - 2, initial_indent="  ", subsequent_indent=" " * 13
+        )
     return lines
 
 
 def _bullets(texts: Iterable[str], mark: str, indent: str = "  ") -> list[str]:
     lines: list[str] = []
     for text in texts:
-        lines += textwrap.wrap(text, WIDTH - len(indent), initial_indent=indent + mark, subsequent_indent=indent + " " * len(mark)) or [indent + mark]
+        lines += textwrap.wrap(
+            text, WIDTH - len(indent), initial_indent=indent + mark, subsequent_indent=indent + " " * len(mark)
+        ) or [indent + mark]
     return lines
