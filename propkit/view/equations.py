@@ -26,9 +26,9 @@ def svg_of(latex: str, size: float = 15.0, inline: bool = False) -> tuple[str, f
     with warnings.catch_warnings():
         warnings.simplefilter("ignore", DeprecationWarning)  # the setter reads its fonts in an older way
         try:
-            import ziamath
+            import ziamath.zmath
 
-            picture = ziamath.Latex(latex, size=size, inline=inline)
+            picture = ziamath.zmath.Latex(latex, size=size, inline=inline)
             return str(picture.svg()), float(picture.getyofst())
         except Exception:  # not installed, or any refusal of the setter: the text says the same
             return None
