@@ -16,7 +16,7 @@ from propkit.constants import GAS_CONSTANT
 from propkit.errors import InputError
 from propkit.physics.arrays import Array, Values, require, values
 from propkit.physics.equilibrium_newton import FlowCondition, Given, Integers, Outcome, Problem, Unknowns, iterate
-from propkit.physics.equilibrium_search import cold_start, search
+from propkit.physics.equilibrium_search import cold_start, search, settled_start
 from propkit.physics.thermodynamics import SpeciesTable
 
 CONVERGED: Final = 0
@@ -262,8 +262,8 @@ def _start(
     mask: npt.NDArray[np.bool_],
 ) -> Unknowns:
     """Return the first guess of a block: a state nearby where there is one that is a solution, else a cold start."""
-    if guess is None:
-        return cold_start(problem, pressure)
+    if guess is None or not (guess.status[block] == CONVERGED).any():
+        return settled_start(problem, pressure) if problem.given == "entropy" else cold_start(problem, pressure)
     good = guess.status[block] == CONVERGED
     rows, gas = block[good], problem.table.gas_count
     with np.errstate(divide="ignore"):
@@ -271,14 +271,14 @@ def _start(
             log_amounts=np.maximum(np.log(guess.amounts[rows[:, None], species[:gas]]), _LOWEST_LOG),
             potentials=guess.element_potentials[rows[:, None], mask],
             log_moles=np.log(guess.gas_moles[rows]),
-            log_temperature=np.log(problem.target[good] if problem.given == "temperature" else guess.temperature[rows]),
+            log_temperature=np.log(guess.temperature[rows]),
             log_pressure=np.log(pressure[good] / problem.table.reference_pressure),
             slots=np.zeros((rows.size, 0), dtype=np.intp),
             slot_amounts=np.zeros((rows.size, 0)),
         )
     if good.all():
         return warm
-    start = cold_start(problem, pressure)
+    start = settled_start(problem, pressure) if problem.given == "entropy" else cold_start(problem, pressure)
     start.put(np.flatnonzero(good), warm)
     return start
 

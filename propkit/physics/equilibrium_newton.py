@@ -283,7 +283,9 @@ def evaluate(problem: Problem, elements: Array, x: Unknowns) -> Sums:
     shortfall[:, last] = moles - total
     enthalpy = matrix[:, size, last].copy()
     distant = np.abs(nq).sum(axis=1) / moles
-    sums = Sums(matrix, shortfall, correction, h, q, moles, total, enthalpy, enthalpy - _dot(n, mu), heat_capacity, distant)
+    sums = Sums(
+        matrix, shortfall, correction, h, q, moles, total, enthalpy, enthalpy - _dot(n, mu), heat_capacity, distant
+    )
     if slots:
         _add_slots(problem.table, every, x, sums, size)
     matrix[:, size, size] += sums.heat_capacity
@@ -409,7 +411,8 @@ def iterate(problem: Problem, start: Unknowns, iterations: int = ITERATIONS) -> 
 def _solve(problem: Problem, sums: Sums, x: Unknowns, target: Array) -> tuple[Array, Array]:
     """Return the solutions for (the step, unit heating, unit d ln p at constant entropy) and the energy missing.
 
-    The energy missing is over R T, in moles, for one kilogram; zero where the temperature is given.
+    The energy missing is over R T, in moles, for one kilogram. Where the temperature is given, that many moles times the
+    heat capacity stand for what is missing in ln T, and heat is added as needed.
     """
     size = problem.bordered.shape[1]
     last = size - 1
@@ -428,7 +431,11 @@ def _solve(problem: Problem, sums: Sums, x: Unknowns, target: Array) -> tuple[Ar
     right[:, size, 2] += sums.total
     solution = solve_scaled(sums.matrix, right, sums.moles, last)
     if problem.given == "temperature":
-        solution[:, :, 0] -= (solution[:, size, 0] / solution[:, size, 1])[:, None] * solution[:, :, 1]
+        wanted = np.log(target) - x.log_temperature
+        energy = wanted * sums.heat_capacity
+        wanted = np.clip(wanted, -_TEMPERATURE_STEP, _TEMPERATURE_STEP)
+        heating = (wanted - solution[:, size, 0]) / solution[:, size, 1]
+        solution[:, :, 0] += heating[:, None] * solution[:, :, 1]
     return solution, energy
 
 

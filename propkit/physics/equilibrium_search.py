@@ -20,7 +20,10 @@ _FIRST_TEMPERATURE: Final = 3000.0
 _SMALL_MOLECULE: Final = 3.0
 _PENALTY_PER_ATOM: Final = 2.5
 _ATOMS_PER_MOLECULE: Final = 2.5
-_BISECTIONS: Final = 14
+_WARMING_UP: Final = 60
+_WALK: Final = 60
+_STRIDE: Final = 0.3
+_CLOSE: Final = 1e-5
 
 
 def cold_start(problem: Problem, pressure: Array, slots: int = 0) -> Unknowns:
@@ -44,20 +47,25 @@ def cold_start(problem: Problem, pressure: Array, slots: int = 0) -> Unknowns:
     weight = -_PENALTY_PER_ATOM * np.maximum(problem.bordered[:, :-1].sum(axis=1) - _SMALL_MOLECULE, 0.0)
     weight -= np.log(np.exp(weight).sum())
     log_moles = np.log(problem.elements.sum(axis=1) / _ATOMS_PER_MOLECULE)
-    temperature = problem.target if problem.given == "temperature" else np.full(cases, _FIRST_TEMPERATURE)
     return Unknowns(
         log_amounts=np.minimum(log_moles[:, None] + weight[None, :], problem.log_bounds).reshape(cases, gas),
         potentials=np.zeros_like(problem.elements),
         log_moles=log_moles,
-        log_temperature=np.log(temperature),
+        log_temperature=np.full(cases, np.log(_FIRST_TEMPERATURE)),
         log_pressure=np.log(pressure / problem.table.reference_pressure),
         slots=np.full((cases, slots), -1),
         slot_amounts=np.zeros((cases, slots)),
     )
 
 
+def settled_start(problem: Problem, pressure: Array, slots: int = 0) -> Unknowns:
+    """Return equilibrium at the first temperature, a start for given entropy, whose step assumes that it is near one."""
+    fixed = replace(problem, given="temperature", target=np.full(pressure.size, _FIRST_TEMPERATURE), condition=None)
+    return iterate(fixed, cold_start(fixed, pressure, slots), _WARMING_UP).unknowns
+
+
 def search(problem: Problem, pressure: Array, slots: int = 0) -> tuple[Outcome, npt.NDArray[np.bool_]]:
-    """Solve cases by a bracket in temperature, then the plain iteration from there.
+    """Solve cases by walking in temperature from equilibrium to equilibrium, then the plain iteration inside the bracket.
 
     Parameters
     ----------
@@ -73,32 +81,35 @@ def search(problem: Problem, pressure: Array, slots: int = 0) -> tuple[Outcome, 
     tuple
         The outcome, and which cases have no solution inside the data range.
     """
-    high = np.full(pressure.size, np.log(problem.table.temperature_high.max()))
-    low = np.full(pressure.size, np.log(LOWEST_TEMPERATURE))
-    if problem.given == "temperature":
-        outside = (np.log(problem.target) > high + 1e-12) | (np.log(problem.target) < low - 1e-12)
-        return iterate(problem, cold_start(problem, pressure, slots), iterations=400), outside
-    at_high, solved_high = _level(problem, pressure, high, slots)
-    at_low, solved_low = _level(problem, pressure, low, slots)
-    outside = (solved_high & (at_high < problem.target)) | (solved_low & (at_low > problem.target))
-    for _ in range(_BISECTIONS):
-        middle = 0.5 * (low + high)
-        level, solved = _level(problem, pressure, middle, slots)
-        below = solved & (level < problem.target)
-        low, high = np.where(below, middle, low), np.where(solved & ~below, middle, high)
-    fixed = replace(problem, given="temperature", target=np.exp(0.5 * (low + high)))
-    near = iterate(fixed, cold_start(fixed, pressure, slots))
-    outcome = iterate(problem, near.unknowns)
-    inside = (outcome.unknowns.log_temperature >= low - 1e-6) & (outcome.unknowns.log_temperature <= high + 1e-6)
-    outcome.converged &= inside
+    limits = np.log([LOWEST_TEMPERATURE, problem.table.temperature_high.max()])
+    here = np.full(pressure.size, np.clip(np.log(_FIRST_TEMPERATURE), *limits))
+    at = _at(problem, cold_start(problem, pressure, slots), here)
+    low, high = np.full(here.shape, limits[0]), np.full(here.shape, limits[1])
+    outside = np.zeros(here.shape, dtype=bool)
+    for _ in range(_WALK):
+        side = _side(problem, at)
+        low, high = np.where(side > 0, here, low), np.where(side < 0, here, high)
+        outside |= at.converged & (((here <= limits[0]) & (side < 0)) | ((here >= limits[1]) & (side > 0)))
+        bracketed = (low > limits[0]) & (high < limits[1])
+        step = np.where(bracketed, 0.5 * (low + high) - here, np.where(side > 0, _STRIDE, -_STRIDE))
+        if problem.given == "temperature":
+            step = np.clip(np.log(problem.target) - here, -_STRIDE, _STRIDE)
+        there = np.clip(here + np.where(at.converged, step, 0.1 * step), *limits)
+        if outside.all() or np.abs(there - here).max() < _CLOSE:
+            break
+        at, here = _at(problem, at.unknowns, there), there
+    outcome = iterate(problem, at.unknowns)
     return outcome, outside
 
 
-def _level(
-    problem: Problem, pressure: Array, log_temperature: Array, slots: int
-) -> tuple[Array, npt.NDArray[np.bool_]]:
-    """Return h [J/kg] or s [J/(kg K)] at a temperature, and where that was solved."""
-    fixed = replace(problem, given="temperature", target=np.exp(log_temperature))
-    outcome = iterate(fixed, cold_start(fixed, pressure, slots))
-    scale = GAS_CONSTANT * (np.exp(log_temperature) if problem.given == "enthalpy" else 1.0)
-    return outcome.sums[:, 0 if problem.given == "enthalpy" else 1] * scale, outcome.converged
+def _at(problem: Problem, start: Unknowns, log_temperature: Array) -> Outcome:
+    """Return the equilibrium at a temperature, from one nearby."""
+    return iterate(replace(problem, given="temperature", target=np.exp(log_temperature)), start)
+
+
+def _side(problem: Problem, at: Outcome) -> Array:
+    """Return whether the solution is hotter (1) or colder (-1) than where `at` is."""
+    if problem.given == "temperature":
+        return np.sign(np.log(problem.target) - at.unknowns.log_temperature)
+    column, scale = (0, np.exp(at.unknowns.log_temperature)) if problem.given == "enthalpy" else (1, 1.0)
+    return np.sign(problem.target - GAS_CONSTANT * scale * at.sums[:, column])
