@@ -11,7 +11,6 @@ from html import escape
 
 from propkit.report import Column, Report, Row, Section, Step, Table
 from propkit.sources import reference
-from propkit.sources import reference
 from propkit.view import cells, equations, numbers, svg
 from propkit.view.style import STYLE
 from propkit.view.symbols import html_species, html_symbol

@@ -7,7 +7,6 @@ from collections.abc import Iterable
 
 from propkit.report import Report, Row, Section, Step, Table
 from propkit.sources import reference
-from propkit.sources import reference
 from propkit.view import cells, numbers
 from propkit.view.symbols import text_species, text_symbol
 
