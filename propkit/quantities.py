@@ -401,6 +401,43 @@ _ROWS = (
     Quantity("library_name", TEXT, r"", "library name", "name of the row of the library"),
     Quantity("ingredients", TEXT, r"", "ingredients", "what is blended, with shares"),
     Quantity("by", TEXT, r"", "shares by", "whether the shares are of mass, volume or moles"),
+    # reconciliation and firings
+    Quantity("thrust_sea_level", FORCE, r"F_{sl}", "thrust at sea level", "full-flowing thrust against 101.325 kPa", 5),
+    Quantity(
+        "specific_impulse_sea_level",
+        DURATION,
+        r"I_{sp,sl}",
+        "specific impulse at sea level",
+        "thrust at sea level over weight flow of propellant at standard gravity",
+        5,
+    ),
+    Quantity("total_impulse", IMPULSE, r"I", "total impulse", "thrust times burn time", 5),
+    Quantity("burn_time", Kind("duration", "s", ("s",), ("s",)), r"t_{b}", "burn time", "duration of the burn", 5),
+    Quantity("propellant_mass", MASS, r"m_{p}", "propellant mass", "propellant used in the burn", 5),
+    Quantity(
+        "thrust_coefficient_efficiency",
+        NUMBER,
+        r"\eta_{C_{F}}",
+        "thrust coefficient efficiency",
+        "delivered over ideal vacuum thrust coefficient",
+        4,
+    ),
+    Quantity(
+        "dump_flow_fraction",
+        NUMBER,
+        r"f_{d}",
+        "dump flow fraction",
+        "turbine flow dumped overboard over the mass flow of the engine",
+        3,
+    ),
+    Quantity(
+        "dump_specific_impulse",
+        DURATION,
+        r"I_{sp,d}",
+        "specific impulse of the dump flow",
+        "thrust of the dumped turbine flow over its weight flow",
+        4,
+    ),
 )
 
 CATALOGUE: dict[str, Quantity] = {row.name: row for row in _ROWS}
