@@ -38,8 +38,12 @@ def along(found: Expansion, area_ratio: Values, *, supersonic: bool, index: int 
     cases = np.full(len(ratio), index)
     isentrope = _repeated(found.isentrope, cases)
     states = expansion.at_area_ratio(isentrope, found.mass_flux[cases], ratio, found.throat.take(cases), supersonic)
-    good = states.status == CONVERGED
-    return {name: np.where(good, getattr(states, name), np.nan) for name in ("pressure", "temperature", "velocity", "mach", "density")}
+    good, at_throat = states.status == CONVERGED, ratio <= 1.0 + 1e-12
+    flow = {}
+    for name in ("pressure", "temperature", "velocity", "mach", "density"):
+        there = np.where(good, getattr(states, name), np.nan)
+        flow[name] = np.where(at_throat, getattr(found.throat, name)[index], there)
+    return flow
 
 
 def _repeated(part: Any, cases: Array) -> Any:

@@ -36,7 +36,7 @@ class CaseFace(Face):
         """Return the library's propellants of a role, and the one given where it is none of them."""
         if name not in self.link.declared_inputs or name not in (*ROLES, "propellant", "gas"):
             return super().choices(name)
-        listed = {row: title for row, title in library_names(name).items()}
+        listed = dict(library_names(name).items())
         if self.choice_now(name) == AS_GIVEN:
             listed = {AS_GIVEN: f"{self.link.input_text(name)} (as given)", **listed}
         return listed

@@ -82,7 +82,7 @@ def control(session: Session, face: Face, name: str, group: Group | None, system
     text = face.text_now(name, system)
     made: dict[str, Any] = {
         "path": path,
-        "label": show.sentence(quantity.label),
+        "label": show.sentence(face.label(name)),
         "symbol": show.symbol(quantity.symbol),
         "doc": show.sentence(entry.doc) + ".",
         "style": style,
@@ -129,13 +129,15 @@ def note(face: Face, name: str, system: UnitSystem, text: str) -> str:
     """Return the value in the display's unit where it was typed in another one."""
     entry = face.declared(name)
     value = face.effective(name)
+    if told := face.told(name, system):
+        return told
     if value is None or not isinstance(entry, NumberInput | QuantityInput) or not entry.quantity.unit or not text:
         return ""
     shown, unit = sheet.in_display(entry.quantity, value, system)
     here = face.unit(name, system)
     if not isinstance(shown, float) or here.text == shown_unit(unit) or same_unit(here, unit, entry.quantity.unit):
         return ""
-    return f"= {show.number(shown, entry.quantity.digits)} {shown_unit(unit)}"
+    return f"= {show.value(shown, entry.quantity.digits)} {shown_unit(unit)}"
 
 
 def same_unit(here: Unit, unit: str, si_unit: str) -> bool:

@@ -226,6 +226,14 @@ class Face:
             return "number"
         return "custom" if isinstance(entry, CustomInput) else "text"
 
+    def label(self, name: str) -> str:
+        """Return the label of a control."""
+        return self.declared(name).quantity.label
+
+    def told(self, name: str, system: UnitSystem) -> str:
+        """Return what a note beside a control of its own kind says."""
+        return ""
+
     def placeholder(self, name: str) -> str:
         """Return what an empty field says."""
         return "not given"

@@ -17,6 +17,7 @@ import traitlets
 from propkit.plots import paint, wire
 from propkit.plots.build import structure
 from propkit.series import Figure
+from propkit.view import palette
 
 STATIC = resources.files("propkit.panels") / "static"
 
@@ -25,6 +26,15 @@ STATIC = resources.files("propkit.panels") / "static"
 def static_text(*names: str) -> str:
     """Return files of the package one after the other, as one text."""
     return "\n".join((STATIC / name).read_text(encoding="utf-8") for name in names)
+
+
+def style_sheet() -> str:
+    """Return the style sheet with the colours of the palette."""
+    colours = {"accent": palette.ACCENT, "accent-dark": palette.ACCENT_DARK, "doubt": palette.DOUBT, "doubt-dark": palette.DOUBT_DARK, "ink": palette.INK, "quiet": palette.QUIET, "line": palette.HAIRLINE}
+    text = static_text("panel.css")
+    for name, colour in colours.items():
+        text = text.replace(f"%{name}%", colour)
+    return text
 
 
 @lru_cache(maxsize=1)
@@ -49,7 +59,7 @@ class Host(anywidget.AnyWidget):
     """
 
     _esm = static_text("figure.js", "host.js")
-    _css = static_text("panel.css")
+    _css = style_sheet()
     bokeh = traitlets.Unicode().tag(sync=True)
     colours = traitlets.Dict().tag(sync=True)
     plots = traitlets.List().tag(sync=True)
@@ -81,9 +91,9 @@ class Host(anywidget.AnyWidget):
 
 def drawing(figure: Figure) -> str:
     """Return a figure as a static SVG drawing; empty where it cannot be drawn."""
-    from propkit import view
+    from propkit.view import svg
 
-    return str(view.figure_svg(figure))
+    return str(svg.draw(figure))
 
 
 class FigureView:

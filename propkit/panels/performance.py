@@ -4,9 +4,13 @@ from __future__ import annotations
 
 from typing import Any
 
+from propkit.model import sheet
+from propkit.panels import show
 from propkit.panels.faces import Face, Unit
 from propkit.panels.steps import Scale
 from propkit.physics import atmosphere
+from propkit.report import UnitSystem
+from propkit.units import shown_unit
 
 HIGHEST = 40.0
 ALTITUDES = Unit("km", 1e3)
@@ -14,6 +18,18 @@ ALTITUDES = Unit("km", 1e3)
 
 class PerformanceFace(Face):
     """The ambient condition: the text field takes every form, the slider is an altitude."""
+
+    def label(self, name: str) -> str:
+        """Return the label of a control: the slider of the surroundings is an altitude."""
+        return "surroundings (slider: altitude)" if name == "ambient" else super().label(name)
+
+    def told(self, name: str, system: UnitSystem) -> str:
+        """Return the pressure of the surroundings."""
+        if name != "ambient":
+            return super().told(name, system)
+        quantity = self.declared(name).quantity
+        shown, unit = sheet.in_display(quantity, self.link.si("ambient"), system)
+        return f"{show.value(shown, quantity.digits)} {shown_unit(unit)}"
 
     def suggestions(self, name: str) -> tuple[str, ...]:
         """Return what the field offers."""

@@ -34,10 +34,10 @@ class Refusal:
     words: str
 
 
-def words_of(error: Exception) -> str:
-    """Return an error in words for a person; one that is no propkit error says that it was not foreseen."""
+def words_of(error: Exception, name: str = "", label: str = "") -> str:
+    """Return an error in words for a person, the input `name` called by its label; one not foreseen says so."""
     if isinstance(error, PropkitError):
-        return error.message
+        return error.message.replace(f"`{name}`", label) if name else error.message
     return f"The calculation failed in a way that was not foreseen ({type(error).__name__}: {error})."
 
 
@@ -140,7 +140,15 @@ class Session:
         """Keep a refused change beside its control; the last good object stays."""
         if not isinstance(error, PropkitError):
             log.error("a change of %s failed", path, exc_info=error)
-        self.refusals[path] = Refusal(path, text, dict(changes), words_of(error))
+        self.refusals[path] = Refusal(path, text, dict(changes), words_of(error, *self._called(path)))
+
+    def _called(self, path: str) -> tuple[str, str]:
+        """Return name and label of the input of a path; empty texts for a group."""
+        kind, point, name = path.partition(".")
+        if not point:
+            return "", ""
+        label = face_of(self.link(kind)).label(name)
+        return name, label[:1].upper() + label[1:]
 
     def _accept(self, value: Any, path: str, applied: Mapping[str, Any], run: str) -> None:
         self.refusals = {p: r for p, r in self.refusals.items() if p != path and not all(key in applied for key in r.changes)}

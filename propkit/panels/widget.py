@@ -23,7 +23,6 @@ class PanelWidget(Host):
     """Front of a panel: one widget for all its controls, results and figures."""
 
     _esm = static_text("figure.js", "panel.js")
-    _css = static_text("panel.css")
     shown = traitlets.Dict().tag(sync=True)
     ack = traitlets.Dict().tag(sync=True)
 

@@ -26,6 +26,9 @@ class Plot:
     """A Bokeh figure, and which colour role each property of its models plays."""
 
     figure: Any
+    where: dict[str, Any]
+    legend: bool = False
+    rules: int = 0
     painted: list[tuple[Any, str, str]] = field(default_factory=list)
 
     def paint(self, model: Any, role: str, *properties: str) -> None:
@@ -52,8 +55,11 @@ def _layer_extra(layer: Any) -> list[Any]:
     return [getattr(layer, "axis", "")]
 
 
-def columns(layer: Line | Bars | Mark | Rule) -> dict[str, list[Any]]:
-    """Return what the data source of a layer holds: lists of numbers or of texts by column."""
+def columns(layer: Line | Bars | Mark | Rule, where: dict[str, Any]) -> dict[str, list[Any]]:
+    """Return what the data source of a layer holds: lists of numbers or of texts by column.
+
+    `where` holds the limits of the figure: the label of a rule stands at the edge.
+    """
     if isinstance(layer, Line):
         made: dict[str, list[Any]] = {"x": list(layer.x.values), "y": list(layer.y.values)}
         return made | {f"hover{place}": list(series.values) for place, series in enumerate(layer.hover)}
@@ -61,8 +67,13 @@ def columns(layer: Line | Bars | Mark | Rule) -> dict[str, list[Any]]:
         texts = layer.texts or tuple(f"{value:.4g}" for value in layer.values.values)
         return {"category": categories(layer), "value": list(layer.values.values), "text": list(texts)}
     if isinstance(layer, Mark):
-        return {"x": [layer.x], "y": [layer.y], "text": [layer.label]}
-    return {"at": [layer.at], "text": [layer.label]}
+        low, high = where["x"]
+        late = layer.x > low + 0.7 * (high - low)
+        high_up = layer.y > where["y"][0] + 0.85 * (where["y"][1] - where["y"][0])
+        side: dict[str, list[Any]] = {"align": ["right" if late else "left"], "shift": [-9.0 if late else 9.0], "lift": [16.0 if high_up else -8.0]}
+        return {"x": [layer.x], "y": [layer.y], "text": [layer.label], **side}
+    edge = where["y" if layer.axis == "x" else "x"]
+    return {"at": [layer.at], "edge": [edge[1] if layer.axis == "x" else edge[0]], "text": [layer.label]}
 
 
 def categories(bars: Bars) -> list[str]:
@@ -121,18 +132,20 @@ def build(figure: Figure, *, height: int = HEIGHT, width: int | None = None) -> 
         When Bokeh is not installed.
     """
     try:
-        from bokeh.models import FactorRange, Range1d
+        from bokeh.models import DataRange1d, FactorRange, Range1d
         from bokeh.plotting import figure as bokeh_figure
     except ImportError as error:
         raise MissingExtraError("bokeh", "notebook", "a live plot") from error
     where = limits(figure)
-    ranges = {
-        f"{name}_range": FactorRange(*value) if value and isinstance(value[0], str) else Range1d(*value) for name, value in where.items()
-    }
+    if figure.equal_aspect:
+        ranges: dict[str, Any] = {f"{name}_range": DataRange1d(range_padding=0.06) for name in where}
+    else:
+        ranges = {f"{name}_range": FactorRange(*ends) if isinstance(ends[0], str) else Range1d(*ends) for name, ends in where.items()}
     sizing: dict[str, Any] = {"sizing_mode": "stretch_width"} if width is None else {"width": width}
     scales = {f"{name}_axis_type": "log" for name, axis in (("x", figure.x), ("y", figure.y)) if axis.scale == "log"}
-    made = bokeh_figure(height=height, tools=TOOLS, toolbar_location="above", title=figure.title, name=figure.name, **ranges, **scales, **sizing)
-    plot = Plot(made)
+    options: dict[str, Any] = {**ranges, **scales, **sizing, "title": figure.title, "name": figure.name}
+    made: Any = bokeh_figure(height=height, tools=TOOLS, toolbar_location="above", **options)
+    plot = Plot(made, where, legend=sum(isinstance(layer, Line) and bool(layer.label) for layer in figure.layers) > 1)
     _frame(plot, figure)
     if figure.equal_aspect:
         made.match_aspect, made.aspect_scale = True, 1.0
@@ -164,10 +177,11 @@ def _frame(plot: Plot, figure: Figure) -> None:
     made.min_border_right = 18
 
 
-def _source(layer: Any, place: int) -> Any:
+def _source(plot: Plot, layer: Any, place: int) -> Any:
     from bokeh.models import ColumnDataSource
 
-    return ColumnDataSource(columns(layer), name=f"layer-{place}")
+    data: Any = columns(layer, plot.where)
+    return ColumnDataSource(data, name=f"layer-{place}")
 
 
 def _told(series: Series, column: str) -> tuple[str, str]:
@@ -178,12 +192,12 @@ def _told(series: Series, column: str) -> tuple[str, str]:
 def _hover(plot: Plot, renderer: Any, told: list[tuple[str, str]], formatted: list[str]) -> None:
     from bokeh.models import HoverTool
 
-    formatters = {f"@{column}": "printf" for column in formatted}
+    formatters: Any = {f"@{column}": "printf" for column in formatted}
     plot.figure.add_tools(HoverTool(renderers=[renderer], tooltips=told, formatters=formatters, visible=False))
 
 
 def _line(plot: Plot, layer: Line, place: int) -> None:
-    source, made = _source(layer, place), plot.figure
+    source, made = _source(plot, layer, place), plot.figure
     role = paint.role_of(layer.colour)
     if layer.closed or layer.fill:
         shape = made.patch("x", "y", source=source, line_width=1.6, fill_alpha=0.08 if layer.fill else 0.0, line_dash=layer.dash)
@@ -199,7 +213,7 @@ def _line(plot: Plot, layer: Line, place: int) -> None:
     told += [_told(series, f"hover{n}") for n, series in enumerate(layer.hover)]
     catch = made.scatter("x", "y", source=source, size=14, fill_alpha=0.0, line_alpha=0.0)
     _hover(plot, catch, told, ["x", "y", *(f"hover{n}" for n in range(len(layer.hover)))])
-    if layer.label and not layer.hover[1:]:
+    if layer.label and plot.legend:
         _legend(plot, layer, drawn)
 
 
@@ -209,11 +223,12 @@ def plain(renderer: Any) -> None:
 
 
 def _legend(plot: Plot, layer: Line, drawn: Any) -> None:
-    from bokeh.models import Legend, LegendItem
+    from bokeh.models.annotations import Legend, LegendItem
 
     made = plot.figure
     if not made.legend:
-        legend = Legend(items=[], orientation="horizontal", location="top_left", padding=2, spacing=14, margin=0)
+        look: dict[str, Any] = {"orientation": "horizontal", "location": "top_left", "padding": 2, "spacing": 14, "margin": 0}
+        legend: Any = Legend(items=[], **look)
         legend.background_fill_color = legend.border_line_color = None
         legend.label_text_font, legend.label_text_font_size, legend.glyph_width = FONT, "12px", 18
         plot.paint(legend, "ink", "label_text_color")
@@ -224,7 +239,7 @@ def _legend(plot: Plot, layer: Line, drawn: Any) -> None:
 def _bars(plot: Plot, layer: Bars, place: int) -> None:
     from bokeh.core.properties import value
 
-    source, made = _source(layer, place), plot.figure
+    source, made = _source(plot, layer, place), plot.figure
     bar = made.hbar(y="category", right="value", left=0.0, height=0.62, source=source, line_color=None)
     plot.paint(bar.glyph, paint.role_of(layer.colour), "fill_color")
     plain(bar)
@@ -238,31 +253,33 @@ def _bars(plot: Plot, layer: Bars, place: int) -> None:
 def _mark(plot: Plot, layer: Mark, place: int) -> None:
     from bokeh.core.properties import value
 
-    source, made = _source(layer, place), plot.figure
+    source, made = _source(plot, layer, place), plot.figure
     role = paint.role_of(layer.colour)
     dot = made.scatter("x", "y", source=source, size=10, line_width=2.0)
     plot.paint(dot.glyph, role, "fill_color")
     plot.paint(dot.glyph, "paper", "line_color")
     plain(dot)
-    text = made.text("x", "y", text="text", source=source, x_offset=8, y_offset=-8, text_font=FONT, text_font_size="12px")
+    text = made.text("x", "y", text="text", source=source, x_offset="shift", y_offset="lift", text_align="align", text_font=value(FONT), text_font_size="12px")
     plot.paint(text.glyph, "ink", "text_color")
     _hover(plot, dot, [("", "@text"), ("x", "@x{%.5g}"), ("y", "@y{%.5g}")], ["x", "y"])
 
 
 def _rule(plot: Plot, layer: Rule, place: int) -> None:
     from bokeh.core.properties import value
-    from bokeh.models import LabelSet
+    from bokeh.models.annotations import LabelSet
 
-    source, made = _source(layer, place), plot.figure
+    source, made = _source(plot, layer, place), plot.figure
+    label: Any
     if layer.axis == "x":
         drawn = made.vspan(x="at", source=source, line_width=1.2, line_dash=layer.dash)
-        label = LabelSet(x="at", y=4 + 15 * (place % 3), y_units="screen", text="text", source=source, x_offset=4)
+        label = LabelSet(x="at", y="edge", text="text", source=source, x_offset=4, y_offset=-4 - 15 * plot.rules, text_baseline="top")
+        plot.rules += 1
     else:
         drawn = made.hspan(y="at", source=source, line_width=1.2, line_dash=layer.dash)
-        label = LabelSet(x=4, x_units="screen", y="at", text="text", source=source, y_offset=3)
+        label = LabelSet(x="edge", y="at", text="text", source=source, x_offset=4, y_offset=3)
     plot.paint(drawn.glyph, "quiet", "line_color")
     label.text_font, label.text_font_size = value(FONT), value("12px")
-    plot.paint(label, "quiet-text", "text_color")
+    plot.paint(label, "quiet", "text_color")
     made.add_layout(label)
 
 

@@ -61,10 +61,7 @@ def mixture_figure(case: Any, name: str, system: UnitSystem, chamber: Any = None
     ratios, curves = _mixture_curve(*_curve_key(case, chamber))
     ratio = case.si("mixture_ratio")
     pressure = REFERENCE_PRESSURE if chamber is None else chamber.si("pressure")
-    if chamber is None:
-        here = _mixture_point(case, pressure)[name]
-    else:
-        here = chamber.si(name)
+    here = _mixture_point(case, pressure)[name] if chamber is None else chamber.si(name)
     y = shown(name, [*curves[name], here], system, "chamber")
     curve, at = Series(y.label, y.values[:-1], y.unit, y.symbol), y.values[-1]
     x = Series("mixture ratio", tuple(ratios), "", "r")
@@ -163,16 +160,19 @@ def nozzle_figures(nozzle: Any, system: UnitSystem) -> tuple[Figure, Figure]:
     axis = Line(x, Series("axis", (0.0,) * len(position), length), colour="quiet", dash="dashed", hover=hover)
     drawing = Figure(outline.name, outline.title, outline.alt, outline.x, outline.y, (*outline.layers, axis), equal_aspect=True)
     ratios = (
-        ("mach", "Mach number", flow["mach"], "accent"),
+        ("mach", "Mach number", flow["mach"], 0),
         ("temperature", "temperature over its value at rest", flow["temperature"] / flow["rest_temperature"], 1),
         ("pressure", "pressure over its value at rest", flow["pressure"] / flow["rest_pressure"], 2),
     )
     lines = tuple(
-        Line(x, Series(label, tuple(values.tolist()), ""), colour=colour, label=label, hover=(hover[_PLACES[name]],))  # type: ignore[arg-type]
+        Line(x, Series(label, tuple(values.tolist()), ""), colour=colour, label=label, hover=(hover[_PLACES[name]],))
         for name, label, values, colour in ratios
     )
     alt = f"Flow along the nozzle: Mach number {flow['mach'][-1]:.4g} at the exit, pressure {hover[0].values[-1]:.4g} {units.shown_unit(hover[0].unit)}"
-    along = Figure("flow", "Flow along the nozzle", alt, outline.x, Axis("Mach number and ratios", low=0.0), (*lines, Rule("x", 0.0, "throat")))
+    low, high = min(x.values), max(x.values)
+    room = 0.06 * (high - low)
+    along_axis = Axis(outline.x.label, length, "x", low=low - room, high=high + room)
+    along = Figure("flow", "Flow along the nozzle", alt, along_axis, Axis("Mach number and ratios", low=0.0), (*lines, Rule("x", 0.0, "throat")))
     return drawing, along
 
 
@@ -227,14 +227,14 @@ def altitude_figure(performance: Any, name: str, system: UnitSystem) -> Figure:
         share[min(int(full.argmax()), len(share) - 1)] = curve.values[int(full.argmax())]
         layers.append(_line(x, share, curve, unit, "dashed", "full-flowing value, separation predicted"))
     layers.append(_line(x, np.where(full, curve.values, np.nan), curve, unit, "solid", curve.label))
-    layers += [Rule("x", height / scale, f"separation below ({criterion})") for criterion, height in limits.items() if height > 0.0]
+    layers += [Rule("x", height / scale, f"separated below: {criterion}") for criterion, height in limits.items() if height > 0.0]
     ambient = performance._values["ambient"]
     at = _altitude(ambient)
     layers.append(Mark(at / scale, here, ambient.text))
     title = f"{curve.label[:1].upper()}{curve.label[1:]} against altitude"
     words = ", ".join(f"{criterion} {height / scale:.3g} {unit}" for criterion, height in limits.items() if height > 0.0)
     alt = f"{title}: {here:.5g} {units.shown_unit(curve.unit)} at {ambient.text}" + (f"; separation predicted below: {words}" if words else "")
-    return Figure(f"altitude-{name}", title, alt, Axis("altitude", unit, "z", low=0.0, high=HIGHEST_ALTITUDE / scale), axis_of(curve), tuple(layers))
+    return Figure(f"altitude-{name}", title, alt, Axis("altitude", unit, "z", low=-0.015 * HIGHEST_ALTITUDE / scale, high=HIGHEST_ALTITUDE / scale), axis_of(curve), tuple(layers))
 
 
 def _line(x: tuple[float, ...], values: Any, curve: Series, unit: str, dash: Any, label: str) -> Line:

@@ -1,11 +1,22 @@
-"""Colours of a live plot: roles, and what they are in the light and in the dark theme."""
+"""Colours of a live plot: roles, and what they are in the light and in the dark theme.
+
+The colours are those of `propkit.view.palette`; the dark theme takes the same hues, mixed with white until they carry.
+"""
 
 from __future__ import annotations
 
-_LIGHT = {"ink": "#1d2430", "quiet": "#8a93a3", "quiet-text": "#5b6472", "accent": "#0b6e8f", "hairline": "#e3e7ee", "paper": "#ffffff"}
-_DARK = {"ink": "#e6eaf2", "quiet": "#7d8798", "quiet-text": "#a7b0bf", "accent": "#4cb8dc", "hairline": "#2e3540", "paper": "#14171c"}
-_SERIES_LIGHT = ("#0b6e8f", "#c4561b", "#5a7d1f", "#8a4f9e", "#a0741a", "#44577a")
-_SERIES_DARK = ("#4cb8dc", "#f08c4f", "#a3c95c", "#c99be0", "#dcb35a", "#9db2da")
+from propkit.view import palette
+from propkit.view.symbols import text_species
+
+_LIGHT = {
+    "ink": palette.INK,
+    "quiet": palette.QUIET,
+    "accent": palette.ACCENT,
+    "hairline": "#e4e8ec",
+    "paper": "#ffffff",
+}
+_DARK = {"ink": "#e4e8ec", "quiet": "#a7b2bd", "accent": palette.ACCENT_DARK, "hairline": "#39434d", "paper": "#15191e"}
+LIGHTENED = 0.45
 
 
 def role_of(colour: int | str) -> str:
@@ -15,19 +26,24 @@ def role_of(colour: int | str) -> str:
 
 def colour(role: str, theme: str = "light") -> str:
     """Return the colour of a role in a theme (``"light"`` or ``"dark"``)."""
-    words, series = (_LIGHT, _SERIES_LIGHT) if theme == "light" else (_DARK, _SERIES_DARK)
-    if role.startswith("series-"):
-        return series[int(role.removeprefix("series-")) % len(series)]
-    return words[role]
+    if not role.startswith("series-"):
+        return (_LIGHT if theme == "light" else _DARK)[role]
+    plain = palette.SERIES[int(role.removeprefix("series-")) % len(palette.SERIES)]
+    return plain if theme == "light" else lighter(plain, LIGHTENED)
+
+
+def lighter(plain: str, share: float) -> str:
+    """Return a colour ``#rrggbb`` mixed with a share of white."""
+    parts = [int(plain[place : place + 2], 16) for place in (1, 3, 5)]
+    return "#" + "".join(f"{round(part + share * (255 - part)):02x}" for part in parts)
 
 
 def table() -> dict[str, dict[str, str]]:
     """Return theme -> role -> colour, for a display that follows the theme."""
-    roles = [*_LIGHT, *(f"series-{place}" for place in range(len(_SERIES_LIGHT)))]
+    roles = [*_LIGHT, *(f"series-{place}" for place in range(len(palette.SERIES)))]
     return {theme: {role: colour(role, theme) for role in roles} for theme in ("light", "dark")}
 
 
 def species(text: str) -> str:
-    """Return a species key as it is shown, subscripts set."""
-    return text
-
+    """Return a species key as it is shown, counts as subscripts."""
+    return text_species(text)

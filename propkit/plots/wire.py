@@ -26,7 +26,8 @@ def plot_json(figure: Figure, height: int) -> dict[str, Any]:
 
 def _is_vector(model: Any) -> bool:
     """Whether the colours of a model are given by point, and a single one as a value."""
-    from bokeh.models import Glyph, LabelSet
+    from bokeh.models.annotations import LabelSet
+    from bokeh.models.glyph import Glyph
 
     return isinstance(model, Glyph | LabelSet)
 
@@ -51,15 +52,15 @@ def frame_of(figures: Iterable[Figure]) -> tuple[list[dict[str, Any]], bytes]:
     described: list[dict[str, Any]] = []
     numbers: list[float] = []
     for figure in figures:
-        sources = []
+        sources, where = [], limits(figure)
         for layer in figure.layers:
             source: dict[str, Any] = {}
-            for name, values in columns(layer).items():
+            for name, values in columns(layer, where).items():
                 if values and isinstance(values[0], str):
                     source[name] = values
                 else:
                     source[name] = [len(numbers), len(values)]
                     numbers.extend(values)
             sources.append(source)
-        described.append({"key": structure(figure), "title": figure.title, "alt": figure.alt, "sources": sources, "limits": limits(figure)})
+        described.append({"key": structure(figure), "title": figure.title, "alt": figure.alt, "sources": sources, "limits": where})
     return described, struct.pack(f"<{len(numbers)}d", *numbers)

@@ -120,6 +120,7 @@ class LiveFigure {
     for (const axis of ["x", "y"]) {
       const range = root[`${axis}_range`];
       const wanted = frame.limits[axis];
+      if (range.type === "DataRange1d") continue;
       if (typeof wanted[0] === "string") {
         if (String(range.factors) !== String(wanted)) range.factors = wanted;
       } else if (range.start !== wanted[0] || range.end !== wanted[1]) {

@@ -40,7 +40,7 @@ class Line {
     }
     const what = this.waiting.shift();
     this.sent += 1;
-    this.open = { number: this.sent, since: performance.now(), path: what.path };
+    this.open = { number: this.sent, since: performance.now(), path: what.path, do: what.do };
     this.model.send({ ...what, client: this.client, number: this.sent });
     clearTimeout(this.timer);
     this.timer = setTimeout(() => this.tell(), 1500);
@@ -56,7 +56,7 @@ class Line {
   }
 
   moves(path) {
-    return this.open?.path === path || this.waiting.some((what) => what.path === path);
+    return [this.open, ...this.waiting].some((what) => what?.path === path && what.do === "slide");
   }
 
   get slow() {
@@ -94,8 +94,8 @@ class ControlView {
     this.error = h("p", { class: "pk-error", id: `${id}-error`, role: "alert" });
     this.doc = h("span", { class: "pk-hidden", id: `${id}-doc` });
     this.field.setAttribute("aria-describedby", `${id}-doc ${id}-error`);
-    const head = h("div", { class: "pk-head" }, this.group ?? this.label, this.note);
-    if (this.group) head.prepend(this.label);
+    const head = h("div", { class: "pk-head" }, this.label, this.group, this.note);
+    if (this.group) head.classList.add("pk-grouped");
     this.element.append(head, h("div", { class: "pk-edit" }, this.slider, this.field, this.resetButton), this.error, this.doc);
   }
 
@@ -157,11 +157,10 @@ class ControlView {
     const symbol = spec.symbol ? ` <span class="pk-symbol">${spec.symbol}</span>` : "";
     const markup = `<span class="pk-mark pk-${spec.kind}" aria-hidden="true"></span>`;
     if (this.member) {
-      this.label.textContent = spec.group.label;
+      setMarkup(this.label, `${markup}<span class="pk-hidden">${escapeText(spec.group.label)}</span>`);
       this.label.setAttribute("for", this.member.id);
       setOptions(this.member, spec.group.members, spec.group.member);
       this.field.setAttribute("aria-label", spec.label);
-      this.label.insertAdjacentHTML("afterbegin", markup);
     } else {
       setMarkup(this.label, `${markup}${escapeText(spec.label)}${symbol}`);
     }
@@ -193,6 +192,12 @@ class ControlView {
     this.slider.setAttribute("aria-label", spec.label);
     this.slider.setAttribute("aria-valuetext", spec.text);
   }
+
+  // when the kernel has answered everything, the slider stands where the kernel says
+  settle() {
+    const at = this.spec?.slider?.at;
+    if (this.slider && at !== undefined && this.slider.valueAsNumber !== at) this.slider.value = at;
+  }
 }
 
 function setMarkup(element, markup) {
@@ -206,6 +211,10 @@ function escapeText(text) {
   const box = document.createElement("span");
   box.textContent = text;
   return box.innerHTML;
+}
+
+function quoted(text) {
+  return escapeText(text).replaceAll('"', "&quot;");
 }
 
 function setOptions(select, options, chosen) {
@@ -228,7 +237,7 @@ function numberCell(text) {
 }
 
 function rowMarkup(row, compared) {
-  const doubts = row.doubts.map((doubt) => `<div class="pk-doubt">${escapeText(doubt)}</div>`).join("");
+  const doubts = row.doubts.map((doubt) => ` <span class="pk-doubt" role="img" title="${quoted(doubt)}" aria-label="${quoted(doubt)}">△</span>`).join("");
   const symbol = row.symbol ? `<span class="pk-symbol">${row.symbol}</span>` : "";
   const steps = compared ? `<td class="pk-number pk-step">${numberCell(row.difference ?? "")}</td><td class="pk-share">${escapeText(row.share ?? "")}</td>` : "";
   return `<tr data-name="${escapeText(row.name)}"><th scope="row">${escapeText(row.label)} ${symbol}${doubts}</th>` +
@@ -296,12 +305,7 @@ class PanelView {
     this.kind = h("span", { class: "pk-kind" });
     this.name = h("span", { class: "pk-name" });
     this.status = h("div", { class: "pk-status", role: "status", "aria-live": "polite" });
-    const id = `pk-${(unique += 1)}`;
-    const system = (units) => {
-      const input = h("input", { type: "radio", name: `${id}-units`, value: units, id: `${id}-${units}`, onchange: () => this.ask({ do: "units", units }) });
-      this[`radio${units}`] = input;
-      return [input, h("label", { for: `${id}-${units}` }, units)];
-    };
+    const system = (units) => (this[`units${units}`] = h("button", { type: "button", title: `Show ${units} units`, onclick: () => this.ask({ do: "units", units }) }, units));
     const bar = h(
       "div",
       { class: "pk-bar", role: "toolbar", "aria-label": "Panel" },
@@ -309,7 +313,7 @@ class PanelView {
       button("redo", "Redo", "Redo what was undone", () => this.ask({ do: "redo" })),
       button("pin", "Pin", "Keep this design as the baseline to compare with", () => this.ask({ do: "pin" })),
       button("unpin", "Unpin", "Let go of every pin", () => this.ask({ do: "unpin" })),
-      h("fieldset", { class: "pk-switch" }, h("legend", { class: "pk-hidden" }, "Units of the display"), ...system("SI"), ...system("US")),
+      h("div", { class: "pk-switch", role: "group", "aria-label": "Units of the display" }, system("SI"), system("US")),
     );
     this.inputs = h("div", { class: "pk-inputs" });
     this.headline = h("div", { class: "pk-headline" });
@@ -338,7 +342,7 @@ class PanelView {
         "div",
         { class: "pk-body" },
         this.inputs,
-        h("div", { class: "pk-outcome" }, this.headline, this.doubts, this.tabs, this.figures, this.figureError, fold("pins", "Pinned designs side by side", true), this.results, fold("stations", "Stations"), this.above, fold("code", "Code that reproduces this")),
+        h("div", { class: "pk-outcome" }, this.headline, this.doubts, this.tabs, this.figures, this.figureError, this.results, fold("pins", "Pinned designs side by side"), fold("stations", "Stations"), this.above, fold("code", "Code that reproduces this")),
       ),
     );
     this.details.code.body.append(h("pre", { class: "pk-code", tabindex: "0" }, this.code), this.copy, this.copied);
@@ -372,7 +376,7 @@ class PanelView {
     this.undo.disabled = !shown.undo;
     this.redo.disabled = !shown.redo;
     this.unpin.hidden = !compared;
-    this[`radio${shown.units}`].checked = true;
+    for (const units of ["SI", "US"]) this[`units${units}`].setAttribute("aria-pressed", units === shown.units ? "true" : "false");
     this.updateSets(shown.sets);
     setMarkup(this.headline, headlineMarkup(shown.headline, compared));
     setMarkup(this.results, tableMarkup(shown.results, compared, shown.pins.baseline));
@@ -386,6 +390,8 @@ class PanelView {
   }
 
   state() {
+    this.root.toggleAttribute("data-busy", Boolean(this.line.open));
+    if (!this.line.open) this.controls.forEach((view) => view.settle());
     const shown = this.model.get("shown");
     const words = this.line.slow ? "Waiting for the kernel …" : (shown.status ?? "");
     if (this.status.textContent !== words) this.status.textContent = words;
