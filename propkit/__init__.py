@@ -33,6 +33,7 @@ _PUBLIC = {
     "Uniform": "propkit.study.distributions",
     "Triangular": "propkit.study.distributions",
     "Empirical": "propkit.study.distributions",
+    "Reconciliation": "propkit.reconcile.reconciliation",
     "Record": "propkit.record",
     "show_versions": "propkit.versions",
     "PropkitError": "propkit.errors",
@@ -81,6 +82,7 @@ if TYPE_CHECKING:
     from propkit.model.propellant_case import PropellantCase as PropellantCase
     from propkit.model.state import State as State
     from propkit.record import Record as Record
+    from propkit.reconcile.reconciliation import Reconciliation as Reconciliation
     from propkit.study.distributions import Empirical as Empirical
     from propkit.study.distributions import Normal as Normal
     from propkit.study.distributions import Triangular as Triangular
