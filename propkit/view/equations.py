@@ -1,34 +1,41 @@
-"""Equations as SVG through `ziamath` (extra ``memo``); None where it cannot set them, and the text is shown instead."""
+"""Equations as SVG images through `ziamath` (extra ``memo``); None where it is not installed, and the text is shown instead."""
 
 from __future__ import annotations
 
+import re
 import warnings
 from functools import lru_cache
 
-LONGEST = 2000
+SIZE = 15
+_NUMBER = re.compile(r"-?\d+\.\d{3,}")
 
 
 @lru_cache(maxsize=512)
-def svg_of(latex: str, size: float = 15.0, inline: bool = False) -> tuple[str, float] | None:
-    """Return an equation as SVG and its depth below the baseline [px], or None where it cannot be set here.
-
-    Parameters
-    ----------
-    latex : str
-        LaTeX without dollar signs, at most `LONGEST` characters.
-    size : float
-        Font size [px].
-    inline : bool
-        Whether it stands in a line of text.
-    """
-    if len(latex) > LONGEST:
-        return None
+def svg_of(latex: str) -> str | None:
+    """Return an equation as SVG on its own white plate, or None when it cannot be drawn here."""
     with warnings.catch_warnings():
         warnings.simplefilter("ignore", DeprecationWarning)  # the setter reads its fonts in an older way
         try:
             import ziamath.zmath
-
-            picture = ziamath.zmath.Latex(latex, size=size, inline=inline)
-            return str(picture.svg()), float(picture.getyofst())
-        except Exception:  # not installed, or any refusal of the setter: the text says the same
+        except ImportError:
             return None
+        try:
+            return _slim(str(ziamath.zmath.Latex(latex, size=SIZE).svg()))
+        except Exception:  # a symbol the setter does not know: the text says the same
+            return None
+
+
+def _slim(svg: str) -> str:
+    """Return the image with coordinates to a hundredth of a pixel, no needless spaces, and a plate behind it."""
+    short = _NUMBER.sub(lambda match: f"{float(match[0]):.2f}".rstrip("0").rstrip("."), svg)
+    short = re.sub(r'(?<= d=")[^"]*', lambda match: _path(match[0]), short)
+    box = re.search(r'viewBox="(\S+) (\S+) (\S+) (\S+)"', short)
+    if box is None:
+        return short
+    plate = f'<rect x="{box[1]}" y="{box[2]}" width="{box[3]}" height="{box[4]}" fill="#fff"/>'
+    head, end, rest = short.partition(">")
+    return f"{head}{end}{plate}{rest}"
+
+
+def _path(data: str) -> str:
+    return re.sub(r" ?([A-Za-z]) ?", r"\1", data).replace(" -", "-")

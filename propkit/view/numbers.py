@@ -3,10 +3,13 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterable
 
 THIN = "\u202f"
 MINUS = "\u2212"
 _SUPERSCRIPTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
+_WIDTHS = {".": 0.6, THIN: 0.4, "×": 1.4, **dict.fromkeys("⁻⁰¹²³⁴⁵⁶⁷⁸⁹", 0.75)}
+"""Widths of letters against that of a digit, where they differ; generous, so that nothing spills over."""
 
 
 def rounded(value: float, digits: int) -> str:
@@ -32,7 +35,7 @@ def pretty(value: float, digits: int) -> str:
 
 
 def grouped(text: str) -> str:
-    """Return a plain number grouped by threes on both sides of the point from five digits on, with a true minus."""
+    """Return a plain number whose whole part is grouped by threes from five digits on, with a true minus."""
     sign, body = (MINUS, text[1:]) if text.startswith("-") else ("", text)
     whole, point, part = body.partition(".")
     if len(whole) > 4:
@@ -42,13 +45,18 @@ def grouped(text: str) -> str:
     return f"{sign}{whole}{point}{part}"
 
 
-def aligned(texts: list[str]) -> list[str]:
-    """Return numbers padded behind, so that right alignment puts their decimal signs under each other."""
-    parts = [(text, len(text.partition(".")[2]) if "." in text else -1) for text in texts]
-    widest = max((length for _, length in parts), default=-1)
-    if widest < 0:
-        return texts
-    return [text + ("\u2008" if length < 0 else "") + "\u2007" * (widest - max(length, 0)) for text, length in parts]
+def split(text: str) -> tuple[str, str]:
+    """Return a number as it is set, cut before its decimal sign or, without one, before its power of ten."""
+    for sign in (".", f"{THIN}×"):
+        head, found, tail = text.partition(sign)
+        if found:
+            return head, found + tail
+    return text, ""
+
+
+def room(texts: Iterable[str]) -> int:
+    """Return the width, in digits, that the parts behind the decimal sign need at most."""
+    return max((math.ceil(sum(_WIDTHS.get(letter, 1.0) for letter in split(text)[1])) for text in texts), default=0)
 
 
 def latex(value: float, digits: int) -> str:
