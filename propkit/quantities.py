@@ -162,6 +162,65 @@ _ROWS = (
         4,
     ),
     Quantity("fuel_pressure", PRESSURE, r"p_{fu}", "fuel pressure", "pressure at which the fuel is stored or fed", 4),
+    Quantity(
+        "mixture_ratio_by_volume",
+        NUMBER,
+        r"r_{V}",
+        "mixture ratio by volume",
+        "oxidizer volume flow over fuel volume flow, as stored",
+        4,
+    ),
+    Quantity(
+        "oxidizer_percent",
+        NUMBER,
+        r"w_{ox}",
+        "percent oxidizer",
+        "oxidizer mass flow over that of both propellants, in percent",
+        4,
+    ),
+    Quantity(
+        "case.oxygen_balance",
+        NUMBER,
+        r"B_{O}",
+        "oxygen balance",
+        "mass of oxygen left over (or missing, when negative) for complete combustion, over the mass",
+        4,
+    ),
+    Quantity("additives", TEXT, r"", "additives", "what is added, as mass fractions of the whole propellant flow"),
+    Quantity(
+        "additive_fraction", NUMBER, r"w_{ad}", "additive fraction", "mass of all additives over the whole mass", 4
+    ),
+    Quantity("condensed", TEXT, r"", "condensed products", "whether liquids and solids may form among the products"),
+    Quantity("propellant", TEXT, r"", "propellant", "the single propellant, or the mixture that burns as one"),
+    Quantity("propellant_pressure", PRESSURE, r"p_{pr}", "propellant pressure", "pressure as stored or fed", 4),
+    Quantity(
+        "case.propellant_temperature",
+        TEMPERATURE,
+        r"T_{pr}",
+        "propellant temperature",
+        "temperature at which the propellant is stored or fed",
+        5,
+    ),
+    Quantity(
+        "ammonia_dissociation",
+        NUMBER,
+        r"x",
+        "ammonia dissociation",
+        "part of the ammonia from hydrazine that dissociates to nitrogen and hydrogen",
+        4,
+    ),
+    Quantity("gas", TEXT, r"", "gas", "the gas that expands as it is, without combustion"),
+    Quantity("case.temperature", TEMPERATURE, r"T", "temperature", "temperature of the gas as stored", 5),
+    Quantity("tank_pressure", PRESSURE, r"p_{tk}", "tank pressure", "pressure at which the gas is stored", 5),
+    Quantity(
+        "film_fraction", NUMBER, r"w_{f}", "film fraction", "mass flow of the film over the whole mass flow", 4
+    ),
+    Quantity(
+        "film_mixture_ratio", NUMBER, r"r_{f}", "film mixture ratio", "oxidizer over fuel mass flow in the film", 4
+    ),
+    Quantity(
+        "core_mixture_ratio", NUMBER, r"r_{c}", "core mixture ratio", "oxidizer over fuel mass flow in the core", 4
+    ),
     # chamber
     Quantity(
         "chamber.pressure",
@@ -269,6 +328,30 @@ _ROWS = (
     ),
     Quantity("mass_flow", MASS_FLOW, r"\dot{m}", "mass flow", "propellant mass flow through the throat", 5),
     Quantity("stations", TEXT, r"", "stations", "flow state at the stations of the nozzle"),
+    # contour and wall
+    Quantity("contour", TEXT, r"", "contour", "shape of the wall: a cone or a bell"),
+    Quantity("half_angle", ANGLE, r"\alpha", "half-angle", "angle of the cone's wall against the axis", 4),
+    Quantity("contour.length", NUMBER, r"L_{f}", "length fraction", "length from throat to lip over that of a 15 degree cone", 4),
+    Quantity("throat_angle", ANGLE, r"\theta_{n}", "throat angle", "wall angle where the parabola starts", 4),
+    Quantity("exit_angle", ANGLE, r"\theta_{e}", "exit angle", "wall angle at the lip", 4),
+    Quantity("throat_arc", NUMBER, r"", "throat arc", "radius of the arc downstream of the throat over the throat radius", 4),
+    Quantity("upstream_arc", NUMBER, r"", "upstream arc", "radius of the arc upstream of the throat over the throat radius", 4),
+    Quantity("inlet_arc", NUMBER, r"", "inlet arc", "radius of the arc between cylinder and convergent over the throat radius", 4),
+    Quantity("convergent_angle", ANGLE, r"", "convergent angle", "half-angle of the convergent", 4),
+    Quantity("characteristic_length", LENGTH, r"L^{*}", "characteristic length", "chamber volume over throat area", 4),
+    Quantity("stay_time", TIME, r"t_{s}", "stay time", "mean time that the gas spends in the chamber", 4),
+    Quantity("chamber_volume", VOLUME, r"V_{c}", "chamber volume", "volume from the injector face to the throat", 4),
+    Quantity("chamber_length", LENGTH, r"L_{c}", "chamber length", "axial length from the injector face to the throat", 4),
+    Quantity("wall_thickness", LENGTH, r"t_{w}", "wall thickness", "thickness of the wall, normal to it", 4),
+    Quantity("wall_density", DENSITY, r"\rho_{w}", "wall density", "density of the wall; the default is a usual copper or nickel alloy", 4),
+    Quantity("divergent_length", LENGTH, r"L_{n}", "divergent length", "axial length from throat to lip", 5),
+    Quantity("contour_length", LENGTH, r"L", "contour length", "axial length of the whole wall", 5),
+    Quantity("wetted_area", AREA, r"A_{w}", "wetted area", "inner surface of the wall", 5),
+    Quantity("contour_volume", VOLUME, r"V", "contour volume", "volume inside the wall", 5),
+    Quantity("divergence_factor", NUMBER, r"\lambda", "divergence factor", "share of the exit momentum that is along the axis", 5),
+    Quantity("throat_wall_angle", ANGLE, r"\theta_{n}", "wall angle after the throat", "wall angle at the end of the throat arc", 4),
+    Quantity("lip_angle", ANGLE, r"\theta_{e}", "wall angle at the lip", "wall angle at the exit", 4),
+    Quantity("wall_mass", MASS, r"m_{w}", "wall mass", "mass of a wall of even thickness along the contour", 4),
     # performance
     Quantity("ambient", PRESSURE, r"p_{a}", "ambient pressure", "pressure of the surroundings", 5),
     Quantity("ambient_pressure", PRESSURE, r"p_{a}", "ambient pressure", "pressure of the surroundings", 5),

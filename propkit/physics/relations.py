@@ -22,6 +22,11 @@ def _mixture_enthalpy(mixture_ratio: float, oxidizer_enthalpy: float, fuel_entha
     return stoichiometry.mix(mixture_ratio, oxidizer_enthalpy, fuel_enthalpy)
 
 
+def _oxygen_balance(net_valence: float, oxygen_mass: float) -> float:
+    """Return the oxygen balance of a mixture that carries this net valence per mass."""
+    return stoichiometry.oxygen_balance({"H": net_valence}, oxygen_mass)
+
+
 _CHOKED = (
     "sqrt({isentropic_exponent}) * (2 / ({isentropic_exponent} + 1))"
     " ** (({isentropic_exponent} + 1) / (2 * ({isentropic_exponent} - 1)))"
@@ -50,6 +55,41 @@ _LIST = (
         "{stoichiometric_mixture_ratio} / {equivalence_ratio}",
         balances.mixture_ratio,
         "definition",
+    ),
+    relation(
+        "mixture_ratio_of_volumes",
+        TERMS["mixture_ratio"],
+        "{mixture_ratio_by_volume} * {oxidizer_density} / {fuel_density}",
+        stoichiometry.ratio_from_volumes,
+        "definition",
+    ),
+    relation(
+        "mixture_ratio_of_percent",
+        TERMS["mixture_ratio"],
+        "{oxidizer_percent} / (100 - {oxidizer_percent})",
+        stoichiometry.ratio_from_percent,
+        "definition",
+    ),
+    relation(
+        "mixture_ratio_by_volume",
+        TERMS["mixture_ratio_by_volume"],
+        "{mixture_ratio} * {fuel_density} / {oxidizer_density}",
+        stoichiometry.ratio_of_volumes,
+        "definition",
+    ),
+    relation(
+        "oxidizer_percent",
+        TERMS["oxidizer_percent"],
+        "100 * {mixture_ratio} / (1 + {mixture_ratio})",
+        stoichiometry.percent_of_ratio,
+        "definition",
+    ),
+    relation(
+        "oxygen_balance",
+        Term(r"B_{O}"),
+        "-{net_valence} / 2 * {oxygen_mass}",
+        _oxygen_balance,
+        "common-practice",
     ),
     relation(
         "mixture_enthalpy",

@@ -116,3 +116,118 @@ def bulk_density(mixture_ratio: Values, oxidizer_density: Values, fuel_density: 
     Definition.
     """
     return 1.0 / mix(mixture_ratio, 1.0 / values(oxidizer_density), 1.0 / values(fuel_density))
+
+
+def oxygen_balance(elements: Mapping[str, float], oxygen_mass: float) -> float:
+    """Return the mass of oxygen left over (positive) or missing (negative) for complete combustion, over the mass.
+
+    Parameters
+    ----------
+    elements : mapping
+        Element symbol -> moles of atoms per mass [mol/kg].
+    oxygen_mass : float
+        Molar mass of an oxygen atom [kg/mol].
+
+    Returns
+    -------
+    float
+        Oxygen balance [1]; NaN where an element has no valence in `VALENCES`.
+
+    Notes
+    -----
+    -V M_O / 2 with the net valence V per mass; carbon burns to CO2, hydrogen to H2O, aluminium to Al2O3, and chlorine and fluorine
+    take hydrogen. Ammonium perchlorate: +0.34; ammonium nitrate: +0.20.
+
+    Source
+    ------
+    Common practice, no source.
+    """
+    if not set(elements) <= set(VALENCES):
+        return float("nan")
+    return -0.5 * net_valence(elements) * oxygen_mass
+
+
+def ratio_of_volumes(mixture_ratio: Values, oxidizer_density: Values, fuel_density: Values) -> Array:
+    """Return the mixture ratio by volume.
+
+    Parameters
+    ----------
+    mixture_ratio : float or array
+        Mass of oxidizer over mass of fuel [1].
+    oxidizer_density, fuel_density : float or array
+        Densities as stored [kg/m3].
+
+    Returns
+    -------
+    array
+        Volume of oxidizer over volume of fuel [1]: r rho_fu / rho_ox.
+
+    Source
+    ------
+    Definition.
+    """
+    return np.asarray(values(mixture_ratio) * values(fuel_density) / values(oxidizer_density))
+
+
+def ratio_from_volumes(mixture_ratio_by_volume: Values, oxidizer_density: Values, fuel_density: Values) -> Array:
+    """Return the mixture ratio by mass of one by volume; arguments and inverse as for `ratio_of_volumes`.
+
+    Parameters
+    ----------
+    mixture_ratio_by_volume : float or array
+        Volume of oxidizer over volume of fuel [1].
+    oxidizer_density, fuel_density : float or array
+        Densities as stored [kg/m3].
+
+    Returns
+    -------
+    array
+        Mass of oxidizer over mass of fuel [1].
+
+    Source
+    ------
+    Definition.
+    """
+    return np.asarray(values(mixture_ratio_by_volume) * values(oxidizer_density) / values(fuel_density))
+
+
+def percent_of_ratio(mixture_ratio: Values) -> Array:
+    """Return the percent oxidizer of a mixture ratio.
+
+    Parameters
+    ----------
+    mixture_ratio : float or array
+        Mass of oxidizer over mass of fuel [1].
+
+    Returns
+    -------
+    array
+        Mass of oxidizer over mass of both [percent].
+
+    Source
+    ------
+    Definition.
+    """
+    ratio = values(mixture_ratio)
+    return np.asarray(100.0 * ratio / (1.0 + ratio))
+
+
+def ratio_from_percent(oxidizer_percent: Values) -> Array:
+    """Return the mixture ratio of a percent oxidizer.
+
+    Parameters
+    ----------
+    oxidizer_percent : float or array
+        Mass of oxidizer over mass of both [percent], below 100.
+
+    Returns
+    -------
+    array
+        Mass of oxidizer over mass of fuel [1].
+
+    Source
+    ------
+    Definition.
+    """
+    percent = values(oxidizer_percent)
+    return np.asarray(percent / (100.0 - percent))
