@@ -83,7 +83,7 @@ def figure_key(target: Performance, name: str) -> str:
     except InputError as error:
         near = near_matches(bare, OWN)
         hint = f" Among the figures of an engine: {', '.join(near)}." if near else ""
-        raise InputError(f"{error}{hint}", **error.data) from None
+        raise InputError(f"{error}{hint}", path=name) from None
     if place.is_input:
         return variable(target, place.path).path
     found = result_name(target, place.path)

@@ -111,6 +111,8 @@ class Reconciliation:
         hold(self, "_correlation", dict(correlation or {}))
         dump = {"dump_flow_fraction": dump_flow_fraction, "dump_specific_impulse": dump_specific_impulse}
         hold(self, "_dump", {key: value for key, value in dump.items() if value is not None})
+        hold(self, "_free", ())
+        hold(self, "_priors", {})
         hold(self, "_figures", self._read(figures))
         self._set_free(free)
         hold(self, "_adjustment", self._adjust())
@@ -172,7 +174,7 @@ class Reconciliation:
         except InputError as error:
             near = near_matches(name, EXTRA_UNKNOWNS)
             hint = f" Did you mean {', '.join(near)}?" if near else ""
-            raise InputError(f"free: {error}{hint}", **error.data) from None
+            raise InputError(f"free: {error}{hint}", path=name) from None
 
     def _adjust(self) -> Adjustment:
         keys = tuple(dict.fromkeys((figure.key, figure.level) for figure in self._figures.values()))
