@@ -73,7 +73,6 @@ class Combustion:
             "the injector face",
             "temperature",
         )
-        yield from warnings.supersaturation(self.table, self.injector.take([index]), "the injector face", "temperature")
 
 
 def combust(

@@ -47,8 +47,6 @@ class Expansion:
                 self.table, state.amounts[index], float(state.temperature[index]), where, "stations"
             ):
                 yield text, about
-            for text, _, about in warnings.supersaturation(self.table, state.take([index]), where, "stations"):
-                yield text, about
 
     def compositions(self, index: int = 0) -> list[tuple[str, list[tuple[str, float]]]]:
         """Return station and (species, mole fraction) pairs for the stations; empty for a gas of given properties."""

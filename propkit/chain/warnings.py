@@ -3,11 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from typing import Any
 
 import numpy as np
 
-from propkit.physics import equilibrium
 from propkit.physics.arrays import Array
 from propkit.physics.thermodynamics import SpeciesTable
 
@@ -30,14 +28,3 @@ def composition_range(
         limit = table.temperature_low[beyond].max() if side == "below" else table.temperature_high[beyond].min()
         text = f"At {where} the gas is at {temperature:.5g} K, {side} the {limit:g} K limit of the data of {names}; the heat capacity is held there."
         yield text, "data-range", about
-
-
-def supersaturation(table: SpeciesTable, state: Any, where: str, about: str) -> Iterator[tuple[str, str, str]]:
-    """Yield a doubt when a gas-only state holds more carbon or water vapour than a condensed phase would allow."""
-    ratios = getattr(equilibrium, "saturation_ratios", None)
-    if ratios is None:
-        return
-    for name, ratio in ratios(table, state).items():
-        if float(np.atleast_1d(ratio)[0]) > 1.0:
-            text = f"At {where} the gas is supersaturated: {name} would form (saturation ratio {float(np.atleast_1d(ratio)[0]):.3g}), but only gases are counted."
-            yield text, "supersaturation", about
