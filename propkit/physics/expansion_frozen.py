@@ -212,8 +212,8 @@ def frozen_gas(
     """Return the isentrope of a held composition; arguments as for `propkit.physics.expansion.frozen`."""
     gas = amounts[:, : table.gas_count]
     moles = gas.sum(axis=1)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        mixing = -np.where(gas > 0.0, gas * np.log(gas / moles[:, None]), 0.0).sum(axis=1)
+    share = np.maximum(gas / moles[:, None], np.finfo(float).tiny)  # a trace below the smallest normal number adds nothing
+    mixing = -(gas * np.log(share)).sum(axis=1)
     coefficients = np.stack([amounts @ segment.T for segment in table.segments], axis=1)
     shape = moles.shape
     enthalpy, entropy, pressure, temperature = (
