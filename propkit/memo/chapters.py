@@ -1,0 +1,241 @@
+"""The chapters of the memo of one record, as markup: from the summary to the provenance."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from html import escape
+from typing import Any
+
+from propkit.errors import NotAvailableError, PropkitError, RecordError
+from propkit.memo import markup
+from propkit.memo.identities import identities
+from propkit.model import sheet
+from propkit.model.base import Calculation
+from propkit.record.build import CAUTIONS
+from propkit.record.outcome import Verification
+from propkit.record.record import Record
+from propkit.record.trace import Origin, trace
+from propkit.report import Report, Section, Step
+from propkit.sources import SOURCES, reference
+from propkit.view import numbers
+
+_MOST_ORIGINS = 1
+_ABOUT = {"given": "as given", "default": "default", "method": "of the method", "computed": "computed"}
+
+
+class Material:
+    """What the chapters of a record are made of: the record, its object, its verification, the sheets of the chain.
+
+    Raises
+    ------
+    RecordError
+        When the record does not verify: a memo never shows numbers that do not follow from the inputs.
+    """
+
+    def __init__(self, record: Record) -> None:
+        self.record = record
+        self.verification: Verification = record.verify(record.title)
+        if not self.verification.ok:
+            raise RecordError(f"the record {record.title!r} does not verify, so no memo is made of it:\n{self.verification}")
+        self.content: dict[str, Any] = record.content
+        self.calculation: Calculation = record.calculation
+        self.links = self.calculation.chain()
+        self.reports: list[Report] = [link.report() for link in self.links]
+        self.last = self.reports[-1]
+
+    def facts(self) -> list[tuple[str, str]]:
+        """Return the facts of the title block."""
+        provenance = self.record.provenance
+        return [
+            ("author", self.content["author"]),
+            ("date", provenance["time"].replace("T", " ").replace("Z", " UTC")),
+            ("subject", self.content["description"]),
+            ("computed with", f"propkit {provenance['versions']['propkit']}, data basis {self.content['basis']['name'] if self.content['basis'] else 'none'}"),
+            ("record", self.record.digest),
+        ]
+
+
+def chapters(material: Material) -> Iterator[tuple[str, str]]:
+    """Yield title and markup of each chapter; empty ones are left out."""
+    makers = (
+        ("Purpose", _purpose),
+        ("Results", _results),
+        ("Assumptions", _assumptions),
+        ("Inputs", _inputs),
+        ("Working", _working),
+        ("Stations and composition", _stations),
+        ("Checks", _checks),
+        ("Warnings and cautions", _warnings),
+        ("Where the result comes from", _origins),
+        ("References", _references),
+        ("Provenance", _provenance),
+    )
+    for title, make in makers:
+        body = "".join(make(material))
+        if body:
+            yield title, body
+
+
+def _purpose(material: Material) -> Iterator[str]:
+    for text in (material.content["purpose"], material.content["notes"]):
+        for paragraph in text.split("\n\n"):
+            if paragraph.strip():
+                yield f"<p>{escape(paragraph.strip())}</p>"
+
+
+def _results(material: Material) -> Iterator[str]:
+    report = material.last
+    shown = {row.name for row in report.headline}
+    rest = [row for row in report.results if row.name not in shown]
+    if rest:
+        yield markup.rows_table([*report.headline, *rest])
+    for part in material.reports[-2:]:
+        for figure in part.figures:
+            yield markup.drawing(figure)
+
+
+def _assumptions(material: Material) -> Iterator[str]:
+    entries = material.calculation.assumptions
+    priced = any(getattr(entry, "price", None) for entry in entries)
+    heads = ("assumption", "origin", "bears on", *(("price",) if priced else ()))
+    rows = [
+        (
+            str(getattr(entry, "statement", entry)),
+            _ABOUT.get(entry.origin, entry.origin),
+            entry.about.replace("_", " "),
+            *((str(getattr(entry, "price", "") or ""),) if priced else ()),
+        )
+        for entry in entries
+    ]
+    if rows:
+        yield markup.text_table(heads, rows)
+
+
+def _inputs(material: Material) -> Iterator[str]:
+    yield '<p class="quiet">● given, ○ default, = computed</p>'
+    for report, link in zip(material.reports, material.links, strict=True):
+        if report.given:
+            yield f"<h3>{escape(link.title)}</h3>"
+            yield markup.rows_table(report.given, typed=True)
+    for section in material.reports[0].sections:
+        if section.name == "propellants" and section.table is not None:
+            yield "<h3>Propellants</h3>"
+            yield markup.data_table(section.table)
+
+
+def _working(material: Material) -> Iterator[str]:
+    told: set[str] = set()
+    for report, link in zip(material.reports, material.links, strict=True):
+        for row in report.headline:
+            if row.kind != "computed":
+                continue
+            try:
+                steps = [step for step in link.working(row.name).steps if _key(step) not in told]
+            except PropkitError:
+                continue
+            told |= {_key(step) for step in steps}
+            if steps:
+                yield f"<h3>{escape(link.title)}: {escape(row.label)}</h3>"
+                yield markup.working(steps)
+
+
+def _key(step: Step) -> str:
+    return f"{step.label} {step.text} {step.numbers}"
+
+
+def _section_of(material: Material, name: str) -> Section | None:
+    found = [section for report in material.reports for section in report.sections if section.name == name]
+    return found[-1] if found else None
+
+
+def _stations(material: Material) -> Iterator[str]:
+    for name in ("stations", "composition"):
+        section = _section_of(material, name)
+        if section is not None and section.table is not None:
+            yield f"<h3>{escape(section.title)}</h3>"
+            yield markup.data_table(section.table)
+
+
+def _checks(material: Material) -> Iterator[str]:
+    made = list(identities(material.links))
+    if made:
+        yield "<h3>Identities</h3>"
+        yield markup.conditions_table(made)
+    yield "<h3>Second engine</h3>"
+    yield from _second_engine(material)
+    yield "<h3>Recomputation</h3>"
+    count = len(material.verification.leaves)
+    yield f"<p>When this memo was made, {count} values of the record were recomputed from its inputs and compared: {escape(material.verification.status)}.</p>"
+    rows = [(check.name, "agrees" if check.status == "same" else check.status, check.detail) for check in material.verification.checks]
+    yield markup.text_table(("compared", "outcome", "detail"), rows)
+
+
+def _second_engine(material: Material) -> Iterator[str]:
+    try:
+        check = material.calculation.cross_check()  # type: ignore[attr-defined]
+    except (NotAvailableError, AttributeError):
+        reason = material.content["second_engine"].get("reason", "it is recorded with a performance")
+        yield f"<p>Not compared: {escape(str(reason))}.</p>"
+        return
+    yield f"<p>{escape(str(check))}</p>"
+    names = list(dict.fromkeys(name for station in check.differences.values() for name in station))
+    rows = [
+        (station, *(numbers.pretty(values[name], 2) if name in values else "" for name in names))
+        for station, values in check.differences.items()
+    ]
+    yield markup.text_table(("difference", *(name.replace("_", " ") for name in names)), rows, range(1, len(names) + 1))
+
+
+def _warnings(material: Material) -> Iterator[str]:
+    doubts = [str(doubt) for doubt in material.calculation.warnings]
+    yield "<h3>Warnings</h3>"
+    yield markup.lines_list(doubts) if doubts else "<p>None.</p>"
+    yield "<h3>Cautions</h3>"
+    yield markup.lines_list(dict.fromkeys((*material.last.cautions, *CAUTIONS)))
+
+
+def _origins(material: Material) -> Iterator[str]:
+    names = [row.name for row in material.last.headline if row.kind == "computed"]
+    for name in [name for name in names if name != "thrust"][:_MOST_ORIGINS] or names[:1]:
+        yield _tree(trace(material.calculation, name))
+
+
+def _tree(origin: Origin) -> str:
+    rows = []
+    for depth, entry in origin.lines():
+        indent = "\u2003" * depth
+        rows.append(f"<tr><td>{indent}{escape(entry.text)}</td><td>{escape(entry.how)}</td></tr>")
+    return f'<div class="table-frame"><table class="trace"><thead><tr><th>number</th><th>how it came about</th></tr></thead><tbody>{"".join(rows)}</tbody></table></div>'
+
+
+def _references(material: Material) -> Iterator[str]:
+    found: dict[str, None] = {}
+    for report in material.reports:
+        found.update((row.source, None) for row in report.rows() if row.source)
+    for link in material.links:
+        for row in link.report().headline:
+            if row.kind == "computed":
+                found.update((step.source, None) for step in link.working(row.name).steps if step.source)
+    lines = [reference(key) for key in found if key not in ("definition", "conservation", "common-practice")]
+    basis = material.content["basis"]
+    if basis:
+        lines += [SOURCES[part] for part in basis["name"].split("+") if part in SOURCES]
+    for role, row in material.content["propellants"].items():
+        lines.append(f"{row['name']} ({role}): {row['source']}")
+    yield markup.lines_list(dict.fromkeys(lines))
+
+
+def _provenance(material: Material) -> Iterator[str]:
+    record, content = material.record, material.content
+    provenance = record.provenance
+    rows = [("made", provenance["time"])]
+    rows += [(name, version) for name, version in sorted(provenance["versions"].items())]
+    rows += [("digest of the record", record.digest), ("digest of the content", record.content_digest)]
+    if content["basis"]:
+        rows.append((f"data basis {content['basis']['name']}", content["basis"]["checksum"]))
+    rows += [(f"data row {row['name']}", row["checksum"]) for row in content["propellants"].values()]
+    if "cell" in provenance:
+        rows.append(("notebook cell", provenance["cell"]))
+    yield markup.text_table(("what", "value"), rows)
+    yield "<h3>The same calculation as a script</h3>"
+    yield f"<pre>{escape(material.calculation.as_code().rstrip())}</pre>"
