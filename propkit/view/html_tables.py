@@ -172,7 +172,7 @@ def conditions_html(steps: Sequence[Step]) -> str:
         f"<th scope='col' class='propkit-n'>{head}</th>" for head in ("left side", "right side", "residual")
     )
     return (
-        "<div class='propkit-wide'><table><caption>Conditions that the states satisfy</caption><thead><tr>"
+        "<div class='propkit-wide'><table class='propkit-mid'><caption>Conditions that the states satisfy</caption><thead><tr>"
         f"<th scope='col'>condition</th><th scope='col'>relation</th>{heads}</tr></thead>"
         f"<tbody>{''.join(rows)}</tbody></table></div><p class='propkit-note'>{escape(sources)}.</p>"
     )

@@ -63,6 +63,7 @@ _CSS = f"""
 .propkit-sheet p.propkit-doubt{{margin:1px 0 7px}}
 .propkit-wide{{overflow-x:auto}}
 .propkit-wide tbody th{{white-space:nowrap}}
+.propkit-sheet .propkit-mid td,.propkit-sheet .propkit-mid tbody th{{vertical-align:middle}}
 .propkit-pic img{{width:100%;height:auto;max-width:420px;display:block;margin:7px 0;filter:var(--pk-pic);border-radius:3px}}
 .propkit-parts{{display:grid;grid-template-columns:repeat(auto-fit,minmax(min(320px,100%),1fr));grid-auto-flow:dense;gap:2px 36px;align-items:start}}
 .propkit-parts>div{{min-width:0}}
@@ -81,7 +82,7 @@ _CSS = f"""
 @container (max-width:860px){{.propkit-body,.propkit-two{{grid-template:'left right' auto 'pic right' 1fr/minmax(0,1fr) minmax(0,1.15fr);gap:2px 26px}}
  .propkit-picright,.propkit-two.propkit-picright{{grid-template:'left right' auto 'left pic' 1fr/minmax(0,1.1fr) minmax(0,1fr)}}
  .propkit-sheet .propkit-wide table{{font-size:12px}}.propkit-sheet .propkit-wide th,.propkit-sheet .propkit-wide td{{padding:2.5px 3px}}
- .propkit-sheet .propkit-wide th:first-child{{padding-left:0}}.propkit-sheet .propkit-wide .propkit-u{{font-size:11px}}}}
+ .propkit-sheet .propkit-wide th:first-child{{padding-left:0}}.propkit-wide tbody th{{white-space:normal}}.propkit-sheet .propkit-wide .propkit-u{{font-size:11px}}}}
 @container (max-width:540px){{.propkit-sheet .propkit-body{{grid-template:'left' auto 'right' auto 'pic' auto/minmax(0,1fr)}}
  .propkit-answers{{gap:4px 24px}}.propkit-answer>b{{font-size:21px}}.propkit-sheet .propkit-bar{{padding:0 4px 0 2px}}}}
 @media print{{.propkit-sheet,[data-jp-theme-light] .propkit-sheet{{--pk-ink:#000;--pk-quiet:#444;--pk-line:#999;--pk-accent:#000;--pk-doubt:#000;--pk-bar:#777;--pk-paper:#fff;

@@ -1,0 +1,200 @@
+"""Curves in axes: ticks at round numbers, legend above, rules and marks with their labels kept legible."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from html import escape
+
+from propkit.series import Axis, Figure, Line, Mark, Rule
+from propkit.view import cells, palette
+from propkit.view.numbers import grouped, pretty
+from propkit.view.svg_parts import DASH, number, path, symbol, text, width_of
+
+
+@dataclass(frozen=True, slots=True)
+class Scale:
+    """One axis on paper: from data to pixels; limits are logarithms on a logarithmic axis."""
+
+    low: float
+    high: float
+    start: float
+    end: float
+    log: bool
+
+    def at(self, value: float) -> float:
+        """Return the place of a value [px]; NaN where it has none."""
+        there = _log(value) if self.log else value
+        return self.start + (self.end - self.start) * (there - self.low) / (self.high - self.low)
+
+    def ticks(self) -> list[float]:
+        """Return round values inside the limits."""
+        if not self.log:
+            return ticks(self.low, self.high)
+        steps = (1.0,) if self.high - self.low >= 2.0 else (1.0, 2.0, 5.0)
+        decades = range(math.floor(self.low), math.ceil(self.high) + 1)
+        found = [step * 10.0**decade for decade in decades for step in steps]
+        return [value for value in found if self.low - 1e-9 <= _log(value) <= self.high + 1e-9]
+
+
+def ticks(low: float, high: float, count: int = 5) -> list[float]:
+    """Return round numbers between `low` and `high`, about `count` of them."""
+    if not high > low:
+        return [low]
+    raw = (high - low) / count
+    power = 10.0 ** math.floor(math.log10(raw))
+    step = next(factor * power for factor in (1, 2, 2.5, 5, 10) if factor * power >= raw * 0.999)
+    first = math.ceil(low / step - 1e-9)
+    return [float(f"{k * step:.12g}") for k in range(first, math.floor(high / step + 1e-9) + 1)]
+
+
+def curves(figure: Figure, width: int, height: int, top: int) -> tuple[str, int]:
+    """Return lines, rules and marks in axes, and the height of the drawing."""
+    lines = [layer for layer in figure.layers if isinstance(layer, Line)]
+    marks = [layer for layer in figure.layers if isinstance(layer, Mark)]
+    rules = [layer for layer in figure.layers if isinstance(layer, Rule)]
+    named = [line for line in lines if line.label]
+    legend, rows = _legend(named if len(named) > 1 else [], width, top + 6)
+    height += 13 * rows
+    xs = [x for line in lines for x in line.x.values]
+    ys = [y for line in lines for y in line.y.values]
+    xs += [mark.x for mark in marks] + [rule.at for rule in rules if rule.axis == "x"]
+    ys += [mark.y for mark in marks] + [rule.at for rule in rules if rule.axis == "y"]
+    y_top, y_foot = top + 13 * rows + (24.0 if rows else 20.0), height - 34.0
+    y_scale = _scale(figure.y, ys, y_foot, y_top, from_zero=True)
+    y_texts = [(value, _tick(value)) for value in y_scale.ticks()]
+    left = 20.0 + max((width_of(shown, 10) for _, shown in y_texts), default=0.0)
+    right = width - 16.0
+    x_scale = _scale(figure.x, xs, left, right)
+    out = [legend, text(12, y_top - 9, _axis_title(figure.y, 9.5), size=9.5, colour=palette.QUIET)]
+    for value, shown in y_texts:
+        y = number(y_scale.at(value))
+        out.append(f"<path d='M{number(left)} {y}H{number(right)}' stroke='{palette.HAIRLINE}' stroke-width='.6'/>")
+        out.append(text(left - 6, y_scale.at(value) + 3.5, shown, anchor="end", colour=palette.QUIET))
+    for value in x_scale.ticks():
+        x = x_scale.at(value)
+        out.append(f"<path d='M{number(x)} {number(y_foot)}v4' stroke='{palette.QUIET}' stroke-width='.8'/>")
+        out.append(text(x, y_foot + 15, _tick(value), anchor="middle", colour=palette.QUIET))
+    out.append(
+        f"<path d='M{number(left)} {number(y_foot)}H{number(right)}' stroke='{palette.QUIET}' stroke-width='.8'/>"
+    )
+    out.append(text(right, height - 7, _axis_title(figure.x, 9.5), size=9.5, anchor="end", colour=palette.QUIET))
+    out += [_rule_line(rule, x_scale, y_scale) for rule in rules]
+    out += [_line(line, x_scale, y_scale) for line in lines]
+    inked = [
+        (x_scale.at(a), y_scale.at(b)) for line in lines for a, b in zip(line.x.values, line.y.values, strict=True)
+    ]
+    out += _rule_texts(rules, x_scale, y_scale, inked)
+    out += [_mark(mark, x_scale, y_scale) for mark in marks]
+    return "".join(out), height
+
+
+def _log(value: float) -> float:
+    return math.log10(value) if value > 0 else float("nan")
+
+
+def _scale(axis: Axis, values: list[float], start: float, end: float, from_zero: bool = False) -> Scale:
+    """Return the axis on paper: the limits asked for, or those of the data with some room."""
+    log = axis.scale == "log"
+    known = [_log(value) if log else value for value in values]
+    finite = [value for value in known if math.isfinite(value)]
+    asked_low, asked_high = (
+        None if limit is None else _log(limit) if log else limit for limit in (axis.low, axis.high)
+    )
+    low = asked_low if asked_low is not None else min(finite, default=0.0)
+    high = asked_high if asked_high is not None else max(finite, default=1.0)
+    if from_zero and not log and asked_low is None and 0.0 < low < 0.5 * high:
+        low = 0.0
+    if high <= low:
+        low, high = low - 0.5 * abs(low or 1.0), high + 0.5 * abs(high or 1.0)
+    room = 0.06 * (high - low)
+    low -= room if asked_low is None and low != 0.0 else 0.0
+    high += room if asked_high is None else 0.0
+    return Scale(low, high, start, end, log)
+
+
+def _tick(value: float) -> str:
+    size = abs(value)
+    return grouped(f"{value:.10g}") if value == 0.0 or 1e-4 <= size < 1e7 else pretty(value, 1)
+
+
+def _axis_title(axis: Axis, size: float) -> str:
+    unit = cells.unit_text(axis.unit)
+    sign = f" {symbol(axis.symbol, size)}" if axis.symbol else ""
+    return f"{escape(axis.label)}{sign}{f' [{escape(unit)}]' if unit else ''}"
+
+
+def _line(line: Line, x: Scale, y: Scale) -> str:
+    points = [(x.at(a), y.at(b)) for a, b in zip(line.x.values, line.y.values, strict=True)]
+    fill = f"fill='{palette.colour(line.colour)}' fill-opacity='.12'" if line.fill else "fill='none'"
+    return (
+        f"<path d='{path(points, line.closed)}' {fill} stroke='{palette.colour(line.colour)}' stroke-width='1.8' "
+        f"stroke-linejoin='round'{DASH[line.dash]}/>"
+    )
+
+
+def _legend(lines: list[Line], width: int, y: float) -> tuple[str, int]:
+    """Return the names of the lines with a sample of each, and how many rows they take."""
+    out, at, row = [], 12.0, 0
+    for line in lines:
+        wide = 20 + width_of(line.label, 9.5) + 14
+        if at > 12.0 and at + wide > width - 8:
+            at, row = 12.0, row + 1
+        down = y + 6 + 13 * row
+        out.append(
+            f"<path d='M{number(at)} {number(down - 3)}h15' stroke='{palette.colour(line.colour)}' stroke-width='2'{DASH[line.dash]}/>"
+        )
+        out.append(text(at + 20, down, escape(line.label), size=9.5, colour=palette.QUIET))
+        at += wide
+    return "".join(out), row + 1 if lines else 0
+
+
+def _rule_line(rule: Rule, x: Scale, y: Scale) -> str:
+    if rule.axis == "x":
+        data = f"M{number(x.at(rule.at))} {number(y.end)}V{number(y.start)}"
+    else:
+        data = f"M{number(x.start)} {number(y.at(rule.at))}H{number(x.end)}"
+    return f"<path d='{data}' stroke='{palette.QUIET}' stroke-width='1'{DASH[rule.dash]}/>"
+
+
+def _rule_texts(rules: list[Rule], x: Scale, y: Scale, inked: list[tuple[float, float]]) -> list[str]:
+    """Return the labels of rules: level ones at their end; upright ones each on a row of its own, at the top or at the foot."""
+    out, rows = [], {"top": 0, "foot": 0}
+    for rule in rules:
+        label, wide = escape(rule.label), width_of(rule.label, 9)
+        if rule.axis == "y":
+            out.append(text(x.end, y.at(rule.at) - 4, label, size=9, anchor="end", colour=palette.QUIET, halo=True))
+            continue
+        at = x.at(rule.at)
+        back = at + 4 + wide > x.end
+        near = [
+            level
+            for place, level in inked
+            if (at - wide - 6 if back else at) <= place <= (at if back else at + wide + 6)
+        ]
+        highest, lowest = min(near, default=y.start), max(near, default=y.start)
+        edge = "top" if highest - y.end >= y.start - lowest else "foot"
+        level = y.end + 9 + 12 * rows["top"] if edge == "top" else y.start - 5 - 12 * rows["foot"]
+        rows[edge] += 1
+        side, anchor = (at - 4, "end") if back else (at + 4, "start")
+        out.append(text(side, level, label, size=9, anchor=anchor, colour=palette.QUIET, halo=True))
+    return out
+
+
+def _mark(mark: Mark, x: Scale, y: Scale) -> str:
+    at, level = x.at(mark.x), y.at(mark.y)
+    colour = palette.colour(mark.colour)
+    back = at + 9 + width_of(mark.label, 10.5) > x.end + 6
+    above = level + 15 if level < y.end + 14 else level - 7
+    return (
+        f"<circle cx='{number(at)}' cy='{number(level)}' r='3.6' fill='{colour}' stroke='{palette.PLATE}' stroke-width='1.2'/>"
+        + text(
+            at - 8 if back else at + 8,
+            above,
+            escape(mark.label),
+            anchor="end" if back else "start",
+            colour=colour,
+            weight="bold",
+            halo=True,
+        )
+    )
