@@ -16,7 +16,8 @@ from propkit.constants import GAS_CONSTANT
 from propkit.errors import InputError
 from propkit.physics.arrays import Array, Values, require, values
 from propkit.physics.equilibrium_newton import FlowCondition, Given, Integers, Outcome, Problem, Unknowns, iterate
-from propkit.physics.equilibrium_search import cold_start, search, settled_start
+from propkit.physics.equilibrium_condensed import SLOTS, iterate_phases, saturation
+from propkit.physics.equilibrium_search import Solver, cold_start, search, settled_start
 from propkit.physics.thermodynamics import SpeciesTable
 
 CONVERGED: Final = 0
@@ -28,6 +29,8 @@ BLOCK: Final = 2500
 """Cases worked on together; larger blocks leave the cache."""
 
 _LOWEST_LOG: Final = -700.0
+_PLATEAU: Final = 1e-9
+"""Share of a heating that warms, below which the heat capacity is undefined: a phase is changing."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -47,7 +50,7 @@ class EquilibriumState:
     enthalpy, entropy : array
         h [J/kg], s [J/(kg K)].
     specific_heat, frozen_specific_heat : array
-        cp [J/(kg K)] with the composition following, and with the composition held.
+        cp [J/(kg K)] with the composition following (NaN while a phase melts or freezes), and with the composition held.
     isentropic_exponent, frozen_isentropic_exponent : array
         (d ln p / d ln rho) at constant entropy, with the composition following, and with it held.
     dlnv_dlnt, dlnv_dlnp : array
@@ -231,7 +234,7 @@ def solve_batch(
             block = rows[first : first + BLOCK]
             problem = Problem(part, elements[np.ix_(block, mask)], given, target[block], _renumbered(condition, block))
             start = _start(problem, pressure[block], guess, block, species, mask)
-            outcome = iterate(problem, start)
+            outcome = _solver(part)(problem, start)
             outside = _retry(problem, pressure[block], outcome)
             _fill(state, block, species, mask, problem, outcome, outside)
     return state
@@ -253,6 +256,14 @@ def _patterns(present: npt.NDArray[np.bool_]) -> list[tuple[Integers, npt.NDArra
     return [(np.flatnonzero(inverse.ravel() == number), pattern) for number, pattern in enumerate(patterns)]
 
 
+def _solver(table: SpeciesTable) -> Solver:
+    return iterate_phases if table.condensed.any() else iterate
+
+
+def _slots(table: SpeciesTable) -> int:
+    return SLOTS if table.condensed.any() else 0
+
+
 def _start(
     problem: Problem,
     pressure: Array,
@@ -262,10 +273,13 @@ def _start(
     mask: npt.NDArray[np.bool_],
 ) -> Unknowns:
     """Return the first guess of a block: a state nearby where there is one that is a solution, else a cold start."""
+    make = settled_start if problem.given == "entropy" else cold_start
+    slots = _slots(problem.table)
     if guess is None or not (guess.status[block] == CONVERGED).any():
-        return settled_start(problem, pressure) if problem.given == "entropy" else cold_start(problem, pressure)
+        return make(problem, pressure, slots)
     good = guess.status[block] == CONVERGED
     rows, gas = block[good], problem.table.gas_count
+    active, held = _phases(guess.amounts[rows[:, None], species[gas:]], gas, slots)
     with np.errstate(divide="ignore"):
         warm = Unknowns(
             log_amounts=np.maximum(np.log(guess.amounts[rows[:, None], species[:gas]]), _LOWEST_LOG),
@@ -273,14 +287,24 @@ def _start(
             log_moles=np.log(guess.gas_moles[rows]),
             log_temperature=np.log(guess.temperature[rows]),
             log_pressure=np.log(pressure[good] / problem.table.reference_pressure),
-            slots=np.zeros((rows.size, 0), dtype=np.intp),
-            slot_amounts=np.zeros((rows.size, 0)),
+            slots=active,
+            slot_amounts=held,
         )
     if good.all():
         return warm
-    start = settled_start(problem, pressure) if problem.given == "entropy" else cold_start(problem, pressure)
+    start = make(problem, pressure, slots)
     start.put(np.flatnonzero(good), warm)
     return start
+
+
+def _phases(amounts: Array, gas: int, slots: int) -> tuple[Integers, Array]:
+    """Return the liquids and solids present as slots, the largest first, and their amounts."""
+    if not slots:
+        return np.zeros((len(amounts), 0), dtype=np.intp), np.zeros((len(amounts), 0))
+    width = max(slots - amounts.shape[1], 0)
+    order = np.argsort(-amounts, axis=1, kind="stable")[:, :slots]
+    held = np.pad(np.take_along_axis(amounts, order, axis=1), ((0, 0), (0, width)))
+    return np.where(held > 0.0, np.pad(order, ((0, 0), (0, width))) + gas, -1), np.maximum(held, 0.0)
 
 
 def _retry(problem: Problem, pressure: Array, outcome: Outcome) -> npt.NDArray[np.bool_]:
@@ -290,12 +314,13 @@ def _retry(problem: Problem, pressure: Array, outcome: Outcome) -> npt.NDArray[n
     if not left.size or problem.condition is not None:
         return outside
     part = Problem(problem.table, problem.elements[left], problem.given, problem.target[left])
-    again = iterate(part, cold_start(part, pressure[left]))
+    slots, solver = _slots(problem.table), _solver(problem.table)
+    again = solver(part, cold_start(part, pressure[left], slots))
     outcome.put(left[again.converged], again.take(again.converged))
     left = left[~again.converged]
     if left.size:
         part = Problem(problem.table, problem.elements[left], problem.given, problem.target[left])
-        slow, outside[left] = search(part, pressure[left])
+        slow, outside[left] = search(part, pressure[left], slots, solver)
         outcome.put(left, slow)
     return outside
 
@@ -334,10 +359,15 @@ def _fill(
     state.temperature[block] = temperature
     state.amounts[np.ix_(block, species[:gas])] = np.exp(x.log_amounts)
     state.gas_moles[block] = moles
+    rows, slots = np.nonzero(x.slots >= 0)
+    state.amounts[block[rows], species[x.slots[rows, slots]]] = x.slot_amounts[rows, slots]
+    if rows.size:
+        np.add.at(state.condensed_mass_fraction, block[rows], x.slot_amounts[rows, slots] * table.molar_mass[x.slots[rows, slots]])
     state.density[block] = state.pressure[block] / (GAS_CONSTANT * moles * temperature)
     state.enthalpy[block] = GAS_CONSTANT * temperature * enthalpy
     state.entropy[block] = GAS_CONSTANT * entropy
     state.frozen_specific_heat[block] = GAS_CONSTANT * heat_capacity
+    heating = np.where(heating * heat_capacity > _PLATEAU, heating, np.nan)
     with np.errstate(divide="ignore", invalid="ignore"):
         state.specific_heat[block] = GAS_CONSTANT / heating
         state.frozen_isentropic_exponent[block] = heat_capacity / (heat_capacity - moles)
@@ -348,3 +378,37 @@ def _fill(
     state.iterations[block] = outcome.iterations
     state.residual[block] = outcome.residual
     state.status[block] = np.where(outside, OUT_OF_RANGE, np.where(outcome.converged, CONVERGED, NOT_CONVERGED))
+
+
+def saturation_ratios(table: SpeciesTable, state: EquilibriumState, full: SpeciesTable) -> dict[str, Array]:
+    """Saturation ratio of each liquid and solid over a gas.
+
+    Parameters
+    ----------
+    table : SpeciesTable
+        The species of the state.
+    state : EquilibriumState
+        The gas.
+    full : SpeciesTable
+        The table of the same elements with liquids and solids.
+
+    Returns
+    -------
+    dict
+        Key of the liquid or solid -> ratio, shape (case,); above 1 it would form. Outside the range of a phase the ratio
+        is NaN.
+
+    Notes
+    -----
+    ln S = sum of the element potentials of its atoms over R T less its Gibbs energy over R T.
+
+    Source: Smith & Missen, Chemical Reaction Equilibrium Analysis (1982).
+    """
+    gas = full.gas_count
+    columns = [table.elements.index(symbol) for symbol in full.elements]
+    logs = saturation(full, state.element_potentials[:, columns], state.temperature)
+    t = state.temperature[:, None]
+    inside = (t >= full.temperature_low[gas:]) & (t <= full.temperature_high[gas:])
+    present = ~((state.element_potentials[:, columns] == 0.0) @ (full.composition[gas:] > 0.0).T)
+    ratios = np.where(inside & present, np.exp(np.minimum(logs, 700.0)), np.nan)
+    return {name: ratios[:, number] for number, name in enumerate(full.names[gas:])}

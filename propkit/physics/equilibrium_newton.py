@@ -10,7 +10,8 @@ and the amounts of the active liquids and solids (`slots`):
     slot c     sum_i a_ic dl_i + h_c dlnT                                    = g_c - sum_i a_ic l_i
 
 with l the element potentials over R T and q_j = mu_j/(R T) - sum_i a_ij l_i what species j is short of equilibrium. The
-energy row serves (p, h) and (p, s) alike, because T ds = dh - v dp at constant elements.
+energy row serves (p, h) and (p, s) alike, because T ds = dh - v dp at constant elements; for (p, s) the terms in q that
+this leaves out away from equilibrium are put back.
 
 The step is shortened so that no abundant species and no temperature moves too far at once, and no species exceeds by
 much what the elements of the case could form of it.
@@ -186,6 +187,8 @@ class Sums:
         H/(R T), S/R and frozen cp/R of one kilogram [mol/kg].
     residual : array
         Largest of the relative residuals of elements, gas, equilibrium and slots; energy not counted.
+    spread : array
+        Sum of n q^2 [mol/kg].
     """
 
     matrix: Array
@@ -199,6 +202,7 @@ class Sums:
     entropy: Array
     heat_capacity: Array
     residual: Array
+    spread: Array
 
 
 @dataclass(slots=True, eq=False)
@@ -282,9 +286,19 @@ def evaluate(problem: Problem, elements: Array, x: Unknowns) -> Sums:
     shortfall[:, :last] = elements - matrix[:, :last, last]
     shortfall[:, last] = moles - total
     enthalpy = matrix[:, size, last].copy()
-    distant = np.abs(nq).sum(axis=1) / moles
     sums = Sums(
-        matrix, shortfall, correction, h, q, moles, total, enthalpy, enthalpy - _dot(n, mu), heat_capacity, distant
+        matrix=matrix,
+        shortfall=shortfall,
+        correction=correction,
+        gas_enthalpy=h,
+        distance=q,
+        moles=moles,
+        total=total,
+        enthalpy=enthalpy,
+        entropy=enthalpy - _dot(n, mu),
+        heat_capacity=heat_capacity,
+        residual=np.abs(nq).sum(axis=1) / moles,
+        spread=_dot(nq, q),
     )
     if slots:
         _add_slots(problem.table, every, x, sums, size)
@@ -424,11 +438,15 @@ def _solve(problem: Problem, sums: Sums, x: Unknowns, target: Array) -> tuple[Ar
         right[:, size, 0] += energy
     elif problem.given == "entropy":
         energy = target / GAS_CONSTANT - sums.entropy
-        right[:, size, 0] += energy + _dot(x.potentials, sums.shortfall[:, :last]) + sums.shortfall[:, last]
+        right[:, size, 0] += energy + _dot(x.potentials, sums.shortfall[:, :last]) + sums.shortfall[:, last] - sums.spread
+        sums.matrix[:, size, : size + 1] -= sums.correction[:, : size + 1]
+        sums.matrix[:, size, size + 1 :] -= sums.shortfall[:, size + 1 :]
     right[:, size, 1] = 1.0
     right[:, : size + 1, 2] = sums.matrix[:, last, : size + 1]
     right[:, last, 2] = sums.total
     right[:, size, 2] += sums.total
+    if problem.given == "entropy":
+        right[:, size, 2] -= sums.correction[:, last]
     solution = solve_scaled(sums.matrix, right, sums.moles, last)
     if problem.given == "temperature":
         wanted = np.log(target) - x.log_temperature

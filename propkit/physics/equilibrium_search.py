@@ -6,6 +6,7 @@ miss; it also shows when there is no solution between the lowest and the highest
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 from typing import Final
 
@@ -24,6 +25,10 @@ _WARMING_UP: Final = 60
 _WALK: Final = 60
 _STRIDE: Final = 0.3
 _CLOSE: Final = 1e-5
+
+
+Solver = Callable[[Problem, Unknowns], Outcome]
+"""What solves a batch from a start: the plain iteration, or the one with liquids and solids."""
 
 
 def cold_start(problem: Problem, pressure: Array, slots: int = 0) -> Unknowns:
@@ -64,7 +69,9 @@ def settled_start(problem: Problem, pressure: Array, slots: int = 0) -> Unknowns
     return iterate(fixed, cold_start(fixed, pressure, slots), _WARMING_UP).unknowns
 
 
-def search(problem: Problem, pressure: Array, slots: int = 0) -> tuple[Outcome, npt.NDArray[np.bool_]]:
+def search(
+    problem: Problem, pressure: Array, slots: int = 0, solver: Solver = iterate
+) -> tuple[Outcome, npt.NDArray[np.bool_]]:
     """Solve cases by walking in temperature from equilibrium to equilibrium, then the plain iteration inside the bracket.
 
     Parameters
@@ -75,6 +82,8 @@ def search(problem: Problem, pressure: Array, slots: int = 0) -> tuple[Outcome, 
         p [Pa].
     slots : int
         Slots for liquids and solids.
+    solver : callable
+        What solves a batch from a start.
 
     Returns
     -------
@@ -83,7 +92,7 @@ def search(problem: Problem, pressure: Array, slots: int = 0) -> tuple[Outcome, 
     """
     limits = np.log([LOWEST_TEMPERATURE, problem.table.temperature_high.max()])
     here = np.full(pressure.size, np.clip(np.log(_FIRST_TEMPERATURE), *limits))
-    at = _at(problem, cold_start(problem, pressure, slots), here)
+    at = _at(problem, cold_start(problem, pressure, slots), here, solver)
     low, high = np.full(here.shape, limits[0]), np.full(here.shape, limits[1])
     outside = np.zeros(here.shape, dtype=bool)
     for _ in range(_WALK):
@@ -97,14 +106,14 @@ def search(problem: Problem, pressure: Array, slots: int = 0) -> tuple[Outcome, 
         there = np.clip(here + np.where(at.converged, step, 0.1 * step), *limits)
         if outside.all() or np.abs(there - here).max() < _CLOSE:
             break
-        at, here = _at(problem, at.unknowns, there), there
-    outcome = iterate(problem, at.unknowns)
+        at, here = _at(problem, at.unknowns, there, solver), there
+    outcome = solver(problem, at.unknowns)
     return outcome, outside
 
 
-def _at(problem: Problem, start: Unknowns, log_temperature: Array) -> Outcome:
+def _at(problem: Problem, start: Unknowns, log_temperature: Array, solver: Solver) -> Outcome:
     """Return the equilibrium at a temperature, from one nearby."""
-    return iterate(replace(problem, given="temperature", target=np.exp(log_temperature)), start)
+    return solver(replace(problem, given="temperature", target=np.exp(log_temperature)), start)
 
 
 def _side(problem: Problem, at: Outcome) -> Array:

@@ -153,7 +153,7 @@ class _Sonic:
         """Return ln M^2 and its slope."""
         square, thermal = self.isentrope.kinetic(trial, number)
         turning = trial.moles_slope + trial.temperature_slope
-        log_exponent = -np.log(1.0 - turning)
+        log_exponent = -np.log(np.maximum(1.0 - turning, _SMALLEST_HEAD))
         with np.errstate(divide="ignore", invalid="ignore"):
             change = (log_exponent - self.log_exponent[number]) / (trial.log_pressure - self.log_pressure[number])
         self.log_pressure[number], self.log_exponent[number] = trial.log_pressure, log_exponent
