@@ -94,7 +94,7 @@ def _body(report: Report) -> str:
     if not columns:
         return ""
     form = ["propkit-body"]
-    if len(report.given) > len(rest):
+    if len(report.given) >= len(rest):
         form.append("propkit-picright")
     if min(len(report.given), len(rest)) < _BESIDE:
         form.append("propkit-two")

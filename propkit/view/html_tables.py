@@ -62,7 +62,7 @@ def rows_html(rows: Iterable[Row], caption: str) -> str:
 
 
 def _row(row: Row, value: str, number: bool) -> str:
-    typed = f" <small class='propkit-u'>({escape(row.typed)})</small>" if cells.shows_typed(row) else ""
+    typed = f" <small class='propkit-u'>{escape(_unbroken(f'({row.typed})'))}</small>" if cells.shows_typed(row) else ""
     sign = html_symbol(row.symbol)
     head = (
         f"<tr class='propkit-{row.kind}'><td class='propkit-m' title='{row.kind}'>{cells.MARKS[row.kind]}</td>"
@@ -80,6 +80,11 @@ def _row(row: Row, value: str, number: bool) -> str:
     doubts = "".join(doubt_html(doubt) for doubt in row.doubts)
     below = f"<tr><td></td><td colspan='4'>{doubts}</td></tr>" if doubts else ""
     return f"{head}{rest}</tr>{below}"
+
+
+def _unbroken(text: str) -> str:
+    """Return a short text that no line break divides."""
+    return text.replace(" ", "\u00a0") if len(text) <= 24 else text
 
 
 def is_wide(table: Table) -> bool:

@@ -87,6 +87,7 @@ _CSS = f"""
  .propkit-answers{{gap:4px 24px}}.propkit-answer>b{{font-size:21px}}.propkit-sheet .propkit-bar{{padding:0 4px 0 2px}}}}
 @media print{{.propkit-sheet,[data-jp-theme-light] .propkit-sheet{{--pk-ink:#000;--pk-quiet:#444;--pk-line:#999;--pk-accent:#000;--pk-doubt:#000;--pk-bar:#777;--pk-paper:#fff;
  --pk-pic:grayscale(1);--pk-eq:none;--pk-blend:normal;max-width:none;print-color-adjust:exact;-webkit-print-color-adjust:exact}}
+ .propkit-wide{{overflow:visible}}.propkit-sheet .propkit-wide table{{font-size:10.5px}}.propkit-sheet .propkit-wide .propkit-u{{font-size:10px}}
  .propkit-sheet tr,.propkit-step,.propkit-pic,.propkit-answers{{break-inside:avoid}}.propkit-given .propkit-n,.propkit-given .propkit-t{{font-weight:600}}}}
 """
 

@@ -84,6 +84,9 @@ def curves(figure: Figure, width: int, height: int, top: int) -> tuple[str, int]
     inked = [
         (x_scale.at(a), y_scale.at(b)) for line in lines for a, b in zip(line.x.values, line.y.values, strict=True)
     ]
+    for mark in marks:
+        at, level = x_scale.at(mark.x), y_scale.at(mark.y)
+        inked += [(at + share * width_of(mark.label, 10.5), level) for share in (0.0, 0.3, 0.6, 1.0)]
     out += _rule_texts(rules, x_scale, y_scale, inked)
     out += [_mark(mark, x_scale, y_scale) for mark in marks]
     return "".join(out), height
