@@ -8,7 +8,7 @@ from pathlib import Path
 import cantera
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
 from propkit.bridge.basis import load_basis
@@ -136,7 +136,11 @@ mixtures = st.tuples(st.floats(0.5, 40.0), st.floats(0.5, 80.0), st.floats(0.5, 
 @settings(deadline=None, max_examples=60)
 @given(mixtures, st.floats(1e4, 4e7), st.floats(400.0, 5500.0))
 def test_identities_over_the_whole_range(amounts: tuple[float, ...], pressure: float, temperature: float) -> None:
-    """(p, T), (p, h) and (p, s) lead to the same state; Euler's relation; elements balance. Tolerance: the iteration's."""
+    """(p, T), (p, h) and (p, s) lead to the same state; Euler's relation; elements balance. Tolerance: the iteration's.
+
+    At 1000 K itself the two halves of the published polynomials leave a step of up to 1e-7 of R T.
+    """
+    assume(abs(temperature - 1000.0) > 1e-3)
     table = load_basis("tm4513").table(("C", "H", "N", "O"))
     weights = np.array([12.011, 1.008, 14.007, 15.999]) * 1e-3
     atoms = np.array([amounts]) / (np.array(amounts) @ weights)
