@@ -212,6 +212,7 @@ class Panel(traitlets.HasTraits):
         if self._widget is not None:
             self._widget.close()
             self._widget = None
+        self.unobserve_all()
         self._quiet = True
         self.value = None
         if last:

@@ -147,6 +147,15 @@ class Lab:
         """Write a notebook into the lab's folder."""
         (self.work / name).write_text(json.dumps(notebook(cells)))
 
+    def stop_kernels(self) -> None:
+        """Stop every kernel of the server."""
+        with urllib.request.urlopen(f"{self.address}/api/kernels", timeout=10) as answer:
+            kernels = json.load(answer)
+        for kernel in kernels:
+            request = urllib.request.Request(f"{self.address}/api/kernels/{kernel['id']}", method="DELETE")
+            with urllib.request.urlopen(request, timeout=20):
+                pass
+
     def stop(self) -> None:
         """Stop the server and its kernels."""
         self.process.terminate()
@@ -244,7 +253,8 @@ class Page:
             if len(self.figures()) >= count:
                 return
             self.page.wait_for_timeout(100)
-        raise AssertionError(f"{count} live figures expected, {len(self.figures())} drawn; complaints: {self.complaints}")
+        seen = self.page.locator(".jp-OutputArea-output").all_inner_texts()
+        raise AssertionError(f"{count} live figures expected, {len(self.figures())} drawn; complaints: {self.complaints}; outputs: {str(seen)[-1500:]}")
 
     def panel(self, number: int = 0) -> PanelPage:
         """Return a panel of the page."""
@@ -255,8 +265,9 @@ class Page:
         self.page.locator(".pk-panel").nth(number).screenshot(path=str(path))
 
     def close(self) -> None:
-        """Close the page."""
+        """Close the page, and the kernels it leaves."""
         self.context.close()
+        self.lab.stop_kernels()
 
 
 class PanelPage:
