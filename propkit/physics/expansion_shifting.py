@@ -12,7 +12,7 @@ from typing import Final
 import numpy as np
 
 from propkit.constants import GAS_CONSTANT
-from propkit.physics import gas_dynamics
+from propkit.physics import expansion_two_phase, gas_dynamics
 from propkit.physics.arrays import Array
 from propkit.physics.equilibrium import EquilibriumState, solve_batch
 from propkit.physics.equilibrium_newton import FlowCondition, FlowTrial, Integers
@@ -70,12 +70,16 @@ class Shifting:
 
     def throat(self) -> FlowState:
         """Return the state of largest mass flux: Mach 1 with the composition following."""
+        if self.table.condensed.any():
+            return expansion_two_phase.throat(self)
         gamma = np.maximum(self.reservoir.isentropic_exponent, _LOWEST_EXPONENT)
         pressure = self.pressure * gas_dynamics.pressure_ratio(1.0, gamma)
         return self._state(self._solve(pressure, self.reservoir, _Sonic(self)))
 
     def at_mass_flux(self, mass_flux: Array, at_throat: FlowState, supersonic: bool) -> FlowState:
         """Return the state at a mass flux [kg/(m2 s)] on one side of the throat."""
+        if self.table.condensed.any():
+            return expansion_two_phase.at_mass_flux(self, mass_flux, at_throat, supersonic)
         ratio = at_throat.mass_flux / mass_flux
         gamma = np.maximum(at_throat.isentropic_exponent, _LOWEST_EXPONENT)
         usable = np.where(np.isfinite(ratio) & (ratio >= 1.0), ratio, 1.0)
