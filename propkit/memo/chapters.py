@@ -89,9 +89,9 @@ def _results(material: Material) -> Iterator[str]:
     rest = [row for row in report.results if row.name not in shown]
     if rest:
         yield markup.rows_table([*report.headline, *rest])
-    for part in material.reports[-2:]:
-        for figure in part.figures:
-            yield markup.drawing(figure)
+    drawings = "".join(markup.drawing(figure) for part in material.reports[-2:] for figure in part.figures)
+    if drawings:
+        yield f'<div class="figures">{drawings}</div>'
 
 
 def _assumptions(material: Material) -> Iterator[str]:
@@ -136,7 +136,7 @@ def _working(material: Material) -> Iterator[str]:
             told |= {_key(step) for step in steps}
             if steps:
                 yield f"<h3>{escape(link.title)}: {escape(row.label)}</h3>"
-                yield markup.working(steps)
+                yield markup.working(steps, untitled=row.label)
 
 
 def _key(step: Step) -> str:
@@ -201,9 +201,18 @@ def _origins(material: Material) -> Iterator[str]:
 
 
 def _tree(origin: Origin) -> str:
-    rows = []
-    for depth, entry in origin.lines():
+    rows: list[str] = []
+    repeated: list[str] = []
+    listed = list(origin.lines())
+    for place, (depth, entry) in enumerate(listed):
         indent = "\u2003" * depth
+        if entry.how == "see above":
+            repeated.append(entry.path.rpartition(".")[2].replace("_", " "))
+            following = listed[place + 1] if place + 1 < len(listed) else None
+            if following is None or following[0] != depth or following[1].how != "see above":
+                rows.append(f"<tr><td>{indent}{escape(', '.join(repeated))}</td><td>see above</td></tr>")
+                repeated = []
+            continue
         rows.append(f"<tr><td>{indent}{escape(entry.text)}</td><td>{escape(entry.how)}</td></tr>")
     return f'<div class="table-frame"><table class="trace"><thead><tr><th>number</th><th>how it came about</th></tr></thead><tbody>{"".join(rows)}</tbody></table></div>'
 

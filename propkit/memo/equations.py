@@ -16,14 +16,21 @@ _PATTERN = re.compile(
     re.DOTALL,
 )
 
+_BOX = re.compile(r'viewBox="\S+ (\S+) \S+ (\S+)"')
+_LONGEST = 2000
+
+
 def image_of(latex: str, inline: bool = False) -> str:
     """Return an equation as an ``img`` element with its source as the alternative text, or the source as code."""
-    found = svg_of(latex.strip(), 16.0 if inline else 18.0, inline)
-    shown = html.escape(latex.strip())
+    text = latex.strip()
+    shown = html.escape(text)
+    found = svg_of(text) if text and len(text) <= _LONGEST else None
     if found is None:
         return f"<code>{shown}</code>"
-    data = base64.b64encode(found[0].encode()).decode()
-    style = f' style="vertical-align:{found[1]:.2f}px"' if inline else ""
+    data = base64.b64encode(found.encode()).decode()
+    box = _BOX.search(found)
+    depth = float(box[1]) + float(box[2]) if box is not None else 0.0
+    style = f' style="vertical-align:{-depth:.2f}px"' if inline else ""
     picture = f'<img class="equation" alt="{shown}"{style} src="data:image/svg+xml;base64,{data}">'
     return picture if inline else f'<div class="display">{picture}</div>'
 

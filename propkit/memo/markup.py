@@ -21,6 +21,15 @@ def value_text(row: Row) -> str:
     return row.value if isinstance(row.value, str) else numbers.pretty(row.value, row.digits)
 
 
+def aligned(texts: Sequence[str]) -> list[str]:
+    """Return numbers padded behind with figure spaces, so that right alignment puts their decimal signs under each other."""
+    tails = [len(text.partition(".")[2]) if "." in text else -1 for text in texts]
+    widest = max(tails, default=-1)
+    if widest < 0:
+        return list(texts)
+    return [text + ("\u2008" if tail < 0 else "") + "\u2007" * (widest - max(tail, 0)) for text, tail in zip(texts, tails, strict=True)]
+
+
 def answers(rows: Iterable[Row]) -> str:
     """Return the headline: label, value and unit of each row."""
     made = "".join(
@@ -38,7 +47,7 @@ def uncertainty(row: Row) -> str:
 
 def rows_table(rows: Sequence[Row], typed: bool = False) -> str:
     """Return rows as a table: mark, label, symbol, value, unit and, for inputs, what was typed."""
-    padded = iter(numbers.aligned([value_text(row) for row in rows if isinstance(row.value, int | float)]))
+    padded = iter(aligned([value_text(row) for row in rows if isinstance(row.value, int | float)]))
     lines = []
     for row in rows:
         value = escape(next(padded) if isinstance(row.value, int | float) else value_text(row))
@@ -67,7 +76,7 @@ def data_table(table: Table) -> str:
             for value in column.values
         ]
         numeric = [isinstance(value, int | float) for value in column.values]
-        padded = iter(numbers.aligned([text for text, number in zip(shown, numeric, strict=True) if number]))
+        padded = iter(aligned([text for text, number in zip(shown, numeric, strict=True) if number]))
         columns.append((kind, [next(padded) if number else text for text, number in zip(shown, numeric, strict=True)]))
     body = "".join(
         f"<tr><td>{html_species(name) if species else escape(name)}</td>"
@@ -96,10 +105,10 @@ def lines_list(lines: Iterable[str]) -> str:
     return f"<ul>{''.join(f'<li>{escape(line)}</li>' for line in lines)}</ul>"
 
 
-def working(steps: Iterable[Step]) -> str:
-    """Return the working of a result: each relation as a formula, with numbers put in, and its result."""
+def working(steps: Iterable[Step], untitled: str = "") -> str:
+    """Return the working of a result: each relation as a formula, with numbers put in, and its result; `untitled` names a step whose title stands above."""
     listed = list(steps)
-    parts = [_step(step) for step in listed if step.left is None]
+    parts = [_step(step, untitled) for step in listed if step.left is None]
     conditions = [step for step in listed if step.left is not None]
     if conditions:
         parts.append(conditions_table(conditions))
@@ -115,12 +124,13 @@ def conditions_table(steps: Iterable[Step]) -> str:
     return text_table(("condition", "relation", "left side", "right side", "residual"), rows, (2, 3, 4))
 
 
-def _step(step: Step) -> str:
+def _step(step: Step, untitled: str) -> str:
+    title = "" if step.label == untitled else f"<p><b>{escape(step.label)}</b></p>"
     result = ""
     if step.result is not None:
         result = f'<p class="result">= <b>{escape(value_text(step.result))}</b> {escape(cells.unit_text(step.result.unit))}</p>'
     source = f'<p class="quiet">{escape(reference(step.source))}</p>' if step.source else ""
-    return f'<div class="formula"><p><b>{escape(step.label)}</b></p>{image_of(step.latex)}<p><code>{escape(step.numbers)}</code></p>{result}{source}</div>'
+    return f'<div class="formula">{title}{image_of(step.latex)}<p><code>{escape(step.numbers)}</code></p>{result}{source}</div>'
 
 
 def drawing(figure: Figure) -> str:

@@ -11,22 +11,17 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
-from propkit import units
+from propkit import quantities, units
 from propkit.errors import MissingExtraError
 from propkit.memo import execute as execution
 from propkit.memo.blocks import blocks_of, title_of, without_title
+from propkit.memo.notebook_pdf import notebook_pdf
 from propkit.memo.page import Bound, notebook_page
 from propkit.record.containers import Contents, records_of
 from propkit.record.record import Record
+from propkit.record.sheet import HEADLINES
 from propkit.record.storage import make_folder, write_atomically
-
-_HEADLINES = {
-    "performance": (("thrust", "thrust"), ("specific_impulse", "specific impulse"), ("mass_flow", "mass flow")),
-    "nozzle": (("mass_flow", "mass flow"), ("throat_diameter", "throat diameter"), ("exit_diameter", "exit diameter")),
-    "chamber": (("temperature", "temperature"), ("characteristic_velocity", "characteristic velocity")),
-    "case": (("mixture_ratio", "mixture ratio"), ("bulk_density", "bulk density")),
-}
-
+from propkit.view import cells, numbers
 
 @dataclass(slots=True)
 class Written:
@@ -98,10 +93,6 @@ def write_memo(
 
 def _write_pdf(path: Path, title: str, source: str, blocks: list[Any], bound: list[Bound], outcome: Written, say: Callable[[str], None]) -> None:
     try:
-        from propkit.memo.notebook_pdf import notebook_pdf
-    except ImportError:
-        return
-    try:
         outcome.written.append(write_atomically(path, notebook_pdf(title, source, blocks, bound, outcome.error)))
     except MissingExtraError as error:
         say(f"no PDF: {error}")
@@ -119,27 +110,25 @@ def _bind(contents: Contents) -> list[Bound]:
     made: dict[str, Bound] = {}
     for entry in contents.found:
         if entry.record.digest not in made:
-            made[entry.record.digest] = Bound(entry.record, entry.record.verify(entry.place), headline(entry.record))
+            made[entry.record.digest] = Bound(entry.record, entry.record.verify(entry.place), answers_of(entry.record))
     return list(made.values())
 
 
-def headline(record: Record) -> str:
-    """Return the answer of a record in one line, in display units."""
-    from propkit import quantities
-
+def answers_of(record: Record) -> tuple[tuple[str, str, str], ...]:
+    """Return the answer of a record as label, value and unit in display units."""
     content = record.content
     kind = content["object"]
     stored: Mapping[str, Any] = content["objects"][kind]
-    parts = []
-    for name, words in _HEADLINES[kind]:
+    made = []
+    for name in HEADLINES[kind]:
         entry = stored["results"].get(name) or stored["inputs"].get(name)
         if entry is None or not isinstance(entry["value"], int | float):
             continue
         quantity = quantities.quantity(name, kind)
         unit = quantity.shown_in("SI", (entry["value"],))
         value = units.convert(float(entry["value"]), quantity.unit, unit)
-        parts.append(f"{words} {value:.{quantity.digits}g} {units.shown_unit(unit)}".strip())
-    return ", ".join(parts)
+        made.append((quantity.label, numbers.pretty(value, quantity.digits), cells.unit_text(unit)))
+    return tuple(made)
 
 
 def _file_name(record: Record, taken: set[str]) -> str:
@@ -151,6 +140,3 @@ def _file_name(record: Record, taken: set[str]) -> str:
         unique = f"{name}-{number}"
     taken.add(unique)
     return unique
-
-
-

@@ -20,11 +20,16 @@ from propkit.record.record import Record
 
 @dataclass(frozen=True, slots=True)
 class Bound:
-    """A record as a memo binds it: the record, its verification, and its headline in words."""
+    """A record as a memo binds it: the record, its verification, its headline as label, value and unit."""
 
     record: Record
     verification: Verification
-    headline: str
+    answers: tuple[tuple[str, str, str], ...]
+
+    @property
+    def headline(self) -> str:
+        """The answer in one line."""
+        return ", ".join(f"{label} {value} {unit}".rstrip() for label, value, unit in self.answers)
 
 
 def notebook_page(title: str, source: str, blocks: Sequence[Block], records: Sequence[Bound], error: str = "") -> str:
@@ -44,12 +49,12 @@ def notebook_page(title: str, source: str, blocks: Sequence[Block], records: Seq
         What went wrong while it was executed.
     """
     styles: dict[str, None] = {}
-    body = [_block(block, styles) for block in blocks if block.kind != "code"]
+    body = body_of(blocks, styles)
     parts = [
-        title_block(title, [("notebook", source), *_facts(records)]),
+        title_block(title, [("notebook", source), *facts_of(records)]),
         f'<p class="failure">The notebook stopped: {html.escape(error)}</p>' if error else "",
         summary(records),
-        f'<main class="narrative">{"".join(body)}</main>',
+        f'<main class="narrative">{body}</main>',
         record_section(records),
         cautions(CAUTIONS),
         _code_appendix(blocks),
@@ -77,7 +82,13 @@ def title_block(title: str, facts: Iterable[tuple[str, str]]) -> str:
     return f'<header class="title-block"><h1>{html.escape(title)}</h1><dl>{listed}</dl></header>'
 
 
-def _facts(records: Sequence[Bound]) -> list[tuple[str, str]]:
+def body_of(blocks: Sequence[Block], styles: dict[str, None]) -> str:
+    """Return text and outputs of a notebook as clean markup; style sheets that outputs carry go to `styles`."""
+    return "".join(_block(block, styles) for block in blocks if block.kind != "code")
+
+
+def facts_of(records: Sequence[Bound]) -> list[tuple[str, str]]:
+    """Return the facts of the title block, from the last record."""
     if not records:
         return []
     last = records[-1].record
@@ -96,7 +107,11 @@ def summary(records: Sequence[Bound]) -> str:
     if not records:
         return ""
     last = records[-1]
-    return f'<section class="summary"><p class="headline">{html.escape(last.headline)}</p><p class="quiet">{html.escape(last.record.content["description"])}</p></section>'
+    shown = "".join(
+        f'<p class="answer"><span>{html.escape(label)}</span> <b>{html.escape(value)}</b> <small>{html.escape(unit)}</small></p>'
+        for label, value, unit in last.answers
+    )
+    return f'<section class="summary"><div class="answers">{shown}</div><p class="quiet">{html.escape(last.record.content["description"])}</p></section>'
 
 
 def record_section(records: Sequence[Bound]) -> str:

@@ -30,7 +30,7 @@ td.unit{color:var(--quiet);padding-left:0}
 .doubt{color:var(--bad);font-size:.88em}
 .formula{padding:.3rem 0 .5rem;border-bottom:1px solid var(--line)}.formula p{margin:.2rem 0;max-width:none}.formula code{overflow-wrap:anywhere}
 .display img{background:#fff;padding:2px 4px}
-figure{margin:.8rem 0}figure img{max-width:26rem;width:100%;height:auto}
+figure{margin:.8rem 0}.figures{display:flex;flex-wrap:wrap;gap:0 1.6rem}.figures figure{flex:1 1 20rem}figure img{max-width:26rem;width:100%;height:auto}
 .trace td{font-size:.84rem}.trace td:first-child{white-space:pre-wrap}
 .quiet{color:var(--quiet);font-size:.92rem}
 .failure{border-left:3px solid var(--bad);padding:.4rem .8rem;color:var(--bad);overflow-wrap:anywhere;white-space:pre-wrap}

@@ -14,7 +14,7 @@ if TYPE_CHECKING:
     from propkit.record.record import Record
 
 _TITLES = {"case": "Propellant case", "chamber": "Chamber", "nozzle": "Nozzle", "performance": "Performance"}
-_HEADLINES = {
+HEADLINES = {
     "case": ("mixture_ratio", "bulk_density"),
     "chamber": ("temperature", "characteristic_velocity", "molar_mass"),
     "nozzle": ("mass_flow", "throat_diameter", "exit_diameter"),
@@ -28,7 +28,7 @@ def report_of(record: Record) -> Report:
     last = content["objects"][content["object"]]
     headline = [
         _row(content["object"], name, entry, "computed")
-        for name in _HEADLINES[content["object"]]
+        for name in HEADLINES[content["object"]]
         if (entry := last["results"].get(name) or last["inputs"].get(name))
     ]
     return Report(

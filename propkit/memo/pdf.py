@@ -1,0 +1,89 @@
+"""PDF by Typst: offline, with propkit's own template and font, PDF/A-2b, the same bytes for the same content."""
+
+from __future__ import annotations
+
+import json
+import warnings
+from collections.abc import Sequence
+from datetime import UTC, datetime
+from importlib import resources
+from typing import Any
+
+from propkit.errors import MissingExtraError, RecordError
+from propkit.memo.typeset import typeset_blocks
+
+PAPERS = ("a4", "us-letter")
+
+
+def compiled(
+    title: str,
+    markup: str,
+    *,
+    author: str,
+    date: str,
+    digest: str,
+    facts: Sequence[tuple[str, str]],
+    answers: Sequence[tuple[str, str, str]] = (),
+    footer: str,
+    paper: str = "a4",
+) -> bytes:
+    """Return a memo as the bytes of a PDF file.
+
+    Parameters
+    ----------
+    title, author, date, digest : str
+        Title block and document properties; `date` is ``2026-01-31T12:00:00Z``.
+    markup : str
+        Body as clean HTML.
+    facts : sequence of (str, str)
+        Lines of the title block.
+    answers : sequence of (label, value, unit)
+        The headline.
+    footer : str
+        Text at the foot of every page.
+    paper : str
+        ``"a4"`` or ``"us-letter"``.
+
+    Raises
+    ------
+    MissingExtraError
+        Without the typst package.
+    RecordError
+        When the content cannot be set.
+    """
+    try:
+        import typst
+    except ImportError:
+        raise MissingExtraError("typst", "memo", "a PDF memo") from None
+    data = {
+        "title": title,
+        "author": author,
+        "date": date[:10],
+        "digest": digest,
+        "facts": [[name, value] for name, value in facts if value],
+        "answers": [{"label": label, "value": value, "unit": unit} for label, value, unit in answers],
+        "footer": footer,
+        "paper": paper,
+        "blocks": typeset_blocks(markup),
+    }
+    stamp = datetime.strptime(date, "%Y-%m-%dT%H:%M:%SZ").replace(tzinfo=UTC)
+    home = resources.files("propkit.memo")
+    with resources.as_file(home.joinpath("fonts")) as fonts, warnings.catch_warnings():
+        warnings.simplefilter("ignore")
+        try:
+            made: bytes = typst.compile(
+                home.joinpath("memo.typ").read_bytes(),
+                font_paths=[str(fonts)],
+                ignore_system_fonts=True,
+                format="pdf",
+                sys_inputs={"memo": json.dumps(data, ensure_ascii=False)},
+                pdf_standards=["a-2b"],
+                timestamp=_stamp(stamp),
+            )
+        except typst.TypstError as error:
+            raise RecordError(f"the memo cannot be set as PDF: {str(error).splitlines()[0][:300]}") from None
+    return made
+
+
+def _stamp(moment: datetime) -> Any:
+    return int(moment.timestamp())
