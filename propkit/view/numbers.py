@@ -18,10 +18,10 @@ def rounded(value: float, digits: int) -> str:
         return {math.inf: "infinite", -math.inf: "-infinite"}.get(value, "-")
     if value == 0.0:
         return "0"
-    exponent = math.floor(math.log10(abs(value)))
+    mantissa, _, power = f"{value:.{max(digits - 1, 0)}e}".partition("e")
+    exponent = int(power)
     if exponent >= 7 or exponent < -4:
-        mantissa, _, power = f"{value:.{max(digits - 1, 0)}e}".partition("e")
-        return f"{mantissa}e{int(power)}"
+        return f"{mantissa}e{exponent}"
     return f"{value:.{max(digits - 1 - exponent, 0)}f}"
 
 

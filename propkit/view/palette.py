@@ -20,8 +20,8 @@ ACCENT_DARK: Final = "#f0905f"
 DOUBT_DARK: Final = "#e9bd57"
 BAR_DARK: Final = "#7fb0dd"
 
-SERIES: Final = ("#2f5d8a", "#b3481b", "#3d8c7d", "#c79a2b", "#7a5c9e", "#8f9aa3")
-"""Slate blue, sienna, sea green, ochre, plum, grey: told apart by lightness too, and with the usual colour deficiencies."""
+SERIES: Final = ("#2f5d8a", "#b3481b", "#3d8c7d", "#c79a2b", "#a678ad", "#8f9aa3")
+"""Slate blue, sienna, sea green, ochre, mallow, grey: told apart by lightness too, and with the usual colour deficiencies."""
 
 
 def colour(which: int | str) -> str:
