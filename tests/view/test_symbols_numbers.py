@@ -17,8 +17,8 @@ from propkit.view import cells, numbers, symbols
     [
         ("p_{c}", "p_c", "<i>p</i><sub><i>c</i></sub>"),
         ("p_{0}", "p₀", "<i>p</i><sub>0</sub>"),
-        (r"\dot{m}", "\u1e41", "<i>\u1e41</i>"),
-        (r"\dot{m}_{ox}", "\u1e41ₒₓ", "<i>\u1e41</i><sub><i>ox</i></sub>"),
+        (r"\dot{m}", "\u1e41", "<i>m\u0307</i>"),
+        (r"\dot{m}_{ox}", "\u1e41ₒₓ", "<i>m\u0307</i><sub><i>ox</i></sub>"),
         (r"c^{*}", "c*", "<i>c</i><sup>*</sup>"),
         (r"\mathrm{M}", "M", "M"),
         (r"\rho u", "ρu", "<i>ρ</i><i>u</i>"),
