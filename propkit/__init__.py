@@ -21,6 +21,8 @@ __version__ = "0.1.0"
 _PUBLIC = {
     "PropellantCase": "propkit.model.propellant_case",
     "Chamber": "propkit.model.chamber",
+    "Cone": "propkit.model.contour",
+    "Bell": "propkit.model.contour",
     "Nozzle": "propkit.model.nozzle",
     "Performance": "propkit.model.performance",
     "State": "propkit.model.state",
@@ -34,6 +36,7 @@ _PUBLIC = {
     "Triangular": "propkit.study.distributions",
     "Empirical": "propkit.study.distributions",
     "Reconciliation": "propkit.reconcile.reconciliation",
+    "HotFire": "propkit.reconcile.firing",
     "Record": "propkit.record",
     "show_versions": "propkit.versions",
     "PropkitError": "propkit.errors",
@@ -74,6 +77,8 @@ if TYPE_CHECKING:
     from propkit.errors import StorageError as StorageError
     from propkit.model.blend import blend as blend
     from propkit.model.chamber import Chamber as Chamber
+    from propkit.model.contour import Bell as Bell
+    from propkit.model.contour import Cone as Cone
     from propkit.model.nozzle import Nozzle as Nozzle
     from propkit.model.performance import Performance as Performance
     from propkit.model.propellant import Propellant as Propellant
@@ -82,6 +87,7 @@ if TYPE_CHECKING:
     from propkit.model.propellant_case import PropellantCase as PropellantCase
     from propkit.model.state import State as State
     from propkit.record import Record as Record
+    from propkit.reconcile.firing import HotFire as HotFire
     from propkit.reconcile.reconciliation import Reconciliation as Reconciliation
     from propkit.study.distributions import Empirical as Empirical
     from propkit.study.distributions import Normal as Normal

@@ -28,7 +28,7 @@ Mask = npt.NDArray[np.bool_]
 
 _HEADER = re.compile(r"\s*(?P<label>.*?)\s*(?:\[(?P<square>[^\]]*)\]|\((?P<round>[^)]*)\))\s*")
 _NO_UNIT = ("", "-", "1")
-SPIKE = 6.0
+SPIKE = 8.0
 """Departure from the local median that makes a spike, in robust standard deviations."""
 SATURATED = 5
 """Equal samples in a row at an end of the range of a channel that count as saturated."""
@@ -175,8 +175,8 @@ def flagged(name: str, column: str, unit: str, values: Array, full_scale: tuple[
 
     Notes
     -----
-    Spike: a stretch of at most three samples more than six robust standard deviations (1.4826 times the median
-    absolute deviation from the running median over eleven samples, itself a running median over 101) away from the
+    Spike: a stretch of at most three samples more than eight robust standard deviations (75th percentile, over 101
+    samples, of the departures from the running median over eleven, divided by 1.1503) away from the
     running median. Dropout: no number, an isolated fall to exactly zero, or twenty equal samples in a row. Saturated: at
     or beyond the measuring range, or five equal samples in a row at the largest or smallest value recorded.
 
@@ -185,18 +185,20 @@ def flagged(name: str, column: str, unit: str, values: Array, full_scale: tuple[
     """
     missing = ~np.isfinite(values)
     filled = _bridged(values, missing)
-    runs = _run_lengths(filled)
-    top, bottom = filled == filled.max(), filled == filled.min()
+    runs, far = _run_lengths(filled), _far(filled)
+    brief = far & (_lengths_of(far) <= 3)
+    # a spike beyond the end of the range does not hide a channel that sits at that end
+    usual = filled[~brief] if not brief.all() else filled
+    top, bottom = filled >= usual.max(), filled <= usual.min()
     varies = bool(filled.max() > filled.min())
     saturated = (top | bottom) & (runs >= SATURATED) & varies & (filled != 0.0)
     if full_scale is not None:
         saturated |= (filled <= full_scale[0]) | (filled >= full_scale[1])
-    far = _far(filled)
     # a fall to exactly zero between samples that are not is no pressure, flow or thrust
     zeros = (filled == 0.0) & far
     stuck = (runs >= STUCK) & ~saturated & varies & (filled != 0.0)
     dropouts = missing | zeros | stuck
-    spikes = far & ~dropouts & ~saturated & (_lengths_of(far) <= 3)
+    spikes = brief & ~dropouts & ~saturated
     return Channel(name, column, unit, values, spikes, dropouts, saturated & ~missing)
 
 
@@ -206,7 +208,8 @@ def _far(values: Array) -> Mask:
     width = min(11, len(values) | 1)
     centre = ndimage.median_filter(values, size=width, mode="nearest")
     away = np.abs(values - centre)
-    scatter = 1.4826 * ndimage.median_filter(away, size=min(101, len(values) | 1), mode="nearest")
+    # the upper quartile, not the median: of samples that are alike many are their own running median
+    scatter = ndimage.percentile_filter(away, 75.0, size=min(101, len(values) | 1), mode="nearest") / 1.1503
     floor = 1e-12 * float(np.abs(values).max()) + float(np.finfo(np.float64).tiny)
     far: Mask = away > SPIKE * np.maximum(scatter, floor)
     return far

@@ -212,29 +212,21 @@ def _steady_runs(recording: Recording, name: str, inside: Mask, edges: Array, ru
     means[empty] = np.interp(np.flatnonzero(empty), np.flatnonzero(~empty), means[~empty])
     # noise of a piece's mean from the differences of neighbouring pieces, which drift hardly touches
     noise = 1.4826 * float(np.median(np.abs(np.diff(means)))) / np.sqrt(2.0)
+    # row: first piece; column: how many pieces follow; NaN past the last piece makes every comparison false
+    runs = np.lib.stride_tricks.sliding_window_view(np.append(means, np.full(pieces, np.nan)), pieces)[:pieces]
+    lengths = np.arange(1.0, pieces + 1.0)
+    total, moment = np.cumsum(runs, axis=1), np.cumsum(runs * (lengths - 1.0), axis=1)
+    average = total / lengths
+    allowed = rule.band * np.abs(average) + 3.0 * noise
+    highest, lowest = np.maximum.accumulate(runs, axis=1), np.minimum.accumulate(runs, axis=1)
+    slope = (moment - total * (lengths - 1.0) / 2.0) / np.maximum((lengths**3 - lengths) / 12.0, 1.0)
+    # the change of a fitted line scatters by about 3.46 noise/sqrt(pieces)
+    change = rule.drift * np.abs(average) + 2.0 * 3.46 * noise / np.sqrt(lengths)
+    flat = (highest - average <= allowed) & (average - lowest <= allowed) & (np.abs(slope * lengths) <= change)
     steady = np.zeros((pieces, pieces + 1), dtype=bool)
-    for first in range(pieces - _SHORTEST + 1):
-        run = means[first:]
-        lengths = np.arange(1, len(run) + 1)
-        average = np.cumsum(run) / lengths
-        highest, lowest = np.maximum.accumulate(run), np.minimum.accumulate(run)
-        allowed = rule.band * np.abs(average) + 3.0 * noise
-        flat = (highest - average <= allowed) & (average - lowest <= allowed)
-        change = np.abs(_line_change(run))
-        # the fitted change scatters by about 3.5 noise/sqrt(pieces)
-        flat &= change <= rule.drift * np.abs(average) + 2.0 * 3.46 * noise / np.sqrt(lengths)
-        steady[first, first + 1 :] = flat
+    for first in range(pieces):
+        steady[first, first + 1 :] = flat[first, : pieces - first]
     return steady
-
-
-def _line_change(run: Array) -> Array:
-    """Return for every leading part of a run the change of a fitted line from its first to its last piece."""
-    lengths = np.arange(1, len(run) + 1, dtype=np.float64)
-    places = lengths - 1.0
-    total, moment = np.cumsum(run), np.cumsum(run * places)
-    slope = (moment - total * places / 2.0) / np.maximum((lengths**3 - lengths) / 12.0, 1.0)
-    change: Array = slope * lengths
-    return change
 
 
 def _checked(given: tuple[float, float], recording: Recording) -> tuple[float, float]:
