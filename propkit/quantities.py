@@ -411,6 +411,9 @@ _ROWS = (
     Quantity(
         "fuel_mass_flow", MASS_FLOW, r"\dot{m}_{fu}", "fuel mass flow", "fuel part of the propellant mass flow", 5
     ),
+    Quantity("losses", TEXT, r"", "losses", "what is lost from ideal to delivered, by name"),
+    Quantity("minimum_pressure", PRESSURE, r"p_{c,min}", "minimum chamber pressure", "lowest chamber pressure at which the chamber is known to run", 4),
+    Quantity("altitude", ALTITUDE, r"h", "altitude", "geometric altitude in the standard atmosphere", 4),
     # propellants
     Quantity("formula", TEXT, r"", "formula", "atoms of one formula unit"),
     Quantity("role", TEXT, r"", "role", "what the propellant serves as"),

@@ -13,6 +13,9 @@ from propkit.physics.arrays import Array, Values, values
 from propkit.physics.equilibrium import CONVERGED, EquilibriumState
 from propkit.physics.expansion import FlowState
 
+ALONG = ("pressure", "temperature", "velocity", "mach", "density", "isentropic_exponent")
+"""What is told along a nozzle."""
+
 
 def along(found: Expansion, area_ratio: Values, *, supersonic: bool, index: int = 0) -> dict[str, Array]:
     """Return the flow along a nozzle at local area ratios on one side of the throat.
@@ -31,8 +34,7 @@ def along(found: Expansion, area_ratio: Values, *, supersonic: bool, index: int 
     Returns
     -------
     dict of str to array
-        Pressure [Pa], temperature [K], velocity [m/s], Mach number [1], density [kg/m3], shape (point,); NaN where this flow
-        has no state.
+        The quantities of `ALONG` in SI, shape (point,); NaN where this flow has no state.
     """
     ratio = np.atleast_1d(values(area_ratio)).astype(float)
     cases = np.full(len(ratio), index)
@@ -40,7 +42,7 @@ def along(found: Expansion, area_ratio: Values, *, supersonic: bool, index: int 
     states = expansion.at_area_ratio(isentrope, found.mass_flux[cases], ratio, found.throat.take(cases), supersonic)
     good, at_throat = states.status == CONVERGED, ratio <= 1.0 + 1e-12
     flow = {}
-    for name in ("pressure", "temperature", "velocity", "mach", "density"):
+    for name in ALONG:
         there = np.where(good, getattr(states, name), np.nan)
         flow[name] = np.where(at_throat, getattr(found.throat, name)[index], there)
     return flow

@@ -40,6 +40,7 @@ def size(
     ambient: Values = 0.0,
     discharge_coefficient: Values = 1.0,
     cstar_efficiency: Values = 1.0,
+    divergence_factor: Values = 1.0,
 ) -> Sizes:
     """Return every size from one of them.
 
@@ -59,6 +60,8 @@ def size(
         Ambient pressure at which a thrust is asked for [Pa].
     discharge_coefficient, cstar_efficiency : float or array
         Effective over geometric throat area [1]; delivered over theoretical characteristic velocity [1].
+    divergence_factor : float or array
+        Share of the exit momentum along the axis [1].
 
     Returns
     -------
@@ -75,7 +78,7 @@ def size(
         throat = values(given) / per_area
     else:
         throat = values(given) / thrust.thrust(
-            per_area, efficiency * values(exit_velocity), exit_pressure, ambient, ratio
+            per_area, values(divergence_factor) * efficiency * values(exit_velocity), exit_pressure, ambient, ratio
         )
     throat, ratio, per_area = np.broadcast_arrays(throat, ratio, per_area)
     return Sizes(np.array(throat), throat * ratio, np.array(ratio), throat * per_area)

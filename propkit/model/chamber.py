@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from typing import TYPE_CHECKING, Any, ClassVar
+from typing import TYPE_CHECKING, Any
 
 from propkit.chain import chamber as stage
 from propkit.constants import GAS_CONSTANT
@@ -24,6 +24,7 @@ from propkit.model.declare import (
 from propkit.model.doubts import Assumption, Doubt
 from propkit.model.propellant_case import PropellantCase
 from propkit.model.state import State
+from propkit.physics import contour
 from propkit.report import Section, UnitSystem
 from propkit.series import Axis, Bars, Figure, Series
 
@@ -39,6 +40,10 @@ EFFICIENCIES = Bounds(above=0.5, at_most=1.0)
 _HINT_CONTRACTION = "It is chamber area over throat area; did you pass throat over chamber?"
 _HINT_EFFICIENCY = "It is delivered over theoretical characteristic velocity."
 COMPOSITION_SHOWN = 1e-5
+_PLATEAU = (
+    "at a phase transition the equilibrium heat capacity is undefined: the temperature stays while heat goes into melting or evaporation"
+)
+_NO_COMPOSITION_CHANGE = "the composition is given and does not follow equilibrium: the frozen heat capacity is the only one"
 
 
 def read_case(name: str, value: Any) -> PropellantCase:
@@ -65,6 +70,8 @@ class Chamber(Calculation):
         Chamber area over throat area [1], above 1; infinite by default, and then all three readings agree.
     cstar_efficiency : float
         Delivered over theoretical characteristic velocity [1], above 0.5 and at most 1.
+    characteristic_length : quantity, optional
+        Chamber volume over throat area [m]: brings the stay time and, with a contraction ratio, the size of the chamber.
     name : str
         Title of the sheet.
 
@@ -80,9 +87,6 @@ class Chamber(Calculation):
     title = "Chamber"
     upstream_input = "case"
     headline = ("temperature", "characteristic_velocity", "molar_mass")
-    flows: ClassVar[tuple[str, ...]] = ("shifting", "frozen", "constant-property")
-    flow_reason: ClassVar[str] = ""
-
     case: CustomInput = CustomInput(doc="the propellants upstream", reader=read_case, kw_only=False, quantity="name")
     pressure: QuantityInput = QuantityInput(doc="quoted chamber pressure, absolute", bounds=PRESSURES)
     pressure_at: ChoiceInput = ChoiceInput(
@@ -102,6 +106,10 @@ class Chamber(Calculation):
         hint=_HINT_EFFICIENCY,
     )
 
+    characteristic_length: QuantityInput = QuantityInput(
+        doc="chamber volume over throat area", default=None, bounds=Bounds(above=0.0, at_most=100.0)
+    )
+
     temperature = QuantityResult(relation="chamber_equilibrium", source="rn1037")
     characteristic_velocity = QuantityResult(relation="theoretical_characteristic_velocity", source="definition")
     stagnation_pressure = QuantityResult(relation="combustor_balance", source="conservation")
@@ -113,6 +121,7 @@ class Chamber(Calculation):
     frozen_specific_heat = QuantityResult(relation="chamber_equilibrium", source="tm4513")
     gas_constant = QuantityResult(relation="gas_constant", source="definition")
     sound_speed = QuantityResult(relation="sound_speed", source="definition")
+    stay_time = QuantityResult(relation="stay_time", source="sutton-biblarz")
 
     def _calculate(self) -> Outcome:
         case: PropellantCase = self._values["case"]
@@ -135,11 +144,22 @@ class Chamber(Calculation):
         pressure = self._values["pressure"]
         if float(face.pressure[0]) == pressure or self._values["pressure_at"] != "injector":
             results["pressure"] = float(face.pressure[0])
-        absent = {
-            "specific_heat": "at a phase transition the equilibrium heat capacity is undefined: the temperature stays while heat goes into melting or evaporation"
-        }
-        doubts = tuple(Doubt(text, code=code, about=about) for text, code, about in combustion.doubts())
+        absent = {"specific_heat": _NO_COMPOSITION_CHANGE if combustion.held else _PLATEAU}
+        self._stay(results, absent)
+        doubts = (
+            *(Doubt(text, code=code, about=about) for text, code, about in combustion.doubts()),
+            *case.chamber_doubts(combustion),
+        )
         return Outcome(results, absent, doubts, combustion)
+
+    def _stay(self, results: dict[str, float], absent: dict[str, str]) -> None:
+        """Add the stay time: the gas in a chamber volume L* At over the mass flow p0 At/(efficiency c*)."""
+        length = self._values["characteristic_length"]
+        if length is None:
+            absent["stay_time"] = absent["characteristic_length"] = "the chamber has no size; give characteristic_length"
+            return
+        flux = results["stagnation_pressure"] / (self._values["cstar_efficiency"] * results["characteristic_velocity"])
+        results["stay_time"] = float(contour.stay_time(length, results["density"], flux))
 
     # -- the gas given outright ----------------------------------------------------------------
 
@@ -155,6 +175,7 @@ class Chamber(Calculation):
         contraction_ratio: NumberLike = math.inf,
         pressure_at: str = "injector",
         cstar_efficiency: NumberLike = 1.0,
+        characteristic_length: QuantityLike | None = None,
         name: str = "",
     ) -> GasChamber:
         """Return a chamber of a gas with given properties: constant-property flow only.
@@ -167,7 +188,7 @@ class Chamber(Calculation):
             Ratio of heat capacities [1], above 1 and at most 2.
         molar_mass, gas_constant : quantity
             One of the two: mass per amount [kg/mol], or specific gas constant [J/(kg K)].
-        contraction_ratio, pressure_at, cstar_efficiency, name
+        contraction_ratio, pressure_at, cstar_efficiency, characteristic_length, name
             As for `Chamber`.
         """
         optional: dict[str, Any] = {
@@ -176,10 +197,26 @@ class Chamber(Calculation):
             "contraction_ratio": None if contraction_ratio == math.inf else contraction_ratio,
             "pressure_at": None if pressure_at == "injector" else pressure_at,
             "cstar_efficiency": None if cstar_efficiency == 1.0 else cstar_efficiency,
+            "characteristic_length": characteristic_length,
             "name": name or None,
         }
         given: dict[str, Any] = {key: value for key, value in optional.items() if value is not None}
         return GasChamber(pressure=pressure, temperature=temperature, isentropic_exponent=isentropic_exponent, **given)
+
+    @property
+    def flows(self) -> tuple[str, ...]:
+        """The flow models that a nozzle of this chamber can have, the default first."""
+        return self._values["case"].flows  # type: ignore[no-any-return]
+
+    @property
+    def flow_reason(self) -> str:
+        """Why other flow models are refused."""
+        return self._values["case"].flow_reason  # type: ignore[no-any-return]
+
+    @property
+    def chooses_exponent(self) -> bool:
+        """Whether constant-property flow has an equilibrium and a frozen exponent to choose from."""
+        return "shifting" in self.flows
 
     @property
     def case_or_none(self) -> PropellantCase | None:
@@ -212,12 +249,7 @@ class Chamber(Calculation):
         return f"{self.case.subtitle()}, {self._values['pressure'] / 1e6:.4g} MPa"
 
     def _own_assumptions(self) -> tuple[Assumption, ...]:
-        made = [
-            Assumption(
-                "equilibrium", "Combustion reaches chemical equilibrium, without heat loss.", "method", "temperature"
-            )
-        ]
-        return (*made, *self._common_assumptions())
+        return (self._values["case"].chamber_assumption(), *self._common_assumptions())
 
     def _common_assumptions(self) -> tuple[Assumption, ...]:
         ratio = self._values["contraction_ratio"]
@@ -269,8 +301,6 @@ class GasChamber(Chamber):
 
     upstream_input = ""
     headline = ("temperature", "characteristic_velocity", "molar_mass")
-    flows: ClassVar[tuple[str, ...]] = ("constant-property",)
-    flow_reason: ClassVar[str] = "A gas given by its exponent has no composition to shift or freeze."
     groups = (("molar_mass", "gas_constant"),)
     undeclared = ("case",)
 
@@ -334,7 +364,18 @@ class GasChamber(Chamber):
         absent = dict.fromkeys(("specific_heat", "frozen_isentropic_exponent", "composition"), reason)
         del results["frozen_specific_heat"]
         absent["frozen_specific_heat"] = reason
+        self._stay(results, absent)
         return Outcome(results, absent, (), combustion)
+
+    @property
+    def flows(self) -> tuple[str, ...]:
+        """The flow models that a nozzle of this chamber can have."""
+        return ("constant-property",)
+
+    @property
+    def flow_reason(self) -> str:
+        """Why other flow models are refused."""
+        return "A gas given by its exponent has no composition to shift or freeze."
 
     def _code(self, names: Any) -> str:
         return super()._code(names).replace("pk.GasChamber(", "pk.Chamber.from_gas(", 1)

@@ -6,23 +6,28 @@ import math
 from typing import TYPE_CHECKING
 
 from propkit import quantities, units
+from propkit.physics import wall as walls
 from propkit.report import UnitSystem
 from propkit.series import Axis, Figure, Line, Mark, Series
 
 if TYPE_CHECKING:
     from propkit.model.nozzle import Nozzle
 
+DRAWN_POINTS = 17
+"""Points on each segment of a drawn wall."""
+
 SCHEMATIC_HALF_ANGLE = math.radians(15.0)
 """Half-angle of the divergent part where no contour is given [rad]: the drawing says that its length is schematic."""
 
 
 def nozzle_figures(nozzle: Nozzle, system: UnitSystem) -> tuple[Figure, ...]:
-    """Return the outline of the nozzle to scale: radii are computed, lengths schematic without a contour."""
+    """Return the outline of the nozzle to scale: with its contour, or else with schematic lengths."""
     unit = "m" if system == "SI" else "inch"
     throat, lip = nozzle.si("throat_diameter") / 2.0, nozzle.si("exit_diameter") / 2.0
     ratio = nozzle.chamber.si("contraction_ratio")
     chamber = throat * math.sqrt(ratio if math.isfinite(ratio) else 6.0)
-    wall = schematic_wall(throat, lip, chamber)
+    real = nozzle.has("contour")
+    wall = contour_wall(nozzle) if real else schematic_wall(throat, lip, chamber)
     upper = [(x, r) for x, r in wall]
     outline = [*upper, *((x, -r) for x, r in reversed(upper))]
     scale = units.convert(1.0, "m", unit)
@@ -37,6 +42,10 @@ def nozzle_figures(nozzle: Nozzle, system: UnitSystem) -> tuple[Figure, ...]:
     )
     alt = f"Nozzle outline: throat diameter {scale * 2 * throat:.4g} {units.shown_unit(unit)}, exit diameter {scale * 2 * lip:.4g}, area ratio {nozzle.si('area_ratio'):.4g}"
     title = "Nozzle, diameters to scale; length schematic (15° cone)"
+    if real:
+        title = f"Nozzle to scale: {nozzle.input_text('contour')}"
+        if not nozzle.geometry.upstream:
+            title += "; no contraction ratio, so no chamber"
     return (
         Figure(
             "outline",
@@ -54,6 +63,12 @@ def _diameter(name: str, nozzle: Nozzle, system: UnitSystem) -> str:
     row = quantities.quantity(name)
     unit = row.shown_in(system, (nozzle.si(name),))
     return f"{units.convert(nozzle.si(name), row.unit, unit):.4g} {units.shown_unit(unit)}"
+
+
+def contour_wall(nozzle: Nozzle) -> list[tuple[float, float]]:
+    """Return points (x, r) [m] on the wall of a nozzle with a contour, x = 0 at the throat."""
+    points = walls.draw(nozzle.geometry.segments, DRAWN_POINTS)
+    return list(zip(points.x.tolist(), points.r.tolist(), strict=True))
 
 
 def schematic_wall(throat: float, lip: float, chamber: float) -> list[tuple[float, float]]:

@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import math
+import os
 from collections.abc import Iterator, Mapping
+from pathlib import Path
 from typing import TYPE_CHECKING, Any, Self
 
 import numpy as np
@@ -12,12 +14,25 @@ from propkit import units
 from propkit.chain import nozzle as stage
 from propkit.chain import outcome, sizing
 from propkit.errors import InputError, Problem, RangeError
-from propkit.model import sheet
+from propkit.model import nozzle_sizes, sheet
+from propkit.model import wall as wall_of_nozzle
 from propkit.model.ambient import read_ambient
 from propkit.model.base import Calculation, Outcome
 from propkit.model.chamber import Chamber
-from propkit.model.declare import Bounds, ChoiceInput, CustomInput, NumberInput, QuantityInput, QuantityResult, as_text
+from propkit.model.contour import read_contour
+from propkit.model.declare import (
+    Bounds,
+    ChoiceInput,
+    CustomInput,
+    NumberInput,
+    NumberResult,
+    QuantityInput,
+    QuantityResult,
+    as_text,
+)
 from propkit.model.doubts import Assumption, Doubt
+from propkit.model.nozzle_sizes import EXPANSIONS, read_chamber, read_freeze
+from propkit.model.nozzle_sizes import SIZES as SIZES
 from propkit.model.state import STATE_FIELDS, State
 from propkit.report import Section, UnitSystem
 from propkit.series import Figure
@@ -25,12 +40,11 @@ from propkit.series import Figure
 if TYPE_CHECKING:
     import pandas as pd
 
+    from propkit.model.contour import Contour
     from propkit.model.declare import NumberLike, QuantityLike
 
 FLOWS = ("shifting", "frozen", "constant-property")
 EXPONENTS = ("equilibrium", "frozen")
-SIZES = (*sizing.THROAT_SIZES, *sizing.EXIT_SIZES, *sizing.FLOW_SIZES)
-EXPANSIONS = ("area_ratio", "exit_pressure")
 STATION_COLUMNS = (
     "pressure",
     "temperature",
@@ -56,29 +70,6 @@ def read_nozzle(name: str, value: Any) -> Nozzle:
     )
 
 
-def read_chamber(name: str, value: Any) -> Chamber:
-    """Return `value` when it is a chamber."""
-    if isinstance(value, Chamber):
-        return value
-    raise InputError(
-        Problem(name, as_text(value), "a pk.Chamber", "Chain the objects: case, chamber, nozzle, performance.")
-    )
-
-
-def read_freeze(name: str, value: Any) -> str | float:
-    """Return where the composition freezes: a word, or an area ratio above 1."""
-    if value in ("chamber", "throat"):
-        return str(value)
-    allowed = "'chamber', 'throat' or a supersonic area ratio above 1"
-    try:
-        ratio = units.to_si(value, "", name)
-    except InputError as error:
-        raise InputError(Problem(name, as_text(value), allowed)) from error
-    if not 1.0 < ratio <= 1e4:
-        raise InputError(Problem(name, as_text(value), allowed))
-    return ratio
-
-
 class Nozzle(Calculation):
     """Expansion of the chamber gas through a throat to an exit, and its sizes.
 
@@ -99,6 +90,10 @@ class Nozzle(Calculation):
         Constant-property flow only: ``"equilibrium"`` (default) or ``"frozen"`` isentropic exponent of the reservoir.
     discharge_coefficient : float
         Effective over geometric throat area [1], above 0.5 and at most 1.
+    contour : Cone or Bell, optional
+        Shape of the wall: brings its measures, and the divergence loss to a performance.
+    wall_thickness, wall_density : quantity
+        Thickness [m] and density [kg/m3] of the wall, for its mass.
     name : str
         Title of the sheet.
 
@@ -140,13 +135,35 @@ class Nozzle(Calculation):
     discharge_coefficient: NumberInput = NumberInput(
         doc="effective over geometric throat area", default=1.0, bounds=Bounds(above=0.5, at_most=1.0)
     )
+    contour: CustomInput = CustomInput(doc="shape of the wall: a cone or a bell", default=None, reader=read_contour)
+    wall_thickness: QuantityInput = QuantityInput(
+        doc="thickness of the wall, for its mass", default=None, bounds=Bounds(above=0.0, at_most=1.0)
+    )
+    wall_density: QuantityInput = QuantityInput(
+        doc="density of the wall, for its mass", default=8900.0, bounds=Bounds(above=0.0, at_most=3e4)
+    )
 
     characteristic_velocity = QuantityResult(relation="characteristic_velocity", source="definition")
+    divergence_factor = NumberResult(relation="divergence_factor", source="sutton-biblarz")
+    divergent_length = QuantityResult(relation="divergent_length", source="rao-1960")
+    contour_length = QuantityResult(relation="contour_length", source="rao-1960")
+    throat_wall_angle = QuantityResult(relation="throat_wall_angle", source="rao-1960")
+    lip_angle = QuantityResult(relation="lip_angle", source="rao-1960")
+    wetted_area = QuantityResult(relation="wetted_area", source="definition")
+    contour_volume = QuantityResult(relation="contour_volume", source="definition")
+    wall_mass = QuantityResult(relation="wall_mass", source="definition")
+    chamber_volume = QuantityResult(relation="chamber_volume", source="sutton-biblarz")
+    chamber_length = QuantityResult(relation="chamber_length", source="sutton-biblarz")
 
     # -- checks over several inputs -------------------------------------------------------------
 
     def _check(self, bad: set[str]) -> list[Problem]:
-        problems = list(self._size_problems(bad))
+        problems = [
+            Problem(name, as_text(self._typed[name]), f"left out unless {needed} is given")
+            for name, needed in (("wall_thickness", "contour"), ("wall_density", "wall_thickness"))
+            if name in self._typed and self._values[needed] is None and needed not in bad
+        ]
+        problems += list(nozzle_sizes.size_problems(self._typed, self._values, bad))
         if "chamber" in bad or "flow" in bad:
             return problems
         flow = self._flow()
@@ -173,89 +190,20 @@ class Nozzle(Calculation):
                     f"The flow is {flow!r}.",
                 )
             )
-        if self._values["exponent"] is not None and not self._values["chamber"].has("frozen_isentropic_exponent"):
+        if self._values["exponent"] is not None and not self._values["chamber"].chooses_exponent:
             problems.append(
-                Problem("exponent", repr(self._typed["exponent"]), "left out for a gas with a given exponent")
+                Problem("exponent", repr(self._typed["exponent"]), "left out for a gas with a single exponent")
+            )
+        if self._values["freeze_at"] not in (None, "chamber") and "shifting" not in allowed:
+            allowed_here = "'chamber' or left out"
+            problems.append(
+                Problem("freeze_at", as_text(self._typed["freeze_at"]), allowed_here, self._values["chamber"].flow_reason)
             )
         return problems
 
-    def _size_problems(self, bad: set[str]) -> Iterator[Problem]:
-        expansion = [name for name in EXPANSIONS if name in self._typed or name in bad]
-        throat = [name for name in sizing.THROAT_SIZES if name in self._typed or name in bad]
-        lips = [name for name in sizing.EXIT_SIZES if name in self._typed or name in bad]
-        flows = [name for name in sizing.FLOW_SIZES if name in self._typed or name in bad]
-        given = [*expansion, *throat, *lips, *flows]
-        shown = ", ".join(f"{name}={as_text(self._typed.get(name, '?'))}" for name in given) or "missing"
-        wanted = (
-            "one of area_ratio or exit_pressure with one size ("
-            + ", ".join(SIZES)
-            + "), or one throat size with one exit size"
-        )
-        two_sizes = len(throat) == 1 and len(lips) == 1 and not flows and not expansion
-        one_size = len(expansion) == 1 and len(throat) + len(lips) + len(flows) == 1
-        if not (two_sizes or one_size):
-            missing = not expansion or not (throat or lips or flows)
-            hint = "Add what is missing." if missing and len(given) <= 1 else "Leave out what is too much."
-            yield Problem("nozzle size", shown, wanted, hint)
-        if two_sizes and not bad & set(given):
-            ratio = self._size_ratio()
-            if not 1.0 <= ratio <= 1e4:
-                yield Problem(
-                    lips[0],
-                    as_text(self._typed[lips[0]]),
-                    "an exit at least as large as the throat",
-                    f"The area ratio comes out as {ratio:.4g}.",
-                )
-        if flows == ["thrust"] and self._values["sizing_ambient"] is None and "sizing_ambient" not in bad:
-            yield Problem(
-                "sizing_ambient",
-                "missing",
-                "given with thrust",
-                'For example sizing_ambient="vacuum", or use Nozzle.sized_for.',
-            )
-        if "thrust" not in flows and "sizing_ambient" in self._typed:
-            yield Problem(
-                "sizing_ambient",
-                as_text(self._typed["sizing_ambient"]),
-                "left out unless the nozzle is sized for a thrust",
-            )
-
-    def _size_ratio(self) -> float:
-        areas = [
-            float(sizing.area_of(name, self._values[name]))
-            for group in (sizing.EXIT_SIZES, sizing.THROAT_SIZES)
-            for name in group
-            if name in self._typed
-        ]
-        return areas[0] / areas[1]
-
     def displaced(self, typed: dict[str, Any], changes: Mapping[str, Any]) -> dict[str, Any]:
         """Return `typed` without the sizes that the changes displace: naming one member of a group displaces the others."""
-        kept = dict(typed)
-        throat, lips, flows, expansion = (
-            set(group) for group in (sizing.THROAT_SIZES, sizing.EXIT_SIZES, sizing.FLOW_SIZES, EXPANSIONS)
-        )
-        named = set(changes)
-        drop: set[str] = set()
-        two_sizes = bool(throat & set(typed)) and bool(lips & set(typed))
-        if named & throat and named & lips:
-            drop = throat | lips | flows | expansion
-        elif two_sizes:
-            drop |= throat if named & throat else set()
-            drop |= lips if named & (lips | expansion) else set()
-            drop |= throat if named & flows else set()
-        elif named & (throat | lips | flows):
-            drop = throat | lips | flows
-        drop |= expansion if named & expansion else set()
-        if drop & {"thrust"} and "thrust" not in named:
-            drop.add("sizing_ambient")
-        for name in drop:
-            kept.pop(name, None)
-        if named & {"flow"} and changes.get("flow") != "frozen" and "freeze_at" not in named:
-            kept.pop("freeze_at", None)
-        if named & {"flow"} and changes.get("flow") != "constant-property" and "exponent" not in named:
-            kept.pop("exponent", None)
-        return kept
+        return nozzle_sizes.displaced(typed, changes)
 
     def _flow(self) -> str:
         return str(self._values["flow"] or self._values["chamber"].flows[0])
@@ -268,12 +216,12 @@ class Nozzle(Calculation):
         self._values["flow"] = flow
         if flow == "frozen":
             self._values["freeze_at"] = self._values["freeze_at"] or "chamber"
-        if flow == "constant-property" and chamber.has("frozen_isentropic_exponent"):
+        if flow == "constant-property" and chamber.chooses_exponent:
             self._values["exponent"] = self._values["exponent"] or "equilibrium"
         discharge = self._values["discharge_coefficient"]
         ratio, pressure = self._values["area_ratio"], self._values["exit_pressure"]
         if ratio is None and pressure is None:
-            ratio = self._size_ratio()
+            ratio = nozzle_sizes.size_ratio(self._typed, self._values)
         freeze_at = self._values["freeze_at"]
         expansion = stage.expand(
             chamber.held,
@@ -323,6 +271,7 @@ class Nozzle(Calculation):
             ambient=ambient.pressure if ambient is not None else 0.0,
             discharge_coefficient=self._values["discharge_coefficient"],
             cstar_efficiency=chamber.si("cstar_efficiency"),
+            divergence_factor=wall_of_nozzle.divergence_factor(self._values["contour"], ratio) if name == "thrust" else 1.0,
         )
         throat_area, exit_area, mass_flow = (
             float(getattr(sizes, field)[0]) for field in ("throat_area", "exit_area", "mass_flow")
@@ -342,17 +291,42 @@ class Nozzle(Calculation):
             results[name] = self._values[name]
         if ambient is not None:
             results["sizing_ambient"] = ambient.pressure
+        shape = self._shape(results)
+        results |= shape.results
         absent = {
+            **shape.absent,
+            "contour": wall_of_nozzle.NO_CONTOUR,
             "thrust": "the nozzle was not sized for a thrust; pk.Performance(nozzle, ambient=...).thrust has the thrust",
             "sizing_ambient": "the nozzle was not sized for a thrust",
             "freeze_at": "only frozen flow freezes its composition",
             "exponent": "only constant-property flow of a chamber gas chooses its exponent",
         }
-        return Outcome(results, absent, tuple(self._doubts(expansion)), expansion)
+        doubts = [*self._doubts(expansion), *(Doubt(text, code="contour-chart", about="contour") for text in shape.doubts)]
+        return Outcome(results, absent, tuple(doubts), expansion)
+
+    def _shape(self, results: Mapping[str, float]) -> wall_of_nozzle.Geometry:
+        chamber = self._values["chamber"]
+        return wall_of_nozzle.geometry(
+            self._values["contour"],
+            throat_radius=0.5 * results["throat_diameter"],
+            area_ratio=results["area_ratio"],
+            contraction_ratio=chamber.si("contraction_ratio"),
+            characteristic_length=chamber._values["characteristic_length"],
+            wall_thickness=self._values["wall_thickness"],
+            wall_density=self._values["wall_density"],
+        )
+
+    @property
+    def geometry(self) -> wall_of_nozzle.Geometry:
+        """Segments of the wall and its measures."""
+        return self.lazily("geometry", lambda: self._shape(self._outcome.results))
 
     def _doubts(self, expansion: stage.Expansion) -> Iterator[Doubt]:
-        for text, about in expansion.doubts():
-            yield Doubt(text, code="data-range", about=about)
+        for text, code, about in expansion.doubts():
+            yield Doubt(text, code=code, about=about)
+        case = self._values["chamber"].case_or_none
+        if case is not None:
+            yield from case.flow_doubts(expansion)
         late, ratio = self._values["freeze_at"], float(expansion.area_ratio[0]) * self._values["discharge_coefficient"]
         if isinstance(late, float) and late >= ratio:
             text = f"The composition freezes at area ratio {late:g}, beyond the exit at {ratio:.4g}: the flow is shifting all the way."
@@ -373,6 +347,8 @@ class Nozzle(Calculation):
         freeze_at: str | float | None = None,
         exponent: str | None = None,
         discharge_coefficient: NumberLike = 1.0,
+        contour: Contour | None = None,
+        wall_thickness: QuantityLike | None = None,
         name: str = "",
     ) -> Self:
         """Return the nozzle that delivers `thrust` at `ambient`: sugar for ``Nozzle(..., thrust=..., sizing_ambient=...)``.
@@ -383,7 +359,7 @@ class Nozzle(Calculation):
             The chamber upstream.
         thrust, ambient : quantity
             Thrust [N], and the surroundings at which it is asked for.
-        area_ratio, exit_pressure, flow, freeze_at, exponent, discharge_coefficient, name
+        area_ratio, exit_pressure, flow, freeze_at, exponent, discharge_coefficient, contour, wall_thickness, name
             As for `Nozzle`.
 
         Raises
@@ -398,6 +374,8 @@ class Nozzle(Calculation):
             "freeze_at": freeze_at,
             "exponent": exponent,
             "discharge_coefficient": None if discharge_coefficient == 1.0 else discharge_coefficient,
+            "contour": contour,
+            "wall_thickness": wall_thickness,
             "name": name or None,
         }
         named: dict[str, Any] = {key: value for key, value in chosen.items() if value is not None}
@@ -419,7 +397,7 @@ class Nozzle(Calculation):
         return self._state("exit", "exit")
 
     def _state(self, station: str, attribute: str) -> State:
-        return self.lazily(attribute, lambda: _state_of(station, getattr(self.held, attribute)))
+        return self.lazily(attribute, lambda: _state_of(station, getattr(self.held, attribute), self.held))
 
     def state_paths(self) -> tuple[str, ...]:
         """Return the dotted names of the states' properties."""
@@ -491,7 +469,7 @@ class Nozzle(Calculation):
                 )
             )
         outcome.raise_for(flow, f"state at {label}")
-        return _state_of(label, flow)
+        return _state_of(label, flow, self.held)
 
     @property
     def stations(self) -> pd.DataFrame:
@@ -511,9 +489,28 @@ class Nozzle(Calculation):
         """Return the states from the injector face, or the reservoir, to the exit."""
         return (*self.chamber.states(), self.inlet, self.throat, self.exit)
 
+    # -- the wall ---------------------------------------------------------------------------------
+
+    @property
+    def wall_flow(self) -> pd.DataFrame:
+        """Flow along the wall (DataFrame by point): x, r, area ratio, wall angle and the state of the core in SI."""
+        return self.lazily("wall_flow", lambda: wall_of_nozzle.flow_frame(self)).copy()
+
+    def export_contour(self, path: str | os.PathLike[str]) -> Path:
+        """Write the contour to a file: .csv (points in metres) or .dxf (true arcs and splines in millimetres, extra ``cad``).
+
+        Parameters
+        ----------
+        path : path
+            Where to; the ending says which form.
+        """
+        return wall_of_nozzle.export(self, path)
+
     # -- display -----------------------------------------------------------------------------------
 
     def _shown_input(self, name: str, value: Any) -> Any:
+        if name == "contour":
+            return wall_of_nozzle.contour_frame(self)
         return units.quantity(value, "Pa") if name == "sizing_ambient" else value
 
     def input_text(self, name: str) -> str:
@@ -521,8 +518,14 @@ class Nozzle(Calculation):
         value = self._values[name]
         return str(getattr(value, "text", value))
 
+    def typed_text(self, name: str) -> str:
+        """Return an input as it was typed; a contour as its line of code."""
+        return repr(self._typed[name]) if name == "contour" else super().typed_text(name)
+
     def shows_input(self, name: str) -> bool:
         """Show what was given, and the flow model always."""
+        if name == "wall_density":
+            return self._values["wall_thickness"] is not None
         always = {"flow", "freeze_at", "exponent", "discharge_coefficient"}
         return name in self._typed or (name in always and self._values[name] is not None)
 
@@ -587,9 +590,10 @@ class Nozzle(Calculation):
         return drawings.nozzle_figures(self, system)
 
 
-def _state_of(station: str, flow: Any) -> State:
+def _state_of(station: str, flow: Any, expansion: stage.Expansion) -> State:
     values = {name: float(getattr(flow, name)[0]) for name in STATE_FIELDS if getattr(flow, name, None) is not None}
+    condensed = expansion.condensed_mass_fraction(flow)
+    if condensed is not None:
+        values["condensed_mass_fraction"] = condensed
     values = {name: value for name, value in values.items() if np.isfinite(value)}
-    if values.get("condensed_mass_fraction") == 0.0:
-        del values["condensed_mass_fraction"]
-    return State(station, values, {"condensed_mass_fraction": "the gas holds no condensed species"})
+    return State(station, values, {"condensed_mass_fraction": "only gases are counted (condensed=True on the case changes that)"})

@@ -3,22 +3,29 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from propkit import quantities, units
 from propkit.chain import performance as stage
 from propkit.errors import Problem
+from propkit.model import losses as bookkeeping
+from propkit.model import separation as criteria
 from propkit.model import sheet
 from propkit.model.ambient import Ambient, read_ambient
 from propkit.model.base import Calculation, Outcome
-from propkit.model.declare import CustomInput, NumberResult, QuantityResult
+from propkit.model.declare import Bounds, CustomInput, NumberResult, QuantityInput, QuantityResult
 from propkit.model.doubts import Assumption, Doubt
+from propkit.model.ideal import IdealPerformance, ideal_of
+from propkit.model.losses import read_losses
 from propkit.model.nozzle import Nozzle, read_nozzle
-from propkit.physics import atmosphere, stoichiometry, thrust, waves
+from propkit.physics import atmosphere, balances, thrust
 from propkit.report import Section, UnitSystem
 from propkit.series import Axis, Figure, Line, Mark, Series
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 
 class Performance(Calculation):
@@ -30,6 +37,13 @@ class Performance(Calculation):
         The nozzle.
     ambient : str or quantity
         ``"sea level"``, ``"vacuum"``, an absolute pressure, or a geometric altitude such as ``"12 km"``.
+    losses : mapping, optional
+        What is lost beside the divergence of the contour and the c* efficiency of the chamber, by name (``"energy release"``,
+        ``"kinetics"``, ``"boundary layer"``, ``"two-phase"``): the ratio of specific impulse after to before the loss at this
+        ambient pressure (``0.985``), a decrement (``"3 s"``), ``"estimate"``, or a dict with ``ratio`` or ``decrement`` and
+        ``source``. None by default.
+    minimum_pressure : quantity, optional
+        Lowest chamber pressure [Pa] at which the chamber is known to run; a lower one is refused.
     name : str
         Title of the sheet.
 
@@ -46,6 +60,10 @@ class Performance(Calculation):
 
     nozzle: CustomInput = CustomInput(doc="the nozzle", reader=read_nozzle, kw_only=False, quantity="name")
     ambient: CustomInput = CustomInput(doc="surroundings: sea level, vacuum, a pressure or an altitude", reader=read_ambient)
+    losses: CustomInput = CustomInput(doc="losses by name: Isp ratio, decrement or estimate", default=None, reader=read_losses)
+    minimum_pressure: QuantityInput = QuantityInput(
+        doc="lowest chamber pressure at which the chamber runs", default=None, bounds=Bounds(above=0.0, at_most=1e8)
+    )
 
     thrust = QuantityResult(relation="thrust", source="conservation")
     specific_impulse = QuantityResult(relation="specific_impulse", source="definition")
@@ -62,10 +80,17 @@ class Performance(Calculation):
     def _check(self, bad: set[str]) -> list[Problem]:
         if bad & {"nozzle", "ambient"}:
             return []
-        ambient, pressure = self._values["ambient"].pressure, self._values["nozzle"].chamber.si("stagnation_pressure")
+        chamber = self._values["nozzle"].chamber
+        ambient, pressure = self._values["ambient"].pressure, chamber.si("stagnation_pressure")
+        lowest, quoted = self._values["minimum_pressure"], chamber.si("pressure")
+        problems = []
+        if lowest is not None and quoted < lowest:
+            hint = "Below its minimum pressure the chamber is not known to run: raise the pressure, or state another minimum."
+            problems.append(Problem("chamber.pressure", f"{quoted:g} Pa", f"at least the minimum_pressure of {lowest:g} Pa", hint))
         if ambient < pressure:
-            return []
+            return problems
         return [
+            *problems,
             Problem(
                 "ambient",
                 f"{ambient:g} Pa",
@@ -77,6 +102,8 @@ class Performance(Calculation):
     def _calculate(self) -> Outcome:
         nozzle: Nozzle = self._values["nozzle"]
         ambient: Ambient = self._values["ambient"]
+        divergence = nozzle.si("divergence_factor") if nozzle.has("divergence_factor") else 1.0
+        resolved = bookkeeping.resolve(self._values["losses"] or bookkeeping.Requests(), nozzle, ambient.pressure)
         arrays = stage.deliver(
             mass_flow=nozzle.si("mass_flow"),
             exit_velocity=nozzle.exit.si("velocity"),
@@ -86,16 +113,20 @@ class Performance(Calculation):
             stagnation_pressure=nozzle.chamber.si("stagnation_pressure"),
             ambient=ambient.pressure,
             cstar_efficiency=nozzle.chamber.si("cstar_efficiency"),
+            divergence_factor=divergence,
+            losses=resolved.ratios,
         )
         results = {name: float(getattr(arrays, name)) for name in stage.Delivery.__slots__}
-        results["mass_flow"] = nozzle.si("mass_flow")
+        if "energy release" not in resolved.ratios:
+            results["mass_flow"] = nozzle.si("mass_flow")
         results["ambient"] = ambient.pressure
         absent = {}
         case = nozzle.chamber.case_or_none
         if case is not None and case.has("mixture_ratio"):
             ratio = case.si("mixture_ratio")
-            results["oxidizer_mass_flow"] = float(stoichiometry.mix(ratio, results["mass_flow"], 0.0))
-            results["fuel_mass_flow"] = float(stoichiometry.mix(ratio, 0.0, results["mass_flow"]))
+            flow, added = results["mass_flow"], case.additive_fraction
+            results["oxidizer_mass_flow"] = float(balances.oxidizer_mass_flow(flow, ratio, added))
+            results["fuel_mass_flow"] = float(balances.fuel_mass_flow(flow, ratio, added))
         else:
             absent["oxidizer_mass_flow"] = absent["fuel_mass_flow"] = (
                 "the gas has no mixture ratio: it is not made from an oxidizer and a fuel"
@@ -106,42 +137,63 @@ class Performance(Calculation):
             )
         else:
             absent["density_impulse"] = "the bulk density of the propellants is not known"
-        return Outcome(results, absent, tuple(self._doubts(results, nozzle, ambient.pressure)))
+        return Outcome(results, absent, tuple(self._doubts(results, nozzle, ambient.pressure, resolved)), resolved)
 
-    def _doubts(self, results: dict[str, float], nozzle: Nozzle, ambient: float) -> Iterator[Doubt]:
-        exit_state = nozzle.exit
+    def _doubts(
+        self, results: dict[str, float], nozzle: Nozzle, ambient: float, resolved: bookkeeping.Resolved
+    ) -> Iterator[Doubt]:
         if results["thrust"] < 0.0:
             yield Doubt(
                 "The thrust is negative: the surroundings push harder than the jet; the nozzle cannot run like this.",
                 code="negative-thrust",
                 about="thrust",
             )
-        shock = 0.0
-        if exit_state.si("mach") > 1.0:
-            shock = exit_state.si("pressure") * float(
-                waves.shock_pressure_ratio(exit_state.si("mach"), exit_state.si("isentropic_exponent"))
-            )
-            if ambient > shock:
-                yield Doubt(
-                    f"The ambient pressure exceeds the {shock / 1e3:.4g} kPa that a normal shock at the lip sustains: the nozzle does not flow full and the value is not delivered.",
-                    code="shock-inside",
-                    about="thrust",
-                )
-        if ambient > 0.0 and exit_state.si("pressure") < self.separation_limit * ambient:
-            yield Doubt(
-                f"Separation is likely: the exit pressure is {exit_state.si('pressure') / ambient:.3g} of the ambient pressure (below about "
-                f"{self.separation_limit:g}, Summerfield et al. 1954). The thrust is the full-flowing value.",
-                code="separation",
-                about="thrust",
-            )
+        yield from criteria.doubts(nozzle, ambient)
+        for name, words in resolved.estimates.items():
+            yield Doubt(f"The {name} loss is an estimate: {words}.", code="estimate", about="specific_impulse")
+        if "energy release" in resolved.ratios and "mass_flow" in nozzle.inputs:
+            text = "The energy release raises the mass flow above the one that the nozzle was sized for; the chamber's cstar_efficiency would size the nozzle with it."
+            yield Doubt(text, code="mass-flow-raised", about="mass_flow")
 
-    separation_limit = 0.4
-    """Exit pressure over ambient pressure below which separation is to be expected (Summerfield et al. 1954: 0.4)."""
+    # -- ideal and delivered ----------------------------------------------------------------------
+
+    @property
+    def resolved_losses(self) -> bookkeeping.Resolved:
+        """The losses asked for as ratios, with sources and estimate marks."""
+        return self._outcome.held  # type: ignore[no-any-return]
 
     @property
     def delivered_velocity(self) -> float:
-        """Delivered velocity at the exit [m/s]: the ideal one times the c* efficiency."""
-        return float(self.nozzle.exit.si("velocity") * self.nozzle.chamber.si("cstar_efficiency"))
+        """Delivered axial velocity at the exit [m/s]: what the thrust leaves after the pressure term, over the mass flow."""
+        push = (self.nozzle.exit.si("pressure") - self.si("ambient")) * self.nozzle.si("exit_area")
+        return float((self.si("thrust") - push) / self.si("mass_flow"))
+
+    @property
+    def velocity_efficiency(self) -> float:
+        """Delivered over ideal velocity at the exit [1]."""
+        return self.delivered_velocity / float(self.nozzle.exit.si("velocity"))
+
+    @property
+    def ideal(self) -> IdealPerformance:
+        """The loss-free values of the same nozzle: no c* efficiency, no divergence, no losses."""
+        return self.lazily("ideal", lambda: ideal_of(self))
+
+    @property
+    def ledger(self) -> pd.DataFrame:
+        """Losses from ideal to delivered in their order (DataFrame by loss): ratio, Isp lost, before and after [s], source."""
+        return bookkeeping.frame(self)
+
+    # -- separation and operation -----------------------------------------------------------------
+
+    @property
+    def separation(self) -> pd.DataFrame:
+        """Three separation criteria side by side at the ambient pressure (DataFrame by criterion, SI)."""
+        return self.lazily("separation", lambda: criteria.frame(self)).copy()
+
+    @property
+    def thrust_separated(self) -> Any:
+        """Estimate of the thrust of the separated nozzle: the middle of what three criteria give."""
+        return units.quantity(self.lazily("thrust_separated", lambda: criteria.separated_thrust(self)), "N")
 
     @property
     def chamber(self) -> Any:
@@ -154,11 +206,17 @@ class Performance(Calculation):
         return self.nozzle.chamber.case
 
     def _shown_input(self, name: str, value: Any) -> Any:
+        if name == "losses":
+            return dict(self.resolved_losses.ratios)
         return units.quantity(value, "Pa") if name == "ambient" else value
 
     def input_text(self, name: str) -> str:
-        """Return the ambient condition in words."""
-        return str(self._values["ambient"].text)
+        """Return the ambient condition or the losses in words."""
+        return str(self._values[name].text)
+
+    def typed_text(self, name: str) -> str:
+        """Return an input as it was typed; losses as one line."""
+        return self.input_text(name) if name == "losses" else super().typed_text(name)
 
     def subtitle(self) -> str:
         """Return the nozzle and the ambient condition."""

@@ -10,8 +10,12 @@ from propkit.errors import InputError, RecordError
 
 CLASSES = {
     "PropellantCase": "propkit.model.propellant_case",
+    "MonopropellantCase": "propkit.model.monopropellant_case",
+    "ColdGasCase": "propkit.model.cold_gas_case",
     "Chamber": "propkit.model.chamber",
     "GasChamber": "propkit.model.chamber",
+    "Cone": "propkit.model.contour",
+    "Bell": "propkit.model.contour",
     "Nozzle": "propkit.model.nozzle",
     "Performance": "propkit.model.performance",
     "Propellant": "propkit.model.propellant",

@@ -7,7 +7,9 @@ from typing import Any
 
 import numpy as np
 
+from propkit.chain.case import AMOUNTS
 from propkit.constants import GAS_CONSTANT
+from propkit.data.atomic_weights import ATOMIC_WEIGHTS
 from propkit.model.conditions import condition, element_conditions
 from propkit.physics import stoichiometry
 from propkit.report import Step
@@ -23,12 +25,16 @@ SIZED = {
 def key_for(link: Any, name: str) -> str:
     """Return the key of the relation that gives a result of this recipe, or of its conditions."""
     entry = link.declared_results.get(name)
+    if link.kind == "case":
+        return str(link.relation_of(name))
     if link.kind == "nozzle":
         return _nozzle_key(link, name) or (entry.relation if entry is not None else "")
     if entry is None:
         return name
     if name == "mass_flow" and link.kind == "performance":
         return key_for(link.nozzle, name) or "mass_flow"
+    if name in ("oxidizer_mass_flow", "fuel_mass_flow") and link.nozzle.chamber.case_or_none.additive_fraction:
+        return f"{name}_beside_additives"
     if name.endswith("_vacuum"):
         return name.removesuffix("_vacuum")
     return str(entry.relation)
@@ -46,6 +52,8 @@ def _nozzle_key(nozzle: Any, name: str) -> str:
         if "mass_flow" in given:
             return "throat_area_for_mass_flow"
         return "throat_area_for_thrust" if "thrust" in given else "throat_area_of_exit"
+    if name == "divergence_factor" and nozzle._values["contour"] is not None:
+        return str(nozzle._values["contour"].divergence_relation)
     if name == "exit_area":
         return "circle_area" if "exit_diameter" in given else "exit_area_of_ratio"
     if name == "area_ratio":
@@ -64,9 +72,15 @@ def _case(case: Any, key: str, name: str) -> dict[str, float]:
     held = case.held
     found = {
         entry: case.si(entry)
-        for entry in ("mixture_ratio", "equivalence_ratio", "stoichiometric_mixture_ratio")
+        for entry in (*AMOUNTS, "stoichiometric_mixture_ratio")
         if case.has(entry)
     }
+    if name == "oxygen_balance":
+        found["net_valence"] = stoichiometry.net_valence(dict(zip(held.mixture.symbols, held.mixture.atoms[0].tolist(), strict=True)))
+        found["oxygen_mass"] = ATOMIC_WEIGHTS["O"] * 1e-3
+    if held.propellant is not None:
+        found["molar_enthalpy"] = float(held.propellant.enthalpy) * case._values[case.roles[0]].row.molar_mass
+        found["molar_mass"] = case._values[case.roles[0]].row.molar_mass
     for role in ("oxidizer", "fuel"):
         stream = getattr(held, role)
         if stream is not None:
@@ -92,6 +106,9 @@ def _chamber(chamber: Any, key: str, name: str) -> dict[str, float]:
     )
     found = {entry: chamber.si(entry) for entry in names if chamber.has(entry)}
     found["stagnation_temperature"] = found["temperature"]
+    if name == "stay_time":
+        flux = chamber.si("stagnation_pressure") / (chamber.si("cstar_efficiency") * chamber.si("characteristic_velocity"))
+        found |= {"volume": chamber.si("characteristic_length"), "mass_flow": flux}
     return found
 
 
@@ -121,6 +138,9 @@ def _nozzle(nozzle: Any, key: str, name: str) -> dict[str, float]:
     if key == "throat_area_for_thrust":
         found["thrust"] = nozzle.si("thrust")
         found["thrust_coefficient"] = nozzle.si("thrust") / (found["stagnation_pressure"] * found["throat_area"])
+    contour = nozzle._values["contour"]
+    if name == "divergence_factor" and contour is not None:
+        found |= contour.divergence_terms(nozzle.geometry.divergent, nozzle.si("throat_diameter") / 2.0)
     return found
 
 
@@ -143,6 +163,7 @@ def _performance(performance: Any, key: str, name: str) -> dict[str, float]:
     case = nozzle.chamber.case_or_none
     if case is not None:
         found |= {entry: case.si(entry) for entry in ("mixture_ratio", "bulk_density") if case.has(entry)}
+        found["additive_fraction"] = case.additive_fraction
     return found
 
 
@@ -164,7 +185,7 @@ def supporting(link: Any, name: str) -> Iterator[tuple[str, str, Mapping[str, fl
             {
                 "exit_velocity": flow.exit.si("velocity"),
                 "cstar_efficiency": flow.chamber.si("cstar_efficiency"),
-                "divergence_factor": 1.0,
+                "divergence_factor": flow.si("divergence_factor") if flow.has("divergence_factor") else 1.0,
             },
         )
 
@@ -183,6 +204,7 @@ def reservoir_of(nozzle: Any) -> dict[str, float]:
 def conditions(link: Any, name: str) -> Iterator[Step]:
     """Yield the conditions that the iterated states behind a result satisfy."""
     if link.kind == "case":
+        yield from link.conditions(name)
         return
     if link.kind == "chamber":
         if link.upstream is not None:

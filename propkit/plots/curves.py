@@ -184,8 +184,10 @@ def _profile(nozzle: Any) -> tuple[list[float], dict[str, Any]]:
     throat, lip = nozzle.si("throat_diameter") / 2.0, nozzle.si("exit_diameter") / 2.0
     contraction = nozzle.chamber.si("contraction_ratio")
     chamber = throat * math.sqrt(contraction if math.isfinite(contraction) else 6.0)
-    wall = np.array(drawings.schematic_wall(throat, lip, chamber))
-    places = np.unique(np.concatenate([np.linspace(wall[0, 0], 0.0, 12), wall[-1, 0] * np.linspace(0.0, 1.0, 22) ** 1.5]))
+    real = nozzle.has("contour")
+    wall = np.array(drawings.contour_wall(nozzle) if real else drawings.schematic_wall(throat, lip, chamber))
+    before_throat = np.linspace(wall[0, 0], 0.0, 12) if wall[0, 0] < 0.0 else np.zeros(1)
+    places = np.unique(np.concatenate([before_throat, wall[-1, 0] * np.linspace(0.0, 1.0, 22) ** 1.5]))
     radius = np.interp(places, wall[:, 0], wall[:, 1])
     ratio = np.where(places == 0.0, 1.0, np.maximum((radius / throat) ** 2 / nozzle.si("discharge_coefficient"), 1.0))
     before = places < 0.0
