@@ -61,6 +61,7 @@ def _parser() -> argparse.ArgumentParser:
     memo.add_argument("notebook", type=Path, metavar="NOTEBOOK")
     memo.add_argument("--out", type=Path, metavar="DIR", help="folder to write to (default: beside the notebook)")
     memo.add_argument("--as-is", action="store_true", help="take an already executed notebook; execute nothing")
+    memo.add_argument("--crate", action="store_true", help="write each record as an RO-Crate (.zip) too, with the notebook inside")
     memo.add_argument("--timeout", type=int, default=600, metavar="S", help="seconds that one cell may take (default %(default)s)")
     memo.set_defaults(command=_memo)
 
@@ -96,7 +97,7 @@ def _parser() -> argparse.ArgumentParser:
 def _memo(options: argparse.Namespace) -> int:
     from propkit.memo.notebook import write_memo
 
-    outcome = write_memo(options.notebook, options.out, execute=not options.as_is, timeout=options.timeout, say=print)
+    outcome = write_memo(options.notebook, options.out, execute=not options.as_is, timeout=options.timeout, crate=options.crate, say=print)
     for path in outcome.written:
         print(f"wrote {path}")
     if outcome.error:
@@ -112,7 +113,9 @@ def _verify(options: argparse.Namespace) -> int:
 
     results = [verify_file(file) for file in options.files]
     if options.rerun:
-        results = [_rerun(result, options) for result in results]
+        from propkit.memo.rerun import rerun
+
+        results = [rerun(result, say=_tell) for result in results]
     if options.json:
         print(json.dumps([result.to_dict() for result in results], indent=1, ensure_ascii=False))
     else:
@@ -122,10 +125,8 @@ def _verify(options: argparse.Namespace) -> int:
     return max(result.exit_code for result in results)
 
 
-def _rerun(result: object, options: argparse.Namespace) -> object:
-    from propkit.memo.rerun import rerun
-
-    return rerun(result, say=lambda text: print(text, file=sys.stderr))
+def _tell(text: str) -> None:
+    print(text, file=sys.stderr)
 
 
 def _compare(options: argparse.Namespace) -> int:

@@ -15,6 +15,7 @@ from propkit import quantities, units
 from propkit.errors import MissingExtraError
 from propkit.memo import execute as execution
 from propkit.memo.blocks import blocks_of, title_of, without_title
+from propkit.memo.crate import record_crate
 from propkit.memo.notebook_pdf import notebook_pdf
 from propkit.memo.page import Bound, notebook_page
 from propkit.record.containers import Contents, records_of
@@ -37,6 +38,7 @@ def write_memo(
     *,
     execute: bool = True,
     timeout: int = 600,
+    crate: bool = False,
     say: Callable[[str], None] = print,
 ) -> Written:
     """Execute a notebook and write the executed notebook, its HTML and PDF memos and the records it carries.
@@ -51,6 +53,8 @@ def write_memo(
         False takes an already executed notebook as it is.
     timeout : int
         Seconds that one cell may take.
+    crate : bool
+        Whether each record is written as an RO-Crate too, with the notebook inside.
     say : callable
         Told what happens.
 
@@ -71,11 +75,11 @@ def write_memo(
     if execute:
         say(f"executing {notebook_path.name}: this runs its code, in this Python")
         outcome.error = execution.execute(notebook, notebook_path.resolve().parent, timeout, say)
-        data = _notebook_bytes(notebook)
+        data = notebook_bytes(notebook)
         suffix = ".partial.ipynb" if outcome.error and folder.resolve() == notebook_path.resolve().parent else ".ipynb"
         outcome.written.append(write_atomically(folder / f"{notebook_path.stem}{suffix}", data))
     else:
-        data = _notebook_bytes(notebook)
+        data = notebook_bytes(notebook)
     contents = records_of(".ipynb", data, notebook_path.name)
     bound = _bind(contents)
     blocks = list(blocks_of(notebook))
@@ -85,7 +89,11 @@ def write_memo(
     _write_pdf(folder / f"{notebook_path.stem}.pdf", title, notebook_path.name, without_title(blocks), bound, outcome, say)
     taken: set[str] = set()
     for entry in bound:
-        outcome.written.append(entry.record.save(folder / f"{_file_name(entry.record, taken)}.record.json"))
+        name = _file_name(entry.record, taken)
+        outcome.written.append(entry.record.save(folder / f"{name}.record.json"))
+        if crate:
+            extra = {notebook_path.name: ("The executed notebook", data)}
+            outcome.written.append(write_atomically(folder / f"{name}.zip", record_crate(entry.record, extra)))
     for entry in bound:
         say(f"{entry.record.title}: {entry.headline} ({entry.verification.status})")
     return outcome
@@ -98,7 +106,8 @@ def _write_pdf(path: Path, title: str, source: str, blocks: list[Any], bound: li
         say(f"no PDF: {error}")
 
 
-def _notebook_bytes(notebook: Any) -> bytes:
+def notebook_bytes(notebook: Any) -> bytes:
+    """Return a notebook as the bytes of its file."""
     from nbformat.v4.rwbase import split_lines
 
     divided = split_lines(copy.deepcopy(notebook))

@@ -9,7 +9,8 @@ from typing import Any
 
 _INLINE = {"b": "b", "strong": "b", "em": "i", "i": "i", "code": "c", "sub": "_", "sup": "^", "small": "q", "var": "i", "cite": "i", "kbd": "c", "samp": "c"}
 _BLOCKS = frozenset(("p", "div", "section", "header", "main", "article", "aside", "figure", "figcaption", "blockquote", "li", "dt", "dd", "dl", "caption", "details", "summary"))
-_GROUPS = ("figures", "propkit-pic")
+_SIDE_BY_SIDE = {"figures": False, "propkit-body": False, "propkit-answers": True, "answers": True}
+"""Class of an element whose children stand side by side -> whether its columns are only as wide as they need."""
 _DATA = re.compile(r"data:image/(png|jpeg|gif|webp|svg\+xml);base64,(.*)", re.DOTALL)
 _SIZE = re.compile(r'<svg[^>]*?\bwidth="([0-9.]+)(?:px|pt)?"[^>]*?\bheight="([0-9.]+)(?:px|pt)?"', re.DOTALL)
 _FONT = re.compile(r"""font-family\s*([:=])\s*(["'])?[^"';>]*(["'])?""")
@@ -34,13 +35,15 @@ class _Reader(HTMLParser):
         self.cell: Block | None = None
         self.heading = 0
         self.printed = False
-        self.groups: list[int] = []
+        self.starts: list[int] = []
 
     # -- the walk -------------------------------------------------------------------------------
 
     def handle_starttag(self, tag: str, attributes: list[tuple[str, str | None]]) -> None:
         known = {name: value or "" for name, value in attributes}
         kind = known.get("class", "")
+        if tag == "b" and self.classes and self.classes[-1].endswith("answer"):
+            self._text("\n")
         if tag in _INLINE or tag == "span":
             self.styles.append(_INLINE.get(tag, "q" if _quiet(kind) else ""))
         elif tag == "br":
@@ -74,8 +77,7 @@ class _Reader(HTMLParser):
         elif tag in _BLOCKS:
             self._flush()
             self.classes.append("caption" if tag == "caption" else kind)
-            if kind in _GROUPS:
-                self.groups.append(len(self.blocks))
+            self.starts.append(len(self.blocks))
 
     def handle_startendtag(self, tag: str, attributes: list[tuple[str, str | None]]) -> None:
         self.handle_starttag(tag, attributes)
@@ -109,17 +111,21 @@ class _Reader(HTMLParser):
             self.heading = 0
         elif tag in _BLOCKS:
             self._flush()
-            if self.classes and self.classes.pop() in _GROUPS and self.groups:
-                self._gather(self.groups.pop())
+            if self.classes:
+                self._close_block(self.classes.pop(), self.starts.pop())
 
     def handle_data(self, data: str) -> None:
         self._text(data if self.printed else re.sub(r"[ \t\r\n]+", " ", data))
 
-    def _gather(self, start: int) -> None:
-        """Set the pictures since `start` side by side."""
+    def _close_block(self, kind: str, start: int) -> None:
+        """Gather what an element held: a column where its parent sets columns, or the columns that it sets itself."""
         inside = self.blocks[start:]
-        if len(inside) > 1 and all(block["kind"] == "picture" for block in inside):
-            self.blocks[start:] = [{"kind": "pictures", "items": inside}]
+        outer, own = _sides(self.classes[-1]) if self.classes else None, _sides(kind)
+        if inside and outer is not None:
+            self.blocks[start:] = [{"kind": "column", "blocks": inside}]
+        elif inside and own is not None:
+            columns = [block["blocks"] if block["kind"] == "column" else [block] for block in inside]
+            self.blocks[start:] = [{"kind": "columns", "narrow": own, "items": columns}]
 
     # -- what is collected ----------------------------------------------------------------------
 
@@ -196,6 +202,11 @@ class _Reader(HTMLParser):
             self.blocks.append({"kind": "text", "runs": runs, "class": " ".join(part for part in self.classes if part)})
 
 
+def _sides(kind: str) -> bool | None:
+    """Return whether the columns that an element of these classes sets are narrow; None where it sets none."""
+    return next((_SIDE_BY_SIDE[part] for part in kind.split() if part in _SIDE_BY_SIDE), None)
+
+
 def _quiet(kind: str) -> bool:
     return any(part in ("quiet", "propkit-u", "propkit-sub", "propkit-kind") for part in kind.split())
 
@@ -241,10 +252,16 @@ def typeset_blocks(markup: str) -> list[Block]:
     reader.feed(markup)
     reader.close()
     reader._flush()
-    for block in reader.blocks:
+    _square_all(reader.blocks)
+    return reader.blocks
+
+
+def _square_all(blocks: list[Block]) -> None:
+    for block in blocks:
         if block["kind"] == "table":
             _square(block)
-    return reader.blocks
+        for inside in block.get("items", ()) if block["kind"] in ("columns", "list") else ():
+            _square_all(inside)
 
 
 def _square(table: Block) -> None:
@@ -262,3 +279,18 @@ def _square(table: Block) -> None:
             if cell["number"]:
                 table["numbers"][place] = True
             place += cell["span"]
+    for place in range(widest):
+        if table["numbers"][place] and all(sum(cell["span"] for cell in row) == len(row) for row in table["rows"]):
+            _align([row[place]["runs"] for row in table["rows"]])
+
+
+def _align(column: list[list[Run]]) -> None:
+    """Pad plain numbers behind with figure spaces, so that right alignment puts their decimal signs under each other."""
+    texts = ["".join(run.get("t", "") for run in runs) for runs in column]
+    if any("\u2007" in text or "×" in text for text in texts):
+        return
+    tails = [len(text.partition(".")[2]) if "." in text else -1 for text in texts]
+    widest = max(tails, default=-1)
+    for runs, tail in zip(column, tails, strict=True):
+        if runs and widest >= 0 and tail < widest:
+            runs.append({"t": ("\u2008" if tail < 0 else "") + "\u2007" * (widest - max(tail, 0)), "s": ""})
