@@ -36,15 +36,16 @@ def render(report: Report) -> str:
     """Return the report as an HTML fragment."""
     relations = [step for step in report.steps if step.left is None]
     conditions = [step for step in report.steps if step.left is not None]
+    beside = _drawn_section(report)
     parts = [
         f"<style>{STYLE}</style>",
         _strip(report),
         _answers(report.headline),
         _doubts(report),
-        _body(report),
+        _body(report, beside),
         *(_step(step) for step in relations),
         conditions_html(conditions),
-        _sections(report.sections),
+        _sections([section for section in report.sections if section is not beside]),
         _cautions(report.cautions),
         _legend(report),
     ]
@@ -63,10 +64,14 @@ def _answers(rows: Iterable[Row]) -> str:
         sign = f" {html_symbol(row.symbol)}" if row.symbol else ""
         doubt = " <span class='propkit-flag' title='see the warning'>⚠</span>" if row.doubts else ""
         shown.append(
-            f"<p class='propkit-answer'><span>{escape(row.label)}{sign}</span> <b>{value_html(row)}{uncertainty_html(row)}</b>"
+            f"<p class='propkit-answer'><span>{escape(row.label)}{sign}</span> <b>{value_html(row)}{_sure(row)}</b>"
             f" <small class='propkit-u'>{unit_html(row.unit)}</small>{doubt}</p>"
         )
     return f"<div class='propkit-answers'>{''.join(shown)}</div>" if shown else ""
+
+
+def _sure(row: Row) -> str:
+    return f"<small>{uncertainty_html(row)}</small>" if row.uncertainty is not None else ""
 
 
 def _doubts(report: Report) -> str:
@@ -80,7 +85,22 @@ def _doubts(report: Report) -> str:
     return "".join(doubt_html(doubt, ", ".join(labels)) for doubt, labels in about.items())
 
 
-def _body(report: Report) -> str:
+def _drawn_section(report: Report) -> Section | None:
+    """Return the table of one composition that is drawn as well: its bars stand in the table, which takes the drawing's place."""
+    drawn = {figure.name for figure in report.figures}
+    for section in report.sections:
+        table = section.table
+        if (
+            table is not None
+            and cells.is_species(table.index_label)
+            and len(table.columns) == 1
+            and table.name in drawn
+        ):
+            return section
+    return None
+
+
+def _body(report: Report, beside: Section | None) -> str:
     """Return what was given on the left, what follows on the right, the drawings beside them or under the shorter one."""
     answered = {row.name for row in report.headline}
     rest = [row for row in report.results if row.name not in answered]
@@ -89,8 +109,12 @@ def _body(report: Report) -> str:
         columns.append(f"<div class='propkit-left'>{rows_html(report.given, 'Given')}</div>")
     if rest:
         columns.append(f"<div class='propkit-right'>{rows_html(rest, 'Results')}</div>")
-    if report.figures:
-        columns.append(f"<div class='propkit-pic'>{''.join(_picture(figure) for figure in report.figures)}</div>")
+    replaced = beside.table.name if beside is not None and beside.table is not None else ""
+    pictures = [_picture(figure) for figure in report.figures if figure.name != replaced]
+    if beside is not None:
+        pictures.append(_section(beside))
+    if pictures:
+        columns.append(f"<div class='propkit-pic'>{''.join(pictures)}</div>")
     if not columns:
         return ""
     form = ["propkit-body"]

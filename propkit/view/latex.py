@@ -62,15 +62,16 @@ def _value(row: Row) -> str:
 
 
 def _rows(rows: Iterable[Row]) -> str:
-    lines = [r"\begin{tabular}{clrll}"]
+    lines = [r"\begin{tabular}{cllrl}"]
     for row in rows:
         sign = f"${row.symbol}$" if row.symbol else ""
-        doubts = "".join(rf"; \emph{{{escaped(doubt)}}}" for doubt in row.doubts)
+        typed = f" ({escaped(row.typed)})" if cells.shows_typed(row) else ""
         lines.append(
-            rf"{_MARKS[row.kind]} & {escaped(row.label)}{doubts} {sign} & {_value(row)} & {unit_text(row.unit)} \\"
+            rf"{_MARKS[row.kind]} & {escaped(row.label)}{typed} & {sign} & {_value(row)} & {unit_text(row.unit)} \\"
         )
-    lines.append(r"\end{tabular}")
-    return "\n".join(lines).replace("{clrll}", "{clrl}")
+        for doubt in row.doubts:
+            lines.append(rf"& \multicolumn{{4}}{{p{{0.8\linewidth}}}}{{\emph{{{escaped(doubt)}}}}} \\")
+    return "\n".join([*lines, r"\end{tabular}"])
 
 
 def _section(section: Section) -> str:

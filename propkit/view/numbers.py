@@ -54,6 +54,20 @@ def split(text: str) -> tuple[str, str]:
     return text, ""
 
 
+def lined_up(texts: Iterable[str]) -> list[str]:
+    """Return plain numbers padded to one width, their decimal signs in one column of a terminal."""
+    cut = [plain_split(text) for text in texts]
+    before = max((len(head) for head, _ in cut), default=0)
+    behind = max((len(tail) for _, tail in cut), default=0)
+    return [f"{head:>{before}}{tail:<{behind}}" for head, tail in cut]
+
+
+def plain_split(text: str) -> tuple[str, str]:
+    """Return a plain number cut before its decimal sign or its exponent."""
+    place = next((k for k, letter in enumerate(text) if letter in ".e"), len(text))
+    return text[:place], text[place:]
+
+
 def room(texts: Iterable[str]) -> int:
     """Return the width, in digits, that the parts behind the decimal sign need at most."""
     return max((math.ceil(sum(_WIDTHS.get(letter, 1.0) for letter in split(text)[1])) for text in texts), default=0)
@@ -62,7 +76,8 @@ def room(texts: Iterable[str]) -> int:
 def latex(value: float, digits: int) -> str:
     r"""Return a number in LaTeX: ``2.903 \times 10^{-5}``."""
     text = rounded(value, digits)
+    if not text[-1:].isdigit():
+        return rf"\text{{{text}}}"
     mantissa, letter, power = text.partition("e")
-    if letter and power.lstrip("-").isdigit():
-        return rf"{mantissa} \times 10^{{{power}}}"
-    return rf"\text{{{text}}}" if not text[-1:].isdigit() else text
+    shown = grouped(mantissa).replace(THIN, r"\,").replace(MINUS, "-")
+    return rf"{shown} \times 10^{{{power}}}" if letter else shown

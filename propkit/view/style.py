@@ -37,11 +37,12 @@ _CSS = f"""
 .propkit-sub,.propkit-note,.propkit-legend{{color:var(--pk-quiet);font-size:12px;overflow-wrap:anywhere}}
 .propkit-answers{{display:flex;flex-wrap:wrap;gap:4px 40px;padding:10px 2px 9px}}
 .propkit-answer>b{{font-size:26px;font-weight:500;letter-spacing:-.01em}}
+.propkit-answer>b small{{font-size:17px;font-weight:400}}
 .propkit-answer>span:first-child{{display:block;color:var(--pk-quiet);font-size:12px}}
 .propkit-flag{{color:var(--pk-doubt)}}
-.propkit-body{{display:grid;grid-template:'left right pic' auto/minmax(0,.95fr) minmax(0,1.1fr) minmax(0,340px);gap:2px 32px;border-top:1px solid var(--pk-line);padding-top:5px;align-items:start}}
+.propkit-body{{display:grid;grid-template:'left right pic' auto/minmax(0,.95fr) minmax(0,1.1fr) minmax(0,310px);gap:2px 32px;border-top:1px solid var(--pk-line);padding-top:5px;align-items:start}}
 .propkit-two{{grid-template:'left right' auto 'pic right' 1fr/minmax(0,1fr) minmax(0,1.15fr)}}
-.propkit-picright{{grid-template-columns:minmax(0,1.1fr) minmax(0,1fr) minmax(0,340px)}}
+.propkit-picright{{grid-template-columns:minmax(0,1.1fr) minmax(0,1fr) minmax(0,310px)}}
 .propkit-two.propkit-picright{{grid-template:'left right' auto 'left pic' 1fr/minmax(0,1.1fr) minmax(0,1fr)}}
 .propkit-left{{grid-area:left}}
 .propkit-right{{grid-area:right}}
@@ -71,7 +72,9 @@ _CSS = f"""
 .propkit-sheet .propkit-lines{{margin:0 0 6px;padding:0 0 0 1.1em;list-style:disc}}
 .propkit-lines li{{margin:1px 0;break-inside:avoid}}
 .propkit-full .propkit-lines{{columns:2 330px;column-gap:36px}}
-.propkit-sheet .propkit-bar{{width:20%;padding:0 14px 0 6px;vertical-align:middle}}
+.propkit-sheet .propkit-bar{{width:24%;padding:0 14px 0 6px;vertical-align:middle}}
+.propkit-n:has(+.propkit-bar){{width:1%}}
+.propkit-pic .propkit-bar{{width:45%;padding-right:0}}
 .propkit-bar>span{{display:block;height:8px;background:var(--pk-bar)}}
 .propkit-step{{padding:7px 2px;border-bottom:1px solid color-mix(in srgb,var(--pk-line) 50%,transparent)}}
 .propkit-steptitle{{font-weight:600}}

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
+import math
 import textwrap
 from collections.abc import Iterable
 
-from propkit.report import Report, Row, Section, Step, Table
+from propkit.report import Column, Report, Row, Section, Step, Table
 from propkit.sources import reference
 from propkit.view import cells, numbers
 from propkit.view.symbols import text_species, text_symbol
@@ -20,7 +21,7 @@ def render(report: Report) -> str:
     if report.subtitle:
         lines.append(report.subtitle)
     if report.headline:
-        lines += ["", *_rows(report.headline, bold=True)]
+        lines += ["", *_rows(report.headline)]
     if report.given:
         lines += ["", "Given", *_rows(report.given)]
     shown = {row.name for row in report.headline}
@@ -41,40 +42,43 @@ def render(report: Report) -> str:
     return "\n".join(line.rstrip() for line in lines)
 
 
-def _rows(rows: Iterable[Row], bold: bool = False) -> list[str]:
+def _rows(rows: Iterable[Row]) -> list[str]:
+    """Return rows with decimal signs in line; texts start where the numbers do."""
     listed = list(rows)
-    values = _value_texts(listed)
+    lined = iter(
+        numbers.lined_up(numbers.rounded(row.value, row.digits) for row in listed if isinstance(row.value, int | float))
+    )
     label = max(len(row.label) for row in listed)
-    symbol = max(len(text_symbol(row.symbol)) for row in listed)
-    width = max(len(value) for value in values)
+    symbol = max(_width(text_symbol(row.symbol)) for row in listed)
     lines = []
-    for row, value in zip(listed, values, strict=True):
+    for row in listed:
         typed = f"   ({row.typed})" if cells.shows_typed(row) else ""
         sure = f" ± {numbers.rounded(row.uncertainty, 2)}" if row.uncertainty is not None else ""
-        sign = text_symbol(row.symbol)
+        value = (
+            next(lined)
+            if isinstance(row.value, int | float)
+            else "not available"
+            if row.value is None
+            else str(row.value)
+        )
+        value = f"{value.rstrip()}{sure}" if sure else value
+        sign = _padded(text_symbol(row.symbol), symbol)
         lines.append(
-            f"  {cells.MARKS[row.kind]} {row.label:<{label}}  {sign:<{symbol + _marks(sign)}}  {value:>{width}}{sure} {cells.unit_text(row.unit)}{typed}"
+            f"  {cells.MARKS[row.kind]} {row.label:<{label}}  {sign}  {value} {cells.unit_text(row.unit)}{typed}"
         )
         for doubt in row.doubts:
             lines += _bullets([doubt], "! ", "      ")
     return lines
 
 
-def _marks(text: str) -> int:
-    """Return how many combining marks a text has: they take no room."""
-    return sum(1 for letter in text if 0x300 <= ord(letter) < 0x370)
+def _width(text: str) -> int:
+    """Return how many columns a text takes: combining marks take none."""
+    return sum(1 for letter in text if not 0x300 <= ord(letter) < 0x370)
 
 
-def _value_texts(rows: list[Row]) -> list[str]:
-    texts = []
-    for row in rows:
-        if row.value is None:
-            texts.append("not available")
-        elif isinstance(row.value, str):
-            texts.append(row.value)
-        else:
-            texts.append(numbers.rounded(row.value, row.digits))
-    return texts
+def _padded(text: str, width: int, right: bool = False) -> str:
+    room = " " * (width - _width(text))
+    return room + text if right else text + room
 
 
 def _section(section: Section) -> list[str]:
@@ -89,42 +93,52 @@ def _section(section: Section) -> list[str]:
 
 
 def _table(table: Table) -> list[str]:
-    index = [text_species(entry) if cells.is_species(table.index_label) else entry for entry in table.index]
-    first = [table.index_label, "", *index]
-    blocks = [first]
+    """Return a table, in as many blocks of about equal width as its columns need."""
+    species = cells.is_species(table.index_label)
+    index = [text_species(entry) if species else entry for entry in table.index]
+    first = _block(table.index_label, "", index, False)
+    blocks = []
     for column in table.columns:
-        head = text_symbol(column.symbol) or column.label
-        if cells.is_species(table.index_label) and len(table.columns) > 1:
-            head = column.label
-        body = [
-            "" if value is None else value if isinstance(value, str) else numbers.rounded(value, column.digits)
-            for value in column.values
-        ]
-        blocks.append([head, cells.unit_text(column.unit), *body])
+        head = column.label if species and len(table.columns) > 1 else text_symbol(column.symbol) or column.label
+        blocks.append(_block(head, cells.unit_text(column.unit), _texts(column), cells.numeric(column)))
+    head_rows = [0] if all(not block[1].strip() for block in blocks) else [0, 1]
     lines: list[str] = []
-    start = 1
-    while start < len(blocks) or start == 1:
-        chosen = [0]
-        used = max(map(len, blocks[0])) + 2
-        while start < len(blocks) and (used + max(map(len, blocks[start])) + 2 <= WIDTH or len(chosen) == 1):
-            used += max(map(len, blocks[start])) + 2
-            chosen.append(start)
-            start += 1
-        widths = [max(len(text) - _marks(text) for text in blocks[k]) for k in chosen]
-        for row in range(len(first)):
-            parts = []
-            for k, width in zip(chosen, widths, strict=True):
-                text = blocks[k][row]
-                wide = width + _marks(text)
-                parts.append(
-                    f"{text:<{wide}}" if k == 0 or not cells.numeric(table.columns[k - 1]) else f"{text:>{wide}}"
-                )
-            lines.append("  " + "  ".join(parts))
-        if start >= len(blocks):
-            break
-    if table.note:
-        lines += _bullets([table.note], "")
-    return lines
+    for group in _groups(blocks, WIDTH - len(first[0]) - 4):
+        if lines:
+            lines.append("")
+        for row in (*head_rows, *range(2, len(first))):
+            lines.append("  " + "  ".join(block[row] for block in (first, *group)))
+    return lines + (_bullets([table.note], "") if table.note else [])
+
+
+def _texts(column: Column) -> list[str]:
+    """Return the cells of a column, numbers with their decimal signs in line."""
+    lined = iter(
+        numbers.lined_up(numbers.rounded(v, column.digits) for v in column.values if isinstance(v, int | float))
+    )
+    return [next(lined) if isinstance(v, int | float) else v or "" for v in column.values]
+
+
+def _block(head: str, unit: str, body: list[str], right: bool) -> list[str]:
+    """Return a column of a table with all lines of one width."""
+    width = max(map(_width, (head, unit, *body)))
+    return [_padded(text, width, right) for text in (head, unit, *body)]
+
+
+def _groups(blocks: list[list[str]], room: int) -> list[list[list[str]]]:
+    """Return the columns in groups that fit side by side, the groups about equally full."""
+    total = sum(_width(block[0]) + 2 for block in blocks)
+    target = total / max(1, math.ceil(total / room))
+    groups: list[list[list[str]]] = [[]]
+    used = 0
+    for block in blocks:
+        wide = _width(block[0]) + 2
+        if groups[-1] and (used + wide > room or used >= target):
+            groups.append([])
+            used = 0
+        groups[-1].append(block)
+        used += wide
+    return groups
 
 
 def _step(step: Step) -> list[str]:

@@ -37,6 +37,7 @@ def plain(medium: str, text: str) -> str:
         text = html.unescape(re.sub(r"</?(?:span|b|i|sub|sup)\b[^>]*>", "", text))
         text = re.sub(r"<[^>]*>", " ", text)
     if medium == "latex":
+        text = text.replace("\\,", "")
         text = re.sub(r"(\S+) \\times 10\^\{(-?\d+)\}", r"\1e\2", text)
         text = re.sub(r"\\pm", " ± ", text)
         text = re.sub(r"[$&{}\\]", " ", text)
