@@ -11,7 +11,7 @@ from propkit.bridge.basis import load_basis
 from propkit.chain import outcome, warnings
 from propkit.chain.case import Mixture
 from propkit.constants import GAS_CONSTANT
-from propkit.physics import combustor, equilibrium, expansion, gas_dynamics
+from propkit.physics import combustor, equilibrium, expansion, gas_dynamics, held_gas
 from propkit.physics.arrays import Array, Values, values
 from propkit.physics.equilibrium import EquilibriumState
 from propkit.physics.expansion import FlowState
@@ -29,7 +29,9 @@ class Combustion:
     """Combustion of a batch: the state at the injector face, at the nozzle inlet and brought to rest there.
 
     `inlet` is the static state at the nozzle inlet (that of `stagnation` where the contraction is infinite), `throat` the throat of
-    shifting flow, `characteristic_velocity` the theoretical value [m/s]. `contraction_ratio` is infinite where not given.
+    shifting flow, `characteristic_velocity` the theoretical value [m/s]. `contraction_ratio` is infinite where not given. `watched` has
+    the liquids and solids that a gas-only composition might be supersaturated with; `held` says that the composition is given, not
+    computed: then throat and characteristic velocity are those of frozen flow.
     """
 
     table: SpeciesTable
@@ -42,6 +44,8 @@ class Combustion:
     throat: FlowState
     contraction_ratio: Array
     characteristic_velocity: Array
+    watched: SpeciesTable | None = None
+    held: bool = False
 
     def raise_for_status(self, what: str, index: int = 0) -> None:
         """Raise when a case has no solution."""
@@ -62,6 +66,8 @@ class Combustion:
             name: float(getattr(face, name)[index])
             for name in ("sound_speed", "molar_mass", "isentropic_exponent", "enthalpy", "entropy")
         }
+        if self.table.condensed.any():
+            values_there["condensed_mass_fraction"] = float(condensed_mass_fraction(self.table, face.amounts)[index])
         return values_there
 
     def doubts(self, index: int = 0) -> Iterator[tuple[str, str, str]]:
@@ -73,6 +79,8 @@ class Combustion:
             "the injector face",
             "temperature",
         )
+        face = self.injector.take([index])
+        yield from warnings.supersaturation(self.watched, self.table, face, "the injector face", "temperature")
 
 
 def combust(
@@ -88,7 +96,7 @@ def combust(
     Parameters
     ----------
     mixture : Mixture
-        Atoms and enthalpy per mass, a batch.
+        Atoms and enthalpy per mass, a batch; one with a composition of its own is taken as it is, not burnt.
     basis : str
         Name of the thermodynamic basis.
     pressure : float or array
@@ -98,17 +106,24 @@ def combust(
     pressure_at : str
         ``"injector"``, ``"nozzle stagnation"`` or ``"nozzle inlet static"``.
     """
-    table = load_basis(basis).table(mixture.symbols)
+    table = load_basis(basis).table(mixture.symbols, mixture.condensed)
     count = len(mixture.atoms)
     p = np.broadcast_to(values(pressure), (count,)).astype(float)
     ratio = np.broadcast_to(values(contraction_ratio), (count,)).astype(float)
-    if np.isfinite(ratio).any():
-        return _contracted(table, mixture, p, ratio, pressure_at)
+    if mixture.composition is not None:
+        return _held(table, mixture, p, ratio, pressure_at)
+    contracted = np.isfinite(ratio).any()
+    found = _contracted(table, mixture, p, ratio, pressure_at) if contracted else _wide(table, mixture, p, ratio)
+    watched = None if mixture.condensed else warnings.watched_phases(load_basis(basis).table(mixture.symbols, True))
+    return replace(found, watched=watched)
+
+
+def _wide(table: SpeciesTable, mixture: Mixture, p: Array, ratio: Array) -> Combustion:
     face = equilibrium.solve(table, mixture.atoms, pressure=p, enthalpy=mixture.enthalpy)
     face = replace(face, pressure=p)
     throat = expansion.throat(expansion.shifting(table, mixture.atoms, face))
     cstar = p / throat.mass_flux
-    return Combustion(table, mixture.atoms, mixture.enthalpy, face, face, np.zeros(count), face, throat, ratio, cstar)
+    return Combustion(table, mixture.atoms, mixture.enthalpy, face, face, np.zeros(len(p)), face, throat, ratio, cstar)
 
 
 def _contracted(table: SpeciesTable, mixture: Mixture, pressure: Array, ratio: Array, pressure_at: str) -> Combustion:
@@ -125,6 +140,50 @@ def _contracted(table: SpeciesTable, mixture: Mixture, pressure: Array, ratio: A
         found.throat,
         ratio,
         cstar,
+    )
+
+
+def _held(table: SpeciesTable, mixture: Mixture, pressure: Array, ratio: Array, pressure_at: str) -> Combustion:
+    """Return the reservoir of a gas of given composition, with the conservation laws of a combustor where the contraction is finite.
+
+    Composition and stagnation temperature do not depend on pressure, so neither do the ratios of the pressures along the isentrope:
+    one expansion from the quoted pressure gives them.
+    """
+    assert mixture.composition is not None
+    table = table.take([table.names.index(name) for name in mixture.composition])
+    amounts = np.stack([np.broadcast_to(mixture.composition[name], pressure.shape) for name in table.names], axis=1)
+    temperature = held_gas.held_temperature(table, amounts, mixture.enthalpy)
+    finite = np.isfinite(ratio)
+
+    def at_rest(p: Array) -> EquilibriumState:
+        return held_gas.held_state(table, amounts, p, temperature)
+
+    def inside(rest: EquilibriumState) -> tuple[FlowState, FlowState]:
+        isentrope = expansion.frozen(table, amounts, rest.enthalpy, rest.entropy, rest.pressure, rest.temperature)
+        throat = expansion.throat(isentrope)
+        wide = np.where(finite, ratio, 1e6)
+        return throat, expansion.at_area_ratio(isentrope, throat.mass_flux, wide, throat, supersonic=False)
+
+    _, inlet = inside(at_rest(pressure))
+    static = np.where(finite, inlet.pressure / pressure, 1.0)
+    face = np.where(finite, (inlet.pressure + inlet.density * inlet.velocity**2) / pressure, 1.0)
+    quoted = {"injector": face, "nozzle stagnation": np.ones_like(face), "nozzle inlet static": static}[pressure_at]
+    rest = at_rest(pressure / quoted)
+    throat, inlet = inside(rest)
+    return Combustion(
+        table,
+        mixture.atoms,
+        mixture.enthalpy,
+        at_rest(pressure if pressure_at == "injector" else rest.pressure * face),
+        held_gas.held_state(
+            table, amounts, rest.pressure * static, np.where(finite, inlet.temperature, temperature)
+        ),
+        np.where(finite, inlet.velocity, 0.0),
+        rest,
+        throat,
+        ratio,
+        rest.pressure / throat.mass_flux,
+        held=True,
     )
 
 
@@ -191,3 +250,8 @@ def sorted_fractions(table: SpeciesTable, amounts: Array) -> list[tuple[str, flo
     fractions = amounts / amounts.sum()
     order = np.argsort(-fractions, kind="stable")
     return [(table.names[k], float(fractions[k])) for k in order]
+
+
+def condensed_mass_fraction(table: SpeciesTable, amounts: Array) -> Array:
+    """Return the mass of liquids and solids over the whole mass, shape (case,); zero for a table of gases."""
+    return np.asarray(amounts[:, table.condensed] @ table.molar_mass[table.condensed])

@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from propkit.chain import outcome, warnings
-from propkit.chain.chamber import Combustion, GivenGas, sorted_fractions
+from propkit.chain.chamber import Combustion, GivenGas, condensed_mass_fraction, sorted_fractions
 from propkit.physics import expansion
 from propkit.physics.arrays import Array, Values, values
 from propkit.physics.expansion import FlowState, Isentrope
@@ -30,23 +30,30 @@ class Expansion:
     mass_flux: Array
     area_ratio: Array
     table: SpeciesTable | None
+    watched: SpeciesTable | None = None
 
     def raise_for_status(self, what: str, index: int = 0) -> None:
         """Raise when a case has no solution."""
         for state, where in ((self.throat, "throat"), (self.exit, "exit of the nozzle"), (self.inlet, "nozzle inlet")):
             outcome.raise_for(state, where, index)
 
-    def doubts(self, index: int = 0) -> Iterator[tuple[str, str]]:
-        """Yield doubts about the states as text and the result they are about."""
+    def doubts(self, index: int = 0) -> Iterator[tuple[str, str, str]]:
+        """Yield doubts about the states as text, code and the result they are about."""
         if self.table is None:
             return
         for state, where in ((self.throat, "the throat"), (self.exit, "the exit")):
             if state.amounts is None:
                 continue
-            for text, _, about in warnings.composition_range(
+            yield from warnings.composition_range(
                 self.table, state.amounts[index], float(state.temperature[index]), where, "stations"
-            ):
-                yield text, about
+            )
+            yield from warnings.supersaturation(self.watched, self.table, state.take([index]), where, "stations")
+
+    def condensed_mass_fraction(self, state: FlowState, index: int = 0) -> float | None:
+        """Return the mass of liquids and solids over the whole mass at a state; None where only gases are counted."""
+        if self.table is None or state.amounts is None or not self.table.condensed.any():
+            return None
+        return float(condensed_mass_fraction(self.table, state.amounts)[index])
 
     def compositions(self, index: int = 0) -> list[tuple[str, list[tuple[str, float]]]]:
         """Return station and (species, mole fraction) pairs for the stations; empty for a gas of given properties."""
@@ -85,7 +92,8 @@ def expand(
         One of exit area over effective throat area [1] and static exit pressure [Pa].
     """
     isentrope = _isentrope(reservoir, flow, freeze_at, exponent)
-    throat = expansion.throat(isentrope)
+    known = isinstance(isentrope, expansion.Shifting) and isinstance(reservoir, Combustion)
+    throat = reservoir.throat if known else expansion.throat(isentrope)  # type: ignore[union-attr]
     flux = throat.mass_flux
     if area_ratio is not None:
         ratio = np.broadcast_to(values(area_ratio), flux.shape).astype(float)
@@ -97,7 +105,8 @@ def expand(
     if isinstance(isentrope, expansion.FrozenFrom) and freeze_at != "throat":
         exit_state = _beyond_sonic(isentrope, exit_state)
     inlet = _inlet(reservoir, isentrope, throat)
-    return Expansion(isentrope, inlet, throat, exit_state, flux, ratio, getattr(reservoir, "table", None))
+    table, watched = getattr(reservoir, "table", None), getattr(reservoir, "watched", None)
+    return Expansion(isentrope, inlet, throat, exit_state, flux, ratio, table, watched)
 
 
 def _isentrope(
@@ -135,9 +144,9 @@ def _inlet(reservoir: Combustion | GivenGas, isentrope: Isentrope, throat: FlowS
     """Return the state at the contraction ratio, or at rest where the contraction is infinite."""
     ratio = reservoir.contraction_ratio
     finite = np.isfinite(ratio)
-    rest = expansion.at_pressure(isentrope, isentrope.pressure)
     if not finite.any():
-        return rest
+        at_rest = isinstance(isentrope, expansion.Shifting)
+        return isentrope.at_rest() if at_rest else expansion.at_pressure(isentrope, isentrope.pressure)  # type: ignore[union-attr]
     return expansion.at_area_ratio(isentrope, throat.mass_flux, np.where(finite, ratio, 1e6), throat, supersonic=False)
 
 
@@ -148,4 +157,3 @@ def state_at(
     if pressure is not None:
         return expansion.at_pressure(found.isentrope, pressure, found.throat)
     return expansion.at_area_ratio(found.isentrope, found.mass_flux, np.array([area_ratio]), found.throat, supersonic)
-

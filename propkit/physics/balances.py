@@ -47,15 +47,15 @@ def throat_area_for_mass_flow(mass_flow: Values, characteristic_velocity: Values
     return values(mass_flow) * values(characteristic_velocity) / values(stagnation_pressure)
 
 
-def oxidizer_mass_flow(mass_flow: Values, mixture_ratio: Values) -> Array:
-    """Return the oxidizer part [kg/s] of a propellant mass flow [kg/s] at a mixture ratio by mass."""
+def oxidizer_mass_flow(mass_flow: Values, mixture_ratio: Values, additive_fraction: Values = 0.0) -> Array:
+    """Return the oxidizer part [kg/s] of a mass flow [kg/s] at a mixture ratio by mass, beside additives."""
     ratio = values(mixture_ratio)
-    return values(mass_flow) * ratio / (1.0 + ratio)
+    return values(mass_flow) * (1.0 - values(additive_fraction)) * ratio / (1.0 + ratio)
 
 
-def fuel_mass_flow(mass_flow: Values, mixture_ratio: Values) -> Array:
-    """Return the fuel part [kg/s] of a propellant mass flow [kg/s] at a mixture ratio by mass."""
-    return values(mass_flow) / (1.0 + values(mixture_ratio))
+def fuel_mass_flow(mass_flow: Values, mixture_ratio: Values, additive_fraction: Values = 0.0) -> Array:
+    """Return the fuel part [kg/s] of a mass flow [kg/s] at a mixture ratio by mass, beside additives."""
+    return values(mass_flow) * (1.0 - values(additive_fraction)) / (1.0 + values(mixture_ratio))
 
 
 def equivalence_ratio(stoichiometric_mixture_ratio: Values, mixture_ratio: Values) -> Array:

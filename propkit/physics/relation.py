@@ -109,6 +109,7 @@ class Relation:
 
 TERMS: Mapping[str, Term] = MappingProxyType(
     {
+        "additive_fraction": Term(r"w_{ad}"),
         "adiabatic_wall_temperature": Term(r"T_{aw}", "K"),
         "ambient_pressure": Term(r"p_{a}", "Pa"),
         "ambient_pressure_ratio": Term(r"\frac{p_{a}}{p_{0}}"),
@@ -149,6 +150,7 @@ TERMS: Mapping[str, Term] = MappingProxyType(
         "mass_flow": Term(r"\dot{m}", "kg/s"),
         "mixture_ratio": Term(r"r"),
         "mixture_ratio_by_volume": Term(r"r_{V}"),
+        "molar_enthalpy": Term(r"H", "J/mol"),
         "molar_gas_constant": Term(r"\mathrm{R}", "J/(mol*K)"),
         "molar_mass": Term(r"\mathrm{M}", "kg/mol"),
         "momentum_share": Term(r"\sigma_{m}"),

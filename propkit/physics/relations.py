@@ -22,6 +22,10 @@ def _mixture_enthalpy(mixture_ratio: float, oxidizer_enthalpy: float, fuel_entha
     return stoichiometry.mix(mixture_ratio, oxidizer_enthalpy, fuel_enthalpy)
 
 
+def _enthalpy_by_mass(molar_enthalpy: float, molar_mass: float) -> float:
+    return molar_enthalpy / molar_mass
+
+
 def _oxygen_balance(net_valence: float, oxygen_mass: float) -> float:
     """Return the oxygen balance of a mixture that carries this net valence per mass."""
     return stoichiometry.oxygen_balance({"H": net_valence}, oxygen_mass)
@@ -118,6 +122,27 @@ _LIST = (
         "{mass_flow} / (1 + {mixture_ratio})",
         balances.fuel_mass_flow,
         "conservation",
+    ),
+    relation(
+        "oxidizer_mass_flow_beside_additives",
+        Term(r"\dot{m}_{ox}", "kg/s"),
+        "{mass_flow} * (1 - {additive_fraction}) * {mixture_ratio} / (1 + {mixture_ratio})",
+        balances.oxidizer_mass_flow,
+        "conservation",
+    ),
+    relation(
+        "fuel_mass_flow_beside_additives",
+        Term(r"\dot{m}_{fu}", "kg/s"),
+        "{mass_flow} * (1 - {additive_fraction}) / (1 + {mixture_ratio})",
+        balances.fuel_mass_flow,
+        "conservation",
+    ),
+    relation(
+        "enthalpy_by_mass",
+        TERMS["enthalpy"],
+        "{molar_enthalpy} / {molar_mass}",
+        _enthalpy_by_mass,
+        "definition",
     ),
     # gas
     relation(
