@@ -63,6 +63,10 @@ class Shifting:
         """Return some cases as a smaller batch."""
         return take_cases(self, rows)
 
+    def at_rest(self) -> FlowState:
+        """Return the reservoir itself."""
+        return self._state(self.reservoir)
+
     def at_pressure(self, pressure: Array, near: FlowState | None = None) -> FlowState:
         """Return the state at a pressure [Pa]."""
         known = self.reservoir if near is None or near.equilibrium is None else near.equilibrium
