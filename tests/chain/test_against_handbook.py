@@ -14,11 +14,10 @@ import pytest
 
 import propkit as pk
 
+TABLE = Path(__file__).parents[1] / "reference" / "handbook_performance.csv"
 ROWS = [
     row
-    for row in csv.DictReader(
-        (Path(__file__).parents[1] / "reference" / "handbook_performance.csv").open(encoding="utf-8")
-    )
+    for row in csv.DictReader(TABLE.read_text(encoding="utf-8").splitlines())
     if row["verdict"].startswith("reliable") and row["fuel"] != "LCH4"
 ]
 NAMES = {
