@@ -112,8 +112,9 @@ def table_html(table: Table) -> str:
         name = html_species(entry) if species else escape(entry)
         body.append(f"<tr><th scope='row'>{name}</th>{''.join(column[position] for column in columns)}</tr>")
     note = f"<p class='propkit-note'>{escape(table.note)}</p>" if table.note else ""
+    slim = " class='propkit-slim'" if len(table.columns) < 3 and not bars and not is_wide(table) else ""
     return (
-        f"<div class='propkit-wide'><table><caption>{escape(table.title)}</caption><thead><tr>"
+        f"<div class='propkit-wide'><table{slim}><caption>{escape(table.title)}</caption><thead><tr>"
         f"<th scope='col'>{escape(table.index_label)}</th>{heads}</tr></thead><tbody>{''.join(body)}</tbody></table></div>{note}"
     )
 

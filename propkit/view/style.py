@@ -49,6 +49,7 @@ _CSS = f"""
 .propkit-pic{{grid-area:pic}}
 .propkit-sheet table{{border-collapse:collapse;width:100%;margin:0 0 6px;font-size:13px;border:0;color:inherit;background:none;table-layout:auto}}
 .propkit-sheet caption,.propkit-caption{{caption-side:top;text-align:left;color:var(--pk-quiet);font-size:11px;font-weight:400;letter-spacing:.06em;text-transform:uppercase;padding:6px 0 2px}}
+.propkit-sheet table.propkit-slim{{width:auto;min-width:45%}}
 .propkit-sheet tr,.propkit-sheet tbody tr:hover,.propkit-sheet tbody tr:nth-child(odd),.propkit-sheet tbody tr:nth-child(even){{background:none}}
 .propkit-sheet th,.propkit-sheet td{{border:0;border-bottom:1px solid color-mix(in srgb,var(--pk-line) 50%,transparent);padding:2.5px 5px;text-align:left;font-weight:400;vertical-align:baseline;white-space:normal;max-width:none}}
 .propkit-sheet thead th{{border-bottom:1px solid var(--pk-line);vertical-align:bottom;line-height:1.25}}

@@ -101,9 +101,9 @@ _FORMULA = re.compile(r"(?<=[A-Za-z)])(\d+(?:\.\d+)?)")
 
 
 def _split_species(name: str) -> tuple[str, str]:
-    """Return formula and remark of a species key: ``C2H2 (acetylene)`` -> ``C2H2``, `` (acetylene)``."""
+    """Return formula, closed up, and remark of a species key: ``C2H2 (acetylene)`` -> ``C2H2``, `` (acetylene)``."""
     formula, space, remark = name.partition(" (")
-    return formula, f"{space}{remark}" if space else ""
+    return formula.replace(" ", ""), f"{space}{remark}" if space else ""
 
 
 def html_species(name: str) -> str:
