@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from propkit.constants import GAS_CONSTANT
+from propkit.data.atomic_weights import ATOMIC_WEIGHTS
 from propkit.physics import balances, decomposition, stoichiometry
 from propkit.physics.arrays import Array, Values, values
 from propkit.physics.thermodynamics import SpeciesTable
@@ -139,6 +140,12 @@ def ideal_enthalpy(table: SpeciesTable, mixture: Mixture, temperature: float) ->
     assert mixture.composition is not None
     per_mole = table.properties(temperature).enthalpy[0] * GAS_CONSTANT * temperature
     return float(sum(amount[0] * per_mole[table.names.index(name)] for name, amount in mixture.composition.items()))
+
+
+def oxygen_balance(mixture: Mixture) -> Array:
+    """Return the oxygen balance of each case of a mixture [1]; NaN where an element has no valence."""
+    atoms = dict(zip(mixture.symbols, mixture.atoms.T, strict=True))
+    return stoichiometry.oxygen_balance(atoms, ATOMIC_WEIGHTS["O"] * 1e-3)
 
 
 def _atoms(stream: Stream, symbols: Sequence[str]) -> Array:

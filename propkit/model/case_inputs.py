@@ -9,12 +9,10 @@ import numpy as np
 
 from propkit import units
 from propkit.chain import case as stage
-from propkit.data.atomic_weights import ATOMIC_WEIGHTS
 from propkit.errors import InputError, Problem
 from propkit.model.declare import Bounds, NumberInput, as_text
 from propkit.model.doubts import Doubt
 from propkit.model.propellant import Propellant, as_propellant
-from propkit.physics import stoichiometry
 
 TEMPERATURES = Bounds(at_least=1.0, at_most=3000.0)
 PRESSURES = Bounds(at_least=100.0, at_most=1e9)
@@ -67,7 +65,7 @@ def amount_problems(typed: Mapping[str, Any], bad: set[str]) -> Iterator[Problem
     others = ", ".join(stage.AMOUNTS[1:])
     if len(given) > 1:
         values = f"{typed[given[0]]} beside {' and '.join(f'{name} {typed[name]}' for name in given[1:])}"
-        yield Problem(given[0], values, f"given alone or left to {' or '.join(given[1:])}", "Give one of them.")
+        yield Problem(given[0], values, f"given alone or left to {' or '.join(given[1:])}", "Give one of the two." if len(given) == 2 else "Give one of them.")
     elif not given and not bad & set(stage.AMOUNTS):
         yield Problem("mixture_ratio", "missing", f"given, or one of {others} in its place", "For example mixture_ratio=3.4.")
 
@@ -92,8 +90,7 @@ def mixture_results(
         results["bulk_density"] = float(mixture.density[0])
     else:
         absent["bulk_density"] = unknown_density
-    atoms = dict(zip(mixture.symbols, mixture.atoms[0].tolist(), strict=True))
-    balance = stoichiometry.oxygen_balance(atoms, ATOMIC_WEIGHTS["O"] * 1e-3)
+    balance = float(stage.oxygen_balance(mixture)[0])
     if np.isfinite(balance):
         results["oxygen_balance"] = balance
     else:

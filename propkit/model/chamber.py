@@ -260,7 +260,7 @@ class Chamber(Calculation):
         made = [Assumption("contraction", text, self.kind_of("contraction_ratio"), "mass_flow")]
         eta = self._values["cstar_efficiency"]
         text = (
-            "Combustion is complete (c* efficiency 1)."
+            "Nothing is lost in the chamber (c* efficiency 1)."
             if eta == 1.0
             else f"Combustion delivers {eta:g} of the theoretical characteristic velocity."
         )

@@ -26,7 +26,7 @@ def _enthalpy_by_mass(molar_enthalpy: float, molar_mass: float) -> float:
     return molar_enthalpy / molar_mass
 
 
-def _oxygen_balance(net_valence: float, oxygen_mass: float) -> float:
+def _oxygen_balance(net_valence: float, oxygen_mass: float) -> Any:
     """Return the oxygen balance of a mixture that carries this net valence per mass."""
     return stoichiometry.oxygen_balance({"H": net_valence}, oxygen_mass)
 

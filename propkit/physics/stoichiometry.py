@@ -118,19 +118,19 @@ def bulk_density(mixture_ratio: Values, oxidizer_density: Values, fuel_density: 
     return 1.0 / mix(mixture_ratio, 1.0 / values(oxidizer_density), 1.0 / values(fuel_density))
 
 
-def oxygen_balance(elements: Mapping[str, float], oxygen_mass: float) -> float:
+def oxygen_balance(elements: Mapping[str, Values], oxygen_mass: float) -> Array:
     """Return the mass of oxygen left over (positive) or missing (negative) for complete combustion, over the mass.
 
     Parameters
     ----------
     elements : mapping
-        Element symbol -> moles of atoms per mass [mol/kg].
+        Element symbol -> moles of atoms per mass [mol/kg], floats or arrays of shape (case,).
     oxygen_mass : float
         Molar mass of an oxygen atom [kg/mol].
 
     Returns
     -------
-    float
+    array
         Oxygen balance [1]; NaN where an element has no valence in `VALENCES`.
 
     Notes
@@ -143,8 +143,8 @@ def oxygen_balance(elements: Mapping[str, float], oxygen_mass: float) -> float:
     Common practice, no source.
     """
     if not set(elements) <= set(VALENCES):
-        return float("nan")
-    return -0.5 * net_valence(elements) * oxygen_mass
+        return np.full(np.shape(next(iter(elements.values()))), np.nan)
+    return np.asarray(-0.5 * oxygen_mass * sum(VALENCES[symbol] * values(amount) for symbol, amount in elements.items()))
 
 
 def ratio_of_volumes(mixture_ratio: Values, oxidizer_density: Values, fuel_density: Values) -> Array:
