@@ -359,11 +359,12 @@ def _fill(
     state.temperature[block] = temperature
     state.amounts[np.ix_(block, species[:gas])] = np.exp(x.log_amounts)
     state.gas_moles[block] = moles
+    with np.errstate(over="ignore", divide="ignore", invalid="ignore"):
+        state.density[block] = state.pressure[block] / (GAS_CONSTANT * moles * temperature)
     rows, slots = np.nonzero(x.slots >= 0)
     state.amounts[block[rows], species[x.slots[rows, slots]]] = x.slot_amounts[rows, slots]
     if rows.size:
         np.add.at(state.condensed_mass_fraction, block[rows], x.slot_amounts[rows, slots] * table.molar_mass[x.slots[rows, slots]])
-    state.density[block] = state.pressure[block] / (GAS_CONSTANT * moles * temperature)
     state.enthalpy[block] = GAS_CONSTANT * temperature * enthalpy
     state.entropy[block] = GAS_CONSTANT * entropy
     state.frozen_specific_heat[block] = GAS_CONSTANT * heat_capacity

@@ -79,16 +79,15 @@ def _change(problem: Problem, found: Outcome) -> tuple[Unknowns, npt.NDArray[np.
     temperature = np.exp(x.log_temperature)
     active = x.slots >= 0
     rows = np.arange(temperature.size)
-    cap = np.where(active, problem.table.temperature_high[np.where(active, x.slots, 0)] + _ABOVE_TABLE, np.inf)
-    badness = np.where(active, np.where(temperature[:, None] > cap, -np.inf, x.slot_amounts), 0.0)
-    worst = badness.argmin(axis=1)
-    drop = badness[rows, worst] < 0.0
-    drop |= ~found.converged & active.any(axis=1)
-    worst = np.where(active[rows, worst], worst, active.argmax(axis=1))
+    worst = np.where(active, x.slot_amounts, np.inf).argmin(axis=1)
+    drop = active.any(axis=1) & (~found.converged | (x.slot_amounts[rows, worst] < 0.0))
     affinity, best = _most_supersaturated(problem.table, x, temperature)
-    add = ~drop & found.converged & (affinity > _SUPERSATURATION)
     place = _place(problem, x, best)
-    add &= place >= 0
+    add = ~drop & found.converged & (affinity > _SUPERSATURATION) & (place >= 0)
+    cap = np.where(active, problem.table.temperature_high[np.where(active, x.slots, 0)] + _ABOVE_TABLE, np.inf)
+    beyond = ~drop & ~add & (temperature[:, None] > cap).any(axis=1)
+    worst = np.where(beyond, (temperature[:, None] - cap).argmax(axis=1), worst)
+    drop |= beyond
     x.slots[rows[drop], worst[drop]] = -1
     x.slot_amounts[rows[drop], worst[drop]] = 0.0
     x.slot_amounts[rows[add], place[add]] *= x.slots[rows[add], place[add]] >= 0

@@ -373,6 +373,7 @@ def solve_scaled(matrix: Array, right: Array, moles: Array, elements: int) -> Ar
     return np.asarray(solution)
 
 
+@np.errstate(over="ignore", divide="ignore", invalid="ignore")
 def iterate(problem: Problem, start: Unknowns, iterations: int = ITERATIONS) -> Outcome:
     """Iterate every case of a batch to convergence; converged cases leave the batch.
 
@@ -389,6 +390,10 @@ def iterate(problem: Problem, start: Unknowns, iterations: int = ITERATIONS) -> 
     -------
     Outcome
         The end of each case, converged or not.
+
+    Notes
+    -----
+    A case that runs away leaves the batch with a residual that is not finite, so floating-point warnings are left out.
     """
     count = start.log_moles.size
     out = Outcome(start.take(np.arange(count)), np.full((count, 3), np.nan), np.full((count, 4), np.nan),
