@@ -28,6 +28,10 @@ STATIONS = 160
 SIDE_LOADS = "Separation is seldom even round the wall: expect side loads while starting, throttling and shutting down."
 
 
+_ISOTHERMAL = 1.0 + 1e-9
+"""Exponent of a shock in a gas that melting or freezing holds at one temperature, where that of the flow falls below 1."""
+
+
 @dataclass(frozen=True, slots=True)
 class Prediction:
     """What one criterion says: pressures [Pa], whether it predicts separation, and where and with what thrust it would be.
@@ -65,7 +69,8 @@ def doubts(nozzle: Nozzle, ambient: float) -> Iterator[Doubt]:
     if exit_state.si("mach") <= 1.0:
         return
     pressure = exit_state.si("pressure")
-    shock = float(separation.lip_shock_ambient(pressure, exit_state.si("mach"), exit_state.si("isentropic_exponent")))
+    exponent = max(exit_state.si("isentropic_exponent"), _ISOTHERMAL)
+    shock = float(separation.lip_shock_ambient(pressure, exit_state.si("mach"), exponent))
     if ambient > shock:
         yield Doubt(
             f"The ambient pressure exceeds the {shock / 1e3:.4g} kPa that a normal shock at the lip sustains: the nozzle does not flow full and the value is not delivered.",
