@@ -119,10 +119,11 @@ class EquilibriumState:
 
 def choose(first: EquilibriumState, second: EquilibriumState, where: npt.NDArray[np.bool_]) -> EquilibriumState:
     """Return `first` with the cases of `where` taken from `second`."""
-    pairs = ((getattr(first, part.name), getattr(second, part.name)) for part in fields(EquilibriumState))
-    return EquilibriumState(
-        *(np.where(where if mine.ndim == 1 else where[:, None], theirs, mine) for mine, theirs in pairs)
-    )
+    parts: list[Any] = []
+    for part in fields(EquilibriumState):
+        mine, theirs = getattr(first, part.name), getattr(second, part.name)
+        parts.append(np.where(where if mine.ndim == 1 else where[:, None], theirs, mine))
+    return EquilibriumState(*parts)
 
 
 def solve(
@@ -364,7 +365,11 @@ def _fill(
     rows, slots = np.nonzero(x.slots >= 0)
     state.amounts[block[rows], species[x.slots[rows, slots]]] = x.slot_amounts[rows, slots]
     if rows.size:
-        np.add.at(state.condensed_mass_fraction, block[rows], x.slot_amounts[rows, slots] * table.molar_mass[x.slots[rows, slots]])
+        np.add.at(
+            state.condensed_mass_fraction,
+            block[rows],
+            x.slot_amounts[rows, slots] * table.molar_mass[x.slots[rows, slots]],
+        )
     state.enthalpy[block] = GAS_CONSTANT * temperature * enthalpy
     state.entropy[block] = GAS_CONSTANT * entropy
     state.frozen_specific_heat[block] = GAS_CONSTANT * heat_capacity
@@ -381,23 +386,21 @@ def _fill(
     state.status[block] = np.where(outside, OUT_OF_RANGE, np.where(outcome.converged, CONVERGED, NOT_CONVERGED))
 
 
-def saturation_ratios(table: SpeciesTable, state: EquilibriumState, full: SpeciesTable) -> dict[str, Array]:
-    """Saturation ratio of each liquid and solid over a gas.
+def condensation_ratios(full: SpeciesTable, state: EquilibriumState) -> dict[str, Array]:
+    """Saturation ratio of each liquid and solid over a gas in equilibrium.
 
     Parameters
     ----------
-    table : SpeciesTable
-        The species of the state.
+    full : SpeciesTable
+        The table of the gas with liquids and solids added: the same elements in the same order.
     state : EquilibriumState
         The gas.
-    full : SpeciesTable
-        The table of the same elements with liquids and solids.
 
     Returns
     -------
     dict
-        Key of the liquid or solid -> ratio, shape (case,); above 1 it would form. Outside the range of a phase the ratio
-        is NaN.
+        Key of the liquid or solid -> ratio, shape (case,); above 1 it would form. NaN outside the table of the phase and
+        where one of its elements is absent.
 
     Notes
     -----
@@ -406,10 +409,10 @@ def saturation_ratios(table: SpeciesTable, state: EquilibriumState, full: Specie
     Source: Smith & Missen, Chemical Reaction Equilibrium Analysis (1982).
     """
     gas = full.gas_count
-    columns = [table.elements.index(symbol) for symbol in full.elements]
-    logs = saturation(full, state.element_potentials[:, columns], state.temperature)
+    logs = saturation(full, state.element_potentials, state.temperature)
     t = state.temperature[:, None]
     inside = (t >= full.temperature_low[gas:]) & (t <= full.temperature_high[gas:])
-    present = ~((state.element_potentials[:, columns] == 0.0) @ (full.composition[gas:] > 0.0).T)
+    absent = (state.amounts[:, :gas] @ full.composition[:gas] <= 0.0).astype(float)
+    present = absent @ (full.composition[gas:] > 0.0).T == 0.0
     ratios = np.where(inside & present, np.exp(np.minimum(logs, 700.0)), np.nan)
     return {name: ratios[:, number] for number, name in enumerate(full.names[gas:])}

@@ -443,7 +443,9 @@ def _solve(problem: Problem, sums: Sums, x: Unknowns, target: Array) -> tuple[Ar
         right[:, size, 0] += energy
     elif problem.given == "entropy":
         energy = target / GAS_CONSTANT - sums.entropy
-        right[:, size, 0] += energy + _dot(x.potentials, sums.shortfall[:, :last]) + sums.shortfall[:, last] - sums.spread
+        right[:, size, 0] += (
+            energy + _dot(x.potentials, sums.shortfall[:, :last]) + sums.shortfall[:, last] - sums.spread
+        )
         sums.matrix[:, size, : size + 1] -= sums.correction[:, : size + 1]
         sums.matrix[:, size, size + 1 :] -= sums.shortfall[:, size + 1 :]
     right[:, size, 1] = 1.0

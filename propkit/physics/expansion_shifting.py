@@ -128,7 +128,11 @@ class Shifting:
         square, thermal = self.kinetic(trial, number)
         log_density = trial.log_pressure + np.log(self.table.reference_pressure / thermal)
         turning = trial.moles_slope + trial.temperature_slope
-        return log_density + 0.5 * np.log(square), 1.0 - turning - thermal / square, np.sqrt(np.abs(square * (1.0 - turning) / thermal))
+        return (
+            log_density + 0.5 * np.log(square),
+            1.0 - turning - thermal / square,
+            np.sqrt(np.abs(square * (1.0 - turning) / thermal)),
+        )
 
     def _state(self, found: EquilibriumState) -> FlowState:
         return FlowState(

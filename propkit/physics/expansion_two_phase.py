@@ -103,7 +103,9 @@ def at_mass_flux(isentrope: Shifting, mass_flux: Array, at_throat: FlowState, su
     at_one = good & (ratio <= 1.0 + 1e-12)
     gamma = np.maximum(at_throat.isentropic_exponent, _LOWEST_EXPONENT)
     branch: gas_dynamics.Branch = "supersonic" if supersonic else "subsonic"
-    mach = gas_dynamics.mach_from_area_ratio(np.where(good, np.maximum(ratio, 1.0), 1.0), np.where(good, gamma, 1.2), branch)
+    mach = gas_dynamics.mach_from_area_ratio(
+        np.where(good, np.maximum(ratio, 1.0), 1.0), np.where(good, gamma, 1.2), branch
+    )
     middle = np.log(at_throat.pressure)
     guess = middle + np.log(gas_dynamics.pressure_ratio(mach, gamma) / gas_dynamics.pressure_ratio(1.0, gamma))
     goal = np.log(np.where(good, mass_flux, 1.0))
@@ -174,7 +176,9 @@ def _root(
         keep = ~(solved | narrow | broken)
         left, near = left[keep], state.take(keep)
     found = isentrope.at_pressure(np.exp(result))
-    return replace(found, status=np.where(settled, found.status, np.where(found.status == CONVERGED, NOT_CONVERGED, found.status)))
+    return replace(
+        found, status=np.where(settled, found.status, np.where(found.status == CONVERGED, NOT_CONVERGED, found.status))
+    )
 
 
 def _chosen(first: FlowState, second: FlowState, where: Array) -> FlowState:

@@ -69,7 +69,7 @@ def powers(temperature: Array) -> Array:
 
     Source: NASA TM-4513, equations 1 to 3 (seven coefficients in each range).
     """
-    factors = _FACTORS * temperature[:, None] ** _EXPONENTS
+    factors: Array = _FACTORS * temperature[:, None] ** _EXPONENTS
     factors[2, :, 0] = np.log(temperature)
     return factors
 
@@ -225,7 +225,7 @@ def apply_segments(factors: Array, interval: npt.NDArray[np.intp], segments: Arr
     """
     count, first = interval.size, int(interval[0])
     if count == 1 or (interval == first).all():
-        return (factors.reshape(3 * count, _COEFFICIENTS) @ segments[first]).reshape(3, count, -1)
+        return np.asarray(factors.reshape(3 * count, _COEFFICIENTS) @ segments[first]).reshape(3, count, -1)
     out = np.empty((3, count, segments.shape[2]))
     for number in np.unique(interval):
         rows = np.flatnonzero(interval == number)
