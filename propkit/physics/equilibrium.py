@@ -15,8 +15,8 @@ import numpy.typing as npt
 from propkit.constants import GAS_CONSTANT
 from propkit.errors import InputError
 from propkit.physics.arrays import Array, Values, require, values
+from propkit.physics.equilibrium_condensed import SLOTS, iterate_phases
 from propkit.physics.equilibrium_newton import FlowCondition, Given, Integers, Outcome, Problem, Unknowns, iterate
-from propkit.physics.equilibrium_condensed import SLOTS, iterate_phases, saturation
 from propkit.physics.equilibrium_search import Solver, cold_start, search, settled_start
 from propkit.physics.thermodynamics import SpeciesTable
 
@@ -332,7 +332,8 @@ def _empty(count: int, table: SpeciesTable) -> EquilibriumState:
     def blank() -> Array:
         return np.full(count, np.nan)
 
-    state = EquilibriumState(*(blank() for _ in fields(EquilibriumState)))
+    blanks: list[Any] = [blank() for _ in fields(EquilibriumState)]
+    state = EquilibriumState(*blanks)
     object.__setattr__(state, "amounts", np.zeros((count, len(table.names))))
     object.__setattr__(state, "element_potentials", np.zeros((count, len(table.elements))))
     object.__setattr__(state, "iterations", np.zeros(count, dtype=np.intp))
@@ -384,35 +385,3 @@ def _fill(
     state.iterations[block] = outcome.iterations
     state.residual[block] = outcome.residual
     state.status[block] = np.where(outside, OUT_OF_RANGE, np.where(outcome.converged, CONVERGED, NOT_CONVERGED))
-
-
-def condensation_ratios(full: SpeciesTable, state: EquilibriumState) -> dict[str, Array]:
-    """Saturation ratio of each liquid and solid over a gas in equilibrium.
-
-    Parameters
-    ----------
-    full : SpeciesTable
-        The table of the gas with liquids and solids added: the same elements in the same order.
-    state : EquilibriumState
-        The gas.
-
-    Returns
-    -------
-    dict
-        Key of the liquid or solid -> ratio, shape (case,); above 1 it would form. NaN outside the table of the phase and
-        where one of its elements is absent.
-
-    Notes
-    -----
-    ln S = sum of the element potentials of its atoms over R T less its Gibbs energy over R T.
-
-    Source: Smith & Missen, Chemical Reaction Equilibrium Analysis (1982).
-    """
-    gas = full.gas_count
-    logs = saturation(full, state.element_potentials, state.temperature)
-    t = state.temperature[:, None]
-    inside = (t >= full.temperature_low[gas:]) & (t <= full.temperature_high[gas:])
-    absent = (state.amounts[:, :gas] @ full.composition[:gas] <= 0.0).astype(float)
-    present = absent @ (full.composition[gas:] > 0.0).T == 0.0
-    ratios = np.where(inside & present, np.exp(np.minimum(logs, 700.0)), np.nan)
-    return {name: ratios[:, number] for number, name in enumerate(full.names[gas:])}

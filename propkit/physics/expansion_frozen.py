@@ -212,7 +212,9 @@ def frozen_gas(
     """Return the isentrope of a held composition; arguments as for `propkit.physics.expansion.frozen`."""
     gas = amounts[:, : table.gas_count]
     moles = gas.sum(axis=1)
-    share = np.maximum(gas / moles[:, None], np.finfo(float).tiny)  # a trace below the smallest normal number adds nothing
+    share = np.maximum(
+        gas / moles[:, None], np.finfo(float).tiny
+    )  # a trace below the smallest normal number adds nothing
     mixing = -(gas * np.log(share)).sum(axis=1)
     coefficients = np.stack([amounts @ segment.T for segment in table.segments], axis=1)
     shape = moles.shape

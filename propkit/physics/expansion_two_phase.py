@@ -12,6 +12,7 @@ from dataclasses import replace
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
+import numpy.typing as npt
 
 from propkit.physics import equilibrium, gas_dynamics
 from propkit.physics.arrays import Array
@@ -71,7 +72,7 @@ def throat(isentrope: Shifting) -> FlowState:
     return replace(best, status=np.where(good | (best.status != CONVERGED), best.status, NOT_CONVERGED))
 
 
-def choose_better(first: FlowState, second: FlowState, where: Array) -> FlowState:
+def choose_better(first: FlowState, second: FlowState, where: npt.NDArray[np.bool_]) -> FlowState:
     """Return `first` with the cases of `where` taken from `second` if their mass flux is larger there."""
     with np.errstate(invalid="ignore"):
         better = where & (second.mass_flux > first.mass_flux)
@@ -181,7 +182,7 @@ def _root(
     )
 
 
-def _chosen(first: FlowState, second: FlowState, where: Array) -> FlowState:
+def _chosen(first: FlowState, second: FlowState, where: npt.NDArray[np.bool_]) -> FlowState:
     """Return `first` with the cases of `where` taken from `second`, the equilibrium included."""
     if not where.any():
         return first
