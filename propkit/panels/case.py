@@ -7,22 +7,28 @@ from typing import Any
 
 from propkit.panels.faces import Face
 
-ROLES = ("oxidizer", "fuel")
+ROLES = ("oxidizer", "fuel", "propellant")
+WHAT = (*ROLES, "gas")
+"""Inputs that are a propellant."""
 AS_GIVEN = "as given"
 
 
 class CaseFace(Face):
     """Propellants by name from the library, mixture ratio or equivalence ratio, states as stored."""
 
-    minor = ("oxidizer_temperature", "fuel_temperature", "oxidizer_pressure", "fuel_pressure", "thermo_basis", "condensed", "name")
+    minor = (
+        "oxidizer_temperature", "fuel_temperature", "oxidizer_pressure", "fuel_pressure", "propellant_temperature", "propellant_pressure",
+        "tank_pressure", "thermo_basis", "condensed", "name",
+    )  # fmt: skip
+    only_in_code = ("additives",)
 
     def effective(self, name: str) -> float | None:
         """Return the value in effect: a stored temperature is that of the propellant where none is given."""
         found = super().effective(name)
         role, _, what = name.partition("_")
         if found is None and what == "temperature" and role in ROLES:
-            propellant = self.link._values[role]
-            return float(propellant.row.temperature)
+            stored = getattr(getattr(self.link._values.get(role), "row", None), "temperature", None)
+            return None if stored is None else float(stored)
         return found
 
     def text_now(self, name: str, system: Any = "SI") -> str:
@@ -34,7 +40,7 @@ class CaseFace(Face):
 
     def choices(self, name: str) -> Mapping[str, str] | None:
         """Return the library's propellants of a role, and the one given where it is none of them."""
-        if name not in self.link.declared_inputs or name not in (*ROLES, "propellant", "gas"):
+        if name not in self.link.declared_inputs or name not in WHAT:
             return super().choices(name)
         listed = dict(library_names(name).items())
         if self.choice_now(name) == AS_GIVEN:
@@ -43,7 +49,7 @@ class CaseFace(Face):
 
     def choice_now(self, name: str) -> str:
         """Return the library name of a propellant, or that it is one of the analyst's own."""
-        if name not in (*ROLES, "propellant", "gas"):
+        if name not in WHAT:
             return super().choice_now(name)
         typed = self.link.inputs.get(name)
         return typed if isinstance(typed, str) and typed in library_names(name) else AS_GIVEN
@@ -55,8 +61,9 @@ class CaseFace(Face):
     def placeholder(self, name: str) -> str:
         """Return what an empty field says."""
         if name.endswith("_temperature"):
-            return f"{self.effective(name):.5g} K, as in the library"
-        return "as in the library"
+            stored = self.effective(name)
+            return "as stored" if stored is None else f"{stored:.5g} K, as stored"
+        return "as stored"
 
 
 def library_names(role: str) -> dict[str, str]:
@@ -65,7 +72,7 @@ def library_names(role: str) -> dict[str, str]:
 
     if role not in _LISTED:
         frame = propellants()
-        suits = frame["role"].str.contains(role) if role in ROLES else frame["role"].notna()
+        suits = frame["role"].str.contains(role) if role in ROLES[:2] else frame["role"].notna()
         _LISTED[role] = {str(name): f"{name} · {title}" for name, title in frame.loc[suits, "title"].items()}
     return _LISTED[role]
 

@@ -11,7 +11,7 @@ WIDEST_SHOWN = 8.0
 class ChamberFace(Face):
     """Pressure, contraction and c* efficiency."""
 
-    minor = ("pressure_at", "name")
+    minor = ("pressure_at", "characteristic_length", "name")
 
     def scale(self, name: str, unit: Unit) -> Scale | None:
         """Return a slider; that of the contraction ratio ends where contraction hardly matters any more."""

@@ -67,6 +67,9 @@ class Face:
     minor: tuple[str, ...] = ("name",)
     """Inputs that matter seldom; they stand folded away until one of them is given."""
 
+    only_in_code: tuple[str, ...] = ()
+    """Inputs that no text says; they are shown once they are given in code."""
+
     def __init__(self, link: Any) -> None:
         self.link = link
 
@@ -97,12 +100,16 @@ class Face:
         """Return inputs that make no sense for the object as it is."""
         return frozenset()
 
+    def fixed(self, name: str) -> bool:
+        """Whether an input is shown but not edited here: what was given is no text."""
+        return isinstance(self.link.inputs.get(name), Mapping | tuple | list)
+
     def names(self) -> Iterator[str]:
         """Yield the inputs that have a control, in the order of their declaration."""
         grouped = {name: group for group in self.groups() for name in group.members}
-        skipped = {self.link.upstream_input, *self.hidden()}
+        skipped = {self.link.upstream_input, *self.hidden(), *self.only_in_code}
         for name in self.link.declared_inputs:
-            if name in skipped or (name in grouped and grouped[name].member != name):
+            if (name in skipped and not self.fixed(name)) or (name in grouped and grouped[name].member != name):
                 continue
             yield name
 
@@ -159,6 +166,8 @@ class Face:
         """Return what was typed as the text field shows it: a bare SI number gets the unit of the display."""
         if isinstance(typed, str):
             return typed
+        if self.fixed(name):
+            return repr(typed)
         if isinstance(typed, bool) or not isinstance(typed, int | float):
             return self.link.input_text(name)  # type: ignore[no-any-return]
         quantity = self.declared(name).quantity
@@ -221,6 +230,8 @@ class Face:
         """Return how an input is edited: ``choice``, ``number``, ``custom`` or ``text``."""
         if self.choices(name) is not None:
             return "choice"
+        if self.fixed(name):
+            return "fixed"
         entry = self.declared(name)
         if isinstance(entry, NumberInput | QuantityInput):
             return "number"

@@ -10,12 +10,22 @@ from propkit.panels.faces import Face, Group
 
 EXPANSIONS = ("area_ratio", "exit_pressure")
 THROATS, LIPS, FLOWS = tuple(sizing.THROAT_SIZES), tuple(sizing.EXIT_SIZES), tuple(sizing.FLOW_SIZES)
+NO_CONTOUR, AS_GIVEN = "none", "as given"
+CONTOURS = {"cone": "cone of 15°", "bell 80": "bell, 80 % of the cone's length", "bell 70": "bell, 70 % of the cone's length"}
+"""Contours that the panel offers, with their labels."""
+
+
+def contour_of(choice: str) -> Any:
+    """Return the contour of a choice."""
+    from propkit.model.contour import Bell, Cone
+
+    return Cone("15 deg") if choice == "cone" else Bell(length=0.8 if choice == "bell 80" else 0.7)
 
 
 class NozzleFace(Face):
     """Two groups: what says the expansion (an exit size may, beside a throat size), and the size."""
 
-    minor = ("discharge_coefficient", "name")
+    minor = ("discharge_coefficient", "contour", "wall_thickness", "wall_density", "name")
 
     def groups(self) -> tuple[Group, ...]:
         """Return the groups of expansion and size with their given members."""
@@ -36,6 +46,8 @@ class NozzleFace(Face):
         unused = {name for name, model in (("freeze_at", "frozen"), ("exponent", "constant-property")) if flow != model}
         if not self.link.chamber.has("frozen_isentropic_exponent"):
             unused.add("exponent")
+        unused |= {"wall_thickness", "wall_density"} if "contour" not in given else set()
+        unused |= {"wall_density"} if "wall_thickness" not in given else set()
         two_sizes = any(name in given for name in THROATS) and any(name in given for name in LIPS)
         listed = {group.member for group in self.groups()}
         unused |= {name for name in (*EXPANSIONS, *THROATS, *LIPS, *FLOWS) if name not in listed}
@@ -82,7 +94,23 @@ class NozzleFace(Face):
         found = super().choices(name)
         if name == "flow":
             return {flow: flow for flow in self.link.chamber.flows}
+        if name == "contour":
+            listed = {NO_CONTOUR: "none", **CONTOURS}
+            return {AS_GIVEN: repr(self.link.inputs[name]), **listed} if self.choice_now(name) == AS_GIVEN else listed
         return found
+
+    def choice_now(self, name: str) -> str:
+        """Return the choice in effect; a contour that is none of those offered stays as it was given."""
+        if name != "contour":
+            return super().choice_now(name)
+        given = self.link.inputs.get(name)
+        return NO_CONTOUR if given is None else next((key for key in CONTOURS if contour_of(key) == given), AS_GIVEN)
+
+    def chosen(self, name: str, choice: str) -> Any:
+        """Return the input that a choice stands for."""
+        if name != "contour":
+            return super().chosen(name, choice)
+        return None if choice == NO_CONTOUR else self.link.inputs[name] if choice == AS_GIVEN else contour_of(choice)
 
     def suggestions(self, name: str) -> tuple[str, ...]:
         """Return what the field of the freezing place and of the sizing ambient offer."""

@@ -19,6 +19,9 @@ ALTITUDES = Unit("km", 1e3)
 class PerformanceFace(Face):
     """The ambient condition: the text field takes every form, the slider is an altitude."""
 
+    minor = ("minimum_pressure", "name")
+    only_in_code = ("losses",)
+
     def label(self, name: str) -> str:
         """Return the label of a control: the slider of the surroundings is an altitude."""
         return "surroundings (slider: altitude)" if name == "ambient" else super().label(name)

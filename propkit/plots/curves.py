@@ -14,10 +14,9 @@ import numpy as np
 from propkit import quantities, units
 from propkit.chain import case as case_stage
 from propkit.chain import chamber as chamber_stage
-from propkit.chain import performance as performance_stage
 from propkit.chain import profile
-from propkit.model import drawings
-from propkit.physics import atmosphere, gas_dynamics, separation
+from propkit.constants import STANDARD_GRAVITY
+from propkit.physics import atmosphere, gas_dynamics, separation, thrust
 from propkit.report import UnitSystem
 from propkit.series import Axis, Figure, Line, Mark, Rule, Series
 
@@ -85,7 +84,7 @@ def _curve_key(case: Any, chamber: Any) -> tuple[Any, ...]:
     low, high = 0.25 * centre, 1.75 * centre
     if not low <= ratio <= high:
         low, high = min(low, 0.5 * ratio), max(high, 1.5 * ratio)
-    streams = _Streams(case.held.oxidizer, case.held.fuel)
+    streams = _Streams(case.held)
     if chamber is None:
         return (streams, case.si("thermo_basis"), REFERENCE_PRESSURE, math.inf, "injector", low, high)
     typed = (chamber.si("contraction_ratio"), chamber.si("pressure_at"))
@@ -93,11 +92,14 @@ def _curve_key(case: Any, chamber: Any) -> tuple[Any, ...]:
 
 
 class _Streams:
-    """Two streams as a key: equal when every number in them is."""
+    """What a case mixes, as a key: equal when every number in it is."""
 
-    def __init__(self, oxidizer: case_stage.Stream, fuel: case_stage.Stream) -> None:
-        self.oxidizer, self.fuel = oxidizer, fuel
-        self.key = tuple((tuple(sorted(s.elements.items())), float(s.enthalpy), repr(float(s.density))) for s in (oxidizer, fuel))  # type: ignore[arg-type]
+    def __init__(self, held: Any) -> None:
+        self.oxidizer, self.fuel, self.additives = held.oxidizer, held.fuel, held.additives
+        self.condensed = held.mixture.condensed
+        parts = [(self.oxidizer, 0.0), (self.fuel, 0.0), *self.additives]
+        told = tuple((tuple(sorted(s.elements.items())), float(s.enthalpy), repr(float(s.density)), share) for s, share in parts)
+        self.key = (told, self.condensed)
 
     def __eq__(self, other: object) -> bool:
         return isinstance(other, _Streams) and self.key == other.key
@@ -107,7 +109,7 @@ class _Streams:
 
 
 def _combust(streams: _Streams, basis: str, pressure: float, contraction: float, place: str, ratios: np.ndarray[Any, Any]) -> Any:
-    mixture = case_stage.two_streams(streams.oxidizer, streams.fuel, ratios)
+    mixture = case_stage.two_streams(streams.oxidizer, streams.fuel, ratios, streams.additives, streams.condensed)
     return chamber_stage.combust(mixture, basis, pressure=pressure, contraction_ratio=contraction, pressure_at=place)
 
 
@@ -126,7 +128,7 @@ def _mixture_curve(
 
 
 def _mixture_point(case: Any, pressure: float) -> dict[str, float]:
-    streams = _Streams(case.held.oxidizer, case.held.fuel)
+    streams = _Streams(case.held)
     found = _combust(streams, case.si("thermo_basis"), pressure, math.inf, "injector", np.array([case.si("mixture_ratio")]))
     return {name: values[0] for name, values in _values_of(found).items()}
 
@@ -153,7 +155,7 @@ def gas_figure(chamber: Any, system: UnitSystem) -> Figure:
 def nozzle_figures(nozzle: Any, system: UnitSystem) -> tuple[Figure, Figure]:
     """Return the nozzle to scale with the flow told under the pointer, and Mach number and ratios along it."""
     outline = nozzle.figures(system)[0]
-    position, flow = _profile(nozzle)
+    position, flow = _profile(nozzle, outline)
     length = outline.x.unit
     x = Series("axial position", tuple(units.convert(value, "m", length) for value in position), length, "x")
     hover = tuple(shown(name, flow[name], system) for name in ("pressure", "temperature", "velocity", "mach"))
@@ -179,17 +181,17 @@ def nozzle_figures(nozzle: Any, system: UnitSystem) -> tuple[Figure, Figure]:
 _PLACES = {"pressure": 0, "temperature": 1, "velocity": 2, "mach": 3}
 
 
-def _profile(nozzle: Any) -> tuple[list[float], dict[str, Any]]:
-    """Return axial positions [m] and the flow there, from the drawn wall."""
-    throat, lip = nozzle.si("throat_diameter") / 2.0, nozzle.si("exit_diameter") / 2.0
-    contraction = nozzle.chamber.si("contraction_ratio")
-    chamber = throat * math.sqrt(contraction if math.isfinite(contraction) else 6.0)
-    real = nozzle.has("contour")
-    wall = np.array(drawings.contour_wall(nozzle) if real else drawings.schematic_wall(throat, lip, chamber))
-    before_throat = np.linspace(wall[0, 0], 0.0, 12) if wall[0, 0] < 0.0 else np.zeros(1)
-    places = np.unique(np.concatenate([before_throat, wall[-1, 0] * np.linspace(0.0, 1.0, 22) ** 1.5]))
-    radius = np.interp(places, wall[:, 0], wall[:, 1])
-    ratio = np.where(places == 0.0, 1.0, np.maximum((radius / throat) ** 2 / nozzle.si("discharge_coefficient"), 1.0))
+def _profile(nozzle: Any, outline: Figure) -> tuple[list[float], dict[str, Any]]:
+    """Return axial positions [m] and the flow there, from the wall as it is drawn."""
+    body = outline.layers[0]
+    assert isinstance(body, Line)
+    half = len(body.x.values) // 2
+    scale = units.convert(1.0, "m", body.x.unit)
+    x, r = (np.array(series.values[:half]) / scale for series in (body.x, body.y))
+    throat = nozzle.si("throat_diameter") / 2.0
+    places = np.unique(np.concatenate([np.linspace(min(x[0], 0.0), 0.0, 12), x[-1] * np.linspace(0.0, 1.0, 22) ** 1.5]))
+    ratio = (np.interp(places, x, r) / throat) ** 2 / nozzle.si("discharge_coefficient")
+    ratio = np.where(places == 0.0, 1.0, np.maximum(ratio, 1.0))
     before = places < 0.0
     flow: dict[str, Any] = {}
     parts = [profile.along(nozzle.held, ratio[where], supersonic=side) for where, side in ((before, False), (~before, True)) if where.any()]
@@ -244,18 +246,11 @@ def _line(x: tuple[float, ...], values: Any, curve: Series, unit: str, dash: Any
 
 
 def _delivered(performance: Any, ambient: Any, name: str) -> Any:
-    nozzle = performance.nozzle
-    found = performance_stage.deliver(
-        mass_flow=nozzle.si("mass_flow"),
-        exit_velocity=nozzle.exit.si("velocity"),
-        exit_pressure=nozzle.exit.si("pressure"),
-        exit_area=nozzle.si("exit_area"),
-        throat_area=nozzle.si("throat_area"),
-        stagnation_pressure=nozzle.chamber.si("stagnation_pressure"),
-        ambient=ambient,
-        cstar_efficiency=nozzle.chamber.si("cstar_efficiency"),
-    )
-    return getattr(found, name)
+    """Return thrust or specific impulse at ambient pressures: losses taken off, the thrust falls by pressure times exit area."""
+    force = performance.si("thrust_vacuum") - ambient * performance.nozzle.si("exit_area")
+    if name == "thrust":
+        return force
+    return thrust.specific_impulse(force, performance.si("mass_flow"), STANDARD_GRAVITY)
 
 
 def _altitude(ambient: Any) -> float:

@@ -93,7 +93,9 @@ def test_changing_the_chamber_rebuilds_everything_below_and_nothing_above(panel:
 
 def test_every_declared_input_has_a_control_with_its_own_label(panel: Any) -> None:
     shown = {entry["path"]: entry for group in panel.content()["sets"] for entry in (*group["controls"], *group["minor"])}
-    hidden = {"nozzle.freeze_at", "nozzle.exponent", "nozzle.sizing_ambient"}
+    useless = {"nozzle.freeze_at", "nozzle.exponent", "nozzle.sizing_ambient", "nozzle.wall_thickness", "nozzle.wall_density"}
+    no_text = {"case.additives", "performance.losses"}
+    hidden = useless | no_text
     for link in panel.value.chain():
         for name, declared in link.declared_inputs.items():
             path = f"{link.kind}.{name}"
@@ -410,6 +412,40 @@ def test_a_gas_given_outright_and_other_cases_have_panels() -> None:
     assert panel.errors == {}
     assert panel.value.chamber.temperature.magnitude == 2900.0
     panel.close()
+
+
+def test_cases_of_one_propellant_have_panels() -> None:
+    mono = pk.Chamber(pk.PropellantCase.monopropellant("hydrazine", ammonia_dissociation=0.5), pressure="2 MPa").panel()
+    page(mono, do="slide", path="case.ammonia_dissociation", at=0.6)
+    assert mono.errors == {}
+    assert mono.value == pk.Chamber(pk.PropellantCase.monopropellant("hydrazine", ammonia_dissociation=0.6), pressure="2 MPa")
+    cold = pk.Chamber(pk.PropellantCase.cold_gas("GN2", temperature="293 K"), pressure="1 MPa").panel()
+    page(cold, do="type", path="case.temperature", text="20 °C")
+    assert cold.errors == {}
+    assert cold.value.case.inputs["temperature"] == "20 °C"
+    for panel in (mono, cold):
+        panel.close()
+
+
+def test_what_no_text_says_is_shown_once_given_and_stays(perf: pk.Performance) -> None:
+    panel = perf.replace({"losses": {"kinetics": 0.99}, "case.additives": {"water": 0.02}, "nozzle.contour": pk.Cone("17 deg")}).panel()
+    assert control(panel, "performance.losses")["style"] == "fixed"
+    assert control(panel, "case.additives")["style"] == "fixed"
+    assert control(panel, "nozzle.contour")["choice"] == "as given"
+    page(panel, do="slide", path=PRESSURE, at=8.0)
+    assert panel.errors == {}
+    assert panel.value.inputs["losses"] == {"kinetics": 0.99}
+    page(panel, do="figure", at=1)
+    assert panel.figures()[0].title.startswith("Nozzle to scale")
+    panel.close()
+
+
+@pytest.mark.parametrize(("choice", "contour"), [("cone", pk.Cone("15 deg")), ("bell 80", pk.Bell(length=0.8)), ("none", None)])
+def test_a_contour_is_chosen(panel: Any, choice: str, contour: Any) -> None:
+    page(panel, do="choose", path="nozzle.contour", choice=choice)
+    assert panel.errors == {}
+    assert panel.value.nozzle.inputs.get("contour") == contour
+    assert control(panel, "nozzle.contour")["choice"] == choice
 
 
 # -- the widget ----------------------------------------------------------------------------------------

@@ -169,6 +169,7 @@ class ControlView {
     if (spec.style === "choice") setOptions(this.field, spec.choices, spec.choice);
     else {
       this.field.placeholder = spec.placeholder;
+      this.field.readOnly = spec.style === "fixed";
       const editing = this.touched && this.field === this.field.getRootNode().activeElement;
       if (!editing && this.field.value !== spec.text) this.field.value = spec.text;
     }
