@@ -22,7 +22,7 @@ from propkit.physics.thermodynamics import SpeciesTable
 __all__ = ["FlowState", "Frozen", "FrozenFrom", "Isentrope", "PerfectGas", "Shifting", "at_area_ratio", "at_pressure",
            "frozen", "frozen_from", "perfect_gas", "shifting", "throat"]  # fmt: skip
 
-_WIDE = 10.0
+_WIDE = 2.0
 """Subsonic area ratio above which the velocity is taken from the mass flux."""
 
 
