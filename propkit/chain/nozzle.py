@@ -15,6 +15,10 @@ from propkit.physics.expansion import FlowState, Isentrope
 from propkit.physics.thermodynamics import SpeciesTable
 
 
+AT_SONIC = 1e-6
+"""Departure of the Mach number from 1 beyond which a throat is not sonic: at a phase boundary, or frozen there."""
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Expansion:
     """Expansion of a batch: inlet, throat and exit states and the flow per effective throat area.
@@ -41,6 +45,7 @@ class Expansion:
         """Yield doubts about the states as text, code and the result they are about."""
         if self.table is None:
             return
+        yield from self._phase_doubts(index)
         for state, where in ((self.throat, "the throat"), (self.exit, "the exit")):
             if state.amounts is None:
                 continue
@@ -48,6 +53,32 @@ class Expansion:
                 self.table, state.amounts[index], float(state.temperature[index]), where, "stations"
             )
             yield from warnings.supersaturation(self.watched, self.table, state.take([index]), where, "stations")
+
+    def _phase_doubts(self, index: int) -> Iterator[tuple[str, str, str]]:
+        """Yield what two phases make doubtful: a throat at a phase boundary, and liquids and solids held as they are."""
+        if isinstance(self.isentrope, expansion.Shifting):
+            both = self.mach_beside_throat(index)
+            if both is not None:
+                temperature = float(self.throat.temperature[index])
+                yield (
+                    f"The throat lies at a phase boundary ({temperature:.5g} K), where the sound speed jumps: at the largest mass flux the Mach "
+                    f"number is {both[0]:.4g} on the upstream side and {both[1]:.4g} on the downstream side, at one velocity.",
+                    "phase-boundary",
+                    "stations",
+                )
+        elif isinstance(self.isentrope, expansion.Frozen | expansion.FrozenFrom):
+            if (self.condensed_mass_fraction(self.exit, index) or 0.0) > 0.0:
+                text = "Liquids and solids are held as they are in frozen flow: nothing melts, freezes or condenses, and heat capacities are held."
+                yield text, "held-phases", "stations"
+
+    def mach_beside_throat(self, index: int = 0) -> tuple[float, float] | None:
+        """Return the Mach number on both sides of a throat at a phase boundary; None where Mach is 1 at the throat."""
+        here = float(self.throat.mach[index])
+        if abs(here - 1.0) < AT_SONIC:
+            return None
+        one = self.isentrope.take(np.array([index]))
+        beyond = one.at_pressure(self.throat.pressure[[index]] * (1.0 - AT_SONIC), self.throat.take([index]))
+        return here, float(beyond.mach[0])
 
     def condensed_mass_fraction(self, state: FlowState, index: int = 0) -> float | None:
         """Return the mass of liquids and solids over the whole mass at a state; None where only gases are counted."""

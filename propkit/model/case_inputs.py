@@ -19,6 +19,8 @@ PRESSURES = Bounds(at_least=100.0, at_most=1e9)
 RATIOS = Bounds(at_least=1e-4, at_most=1e4)
 PERCENTS = Bounds(above=0.0, below=100.0)
 FRACTIONS = Bounds(at_least=0.0, at_most=1.0)
+_SLOW = {"C": "soot and unburnt fuel", "N": "ammonia and nitrogen"}
+"""What is slow to react in a fuel-rich gas, by element; common practice, no source."""
 _ADDITIVES = 'what is added with its mass fraction of the whole flow, for example {"water": 0.05}'
 
 
@@ -101,12 +103,8 @@ def fuel_rich_doubts(equivalence_ratio: float | None, mixture: stage.Mixture) ->
     """Yield a doubt for a mixture as rich in fuel as that of a gas generator."""
     if equivalence_ratio is None or equivalence_ratio < stage.FUEL_RICH_LIMIT:
         return
-    bound = {"C", "N"} & set(mixture.symbols)
-    why = (
-        "soot, unburnt fuel and ammonia do not come to equilibrium in the time there is"
-        if bound
-        else "mixing is then seldom complete"
-    )
+    slow = [words for symbol, words in _SLOW.items() if symbol in mixture.symbols]
+    why = f"{' and '.join(slow)} do not come to equilibrium in the time there is" if slow else "mixing is then seldom complete"
     yield Doubt(
         f"At {equivalence_ratio:.3g} times the stoichiometric fuel the real gas is far from equilibrium: {why}. A gas that was measured "
         f"goes in through pk.Chamber.from_gas(...).",

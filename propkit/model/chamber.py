@@ -271,9 +271,12 @@ class Chamber(Calculation):
         """Yield composition and assumptions."""
         pairs = [(name, value) for name, value in self.held.composition() if value >= COMPOSITION_SHOWN]
         yield sheet.composition_table(
-            pairs, f"Mole fractions of {COMPOSITION_SHOWN:.5f} and above, at the injector face."
+            pairs, f"Mole fractions of {COMPOSITION_SHOWN:.5f} and above, at the injector face{self._over_all_moles()}."
         )
         yield sheet.assumption_section(self)
+
+    def _over_all_moles(self) -> str:
+        return ", over all moles, liquids and solids included" if self.held.table.condensed.any() else ""
 
     def figures(self, system: UnitSystem = "SI") -> tuple[Figure, ...]:
         """Return the largest mole fractions as bars."""

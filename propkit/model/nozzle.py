@@ -194,6 +194,11 @@ class Nozzle(Calculation):
             problems.append(
                 Problem("exponent", repr(self._typed["exponent"]), "left out for a gas with a single exponent")
             )
+        exponent = self._values["exponent"] or "equilibrium"
+        single = flow == "constant-property" and exponent == "equilibrium" and self._values["chamber"].chooses_exponent
+        if single and self._values["chamber"].si("isentropic_exponent") <= 1.0:
+            hint = "Melting or freezing holds the temperature of this chamber: the equilibrium exponent is not above 1."
+            problems.append(Problem("exponent", repr(exponent), "'frozen' for this chamber", hint))
         if self._values["freeze_at"] not in (None, "chamber") and "shifting" not in allowed:
             allowed_here = "'chamber' or left out"
             problems.append(

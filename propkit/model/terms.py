@@ -8,6 +8,7 @@ from typing import Any
 import numpy as np
 
 from propkit.chain.case import AMOUNTS
+from propkit.chain.nozzle import AT_SONIC
 from propkit.constants import GAS_CONSTANT
 from propkit.data.atomic_weights import ATOMIC_WEIGHTS
 from propkit.model.conditions import condition, element_conditions
@@ -228,15 +229,16 @@ def _chamber_conditions(chamber: Any, name: str) -> Iterator[Step]:
     yield from element_conditions(held.table.elements, held.atoms[0], face.amounts[0] @ held.table.composition)
     if name == "characteristic_velocity":
         throat = held.throat
-        yield condition(
-            "mach",
-            "Mach number at the throat",
-            "u = a",
-            "u_t = a_t",
-            float(throat.velocity[0]),
-            float(throat.sound_speed[0]),
-            "conservation",
-        )
+        if abs(float(throat.mach[0]) - 1.0) < AT_SONIC:
+            yield condition(
+                "mach",
+                "Mach number at the throat",
+                "u = a",
+                "u_t = a_t",
+                float(throat.velocity[0]),
+                float(throat.sound_speed[0]),
+                "conservation",
+            )
         flux = float(held.stagnation.pressure[0]) / float(throat.mass_flux[0])
         yield condition(
             "cstar",
@@ -300,7 +302,7 @@ def state_conditions(nozzle: Any, state: str) -> Iterator[Step]:
     gas_constant = GAS_CONSTANT / float(there.molar_mass[0])
     rest = float(there.enthalpy[0]) + 0.5 * float(there.velocity[0]) ** 2
     scale = gas_constant * float(there.temperature[0])
-    if state == "throat":
+    if state == "throat" and abs(float(there.mach[0]) - 1.0) < AT_SONIC:
         yield condition(
             "mach",
             "Mach number at the throat",
