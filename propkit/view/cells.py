@@ -14,7 +14,7 @@ LEGEND = (("given", "given"), ("default", "default"), ("computed", "computed"))
 def unit_text(unit: str) -> str:
     """Return a unit as a person reads it."""
     shown = units.shown_unit(unit)
-    for plain, nice in (("liter", "L"), ("inch", "in"), ("foot", "ft"), ("Btu", "BTU")):
+    for plain, nice in (("liter", "L"), ("inch", "in"), ("foot", "ft")):
         shown = shown.replace(plain, nice)
     return shown
 

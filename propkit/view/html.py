@@ -30,6 +30,8 @@ _BESIDE = 3
 """With fewer given rows than this the drawing stands under them, and the sheet has two columns instead of three."""
 _LONG = 5
 """More lines than this take the full width, in two columns."""
+_TALL = 14
+"""A composition of more species than this stands below, where it has a neighbour, instead of beside the results."""
 
 
 def render(report: Report) -> str:
@@ -54,7 +56,11 @@ def render(report: Report) -> str:
 
 def _strip(report: Report) -> str:
     title = f" <b class='propkit-title'>{escape(report.title)}</b>" if report.title else ""
-    below = f" <span class='propkit-sub'>{escape(report.subtitle)}</span>" if report.subtitle else ""
+    below = (
+        f" <span class='propkit-sub'>{escape(report.subtitle)}</span>"
+        if report.subtitle not in ("", report.title)
+        else ""
+    )
     return f"<p class='propkit-strip'><span class='propkit-kind'>{escape(report.kind)}</span>{title}{below}</p>"
 
 
@@ -90,12 +96,9 @@ def _drawn_section(report: Report) -> Section | None:
     drawn = {figure.name for figure in report.figures}
     for section in report.sections:
         table = section.table
-        if (
-            table is not None
-            and cells.is_species(table.index_label)
-            and len(table.columns) == 1
-            and table.name in drawn
-        ):
+        if table is None or not cells.is_species(table.index_label) or table.name not in drawn:
+            continue
+        if len(table.columns) == 1 and len(table.index) <= _TALL:
             return section
     return None
 
@@ -130,12 +133,25 @@ def _picture(figure: Figure) -> str:
 
 
 def _sections(sections: Sequence[Section]) -> str:
-    shown = "".join(_section(section) for section in sections)
-    return f"<div class='propkit-parts'>{shown}</div>" if shown else ""
+    """Return the sections two abreast; one without a neighbour, or too wide for half the page, takes the whole of it."""
+    shown, lonely = [], ""
+    for section in sections:
+        table = section.table is not None and is_wide(section.table)
+        if table or (len(section.lines) > _LONG and not lonely):
+            shown += [_section(section, full=True)] if not lonely else [lonely, _section(section, full=True)]
+            lonely = ""
+        elif lonely:
+            shown += [lonely, _section(section)]
+            lonely = ""
+        else:
+            lonely = _section(section)
+    if lonely:
+        last = sections[-1]
+        shown.append(_section(last, full=bool(last.lines) and not last.rows and last.table is None))
+    return f"<div class='propkit-parts'>{''.join(shown)}</div>" if shown else ""
 
 
-def _section(section: Section) -> str:
-    full = (section.table is not None and is_wide(section.table)) or len(section.lines) > _LONG
+def _section(section: Section, full: bool = False) -> str:
     inner = []
     if section.rows:
         inner.append(rows_html(section.rows, section.title))
@@ -144,7 +160,10 @@ def _section(section: Section) -> str:
     if section.lines:
         if not inner:
             inner.append(f"<p class='propkit-caption'>{escape(section.title)}</p>")
-        inner.append(f"<ul class='propkit-lines'>{''.join(f'<li>{escape(line)}</li>' for line in section.lines)}</ul>")
+        long = " propkit-long" if full and len(section.lines) > _LONG else ""
+        inner.append(
+            f"<ul class='propkit-lines{long}'>{''.join(f'<li>{escape(line)}</li>' for line in section.lines)}</ul>"
+        )
     return f"<div{' class=propkit-full' if full else ''}>{''.join(inner)}</div>" if inner else ""
 
 

@@ -30,7 +30,7 @@ def value_html(row: Row) -> str:
     if row.value is None:
         return "not available"
     if isinstance(row.value, str):
-        return escape(row.value)
+        return html_species(row.value) if row.name == "formula" else escape(row.value)
     return numbers.pretty(row.value, row.digits)
 
 
@@ -54,14 +54,19 @@ def rows_html(rows: Iterable[Row], caption: str) -> str:
     """Return rows of quantities as a table: mark, label, symbol, value, unit; doubts under their number."""
     listed = list(rows)
     set_numbers = iter(lined_up(value_html(row) for row in listed if isinstance(row.value, int | float)))
+    doubted = [row for row in listed if row.uncertainty is not None]
+    sure = dict(zip(map(id, doubted), lined_up(uncertainty_html(row).strip() for row in doubted), strict=True))
     lines = []
     for row in listed:
         number = isinstance(row.value, int | float)
-        lines.append(_row(row, next(set_numbers) if number else value_html(row), number))
+        beside = f"<td class='propkit-n'>{sure.get(id(row), '')}</td>" if doubted else ""
+        lines.append(_row(row, next(set_numbers) if number else value_html(row), number, beside))
     return f"<table><caption>{escape(caption)}</caption><tbody>{''.join(lines)}</tbody></table>"
 
 
-def _row(row: Row, value: str, number: bool) -> str:
+def _row(row: Row, value: str, number: bool, beside: str) -> str:
+    """Return a row; `beside` is the cell of its uncertainty where the table has such a column."""
+    more = 1 if beside else 0
     typed = f" <small class='propkit-u'>{escape(_unbroken(f'({row.typed})'))}</small>" if cells.shows_typed(row) else ""
     sign = html_symbol(row.symbol)
     head = (
@@ -70,15 +75,15 @@ def _row(row: Row, value: str, number: bool) -> str:
     )
     if number:
         rest = (
-            f"<td class='propkit-s'>{sign}</td><td class='propkit-n'>{value}{uncertainty_html(row)}</td>"
+            f"<td class='propkit-s'>{sign}</td><td class='propkit-n'>{value}</td>{beside}"
             f"<td class='propkit-u'>{unit_html(row.unit)}</td>"
         )
     elif sign:
-        rest = f"<td class='propkit-s'>{sign}</td><td class='propkit-t' colspan='2'>{value}</td>"
+        rest = f"<td class='propkit-s'>{sign}</td><td class='propkit-t' colspan='{2 + more}'>{value}</td>"
     else:
-        rest = f"<td class='propkit-t' colspan='3'>{value}</td>"
+        rest = f"<td class='propkit-t' colspan='{3 + more}'>{value}</td>"
     doubts = "".join(doubt_html(doubt) for doubt in row.doubts)
-    below = f"<tr><td></td><td colspan='4'>{doubts}</td></tr>" if doubts else ""
+    below = f"<tr><td></td><td colspan='{4 + more}'>{doubts}</td></tr>" if doubts else ""
     return f"{head}{rest}</tr>{below}"
 
 
@@ -120,7 +125,7 @@ def table_html(table: Table) -> str:
 
 
 def _head(column: Column, species: bool, bars: bool) -> str:
-    unit = unit_html(column.unit)
+    unit = unit_html(column.unit).replace("/", "/<wbr>")
     shown = f"<br><span class='propkit-u'>{unit}</span>" if unit else ""
     sign = html_symbol(column.symbol) if column.symbol and not species else escape(column.label)
     kind = " class='propkit-n'" if cells.numeric(column) and not bars else ""

@@ -35,7 +35,7 @@ def render(report: Report) -> str:
         else rf"\textbf{{{escaped(report.kind)}}}"
     )
     blocks = [head]
-    if report.subtitle:
+    if report.subtitle not in ("", report.title):
         blocks.append(escaped(report.subtitle))
     for rows in (report.headline, report.given):
         if rows:

@@ -27,7 +27,7 @@ def escaped(text: str) -> str:
 def render(report: Report) -> str:
     """Return the report as Markdown without headings."""
     blocks = [f"**{escaped(report.kind)}: {escaped(report.title)}**" if report.title else f"**{escaped(report.kind)}**"]
-    if report.subtitle:
+    if report.subtitle not in ("", report.title):
         blocks.append(escaped(report.subtitle))
     if report.headline:
         blocks.append(_rows(report.headline, "answer"))

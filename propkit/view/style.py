@@ -72,7 +72,7 @@ _CSS = f"""
 .propkit-parts>.propkit-full{{grid-column:1/-1}}
 .propkit-sheet .propkit-lines{{margin:0 0 6px;padding:0 0 0 1.1em;list-style:disc}}
 .propkit-lines li{{margin:1px 0;break-inside:avoid}}
-.propkit-full .propkit-lines{{columns:2 330px;column-gap:36px}}
+.propkit-long{{columns:2 330px;column-gap:36px}}
 .propkit-sheet .propkit-bar{{width:24%;padding:0 14px 0 6px;vertical-align:middle}}
 .propkit-n:has(+.propkit-bar){{width:1%}}
 .propkit-pic .propkit-bar{{width:45%;padding-right:0}}
@@ -83,9 +83,9 @@ _CSS = f"""
 .propkit-eq{{padding:3px 0}}
 .propkit-eq img{{max-width:100%;height:auto;display:block;margin:0;filter:var(--pk-eq);mix-blend-mode:var(--pk-blend)}}
 .propkit-cautions b{{font-weight:600}}
-@container (max-width:860px){{.propkit-body,.propkit-two{{grid-template:'left right' auto 'pic right' 1fr/minmax(0,1fr) minmax(0,1.15fr);gap:2px 26px}}
- .propkit-picright,.propkit-two.propkit-picright{{grid-template:'left right' auto 'left pic' 1fr/minmax(0,1.1fr) minmax(0,1fr)}}
- .propkit-sheet .propkit-wide table{{font-size:12px}}.propkit-sheet .propkit-wide th,.propkit-sheet .propkit-wide td{{padding:2.5px 3px}}
+@container (max-width:930px){{.propkit-body,.propkit-two{{grid-template:'left right' auto 'pic right' 1fr/minmax(0,1fr) minmax(0,1.15fr);gap:2px 28px}}
+ .propkit-picright,.propkit-two.propkit-picright{{grid-template:'left right' auto 'left pic' 1fr/minmax(0,1.1fr) minmax(0,1fr)}}}}
+@container (max-width:860px){{.propkit-sheet .propkit-wide table{{font-size:12px}}.propkit-sheet .propkit-wide th,.propkit-sheet .propkit-wide td{{padding:2.5px 3px}}
  .propkit-sheet .propkit-wide th:first-child{{padding-left:0}}.propkit-wide tbody th{{white-space:normal}}.propkit-sheet .propkit-wide .propkit-u{{font-size:11px}}}}
 @container (max-width:540px){{.propkit-sheet .propkit-body{{grid-template:'left' auto 'right' auto 'pic' auto/minmax(0,1fr)}}
  .propkit-answers{{gap:4px 24px}}.propkit-answer>b{{font-size:21px}}.propkit-sheet .propkit-bar{{padding:0 4px 0 2px}}}}

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 from html import escape
+from itertools import pairwise
 
 from propkit.series import Axis, Figure, Line, Mark, Rule
 from propkit.view import cells, palette
@@ -81,14 +82,11 @@ def curves(figure: Figure, width: int, height: int, top: int) -> tuple[str, int]
     out.append(text(right, height - 7, _axis_title(figure.x, 9.5), size=9.5, anchor="end", colour=palette.QUIET))
     out += [_rule_line(rule, x_scale, y_scale) for rule in rules]
     out += [_line(line, x_scale, y_scale) for line in lines]
-    inked = [
-        (x_scale.at(a), y_scale.at(b)) for line in lines for a, b in zip(line.x.values, line.y.values, strict=True)
-    ]
-    for mark in marks:
-        at, level = x_scale.at(mark.x), y_scale.at(mark.y)
-        inked += [(at + share * width_of(mark.label, 10.5), level) for share in (0.0, 0.3, 0.6, 1.0)]
-    out += _rule_texts(rules, x_scale, y_scale, inked)
-    out += [_mark(mark, x_scale, y_scale) for mark in marks]
+    inked = [point for line in lines for point in _dense(line, x_scale, y_scale)]
+    placed = [_mark(mark, x_scale, y_scale, inked) for mark in marks]
+    taken = [corner for _, box in placed for corner in box]
+    out += _rule_texts(rules, x_scale, y_scale, inked + taken)
+    out += [drawn for drawn, _ in placed]
     return "".join(out), height
 
 
@@ -161,43 +159,57 @@ def _rule_line(rule: Rule, x: Scale, y: Scale) -> str:
 
 
 def _rule_texts(rules: list[Rule], x: Scale, y: Scale, inked: list[tuple[float, float]]) -> list[str]:
-    """Return the labels of rules: level ones at their end; upright ones each on a row of its own, at the top or at the foot."""
-    out, rows = [], {"top": 0, "foot": 0}
+    """Return the labels of rules: level ones at their end; upright ones near the top or the foot, where least is drawn."""
+    out: list[str] = []
+    inked = list(inked)
     for rule in rules:
-        label, wide = escape(rule.label), width_of(rule.label, 9)
+        wide = width_of(rule.label, 9)
         if rule.axis == "y":
-            out.append(text(x.end, y.at(rule.at) - 4, label, size=9, anchor="end", colour=palette.QUIET, halo=True))
-            continue
-        at = x.at(rule.at)
-        back = at + 4 + wide > x.end
-        near = [
-            level
-            for place, level in inked
-            if (at - wide - 6 if back else at) <= place <= (at if back else at + wide + 6)
-        ]
-        highest, lowest = min(near, default=y.start), max(near, default=y.start)
-        edge = "top" if highest - y.end >= y.start - lowest else "foot"
-        level = y.end + 9 + 12 * rows["top"] if edge == "top" else y.start - 5 - 12 * rows["foot"]
-        rows[edge] += 1
-        side, anchor = (at - 4, "end") if back else (at + 4, "start")
-        out.append(text(side, level, label, size=9, anchor=anchor, colour=palette.QUIET, halo=True))
+            spots = [(x.end - wide, y.at(rule.at) - 4)]
+        else:
+            at = x.at(rule.at)
+            left = at - 4 - wide if at + 4 + wide > x.end else at + 4
+            rows = [y.end + 9 + 12 * row for row in range(3)] + [y.start - 5 - 12 * row for row in range(3)]
+            spots = [(left, base) for base in rows]
+        hits = [_hits(left, base, wide, inked) for left, base in spots]
+        best = spots[hits.index(min(hits))]
+        inked += [(best[0] + share * wide, best[1] - 4) for share in (0.0, 0.25, 0.5, 0.75, 1.0)]
+        out.append(text(*best, escape(rule.label), size=9, colour=palette.QUIET, halo=True))
     return out
 
 
-def _mark(mark: Mark, x: Scale, y: Scale) -> str:
+def _hits(left: float, base: float, wide: float, inked: list[tuple[float, float]]) -> int:
+    """Return how many drawn points lie under a label."""
+    return sum(left - 3 <= x <= left + wide + 3 and base - 11 <= y <= base + 4 for x, y in inked)
+
+
+def _dense(line: Line, x: Scale, y: Scale) -> list[tuple[float, float]]:
+    """Return points closely along a line, where labels had better not stand."""
+    ends = [(x.at(a), y.at(b)) for a, b in zip(line.x.values, line.y.values, strict=True)]
+    out = list(ends)
+    for (x0, y0), (x1, y1) in pairwise(ends):
+        out += [(x0 + share * (x1 - x0), y0 + share * (y1 - y0)) for share in (0.2, 0.4, 0.6, 0.8)]
+    return out
+
+
+def _mark(mark: Mark, x: Scale, y: Scale, inked: list[tuple[float, float]]) -> tuple[str, list[tuple[float, float]]]:
+    """Return a marked point with its label on the side where least is drawn, and points of the label."""
     at, level = x.at(mark.x), y.at(mark.y)
+    wide = width_of(mark.label, 10.5)
+    best, score = (at + 8, level - 7), math.inf
+    for left, base in (
+        (at + 8, level - 7),
+        (at + 8, level + 15),
+        (at - 8 - wide, level - 7),
+        (at - 8 - wide, level + 15),
+    ):
+        outside = 1000 * (left < x.start - 30 or left + wide > x.end + 12 or base - 9 < y.end - 4 or base > y.start - 2)
+        hits = outside + _hits(left, base, wide, inked)
+        if hits < score:
+            best, score = (left, base), hits
     colour = palette.colour(mark.colour)
-    back = at + 9 + width_of(mark.label, 10.5) > x.end + 6
-    above = level + 15 if level < y.end + 14 else level - 7
-    return (
+    drawn = (
         f"<circle cx='{number(at)}' cy='{number(level)}' r='3.6' fill='{colour}' stroke='{palette.PLATE}' stroke-width='1.2'/>"
-        + text(
-            at - 8 if back else at + 8,
-            above,
-            escape(mark.label),
-            anchor="end" if back else "start",
-            colour=colour,
-            weight="bold",
-            halo=True,
-        )
+        + text(*best, escape(mark.label), colour=colour, weight="bold", halo=True)
     )
+    return drawn, [(best[0] + share * wide, best[1] - 4) for share in (0.0, 0.25, 0.5, 0.75, 1.0)] + [(at, level)]

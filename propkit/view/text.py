@@ -18,7 +18,7 @@ def render(report: Report) -> str:
     """Return the report as text, at most about 100 columns wide."""
     title = f"{report.kind}: {report.title}" if report.title else report.kind
     lines = [title, "─" * min(WIDTH, max(len(title), 40))]
-    if report.subtitle:
+    if report.subtitle not in ("", report.title):
         lines.append(report.subtitle)
     if report.headline:
         lines += ["", *_rows(report.headline)]

@@ -21,7 +21,7 @@ from propkit.view import MEDIA, render
 
 SUPERSCRIPTS = str.maketrans("⁻⁰¹²³⁴⁵⁶⁷⁸⁹", "-0123456789")
 NUMBER = re.compile(r"(?<![\w.])-?\d+(?:\.\d+)?(?:e-?\d+)?(?![\w.]*\w)")
-VOID = {"img", "br"}
+VOID = {"img", "br", "wbr"}
 
 
 def expected(value: float, digits: int) -> float:
@@ -34,7 +34,7 @@ def plain(medium: str, text: str) -> str:
     if medium == "html":
         text = re.sub(r"<style>.*?</style>|<svg.*?</svg>", "", text)
         text = re.sub(r"</(?:tr|p|li|caption)>", "\n", text)
-        text = html.unescape(re.sub(r"</?(?:span|b|i|sub|sup)\b[^>]*>", "", text))
+        text = html.unescape(re.sub(r"</?(?:span|b|i|sub|sup|wbr)\b[^>]*>", "", text))
         text = re.sub(r"<[^>]*>", " ", text)
     if medium == "latex":
         text = text.replace("\\,", "")
@@ -163,6 +163,7 @@ def test_html_is_well_formed_and_keeps_its_promises(reports: dict[str, Report], 
         "sub",
         "sup",
         "small",
+        "wbr",
         "br",
         "table",
         "caption",
