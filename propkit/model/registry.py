@@ -20,6 +20,13 @@ CLASSES = {
     "Performance": "propkit.model.performance",
     "Propellant": "propkit.model.propellant",
     "Blend": "propkit.model.blend",
+    "RecordedReconciliation": "propkit.reconcile.recorded",
+    "RecordedFiring": "propkit.reconcile.recorded",
+    "RecordedUncertainty": "propkit.study.recorded",
+    "Normal": "propkit.study.distributions",
+    "Uniform": "propkit.study.distributions",
+    "Triangular": "propkit.study.distributions",
+    "Empirical": "propkit.study.distributions",
 }
 """Class name -> module. A recipe that names anything else is refused."""
 

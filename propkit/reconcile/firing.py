@@ -422,6 +422,27 @@ class HotFire:
         """Return the sheet of the firing as neutral data that displays itself."""
         return firing_sheet.report_of(self, units, reach("render"))
 
+    def record(self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "") -> Any:
+        """Return the record of the chain with this firing and its recording, which a reviewer can recompute."""
+        import pandas as pd
+
+        from propkit.reconcile.recorded import RecordedFiring, recorded_frame
+        from propkit.study.recorded import record_of
+
+        recording, options = self._recording, dict(self._given)
+        headers = {name: f"{name} [{channel.unit or '-'}]" for name, channel in recording.channels.items()}
+        columns = {headers[name]: channel.values for name, channel in recording.channels.items()}
+        options["recording"] = recorded_frame(pd.DataFrame({"time [s]": recording.time, **columns}))
+        options["channels"] = headers
+        rule = options.pop("criterion")
+        options |= {
+            "criterion": None if rule is None else [rule.drift, rule.band],
+            "name": self._name or None,
+            "time": None,
+        }
+        texts = {"title": title or self._name, "author": author, "purpose": purpose, "notes": notes}
+        return record_of(RecordedFiring, self._target, options, **texts)
+
     def __str__(self) -> str:
         return str(self.report())
 

@@ -447,6 +447,21 @@ class Reconciliation:
         """Return routes, adjusted figures, residuals and tests as neutral data that displays itself."""
         return sheet.report_of(self, units, reach("render"))
 
+    def record(self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "") -> Any:
+        """Return the record of the chain with this reconciliation, which a reviewer can recompute."""
+        from propkit.reconcile.recorded import RecordedReconciliation
+        from propkit.study.recorded import record_of
+
+        options = {
+            "figures": self._given,
+            "free": {path: self._priors.get(path) for path in self._free if path not in self._dump},
+            **self._dump,
+            "correlation": [[first, second, value] for (first, second), value in self._correlation.items()] or None,
+            "name": self._name or None,
+        }
+        texts = {"title": title or self._name, "author": author, "purpose": purpose, "notes": notes}
+        return record_of(RecordedReconciliation, self._target, options, **texts)
+
     def __str__(self) -> str:
         return str(self.report())
 

@@ -139,6 +139,14 @@ class _Empirical(Resolved):
 class Distribution(ABC):
     """What an analyst writes about an uncertain input, before its nominal value is known."""
 
+    __slots__ = ()
+
+    def recipe(self) -> dict[str, Any]:
+        """Return plain data from which a record rebuilds the distribution."""
+        names = getattr(self, "__match_args__", ()) or ("samples",)
+        inputs = {name: getattr(self, name) for name in names}
+        return {"object": type(self).__name__, "inputs": {name: _plain(value) for name, value in inputs.items()}}
+
     @abstractmethod
     def resolve(self, nominal: float, unit: str, name: str = "value") -> Resolved:
         """Return the distribution in SI numbers.
@@ -334,6 +342,12 @@ def spread(value: object, nominal: float, unit: str, name: str = "value") -> flo
     if not found > 0.0:
         raise InputError(Problem(name, f"{value!r}", "an uncertainty above 0", "Leave the input out if it is certain."))
     return found
+
+
+def _plain(value: Any) -> Any:
+    if isinstance(value, tuple):
+        return [_plain(entry) for entry in value]
+    return f"{float(value.magnitude)!r} {value.units}" if hasattr(value, "magnitude") else value
 
 
 def _percentage(value: object, name: str) -> float | None:

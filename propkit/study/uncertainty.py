@@ -44,7 +44,7 @@ class Uncertainty:
     ... )
     >>> nozzle = pk.Nozzle(gas, area_ratio=20, throat_diameter="0.1 m")
     >>> found = pk.Uncertainty(nozzle, {"throat_diameter": "0.5 %"}, results=["mass_flow"]).run()
-    >>> round(found.table.loc["mass_flow", "standard_uncertainty"] / found.table.loc["mass_flow", "value"], 6)
+    >>> float(round(found.table.loc["mass_flow", "standard_uncertainty"] / found.table.loc["mass_flow", "value"], 6))
     0.01
     """
 
@@ -164,7 +164,7 @@ class Uncertainty:
             illegal=illegal,
         )
         linear, reason = self._linear()
-        return UncertaintyResult(self, linear, trials, reason)
+        return UncertaintyResult(self, linear, trials, reason, samples, illegal)
 
     def _linear(self) -> tuple[FirstOrder | None, str]:
         try:

@@ -43,16 +43,30 @@ class UncertaintyResult:
         First-order analysis; None where it cannot be made (a warning says why).
     trials : Trials or None
         Trials, where they were asked for.
+    asked : int, "adaptive" or None
+        Number of trials as asked for.
     """
 
-    __slots__ = ("_reason", "first_order", "plan", "trials")
+    __slots__ = ("_illegal", "_reason", "asked", "first_order", "plan", "trials")
 
     plan: Uncertainty
     first_order: FirstOrder | None
     trials: Trials | None
+    asked: int | str | None
+    _illegal: str
     _reason: str
 
-    def __init__(self, plan: Uncertainty, linear: FirstOrder | None, trials: Trials | None, reason: str = "") -> None:
+    def __init__(
+        self,
+        plan: Uncertainty,
+        linear: FirstOrder | None,
+        trials: Trials | None,
+        reason: str = "",
+        asked: int | str | None = None,
+        illegal: str = "refuse",
+    ) -> None:
+        object.__setattr__(self, "asked", asked)
+        object.__setattr__(self, "_illegal", illegal)
         object.__setattr__(self, "plan", plan)
         object.__setattr__(self, "first_order", linear)
         object.__setattr__(self, "trials", trials)
@@ -62,7 +76,7 @@ class UncertaintyResult:
         raise AttributeError("an uncertainty result is immutable")
 
     def __reduce__(self) -> tuple[Any, ...]:
-        return UncertaintyResult, (self.plan, self.first_order, self.trials, self._reason)
+        return UncertaintyResult, (self.plan, self.first_order, self.trials, self._reason, self.asked, self._illegal)
 
     # -- numbers -------------------------------------------------------------------------------------
 
@@ -237,6 +251,23 @@ class UncertaintyResult:
             results=tuple(self._with_uncertainty(row) for row in sheet.results),
             sections=(*tables, *sheet.sections),
             doubts=doubts,
+        )
+
+    def record(self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "") -> Any:
+        """Return the record of the chain with this uncertainty, which a reviewer can recompute (trials are run again)."""
+        from propkit.study.recorded import RecordedUncertainty, record_of
+
+        plan = self.plan
+        options = {
+            "inputs": plan.inputs,
+            "correlation": [[first, second, value] for (first, second), value in plan._correlation.items()] or None,
+            "results": list(self.results),
+            "samples": self.asked,
+            "seed": self.seed,
+            "illegal": self._illegal,
+        }
+        return record_of(
+            RecordedUncertainty, plan.target, options, title=title, author=author, purpose=purpose, notes=notes
         )
 
     def _how(self) -> str:
