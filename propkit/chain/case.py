@@ -88,7 +88,9 @@ def one_stream(stream: Stream, count: int = 1, condensed: bool = False) -> Mixtu
     """Return the mixture of a single stream, repeated `count` times."""
     symbols = element_order((stream,))
     atoms = np.tile(_atoms(stream, symbols), (count, 1))
-    enthalpy, density = (np.array(np.broadcast_to(values(part), (count,))) for part in (stream.enthalpy, stream.density))
+    enthalpy, density = (
+        np.array(np.broadcast_to(values(part), (count,))) for part in (stream.enthalpy, stream.density)
+    )
     return Mixture(symbols, atoms, enthalpy, density, condensed)
 
 

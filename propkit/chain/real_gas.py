@@ -81,13 +81,21 @@ def flow_doubts(row: PropellantRow, found: Expansion) -> Iterator[tuple[str, str
     where = f"At the exit {row.name} is at {float(found.exit.temperature[0]):.4g} K and {last:.3g} times its vapour pressure"
     dry = int(np.argmax(ratios > 1.0))
     if dry == 0:
-        yield f"{where}, and it is saturated from the inlet on: the flow is not that of a gas.", "saturation", "stations"
+        yield (
+            f"{where}, and it is saturated from the inlet on: the flow is not that of a gas.",
+            "saturation",
+            "stations",
+        )
         return
     low, high = np.log(np.maximum(ratios[dry - 1 : dry + 1], 1e-300))
     share = -low / (high - low)
     start = math.exp(math.log(pressures[dry - 1]) + share * math.log(pressures[dry] / pressures[dry - 1]))
     if start >= float(found.throat.pressure[0]):
-        yield f"{where}; it is saturated ahead of the throat: the mass flow too rests on its staying a gas.", "saturation", "stations"
+        yield (
+            f"{where}; it is saturated ahead of the throat: the mass flow too rests on its staying a gas.",
+            "saturation",
+            "stations",
+        )
         return
     state = flows.at_pressure(found.isentrope, start, found.throat)
     ratio = float(found.mass_flux[0] / state.mass_flux[0])

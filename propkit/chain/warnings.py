@@ -38,9 +38,7 @@ WATCHED = {"C": "carbon", "H2O": "water"}
 
 def watched_phases(table: SpeciesTable) -> SpeciesTable | None:
     """Return the liquids and solids to watch out of a table with condensed species; None when it has none of them."""
-    rows = [
-        row for row, name in enumerate(table.names) if table.condensed[row] and name.partition(" (")[0] in WATCHED
-    ]
+    rows = [row for row, name in enumerate(table.names) if table.condensed[row] and name.partition(" (")[0] in WATCHED]
     return table.take(rows) if rows else None
 
 
@@ -70,7 +68,9 @@ def supersaturation(
     else:
         ratios = saturation.vapour_saturation_ratios(phases, table, state.temperature, state.pressure, state.amounts)[0]
     for key, words in WATCHED.items():
-        found = [float(ratio) for name, ratio in zip(phases.names, ratios, strict=True) if name.partition(" (")[0] == key]
+        found = [
+            float(ratio) for name, ratio in zip(phases.names, ratios, strict=True) if name.partition(" (")[0] == key
+        ]
         largest = max(found, default=0.0)
         if largest > 1.0:
             text = (

@@ -111,7 +111,8 @@ class Calculation:
                     inputs.pop(name, None)
         hidden = getattr(cls, "undeclared", ())
         title = inputs.pop("name")
-        inputs = {name: entry for name, entry in inputs.items() if name not in hidden}
+        listed = [(name, entry) for name, entry in inputs.items() if name not in hidden]
+        inputs = dict(sorted(listed, key=lambda item: item[1].kw_only))
         inputs["name"] = title
         cls.declared_inputs = MappingProxyType(inputs)
         cls.declared_results = MappingProxyType(results)

@@ -26,7 +26,9 @@ def parts_of(case: PropellantCase) -> list[tuple[str, Any, Any, float]]:
         (role, case._values[role], held.stream(role), (1.0 - added) * shares.get(role, 1.0)) for role in case.roles
     ]
     named = case._values.get("additives") or ()
-    listed += [("additive", part, stream, share) for (part, _), (stream, share) in zip(named, held.additives, strict=True)]
+    listed += [
+        ("additive", part, stream, share) for (part, _), (stream, share) in zip(named, held.additives, strict=True)
+    ]
     return listed
 
 
@@ -81,7 +83,10 @@ def share_figure(case: PropellantCase) -> Figure:
 
 def assumptions(case: PropellantCase) -> tuple[Assumption, ...]:
     """Return what a case of burning propellants assumes."""
-    made = [basis_assumption(case), Assumption("ideal-gas", "Gases are a mixture of ideal gases.", "method", "enthalpy")]
+    made = [
+        basis_assumption(case),
+        Assumption("ideal-gas", "Gases are a mixture of ideal gases.", "method", "enthalpy"),
+    ]
     made.append(condensed_assumption(case))
     for role in case.roles:
         made.append(state_assumption(case, role))
@@ -131,7 +136,5 @@ def scope_assumption(case: PropellantCase) -> Assumption | None:
             "calculation."
         )
     else:
-        text = (
-            "A hybrid at one instant: regression rate, grain and the shift of mixture ratio over time are outside this calculation."
-        )
+        text = "A hybrid at one instant: regression rate, grain and the shift of mixture ratio over time are outside this calculation."
     return Assumption("scope", text, "method", "")

@@ -35,12 +35,16 @@ class ColdGasCase(PropellantCase):
     undeclared: ClassVar[tuple[str, ...]] = (*_TWO_ONLY, "condensed", "stoichiometric_mixture_ratio", "oxygen_balance")
     no_amount: ClassVar[str] = "it is a gas that does not burn"
 
-    gas: CustomInput = CustomInput(doc="the gas that expands as it is, without combustion", reader=as_propellant, kw_only=False)
+    gas: CustomInput = CustomInput(
+        doc="the gas that expands as it is, without combustion", reader=as_propellant, kw_only=False
+    )
     temperature: QuantityInput = QuantityInput(
         doc="temperature of the gas as stored", default=None, bounds=Bounds(at_least=20.0, at_most=3000.0)
     )
     tank_pressure: QuantityInput = QuantityInput(
-        doc="pressure at which the gas is stored; the bulk density rests on it", default=None, bounds=case_inputs.PRESSURES
+        doc="pressure at which the gas is stored; the bulk density rests on it",
+        default=None,
+        bounds=case_inputs.PRESSURES,
     )
 
     bulk_density = QuantityResult(source="as stored", doc="density of the gas in the tank")
@@ -51,7 +55,14 @@ class ColdGasCase(PropellantCase):
             return []
         row = self._values["gas"].row
         if row.phase != "gas":
-            return [Problem("gas", f"{row.name!r} (a {row.phase})", "a gas", 'For example "GN2"; pk.propellants() lists the cold gases.')]
+            return [
+                Problem(
+                    "gas",
+                    f"{row.name!r} (a {row.phase})",
+                    "a gas",
+                    'For example "GN2"; pk.propellants() lists the cold gases.',
+                )
+            ]
         if not row.gas_composition:
             hint = "A pk.Propellant of your own needs species=, the formula key of the gas in the species data."
             return [Problem("gas", repr(row.name), "a gas whose species are known", hint)]
@@ -73,7 +84,9 @@ class ColdGasCase(PropellantCase):
             density = float(np.asarray(stored.density))
             doubts = [Doubt(word, code="stored-state", about="bulk_density") for word in words]
         mixture = stage.unreacted_gas(table, row.gas_composition, temperature, density)
-        stream = stage.Stream(dict(zip(mixture.symbols, mixture.atoms[0].tolist(), strict=True)), float(mixture.enthalpy[0]), density)
+        stream = stage.Stream(
+            dict(zip(mixture.symbols, mixture.atoms[0].tolist(), strict=True)), float(mixture.enthalpy[0]), density
+        )
         results: dict[str, float] = {}
         absent = dict.fromkeys((*_TWO_ONLY, *self.undeclared), self.no_amount)
         case_inputs.mixture_results(mixture, results, absent, _NO_DENSITY)
@@ -89,7 +102,9 @@ class ColdGasCase(PropellantCase):
         if name == "bulk_density":
             stored, _ = self._values["gas"].stream(self.si("temperature"), self.si("tank_pressure"), "gas")
             text, latex = "density as stored = bulk density", r"\rho(p, T) = \rho_b"
-            yield condition(name, "density [kg/m3]", text, latex, float(np.asarray(stored.density)), self.si(name), "definition")
+            yield condition(
+                name, "density [kg/m3]", text, latex, float(np.asarray(stored.density)), self.si(name), "definition"
+            )
 
     def _table(self) -> Any:
         return load_basis(str(self.si("thermo_basis"))).table(self.held.mixture.symbols)

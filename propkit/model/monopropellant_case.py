@@ -67,11 +67,21 @@ class MonopropellantCase(PropellantCase):
         given = self._values["ammonia_dissociation"]
         if given is not None and not _is_hydrazine(propellant):
             problems.append(
-                Problem("ammonia_dissociation", f"{given:g}", "left out unless the propellant is hydrazine", f"It is {propellant.label}.")
+                Problem(
+                    "ammonia_dissociation",
+                    f"{given:g}",
+                    "left out unless the propellant is hydrazine",
+                    f"It is {propellant.label}.",
+                )
             )
         if given is not None and self._values["condensed"]:
             problems.append(
-                Problem("condensed", "True", "left out beside ammonia_dissociation", "That composition is given, and all gas.")
+                Problem(
+                    "condensed",
+                    "True",
+                    "left out beside ammonia_dissociation",
+                    "That composition is given, and all gas.",
+                )
             )
         return problems
 

@@ -105,7 +105,9 @@ class PropellantCase(Calculation):
     undeclared: ClassVar[tuple[str, ...]] = ()
     no_amount: ClassVar[str] = ""
 
-    oxidizer: CustomInput = CustomInput(doc="propellant that supplies the oxidizing elements", reader=as_propellant, kw_only=False)
+    oxidizer: CustomInput = CustomInput(
+        doc="propellant that supplies the oxidizing elements", reader=as_propellant, kw_only=False
+    )
     fuel: CustomInput = CustomInput(doc="propellant that is burnt", reader=as_propellant, kw_only=False)
     mixture_ratio: NumberInput = NumberInput(
         doc="oxidizer mass flow over fuel mass flow", default=None, bounds=case_inputs.RATIOS
@@ -132,7 +134,9 @@ class PropellantCase(Calculation):
         doc="pressure of the fuel as stored or fed", default=None, bounds=case_inputs.PRESSURES
     )
     additives: CustomInput = CustomInput(
-        doc="what is added, as mass fractions of the whole propellant flow", reader=case_inputs.read_additives, default=None
+        doc="what is added, as mass fractions of the whole propellant flow",
+        reader=case_inputs.read_additives,
+        default=None,
     )
     condensed: FlagInput = FlagInput(doc="whether liquids and solids may form among the products", default=False)
     thermo_basis: ChoiceInput = ChoiceInput(
@@ -314,7 +318,10 @@ class PropellantCase(Calculation):
         """Return the key of the written relation that gives a result of this recipe; empty where conditions say it."""
         given = [entry for entry in stage.AMOUNTS if entry in self._typed]
         if name == "mixture_ratio":
-            return {"mixture_ratio_by_volume": "mixture_ratio_of_volumes", "oxidizer_percent": "mixture_ratio_of_percent"}.get(given[0], name)
+            return {
+                "mixture_ratio_by_volume": "mixture_ratio_of_volumes",
+                "oxidizer_percent": "mixture_ratio_of_percent",
+            }.get(given[0], name)
         if name in ("enthalpy", "bulk_density") and self.held.additives:
             return ""
         entry = self.declared_results.get(name)
