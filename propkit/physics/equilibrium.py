@@ -16,7 +16,16 @@ from propkit.constants import GAS_CONSTANT
 from propkit.errors import InputError
 from propkit.physics.arrays import Array, Values, require, values
 from propkit.physics.equilibrium_condensed import SLOTS, iterate_phases
-from propkit.physics.equilibrium_newton import FlowCondition, Given, Integers, Outcome, Problem, Unknowns, iterate
+from propkit.physics.equilibrium_newton import (
+    LOWEST_TEMPERATURE,
+    FlowCondition,
+    Given,
+    Integers,
+    Outcome,
+    Problem,
+    Unknowns,
+    iterate,
+)
 from propkit.physics.equilibrium_search import Solver, cold_start, search, settled_start
 from propkit.physics.thermodynamics import SpeciesTable
 
@@ -312,8 +321,11 @@ def _retry(problem: Problem, pressure: Array, outcome: Outcome) -> npt.NDArray[n
     """Solve what the plain iteration left, the slow way; return which cases lie outside the data range."""
     outside = np.zeros(pressure.size, dtype=bool)
     left = np.flatnonzero(~outcome.converged)
-    if not left.size or problem.condition is not None:
+    if not left.size:
         return outside
+    if problem.condition is not None:
+        temperature = np.exp(outcome.unknowns.log_temperature)
+        return ~outcome.converged & (temperature < LOWEST_TEMPERATURE * (1.0 + 1e-9))
     part = Problem(problem.table, problem.elements[left], problem.given, problem.target[left])
     slots, solver = _slots(problem.table), _solver(problem.table)
     again = solver(part, cold_start(part, pressure[left], slots))

@@ -6,6 +6,7 @@ to pressure at constant entropy leads along it, and the flow condition says how 
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 from typing import Final
 
@@ -14,7 +15,7 @@ import numpy as np
 from propkit.constants import GAS_CONSTANT
 from propkit.physics import expansion_two_phase, gas_dynamics
 from propkit.physics.arrays import Array
-from propkit.physics.equilibrium import EquilibriumState, solve_batch
+from propkit.physics.equilibrium import NOT_CONVERGED, EquilibriumState, solve_batch
 from propkit.physics.equilibrium_newton import FlowCondition, FlowTrial, Integers
 from propkit.physics.expansion_state import FlowState, choose, take_cases, velocity
 from propkit.physics.thermodynamics import SpeciesTable
@@ -78,7 +79,8 @@ class Shifting:
             return expansion_two_phase.throat(self)
         gamma = np.maximum(self.reservoir.isentropic_exponent, _LOWEST_EXPONENT)
         pressure = self.pressure * gas_dynamics.pressure_ratio(1.0, gamma)
-        return self._state(self._solve(pressure, self.reservoir, _Sonic(self)))
+        found = self._state(self._solve(pressure, self.reservoir, _Sonic(self)))
+        return self._rescued(found, lambda part, rows: expansion_two_phase.throat(part))
 
     def at_mass_flux(self, mass_flux: Array, at_throat: FlowState, supersonic: bool) -> FlowState:
         """Return the state at a mass flux [kg/(m2 s)] on one side of the throat."""
@@ -108,7 +110,23 @@ class Shifting:
             return np.where(near, distance - root, missing), np.where(near, -slope / distance, slope)
 
         found = self._state(self._solve(pressure, known, condition))
-        return choose(found, at_throat, np.abs(np.log(ratio)) < _AT_THROAT)
+        found = choose(found, at_throat, np.abs(np.log(ratio)) < _AT_THROAT)
+        return self._rescued(
+            found,
+            lambda part, rows: expansion_two_phase.at_mass_flux(
+                part, mass_flux[rows], at_throat.take(rows), supersonic
+            ),
+        )
+
+    def _rescued(self, found: FlowState, bracketed: Callable[[Shifting, Integers], FlowState]) -> FlowState:
+        """Return the states with those that did not converge solved again by a bracket in pressure."""
+        rows = np.flatnonzero(found.status == NOT_CONVERGED)
+        if not rows.size:
+            return found
+        again = bracketed(self.take(rows), rows)
+        back = np.zeros(found.status.size, dtype=np.intp)
+        back[rows] = np.arange(rows.size)
+        return expansion_two_phase.chosen(found, again.take(back), found.status == NOT_CONVERGED)
 
     def _solve(self, pressure: Array, near: EquilibriumState, condition: FlowCondition | None) -> EquilibriumState:
         exponent = np.maximum(near.isentropic_exponent, _LOWEST_EXPONENT)

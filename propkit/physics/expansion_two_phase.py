@@ -76,7 +76,7 @@ def choose_better(first: FlowState, second: FlowState, where: npt.NDArray[np.boo
     """Return `first` with the cases of `where` taken from `second` if their mass flux is larger there."""
     with np.errstate(invalid="ignore"):
         better = where & (second.mass_flux > first.mass_flux)
-    return _chosen(first, second, better)
+    return chosen(first, second, better)
 
 
 def at_mass_flux(isentrope: Shifting, mass_flux: Array, at_throat: FlowState, supersonic: bool) -> FlowState:
@@ -122,7 +122,7 @@ def at_mass_flux(isentrope: Shifting, mass_flux: Array, at_throat: FlowState, su
         slope = (1.0 - 1.0 / state.mach**2) / state.isentropic_exponent
         return sign * (np.log(state.mass_flux) - goal[cases]), sign * slope
 
-    found = _chosen(_root(isentrope, question, low, high, rows, guess), at_throat, at_one)
+    found = chosen(_root(isentrope, question, low, high, rows, guess), at_throat, at_one)
     return replace(found, status=np.where(good, found.status, OUT_OF_RANGE))
 
 
@@ -182,7 +182,7 @@ def _root(
     )
 
 
-def _chosen(first: FlowState, second: FlowState, where: npt.NDArray[np.bool_]) -> FlowState:
+def chosen(first: FlowState, second: FlowState, where: npt.NDArray[np.bool_]) -> FlowState:
     """Return `first` with the cases of `where` taken from `second`, the equilibrium included."""
     if not where.any():
         return first
