@@ -14,7 +14,6 @@ from propkit.physics.arrays import Array, Values, values
 from propkit.physics.expansion import FlowState, Isentrope
 from propkit.physics.thermodynamics import SpeciesTable
 
-
 AT_SONIC = 1e-6
 """Departure of the Mach number from 1 beyond which a throat is not sonic: at a phase boundary, or frozen there."""
 
@@ -66,10 +65,9 @@ class Expansion:
                     "phase-boundary",
                     "stations",
                 )
-        elif isinstance(self.isentrope, expansion.Frozen | expansion.FrozenFrom):
-            if (self.condensed_mass_fraction(self.exit, index) or 0.0) > 0.0:
-                text = "Liquids and solids are held as they are in frozen flow: nothing melts, freezes or condenses, and heat capacities are held."
-                yield text, "held-phases", "stations"
+        elif self.condensed_mass_fraction(self.exit, index):
+            text = "Liquids and solids are held as they are in frozen flow: nothing melts, freezes or condenses, and heat capacities are held."
+            yield text, "held-phases", "stations"
 
     def mach_beside_throat(self, index: int = 0) -> tuple[float, float] | None:
         """Return the Mach number on both sides of a throat at a phase boundary; None where Mach is 1 at the throat."""

@@ -14,7 +14,7 @@ from propkit import units
 from propkit.chain import nozzle as stage
 from propkit.chain import outcome, sizing
 from propkit.errors import InputError, Problem, RangeError
-from propkit.model import nozzle_sizes, sheet
+from propkit.model import nozzle_flow, nozzle_sizes, sheet
 from propkit.model import wall as wall_of_nozzle
 from propkit.model.ambient import read_ambient
 from propkit.model.base import Calculation, Outcome
@@ -166,45 +166,7 @@ class Nozzle(Calculation):
         problems += list(nozzle_sizes.size_problems(self._typed, self._values, bad))
         if "chamber" in bad or "flow" in bad:
             return problems
-        flow = self._flow()
-        allowed = self._values["chamber"].flows
-        if flow not in allowed:
-            problems.append(
-                Problem("flow", repr(flow), " or ".join(map(repr, allowed)), self._values["chamber"].flow_reason)
-            )
-        if self._values["freeze_at"] is not None and flow != "frozen":
-            problems.append(
-                Problem(
-                    "freeze_at",
-                    as_text(self._typed["freeze_at"]),
-                    "left out unless flow is 'frozen'",
-                    f"The flow is {flow!r}.",
-                )
-            )
-        if self._values["exponent"] is not None and flow != "constant-property":
-            problems.append(
-                Problem(
-                    "exponent",
-                    repr(self._typed["exponent"]),
-                    "left out unless flow is 'constant-property'",
-                    f"The flow is {flow!r}.",
-                )
-            )
-        if self._values["exponent"] is not None and not self._values["chamber"].chooses_exponent:
-            problems.append(
-                Problem("exponent", repr(self._typed["exponent"]), "left out for a gas with a single exponent")
-            )
-        exponent = self._values["exponent"] or "equilibrium"
-        single = flow == "constant-property" and exponent == "equilibrium" and self._values["chamber"].chooses_exponent
-        if single and self._values["chamber"].si("isentropic_exponent") <= 1.0:
-            hint = "Melting or freezing holds the temperature of this chamber: the equilibrium exponent is not above 1."
-            problems.append(Problem("exponent", repr(exponent), "'frozen' for this chamber", hint))
-        if self._values["freeze_at"] not in (None, "chamber") and "shifting" not in allowed:
-            allowed_here = "'chamber' or left out"
-            problems.append(
-                Problem("freeze_at", as_text(self._typed["freeze_at"]), allowed_here, self._values["chamber"].flow_reason)
-            )
-        return problems
+        return [*problems, *nozzle_flow.flow_problems(self._values["chamber"], self._flow(), self._typed, self._values)]
 
     def displaced(self, typed: dict[str, Any], changes: Mapping[str, Any]) -> dict[str, Any]:
         """Return `typed` without the sizes that the changes displace: naming one member of a group displaces the others."""
