@@ -30,6 +30,9 @@ _PUBLIC = {
     "blend": "propkit.model.blend",
     "propellants": "propkit.model.propellant",
     "load_propellants": "propkit.model.propellant",
+    "Study": "propkit.study.sweep",
+    "solve_for": "propkit.study.solve",
+    "maximise": "propkit.study.solve",
     "Uncertainty": "propkit.study.uncertainty",
     "Normal": "propkit.study.distributions",
     "Uniform": "propkit.study.distributions",
@@ -93,5 +96,8 @@ if TYPE_CHECKING:
     from propkit.study.distributions import Normal as Normal
     from propkit.study.distributions import Triangular as Triangular
     from propkit.study.distributions import Uniform as Uniform
+    from propkit.study.solve import maximise as maximise
+    from propkit.study.solve import solve_for as solve_for
+    from propkit.study.sweep import Study as Study
     from propkit.study.uncertainty import Uncertainty as Uncertainty
     from propkit.versions import show_versions as show_versions

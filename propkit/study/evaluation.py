@@ -22,8 +22,8 @@ from propkit.chain import nozzle as nozzle_stage
 from propkit.chain import performance as performance_stage
 from propkit.chain import sizing
 from propkit.constants import GAS_CONSTANT
-from propkit.errors import InputError, Problem, PropkitError
-from propkit.model import paths
+from propkit.errors import InputError, NotAvailableError, Problem, PropkitError
+from propkit.model import paths, wall
 from propkit.model.base import Calculation
 from propkit.model.chamber import Chamber, GasChamber
 from propkit.model.declare import Bounds, CustomInput, NumberInput, QuantityInput
@@ -31,7 +31,7 @@ from propkit.model.nozzle import SIZES, Nozzle
 from propkit.model.performance import Performance
 from propkit.model.propellant_case import ROLES, PropellantCase
 from propkit.model.state import STATE_FIELDS
-from propkit.physics import stoichiometry, thrust
+from propkit.physics import balances, thrust
 
 Array = npt.NDArray[np.float64]
 
@@ -147,41 +147,59 @@ class ChainFunction:
 
     def __post_init__(self) -> None:
         known = [variable(self.target, path) for path in self.variables]
-        changed = {entry.path: entry.nominal for entry in known if not _is_enthalpy(entry.path)}
-        template = self.target.replace(changed) if changed else self.target
+        changed = {entry.path: entry.nominal for entry in known if not is_enthalpy(entry.path)}
+        template = self.target if _all_given(self.target, changed) else self.target.replace(changed)
         object.__setattr__(self, "template", template)
-        object.__setattr__(self, "batched", all(type(link) in _BATCHED for link in template.chain()))
-        if not self.batched and any(_is_enthalpy(path) for path in self.variables):
+        object.__setattr__(self, "batched", self._has_batch_form(template))
+        if not self.batched and any(is_enthalpy(path) for path in self.variables):
             raise InputError("assigned enthalpies cannot be varied in this recipe")
 
     def __call__(self, inputs: Mapping[str, Array]) -> dict[str, Array]:
         """Return the results at every case."""
+        return self.explained(inputs)[0]
+
+    def explained(self, inputs: Mapping[str, Array], count: int | None = None) -> tuple[dict[str, Array], dict[int, str]]:
+        """Return the results at every case, and why a case has none, by its number."""
+        if count is None:
+            count = len(next(iter(inputs.values())))
         if not self.batched:
-            return self._one_by_one(inputs)
-        count = len(next(iter(inputs.values())))
+            return self._one_by_one(inputs, count)
         with np.errstate(all="ignore"):
             batch = _Batch(self.template, inputs, count)
             own = f"{self.template.kind}."
             found = {}
+            whole = bool(batch.good.all())
             for name in self.results:
                 values = batch.results.get(own + name, batch.results.get(name))
                 if values is None:
                     raise InputError(Problem(name, "not available", "a result of this recipe"))
-                found[name] = np.where(batch.good, np.broadcast_to(values, (count,)), np.nan)
-            return found
+                spread = np.broadcast_to(values, (count,))
+                found[name] = spread if whole else np.where(batch.good, spread, np.nan)
+            return found, batch.reasons
 
-    def _one_by_one(self, inputs: Mapping[str, Array]) -> dict[str, Array]:
-        count = len(next(iter(inputs.values())))
+    def _has_batch_form(self, template: Calculation) -> bool:
+        """Whether the stages can take the recipe as arrays: not where a loss is estimated, or the wall itself is asked for."""
+        requests = template._values.get("losses") or ()
+        asked = {name.rpartition(".")[2] for name in (*self.results, *self.variables)}
+        return (
+            all(type(link) in _BATCHED for link in template.chain())
+            and all(entry.ratio is not None for entry in requests)
+            and not asked & {*wall.WALL_RESULTS, *_WALL_SIZES}
+        )
+
+    def _one_by_one(self, inputs: Mapping[str, Array], count: int) -> tuple[dict[str, Array], dict[int, str]]:
         found = {name: np.full(count, np.nan) for name in self.results}
+        reasons: dict[int, str] = {}
         for place in range(count):
             try:
                 made = self.template.replace({path: float(values[place]) for path, values in inputs.items()})
                 row = [paths.value_of(made, name) for name in self.results]
-            except PropkitError:
+            except PropkitError as error:
+                reasons[place] = str(error)
                 continue
             for name, value in zip(self.results, row, strict=True):
                 found[name][place] = value
-        return found
+        return found, reasons
 
 
 def own_results(target: Calculation) -> tuple[str, ...]:
@@ -214,10 +232,57 @@ def result_quantity(target: Calculation, name: str) -> quantities.Quantity:
     return quantities.quantity(place.name.rpartition(".")[2], target.chain()[place.position].kind)
 
 
-def _is_enthalpy(path: str) -> bool:
+def is_enthalpy(path: str) -> bool:
+    """Whether a path is the assigned molar enthalpy of a propellant."""
     return path.split(".")[-2:-1] != [] and path.split(".")[-2] in ROLES and path.endswith(f".{_ENTHALPY}")
 
 
+def _all_given(target: Calculation, changed: Mapping[str, float]) -> bool:
+    """Whether every path is an input that the object was given, so that its recipe is already the one wanted."""
+    given = {f"{link.kind}.{name}" for link in target.chain() for name in link.inputs}
+    return given.issuperset(changed)
+
+
+def batch_results(target: Calculation) -> dict[str, float]:
+    """Return the results of the batch form of an object at its own inputs, by whole path; empty where it has none.
+
+    They are compared with the object's own numbers first: where any differs, the batch form does not cover this recipe.
+    """
+    return target.lazily("batch_results", lambda: _checked_batch(target))
+
+
+_AGREEMENT = 1e-9
+
+
+def _checked_batch(target: Calculation) -> dict[str, float]:
+    if not all(type(link) in _BATCHED for link in target.chain()):
+        return {}
+    try:
+        with np.errstate(all="ignore"):
+            batch = _Batch(target, {}, 1)
+    except (PropkitError, AttributeError, KeyError, TypeError):
+        return {}
+    found: dict[str, float] = {}
+    if not batch.good.all():
+        return {}
+    links = {link.kind: link for link in target.chain()}
+    for path, values in batch.results.items():
+        kind, _, name = path.partition(".")
+        value = float(np.broadcast_to(values, (1,))[0])
+        try:
+            known = links[kind].given_or_result(name) if "." not in name else links[kind].si_of(name)
+        except (NotAvailableError, AttributeError):
+            continue
+        known = getattr(known, "pressure", known)
+        if known is None or not math.isfinite(value):
+            continue
+        if abs(value - float(known)) > _AGREEMENT * max(abs(value), abs(float(known)), 1e-300):
+            return {}
+        found[path] = value
+    return found
+
+
+_WALL_SIZES = ("chamber_volume", "chamber_length", "stay_time", "characteristic_length", "wall_thickness", "wall_density")
 _BATCHED = (PropellantCase, Chamber, GasChamber, Nozzle, Performance)
 
 
@@ -227,6 +292,7 @@ class _Batch:
     def __init__(self, target: Calculation, inputs: Mapping[str, Array], count: int) -> None:
         self.inputs, self.count = inputs, count
         self.good = np.ones(count, dtype=bool)
+        self.reasons: dict[int, str] = {}
         self.results: dict[str, Any] = {}
         self.mixture: case_stage.Mixture | None = None
         self.ratio: Array | None = None
@@ -236,6 +302,13 @@ class _Batch:
                 if f"{link.kind}.{name}" in inputs:
                     self.results[f"{link.kind}.{name}"] = inputs[f"{link.kind}.{name}"]
             stages.get(type(link), self._performance)(link)
+
+    def require(self, condition: Any, reason: str) -> None:
+        """Note the cases that fail a condition, with the first reason of each."""
+        fails = self.good & ~np.asarray(condition)
+        if fails.any():
+            self.reasons.update(dict.fromkeys(np.flatnonzero(fails).tolist(), reason))
+            self.good &= ~fails
 
     def value(self, link: Calculation, name: str) -> Any:
         """Return an input as an array where it varies, else as the object has it."""
@@ -251,20 +324,17 @@ class _Batch:
 
     def _case(self, link: Calculation) -> None:
         oxidizer, fuel = (self._stream(link, role) for role in ROLES)
-        stoichiometric = case_stage.mixture_ratio_of(oxidizer, fuel, 1.0)
-        if link._values["mixture_ratio"] is not None:
-            self.ratio = self.array(link, "mixture_ratio")
-        else:
-            self.ratio = stoichiometric / self.array(link, "equivalence_ratio")
-        self.mixture = case_stage.two_streams(oxidizer, fuel, self.ratio)
+        given = next(name for name in case_stage.AMOUNTS if name in link.inputs)
+        self.ratio = np.broadcast_to(case_stage.mixture_ratio_from(oxidizer, fuel, given, self.array(link, given)), (self.count,))
+        self.additive_fraction = link.additive_fraction  # type: ignore[attr-defined]
+        self.mixture = case_stage.two_streams(oxidizer, fuel, self.ratio, link.held.additives, link.held.mixture.condensed)
         self.keep(
             link,
             {
-                "mixture_ratio": self.ratio,
-                "equivalence_ratio": stoichiometric / self.ratio,
-                "stoichiometric_mixture_ratio": stoichiometric,
+                **case_stage.amounts_of(oxidizer, fuel, self.ratio),
                 "enthalpy": self.mixture.enthalpy,
                 "bulk_density": self.mixture.density,
+                "oxygen_balance": case_stage.oxygen_balance(self.mixture),
             },
         )
 
@@ -298,7 +368,7 @@ class _Batch:
         pairs = np.array([known[pair] for pair in zip(*columns, strict=True)])
         nominal = propellant.stream(None, None, role)[0]
         bad = ~np.isfinite(pairs[:, 0])
-        self.good &= ~bad
+        self.require(~bad, f"the {role} has no data at that temperature and pressure")
         return np.where(bad, float(nominal.enthalpy), pairs[:, 0]), pairs[:, 1]
 
     def _chamber(self, link: Calculation) -> None:
@@ -311,7 +381,10 @@ class _Batch:
             pressure_at=link._values["pressure_at"],
         )
         face, rest = self.reservoir.injector, self.reservoir.stagnation
-        self.good &= (face.status == 0) & (rest.status == 0) & (self.reservoir.throat.status == 0)
+        self.require(face.status != 2, "the combustion has no solution inside the range of the species data")
+        self.require(face.status == 0, "the combustion at the injector face did not converge")
+        self.require(rest.status == 0, "the stagnation state at the nozzle inlet did not converge")
+        self.require(self.reservoir.throat.status == 0, "the throat of shifting flow did not converge")
         self.rest_pressure, self.efficiency = rest.pressure, self.array(link, "cstar_efficiency")
         self.keep(link, {name: getattr(face, name) for name in chamber_stage.INJECTOR_RESULTS})
         self.keep(
@@ -363,7 +436,7 @@ class _Batch:
         else:
             ratio, pressure = (self.array(link, "area_ratio") if given else self._size_ratio(link)), None
             possible = (ratio >= 1.0) & (ratio <= 1e4)
-            self.good &= possible
+            self.require(possible, "the area ratio is not between 1 and 10 000")
             ratio = np.where(possible, ratio, 10.0)
         expansion = nozzle_stage.expand(
             self.reservoir,
@@ -373,9 +446,12 @@ class _Batch:
             area_ratio=None if ratio is None else ratio / discharge,
             exit_pressure=pressure,
         )
-        self.good &= (expansion.throat.status == 0) & (expansion.exit.status == 0) & (expansion.inlet.status == 0)
         if pressure is not None:
-            self.good &= pressure <= expansion.throat.pressure
+            self.require(pressure <= expansion.throat.pressure, "the exit pressure is above the throat pressure")
+        for place in ("throat", "exit", "inlet"):
+            status = getattr(expansion, place).status
+            self.require(status != 2, f"the {place} of the nozzle has no solution inside the range of the data")
+            self.require(status == 0, f"the {place} of the nozzle did not converge")
         geometric = ratio if ratio is not None else expansion.area_ratio * discharge
         self._sized(link, expansion, geometric, discharge)
 
@@ -390,6 +466,7 @@ class _Batch:
     def _sized(self, link: Calculation, expansion: nozzle_stage.Expansion, ratio: Array, discharge: Array) -> None:
         name = next(name for name in SIZES if name in link.inputs)
         ambient = link._values["sizing_ambient"]
+        self.divergence = self._divergence(link, ratio)
         sizes = sizing.size(
             name,
             self.array(link, name),
@@ -401,7 +478,7 @@ class _Batch:
             discharge_coefficient=discharge,
             cstar_efficiency=self.efficiency,
         )
-        self.good &= sizes.throat_area > 0.0
+        self.require(sizes.throat_area > 0.0, "no size delivers that thrust at that ambient pressure")
         self.expansion, self.sizes = expansion, sizes
         self.keep(
             link,
@@ -423,11 +500,23 @@ class _Batch:
             fields = {f"{place}.{name}": getattr(state, name, None) for name in STATE_FIELDS}
             self.keep(link, {name: values for name, values in fields.items() if values is not None})
 
+    def _divergence(self, link: Calculation, ratio: Array) -> Array:
+        """Return the divergence factor of the contour at each area ratio; 1 without a contour, NaN where none fits."""
+        contour = link._values["contour"]
+        factors: dict[float, float] = {}
+        for each in np.unique(ratio).tolist():
+            try:
+                factors[each] = wall.divergence_factor(contour, each)
+            except PropkitError:
+                factors[each] = math.nan
+        return np.array([factors[each] for each in ratio.tolist()])
+
     def _performance(self, link: Calculation) -> None:
         exit_state, sizes = self.expansion.exit, self.sizes
         given = self.inputs.get("performance.ambient")
         ambient = np.broadcast_to(link._values["ambient"].pressure if given is None else given, (self.count,))
-        self.good &= ambient < self.rest_pressure
+        self.require(ambient < self.rest_pressure, "the ambient pressure is not below the stagnation pressure")
+        losses = link.resolved_losses.ratios  # type: ignore[attr-defined]
         delivered = performance_stage.deliver(
             mass_flow=sizes.mass_flow,
             exit_velocity=exit_state.velocity,
@@ -437,15 +526,17 @@ class _Batch:
             stagnation_pressure=self.rest_pressure,
             ambient=ambient,
             cstar_efficiency=self.efficiency,
+            divergence_factor=self.divergence,
+            losses=losses,
         )
         self.keep(link, {name: getattr(delivered, name) for name in performance_stage.Delivery.__slots__})
-        self.keep(link, {"mass_flow": sizes.mass_flow, "ambient": ambient})
+        self.keep(link, {"ambient": ambient})
         if self.ratio is not None and self.mixture is not None:
             self.keep(
                 link,
                 {
-                    "oxidizer_mass_flow": stoichiometry.mix(self.ratio, sizes.mass_flow, 0.0),
-                    "fuel_mass_flow": stoichiometry.mix(self.ratio, 0.0, sizes.mass_flow),
+                    "oxidizer_mass_flow": balances.oxidizer_mass_flow(delivered.mass_flow, self.ratio, self.additive_fraction),
+                    "fuel_mass_flow": balances.fuel_mass_flow(delivered.mass_flow, self.ratio, self.additive_fraction),
                     "density_impulse": thrust.density_impulse(delivered.specific_impulse, self.mixture.density),
                 },
             )

@@ -1,0 +1,499 @@
+"""What a study yields: the table of designs, the failed ones with their reasons, the best one, exports and figures."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Mapping, Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+import numpy.typing as npt
+
+from propkit import quantities, units
+from propkit.errors import InputError, MissingExtraError, Problem, RangeError, StorageError, near_matches
+from propkit.model import paths
+from propkit.model.base import Calculation, reach, render
+from propkit.model.doubts import Doubt
+from propkit.report import Column, Report, Section, Table, UnitSystem
+from propkit.study.sweep_plan import unit_of
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    from propkit.study.sweep import Study
+
+Array = npt.NDArray[np.float64]
+
+SHOWN = 12
+"""Designs listed on the sheet of a study."""
+SHOWN_COLUMNS = 5
+
+
+class StudyResult:
+    """The results of a study; immutable.
+
+    Attributes
+    ----------
+    plan : Study
+        What was asked.
+    interrupted : bool
+        Whether the run was stopped: then the designs finished so far are here, and nothing else.
+    seconds : float
+        Time taken [s].
+    notes : tuple of str
+        What a reader should know about the run.
+    """
+
+    __slots__ = ("_columns", "_done", "_reasons", "interrupted", "notes", "plan", "seconds")
+
+    plan: Study
+    notes: tuple[str, ...]
+    interrupted: bool
+    seconds: float
+    _columns: dict[str, Array]
+    _done: npt.NDArray[np.bool_]
+    _reasons: dict[int, str]
+
+    def __init__(
+        self,
+        plan: Study,
+        columns: dict[str, Array],
+        done: npt.NDArray[np.bool_],
+        reasons: dict[int, str],
+        notes: tuple[str, ...],
+        interrupted: bool,
+        seconds: float,
+    ) -> None:
+        for column in columns.values():
+            column.setflags(write=False)
+        hold = object.__setattr__
+        hold(self, "plan", plan)
+        hold(self, "_columns", columns)
+        hold(self, "_done", done)
+        hold(self, "_reasons", reasons)
+        hold(self, "notes", notes)
+        hold(self, "interrupted", interrupted)
+        hold(self, "seconds", seconds)
+
+    def __setattr__(self, name: str, value: Any) -> None:
+        raise AttributeError("a study result is immutable")
+
+    def __reduce__(self) -> tuple[Any, ...]:
+        return StudyResult, (self.plan, self._columns, self._done, self._reasons, self.notes, self.interrupted, self.seconds)
+
+    def __len__(self) -> int:
+        return int(np.count_nonzero(self._done))
+
+    # -- tables ----------------------------------------------------------------------------------
+
+    @property
+    def results(self) -> tuple[str, ...]:
+        """Names of the results."""
+        return tuple(self._columns)
+
+    @property
+    def frame(self) -> pd.DataFrame:
+        """Every design: one column for each path, then the results; SI floats, units in ``attrs["units"]``.
+
+        Results of the study's own object have their bare name, upstream results their prefix. A failed design has NaN; a run
+        that was interrupted has the designs finished so far. The index is the number of the design.
+        """
+        import pandas as pd
+
+        rows = np.flatnonzero(self._done)
+        whole = len(rows) == len(self._done)
+        data: dict[str, Any] = {column.path: column.shown(rows) for column in self.plan.plan.columns}
+        data |= {name: values.copy() if whole else values[rows] for name, values in self._columns.items()}
+        index = pd.RangeIndex(len(rows), name="design") if whole else pd.Index(rows, name="design")
+        frame = pd.DataFrame(data, index=index, copy=False)
+        frame.attrs["units"] = self.units
+        return frame
+
+    @property
+    def units(self) -> dict[str, str]:
+        """SI unit of every column that is a number."""
+        found = {column.path: column.unit for column in self.plan.plan.numbers}
+        return found | {name: unit_of(self.plan.target, name) for name in self._columns}
+
+    @property
+    def failed(self) -> pd.DataFrame:
+        """The designs without a result: one column for each path, and ``reason``."""
+        import pandas as pd
+
+        rows = np.array(sorted(self._reasons), dtype=np.intp)
+        data: dict[str, Any] = {column.path: column.shown(rows) for column in self.plan.plan.columns}
+        data["reason"] = [self._reasons[int(row)] for row in rows]
+        frame = pd.DataFrame(data, index=pd.Index(rows, name="design"))
+        frame.attrs["units"] = {column.path: column.unit for column in self.plan.plan.numbers}
+        return frame
+
+    def values(self, name: str) -> Array:
+        """Return a column as an array in SI: a result, or a path that was varied; NaN where there is none."""
+        for column in self.plan.plan.numbers:
+            if name == column.path or column.path.endswith(f".{name}"):
+                return np.asarray(np.where(self._done, column.at(np.arange(len(self._done))), np.nan), dtype=np.float64)
+        return np.where(self._done, self._columns[self.name_of(name)], np.nan)
+
+    def name_of(self, result: str) -> str:
+        """Return the column of a result, for its name or an unambiguous suffix of its path.
+
+        Raises
+        ------
+        InputError
+            For a result that the study does not have; candidates are listed.
+        """
+        if result in self._columns:
+            return result
+        ends = [name for name in self._columns if name.endswith(f".{result}")]
+        own = f"{self.plan.target.kind}."
+        if isinstance(result, str) and result.startswith(own) and result.removeprefix(own) in self._columns:
+            return result.removeprefix(own)
+        if len(ends) == 1:
+            return ends[0]
+        near = ends or near_matches(str(result), self._columns)
+        hint = f"Did you mean {' or '.join(near)}?" if near else ""
+        raise InputError(Problem("result", repr(result), "a numeric result of this study", hint), candidates=near)
+
+    def display_frame(self, units: UnitSystem = "SI") -> pd.DataFrame:
+        """Return the table for people: display units, with the unit in each column's title, rounded as on sheets.
+
+        Parameters
+        ----------
+        units : str
+            ``"SI"`` or ``"US"``.
+        """
+        from propkit import units as unit_text
+
+        system = _system(units)
+        frame = self.frame
+        made: dict[str, Any] = {}
+        for name in frame.columns:
+            known = self.quantity(str(name))
+            column = frame[name]
+            if known is None or column.dtype.kind != "f":
+                made[str(name)] = column.to_numpy()
+                continue
+            shown, factor, offset = self.display(str(name), system)
+            text = unit_text.shown_unit(shown)
+            values = np.asarray(column, dtype=np.float64) * factor + offset
+            made[f"{name} [{text}]" if text else str(name)] = _rounded(values, max(known.digits, 4))
+        import pandas as pd
+
+        return pd.DataFrame(made, index=frame.index)
+
+    def quantity(self, name: str) -> quantities.Quantity | None:
+        """Return the catalogue row of a column; None for a choice."""
+        for column in self.plan.plan.columns:
+            if column.path == name:
+                if column.is_choice:
+                    return None
+                last = name.partition(".")[2]
+                if last.endswith(".enthalpy"):
+                    return quantities.quantity("molar_enthalpy")
+                return self.plan.target.chain()[paths.resolve(self.plan.target, name).position].declared_inputs[last].quantity
+        place = paths.resolve(self.plan.target, name)
+        link = self.plan.target.chain()[place.position]
+        return quantities.quantity(place.name.rpartition(".")[2], link.kind)
+
+    def display(self, name: str, system: UnitSystem = "SI") -> tuple[str, float, float]:
+        """Return display unit, factor and offset of a column, chosen for its whole range."""
+        known = self.quantity(name)
+        assert known is not None
+        values = self.values(name)
+        finite = values[np.isfinite(values)]
+        shown = known.shown_in(system, (float(np.abs(finite).max()),) if len(finite) else ())
+        zero = units.convert(0.0, known.unit, shown)
+        return shown, units.convert(1.0, known.unit, shown) - zero, zero
+
+    # -- choosing --------------------------------------------------------------------------------
+
+    def best(self, result: str, minimum: bool = False, refine: bool = True) -> Calculation:
+        """Return the object with the largest value of a result, refined between the designs.
+
+        Parameters
+        ----------
+        result : str
+            Name of the result.
+        minimum : bool
+            Whether the smallest is wanted.
+        refine : bool
+            Whether numbers are varied continuously between the smallest and the largest value of each path, with the choices
+            of the best design kept; else the best design itself is returned.
+
+        Returns
+        -------
+        Calculation
+            The object. `maximise` says more: whether it sits on a bound, and how it was found.
+
+        Raises
+        ------
+        RangeError
+            When no design has that result.
+        """
+        from propkit.study.solve import refined
+
+        row, name = self.best_design(result, minimum)
+        plan = self.plan.plan
+        made: Calculation = self.plan.target.replace(
+            {path: value for path, value in plan.design(row).items() if not path.endswith((".oxidizer.enthalpy", ".fuel.enthalpy"))}
+        )
+        free = {path: ends for path, ends in plan.ranges().items() if ends[0] < ends[1] and np.isfinite(ends).all()}
+        return refined(made, name, free, minimum) if refine and free else made
+
+    def best_design(self, result: str, minimum: bool = False) -> tuple[int, str]:
+        """Return the number of the design with the largest (smallest) value of a result, and its column."""
+        name = self.name_of(result)
+        values = self.values(name)
+        if not np.isfinite(values).any():
+            raise RangeError(f"no design of the study has a {name}", failed=len(self._reasons))
+        return int(np.nanargmin(values) if minimum else np.nanargmax(values)), name
+
+    def pareto(self, *results: str, minimum: Sequence[str] = ()) -> pd.DataFrame:
+        """Return the designs that none other beats in every result at once, in the order of the first result.
+
+        Parameters
+        ----------
+        *results : str
+            Two or more results to be large.
+        minimum : sequence of str
+            Those of them, or others, that are to be small.
+
+        Returns
+        -------
+        DataFrame
+            Their rows of `frame`.
+        """
+        if isinstance(minimum, str):
+            minimum = (minimum,)
+        names = tuple(dict.fromkeys((*results, *minimum)))
+        if len(names) < 2:
+            raise InputError(Problem("results", ", ".join(names) or "missing", "two results or more", "With one there is a best design: best(...)."))
+        found = [(-1.0 if name in minimum else 1.0) * self.values(name) for name in names]
+        table = np.stack(found, axis=1)
+        usable = np.flatnonzero(np.isfinite(table).all(axis=1))
+        kept = usable[undominated(table[usable])]
+        order = kept[np.lexsort((kept, -table[kept, 0]))]
+        frame = self.frame.loc[order]
+        frame.attrs["units"] = self.units
+        return frame
+
+    # -- files -----------------------------------------------------------------------------------
+
+    def to_csv(self, path: str | os.PathLike[str]) -> Path:
+        """Write the table as text, every digit kept, the SI unit in each column's title; return where.
+
+        Raises
+        ------
+        StorageError
+            When the file cannot be written.
+        """
+        target = Path(path)
+        frame = self.frame
+        known = self.units
+        frame.columns = [f"{name} [{known[name]}]" if known.get(str(name)) else str(name) for name in frame.columns]
+        frame["failed"] = [self._reasons.get(int(row), "") for row in frame.index]
+        try:
+            frame.to_csv(target, index=True, lineterminator="\n")
+        except OSError as error:
+            raise StorageError(f"{target} cannot be written: {error.strerror or error}", path=str(target)) from error
+        return target
+
+    def to_parquet(self, path: str | os.PathLike[str]) -> Path:
+        """Write the table as Parquet (extra ``study``), with the units in the metadata; return where.
+
+        Raises
+        ------
+        MissingExtraError
+            Without pyarrow.
+        StorageError
+            When the file cannot be written.
+        """
+        try:
+            import pyarrow as arrow
+            from pyarrow import parquet
+        except ImportError as error:
+            raise MissingExtraError("pyarrow", "study", "Writing Parquet") from error
+        target = Path(path)
+        frame = self.frame
+        units_text = {str(name): unit for name, unit in self.units.items()}
+        frame.attrs = {}
+        frame["failed"] = [self._reasons.get(int(row), "") for row in frame.index]
+        table = arrow.Table.from_pandas(frame)
+        import json
+
+        table = table.replace_schema_metadata({**(table.schema.metadata or {}), b"propkit.units": json.dumps(units_text).encode()})
+        try:
+            parquet.write_table(table, target)
+        except OSError as error:
+            raise StorageError(f"{target} cannot be written: {error.strerror or error}", path=str(target)) from error
+        return target
+
+    def record(self, *, title: str = "", sample: int = 12, seed: int = 0) -> Any:
+        """Return the record of the study, which a reviewer can verify: inputs, digest of the table, a sample of designs.
+
+        Parameters
+        ----------
+        title : str
+            Title of the record.
+        sample : int
+            Designs whose results are recorded and recomputed, chosen by `seed`.
+        seed : int
+            Seed of the choice.
+        """
+        return reach("study_record")(self, title=title, sample=sample, seed=seed)
+
+    # -- display ---------------------------------------------------------------------------------
+
+    @property
+    def warnings(self) -> tuple[Doubt, ...]:
+        """What to doubt about the study as a whole."""
+        found = [Doubt(note, code="run", about="frame") for note in self.notes]
+        if self._reasons:
+            kinds: dict[str, int] = {}
+            for text in self._reasons.values():
+                kinds[text] = kinds.get(text, 0) + 1
+            listed = "; ".join(f"{text} ({count})" for text, count in sorted(kinds.items(), key=lambda pair: -pair[1])[:3])
+            found.append(Doubt(f"{len(self._reasons)} of {len(self)} designs have no result: {listed}", code="failed", about="frame"))
+        return tuple(found)
+
+    def report(self, units: UnitSystem = "SI") -> Report:
+        """Return the sheet of the study: what varied, and designs spread evenly over the table."""
+        system = _system(units)
+        plan = self.plan.plan
+        return Report(
+            kind="study",
+            title="Study",
+            subtitle=f"{self.plan.target.subtitle()}; {len(self)} designs",
+            units=system,
+            sections=(Section("axes", "What varies", lines=tuple(self._axis_text(column, system) for column in plan.columns)), self._designs(system)),
+            doubts=tuple(str(doubt) for doubt in self.warnings),
+            cautions=self.plan.target.cautions(),
+            render=render,
+        )
+
+    def _axis_text(self, column: Any, system: UnitSystem) -> str:
+        if column.is_choice:
+            from propkit.study.sweep_plan import option_text
+
+            return f"{column.path}: {', '.join(str(option_text(option)) for option in column.options)}"
+        unit, factor, offset = self.display(column.path, system)
+        low, high = (float(end) * factor + offset for end in (np.min(column.values), np.max(column.values)))
+        text = units.shown_unit(unit)
+        places = len(np.unique(column.values))
+        return f"{column.path}: {places} values, {low:.5g} to {high:.5g}{f' {text}' if text else ''}"
+
+    def _designs(self, system: UnitSystem) -> Section:
+        rows = np.flatnonzero(self._done)
+        shown = rows[np.unique(np.linspace(0, len(rows) - 1, min(SHOWN, len(rows))).astype(int))] if len(rows) else rows
+        columns = []
+        for column in self.plan.plan.columns:
+            if column.is_choice:
+                columns.append(Column(column.path, column.path, "", "", 0, tuple(str(value) for value in column.shown(shown))))
+            else:
+                columns.append(self._shown_column(column.path, shown, system))
+        target = self.plan.target
+        picked = [name for name in target.headline if name in self._columns]
+        picked += [name for name in self._columns if name not in picked]
+        columns += [self._shown_column(name, shown, system) for name in picked[:SHOWN_COLUMNS]]
+        note = f"{len(shown)} of {len(rows)} designs, spread evenly; .frame has all of them, with every result in SI."
+        return Section("designs", "Designs", table=Table("designs", "Designs", "design", tuple(str(row) for row in shown), tuple(columns), note))
+
+    def _shown_column(self, name: str, rows: npt.NDArray[np.intp], system: UnitSystem) -> Column:
+        known = self.quantity(name)
+        assert known is not None
+        unit, factor, offset = self.display(name, system)
+        values = self.values(name)[rows] * factor + offset
+        return Column(name, name, known.symbol, unit, known.digits, tuple(float(value) if np.isfinite(value) else None for value in values))
+
+    def __str__(self) -> str:
+        return str(self.report())
+
+    def __repr__(self) -> str:
+        partial = ", interrupted" if self.interrupted else ""
+        return f"<results of {len(self)} designs, {len(self._reasons)} failed{partial}>"
+
+    def _repr_mimebundle_(self, include: Any = None, exclude: Any = None) -> dict[str, Any]:
+        return self.report()._repr_mimebundle_(include, exclude)
+
+    # -- figures ---------------------------------------------------------------------------------
+
+    def plot(self, x: str | None = None, y: str | None = None, *, by: str | None = None, units: UnitSystem = "SI") -> Any:
+        """Return a Bokeh figure: a result over a path, one curve for each value of `by` (extra ``notebook``).
+
+        Parameters
+        ----------
+        x : str, optional
+            Path along the axis; the path with most values by default.
+        y : str, optional
+            Result; the first of the object's headline by default.
+        by : str, optional
+            Path that tells the curves apart; another path that varies by default.
+        units : str
+            ``"SI"`` or ``"US"``.
+        """
+        return reach("study_plot")(self, x, y, by=by, units=_system(units))
+
+    def map(
+        self,
+        result: str | None = None,
+        *,
+        x: str | None = None,
+        y: str | None = None,
+        limits: Mapping[str, tuple[Any, Any]] | None = None,
+        minimum: bool = False,
+        units: UnitSystem = "SI",
+    ) -> Any:
+        """Return a Bokeh map of a result over two paths of a grid (extra ``notebook``).
+
+        Parameters
+        ----------
+        result : str, optional
+            Result whose contours are drawn; the first of the object's headline by default.
+        x, y : str, optional
+            Paths of the axes; the first two numbers that vary by default.
+        limits : mapping of str to (low, high), optional
+            Results that must stay inside a range, None for no limit; designs outside are shaded and do not count for the optimum.
+        minimum : bool
+            Whether the smallest value is the optimum that is marked.
+        units : str
+            ``"SI"`` or ``"US"``.
+        """
+        return reach("study_map")(self, result, x=x, y=y, limits=limits, minimum=minimum, units=_system(units))
+
+
+def undominated(table: Array) -> npt.NDArray[np.intp]:
+    """Return the rows of a table that no other row equals or exceeds in every column at once.
+
+    Parameters
+    ----------
+    table : array
+        Values to be large, shape (row, column).
+
+    Returns
+    -------
+    array of int
+        Row numbers, ascending. Of equal rows the first is kept.
+    """
+    order = np.lexsort(tuple(-table[:, place] for place in reversed(range(table.shape[1]))))
+    kept: list[int] = []
+    front = np.empty((0, table.shape[1]))
+    for row in order:
+        if not (front >= table[row]).all(axis=1).any():
+            kept.append(int(row))
+            front = np.vstack([front, table[row]])
+    return np.array(sorted(kept), dtype=np.intp)
+
+
+def _rounded(values: Array, digits: int) -> Array:
+    """Return numbers with so many significant digits."""
+    with np.errstate(divide="ignore", invalid="ignore"):
+        size = np.where((values != 0.0) & np.isfinite(values), np.floor(np.log10(np.abs(values))), 0.0)
+    scale = 10.0 ** (digits - 1 - size)
+    return np.where(np.isfinite(values), np.round(values * scale) / scale, values)
+
+
+def _system(units: str) -> UnitSystem:
+    if units not in ("SI", "US"):
+        raise InputError(Problem("units", repr(units), "'SI' or 'US'"))
+    return units  # type: ignore[return-value]
