@@ -16,7 +16,9 @@ from propkit.constants import GAS_CONSTANT
 from propkit.errors import InputError
 from propkit.physics.arrays import Array, Values, require, values
 from propkit.physics.equilibrium_condensed import SLOTS, iterate_phases
-from propkit.physics.equilibrium_newton import (
+from propkit.physics.equilibrium_newton import iterate
+from propkit.physics.equilibrium_search import Solver, cold_start, search, settled_start
+from propkit.physics.equilibrium_terms import (
     LOWEST_TEMPERATURE,
     FlowCondition,
     Given,
@@ -24,9 +26,7 @@ from propkit.physics.equilibrium_newton import (
     Outcome,
     Problem,
     Unknowns,
-    iterate,
 )
-from propkit.physics.equilibrium_search import Solver, cold_start, search, settled_start
 from propkit.physics.thermodynamics import SpeciesTable
 
 CONVERGED: Final = 0

@@ -19,7 +19,8 @@ import numpy as np
 import numpy.typing as npt
 
 from propkit.physics.arrays import Array
-from propkit.physics.equilibrium_newton import Integers, Outcome, Problem, Unknowns, iterate
+from propkit.physics.equilibrium_newton import iterate
+from propkit.physics.equilibrium_terms import Integers, Outcome, Problem, Unknowns
 from propkit.physics.thermodynamics import SpeciesTable
 
 SLOTS: Final = 4

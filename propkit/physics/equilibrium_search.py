@@ -15,7 +15,8 @@ import numpy.typing as npt
 
 from propkit.constants import GAS_CONSTANT
 from propkit.physics.arrays import Array
-from propkit.physics.equilibrium_newton import LOWEST_TEMPERATURE, Outcome, Problem, Unknowns, iterate
+from propkit.physics.equilibrium_newton import iterate
+from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE, Outcome, Problem, Unknowns
 
 _FIRST_TEMPERATURE: Final = 3000.0
 _SMALL_MOLECULE: Final = 3.0

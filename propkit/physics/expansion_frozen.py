@@ -16,7 +16,7 @@ from propkit.constants import GAS_CONSTANT
 from propkit.physics import gas_dynamics
 from propkit.physics.arrays import Array
 from propkit.physics.equilibrium import CONVERGED, NOT_CONVERGED, OUT_OF_RANGE
-from propkit.physics.equilibrium_newton import LOWEST_TEMPERATURE, Integers
+from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE, Integers
 from propkit.physics.expansion_shifting import Shifting
 from propkit.physics.expansion_state import FlowState, choose, take_cases, velocity
 from propkit.physics.thermodynamics import SpeciesTable, powers

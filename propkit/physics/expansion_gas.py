@@ -10,7 +10,7 @@ from propkit.constants import GAS_CONSTANT
 from propkit.physics import gas_dynamics
 from propkit.physics.arrays import Array
 from propkit.physics.equilibrium import CONVERGED, OUT_OF_RANGE
-from propkit.physics.equilibrium_newton import Integers
+from propkit.physics.equilibrium_terms import Integers
 from propkit.physics.expansion_state import FlowState, take_cases
 
 

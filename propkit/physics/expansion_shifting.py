@@ -16,7 +16,7 @@ from propkit.constants import GAS_CONSTANT
 from propkit.physics import expansion_two_phase, gas_dynamics
 from propkit.physics.arrays import Array
 from propkit.physics.equilibrium import NOT_CONVERGED, EquilibriumState, solve_batch
-from propkit.physics.equilibrium_newton import FlowCondition, FlowTrial, Integers
+from propkit.physics.equilibrium_terms import FlowCondition, FlowTrial, Integers
 from propkit.physics.expansion_state import FlowState, choose, take_cases, velocity
 from propkit.physics.thermodynamics import SpeciesTable
 

@@ -10,7 +10,7 @@ import numpy.typing as npt
 
 from propkit.physics.arrays import Array
 from propkit.physics.equilibrium import EquilibriumState
-from propkit.physics.equilibrium_newton import Integers
+from propkit.physics.equilibrium_terms import Integers
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -17,7 +17,7 @@ import numpy.typing as npt
 from propkit.physics import equilibrium, gas_dynamics
 from propkit.physics.arrays import Array
 from propkit.physics.equilibrium import CONVERGED, NOT_CONVERGED, OUT_OF_RANGE
-from propkit.physics.equilibrium_newton import Integers
+from propkit.physics.equilibrium_terms import Integers
 from propkit.physics.expansion_state import FlowState, choose
 
 if TYPE_CHECKING:

@@ -9,7 +9,7 @@ import numpy as np
 from propkit.constants import GAS_CONSTANT
 from propkit.physics.arrays import Array, Values, values
 from propkit.physics.equilibrium import CONVERGED, NOT_CONVERGED, OUT_OF_RANGE, EquilibriumState
-from propkit.physics.equilibrium_newton import LOWEST_TEMPERATURE
+from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE
 from propkit.physics.thermodynamics import SpeciesTable
 
 _ITERATIONS: Final = 80
