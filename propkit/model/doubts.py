@@ -33,16 +33,49 @@ def _doubt(text: str, code: str, about: str) -> Doubt:
 
 
 @dataclass(frozen=True, slots=True)
-class Assumption:
-    """One assumption: what is assumed, where it enters, and how it came about.
+class Price:
+    """What one alternative to an assumption would change, computed: relative changes of the results, the hardware held.
 
-    `key` is stable (``flow``, ``contraction``, ``basis``); `origin` is ``given``, ``default`` or ``method``.
+    None stands for what could not be computed; `note` then says why, or how the alternative was computed.
+    """
+
+    alternative: str
+    mass_flow: float | None = None
+    specific_impulse: float | None = None
+    thrust: float | None = None
+    note: str = ""
+
+    @property
+    def size(self) -> float:
+        """Largest of the three changes, without sign; -1 where none could be computed."""
+        known = [abs(value) for value in (self.mass_flow, self.specific_impulse, self.thrust) if value is not None]
+        return max(known, default=-1.0)
+
+
+@dataclass(frozen=True, slots=True)
+class Assumption:
+    """One assumption: what is assumed, where it enters, how it came about, and what its alternatives would change.
+
+    `key` is stable (``flow``, ``contraction``, ``basis``); `origin` is ``given``, ``default`` or ``method``. `taken` is the
+    statement in a few words. `prices` are filled in by a performance, the largest first.
     """
 
     key: str
     statement: str
     origin: str
     about: str = ""
+    taken: str = ""
+    prices: tuple[Price, ...] = ()
 
     def __str__(self) -> str:
         return self.statement
+
+    @property
+    def alternative(self) -> str:
+        """The alternative that changes most, or an empty text."""
+        return self.prices[0].alternative if self.prices else ""
+
+    @property
+    def size(self) -> float:
+        """Largest change that an alternative makes; -1 without one."""
+        return max((price.size for price in self.prices), default=-1.0)

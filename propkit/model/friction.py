@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from propkit.model.transport import gas_at_rest
+from propkit.model.transport import estimated_gas, gas_at_rest
 from propkit.model.wall import flow_at
 from propkit.physics import boundary_layer, heat_transfer
 from propkit.physics import wall as walls
@@ -34,12 +34,17 @@ def drag(nozzle: Nozzle, wall_temperature: float | None) -> tuple[float, str]:
     return found, f"momentum integral along the wall {start}, {words}"
 
 
-def along(nozzle: Nozzle, segments: tuple[Segment, ...], wall_temperature: float | None) -> tuple[float, str]:
-    """Return the thrust that a boundary layer along segments of a wall costs [N], and its thickness in words."""
-    points = walls.draw(segments, POINTS)
+def along(
+    nozzle: Nozzle, segments: tuple[Segment, ...], wall_temperature: float | None, quick: bool = False
+) -> tuple[float, str]:
+    """Return the thrust that a boundary layer along segments of a wall costs [N], and its thickness in words.
+
+    `quick` takes fewer points and Bartz's estimate of the viscosity, whose fifth root enters.
+    """
+    points = walls.draw(segments, POINTS // 2 if quick else POINTS)
     length = np.concatenate([[0.0], np.cumsum(np.hypot(np.diff(points.x), np.diff(points.r)))])
     flow = flow_at(nozzle, points.x, points.r)
-    gas = gas_at_rest(nozzle, estimate=True)
+    gas = estimated_gas(nozzle) if quick else gas_at_rest(nozzle, estimate=True)
     recovery = heat_transfer.adiabatic_wall_temperature(flow["temperature"], gas.temperature, gas.prandtl)
     temperature = recovery if wall_temperature is None else np.minimum(np.full_like(recovery, wall_temperature), recovery)
     viscosity = gas.viscosity * (flow["temperature"] / gas.temperature) ** boundary_layer.VISCOSITY_EXPONENT

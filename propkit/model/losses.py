@@ -11,8 +11,10 @@ from propkit.chain import losses as stage
 from propkit.chain import performance as delivery
 from propkit.constants import STANDARD_GRAVITY
 from propkit.errors import InputError, Problem, PropkitError, near_matches
+from propkit.model.conditions import condition
 from propkit.model.declare import as_text
 from propkit.physics import losses as physics
+from propkit.report import Step
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -156,11 +158,12 @@ def _ratio_or_decrement(label: str, given: Any) -> tuple[float | None, float | N
 
 @dataclass(frozen=True, slots=True)
 class Resolved:
-    """Losses of a performance: ratios for the delivery stage, sources and estimate marks by name, and notes in words."""
+    """Losses of a performance by name: ratios for the delivery stage, sources, how estimates came about, and their relations."""
 
     ratios: dict[str, float] = field(default_factory=dict)
     sources: dict[str, str] = field(default_factory=dict)
     estimates: dict[str, str] = field(default_factory=dict)
+    relations: dict[str, tuple[str, dict[str, float]]] = field(default_factory=dict)
 
 
 NOTHING = Resolved()
@@ -189,7 +192,7 @@ def resolve(requests: Requests, nozzle: Nozzle, ambient: float) -> Resolved:
                 raise InputError(Problem(f"losses: {entry.name}", f"{entry.decrement:g} s", f"below the specific impulse that is left, {before:.4g} s"))
             ratio = float(physics.ratio_of_decrement(entry.decrement, before))
         else:
-            ratio, made.estimates[entry.name] = _estimate(entry, nozzle, ambient, before)
+            ratio, made.estimates[entry.name], made.relations[entry.name] = _estimate(entry, nozzle, ambient, before)
         made.ratios[entry.name] = ratio
         made.sources[entry.name] = entry.source
     return made
@@ -217,16 +220,19 @@ def _impulse_before(name: str, nozzle: Nozzle, ambient: float, ratios: Mapping[s
     return ideal
 
 
-def _estimate(entry: Request, nozzle: Nozzle, ambient: float, before: float) -> tuple[float, str]:
-    """Return the estimated ratio and how it came about in words."""
+def _estimate(
+    entry: Request, nozzle: Nozzle, ambient: float, before: float
+) -> tuple[float, str, tuple[str, dict[str, float]]]:
+    """Return the estimated ratio, how it came about in words, and its relation with the numbers put in."""
     label = f"losses: {entry.name}"
     if entry.name == "kinetics":
         if nozzle.flow != "shifting":
             raise InputError(Problem(label, "'estimate'", "given as a number with this flow", "The estimate lies between shifting and frozen flow and starts from shifting."))
         share = physics.KINETICS_SHARE if entry.parameter is None else entry.parameter
         shifting, frozen = stage.shifting_and_frozen(nozzle.chamber.held, nozzle.si("area_ratio") / nozzle.si("discharge_coefficient"), ambient)
-        ratio = float(physics.kinetics_ratio(shifting, min(frozen, shifting), share))
-        return ratio, f"{share:.3g} of the way from shifting ({shifting:.5g} s) to frozen ({frozen:.5g} s)"
+        terms = {"shifting": shifting, "frozen": min(frozen, shifting), "share": share}
+        ratio = float(physics.kinetics_ratio(**terms))
+        return ratio, f"{share:.3g} of the way from shifting ({shifting:.5g} s) to frozen ({frozen:.5g} s)", ("kinetics_ratio", terms)
     if entry.name == "boundary layer":
         from propkit.model import friction
 
@@ -234,7 +240,7 @@ def _estimate(entry: Request, nozzle: Nozzle, ambient: float, before: float) -> 
             raise InputError(Problem(label, "'estimate'", "given as a number without a contour", "The integral method runs along a wall: give the nozzle a contour."))
         drag, words = friction.drag(nozzle, entry.parameter)
         force = before * nozzle.si("mass_flow") * STANDARD_GRAVITY
-        return float(physics.boundary_layer_ratio(drag, force)), words
+        return float(physics.boundary_layer_ratio(drag, force)), words, ("boundary_layer_ratio", {"drag": drag, "thrust": force})
     if "condensed_mass_fraction" not in nozzle.exit.names():
         raise InputError(Problem(label, "a velocity lag", "left out for a gas without liquids and solids", "Nothing lags behind it."))
     fraction = nozzle.exit.si("condensed_mass_fraction")
@@ -242,7 +248,9 @@ def _estimate(entry: Request, nozzle: Nozzle, ambient: float, before: float) -> 
     momentum = terms["mass_flow"] * terms["cstar_efficiency"] * terms["exit_velocity"]
     share = momentum / (momentum + (terms["exit_pressure"] - ambient) * terms["exit_area"])
     lag = float(entry.parameter or 0.0)
-    return float(physics.two_phase_ratio(fraction, lag, share)), f"{fraction:.3g} of the mass lags by {100.0 * lag:.3g} % of the velocity"
+    numbers = {"condensed_mass_fraction": fraction, "velocity_lag": lag, "momentum_share": share}
+    words = f"{fraction:.3g} of the mass lags by {100.0 * lag:.3g} % of the velocity"
+    return float(physics.two_phase_ratio(**numbers)), words, ("two_phase_ratio", numbers)
 
 
 # -- the ledger -----------------------------------------------------------------------------------
@@ -297,6 +305,32 @@ def thrust_lost(performance: Performance) -> Iterator[tuple[physics.Entry, float
     for entry in entries(performance)[1]:
         release = entry.name == "energy release"
         yield entry, 0.0 if release else flow * entry.decrement
+
+
+def working(performance: Performance) -> Iterator[tuple[str, str, dict[str, float]]]:
+    """Yield (name, relation, numbers) of the losses that a relation gives: estimates, and the divergence of the contour."""
+    yield from ((f"{name.replace(' ', '_')}_ratio", *made) for name, made in performance.resolved_losses.relations.items())
+    terms = _terms(performance.nozzle, performance.si("ambient"))
+    if terms["divergence_factor"] != 1.0:
+        push = (terms["exit_pressure"] - terms["ambient"]) * terms["exit_area"]
+        momentum = terms["mass_flow"] * terms["cstar_efficiency"] * terms["exit_velocity"]
+        momentum = performance.resolved_losses.ratios.get("kinetics", 1.0) * (momentum + push) - push
+        numbers = {"divergence_factor": terms["divergence_factor"], "momentum_thrust": momentum, "pressure_thrust": push}
+        yield "divergence_ratio", "divergence_ratio", numbers
+
+
+def conditions(performance: Performance) -> Iterator[Step]:
+    """Yield the ledger as a condition: the ideal specific impulse times every ratio is the delivered one."""
+    if not worth_showing(performance):
+        return
+    ideal, listed = entries(performance)
+    words = " * ".join(f"{entry.ratio:.8g} ({entry.name})" for entry in listed)
+    made = ideal
+    for entry in listed:
+        made *= entry.ratio
+    text = f"ideal specific impulse * {words} = delivered"
+    latex = r"I_{sp,id} \prod \eta_i = I_{sp}"
+    yield condition("ledger", "ledger of the specific impulse [s]", text, latex, made, performance.si("specific_impulse"), "cpia-246")
 
 
 def worth_showing(performance: Performance) -> bool:

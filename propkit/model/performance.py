@@ -10,10 +10,11 @@ import numpy as np
 from propkit import quantities, units
 from propkit.chain import performance as stage
 from propkit.errors import Problem
+from propkit.model import loss_sheet
 from propkit.model import losses as bookkeeping
 from propkit.model import separation as criteria
-from propkit.model import sheet
 from propkit.model.ambient import Ambient, read_ambient
+from propkit.model.assumptions import Assumptions, priced
 from propkit.model.base import Calculation, Outcome
 from propkit.model.declare import Bounds, CustomInput, NumberResult, QuantityInput, QuantityResult
 from propkit.model.doubts import Assumption, Doubt
@@ -223,17 +224,24 @@ class Performance(Calculation):
         return f"{self.nozzle.subtitle()}, at {self._values['ambient'].text}"
 
     def _own_assumptions(self) -> tuple[Assumption, ...]:
-        return (
-            Assumption(
-                "full-flow", "The nozzle flows full; separation is warned of, not modelled.", "method", "thrust"
-            ),
-            Assumption(
-                "one-dimensional",
-                "One-dimensional flow: no divergence, friction or kinetic loss is taken off.",
-                "default",
-                "specific_impulse",
-            ),
-        )
+        made = [
+            Assumption("full-flow", "The nozzle flows full; separation is warned of, not modelled.", "method", "thrust"),
+        ]
+        if self.nozzle.has("contour"):
+            text = f"Divergence of the {self.nozzle.input_text('contour')} is taken off the momentum thrust."
+            made.append(Assumption("one-dimensional", text, "given", "specific_impulse"))
+        else:
+            text = "One-dimensional flow: no divergence is taken off."
+            made.append(Assumption("one-dimensional", text, "default", "specific_impulse"))
+        if self._values["losses"]:
+            text = f"Losses taken off: {self.input_text('losses')}."
+            made.append(Assumption("losses", text, "given", "specific_impulse"))
+        return tuple(made)
+
+    @property
+    def assumptions(self) -> Assumptions:
+        """Assumptions that carry the numbers, each with what its alternatives would change; the largest first."""
+        return self.lazily("assumptions", lambda: priced(self, super(Performance, self).assumptions))
 
     def cross_check(self) -> Any:
         """Return an independent solution of chamber, throat and exit by Cantera's own solver, with the differences.
@@ -251,12 +259,21 @@ class Performance(Calculation):
         """Yield stations, composition, assumptions and the check by the second engine."""
         from propkit.model import crosscheck
 
+        yield from self.assumptions.sections()
+        if bookkeeping.worth_showing(self):
+            yield loss_sheet.section(self, system)
+        found = criteria.section(self, system)
+        if found is not None:
+            yield found
         yield from self.nozzle.flow_sections(system)
-        yield sheet.assumption_section(self)
         yield Section("checks", "Checks", lines=(crosscheck.one_line(self),))
 
     def figures(self, system: UnitSystem = "SI") -> tuple[Figure, ...]:
-        """Return thrust against altitude, with the ambient condition marked."""
+        """Return the losses from ideal to delivered where there are any, and thrust against altitude."""
+        drawn = (loss_sheet.figure(self),) if bookkeeping.worth_showing(self) else ()
+        return (*drawn, self._altitude_figure(system))
+
+    def _altitude_figure(self, system: UnitSystem) -> Figure:
         altitudes = np.linspace(0.0, 60e3, 61)
         pressures = atmosphere.pressure(altitudes)
         forces = self.si("thrust_vacuum") - pressures * self.nozzle.si("exit_area")
@@ -277,13 +294,6 @@ class Performance(Calculation):
         )
         mark = Mark(min(max(at, 0.0), 60e3) / scale, units.convert(self.si("thrust"), row.unit, unit), ambient.text)
         alt = f"Thrust against altitude: {shown[0]:.4g} {units.shown_unit(unit)} at sea level, {shown[-1]:.4g} at 60 km"
-        return (
-            Figure(
-                "altitude",
-                "Thrust against altitude",
-                alt,
-                Axis("altitude", length),
-                Axis("thrust", unit, "F"),
-                (line, mark),
-            ),
+        return Figure(
+            "altitude", "Thrust against altitude", alt, Axis("altitude", length), Axis("thrust", unit, "F"), (line, mark)
         )

@@ -11,6 +11,7 @@ from propkit.chain.case import AMOUNTS
 from propkit.chain.nozzle import AT_SONIC
 from propkit.constants import GAS_CONSTANT
 from propkit.data.atomic_weights import ATOMIC_WEIGHTS
+from propkit.model import losses
 from propkit.model.conditions import condition, element_conditions
 from propkit.physics import stoichiometry
 from propkit.report import Step
@@ -180,6 +181,9 @@ def supporting(link: Any, name: str) -> Iterator[tuple[str, str, Mapping[str, fl
         if flow.flow == "constant-property":
             yield "mass_flow_in_closed_form", "choked_mass_flux", reservoir_of(flow)
     if name.startswith(("thrust", "specific_impulse", "effective_exhaust")) and link.kind == "performance":
+        if link.resolved_losses.ratios:
+            yield from losses.working(link)
+            return
         yield (
             "delivered_velocity",
             "delivered_velocity",
@@ -212,6 +216,8 @@ def conditions(link: Any, name: str) -> Iterator[Step]:
             yield from _chamber_conditions(link, name)
         return
     nozzle = link if link.kind == "nozzle" else link.nozzle
+    if link.kind == "performance" and name.startswith(("thrust", "specific_impulse")) and not name.endswith("_vacuum"):
+        yield from losses.conditions(link)
     if name in ("mass_flow", "throat_area", "throat_diameter", "characteristic_velocity"):
         yield from state_conditions(nozzle, "throat")
     elif link.kind == "performance" or name in ("exit_area", "exit_diameter", "area_ratio", "exit_pressure"):

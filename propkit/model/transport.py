@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
@@ -47,14 +48,11 @@ def gas_at_rest(nozzle: Nozzle, estimate: bool = False) -> GasAtRest:
     """
     reservoir: Any = nozzle.chamber.held
     case = nozzle.chamber.case_or_none
-    if case is None or not hasattr(reservoir, "stagnation"):
-        gas = nozzle.held.isentrope
-        gamma, gas_constant = float(gas.gamma[0]), float(gas.gas_constant[0])
-        heat = gamma / (gamma - 1.0) * gas_constant
-        return _estimated(gamma, GAS_CONSTANT / gas_constant, heat, float(gas.temperature[0]), None)
+    if case is None:
+        return estimated_gas(nozzle)
     rest = reservoir.stagnation
     temperature = float(rest.temperature[0])
-    frozen_heat, heat = float(rest.frozen_specific_heat[0]), float(rest.specific_heat[0])
+    heat = float(rest.specific_heat[0])
     amounts = rest.amounts[0]
     table = reservoir.table
     fractions = {name: float(value) for name, value in zip(table.names, amounts / amounts.sum(), strict=True)}
@@ -65,17 +63,31 @@ def gas_at_rest(nozzle: Nozzle, estimate: bool = False) -> GasAtRest:
     except NotAvailableError:
         if not estimate:
             raise
-        return _estimated(float(rest.frozen_isentropic_exponent[0]), float(rest.molar_mass[0]), frozen_heat, temperature, heat)
-    return GasAtRest(found.viscosity, found.specific_heat, found.prandtl, temperature, heat, SOURCE, found.doubt)
+        return estimated_gas(nozzle)
+    return GasAtRest(
+        found.viscosity, found.specific_heat, found.prandtl, temperature, heat if math.isfinite(heat) else None, SOURCE, found.doubt
+    )
 
 
-def _estimated(gamma: float, molar_mass: float, heat: float, temperature: float, equilibrium: float | None) -> GasAtRest:
+def estimated_gas(nozzle: Nozzle) -> GasAtRest:
+    """Return Bartz's estimates of the transport properties from molar mass and exponent of the gas at rest."""
+    reservoir: Any = nozzle.chamber.held
+    rest = getattr(reservoir, "stagnation", None)
+    if rest is not None:
+        gamma, molar_mass = float(rest.frozen_isentropic_exponent[0]), float(rest.molar_mass[0])
+        frozen_heat, heat, temperature = (
+            float(getattr(rest, name)[0]) for name in ("frozen_specific_heat", "specific_heat", "temperature")
+        )
+    else:
+        gamma, gas_constant = float(reservoir.isentropic_exponent[0]), float(reservoir.gas_constant[0])
+        molar_mass, temperature = GAS_CONSTANT / gas_constant, float(reservoir.temperature[0])
+        frozen_heat = heat = gamma / (gamma - 1.0) * gas_constant
     return GasAtRest(
         float(heat_transfer.estimated_viscosity(molar_mass, temperature)),
-        heat,
+        frozen_heat,
         float(heat_transfer.estimated_prandtl(gamma)),
         temperature,
-        equilibrium,
+        heat if math.isfinite(heat) else None,
         "bartz-1957",
         "Viscosity and Prandtl number are Bartz's estimates from molar mass and exponent: the gas has no transport data.",
     )
