@@ -24,6 +24,10 @@ def panel_of(calculation: Any) -> Any:
     except ImportError as error:
         raise MissingExtraError(error.name or "ipywidgets", "notebook", "a panel") from error
     del anywidget, bokeh, ipywidgets
+    if calculation.kind in ("firing", "reconciliation"):
+        from propkit.panels.analysis import FiringPanel, ReconciliationPanel
+
+        return (FiringPanel if calculation.kind == "firing" else ReconciliationPanel)(calculation)
     from propkit.panels.panel import Panel
 
     return Panel(calculation)

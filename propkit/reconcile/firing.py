@@ -422,6 +422,12 @@ class HotFire:
         """Return the sheet of the firing as neutral data that displays itself."""
         return firing_sheet.report_of(self, units, reach("render"))
 
+    kind = "firing"
+
+    def panel(self) -> Any:
+        """Return the interactive panel: the window turned by hand (extra ``notebook``)."""
+        return reach("panel")(self)
+
     def record(self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "") -> Any:
         """Return the record of the chain with this firing and its recording, which a reviewer can recompute."""
         import pandas as pd

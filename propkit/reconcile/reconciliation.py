@@ -447,6 +447,12 @@ class Reconciliation:
         """Return routes, adjusted figures, residuals and tests as neutral data that displays itself."""
         return sheet.report_of(self, units, reach("render"))
 
+    kind = "reconciliation"
+
+    def panel(self) -> Any:
+        """Return the interactive panel: figures struck out and put back (extra ``notebook``)."""
+        return reach("panel")(self)
+
     def record(self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "") -> Any:
         """Return the record of the chain with this reconciliation, which a reviewer can recompute."""
         from propkit.reconcile.recorded import RecordedReconciliation
