@@ -6,10 +6,10 @@ from collections.abc import Iterator
 from html import escape
 from typing import Any
 
-from propkit.errors import NotAvailableError, PropkitError, RecordError
+from propkit import quantities
+from propkit.errors import PropkitError, RecordError
 from propkit.memo import markup
 from propkit.memo.identities import identities
-from propkit.model import sheet
 from propkit.model.base import Calculation
 from propkit.record.build import CAUTIONS
 from propkit.record.outcome import Verification
@@ -20,6 +20,7 @@ from propkit.sources import SOURCES, reference
 from propkit.view import numbers
 
 _MOST_ORIGINS = 1
+_ORDER = ("chamber", "throat", "exit")
 _ABOUT = {"given": "as given", "default": "default", "method": "of the method", "computed": "computed"}
 
 
@@ -62,6 +63,7 @@ def chapters(material: Material) -> Iterator[tuple[str, str]]:
         ("Results", _results),
         ("Assumptions", _assumptions),
         ("Inputs", _inputs),
+        ("Results along the chain", _between),
         ("Working", _working),
         ("Stations and composition", _stations),
         ("Checks", _checks),
@@ -123,6 +125,15 @@ def _inputs(material: Material) -> Iterator[str]:
             yield markup.data_table(section.table)
 
 
+def _between(material: Material) -> Iterator[str]:
+    for report, link in zip(material.reports[:-1], material.links, strict=False):
+        shown = {row.name for row in report.headline}
+        rows = [*(row for row in report.headline if row.kind == "computed"), *(row for row in report.results if row.name not in shown)]
+        if rows:
+            yield f"<h3>{escape(link.title)}</h3>"
+            yield markup.rows_table(rows)
+
+
 def _working(material: Material) -> Iterator[str]:
     told: set[str] = set()
     for report, link in zip(material.reports, material.links, strict=True):
@@ -171,17 +182,22 @@ def _checks(material: Material) -> Iterator[str]:
 
 
 def _second_engine(material: Material) -> Iterator[str]:
-    try:
-        check = material.calculation.cross_check()  # type: ignore[attr-defined]
-    except (NotAvailableError, AttributeError):
-        reason = material.content["second_engine"].get("reason", "it is recorded with a performance")
-        yield f"<p>Not compared: {escape(str(reason))}.</p>"
+    check = material.content["second_engine"]
+    differences = check.get("differences")
+    if not differences:
+        yield f"<p>Not compared: {escape(str(check.get('reason', 'no reason is recorded')))}.</p>"
         return
-    yield f"<p>{escape(str(check))}</p>"
-    names = list(dict.fromkeys(name for station in check.differences.values() for name in station))
+    largest = max(abs(value) for station in differences.values() for value in station.values())
+    yield (
+        f"<p>{escape(str(check['engine']))} solved chamber, throat and exit independently, on the same data. The largest relative difference is "
+        f"{numbers.pretty(largest, 2)} (enthalpy and entropy relative to RT and R).</p>"
+    )
+    order = [name for name in quantities.CATALOGUE if any(name in station for station in differences.values())]
+    names = order + sorted({name for station in differences.values() for name in station} - set(order))
+    stations = sorted(differences, key=lambda name: _ORDER.index(name) if name in _ORDER else len(_ORDER))
     rows = [
-        (station, *(numbers.pretty(values[name], 2) if name in values else "" for name in names))
-        for station, values in check.differences.items()
+        (station, *(numbers.pretty(differences[station][name], 2) if name in differences[station] else "" for name in names))
+        for station in stations
     ]
     yield markup.text_table(("difference", *(name.replace("_", " ") for name in names)), rows, range(1, len(names) + 1))
 

@@ -11,6 +11,7 @@ from typing import Any
 
 from propkit.memo.record_page import record_page
 from propkit.memo.record_pdf import record_pdf
+from propkit.record.canonical import canonical_bytes
 from propkit.record.record import Record
 
 SPECIFICATION = "https://w3id.org/ro/crate/1.1"
@@ -151,4 +152,4 @@ def _cell(value: Any) -> Any:
     """Return a cell that a spreadsheet takes as what it is: text never starts a formula."""
     if isinstance(value, str) and value.startswith(_FORMULA):
         return f"'{value}"
-    return repr(value) if isinstance(value, float) else value
+    return canonical_bytes(value).decode() if isinstance(value, int | float) else value

@@ -51,8 +51,8 @@ def read_notebook(path: Path) -> Any:
     if not isinstance(value, Mapping) or not isinstance(value.get("cells"), list):
         raise RecordError(f"{path.name} is not a notebook of format 4: it has no list of cells")
     try:
-        notebook = nbformat.from_dict({"metadata": {}, "nbformat": 4, "nbformat_minor": 5, **value})
-        notebook = rejoin_lines(notebook)
+        notebook = nbformat.from_dict({"metadata": {}, "nbformat": 4, "nbformat_minor": 5, **value})  # type: ignore[no-untyped-call]
+        notebook = rejoin_lines(notebook)  # type: ignore[no-untyped-call]
         _give_ids(notebook)
         nbformat.validate(notebook)
     except Exception as error:

@@ -35,13 +35,13 @@ def _nozzle(nozzle: Any) -> Iterator[Step]:
             passed = state.si("density") * state.si("velocity") * area
             yield condition(f"mass_{state.station}", f"mass flow through the {state.station} [kg/s]", "rho u A = mass flow times c* efficiency", "", passed, flow, "conservation")
     if "enthalpy" in exit_state.names():
-        energies = [state.si("enthalpy") + 0.5 * state.si("velocity") ** 2 for state in (exit_state, nozzle.inlet)]
+        out, into = (state.si("enthalpy") + 0.5 * state.si("velocity") ** 2 for state in (exit_state, nozzle.inlet))
         scale = throat.si("pressure") / throat.si("density")
-        yield condition("energy", "stagnation enthalpy, exit and inlet [J/kg]", "h + u^2/2 at the exit = at the inlet", "", *energies, "conservation", scale)
+        yield condition("energy", "stagnation enthalpy, exit and inlet [J/kg]", "h + u^2/2 at the exit = at the inlet", "", out, into, "conservation", scale)
     if "entropy" in exit_state.names():
         scale = throat.si("pressure") / (throat.si("density") * throat.si("temperature"))
-        sides = exit_state.si("entropy"), nozzle.inlet.si("entropy")
-        yield condition("entropy", "entropy, exit and inlet [J/(kg K)]", "s at the exit = at the inlet", "", *sides, "conservation", scale)
+        out, into = exit_state.si("entropy"), nozzle.inlet.si("entropy")
+        yield condition("entropy", "entropy, exit and inlet [J/(kg K)]", "s at the exit = at the inlet", "", out, into, "conservation", scale)
 
 
 def _performance(performance: Any) -> Iterator[Step]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import base64
+import math
 from collections.abc import Iterable, Sequence
 from html import escape
 
@@ -12,6 +13,10 @@ from propkit.series import Figure
 from propkit.sources import reference
 from propkit.view import cells, numbers, svg
 from propkit.view.symbols import html_species, html_symbol
+
+
+_LOWEST_POWER = -12
+_SUPERSCRIPTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 
 
 def value_text(row: Row) -> str:
@@ -118,10 +123,16 @@ def working(steps: Iterable[Step], untitled: str = "") -> str:
 def conditions_table(steps: Iterable[Step]) -> str:
     """Return the conditions that iterated states satisfy: both sides evaluated, and the residual."""
     rows = [
-        (step.label, step.text, numbers.grouped(f"{step.left:.9g}"), numbers.grouped(f"{step.right:.9g}"), numbers.pretty(step.residual or 0.0, 2))
+        (step.label, step.text, numbers.grouped(f"{step.left:.9g}"), numbers.grouped(f"{step.right:.9g}"), power_above(step.residual or 0.0))
         for step in steps
     ]
-    return text_table(("condition", "relation", "left side", "right side", "residual"), rows, (2, 3, 4))
+    return text_table(("condition", "relation", "left side", "right side", "residual below"), rows, (2, 3, 4))
+
+
+def power_above(value: float) -> str:
+    """Return the next power of ten above a residual, at least 1e-12: what is left of an iteration is noise in its digits."""
+    power = max(math.ceil(math.log10(abs(value))), _LOWEST_POWER) if value else _LOWEST_POWER
+    return f"10{str(power).translate(_SUPERSCRIPTS)}"
 
 
 def _step(step: Step, untitled: str) -> str:

@@ -24,6 +24,7 @@ from propkit.record.sheet import HEADLINES
 from propkit.record.storage import make_folder, write_atomically
 from propkit.view import cells, numbers
 
+
 @dataclass(slots=True)
 class Written:
     """What was written, and what went wrong while the notebook was executed."""
@@ -110,7 +111,7 @@ def notebook_bytes(notebook: Any) -> bytes:
     """Return a notebook as the bytes of its file."""
     from nbformat.v4.rwbase import split_lines
 
-    divided = split_lines(copy.deepcopy(notebook))
+    divided = split_lines(copy.deepcopy(notebook))  # type: ignore[no-untyped-call]
     return (json.dumps(divided, indent=1, ensure_ascii=False, sort_keys=True, allow_nan=False) + "\n").encode()
 
 

@@ -147,9 +147,9 @@ def _code_appendix(blocks: Sequence[Block]) -> str:
 def highlighted(code: str) -> str:
     """Return Python code with its comments, names and texts told apart."""
     try:
-        from pygments import highlight
-        from pygments.formatters import HtmlFormatter
-        from pygments.lexers import PythonLexer
+        from pygments import highlight  # type: ignore[import-untyped, unused-ignore]
+        from pygments.formatters import HtmlFormatter  # type: ignore[import-untyped, unused-ignore]
+        from pygments.lexers import PythonLexer  # type: ignore[import-untyped, unused-ignore]
     except ImportError:
         return f"<pre>{html.escape(code)}</pre>"
     made: str = highlight(code, PythonLexer(), HtmlFormatter(nowrap=True))

@@ -7,7 +7,6 @@ import warnings
 from collections.abc import Sequence
 from datetime import UTC, datetime
 from importlib import resources
-from typing import Any
 
 from propkit.errors import MissingExtraError, RecordError
 from propkit.memo.typeset import typeset_blocks
@@ -71,19 +70,15 @@ def compiled(
     with resources.as_file(home.joinpath("fonts")) as fonts, warnings.catch_warnings():
         warnings.simplefilter("ignore")
         try:
-            made: bytes = typst.compile(
+            made: bytes = typst.compile(  # type: ignore[call-overload, unused-ignore]
                 home.joinpath("memo.typ").read_bytes(),
                 font_paths=[str(fonts)],
                 ignore_system_fonts=True,
                 format="pdf",
                 sys_inputs={"memo": json.dumps(data, ensure_ascii=False)},
                 pdf_standards=["a-2b"],
-                timestamp=_stamp(stamp),
+                timestamp=stamp,
             )
         except typst.TypstError as error:
             raise RecordError(f"the memo cannot be set as PDF: {str(error).splitlines()[0][:300]}") from None
     return made
-
-
-def _stamp(moment: datetime) -> Any:
-    return int(moment.timestamp())

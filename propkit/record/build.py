@@ -10,7 +10,7 @@ from typing import Any
 from propkit.bridge.basis import load_basis
 from propkit.errors import InputError, NotAvailableError, Problem, PropkitError
 from propkit.model.base import Calculation
-from propkit.model.declare import CustomInput
+from propkit.model.declare import CustomInput, Declared
 from propkit.record.canonical import digest_of, plain, text_digest
 from propkit.versions import numeric_versions
 
@@ -119,10 +119,10 @@ def _object(link: Calculation) -> dict[str, Any]:
     for name in (*link.resolved(), *link.declared_results):
         if not link.has(name) or name in inputs:
             continue
-        entry = link.declared_results.get(name) or link.declared_inputs[name]
+        declared: Declared = link.declared_results.get(name) or link.declared_inputs[name]
         value = plain(link.si(name))
         if value is not None:
-            results[name] = {"value": value, "unit": entry.quantity.unit}
+            results[name] = {"value": value, "unit": declared.quantity.unit}
     absent = {
         name: str(reason)
         for name, reason in link._outcome.absent.items()

@@ -24,6 +24,7 @@ _TOPICS = {
     "texts": "Texts",
 }
 _MOST = 40
+_TEXTS = ("title", "author", "purpose", "notes", "description")
 
 
 @dataclass(frozen=True, slots=True)
@@ -100,21 +101,31 @@ def _change(leaf: Leaf) -> str:
 def compare(first: Record, second: Record) -> Comparison:
     """Return what differs between two records; nothing is recomputed."""
     one, two = first.content, second.content
-    named = [{entry["key"]: f"{entry['statement']} ({entry['origin']})" for entry in side["assumptions"]} for side in (one, two)]
-    warned = [{entry["text"]: "present" for entry in side["warnings"]} for side in (one, two)]
     found = {
         "inputs": _differing(_objects(one, "inputs"), _objects(two, "inputs"), typed=False),
-        "assumptions": _differing(*named),
-        "warnings": _differing(*warned),
-        "data": _differing(*({"basis": side["basis"], "propellants": side["propellants"]} for side in (one, two))),
+        "assumptions": _differing(_statements(one), _statements(two)),
+        "warnings": _differing(_warned(one), _warned(two)),
+        "data": _differing(_picked(one, "basis", "propellants"), _picked(two, "basis", "propellants")),
         "versions": _differing(first.provenance["versions"], second.provenance["versions"]),
         "results": _differing(_objects(one, "results"), _objects(two, "results")),
-        "stations": _differing(*(_by_station(side) for side in (one, two))),
+        "stations": _differing(_by_station(one), _by_station(two)),
         "composition": _differing({"composition": one["composition"]}, {"composition": two["composition"]}),
-        "texts": _differing(*({name: side[name] for name in ("title", "author", "purpose", "notes", "description")} for side in (one, two))),
+        "texts": _differing(_picked(one, *_TEXTS), _picked(two, *_TEXTS)),
     }
     labels = [f"{record.title} (made {record.provenance['time']}, {record.digest[:19]}…)" for record in (first, second)]
     return Comparison(labels[0], labels[1], found)
+
+
+def _statements(content: Mapping[str, Any]) -> dict[str, str]:
+    return {entry["key"]: f"{entry['statement']} ({entry['origin']})" for entry in content["assumptions"]}
+
+
+def _warned(content: Mapping[str, Any]) -> dict[str, str]:
+    return {entry["text"]: "present" for entry in content["warnings"]}
+
+
+def _picked(content: Mapping[str, Any], *names: str) -> dict[str, Any]:
+    return {name: content[name] for name in names}
 
 
 def _objects(content: Mapping[str, Any], part: str) -> dict[str, Any]:

@@ -97,11 +97,12 @@ def _from_notebook(data: bytes, name: str) -> Contents:
     if not isinstance(cells, list) or not all(isinstance(cell, Mapping) for cell in cells):
         raise RecordError("this is not a notebook of format 4: it has no list of cells")
     sources = {text_digest(_source(cell)): place for place, cell in enumerate(cells, 1) if cell.get("cell_type") == "code"}
+    carried = [(place, cell, list(_documents(cell))) for place, cell in enumerate(cells, 1) if cell.get("cell_type") == "code"]
+    if sum(len(documents) for _, _, documents in carried) > MOST_RECORDS:
+        raise RecordError(f"the notebook holds more than {MOST_RECORDS} records")
     found = []
-    for place, cell in enumerate(cells, 1):
-        if cell.get("cell_type") != "code":
-            continue
-        for number, document in enumerate(_documents(cell), 1):
+    for place, cell, documents in carried:
+        for number, document in enumerate(documents, 1):
             record = _record_at(document, f"cell {place}")
             label = f"{name}, cell {place}" + (f", record {number}" if number > 1 else "")
             found.append(Found(label, record, (_cell_check(record, sources, place, cell),)))

@@ -59,8 +59,8 @@ def leaves(recorded: Any, other: Any, path: str = "") -> Iterator[Leaf]:
             yield from leaves(recorded.get(key, ABSENT), other.get(key, ABSENT), f"{path}.{key}" if path else str(key))
     elif isinstance(recorded, list) and isinstance(other, list):
         for place in range(max(len(recorded), len(other))):
-            pair = (side[place] if place < len(side) else ABSENT for side in (recorded, other))
-            yield from leaves(*pair, f"{path}.{place + 1}")
+            one, two = (side[place] if place < len(side) else ABSENT for side in (recorded, other))
+            yield from leaves(one, two, f"{path}.{place + 1}")
     else:
         yield _leaf(recorded, other, path)
 
@@ -70,6 +70,8 @@ def _leaf(recorded: Any, other: Any, path: str) -> Leaf:
         gap = abs(float(recorded) - float(other))
         if path.startswith("composition."):
             return Leaf(path, recorded, other, gap, gap <= max(FRACTION, RELATIVE * abs(other)))
+        if path.startswith("assumptions."):
+            return Leaf(path, recorded, other, gap, gap <= RELATIVE)
         relative = gap / abs(other) if other else gap
         return Leaf(path, recorded, other, relative, relative <= RELATIVE)
     empty = isinstance(recorded, Mapping | list) and not recorded and other == ABSENT

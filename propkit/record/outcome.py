@@ -14,7 +14,7 @@ CheckStatus = Literal["same", "noted", "differs"]
 
 _WORDS = {"same": "agrees", "noted": "noted", "differs": "DIFFERS"}
 _MOST_SHOWN = 25
-_ILLEGAL_XML = {code: "\ufffd" for code in (*range(9), 11, 12, *range(14, 32), 0xFFFE, 0xFFFF)}
+_ILLEGAL_XML = dict.fromkeys((*range(9), 11, 12, *range(14, 32), 0xFFFE, 0xFFFF), "\ufffd")
 
 
 @dataclass(frozen=True, slots=True)

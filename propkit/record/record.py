@@ -33,7 +33,7 @@ class Record:
     __slots__ = ("_calculation", "_document", "_migrated_from", "_seals")
 
     def __init__(self, document: Mapping[str, Any]) -> None:
-        plain_document = copy.deepcopy(dict(document)) if isinstance(document, Mapping) else document
+        plain_document = _ordered(document)
         version = schema.version_of(plain_document)
         self._seals = (digest_of(plain_document.get("content")), whole_digest(plain_document))
         self._migrated_from = None if version == schema.VERSION else version
@@ -248,6 +248,13 @@ class Record:
 
     def __deepcopy__(self, memo: Any) -> Record:
         return self
+
+
+def _ordered(value: Any) -> Any:
+    """Return a copy with the keys of every mapping in order, so that a record made and a record read show the same."""
+    if isinstance(value, Mapping):
+        return {key: _ordered(value[key]) for key in sorted(value, key=str)}
+    return [_ordered(entry) for entry in value] if isinstance(value, list | tuple) else value
 
 
 def record_of(calculation: Calculation, *, title: str = "", author: str = "", purpose: str = "", notes: str = "") -> Record:

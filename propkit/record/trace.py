@@ -209,7 +209,7 @@ class _Tracer:
     def _rests_on(self, link: Calculation, name: str) -> tuple[Origin, ...]:
         if link.kind == "nozzle":
             quantity = name.removeprefix("exit_")
-            return (self.of(link, f"exit.{quantity}"),) if quantity in link.exit.names() else ()
+            return (self.of(link, f"exit.{quantity}"),) if f"exit.{quantity}" in link.state_paths() else ()
         if link.kind != "chamber":
             return ()
         parts = [self.of(link, part) for part in ("pressure", "contraction_ratio", "pressure_at") if part != name and link.has(part)]

@@ -21,6 +21,7 @@ VERSION_EFFECT = 1e-3
 """Relative difference up to which a value may differ because versions or data differ; beyond it the value is a mismatch."""
 
 _CAN_MOVE_NUMBERS = ("propkit", "numpy", "scipy", "cantera")
+_ROUNDING = 1e-10
 _EDGE = 0.01
 """Width of the band round the smallest recorded fraction in which a species may be on one side only."""
 
@@ -136,13 +137,18 @@ def _comparison_checks(compared: tuple[Leaf, ...], moved: bool) -> Iterator[Chec
     for group, listed in groups.items():
         wrong = [leaf for leaf in listed if not leaf.same]
         largest = max((leaf.difference for leaf in listed if leaf.difference is not None), default=None)
-        words = f"{len(listed)} compared" + ("" if largest is None else f", largest difference {largest:.1e}")
+        words = f"{len(listed)} compared" + ("" if largest is None else f", largest difference {_size(largest)}")
         if not wrong:
             yield Check(group.replace("_", " "), "same", words)
         elif moved and all(_effect_of_versions(leaf) for leaf in wrong):
             yield Check(group.replace("_", " "), "noted", f"{words}; {len(wrong)} differ, an effect of other versions or data")
         else:
             yield Check(group.replace("_", " "), "differs", f"{words}; {len(wrong)} differ")
+
+
+def _size(difference: float) -> str:
+    """Return a difference; what is smaller than rounding matters is said as such, so that it reads the same each time."""
+    return f"{difference:.1e}" if difference >= _ROUNDING else f"below {_ROUNDING:.0e}"
 
 
 def _effect_of_versions(leaf: Leaf) -> bool:

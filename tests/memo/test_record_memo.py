@@ -1,0 +1,204 @@
+"""The memo of a record: page, PDF and archive say the same numbers as the object."""
+
+import csv
+import io
+import json
+import re
+import subprocess
+import unicodedata
+import zipfile
+
+import pytest
+
+import propkit as pk
+from propkit.errors import RecordError
+from propkit.memo.crate import SPECIFICATION, record_crate
+from propkit.record.containers import records_of
+from propkit.record.files import verify_file
+from propkit.view import numbers
+
+HOSTILE = '"#panic() \\ $x$ *b* _i_ <b> &amp; @x [y] =1+1 ```'
+
+
+@pytest.fixture(scope="module")
+def perf():
+    case = pk.PropellantCase("NTO", "MMH", mixture_ratio=1.9)
+    chamber = pk.Chamber(case, pressure="2.4 MPa", contraction_ratio=3, cstar_efficiency=0.97)
+    nozzle = pk.Nozzle(chamber, area_ratio=80, throat_diameter="40 mm", flow="frozen", freeze_at="throat")
+    return pk.Performance(nozzle, ambient="vacuum")
+
+
+@pytest.fixture(scope="module")
+def record(perf):
+    return perf.record(title=f"Title {HOSTILE}", author="A. Analyst", purpose=f"Purpose {HOSTILE}", notes="#import \"@preview/x:1.0.0\"")
+
+
+@pytest.fixture(scope="module")
+def files(record, tmp_path_factory):
+    folder = tmp_path_factory.mktemp("memo")
+    for suffix in (".html", ".pdf", ".zip", ".json"):
+        record.save(folder / f"memo{suffix}")
+    return folder
+
+
+def pdf_text(path):
+    run = subprocess.run(["pdftotext", "-layout", str(path), "-"], capture_output=True, text=True, check=True)
+    return run.stdout
+
+
+def spaceless(text):
+    """Return text without spaces of any width, figures of powers as plain figures."""
+    return "".join(unicodedata.normalize("NFKC", text).split())
+
+
+def shown_numbers(report):
+    for row in report.rows():
+        if isinstance(row.value, float):
+            yield row.name, numbers.pretty(row.value, row.digits)
+    for section in report.sections:
+        if section.table is not None and section.name in ("stations", "composition", "propellants"):
+            for column in section.table.columns:
+                for value in column.values:
+                    if isinstance(value, float):
+                        yield f"{section.name} {column.name}", numbers.pretty(value, column.digits)
+
+
+def test_every_number_of_the_sheet_is_in_page_and_pdf(perf, files):
+    page = spaceless(re.sub(r"<[^>]+>", " ", (files / "memo.html").read_text()))
+    printed = spaceless(pdf_text(files / "memo.pdf"))
+    count = 0
+    for link in (perf, perf.case):
+        for name, text in shown_numbers(link.report()):
+            assert spaceless(text) in page, name
+            assert spaceless(text) in printed, name
+            count += 1
+    assert count > 60
+
+
+def test_user_text_is_text_everywhere(files):
+    page = (files / "memo.html").read_text()
+    assert "&lt;b&gt; &amp;amp; @x" in page
+    assert "#panic()" in spaceless(pdf_text(files / "memo.pdf"))
+    assert "@preview" in pdf_text(files / "memo.pdf")
+
+
+def test_chapters_and_pages(files):
+    text = pdf_text(files / "memo.pdf")
+    for title in ("Purpose", "Results", "Assumptions", "Inputs", "Working", "Stations", "Checks", "Warnings", "References", "Provenance"):
+        assert title in text
+    assert re.search(r"page 1 of [4-9]", text)
+    assert text.count("A. Analyst") > 3
+
+
+def test_same_record_same_bytes(record, files):
+    again = pk.Record.load(files / "memo.json")
+    from propkit.memo.record_page import record_page
+    from propkit.memo.record_pdf import record_pdf
+
+    assert record_pdf(again) == (files / "memo.pdf").read_bytes()
+    assert record_page(again) == (files / "memo.html").read_bytes()
+    assert record_crate(again) == (files / "memo.zip").read_bytes()
+
+
+def test_pdf_is_an_archive_pdf(files):
+    data = (files / "memo.pdf").read_bytes()
+    assert b"pdfaid:part" in data
+    info = subprocess.run(["pdfinfo", str(files / "memo.pdf")], capture_output=True, text=True, check=True).stdout
+    assert "A4" in info
+    fonts = subprocess.run(["pdffonts", str(files / "memo.pdf")], capture_output=True, text=True, check=True).stdout
+    assert "PropkitSans" in fonts
+    assert all(line.split()[-5] == "yes" for line in fonts.splitlines()[2:]), fonts
+
+
+def test_files_verify(files):
+    for name in ("memo.html", "memo.zip", "memo.json"):
+        result = verify_file(files / name)
+        assert result.status == "verified", str(result)
+    assert pk.Record.load(files / "memo.zip") == pk.Record.load(files / "memo.json")
+
+
+def test_a_record_that_does_not_verify_makes_no_memo(record, tmp_path):
+    document = record.document
+    document["content"]["objects"]["performance"]["results"]["thrust"]["value"] *= 2
+    with pytest.raises(RecordError, match="does not verify"):
+        pk.Record(document).save(tmp_path / "x.pdf")
+    assert not list(tmp_path.iterdir())
+
+
+def test_crate_satisfies_ro_crate_1_1(files):
+    """The MUST rules of RO-Crate Metadata Specification 1.1 (sections Root Data Entity, Data Entities), read from the metadata."""
+    with zipfile.ZipFile(files / "memo.zip") as archive:
+        described = json.loads(archive.read("ro-crate-metadata.json"))
+        members = set(archive.namelist())
+    assert described["@context"] == "https://w3id.org/ro/crate/1.1/context"
+    graph = {entity["@id"]: entity for entity in described["@graph"]}
+    assert len(graph) == len(described["@graph"])
+    descriptor = graph["ro-crate-metadata.json"]
+    assert descriptor["@type"] == "CreativeWork"
+    assert descriptor["conformsTo"] == {"@id": SPECIFICATION}
+    assert descriptor["about"] == {"@id": "./"}
+    root = graph["./"]
+    assert root["@type"] == "Dataset"
+    assert all(root[name] for name in ("name", "description", "license"))
+    assert re.match(r"\d{4}-\d{2}-\d{2}", root["datePublished"])
+    assert {part["@id"] for part in root["hasPart"]} == members - {"ro-crate-metadata.json"}
+    for part in root["hasPart"]:
+        assert graph[part["@id"]]["@type"] == "File"
+    assert all("@type" in entity for entity in graph.values())
+
+    def references(value):
+        if isinstance(value, dict):
+            yield from [value["@id"]] if set(value) == {"@id"} else [found for entry in value.values() for found in references(entry)]
+        elif isinstance(value, list):
+            yield from [found for entry in value for found in references(entry)]
+
+    for entity in graph.values():
+        for target in references({name: value for name, value in entity.items() if name != "@id"}):
+            assert target in graph or target.startswith("https://"), target
+
+
+@pytest.mark.filterwarnings("ignore::DeprecationWarning")
+def test_crate_loads_with_rocrate(files):
+    rocrate = pytest.importorskip("rocrate.rocrate")
+    crate = rocrate.ROCrate(str(files / "memo.zip"))
+    assert crate.root_dataset["name"].startswith("Title")
+    assert {"memo.pdf", "memo.html"} <= {entity.id for entity in crate.data_entities}
+
+
+def test_tables_hold_the_numbers_and_no_formulas(perf, files):
+    with zipfile.ZipFile(files / "memo.zip") as archive:
+        rows = list(csv.DictReader(io.StringIO(archive.read("tables/inputs_and_results.csv").decode())))
+        stations = list(csv.DictReader(io.StringIO(archive.read("tables/stations.csv").decode())))
+    thrust = next(row for row in rows if row["object"] == "performance" and row["name"] == "thrust")
+    assert float(thrust["value"]) == perf.thrust.to("N").magnitude
+    exit_row = next(row for row in stations if row["station"] == "exit")
+    assert float(exit_row["temperature [K]"]) == perf.nozzle.exit.temperature.to("K").magnitude
+
+    from propkit.memo.crate import _csv
+
+    assert _csv([("=1+1", "+x", "-y", "@z", -1.5)]) == b"'=1+1,'+x,'-y,'@z,-1.5\n"
+
+
+def test_other_objects_make_memos(tmp_path):
+    gas = pk.Chamber.from_gas(pressure="2 MPa", temperature="3000 K", molar_mass="22 g/mol", isentropic_exponent=1.2)
+    nozzle = pk.Nozzle(gas, area_ratio=10, throat_diameter="50 mm")
+    case = pk.PropellantCase("LOX", "LH2", mixture_ratio=6)
+    for place, calculation in enumerate((gas, nozzle, case, pk.Performance(nozzle, ambient="12 km"))):
+        path = calculation.record().save(tmp_path / f"{place}.pdf")
+        assert spaceless(calculation.record().title)[:20] in spaceless(pdf_text(path))
+
+
+def test_trace_ends_in_inputs_and_data_rows(record):
+    origin = record.trace("specific_impulse")
+    lines = list(origin.lines())
+    ends = [entry for _, entry in lines if not entry.parts]
+    assert all(entry.how.startswith(("given", "default", "data row", "see above", "vacuum", "computed")) for entry in ends), [entry.how for entry in ends]
+    assert any(entry.how.startswith("data row MMH") and entry.source for entry in ends)
+    assert len({entry.path for _, entry in lines}) > 15
+    assert "<script" not in origin.to_html()
+    with pytest.raises(pk.InputError):
+        record.trace("nonsense")
+
+
+def test_zip_records(files):
+    assert len(records_of(".zip", (files / "memo.zip").read_bytes(), "memo.zip").found) == 2
