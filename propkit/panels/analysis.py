@@ -14,7 +14,9 @@ from propkit.errors import PropkitError
 
 
 class AnalysisPanel(ipywidgets.VBox):
-    """Controls above the sheet of an analysis.
+    """Controls under the sheet of an analysis.
+
+    Two outputs: the sheet, which is static and stays when no kernel is there, and the controls, which redraw it.
 
     Parameters
     ----------
@@ -25,13 +27,12 @@ class AnalysisPanel(ipywidgets.VBox):
     value = traitlets.Any(help="the current analysis: observe it")
 
     def __init__(self, analysis: Any) -> None:
-        self._sheet = ipywidgets.HTML()
+        self._sheets: list[Any] = []
         self._words = ipywidgets.HTML()
         super().__init__()
         self.start = analysis
         self.value = analysis
-        self.children = (ipywidgets.HBox(self.controls(), layout={"flex_flow": "row wrap"}), self._words, self._sheet)
-        self.redraw()
+        self.children = (ipywidgets.HBox(self.controls(), layout={"flex_flow": "row wrap"}), self._words)
 
     def controls(self) -> list[ipywidgets.Widget]:
         """Return the controls."""
@@ -54,8 +55,15 @@ class AnalysisPanel(ipywidgets.VBox):
         self.redraw()
 
     def redraw(self) -> None:
-        """Show the sheet of the current analysis."""
-        self._sheet.value = self.value.report()._repr_mimebundle_(include=["text/html"])["text/html"]
+        """Show the sheet of the current analysis wherever the panel is displayed."""
+        for sheet in self._sheets:
+            sheet.update(self.value._repr_mimebundle_(), raw=True)
+
+    def _ipython_display_(self) -> None:
+        from IPython.display import display
+
+        self._sheets.append(display(self.value._repr_mimebundle_(), raw=True, display_id=True))
+        display(self._repr_mimebundle_(), raw=True)
 
 
 class FiringPanel(AnalysisPanel):

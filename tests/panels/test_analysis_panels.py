@@ -22,10 +22,31 @@ def test_window_is_turned_and_found_again():
     expected = FIRING.replace(window=(6.0, 12.0))
     assert panel.value.table.equals(expected.table)
     assert eval(panel.as_code(), {"firing": FIRING}).table.equals(expected.table)
-    assert "6" in panel._sheet.value
     panel.find()
     assert panel.value.window == FIRING.window
     assert panel.as_code() == "firing.replace(window=None)"
+
+
+def test_sheet_is_a_static_output_that_the_controls_redraw(monkeypatch):
+    import IPython.display
+
+    shown, updates = [], []
+
+    class Handle:
+        def update(self, bundle, raw):
+            updates.append(bundle)
+
+    def display(bundle, raw, display_id=False):
+        shown.append(bundle)
+        return Handle()
+
+    monkeypatch.setattr(IPython.display, "display", display)
+    panel = FIRING.panel()
+    panel._ipython_display_()
+    assert shown[0]["text/html"] == FIRING._repr_mimebundle_()["text/html"]
+    assert "application/vnd.jupyter.widget-view+json" in shown[1]
+    panel.choose(6.0, 12.0)
+    assert updates[-1]["text/html"] == FIRING.replace(window=(6.0, 12.0))._repr_mimebundle_()["text/html"]
 
 
 def test_refusal_is_shown_and_the_last_firing_kept():
