@@ -96,6 +96,9 @@ HEAT_FLUX = Kind("heat flux", "W/m**2", ("kW/m**2", "MW/m**2"), ("Btu/(inch**2*s
 POWER = Kind("power", "W", ("kW", "MW"), ("Btu/s",))
 IMPULSE = Kind("impulse", "N*s", ("N*s", "kN*s", "MN*s"), ("lbf*s",))
 HEAT_TRANSFER = Kind("heat transfer coefficient", "W/(m**2*K)", ("kW/(m**2*K)",), ("Btu/(inch**2*s*degR)",))
+TEMPERATURE_DIFFERENCE = Kind("temperature difference", "K", ("K",), ("degR",))
+VISCOSITY = Kind("viscosity", "Pa*s", ("uPa*s",), ("uPa*s",))
+BURN_TIME = Kind("time", "s", ("s",), ("s",))
 TEXT = Kind("choice", "", ("",), ("",))
 
 _ROWS = (
@@ -414,6 +417,34 @@ _ROWS = (
     Quantity("losses", TEXT, r"", "losses", "what is lost from ideal to delivered, by name"),
     Quantity("minimum_pressure", PRESSURE, r"p_{c,min}", "minimum chamber pressure", "lowest chamber pressure at which the chamber is known to run", 4),
     Quantity("altitude", ALTITUDE, r"h", "altitude", "geometric altitude in the standard atmosphere", 4),
+    # answers: heat load, burn, throttling
+    Quantity("wall_temperature", TEMPERATURE, r"T_{w}", "wall temperature", "temperature of the gas-side wall", 5),
+    Quantity("heat_load", POWER, r"\dot{Q}", "heat load", "heat flow into the wetted wall", 4),
+    Quantity("peak_heat_flux", HEAT_FLUX, r"q_{max}", "largest heat flux", "largest convective heat flux along the wall", 4),
+    Quantity("peak_heat_flux_equilibrium", HEAT_FLUX, r"q_{max,eq}", "largest heat flux, equilibrium heat capacity", "the same with the heat capacity of a reacting gas: the price of the frozen one", 4),
+    Quantity("peak_position", LENGTH, r"x_{max}", "position of the largest flux", "axial position of the largest flux, throat at zero", 4),
+    Quantity("mean_heat_flux", HEAT_FLUX, r"q_{m}", "mean heat flux", "heat load over wetted area", 4),
+    Quantity("heat_share", NUMBER, r"", "share of the chamber power", "heat load over the power that cooling the gas to 298.15 K would give", 3),
+    Quantity("viscosity", VISCOSITY, r"\mu", "viscosity at rest", "dynamic viscosity of the gas at rest", 4),
+    Quantity("prandtl_number", NUMBER, r"Pr", "Prandtl number", "Prandtl number of the gas at rest, frozen", 4),
+    Quantity("coolant", TEXT, r"", "coolant", "propellant that takes up the heat"),
+    Quantity("coolant_mass_flow", MASS_FLOW, r"\dot{m}_{k}", "coolant mass flow", "mass flow of the coolant", 4),
+    Quantity("coolant_pressure", PRESSURE, r"p_{k}", "coolant pressure", "pressure of the coolant in the jacket", 4),
+    Quantity("coolant_temperature_rise", TEMPERATURE_DIFFERENCE, r"\Delta T_{k}", "coolant temperature rise", "temperature of the coolant after less before the jacket", 4),
+    Quantity("coolant_temperature", TEMPERATURE, r"T_{k}", "coolant temperature after", "temperature of the coolant after the jacket", 5),
+    Quantity("coolant_limit", TEMPERATURE, r"T_{k,max}", "limit of the coolant", "temperature that the coolant must stay below", 5),
+    Quantity("duration", BURN_TIME, r"t_{b}", "burn duration", "time of steady burning", 4),
+    Quantity("total_impulse", IMPULSE, r"I_{t}", "total impulse", "thrust times duration", 5),
+    Quantity("propellant_mass", MASS, r"m_{p}", "propellant mass", "propellant loaded, residuals included", 5),
+    Quantity("consumed_mass", MASS, r"m_{b}", "propellant burnt", "mass flow times duration", 5),
+    Quantity("oxidizer_mass", MASS, r"m_{ox}", "oxidizer mass", "oxidizer loaded, residuals included", 5),
+    Quantity("fuel_mass", MASS, r"m_{fu}", "fuel mass", "fuel loaded, residuals included", 5),
+    Quantity("oxidizer_tank_volume", VOLUME, r"V_{ox}", "oxidizer tank volume", "volume of the loaded oxidizer and its ullage", 4),
+    Quantity("fuel_tank_volume", VOLUME, r"V_{fu}", "fuel tank volume", "volume of the loaded fuel and its ullage", 4),
+    Quantity("propellant_tank_volume", VOLUME, r"V_{p}", "propellant tank volume", "volume of the loaded propellant and its ullage", 4),
+    Quantity("ullage", NUMBER, r"", "ullage", "share of the tank volume that holds gas when loaded", 3),
+    Quantity("residuals", NUMBER, r"", "residuals", "share of the loaded propellant that is left", 3),
+    Quantity("full_flow_pressure", PRESSURE, r"p_{c,full}", "full-flow chamber pressure", "chamber pressure below which the middle of three criteria predicts separation at sea level", 4),
     # propellants
     Quantity("formula", TEXT, r"", "formula", "atoms of one formula unit"),
     Quantity("role", TEXT, r"", "role", "what the propellant serves as"),

@@ -40,6 +40,7 @@ from propkit.series import Figure
 if TYPE_CHECKING:
     import pandas as pd
 
+    from propkit.model.answer import Answer
     from propkit.model.contour import Contour
     from propkit.model.declare import NumberLike, QuantityLike
 
@@ -473,6 +474,42 @@ class Nozzle(Calculation):
         """
         return wall_of_nozzle.export(self, path)
 
+    def heat_flux(
+        self,
+        wall_temperature: QuantityLike,
+        *,
+        coolant: str | None = None,
+        coolant_pressure: QuantityLike | None = None,
+        coolant_limit: QuantityLike | None = None,
+    ) -> Answer:
+        """Return the convective heat flux along the contour after Bartz, with its integral.
+
+        Parameters
+        ----------
+        wall_temperature : quantity
+            Temperature of the gas-side wall [K], the same everywhere and below the local adiabatic wall temperature.
+        coolant : str, optional
+            ``"fuel"``, ``"oxidizer"`` or ``"propellant"``: the propellant that takes up the load, with its whole flow.
+        coolant_pressure, coolant_limit : quantity, optional
+            Pressure in the jacket [Pa], the chamber pressure by default; temperature [K] that the coolant must stay below, its
+            boiling temperature at that pressure by default.
+
+        Returns
+        -------
+        Answer
+            heat_load, peak_heat_flux, heat_share of the chamber power, coolant_temperature_rise, ...; `frame` along the wall.
+
+        Raises
+        ------
+        InputError
+            For a wall hotter than the gas would make it.
+        NotAvailableError
+            Without a contour, or where too much of the gas has no transport data.
+        """
+        from propkit.model import heat
+
+        return heat.heat_flux(self, wall_temperature, coolant, coolant_pressure, coolant_limit)
+
     # -- display -----------------------------------------------------------------------------------
 
     def _shown_input(self, name: str, value: Any) -> Any:
@@ -537,6 +574,9 @@ class Nozzle(Calculation):
     def flow_sections(self, system: UnitSystem) -> Iterator[Section]:
         """Yield the stations and the composition along the nozzle."""
         yield sheet.station_table(self.all_states(), (*STATION_COLUMNS, "condensed_mass_fraction"), system)
+        case = self.chamber.case_or_none
+        if case is not None:
+            yield from case.flow_sections(self, system)
         section = self.composition_section()
         if section is not None:
             yield section
