@@ -221,7 +221,8 @@ class Performance(Calculation):
 
     def subtitle(self) -> str:
         """Return the nozzle and the ambient condition."""
-        return f"{self.nozzle.subtitle()}, at {self._values['ambient'].text}"
+        place = self._values["ambient"].text
+        return f"{self.nozzle.subtitle()}, {'in' if place == 'vacuum' else 'at'} {place}"
 
     def _own_assumptions(self) -> tuple[Assumption, ...]:
         made = [
