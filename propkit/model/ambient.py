@@ -68,7 +68,10 @@ def read_ambient(name: str, value: Any) -> Ambient:
 def _of_pressure(name: str, value: Any, pressure: float) -> Ambient:
     if not 0.0 <= pressure <= HIGHEST_PRESSURE:
         raise InputError(Problem(name, as_text(value), f"an absolute pressure from 0 to {HIGHEST_PRESSURE:g} Pa"))
-    return Ambient(pressure, None, f"{pressure:g} Pa")
+    if pressure == 0.0:
+        return Ambient(0.0, None, "vacuum")
+    shown = f"{pressure / 1e3:g} kPa" if pressure >= 1e3 else f"{pressure:g} Pa"
+    return Ambient(pressure, None, shown)
 
 
 def _as(name: str, value: Any, unit: str) -> tuple[float | None, InputError | None]:
