@@ -19,7 +19,7 @@ from propkit.physics.equilibrium_newton import iterate
 from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE, Outcome, Problem, Unknowns
 
 _FIRST_TEMPERATURE: Final = 3000.0
-_SMALL_MOLECULE: Final = 3.0
+_SMALL_MOLECULE: Final = 2.0
 _PENALTY_PER_ATOM: Final = 2.5
 _ATOMS_PER_MOLECULE: Final = 2.5
 _WARMING_UP: Final = 60
