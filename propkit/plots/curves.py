@@ -25,6 +25,8 @@ REFERENCE_PRESSURE = 7e6
 
 POINTS = 33
 HIGHEST_ALTITUDE = 40e3
+LOWEST_SHOWN = 1.0
+"""Heights below this count as the ground [m]."""
 
 
 def shown(name: str, values: Any, system: UnitSystem, owner: str = "") -> Series:
@@ -221,7 +223,7 @@ def altitude_figure(performance: Any, name: str, system: UnitSystem) -> Figure:
     y = shown(name, [*_delivered(performance, atmosphere.pressure(heights), name), performance.si(name)], system)
     curve, here = Series(y.label, y.values[:-1], y.unit, y.symbol), y.values[-1]
     scale, unit = (1e3, "km") if system == "SI" else (304.8, "kft")
-    limits = separation_altitudes(performance)
+    limits = {criterion: height for criterion, height in separation_altitudes(performance).items() if height > LOWEST_SHOWN}
     highest = max(limits.values(), default=0.0)
     full = heights >= highest
     layers: list[Any] = []
@@ -231,12 +233,12 @@ def altitude_figure(performance: Any, name: str, system: UnitSystem) -> Figure:
         share[min(int(full.argmax()), len(share) - 1)] = curve.values[int(full.argmax())]
         layers.append(_line(x, share, curve, unit, "dashed", "full-flowing value, separation predicted"))
     layers.append(_line(x, np.where(full, curve.values, np.nan), curve, unit, "solid", curve.label))
-    layers += [Rule("x", height / scale, f"separated below: {criterion}") for criterion, height in limits.items() if height > 0.0]
+    layers += [Rule("x", height / scale, f"separated below: {criterion}") for criterion, height in limits.items()]
     ambient = performance._values["ambient"]
     at = _altitude(ambient)
     layers.append(Mark(at / scale, here, ambient.text))
     title = f"{curve.label[:1].upper()}{curve.label[1:]} against altitude"
-    words = ", ".join(f"{criterion} {height / scale:.3g} {unit}" for criterion, height in limits.items() if height > 0.0)
+    words = ", ".join(f"{criterion} {height / scale:.3g} {unit}" for criterion, height in limits.items())
     alt = f"{title}: {here:.5g} {units.shown_unit(curve.unit)} at {ambient.text}" + (f"; separation predicted below: {words}" if words else "")
     return Figure(f"altitude-{name}", title, alt, Axis("altitude", unit, "z", low=-0.015 * HIGHEST_ALTITUDE / scale, high=HIGHEST_ALTITUDE / scale), axis_of(curve), tuple(layers))
 
@@ -263,6 +265,11 @@ def _altitude(ambient: Any) -> float:
 
 def separation_altitudes(performance: Any) -> dict[str, float]:
     """Return the altitude [m] below which each published criterion predicts separation at the lip; 0 where it predicts none."""
+    found: dict[str, float] = performance.lazily("separation altitudes", lambda: _separation_altitudes(performance))
+    return found
+
+
+def _separation_altitudes(performance: Any) -> dict[str, float]:
     state = performance.nozzle.exit
     pressure, mach = state.si("pressure"), state.si("mach")
     if mach <= 1.0:
@@ -273,12 +280,7 @@ def separation_altitudes(performance: Any) -> dict[str, float]:
         "Kalt and Badal": separation.kalt_badal_ambient(pressure, reservoir),
         "Schmucker": separation.schmucker_ambient(pressure, mach),
     }
-    return {name: _height_of(float(limit)) for name, limit in limits.items()}
-
-
-def _height_of(pressure: float) -> float:
-    if not pressure < float(atmosphere.pressure(0.0)):
-        return 0.0
-    if pressure <= float(atmosphere.pressure(HIGHEST_ALTITUDE)):
-        return HIGHEST_ALTITUDE
-    return float(atmosphere.altitude_of_pressure(pressure))
+    ground, top = (float(atmosphere.pressure(height)) for height in (0.0, HIGHEST_ALTITUDE))
+    inside = np.clip([float(limit) for limit in limits.values()], top, ground)
+    heights = atmosphere.altitude_of_pressure(inside)
+    return {name: float(min(max(height, 0.0), HIGHEST_ALTITUDE)) for name, height in zip(limits, heights, strict=True)}

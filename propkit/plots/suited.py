@@ -33,7 +33,7 @@ def _drawing(place: int) -> Maker:
 
 
 def _has_ratio(case: Any) -> bool:
-    return case is not None and case.has("mixture_ratio") and getattr(case.held, "fuel", None) is not None
+    return case is not None and case.has("mixture_ratio") and case.held.mixture.shares is None
 
 
 def _of_case(case: Any) -> tuple[tuple[str, Maker], ...]:

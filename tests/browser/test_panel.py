@@ -143,7 +143,6 @@ def test_without_a_kernel_the_static_sheet_stays(page: rig.Page) -> None:
     page.page.wait_for_timeout(800)
     saved = json.loads((page.lab.work / "twin.ipynb").read_text())
     outputs = saved["cells"][1]["outputs"]
-    assert [sorted(output["data"]) for output in outputs][0] != []
     assert "application/vnd.propkit.record+json" in outputs[0]["data"]
     saved["cells"][0]["source"] = "# seen by another reader"
     saved["cells"][0]["outputs"] = []
