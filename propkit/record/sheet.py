@@ -13,12 +13,23 @@ from propkit.report import Column, Report, Row, Section, Table
 if TYPE_CHECKING:
     from propkit.record.record import Record
 
-_TITLES = {"case": "Propellant case", "chamber": "Chamber", "nozzle": "Nozzle", "performance": "Performance"}
+_TITLES = {
+    "case": "Propellant case",
+    "chamber": "Chamber",
+    "nozzle": "Nozzle",
+    "performance": "Performance",
+    "reconciliation": "Reconciliation",
+    "firing": "Hot firing",
+    "uncertainty": "Uncertainty",
+}
 HEADLINES = {
     "case": ("mixture_ratio", "bulk_density"),
     "chamber": ("temperature", "characteristic_velocity", "molar_mass"),
     "nozzle": ("mass_flow", "throat_diameter", "exit_diameter"),
     "performance": ("thrust", "specific_impulse", "mass_flow"),
+    "reconciliation": ("p_value", "chi_square", "degrees_of_freedom"),
+    "firing": ("characteristic_velocity", "thrust_coefficient", "specific_impulse"),
+    "uncertainty": (),
 }
 
 

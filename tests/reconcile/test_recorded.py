@@ -50,6 +50,7 @@ def test_record_is_saved_loaded_and_verified(make, tmp_path):
     analysis.record(title="A record of the test").save(path)
     loaded = pk.Record.load(path)
     assert loaded.verify().ok, str(loaded.verify())
+    assert "A record of the test" in loaded._repr_mimebundle_()["text/html"]
     again = loaded.calculation.analysis
     frame = "adjusted" if hasattr(analysis, "adjusted") else "table"
     columns = getattr(analysis, frame).columns[:2]
