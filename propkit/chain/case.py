@@ -34,7 +34,8 @@ class Mixture:
     """Propellant per mass for a batch: element symbols, atoms (case, element) [mol/kg], enthalpy [J/kg], bulk density [kg/m3].
 
     `condensed` says whether liquids and solids may form. `composition` holds moles of each species [mol/kg], shape (case,), where the
-    composition of the gas is given instead of computed.
+    composition of the gas is given instead of computed. `shares` has the mass of each case over the whole, shape (case,), where the cases
+    are streams that flow side by side through one chamber and nozzle; the first is the core.
     """
 
     symbols: tuple[str, ...]
@@ -43,6 +44,7 @@ class Mixture:
     density: Array
     condensed: bool = False
     composition: Mapping[str, Array] | None = None
+    shares: Array | None = None
 
 
 def element_order(streams: Sequence[Stream]) -> tuple[str, ...]:
@@ -82,6 +84,40 @@ def two_streams(
         volume = rest * volume + sum(share / values(stream.density) for stream, share in additives)
     enthalpy, density = (np.array(np.broadcast_to(part, ratio.shape)) for part in (enthalpy, 1.0 / volume))
     return Mixture(symbols, np.array(np.broadcast_to(atoms, (ratio.size, len(symbols)))), enthalpy, density, condensed)
+
+
+def core_and_film(
+    oxidizer: Stream,
+    fuel: Stream,
+    mixture_ratio: float,
+    film_fraction: float,
+    film_mixture_ratio: float,
+    additives: Sequence[tuple[Stream, float]] = (),
+    condensed: bool = False,
+) -> Mixture:
+    """Return core and film of one design as two cases side by side.
+
+    Parameters
+    ----------
+    oxidizer, fuel : Stream
+        The two streams.
+    mixture_ratio : float
+        Mass of oxidizer over mass of fuel of the whole [1].
+    film_fraction : float
+        Mass of the film over the whole [1].
+    film_mixture_ratio : float
+        Mass of oxidizer over mass of fuel in the film [1]; 0 is fuel alone.
+    additives, condensed
+        As for `two_streams`.
+    """
+    core = core_ratio(mixture_ratio, film_fraction, film_mixture_ratio)
+    both = two_streams(oxidizer, fuel, np.array([float(core), film_mixture_ratio]), additives, condensed)
+    return replace(both, shares=np.array([1.0 - film_fraction, film_fraction]))
+
+
+def core_ratio(mixture_ratio: Values, film_fraction: Values, film_mixture_ratio: Values) -> Array:
+    """Return the mixture ratio that is left for the core beside a film."""
+    return stoichiometry.core_mixture_ratio(mixture_ratio, film_fraction, film_mixture_ratio)
 
 
 def one_stream(stream: Stream, count: int = 1, condensed: bool = False) -> Mixture:

@@ -15,7 +15,11 @@ from propkit.physics import combustor, equilibrium, expansion, gas_dynamics, hel
 from propkit.physics.arrays import Array, Values, values
 from propkit.physics.equilibrium import EquilibriumState
 from propkit.physics.expansion import FlowState
+from propkit.physics.expansion_parallel import Parallel
 from propkit.physics.thermodynamics import SpeciesTable
+
+STREAMS = ("core", "film")
+"""What the streams of a chamber with a film are called."""
 
 INJECTOR_RESULTS = (
     "pressure", "temperature", "density", "molar_mass", "gas_constant", "isentropic_exponent", "frozen_isentropic_exponent",
@@ -31,7 +35,8 @@ class Combustion:
     `inlet` is the static state at the nozzle inlet (that of `stagnation` where the contraction is infinite), `throat` the throat of
     shifting flow, `characteristic_velocity` the theoretical value [m/s]. `contraction_ratio` is infinite where not given. `watched` has
     the liquids and solids that a gas-only composition might be supersaturated with; `held` says that the composition is given, not
-    computed: then throat and characteristic velocity are those of frozen flow.
+    computed: then throat and characteristic velocity are those of frozen flow. With `shares`, the cases are streams side by side (see
+    `Mixture`), and throat and characteristic velocity are those of the whole.
     """
 
     table: SpeciesTable
@@ -46,9 +51,12 @@ class Combustion:
     characteristic_velocity: Array
     watched: SpeciesTable | None = None
     held: bool = False
+    shares: Array | None = None
 
     def raise_for_status(self, what: str, index: int = 0) -> None:
         """Raise when a case has no solution."""
+        for stream in range(len(self.shares) if self.shares is not None else 0):
+            outcome.raise_for(self.injector, f"combustion of the {STREAMS[stream]}", stream)
         outcome.raise_for(self.injector, "combustion at the injector face", index)
         outcome.raise_for(self.stagnation, "stagnation state at the nozzle inlet", index)
         outcome.raise_for(self.throat, "throat", index)
@@ -70,17 +78,17 @@ class Combustion:
             values_there["condensed_mass_fraction"] = float(condensed_mass_fraction(self.table, face.amounts)[index])
         return values_there
 
-    def doubts(self, index: int = 0) -> Iterator[tuple[str, str, str]]:
-        """Yield doubts as text, code and the result they are about."""
+    def doubts(self, index: int = 0, where: str = "the injector face") -> Iterator[tuple[str, str, str]]:
+        """Yield doubts as text, code and the result they are about; `where` names the place."""
         yield from warnings.composition_range(
             self.table,
             self.injector.amounts[index],
             float(self.injector.temperature[index]),
-            "the injector face",
+            where,
             "temperature",
         )
         face = self.injector.take([index])
-        yield from warnings.supersaturation(self.watched, self.table, face, "the injector face", "temperature")
+        yield from warnings.supersaturation(self.watched, self.table, face, where, "temperature")
 
 
 def combust(
@@ -115,20 +123,35 @@ def combust(
     contracted = np.isfinite(ratio).any()
     found = _contracted(table, mixture, p, ratio, pressure_at) if contracted else _wide(table, mixture, p, ratio)
     watched = None if mixture.condensed else warnings.watched_phases(load_basis(basis).table(mixture.symbols, True))
-    return replace(found, watched=watched)
+    found = replace(found, watched=watched)
+    return found if mixture.shares is None else _side_by_side(found, mixture.shares)
+
+
+def _side_by_side(found: Combustion, shares: Array) -> Combustion:
+    """Return streams of one stagnation pressure as one chamber, with the throat of the whole."""
+    isentrope = Parallel(expansion.shifting(found.table, found.atoms, found.stagnation), shares[None, :])
+    throat = expansion.throat(isentrope)
+    cstar = _cstar(found.stagnation.pressure, throat)
+    return replace(found, throat=throat, characteristic_velocity=cstar, shares=shares)
+
+
+def _cstar(pressure: Array, throat: FlowState) -> Array:
+    """Return p0 over the mass flux of the throat; infinite where a case has none."""
+    with np.errstate(divide="ignore", invalid="ignore"):
+        return np.asarray(pressure / throat.mass_flux)
 
 
 def _wide(table: SpeciesTable, mixture: Mixture, p: Array, ratio: Array) -> Combustion:
     face = equilibrium.solve(table, mixture.atoms, pressure=p, enthalpy=mixture.enthalpy)
     face = replace(face, pressure=p)
     throat = expansion.throat(expansion.shifting(table, mixture.atoms, face))
-    cstar = p / throat.mass_flux
+    cstar = _cstar(p, throat)
     return Combustion(table, mixture.atoms, mixture.enthalpy, face, face, np.zeros(len(p)), face, throat, ratio, cstar)
 
 
 def _contracted(table: SpeciesTable, mixture: Mixture, pressure: Array, ratio: Array, pressure_at: str) -> Combustion:
     found = combustor.combustor(table, mixture.atoms, mixture.enthalpy, pressure, ratio, pressure_at)
-    cstar = found.stagnation.pressure / found.throat.mass_flux
+    cstar = _cstar(found.stagnation.pressure, found.throat)
     return Combustion(
         table,
         mixture.atoms,

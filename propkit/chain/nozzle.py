@@ -12,6 +12,7 @@ from propkit.chain.chamber import Combustion, GivenGas, condensed_mass_fraction,
 from propkit.physics import expansion
 from propkit.physics.arrays import Array, Values, values
 from propkit.physics.expansion import FlowState, Isentrope
+from propkit.physics.expansion_parallel import Parallel
 from propkit.physics.thermodynamics import SpeciesTable
 
 AT_SONIC = 1e-6
@@ -42,7 +43,7 @@ class Expansion:
 
     def doubts(self, index: int = 0) -> Iterator[tuple[str, str, str]]:
         """Yield doubts about the states as text, code and the result they are about."""
-        if self.table is None:
+        if self.table is None or isinstance(self.isentrope, Parallel):
             return
         yield from self._phase_doubts(index)
         for state, where in ((self.throat, "the throat"), (self.exit, "the exit")):
@@ -77,6 +78,12 @@ class Expansion:
         one = self.isentrope.take(np.array([index]))
         beyond = one.at_pressure(self.throat.pressure[[index]] * (1.0 - AT_SONIC), self.throat.take([index]))
         return here, float(beyond.mach[0])
+
+    def streams_at(self, state: FlowState, index: int = 0) -> FlowState | None:
+        """Return the states of the streams side by side at the pressure of a state of the whole; None for a single stream."""
+        if not isinstance(self.isentrope, Parallel):
+            return None
+        return self.isentrope.take(np.array([index])).each(state.pressure[[index]])
 
     def condensed_mass_fraction(self, state: FlowState, index: int = 0) -> float | None:
         """Return the mass of liquids and solids over the whole mass at a state; None where only gases are counted."""
@@ -121,6 +128,9 @@ def expand(
         One of exit area over effective throat area [1] and static exit pressure [Pa].
     """
     isentrope = _isentrope(reservoir, flow, freeze_at, exponent)
+    shares = getattr(reservoir, "shares", None)
+    if shares is not None:
+        isentrope = Parallel(isentrope, shares[None, :])
     known = isinstance(isentrope, expansion.Shifting) and isinstance(reservoir, Combustion)
     throat = reservoir.throat if known else expansion.throat(isentrope)  # type: ignore[union-attr]
     flux = throat.mass_flux
@@ -171,7 +181,7 @@ def _beyond_sonic(isentrope: expansion.FrozenFrom, exit_state: FlowState) -> Flo
 
 def _inlet(reservoir: Combustion | GivenGas, isentrope: Isentrope, throat: FlowState) -> FlowState:
     """Return the state at the contraction ratio, or at rest where the contraction is infinite."""
-    ratio = reservoir.contraction_ratio
+    ratio = reservoir.contraction_ratio[: len(throat.pressure)]
     finite = np.isfinite(ratio)
     if not finite.any():
         at_rest = isinstance(isentrope, expansion.Shifting)

@@ -12,6 +12,7 @@ from propkit.physics import expansion
 from propkit.physics.arrays import Array, Values, values
 from propkit.physics.equilibrium import CONVERGED, EquilibriumState
 from propkit.physics.expansion import FlowState
+from propkit.physics.expansion_parallel import Parallel
 
 ALONG = ("pressure", "temperature", "velocity", "mach", "density", "isentropic_exponent")
 """What is told along a nozzle."""
@@ -54,7 +55,35 @@ def _repeated(part: Any, cases: Array) -> Any:
         return part.take(cases)
     if isinstance(part, np.ndarray):
         return part[cases]
+    if isinstance(part, Parallel):
+        return part.take(cases)
     if is_dataclass(part) and not isinstance(part, type):
         changed = {field.name: _repeated(getattr(part, field.name), cases) for field in fields(part) if field.name != "table"}
         return replace(part, **changed)
     return part
+
+
+def optimum_area_ratio(found: Expansion, ambient: Values, index: int = 0) -> Array:
+    """Return the area ratio whose exit pressure equals each ambient pressure.
+
+    Parameters
+    ----------
+    found : Expansion
+        What the nozzle stage yields.
+    ambient : float or array
+        Ambient pressure [Pa], above 0, shape (point,).
+    index : int
+        Which case of the batch.
+
+    Returns
+    -------
+    array
+        Exit area over effective throat area [1]; NaN where the gas has no state at that pressure, 1 where it is above the
+        throat pressure.
+    """
+    pressure = np.atleast_1d(values(ambient)).astype(float)
+    cases = np.full(len(pressure), index)
+    throat = found.throat.take(cases)
+    states = expansion.at_pressure(_repeated(found.isentrope, cases), np.minimum(pressure, throat.pressure), throat)
+    ratio = np.where(states.status == CONVERGED, found.mass_flux[cases] / states.mass_flux, np.nan)
+    return np.where(pressure >= throat.pressure, 1.0, ratio)

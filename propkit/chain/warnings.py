@@ -67,6 +67,9 @@ def supersaturation(
         ratios = saturation.saturation_ratios(phases, state.temperature, potentials)[0]
     else:
         ratios = saturation.vapour_saturation_ratios(phases, table, state.temperature, state.pressure, state.amounts)[0]
+    present = (state.amounts[0] @ table.composition) > 0.0
+    possible = ~(phases.composition[:, ~present] > 0.0).any(axis=1)
+    ratios = np.where(possible, ratios, 0.0)
     for key, words in WATCHED.items():
         found = [
             float(ratio) for name, ratio in zip(phases.names, ratios, strict=True) if name.partition(" (")[0] == key

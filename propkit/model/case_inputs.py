@@ -133,3 +133,11 @@ def unknown_species(name: str, unknown: list[str]) -> InputError:
     return InputError(
         Problem("gas", f"{name!r}, with {', '.join(unknown)}", "a gas whose species are in the species data")
     )
+
+
+def no_core(typed: Mapping[str, Any], mixture_ratio: float) -> InputError:
+    """Return the error for a film that takes more of a propellant than there is."""
+    ratio = typed.get("film_mixture_ratio", 0.0)
+    given = f"{typed['film_fraction']} at a mixture ratio of {ratio}"
+    hint = f"The whole has a mixture ratio of {mixture_ratio:.4g}; the film would take more of one propellant than there is."
+    return InputError(Problem("film_fraction", given, "a smaller part, or at another mixture ratio", hint))

@@ -59,7 +59,7 @@ def propellant_section(case: PropellantCase, system: UnitSystem) -> Section:
 
 def element_section(case: PropellantCase) -> Section:
     """Return the atoms per mass."""
-    mixture = case.held.mixture
+    mixture = case.whole
     columns = (Column("elements", "atoms", "b", "mol/kg", 6, tuple(float(value) for value in mixture.atoms[0])),)
     return Section("elements", "Elements", table=Table("elements", "Elements", "element", mixture.symbols, columns))
 

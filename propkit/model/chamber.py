@@ -123,6 +123,11 @@ class Chamber(Calculation):
     sound_speed = QuantityResult(relation="sound_speed", source="definition")
     stay_time = QuantityResult(relation="stay_time", source="sutton-biblarz")
 
+    def _check(self, bad: set[str]) -> list[Problem]:
+        if bad & {"case", "contraction_ratio"}:
+            return []
+        return list(self._values["case"].chamber_problems(self._values["contraction_ratio"]))
+
     def _calculate(self) -> Outcome:
         case: PropellantCase = self._values["case"]
         combustion = stage.combust(
@@ -214,6 +219,12 @@ class Chamber(Calculation):
         return self._values["case"].flow_reason  # type: ignore[no-any-return]
 
     @property
+    def freezes_late(self) -> bool:
+        """Whether the composition may freeze at the throat or beyond, instead of at the nozzle inlet."""
+        case = self.case_or_none
+        return case is not None and case.freezes_late
+
+    @property
     def chooses_exponent(self) -> bool:
         """Whether constant-property flow has an equilibrium and a frozen exponent to choose from."""
         return "shifting" in self.flows
@@ -268,7 +279,8 @@ class Chamber(Calculation):
         return tuple(made)
 
     def sections(self, system: UnitSystem) -> Iterator[Section]:
-        """Yield composition and assumptions."""
+        """Yield what the case has to show, composition and assumptions."""
+        yield from self.case.chamber_sections(self, system)
         pairs = [(name, value) for name, value in self.held.composition() if value >= COMPOSITION_SHOWN]
         yield sheet.composition_table(
             pairs, f"Mole fractions of {COMPOSITION_SHOWN:.5f} and above, at the injector face{self._over_all_moles()}."

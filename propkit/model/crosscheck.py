@@ -99,6 +99,8 @@ def _reason(performance: Performance) -> str:
     if outside:
         return "a station lies outside the range of the species data, where the two engines continue the data differently"
     held: Any = nozzle.chamber.held
+    if held.shares is not None:
+        return "core and film are two streams; the second engine solves one"
     if held.table.condensed.any():
         return "condensed species are not in the second engine"
     if getattr(nozzle.chamber.case, "fixed_composition", None) is not None:

@@ -32,7 +32,7 @@ def flow_problems(
     if freeze_at is not None and flow != "frozen":
         allowed = "left out unless flow is 'frozen'"
         yield Problem("freeze_at", as_text(typed["freeze_at"]), allowed, f"The flow is {flow!r}.")
-    elif freeze_at not in (None, "chamber") and "shifting" not in chamber.flows:
+    elif freeze_at not in (None, "chamber") and not chamber.freezes_late:
         yield Problem("freeze_at", as_text(typed["freeze_at"]), "'chamber' or left out", chamber.flow_reason)
     if exponent is not None and flow != "constant-property":
         allowed = "left out unless flow is 'constant-property'"

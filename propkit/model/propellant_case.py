@@ -41,7 +41,10 @@ ROLES = ("oxidizer", "fuel")
 
 @dataclass(frozen=True, slots=True, eq=False)
 class CaseArrays:
-    """What objects downstream continue from: the mixture (a batch of one) and the streams it is made of."""
+    """What objects downstream continue from: the mixture (a batch of one) and the streams it is made of.
+
+    Where core and film flow side by side, `mixture` has both, and `whole` what they are together.
+    """
 
     mixture: stage.Mixture
     oxidizer: stage.Stream | None = None
@@ -49,6 +52,7 @@ class CaseArrays:
     mixture_ratio: float = float("nan")
     additives: tuple[tuple[stage.Stream, float], ...] = ()
     propellant: stage.Stream | None = None
+    whole: stage.Mixture | None = None
 
     def stream(self, role: str) -> stage.Stream:
         """Return the stream of a role."""
@@ -218,6 +222,61 @@ class PropellantCase(Calculation):
         }
         return ColdGasCase(gas, **{key: value for key, value in optional.items() if value is not None})
 
+    @staticmethod
+    def with_film(
+        oxidizer: Any,
+        fuel: Any,
+        *,
+        film_fraction: NumberLike,
+        film_mixture_ratio: NumberLike = 0.0,
+        mixture_ratio: NumberLike | None = None,
+        equivalence_ratio: NumberLike | None = None,
+        mixture_ratio_by_volume: NumberLike | None = None,
+        oxidizer_percent: NumberLike | None = None,
+        oxidizer_temperature: QuantityLike | None = None,
+        fuel_temperature: QuantityLike | None = None,
+        oxidizer_pressure: QuantityLike | None = None,
+        fuel_pressure: QuantityLike | None = None,
+        additives: Any = None,
+        condensed: bool = False,
+        thermo_basis: str = bases.BASES[0],
+        name: str = "",
+    ) -> FilmCase:
+        """Return a case whose coolant film flows beside the core without mixing.
+
+        Parameters
+        ----------
+        oxidizer, fuel : str, Propellant or mapping
+            The propellants.
+        film_fraction : float
+            Mass flow of the film over the whole mass flow [1].
+        film_mixture_ratio : float
+            Oxidizer over fuel mass flow in the film [1]; 0, fuel alone, by default.
+        mixture_ratio, equivalence_ratio, mixture_ratio_by_volume, oxidizer_percent : float or text
+            One of the four, for the whole flow, film included; the ratio of the core follows.
+        oxidizer_temperature, fuel_temperature, oxidizer_pressure, fuel_pressure, additives, condensed, thermo_basis, name
+            As for `PropellantCase`.
+        """
+        from propkit.model.film_case import FilmCase
+
+        optional: dict[str, Any] = {
+            "film_mixture_ratio": None if film_mixture_ratio == 0.0 else film_mixture_ratio,
+            "mixture_ratio": mixture_ratio,
+            "equivalence_ratio": equivalence_ratio,
+            "mixture_ratio_by_volume": mixture_ratio_by_volume,
+            "oxidizer_percent": oxidizer_percent,
+            "oxidizer_temperature": oxidizer_temperature,
+            "fuel_temperature": fuel_temperature,
+            "oxidizer_pressure": oxidizer_pressure,
+            "fuel_pressure": fuel_pressure,
+            "additives": additives,
+            "condensed": condensed or None,
+            "thermo_basis": None if thermo_basis == bases.BASES[0] else thermo_basis,
+            "name": name or None,
+        }
+        given = {key: value for key, value in optional.items() if value is not None}
+        return FilmCase(oxidizer, fuel, film_fraction=film_fraction, **given)
+
     # -- checks and calculation ------------------------------------------------------------------
 
     def _check(self, bad: set[str]) -> list[Problem]:
@@ -280,6 +339,17 @@ class PropellantCase(Calculation):
         return ("frozen", "constant-property") if held else ("shifting", "frozen", "constant-property")
 
     @property
+    def whole(self) -> stage.Mixture:
+        """Everything that flows as one mixture."""
+        held: CaseArrays = self.held
+        return held.mixture if held.whole is None else held.whole
+
+    @property
+    def freezes_late(self) -> bool:
+        """Whether the composition may freeze at the throat or beyond, instead of at the nozzle inlet."""
+        return "shifting" in self.flows
+
+    @property
     def flow_reason(self) -> str:
         """Why other flow models are refused."""
         return "The composition of this gas is given and does not follow equilibrium." if len(self.flows) == 2 else ""
@@ -300,6 +370,18 @@ class PropellantCase(Calculation):
         """Return what a chamber assumes about this case."""
         text = "Combustion reaches chemical equilibrium, without heat loss."
         return Assumption("equilibrium", text, "method", "temperature")
+
+    def chamber_problems(self, contraction_ratio: float) -> Iterator[Problem]:
+        """Yield what a chamber of this case cannot have."""
+        return iter(())
+
+    def chamber_sections(self, chamber: Any, system: UnitSystem) -> Iterator[Section]:
+        """Yield what the sheet of a chamber shows of this case."""
+        return iter(())
+
+    def flow_sections(self, nozzle: Any, system: UnitSystem) -> Iterator[Section]:
+        """Yield what the sheet of a nozzle shows of this case."""
+        return iter(())
 
     def chamber_doubts(self, combustion: Any) -> Iterator[Doubt]:
         """Yield doubts of the case about a reservoir."""
@@ -356,7 +438,7 @@ class PropellantCase(Calculation):
         """Moles of atoms of each element per mass of propellant [mol/kg]."""
         import pandas as pd
 
-        mixture = self.held.mixture
+        mixture = self.whole
         series = pd.Series(mixture.atoms[0].copy(), index=list(mixture.symbols), name="elements")
         series.attrs["units"] = "mol/kg"
         return series

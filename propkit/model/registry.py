@@ -11,6 +11,7 @@ from propkit.errors import InputError, RecordError
 CLASSES = {
     "PropellantCase": "propkit.model.propellant_case",
     "MonopropellantCase": "propkit.model.monopropellant_case",
+    "FilmCase": "propkit.model.film_case",
     "ColdGasCase": "propkit.model.cold_gas_case",
     "Chamber": "propkit.model.chamber",
     "GasChamber": "propkit.model.chamber",

@@ -8,12 +8,14 @@ from typing import Any
 import numpy as np
 
 from propkit.chain.case import AMOUNTS
+from propkit.chain.chamber import STREAMS
 from propkit.chain.nozzle import AT_SONIC
 from propkit.constants import GAS_CONSTANT
 from propkit.data.atomic_weights import ATOMIC_WEIGHTS
 from propkit.model import losses
 from propkit.model.conditions import condition, element_conditions
 from propkit.physics import stoichiometry
+from propkit.physics.expansion_parallel import Parallel
 from propkit.report import Step
 
 SIZED = {
@@ -74,11 +76,11 @@ def _case(case: Any, key: str, name: str) -> dict[str, float]:
     held = case.held
     found = {
         entry: case.si(entry)
-        for entry in (*AMOUNTS, "stoichiometric_mixture_ratio")
+        for entry in (*AMOUNTS, "stoichiometric_mixture_ratio", "film_fraction", "film_mixture_ratio")
         if case.has(entry)
     }
     if name == "oxygen_balance":
-        found["net_valence"] = stoichiometry.net_valence(dict(zip(held.mixture.symbols, held.mixture.atoms[0].tolist(), strict=True)))
+        found["net_valence"] = stoichiometry.net_valence(dict(zip(case.whole.symbols, case.whole.atoms[0].tolist(), strict=True)))
         found["oxygen_mass"] = ATOMIC_WEIGHTS["O"] * 1e-3
     if held.propellant is not None:
         found["molar_enthalpy"] = float(held.propellant.enthalpy) * case._values[case.roles[0]].row.molar_mass
@@ -178,7 +180,7 @@ def supporting(link: Any, name: str) -> Iterator[tuple[str, str, Mapping[str, fl
     if name in ("mass_flow", "throat_area", "throat_diameter", "characteristic_velocity"):
         throat = {entry: flow.throat.si(entry) for entry in ("density", "velocity")}
         yield "throat_mass_flux", "mass_flux", throat
-        if flow.flow == "constant-property":
+        if flow.flow == "constant-property" and not isinstance(flow.held.isentrope, Parallel):
             yield "mass_flow_in_closed_form", "choked_mass_flux", reservoir_of(flow)
     if name.startswith(("thrust", "specific_impulse", "effective_exhaust")) and link.kind == "performance":
         if link.resolved_losses.ratios:
@@ -329,6 +331,9 @@ def state_conditions(nozzle: Any, state: str) -> Iterator[Step]:
             float(held.area_ratio[0]),
             "conservation",
         )
+    if isinstance(isentrope, Parallel):
+        yield from _stream_conditions(held, there, state)
+        return
     yield condition(
         "stagnation_enthalpy",
         f"energy at the {state} [J/kg]",
@@ -352,3 +357,25 @@ def state_conditions(nozzle: Any, state: str) -> Iterator[Step]:
     if held.table is not None and there.amounts is not None:
         chamber = nozzle.chamber.held
         yield from element_conditions(held.table.elements, chamber.atoms[0], there.amounts[0] @ held.table.composition)
+
+
+def _stream_conditions(held: Any, there: Any, state: str) -> Iterator[Step]:
+    """Yield the conditions of streams side by side: energy and entropy of each, and their areas together."""
+    each, rest = held.streams_at(there), held.isentrope.streams
+    shares = held.isentrope.shares[0]
+    for place, name in enumerate(STREAMS):
+        gas_constant = GAS_CONSTANT / float(each.molar_mass[place])
+        yield condition(
+            f"{name}_energy", f"energy of the {name} at the {state} [J/kg]", "h + u^2/2 = stagnation enthalpy", r"h + u^2/2 = h_0",
+            float(each.enthalpy[place] + 0.5 * each.velocity[place] ** 2), float(rest.enthalpy[place]), "conservation",
+            gas_constant * float(each.temperature[place]),
+        )  # fmt: skip
+        yield condition(
+            f"{name}_entropy", f"entropy of the {name} at the {state} [J/(kg K)]", "s = entropy of the reservoir", r"s = s_0",
+            float(each.entropy[place]), float(rest.entropy[place]), "conservation", gas_constant,
+        )  # fmt: skip
+    area = float((shares / (each.density * each.velocity)).sum())
+    yield condition(
+        "areas", f"area for a unit of mass flow at the {state} [m2 s/kg]", "sum of w/(rho u) over the streams = 1/(rho u)",
+        r"\sum w/(\rho u) = 1/(\rho u)", area, 1.0 / float(there.mass_flux[0]), "conservation",
+    )  # fmt: skip

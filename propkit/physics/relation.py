@@ -135,6 +135,8 @@ TERMS: Mapping[str, Term] = MappingProxyType(
         "exit_pressure_ratio": Term(r"\frac{p_{e}}{p_{0}}"),
         "exit_radius": Term(r"r_{e}", "m"),
         "exit_velocity": Term(r"u_{e}", "m/s"),
+        "film_fraction": Term(r"w_{f}"),
+        "film_mixture_ratio": Term(r"r_{f}"),
         "frozen": Term(r"I_{f}", "s"),
         "frozen_specific_heat": Term(r"c_{p,f}", "J/(kg*K)"),
         "fuel_density": Term(r"\rho_{fu}", "kg/m**3"),

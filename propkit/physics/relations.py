@@ -89,6 +89,14 @@ _LIST = (
         "definition",
     ),
     relation(
+        "core_mixture_ratio",
+        Term(r"r_{c}"),
+        "({mixture_ratio} / (1 + {mixture_ratio}) - {film_fraction} * {film_mixture_ratio} / (1 + {film_mixture_ratio}))"
+        " / (1 / (1 + {mixture_ratio}) - {film_fraction} / (1 + {film_mixture_ratio}))",
+        stoichiometry.core_mixture_ratio,
+        "conservation",
+    ),
+    relation(
         "oxygen_balance",
         Term(r"B_{O}"),
         "-{net_valence} / 2 * {oxygen_mass}",

@@ -231,3 +231,34 @@ def ratio_from_percent(oxidizer_percent: Values) -> Array:
     """
     percent = values(oxidizer_percent)
     return np.asarray(percent / (100.0 - percent))
+
+
+def core_mixture_ratio(mixture_ratio: Values, film_fraction: Values, film_mixture_ratio: Values) -> Array:
+    """Return the mixture ratio that is left for the core beside a film.
+
+    Parameters
+    ----------
+    mixture_ratio : float or array
+        Mass of oxidizer over mass of fuel of the whole [1].
+    film_fraction : float or array
+        Mass of the film over the whole [1], below 1.
+    film_mixture_ratio : float or array
+        Mass of oxidizer over mass of fuel in the film [1].
+
+    Returns
+    -------
+    array
+        Mass of oxidizer over mass of fuel in the core [1]; negative or infinite where the film would take more than there is.
+
+    Notes
+    -----
+    With w = r/(1 + r) the oxidizer share: w_core = (w - f w_film)/(1 - f), r_core = w_core/(1 - w_core).
+
+    Source
+    ------
+    Conservation of mass.
+    """
+    whole, film, share = (values(part) for part in (mixture_ratio, film_mixture_ratio, film_fraction))
+    oxidizer = whole / (1.0 + whole) - share * film / (1.0 + film)
+    with np.errstate(divide="ignore"):
+        return np.asarray(oxidizer / (1.0 - share - oxidizer))
