@@ -16,11 +16,11 @@ from propkit.physics.equilibrium import OUT_OF_RANGE, EquilibriumState
 from propkit.physics.expansion_frozen import Frozen, FrozenFrom, frozen_gas
 from propkit.physics.expansion_gas import PerfectGas
 from propkit.physics.expansion_shifting import Shifting
-from propkit.physics.expansion_state import FlowState, Isentrope
+from propkit.physics.expansion_state import FlowState, Isentrope, velocity
 from propkit.physics.thermodynamics import SpeciesTable
 
 __all__ = ["FlowState", "Frozen", "FrozenFrom", "Isentrope", "PerfectGas", "Shifting", "at_area_ratio", "at_pressure",
-           "frozen", "frozen_from", "perfect_gas", "shifting", "throat"]  # fmt: skip
+           "frozen", "frozen_from", "perfect_gas", "shifting", "throat", "velocity"]  # fmt: skip
 
 _WIDE = 2.0
 """Subsonic area ratio above which the velocity is taken from the mass flux."""

@@ -9,18 +9,19 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
 from propkit import quantities
+from propkit.chain import accelerated, sizing
 from propkit.chain import case as case_stage
 from propkit.chain import chamber as chamber_stage
 from propkit.chain import nozzle as nozzle_stage
 from propkit.chain import performance as performance_stage
-from propkit.chain import sizing
+from propkit.chain.accelerated import Accelerator
 from propkit.constants import GAS_CONSTANT
 from propkit.errors import InputError, NotAvailableError, Problem, PropkitError
 from propkit.model import paths, wall
@@ -120,6 +121,16 @@ def _assigned_enthalpy(target: Calculation, path: str) -> Variable | None:
     )
 
 
+@dataclass(frozen=True, slots=True)
+class Explained:
+    """Results by name, NaN where a case has none; why, by the number of the case; cases by the quick engine, and those it left."""
+
+    results: dict[str, Array]
+    reasons: dict[int, str]
+    quick: int = 0
+    slow: int = 0
+
+
 @dataclass(frozen=True)
 class ChainFunction:
     """A batch function of the chain that ends in `target`; picklable.
@@ -142,6 +153,7 @@ class ChainFunction:
     target: Calculation
     variables: tuple[str, ...]
     results: tuple[str, ...]
+    quick: Accelerator | None = field(default=None, repr=False, compare=False)
     template: Calculation = field(init=False, repr=False, compare=False)
     batched: bool = field(init=False, repr=False, compare=False)
 
@@ -156,16 +168,33 @@ class ChainFunction:
 
     def __call__(self, inputs: Mapping[str, Array]) -> dict[str, Array]:
         """Return the results at every case."""
-        return self.explained(inputs)[0]
+        return self.explained(inputs).results
 
-    def explained(self, inputs: Mapping[str, Array], count: int | None = None) -> tuple[dict[str, Array], dict[int, str]]:
+    def prepared(self, sample: Mapping[str, Array], count: int) -> ChainFunction:
+        """Return this function with the quick engine for a box of cases, where that serves.
+
+        Parameters
+        ----------
+        sample : mapping of str to array
+            Inputs of cases that span the box.
+        count : int
+            How many they are.
+        """
+        if not self.batched or type(self.template.chain()[0]) is not PropellantCase:
+            return self
+        with np.errstate(all="ignore"):
+            probe = _Probe(self.template, sample, count)
+            made = probe.accelerator()
+        return self if made is None else replace(self, quick=made)
+
+    def explained(self, inputs: Mapping[str, Array], count: int | None = None) -> Explained:
         """Return the results at every case, and why a case has none, by its number."""
         if count is None:
             count = len(next(iter(inputs.values())))
         if not self.batched:
-            return self._one_by_one(inputs, count)
+            return Explained(*self._one_by_one(inputs, count))
         with np.errstate(all="ignore"):
-            batch = _Batch(self.template, inputs, count)
+            batch = _Batch(self.template, inputs, count, self.quick)
             own = f"{self.template.kind}."
             found = {}
             whole = bool(batch.good.all())
@@ -175,7 +204,7 @@ class ChainFunction:
                     raise InputError(Problem(name, "not available", "a result of this recipe"))
                 spread = np.broadcast_to(values, (count,))
                 found[name] = spread if whole else np.where(batch.good, spread, np.nan)
-            return found, batch.reasons
+            return Explained(found, batch.reasons, batch.quick_cases, batch.slow_cases)
 
     def _has_batch_form(self, template: Calculation) -> bool:
         """Whether the stages can take the recipe as arrays: not where a loss is estimated, or the wall itself is asked for."""
@@ -289,8 +318,12 @@ _BATCHED = (PropellantCase, Chamber, GasChamber, Nozzle, Performance)
 class _Batch:
     """The stages of a chain over a batch; `results` by whole path, `good` where every stage has a solution."""
 
-    def __init__(self, target: Calculation, inputs: Mapping[str, Array], count: int) -> None:
-        self.inputs, self.count = inputs, count
+    def __init__(
+        self, target: Calculation, inputs: Mapping[str, Array], count: int, quick: Accelerator | None = None
+    ) -> None:
+        self.inputs, self.count, self.quick = inputs, count, quick
+        self.target = target
+        self.quick_cases = self.slow_cases = 0
         self.good = np.ones(count, dtype=bool)
         self.reasons: dict[int, str] = {}
         self.results: dict[str, Any] = {}
@@ -373,13 +406,20 @@ class _Batch:
 
     def _chamber(self, link: Calculation) -> None:
         assert self.mixture is not None
-        self.reservoir: Any = chamber_stage.combust(
-            self.mixture,
-            link._values["thermo_basis"] if "thermo_basis" in link._values else link.upstream.si("thermo_basis"),  # type: ignore[arg-type,union-attr]
-            pressure=self.array(link, "pressure"),
-            contraction_ratio=self.array(link, "contraction_ratio"),
-            pressure_at=link._values["pressure_at"],
-        )
+        ratio, pressure = self.array(link, "contraction_ratio"), self.array(link, "pressure")
+        if self.quick is not None and self.quick.serves(self.mixture, ratio):
+            frozen = any(below._values.get("flow") == "frozen" for below in self.target.chain())
+            self.reservoir: Any = self.quick.combust(self.mixture, pressure, keep=frozen)
+            self.quick_cases, self.slow_cases = self.count, len(self.reservoir.slow)
+        else:
+            self.quick = None
+            self.reservoir = chamber_stage.combust(
+                self.mixture,
+                self._basis(link),
+                pressure=pressure,
+                contraction_ratio=ratio,
+                pressure_at=link._values["pressure_at"],
+            )
         face, rest = self.reservoir.injector, self.reservoir.stagnation
         self.require(face.status != 2, "the combustion has no solution inside the range of the species data")
         self.require(face.status == 0, "the combustion at the injector face did not converge")
@@ -396,6 +436,9 @@ class _Batch:
                 "contraction_ratio": self.reservoir.contraction_ratio,
             },
         )
+
+    def _basis(self, link: Calculation) -> str:
+        return str(link.upstream.si("thermo_basis"))  # type: ignore[union-attr]
 
     def _gas(self, link: Calculation) -> None:
         given = link._values["gas_constant"] is not None
@@ -427,9 +470,8 @@ class _Batch:
             },
         )
 
-    def _nozzle(self, link: Calculation) -> None:
-        values = link._values
-        discharge = self.array(link, "discharge_coefficient")
+    def _asked(self, link: Calculation) -> tuple[Array | None, Array | None]:
+        """Return the geometric area ratio or the exit pressure asked for."""
         given = [name for name in ("area_ratio", "exit_pressure") if name in link.inputs]
         if given == ["exit_pressure"]:
             ratio, pressure = None, self.array(link, "exit_pressure")
@@ -438,14 +480,29 @@ class _Batch:
             possible = (ratio >= 1.0) & (ratio <= 1e4)
             self.require(possible, "the area ratio is not between 1 and 10 000")
             ratio = np.where(possible, ratio, 10.0)
-        expansion = nozzle_stage.expand(
+        return ratio, pressure
+
+    def _expanded(self, link: Calculation, area_ratio: Array | None, pressure: Array | None) -> nozzle_stage.Expansion:
+        values = link._values
+        if self.quick is not None:
+            found = self.quick.expand(
+                self.reservoir, flow=values["flow"], exponent=values["exponent"], area_ratio=area_ratio, exit_pressure=pressure
+            )
+            self.slow_cases = found.slow
+            return found.expansion
+        return nozzle_stage.expand(
             self.reservoir,
             flow=values["flow"],
             freeze_at=values["freeze_at"],
             exponent=values["exponent"],
-            area_ratio=None if ratio is None else ratio / discharge,
+            area_ratio=area_ratio,
             exit_pressure=pressure,
         )
+
+    def _nozzle(self, link: Calculation) -> None:
+        discharge = self.array(link, "discharge_coefficient")
+        ratio, pressure = self._asked(link)
+        expansion = self._expanded(link, None if ratio is None else ratio / discharge, pressure)
         if pressure is not None:
             self.require(pressure <= expansion.throat.pressure, "the exit pressure is above the throat pressure")
         for place in ("throat", "exit", "inlet"):
@@ -503,6 +560,8 @@ class _Batch:
     def _divergence(self, link: Calculation, ratio: Array) -> Array:
         """Return the divergence factor of the contour at each area ratio; 1 without a contour, NaN where none fits."""
         contour = link._values["contour"]
+        if contour is None:
+            return np.ones(self.count)
         factors: dict[float, float] = {}
         for each in np.unique(ratio).tolist():
             try:
@@ -540,6 +599,41 @@ class _Batch:
                     "density_impulse": thrust.density_impulse(delivered.specific_impulse, self.mixture.density),
                 },
             )
+
+
+class _Probe(_Batch):
+    """The inputs of the quick engine over a sample of cases: nothing is solved."""
+
+    basis = ""
+    pressure: Array | None = None
+    asked: tuple[Array | None, Array | None] = (None, None)
+    served = True
+    flow = ""
+
+    def _chamber(self, link: Calculation) -> None:
+        self.served &= type(link) is Chamber and not np.isfinite(self.array(link, "contraction_ratio")).any()
+        self.basis, self.pressure = self._basis(link), self.array(link, "pressure")
+
+    def _nozzle(self, link: Calculation) -> None:
+        values = link._values
+        self.flow = values["flow"]
+        late = values["flow"] == "frozen" and values["freeze_at"] != "chamber"
+        self.served &= values["flow"] in accelerated.FLOWS and not late
+        ratio, pressure = self._asked(link)
+        self.asked = (None if ratio is None else ratio / self.array(link, "discharge_coefficient"), pressure)
+
+    def _gas(self, link: Calculation) -> None:
+        self.served = False
+
+    def _performance(self, link: Calculation) -> None:
+        """Do nothing: it needs no guess."""
+
+    def accelerator(self) -> Accelerator | None:
+        """Return the quick engine for the box of these cases; None where it does not serve."""
+        if not self.served or self.mixture is None or self.pressure is None or getattr(self, "additive_fraction", 0.0) is None:
+            return None
+        ratio, pressure = self.asked if self.flow == "shifting" else (None, None)
+        return accelerated.prepare(self.mixture, self.basis, self.pressure, area_ratio=ratio, exit_pressure=pressure)
 
 
 def function_of(target: Calculation, inputs: Sequence[str], results: Sequence[str] | None = None) -> ChainFunction:

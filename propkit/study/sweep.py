@@ -200,6 +200,7 @@ class Study:
         columns = {name: np.empty(count) for name in work.results}
         done = np.zeros(count, dtype=bool)
         reasons: dict[int, str] = {}
+        counts = [0, 0]
 
         def keep(index: int, answer: Any) -> None:
             rows = blocks.rows(index)
@@ -209,10 +210,11 @@ class Study:
                 for column in columns.values():
                     column[where] = np.nan
             else:
-                table, why = answer
-                for name, values in zip(columns, table, strict=True):
+                for name, values in zip(columns, answer.table, strict=True):
                     columns[name][where] = values
-                reasons.update({int(rows[place]): text for place, text in why.items()})
+                reasons.update({int(rows[place]): text for place, text in answer.reasons.items()})
+                counts[0] += answer.quick
+                counts[1] += answer.slow
             done[where] = True
 
         how = run_blocks(
@@ -221,6 +223,8 @@ class Study:
         notes = list(how.notes)
         if self.one_by_one:
             notes.append(f"{self.one_by_one} designs have no batch form and were rebuilt one by one: slower, the same numbers")
+        if counts[0]:
+            notes.append(f"the quick engine solved {counts[0]} designs and left {counts[1]} of them to the damped solver")
         return StudyResult(self, columns, done, reasons, tuple(notes), how.interrupted, how.seconds)
 
 

@@ -15,7 +15,7 @@ import numpy.typing as npt
 from propkit.errors import PropkitError
 from propkit.model import paths
 from propkit.model.base import Calculation
-from propkit.study.evaluation import ChainFunction
+from propkit.study.evaluation import ChainFunction, Explained
 from propkit.study.sweep_plan import Integers, Plan, blocks_of
 
 Array = npt.NDArray[np.float64]
@@ -23,6 +23,10 @@ Array = npt.NDArray[np.float64]
 _KEPT: OrderedDict[str, Work] = OrderedDict()
 """Works that this process has unpickled, by digest, so that a worker rebuilds the objects once."""
 _MOST_KEPT = 8
+ENOUGH = 600
+"""Designs of one choice from which making a predictor for the quick engine pays."""
+SAMPLE = 400
+"""Designs that a predictor is made for, beside those at the ends."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,7 +38,7 @@ class Part:
     chosen: Mapping[str, Any]
     results: tuple[str, ...]
 
-    def __call__(self, inputs: Mapping[str, Array], count: int) -> tuple[dict[str, Array], dict[int, str]]:
+    def __call__(self, inputs: Mapping[str, Array], count: int) -> Explained:
         """Return results by name, NaN where a design has none, and why."""
         if self.function is not None:
             return self.function.explained(inputs, count)
@@ -49,7 +53,7 @@ class Part:
                 continue
             for name in self.results:
                 found[name][place] = value_or_nan(made, name)
-        return found, reasons
+        return Explained(found, reasons)
 
 
 def value_or_nan(made: Calculation, name: str) -> float:
@@ -60,6 +64,26 @@ def value_or_nan(made: Calculation, name: str) -> float:
         return float("nan")
 
 
+@dataclass(frozen=True, slots=True)
+class Answered:
+    """Results of a block (result, design), why a design has none, designs by the quick engine, and those it left."""
+
+    table: Array
+    reasons: dict[int, str]
+    quick: int = 0
+    slow: int = 0
+
+
+def _spanning(plan: Plan, rows: Integers) -> Integers:
+    """Return designs that span those of a group: some spread evenly, and those at the ends of each column."""
+    some = rows[np.unique(np.linspace(0, len(rows) - 1, min(SAMPLE, len(rows))).astype(np.intp))]
+    ends = []
+    for column in plan.numbers:
+        values = column.at(rows)
+        ends += [rows[int(np.argmin(values))], rows[int(np.argmax(values))]]
+    return np.unique(np.concatenate([some, np.array(ends, dtype=np.intp)]))
+
+
 class Work:
     """Function of a block (group, inputs, count) -> (table of shape (results, designs), reasons); picklable."""
 
@@ -68,20 +92,27 @@ class Work:
         self.results = tuple(results)
         self._pickled: tuple[bytes, str] | None = None
 
-    def __call__(self, block: tuple[int, dict[str, Array], int]) -> tuple[Array, dict[int, str]]:
+    def __call__(self, block: tuple[int, dict[str, Array], int]) -> Answered:
         """Return the results of the designs of a block, and why some have none."""
         group, inputs, count = block
         part = self.parts[group]
-        found, reasons = part(inputs, count)
+        found = part(inputs, count)
         table = np.full((len(self.results), count), np.nan)
         for place, name in enumerate(self.results):
-            if name in found:
-                table[place] = found[name]
-        return table, reasons
+            if name in found.results:
+                table[place] = found.results[name]
+        return Answered(table, found.reasons, found.quick, found.slow)
 
     def prepared(self, plan: Plan, groups: Sequence[tuple[Any, Integers]]) -> Work:
         """Return the work with what speeds it up over the designs of a plan."""
-        return self
+        parts = []
+        for part, (_, rows) in zip(self.parts, groups, strict=True):
+            function = part.function
+            if function is not None and len(rows) >= ENOUGH:
+                places = _spanning(plan, rows)
+                function = function.prepared(plan.inputs(places), len(places))
+            parts.append(Part(function, part.target, part.chosen, part.results))
+        return Work(parts, self.results)
 
     def __reduce__(self) -> tuple[Any, ...]:
         if self._pickled is None:

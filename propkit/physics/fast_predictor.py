@@ -1,0 +1,191 @@
+"""First guesses for the quick engine: Chebyshev polynomials fitted to solutions spread over the box of a study.
+
+Atoms and enthalpy of a study move in few directions (one when the mixture ratio varies); the coordinates are these
+principal directions, ln p, and ln of the area ratio or of the exit pressure. The polynomials are fitted by least squares to
+solutions at points spread by a Halton sequence with the density of Chebyshev nodes.
+
+Sources: Golub & Van Loan, Matrix Computations (principal directions by singular values); Trefethen, Approximation Theory
+and Approximation Practice (Chebyshev polynomials); Halton, Numerische Mathematik 2 (1960) 84.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from itertools import product
+from typing import Final
+
+import numpy as np
+import numpy.typing as npt
+
+from propkit.physics.arrays import Array
+from propkit.physics.equilibrium_newton import Integers
+
+_PRIMES: Final = (2, 3, 5, 7, 11, 13, 17, 19, 23, 29)
+_SAME: Final = 1e-9
+MARGIN: Final = 0.02
+"""Share of the box by which a case may lie outside it."""
+
+NODES_PER_TERM: Final = 1.5
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Coordinates:
+    """The box of a study: from atoms and enthalpy (row 0 up), and further logarithms, to coordinates from -1 to 1.
+
+    Parameters
+    ----------
+    centre, directions : array
+        Mean of (atoms, enthalpy), each over its size; principal directions, shape (direction, element + 1).
+    size : array
+        Sizes of atoms and enthalpy.
+    low, high : array
+        Ends of the box, first along the directions, then of the further logarithms.
+    used : array of bool
+        Which of the further logarithms vary.
+    """
+
+    centre: Array
+    directions: Array
+    size: Array
+    low: Array
+    high: Array
+    used: npt.NDArray[np.bool_]
+
+    @classmethod
+    def of(cls, elements: Array, enthalpy: Array, further: Array) -> Coordinates:
+        """Return the box around designs: atoms (element, design), enthalpy (design,), further logarithms (row, design)."""
+        whole = np.vstack([elements, enthalpy])
+        size = np.abs(whole).max(axis=1)
+        size = np.where(size > 0.0, size, 1.0)
+        scaled = whole / size[:, None]
+        centre = scaled.mean(axis=1)
+        left, values, _ = np.linalg.svd(scaled - centre[:, None], full_matrices=False)
+        kept = values > _SAME * np.sqrt(scaled.shape[1])
+        directions = np.ascontiguousarray(left[:, kept].T)
+        along = directions @ (scaled - centre[:, None])
+        used = np.ptp(further, axis=1) > _SAME
+        every = np.vstack([along, further[used]])
+        return cls(centre, directions, size, every.min(axis=1), every.max(axis=1), used)
+
+    @property
+    def count(self) -> int:
+        """Number of coordinates."""
+        return len(self.low)
+
+    def __call__(self, elements: Array, enthalpy: Array, further: Array) -> tuple[Array, npt.NDArray[np.bool_]]:
+        """Return coordinates (coordinate, design) clipped to the box, and which designs lie inside it."""
+        scaled = np.vstack([elements, enthalpy])
+        scaled /= self.size[:, None]
+        scaled -= self.centre[:, None]
+        along = self.directions @ scaled
+        scaled -= self.directions.T @ along
+        off = np.abs(scaled).max(axis=0)
+        every = np.vstack([along, further[self.used]])
+        every -= (0.5 * (self.low + self.high))[:, None]
+        every /= (0.5 * (self.high - self.low))[:, None]
+        inside = (np.abs(every).max(axis=0, initial=0.0) <= 1.0 + 2.0 * MARGIN) & (off < 1e-6)
+        fixed = further[~self.used]
+        return np.clip(every, -1.0, 1.0, out=every), inside if not len(fixed) else inside & np.isfinite(fixed).all(axis=0)
+
+    def back(self, coordinates: Array, further: Array) -> tuple[Array, Array, Array]:
+        """Return atoms, enthalpy and further logarithms at coordinates; `further` gives those that do not vary."""
+        every = 0.5 * (self.low + self.high)[:, None] + 0.5 * (self.high - self.low)[:, None] * coordinates
+        count = len(self.directions)
+        whole = (self.centre[:, None] + self.directions.T @ every[:count]) * self.size[:, None]
+        logs = np.repeat(further[:, :1], coordinates.shape[1], axis=1)
+        logs[self.used] = every[count:]
+        return whole[:-1], whole[-1], logs
+
+
+def halton(count: int, dimensions: int) -> Array:
+    """Return points of the Halton sequence, shape (dimension, point), from 0 to 1."""
+    found = np.empty((dimensions, count))
+    for row in range(dimensions):
+        base, index = _PRIMES[row], np.arange(1, count + 1)
+        value, share = np.zeros(count), 1.0 / base
+        while index.any():
+            value += share * (index % base)
+            index //= base
+            share /= base
+        found[row] = value
+    return found
+
+
+def nodes(count: int, dimensions: int) -> Array:
+    """Return points of the box with the density of Chebyshev nodes, shape (dimension, point), from -1 to 1."""
+    return np.asarray(-np.cos(np.pi * halton(count, dimensions)))
+
+
+def terms(degrees: tuple[int, ...]) -> Integers:
+    """Return the orders of each term of a polynomial: those whose orders, over the degrees, add up to 1 at most."""
+    listed = [order for order in product(*(range(degree + 1) for degree in degrees)) if sum(o / d for o, d in zip(order, degrees, strict=True)) <= 1.0 + 1e-9]
+    orders = np.array(listed, dtype=np.intp).reshape(len(listed), len(degrees))
+    if not degrees:
+        return orders
+    fastest = int(np.argmax(degrees))
+    keys = [orders[:, fastest], *(orders[:, row] for row in reversed(range(len(degrees))) if row != fastest)]
+    return np.ascontiguousarray(orders[np.lexsort(keys)])
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Fit:
+    """A polynomial of several values over the box: orders (term, coordinate), coefficients (value, term)."""
+
+    orders: Integers
+    coefficients: Array
+
+    @classmethod
+    def of(cls, coordinates: Array, values: Array, degrees: tuple[int, ...]) -> Fit:
+        """Return the least-squares fit to values (value, point) at coordinates (coordinate, point)."""
+        orders = terms(degrees)
+        table = basis(orders, coordinates)
+        found = np.linalg.lstsq(table.T, values.T, rcond=1e-12)[0]
+        return cls(orders, np.ascontiguousarray(found.T))
+
+    def __call__(self, coordinates: Array) -> Array:
+        """Return the values at coordinates, shape (value, design)."""
+        return np.asarray(self.coefficients @ basis(self.orders, coordinates))
+
+
+def basis(orders: Integers, coordinates: Array) -> Array:
+    """Return the terms at coordinates, shape (term, design)."""
+    count = coordinates.shape[1]
+    out = np.ones((len(orders), count))
+    if not len(coordinates):
+        return out
+    tables = [_chebyshev(int(orders[:, row].max()), coordinates[row]) for row in range(len(coordinates))]
+    last = int(np.argmax(orders.max(axis=0)))
+    others = [row for row in range(len(coordinates)) if row != last]
+    place = 0
+    # terms are listed with the coordinate of highest degree running fastest: a run of terms shares everything but that one
+    for length, first in _runs(orders, last):
+        run = out[place : place + length]
+        factor = None
+        for row in others:
+            if first[row]:
+                part = tables[row][first[row]]
+                factor = part if factor is None else factor * part
+        if factor is None:
+            run[:] = tables[last][:length]
+        else:
+            np.multiply(tables[last][:length], factor, out=run)
+        place += length
+    return out
+
+
+def _runs(orders: Integers, last: int) -> list[tuple[int, Integers]]:
+    starts = np.flatnonzero(orders[:, last] == 0)
+    ends = np.append(starts[1:], len(orders))
+    return [(int(end - start), orders[start]) for start, end in zip(starts, ends, strict=True)]
+
+
+def _chebyshev(degree: int, u: Array) -> Array:
+    found = np.empty((degree + 1, u.size))
+    found[0] = 1.0
+    if degree:
+        found[1] = u
+    for k in range(2, degree + 1):
+        np.multiply(found[k - 1], u, out=found[k])
+        found[k] *= 2.0
+        found[k] -= found[k - 2]
+    return found
