@@ -109,8 +109,8 @@ def departure(
         ideal, real = (_expand(_phase(kind, thermo_basis, elements, shares), temperature, pressure, shares, area_ratio) for kind in ("ideal-gas", "Redlich-Kwong"))
     except (cantera.CanteraError, ValueError) as error:
         raise NotAvailableError("the cubic equation of state has no solution along this nozzle") from error
-    ratios = [theirs / ours for theirs, ours in zip(real[1:], ideal[1:], strict=True)]
-    return Departure(real[0], *ratios, float(left_out))
+    flow, velocity, exit_pressure = (theirs / ours for theirs, ours in zip(real[1:], ideal[1:], strict=True))
+    return Departure(real[0], flow, velocity, exit_pressure, float(left_out))
 
 
 def _phase(kind: str, thermo_basis: str, elements: tuple[str, ...], keys: Collection[str]) -> Any:
@@ -121,7 +121,7 @@ def _phase(kind: str, thermo_basis: str, elements: tuple[str, ...], keys: Collec
     for plain in load_basis(thermo_basis).cantera_species(elements):
         if plain.name in keys:
             temperature, pressure = CRITICAL[plain.name]
-            entry = {
+            entry: Any = {
                 "name": plain.name,
                 "composition": dict(plain.composition),
                 "critical-parameters": {"critical-temperature": temperature, "critical-pressure": pressure, "acentric-factor": 0.0},

@@ -57,12 +57,16 @@ class Variant:
 
 @dataclass(frozen=True, slots=True)
 class Delivered:
-    """What a variant delivers in SI, or why not."""
+    """What a variant delivers in SI, with its exit and stagnation pressure [Pa] and exit Mach number, or why not."""
 
     mass_flow: float
     specific_impulse: float
     thrust: float
     reason: str = ""
+    thrust_coefficient: float = float("nan")
+    exit_pressure: float = float("nan")
+    exit_mach: float = float("nan")
+    stagnation_pressure: float = float("nan")
 
 
 def evaluate(variants: Sequence[Variant]) -> list[Delivered]:
@@ -196,4 +200,12 @@ def _expand(variants: Sequence[Variant], reservoir: Any, rows: Sequence[int], fo
             divergence_factor=one.divergence_factor,
             losses=one.losses,
         )
-        found[row] = Delivered(*(float(getattr(delivered, name)) for name in ("mass_flow", "specific_impulse", "thrust")))
+        found[row] = Delivered(
+            mass_flow=float(delivered.mass_flow),
+            specific_impulse=float(delivered.specific_impulse),
+            thrust=float(delivered.thrust),
+            thrust_coefficient=float(delivered.thrust_coefficient),
+            exit_pressure=float(made.exit.pressure[place]),
+            exit_mach=float(made.exit.mach[place]),
+            stagnation_pressure=float(stagnation[place]),
+        )

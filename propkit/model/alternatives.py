@@ -79,6 +79,9 @@ def base_variant(performance: Performance) -> Variant:
 
 def prices(performance: Performance) -> dict[str, list[Price]]:
     """Return what the alternatives to each assumption change, by the key of the assumption."""
+    case = performance.chamber.case_or_none
+    if case is not None and case.held.mixture.shares is not None:
+        return {"film": [_uniform_mixture(performance, case)]}
     base = base_variant(performance)
     asked = list(_asked(performance, base))
     here, *there = stage.evaluate([base, *(entry.variant for entry in asked)])
@@ -90,11 +93,27 @@ def prices(performance: Performance) -> dict[str, list[Price]]:
     return {key: sorted(listed, key=lambda price: -price.size) for key, listed in found.items()}
 
 
+def _uniform_mixture(performance: Performance, case: Any) -> Price:
+    """Return what mixing the film of a case into its core would change; the other assumptions have no price beside a film."""
+    other = case.beside_uniform(performance)
+    changes = [_change(performance.si(name), other.si(name)) for name in ("mass_flow", "specific_impulse", "thrust")]
+    return Price("uniform mixture", *changes, note="the film mixed into the core")
+
+
 def _price(entry: Asked, here: Delivered, there: Delivered) -> Price:
     if here.reason or there.reason:
         return Price(entry.alternative, note=here.reason or there.reason)
-    changes = [_change(getattr(here, name), getattr(there, name)) for name in ("mass_flow", "specific_impulse", "thrust")]
-    return Price(entry.alternative, *changes, note=entry.note)
+    return _changes(entry.alternative, here, there, entry.note)
+
+
+def _changes(alternative: str, here: Delivered, there: Delivered, note: str = "") -> Price:
+    return Price(
+        alternative,
+        mass_flow=_change(here.mass_flow, there.mass_flow),
+        specific_impulse=_change(here.specific_impulse, there.specific_impulse),
+        thrust=_change(here.thrust, there.thrust),
+        note=note,
+    )
 
 
 def _change(here: float, there: float) -> float:
@@ -149,10 +168,11 @@ def _efficiencies(base: Variant) -> Iterator[Asked]:
         if key == "discharge" and here != 1.0:
             continue
         wanted = other if here == 1.0 else 1.0
-        losses = base.losses
-        if field == "cstar_efficiency" and "energy release" in losses:
-            continue
-        yield Asked(key, f"{wanted:g}", replace(base, **{field: wanted}, losses=losses))
+        if field == "cstar_efficiency":
+            if "energy release" not in base.losses:
+                yield Asked(key, f"{wanted:g}", replace(base, cstar_efficiency=wanted))
+        else:
+            yield Asked(key, f"{wanted:g}", replace(base, discharge_coefficient=wanted))
 
 
 def _divergence(performance: Performance, base: Variant) -> Iterator[Asked]:
@@ -261,9 +281,9 @@ def _real_gas(performance: Performance) -> Price | None:
     push = (nozzle.exit.si("pressure") * gone.exit_pressure_ratio - performance.si("ambient")) * nozzle.si("exit_area")
     thrust = flow * performance.delivered_velocity * gone.velocity_ratio + push
     here = performance.si("thrust")
-    changes = (gone.mass_flow_ratio - 1.0, (thrust / flow) / (here / performance.si("mass_flow")) - 1.0, thrust / here - 1.0)
+    impulse = (thrust / flow) / (here / performance.si("mass_flow"))
     note = f"frozen composition; {100.0 * gone.left_out:.2g} % of the gas (radicals) left out"
-    return Price(f"Redlich-Kwong, Z = {gone.compressibility:.4f}", *changes, note=note)
+    return Price(f"Redlich-Kwong, Z = {gone.compressibility:.4f}", gone.mass_flow_ratio - 1.0, impulse - 1.0, thrust / here - 1.0, note)
 
 
 def _friction(performance: Performance) -> Price | None:
@@ -307,5 +327,5 @@ def _lossless(performance: Performance) -> Price | None:
     if not performance.resolved_losses.ratios:
         return None
     free = stage.evaluate([replace(base_variant(performance), losses=delivery.NO_LOSSES)])[0]
-    here = Delivered(*(performance.si(name) for name in ("mass_flow", "specific_impulse", "thrust")))
-    return Price("none of these losses", *(_change(getattr(here, name), getattr(free, name)) for name in ("mass_flow", "specific_impulse", "thrust")))
+    here = Delivered(performance.si("mass_flow"), performance.si("specific_impulse"), performance.si("thrust"))
+    return _changes("none of these losses", here, free)

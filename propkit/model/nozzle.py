@@ -8,13 +8,11 @@ from collections.abc import Iterator, Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Self
 
-import numpy as np
-
 from propkit import units
 from propkit.chain import nozzle as stage
 from propkit.chain import outcome, sizing
 from propkit.errors import InputError, Problem, RangeError
-from propkit.model import nozzle_flow, nozzle_sizes, sheet
+from propkit.model import nozzle_flow, nozzle_sizes, nozzle_states, sheet
 from propkit.model import wall as wall_of_nozzle
 from propkit.model.ambient import read_ambient
 from propkit.model.base import Calculation, Outcome
@@ -365,7 +363,7 @@ class Nozzle(Calculation):
         return self._state("exit", "exit")
 
     def _state(self, station: str, attribute: str) -> State:
-        return self.lazily(attribute, lambda: _state_of(station, getattr(self.held, attribute), self.held))
+        return self.lazily(attribute, lambda: nozzle_states.state_of(station, getattr(self.held, attribute), self.held))
 
     def state_paths(self) -> tuple[str, ...]:
         """Return the dotted names of the states' properties."""
@@ -395,49 +393,7 @@ class Nozzle(Calculation):
         InputError
             For a value that no state of this flow has.
         """
-        if branch not in ("supersonic", "subsonic"):
-            raise InputError(Problem("branch", as_text(branch), "'supersonic' or 'subsonic'"))
-        if (area_ratio is None) == (pressure is None):
-            raise InputError(
-                Problem(
-                    "area_ratio",
-                    "missing" if area_ratio is None else "given beside pressure",
-                    "given, or pressure in its place",
-                    "Give one of the two.",
-                )
-            )
-        if area_ratio is not None:
-            ratio = units.to_si(area_ratio, "", "area_ratio")
-            if not 1.0 <= ratio <= 1e6:
-                raise InputError(Problem("area_ratio", as_text(area_ratio), "at least 1 and at most 1e+06"))
-            flow = stage.state_at(
-                self.held, area_ratio=ratio / self.si("discharge_coefficient"), supersonic=branch == "supersonic"
-            )
-            label = f"{branch}, area ratio {ratio:g}"
-        else:
-            wanted = units.to_si(pressure, "Pa", "pressure")
-            stagnation = self.chamber.si("stagnation_pressure")
-            if not 0.0 < wanted <= stagnation:
-                raise InputError(
-                    Problem(
-                        "pressure", as_text(pressure), f"above 0 and at most the stagnation pressure, {stagnation:g} Pa"
-                    )
-                )
-            flow = stage.state_at(self.held, pressure=wanted)
-            label = f"pressure {wanted:g} Pa"
-        if self.flow == "frozen" and int(flow.status[0]) == outcome.OUT_OF_RANGE:
-            name = "pressure" if area_ratio is None else "area_ratio"
-            given = as_text(pressure if area_ratio is None else area_ratio)
-            raise InputError(
-                Problem(
-                    name,
-                    given,
-                    "outside the gap between the freezing point and the frozen sonic point",
-                    "Frozen flow returns no state there.",
-                )
-            )
-        outcome.raise_for(flow, f"state at {label}")
-        return _state_of(label, flow, self.held)
+        return nozzle_states.state_at(self, area_ratio, pressure, branch)
 
     @property
     def stations(self) -> pd.DataFrame:
@@ -542,34 +498,7 @@ class Nozzle(Calculation):
         return f"{self.chamber.subtitle()}, area ratio {self.si('area_ratio'):.4g}, {self.flow}"
 
     def _own_assumptions(self) -> tuple[Assumption, ...]:
-        words = {
-            "shifting": "Composition follows chemical equilibrium through the nozzle (shifting).",
-            "frozen": f"Composition is frozen from {self._frozen_text()}.",
-            "constant-property": "Gas constant and isentropic exponent are those of the reservoir throughout.",
-        }
-        made = [
-            Assumption("flow", words[self.flow], self.kind_of("flow"), "mass_flow"),
-            Assumption(
-                "isentropic",
-                "The flow is one-dimensional and isentropic from the nozzle inlet on.",
-                "method",
-                "specific_impulse",
-            ),
-        ]
-        if self.discharge_coefficient == 1.0:
-            made.append(
-                Assumption(
-                    "discharge",
-                    "The whole throat area passes flow (discharge coefficient 1).",
-                    self.kind_of("discharge_coefficient"),
-                    "mass_flow",
-                )
-            )
-        return tuple(made)
-
-    def _frozen_text(self) -> str:
-        at = self._values["freeze_at"]
-        return {"chamber": "the nozzle inlet", "throat": "the throat"}.get(str(at), f"area ratio {at}")
+        return nozzle_states.assumptions(self)
 
     def flow_sections(self, system: UnitSystem) -> Iterator[Section]:
         """Yield the stations and the composition along the nozzle."""
@@ -595,12 +524,3 @@ class Nozzle(Calculation):
         from propkit.model import drawings
 
         return drawings.nozzle_figures(self, system)
-
-
-def _state_of(station: str, flow: Any, expansion: stage.Expansion) -> State:
-    values = {name: float(getattr(flow, name)[0]) for name in STATE_FIELDS if getattr(flow, name, None) is not None}
-    condensed = expansion.condensed_mass_fraction(flow)
-    if condensed is not None:
-        values["condensed_mass_fraction"] = condensed
-    values = {name: value for name, value in values.items() if np.isfinite(value)}
-    return State(station, values, {"condensed_mass_fraction": "only gases are counted (condensed=True on the case changes that)"})

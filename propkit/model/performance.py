@@ -10,7 +10,7 @@ import numpy as np
 from propkit import quantities, units
 from propkit.chain import performance as stage
 from propkit.errors import Problem
-from propkit.model import loss_sheet
+from propkit.model import loss_sheet, operation
 from propkit.model import losses as bookkeeping
 from propkit.model import separation as criteria
 from propkit.model.ambient import Ambient, read_ambient
@@ -26,7 +26,12 @@ from propkit.report import Section, UnitSystem
 from propkit.series import Axis, Figure, Line, Mark, Series
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     import pandas as pd
+
+    from propkit.model.answer import Answer
+    from propkit.model.declare import NumberLike, QuantityLike
 
 
 class Performance(Calculation):
@@ -195,6 +200,67 @@ class Performance(Calculation):
     def thrust_separated(self) -> Any:
         """Estimate of the thrust of the separated nozzle: the middle of what three criteria give."""
         return units.quantity(self.lazily("thrust_separated", lambda: criteria.separated_thrust(self)), "N")
+
+    def altitude_profile(self) -> pd.DataFrame:
+        """Return thrust and its ratios from sea level to 100 km in the standard atmosphere.
+
+        Returns
+        -------
+        pandas.DataFrame
+            Index altitude [m]; ambient pressure, full-flowing thrust, Isp and CF, how many of three criteria predict
+            separation, whether the nozzle flows full (fewer than two do), and the area ratio whose exit pressure would be the
+            ambient one. SI floats, units in ``attrs["units"]``.
+        """
+        return self.lazily("altitude_profile", lambda: operation.altitude_profile(self)).copy()
+
+    def throttle_map(
+        self,
+        pressure: Sequence[QuantityLike] | QuantityLike | None = None,
+        mixture_ratio: Sequence[NumberLike] | NumberLike | None = None,
+        *,
+        minimum_pressure: QuantityLike | None = None,
+    ) -> Answer:
+        """Return the performance of the same hardware over chamber pressures and mixture ratios, computed in one batch.
+
+        Parameters
+        ----------
+        pressure : sequence of quantity, optional
+            Chamber pressures [Pa]; 30 % to 100 % of this one by default.
+        mixture_ratio : sequence of number, optional
+            Mixture ratios [1]; this one by default.
+        minimum_pressure : quantity, optional
+            Lowest pressure at which the chamber runs [Pa], this performance's own by default; a lower one is refused.
+
+        Returns
+        -------
+        Answer
+            full_flow_pressure (below it the nozzle no longer flows full at sea level); `frame` with every case.
+        """
+        return operation.throttle_map(self, pressure, mixture_ratio, minimum_pressure)
+
+    def burn(
+        self,
+        *,
+        duration: QuantityLike | None = None,
+        total_impulse: QuantityLike | None = None,
+        ullage: NumberLike | None = None,
+        residuals: NumberLike | None = None,
+    ) -> Answer:
+        """Return propellant masses and tank volumes of a steady burn.
+
+        Parameters
+        ----------
+        duration, total_impulse : quantity
+            One of the two: burning time [s], or impulse [N s].
+        ullage, residuals : number, optional
+            Share of the tank volume that is gas [1], 0.03 by default; share of the loaded propellant that is left [1], 0.01.
+
+        Returns
+        -------
+        Answer
+            Loaded masses, tank volumes, duration and total impulse.
+        """
+        return operation.burn(self, duration, total_impulse, ullage, residuals)
 
     @property
     def chamber(self) -> Any:
