@@ -97,13 +97,17 @@ def _parser() -> argparse.ArgumentParser:
 def _memo(options: argparse.Namespace) -> int:
     from propkit.memo.notebook import write_memo
 
-    outcome = write_memo(options.notebook, options.out, execute=not options.as_is, timeout=options.timeout, crate=options.crate, say=print)
+    outcome = write_memo(options.notebook, options.out, execute=not options.as_is, timeout=options.timeout, crate=options.crate, say=_say)
     for path in outcome.written:
         print(f"wrote {path}")
     if outcome.error:
         _complain(f"{outcome.error}\nThe partial notebook was kept.")
         return MISMATCH
     return GOOD
+
+
+def _say(text: str) -> None:
+    print(text, flush=True)
 
 
 def _verify(options: argparse.Namespace) -> int:

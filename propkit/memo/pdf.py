@@ -11,8 +11,6 @@ from importlib import resources
 from propkit.errors import MissingExtraError, RecordError
 from propkit.memo.typeset import typeset_blocks
 
-PAPERS = ("a4", "us-letter")
-
 
 def compiled(
     title: str,

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import copy
 import importlib
+import math
 from collections.abc import Callable, Mapping
 from pathlib import Path
 from typing import Any
@@ -11,7 +12,7 @@ from typing import Any
 from propkit.errors import InputError, Problem, RecordError
 from propkit.model.base import RECORD_MIME, Calculation, from_recipe
 from propkit.record import build, schema
-from propkit.record.canonical import canonical_bytes, digest_of, sealed, whole_digest
+from propkit.record.canonical import LARGEST_INTEGER, canonical_bytes, digest_of, sealed, whole_digest
 from propkit.record.outcome import Verification
 from propkit.record.storage import write_atomically
 from propkit.record.verify import seal_checks, verify_document
@@ -30,12 +31,12 @@ class Record:
     Made by ``obj.record(title=...)`` or `Record.load`.
     """
 
-    __slots__ = ("_calculation", "_document", "_migrated_from", "_seals")
+    __slots__ = ("_calculation", "_document", "_migrated_from", "_sealed_as")
 
     def __init__(self, document: Mapping[str, Any]) -> None:
         plain_document = _ordered(document)
         version = schema.version_of(plain_document)
-        self._seals = (digest_of(plain_document.get("content")), whole_digest(plain_document))
+        self._sealed_as: dict[str, Any] = plain_document
         self._migrated_from = None if version == schema.VERSION else version
         self._document: dict[str, Any] = schema.migrated(plain_document)
         schema.check_form(self._document)
@@ -93,7 +94,11 @@ class Record:
     @property
     def sealed(self) -> bool:
         """Whether both digests are those of the document: it was not changed since it was sealed."""
-        return all(check.status == "same" for check in seal_checks(self._document, self._seals))
+        return all(check.status == "same" for check in seal_checks(self._document, self._seals()))
+
+    def _seals(self) -> tuple[str, str]:
+        """Return both digests as computed over the document in the form that it was sealed in."""
+        return digest_of(self._sealed_as.get("content")), whole_digest(self._sealed_as)
 
     def verify(self, name: str = "record") -> Verification:
         """Return what comes out when everything is recomputed from the inputs and compared.
@@ -103,7 +108,7 @@ class Record:
         name : str
             What to call the record in the table.
         """
-        return verify_document(self._document, name, self._seals, self._migrated_from)
+        return verify_document(self._document, name, self._seals(), self._migrated_from)
 
     def compare(self, other: Record) -> Any:
         """Return what differs between this record and another: inputs, assumptions, versions, results.
@@ -253,8 +258,18 @@ class Record:
 def _ordered(value: Any) -> Any:
     """Return a copy with the keys of every mapping in order, so that a record made and a record read show the same."""
     if isinstance(value, Mapping):
-        return {key: _ordered(value[key]) for key in sorted(value, key=str)}
-    return [_ordered(entry) for entry in value] if isinstance(value, list | tuple) else value
+        if not all(isinstance(key, str) for key in value):
+            raise RecordError("the keys of a record are texts")
+        return {key: _ordered(value[key]) for key in sorted(value)}
+    if isinstance(value, list | tuple):
+        return [_ordered(entry) for entry in value]
+    if value is None or isinstance(value, str | bool):
+        return value
+    if isinstance(value, int) and abs(value) >= LARGEST_INTEGER:
+        raise RecordError("a record holds integers of 2^53 and above as texts")
+    if not isinstance(value, int | float) or not math.isfinite(value):
+        raise RecordError(f"a record cannot hold {str(value)[:40]!r}")
+    return value
 
 
 def record_of(calculation: Calculation, *, title: str = "", author: str = "", purpose: str = "", notes: str = "") -> Record:

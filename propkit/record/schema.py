@@ -32,7 +32,18 @@ def schema() -> dict[str, Any]:
 def _validator() -> Any:
     from jsonschema import Draft202012Validator
 
-    return Draft202012Validator(schema())
+    return Draft202012Validator(_inlined(schema(), schema()["$defs"]))
+
+
+def _inlined(part: Any, definitions: Mapping[str, Any]) -> Any:
+    """Return a schema with its references replaced by what they name, which validates several times faster."""
+    if isinstance(part, list):
+        return [_inlined(entry, definitions) for entry in part]
+    if not isinstance(part, Mapping):
+        return part
+    made = {key: _inlined(value, definitions) for key, value in part.items() if key not in ("$ref", "$defs")}
+    target = part.get("$ref")
+    return made if target is None else {**_inlined(definitions[target.removeprefix("#/$defs/")], definitions), **made}
 
 
 def version_of(document: Any) -> int:

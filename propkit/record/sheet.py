@@ -6,6 +6,7 @@ from collections.abc import Iterator, Mapping
 from typing import TYPE_CHECKING, Any
 
 from propkit import quantities, units
+from propkit.errors import PropkitError
 from propkit.model.base import render
 from propkit.model.sheet import in_display
 from propkit.report import Column, Report, Row, Section, Table
@@ -22,6 +23,8 @@ _TITLES = {
     "firing": "Hot firing",
     "uncertainty": "Uncertainty",
 }
+_DEEPEST_SHOWN = 3
+_INDENT = "\u2003"
 HEADLINES = {
     "case": ("mixture_ratio", "bulk_density"),
     "chamber": ("temperature", "characteristic_velocity", "molar_mass"),
@@ -48,7 +51,7 @@ def report_of(record: Record) -> Report:
         subtitle=content["description"] if content["title"] else "",
         units="SI",
         headline=tuple(headline),
-        sections=(*_text_sections(content), *_object_sections(content), *_rest(content), _seal(record, provenance)),
+        sections=(*_text_sections(content), *_object_sections(content), *_rest(record, content), _seal(record, provenance)),
         doubts=tuple(entry["text"] for entry in content["warnings"]),
         cautions=tuple(content["cautions"]),
         render=render,
@@ -93,7 +96,23 @@ def _row(kind: str, name: str, entry: Mapping[str, Any], how: Any) -> Row:
     return Row(name, label, symbol, value, unit, digits, how, typed=typed if typed != value else "")
 
 
-def _rest(content: Mapping[str, Any]) -> Iterator[Section]:
+def _origin_lines(record: Record) -> tuple[str, ...]:
+    """Return where the first result comes from, two levels deep; nothing where the record cannot be recomputed."""
+    content = record.content
+    stored = content["objects"][content["object"]]["results"]
+    names = [name for name in reversed(HEADLINES[content["object"]][:2]) if name in stored]
+    try:
+        origin = record.trace(names[0]) if names else None
+    except PropkitError:
+        return ()
+    listed = [] if origin is None else [(depth, entry) for depth, entry in origin.lines() if depth < _DEEPEST_SHOWN]
+    return tuple(f"{_INDENT * depth}{entry.text}: {entry.how}" for depth, entry in listed)
+
+
+def _rest(record: Record, content: Mapping[str, Any]) -> Iterator[Section]:
+    lines = _origin_lines(record)
+    if lines:
+        yield Section("trace", "Where the result comes from", lines=lines)
     rows = content["stations"]["rows"]
     if rows:
         yield Section("stations", "Stations", table=_station_table(rows, content["stations"]["units"]))

@@ -1,13 +1,14 @@
 import copy
 import json
 import pickle
+from pathlib import Path
 
 import pytest
 
 import propkit as pk
 from propkit.errors import InputError, RecordError, StorageError
 from propkit.model.base import RECORD_MIME
-from propkit.record import schema
+from propkit.record import differences, schema
 from propkit.record.canonical import sealed
 from propkit.record.verify import judged, recomputed
 
@@ -104,9 +105,23 @@ def test_record_is_immutable_and_portable(record):
     assert record.calculation.si("thrust") == record.content["objects"]["performance"]["results"]["thrust"]["value"]
 
 
+EVERY = 4
+"""Every fourth leaf in the default run, from another start for each of the two tests; all of them in the full run."""
+
+
 def test_any_change_without_resealing_fails(record):
+    check_without_resealing(record, EVERY, 0)
+
+
+@pytest.mark.full
+def test_any_change_fails_with_and_without_resealing_at_length(record):
+    check_without_resealing(record, 1, 0)
+    check_after_resealing(record, 1, 0, 300)
+
+
+def check_without_resealing(record, step, start):
     document = record.document
-    for path in leaves(document):
+    for path in list(leaves(document))[start::step]:
         tampered = with_leaf(document, path, changed(get(document, path)))
         try:
             assert not pk.Record(tampered).sealed, path
@@ -123,12 +138,16 @@ FREE = {"title", "author", "purpose", "notes"}
 
 
 def test_any_change_fails_after_resealing(record):
+    check_after_resealing(record, EVERY, 1, 75)
+
+
+def check_after_resealing(record, step, start, least):
     """The recipe decides what is recomputed; all other leaves are compared with one recomputation of the untouched recipe."""
     document = record.document
     again = recomputed(document["content"])
     assert judged(document, again, "record").status == "verified"
     tried = 0
-    for path in leaves(document["content"]):
+    for path in list(leaves(document["content"]))[start::step]:
         if path[0] in (*FREE, "recipe") or path[-1] == "checksum":
             continue
         tampered = with_leaf(document, ("content", *path), changed(get(document["content"], path)))
@@ -138,7 +157,7 @@ def test_any_change_fails_after_resealing(record):
             continue
         tried += 1
         assert judged(resealed.document, again, "record").exit_code == 1, path
-    assert tried > 300
+    assert tried > least
 
 
 @pytest.mark.parametrize("path", [
@@ -291,3 +310,33 @@ def test_outcome_forms(record):
     assert suite.get("name").startswith("a<b>.json")
     assert "<b>&amp;" not in verification.to_html()
     assert json.loads(json.dumps(verification.to_dict()))["differences"][0]["path"] == "objects.performance.results.thrust.value"
+
+
+@pytest.mark.parametrize("value", [float("nan"), float("inf"), 2**53, object(), {1: 2}])
+def test_what_no_record_holds(record, value):
+    document = record.document
+    document["content"]["objects"]["performance"]["results"]["thrust"]["value"] = value
+    with pytest.raises(RecordError):
+        pk.Record(document)
+
+
+SAMPLES = sorted((Path(__file__).parent / "samples").glob("record-v*.json"))
+
+
+@pytest.mark.parametrize("path", SAMPLES, ids=[path.stem for path in SAMPLES])
+def test_stored_samples_of_every_version_stay_readable(path):
+    """A record of each schema version as it was written; words may change since, numbers may not."""
+    stored = pk.Record.load(path)
+    assert stored.sealed
+    assert str(stored)
+    found = [
+        leaf
+        for leaf in differences.leaves(stored.content, recomputed(stored.content))
+        if leaf.group in ("results", "stations") and leaf.difference is not None
+    ]
+    assert len(found) > 60
+    assert max(leaf.difference for leaf in found) < 1e-6
+
+
+def test_every_version_has_a_sample():
+    assert {path.stem for path in SAMPLES} == {f"record-v{version}" for version in range(1, schema.VERSION + 1)}
