@@ -129,6 +129,8 @@ def combust(
 
 def _side_by_side(found: Combustion, shares: Array) -> Combustion:
     """Return streams of one stagnation pressure as one chamber, with the throat of the whole."""
+    if (found.injector.status != outcome.CONVERGED).any():
+        return replace(found, shares=shares)
     isentrope = Parallel(expansion.shifting(found.table, found.atoms, found.stagnation), shares[None, :])
     throat = expansion.throat(isentrope)
     cstar = _cstar(found.stagnation.pressure, throat)

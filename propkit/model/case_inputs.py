@@ -25,7 +25,7 @@ _ADDITIVES = 'what is added with its mass fraction of the whole flow, for exampl
 
 
 class PercentInput(NumberInput):
-    """A number of percent: 75, "75" and "75 %" are the same."""
+    """A number of percent: 75 and "75 %" are the same."""
 
     def read(self, value: Any) -> Any:
         """Return the number of percent; InputError with one problem when it is not legal."""
