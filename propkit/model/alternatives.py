@@ -96,8 +96,8 @@ def prices(performance: Performance) -> dict[str, list[Price]]:
 def _uniform_mixture(performance: Performance, case: Any) -> Price:
     """Return what mixing the film of a case into its core would change; the other assumptions have no price beside a film."""
     other = case.beside_uniform(performance)
-    changes = [_change(performance.si(name), other.si(name)) for name in ("mass_flow", "specific_impulse", "thrust")]
-    return Price("uniform mixture", *changes, note="the film mixed into the core")
+    here, there = (Delivered(one.si("mass_flow"), one.si("specific_impulse"), one.si("thrust")) for one in (performance, other))
+    return _changes("uniform mixture", here, there, "the film mixed into the core")
 
 
 def _price(entry: Asked, here: Delivered, there: Delivered) -> Price:
