@@ -7,6 +7,7 @@ Everything ambiguous (decimal commas, digit grouping, arithmetic, gauge pressure
 
 from __future__ import annotations
 
+import decimal
 import math
 import numbers
 import re
@@ -53,7 +54,10 @@ _GAUGE = re.compile(
     r"(?:(?P<unit>psi|bar|mbar|[kMh]?Pa|atm)\s*\(?\s*(?:g|gauge|gage)\s*\)?|(?P<unit2>psi)\s*g)", re.IGNORECASE
 )
 _ABSOLUTE = re.compile(r"(?P<unit>psi|bar|mbar|[kMh]?Pa|atm)\s*\(?\s*(?:a|abs|absolute)\s*\)?", re.IGNORECASE)
-_SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-")
+_SUPERSCRIPTS = str.maketrans(
+    dict(zip("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-", strict=True))
+    | {"\u2103": "°C", "\u2109": "°F", "\u212a": "K", "\u00ba": "°", "\u02da": "°"}
+)
 _LONGEST = 80
 
 
@@ -84,7 +88,7 @@ def to_si(value: object, unit: str, name: str = "value") -> float:
     magnitude = getattr(value, "magnitude", None)
     if magnitude is not None and hasattr(value, "units"):
         return _from_quantity(value, unit, name)
-    if isinstance(value, bool) or not isinstance(value, numbers.Real):
+    if isinstance(value, bool) or not isinstance(value, (numbers.Real, decimal.Decimal)):
         item = getattr(value, "item", None)
         if getattr(value, "shape", None) == () and item is not None and not isinstance(item(), bool):
             return to_si(item(), unit, name)
@@ -96,7 +100,7 @@ def to_si(value: object, unit: str, name: str = "value") -> float:
         raise _wrong(
             name, _shorten(repr(value)), f"{_kind_text(unit)} (text, a quantity or a number in {_si_text(unit)})", hint
         )
-    return _finite(float(value), unit, name, repr(value))
+    return _finite(_as_float(value), unit, name, repr(value))
 
 
 def parse(text: str, unit: str, name: str = "value") -> float:
@@ -220,7 +224,26 @@ def _from_quantity(value: Any, unit: str, name: str) -> float:
         ) from error
     if getattr(magnitude, "shape", ()) not in ((), None):
         raise _wrong(name, shown, "one value", "A study takes lists of values: pk.Study(...).")
-    return _finite(float(magnitude), unit, name, shown)
+    if unit == "K" and "delta_" in str(value.units):
+        raise _wrong(
+            name, shown, f"{_kind_text(unit)}, for example {_example(unit)}", "That is a temperature difference."
+        )
+    if isinstance(magnitude, bool) or not isinstance(magnitude, (numbers.Real, decimal.Decimal)):
+        item = getattr(magnitude, "item", None)
+        magnitude = item() if item is not None else magnitude
+        if isinstance(magnitude, bool) or not isinstance(magnitude, (numbers.Real, decimal.Decimal)):
+            raise _wrong(name, shown, f"{_kind_text(unit)}, for example {_example(unit)}", "Give one real number.")
+    return _finite(_as_float(magnitude), unit, name, shown)
+
+
+def _as_float(value: Any) -> float:
+    """Return a real number as a float; not a number where it has no value, infinite where it is beyond all floats."""
+    try:
+        return float(value)
+    except OverflowError:  # integers and fractions beyond the range of floats
+        return math.inf
+    except ValueError:  # a signalling decimal
+        return math.nan
 
 
 def _finite(value: float, unit: str, name: str, shown: str) -> float:

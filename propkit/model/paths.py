@@ -79,9 +79,27 @@ def replace(calculation: Calculation, changes: Mapping[str, Any]) -> Any:
     """Return the chain's last object rebuilt with `changes` (path -> value)."""
     links = calculation.chain()
     by_link: dict[int, dict[str, Any]] = {}
+    named: dict[str, str] = {}
     for path, value in changes.items():
         place = resolve(calculation, path, results=False)
+        if place.path in named:
+            raise InputError(
+                f"{named[place.path]!r} and {path!r} are the same input; give it once.",
+                path=path,
+                candidates=[place.path],
+            )
+        named[place.path] = path
         by_link.setdefault(place.position, {})[place.name] = value
+    for position, link in enumerate(links):
+        beyond = [path for path in named if any(path.startswith(f"{other.kind}.") for other in links[:position])]
+        if beyond and link.upstream_input in by_link.get(position, {}):
+            whole = named[f"{link.kind}.{link.upstream_input}"]
+            raise InputError(
+                f"{whole!r} replaces the whole {links[position - 1].kind}, and {', '.join(beyond)} would change the one it "
+                f"displaces; change the new one before handing it over.",
+                path=whole,
+                candidates=beyond,
+            )
     rebuilt: Calculation | None = None
     for position, link in enumerate(links):
         own = by_link.get(position, {})
