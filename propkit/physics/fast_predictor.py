@@ -11,7 +11,7 @@ and Approximation Practice (Chebyshev polynomials); Halton, Numerische Mathemati
 from __future__ import annotations
 
 from dataclasses import dataclass
-from itertools import product
+from functools import lru_cache
 from typing import Final
 
 import numpy as np
@@ -111,17 +111,26 @@ def halton(count: int, dimensions: int) -> Array:
     return found
 
 
-def nodes(count: int, dimensions: int) -> Array:
-    """Return points of the box with the density of Chebyshev nodes, shape (dimension, point), from -1 to 1."""
-    return np.asarray(-np.cos(np.pi * halton(count, dimensions)))
+def nodes(count: int, dimensions: int, pieces: int = 1) -> Array:
+    """Return points of the box with the density of Chebyshev nodes in each piece of it, shape (dimension, point), from -1 to 1."""
+    local = -np.cos(np.pi * halton(count, dimensions))
+    if pieces == 1 or not dimensions:
+        return np.asarray(local)
+    edges = np.linspace(-1.0, 1.0, pieces + 1)
+    found = np.tile(local, pieces)
+    centres, halves = 0.5 * (edges[1:] + edges[:-1]), 0.5 * np.diff(edges)
+    found[0] = np.concatenate([centre + half * local[0] for centre, half in zip(centres, halves, strict=True)])
+    return found
 
 
+@lru_cache(maxsize=64)
 def terms(degrees: tuple[int, ...]) -> Integers:
     """Return the orders of each term of a polynomial: those whose orders, over the degrees, add up to 1 at most."""
-    listed = [order for order in product(*(range(degree + 1) for degree in degrees)) if sum(o / d for o, d in zip(order, degrees, strict=True)) <= 1.0 + 1e-9]
-    orders = np.array(listed, dtype=np.intp).reshape(len(listed), len(degrees))
     if not degrees:
-        return orders
+        return np.zeros((1, 0), dtype=np.intp)
+    grid = np.indices([degree + 1 for degree in degrees]).reshape(len(degrees), -1)
+    share = (grid / np.array(degrees)[:, None]).sum(axis=0)
+    orders = grid[:, share <= 1.0 + 1e-9].T
     fastest = int(np.argmax(degrees))
     keys = [orders[:, fastest], *(orders[:, row] for row in reversed(range(len(degrees))) if row != fastest)]
     return np.ascontiguousarray(orders[np.lexsort(keys)])
@@ -129,22 +138,54 @@ def terms(degrees: tuple[int, ...]) -> Integers:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Fit:
-    """A polynomial of several values over the box: orders (term, coordinate), coefficients (value, term)."""
+    """Polynomials of several values over the box, one for each piece of the first coordinate.
+
+    Parameters
+    ----------
+    orders : array of int
+        Orders of each term, shape (term, coordinate).
+    coefficients : array
+        Shape (piece, value, term).
+    """
 
     orders: Integers
     coefficients: Array
 
     @classmethod
-    def of(cls, coordinates: Array, values: Array, degrees: tuple[int, ...]) -> Fit:
-        """Return the least-squares fit to values (value, point) at coordinates (coordinate, point)."""
+    def of(cls, coordinates: Array, values: Array, degrees: tuple[int, ...], pieces: int = 1) -> Fit | None:
+        """Return the least-squares fit to values (value, point) at coordinates (coordinate, point); None with too few points."""
         orders = terms(degrees)
-        table = basis(orders, coordinates)
-        found = np.linalg.lstsq(table.T, values.T, rcond=1e-12)[0]
-        return cls(orders, np.ascontiguousarray(found.T))
+        found = []
+        for which, local in _in_pieces(coordinates, pieces):
+            if which.size < len(orders):
+                return None
+            found.append(np.linalg.lstsq(basis(orders, local).T, values[:, which].T, rcond=1e-12)[0].T)
+        return cls(orders, np.ascontiguousarray(np.stack(found))) if len(found) == pieces else None
 
     def __call__(self, coordinates: Array) -> Array:
         """Return the values at coordinates, shape (value, design)."""
-        return np.asarray(self.coefficients @ basis(self.orders, coordinates))
+        pieces = len(self.coefficients)
+        if pieces == 1:
+            return np.asarray(self.coefficients[0] @ basis(self.orders, coordinates))
+        out = np.empty((self.coefficients.shape[1], coordinates.shape[1]))
+        for number, (which, local) in enumerate(_in_pieces(coordinates, pieces)):
+            out[:, which] = self.coefficients[number] @ basis(self.orders, local)
+        return out
+
+
+def _in_pieces(coordinates: Array, pieces: int) -> list[tuple[Integers, Array]]:
+    """Return for each piece of the first coordinate its designs and their coordinates within it."""
+    if pieces == 1:
+        return [(np.arange(coordinates.shape[1]), coordinates)]
+    stretched = (coordinates[0] + 1.0) * (0.5 * pieces)
+    number = np.clip(stretched.astype(np.intp), 0, pieces - 1)
+    found = []
+    for piece in range(pieces):
+        which = np.flatnonzero(number == piece)
+        local = coordinates[:, which]
+        local[0] = 2.0 * (stretched[which] - piece) - 1.0
+        found.append((which, local))
+    return found
 
 
 def basis(orders: Integers, coordinates: Array) -> Array:

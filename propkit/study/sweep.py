@@ -15,7 +15,7 @@ from propkit.model.declare import as_text
 from propkit.study.evaluation import ChainFunction, batch_results, result_name
 from propkit.study.executors import Failed, run_blocks
 from propkit.study.joint import check_seed
-from propkit.study.sweep_plan import Plan, read_plan, templates, unit_of
+from propkit.study.sweep_plan import Plan, read_plan, templates, unit_of, units_of
 from propkit.study.sweep_result import StudyResult
 from propkit.study.sweep_work import Blocks, Part, Work, value_or_nan
 
@@ -60,13 +60,14 @@ class Study:
     True
     """
 
-    __slots__ = ("_blocks", "_designs", "_plan", "_results", "_target", "_work")
+    __slots__ = ("_blocks", "_designs", "_plan", "_results", "_target", "_units", "_work")
 
     _blocks: Blocks
     _designs: Any
     _plan: Plan
     _results: tuple[str, ...] | None
     _target: Calculation
+    _units: dict[str, str]
     _work: Work
 
     def __init__(
@@ -98,6 +99,7 @@ class Study:
         hold(self, "_results", names)
         hold(self, "_blocks", Blocks(plan, groups))
         hold(self, "_work", Work(parts, every))
+        hold(self, "_units", {column.path: column.unit for column in plan.numbers} | units_of(target, every))
 
     def __setattr__(self, name: str, value: Any) -> None:
         raise AttributeError("a Study is immutable; make another one")
@@ -161,6 +163,11 @@ class Study:
     def results(self) -> tuple[str, ...]:
         """Names of the results, as columns of the frame."""
         return self._work.results
+
+    @property
+    def units(self) -> dict[str, str]:
+        """SI unit of every column of the frame that is a number."""
+        return dict(self._units)
 
     def __len__(self) -> int:
         return self._plan.count

@@ -346,6 +346,17 @@ def unit_of(target: Calculation, name: str) -> str:
     return quantities.quantity(place.name.rpartition(".")[2], target.chain()[place.position].kind).unit
 
 
+def units_of(target: Calculation, names: Sequence[str]) -> dict[str, str]:
+    """Return the SI unit of each result by its name in tables."""
+    known = paths.places(target)
+    kinds = [link.kind for link in target.chain()]
+    found = {}
+    for name in names:
+        place = known.get(f"{target.kind}.{name}") or known.get(name)
+        found[name] = quantities.quantity(place.name.rpartition(".")[2], kinds[place.position]).unit if place else unit_of(target, name)
+    return found
+
+
 def templates(target: Calculation, plan: Plan, groups: Sequence[tuple[dict[str, Any], Integers]]) -> Iterator[Calculation | InputError | None]:
     """Yield the object that each group of designs is a variation of; the error where none of a few designs is allowed, None else."""
     given = {f"{link.kind}.{name}" for link in target.chain() for name in link.inputs}

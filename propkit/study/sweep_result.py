@@ -16,7 +16,6 @@ from propkit.model import paths
 from propkit.model.base import Calculation, reach, render
 from propkit.model.doubts import Doubt
 from propkit.report import Column, Report, Section, Table, UnitSystem
-from propkit.study.sweep_plan import unit_of
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -113,8 +112,7 @@ class StudyResult:
     @property
     def units(self) -> dict[str, str]:
         """SI unit of every column that is a number."""
-        found = {column.path: column.unit for column in self.plan.plan.numbers}
-        return found | {name: unit_of(self.plan.target, name) for name in self._columns}
+        return self.plan.units
 
     @property
     def failed(self) -> pd.DataFrame:
