@@ -4,22 +4,30 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from propkit import quantities, units
+from propkit import units
 from propkit.errors import InputError, NotAvailableError, Problem, near_matches
 from propkit.model.base import reach
 from propkit.model.doubts import Doubt
 from propkit.model.performance import Performance
 from propkit.reconcile import firing_sheet
-from propkit.reconcile.firing_results import AMBIENT, FLOW, FUEL, OXIDIZER, PRESSURE, THROAT, THRUST, DeliveredFunction
+from propkit.reconcile.firing_inputs import (
+    KNOWN,
+    ChannelMean,
+    calibration_of,
+    measured,
+    quantity_of,
+    require_channels,
+    result_unit,
+)
+from propkit.reconcile.firing_results import AMBIENT, FLOW, FUEL, OXIDIZER, PRESSURE, THROAT, DeliveredFunction
 from propkit.reconcile.firing_series import Recording, read_recording
-from propkit.reconcile.firing_statistics import FEWEST, Mean, Zero, mean_of, throat_at, zero_of
+from propkit.reconcile.firing_statistics import FEWEST, Zero, mean_of, throat_at, zero_of
 from propkit.reconcile.firing_window import Criterion, Window, find_window
-from propkit.study.distributions import Distribution, Normal, spread
+from propkit.study.distributions import Normal
 from propkit.study.joint import JointInputs
 from propkit.study.propagation import FirstOrder, first_order
 from propkit.study.uncertainty_result import COVERAGE_FACTOR
@@ -30,37 +38,10 @@ if TYPE_CHECKING:
     from propkit.report import Report, UnitSystem
     from propkit.series import Figure
 
-KNOWN = (PRESSURE, OXIDIZER, FUEL, FLOW, THRUST, AMBIENT)
-"""Channels that results are computed from; others are only averaged."""
-
 _AFTER = 0.25
 """Share of the burn left out after the cutoff before the zero after is taken (tail-off)."""
 _BEFORE = 0.05
 """Share of the burn left out before the ignition."""
-
-
-@dataclass(frozen=True, slots=True)
-class ChannelMean:
-    """Mean of a channel over the window, corrected for its zero, with the parts of its standard uncertainty."""
-
-    mean: Mean
-    zero: Zero | None
-    calibration: float
-
-    @property
-    def value(self) -> float:
-        """Corrected mean [SI]."""
-        return self.mean.value - (self.zero.correction if self.zero is not None else 0.0)
-
-    @property
-    def standard_uncertainty(self) -> float:
-        """Combined standard uncertainty [SI]."""
-        return math.hypot(self.mean.standard_uncertainty, self.zero_uncertainty, self.calibration)
-
-    @property
-    def zero_uncertainty(self) -> float:
-        """Standard uncertainty of the zero correction [SI]."""
-        return self.zero.standard_uncertainty if self.zero is not None else 0.0
 
 
 class HotFire:
@@ -156,7 +137,7 @@ class HotFire:
         hold(self, "_name", name)
         hold(self, "_given", {"recording": recording, "channels": dict(channels), **given})
         wanted = {channel: quantity_of(channel) for channel in channels}
-        _require_channels(channels)
+        require_channels(channels)
         scales = {
             channel: tuple(units.to_si(end, wanted[channel].unit, f"full_scale of {channel}") for end in ends)
             for channel, ends in (full_scale or {}).items()
@@ -190,7 +171,7 @@ class HotFire:
         for name, channel in self._recording.channels.items():
             mean = mean_of(channel.values[inside & channel.good], name)
             zero = self._zero(name) if correct_zero else None
-            means[name] = ChannelMean(mean, zero, _calibration(calibration.get(name), mean.value, channel.unit, name))
+            means[name] = ChannelMean(mean, zero, calibration_of(calibration.get(name), mean.value, channel.unit, name))
         object.__setattr__(self, "_means", means)
 
     def _zero(self, name: str) -> Zero | None:
@@ -221,10 +202,10 @@ class HotFire:
 
     def _throats(self, before: Any, after: Any, growth: Any) -> None:
         own = self._target.nozzle.si("throat_diameter")
-        cold = (own, 1e-3 * own) if before is None else _measured("throat_before", before, "m")
-        worn = None if after is None else _measured("throat_after", after, "m")
+        cold = (own, 1e-3 * own) if before is None else measured("throat_before", before, "m")
+        worn = None if after is None else measured("throat_after", after, "m")
         hot = (
-            _measured("throat_growth", growth, "")
+            measured("throat_growth", growth, "")
             if isinstance(growth, tuple | list)
             else (units.to_si(growth, "", "throat_growth"), 0.0)
         )
@@ -469,65 +450,6 @@ class HotFire:
     def plot(self, channel: str = PRESSURE, units: UnitSystem = "SI") -> Any:
         """Return a Bokeh figure of a channel over time with the window marked."""
         return reach("figure")(self.trace(channel, units)).figure
-
-
-def quantity_of(channel: str) -> quantities.Quantity:
-    """Return the catalogue row of a channel.
-
-    Raises
-    ------
-    InputError
-        For a channel whose last name is no quantity of the catalogue.
-    """
-    owner, _, name = channel.rpartition(".")
-    try:
-        return quantities.quantity(name, owner.rpartition(".")[2])
-    except KeyError as error:
-        near = near_matches(name, KNOWN)
-        hint = f"Did you mean {' or '.join(near)}?" if near else ""
-        raise InputError(
-            Problem("channels", repr(channel), "named by a quantity, such as 'chamber.pressure' or 'thrust'", hint)
-        ) from error
-
-
-def result_unit(name: str) -> str:
-    """Return the SI unit of a delivered result."""
-    return "" if "efficiency" in name else quantity_of(name).unit
-
-
-def _require_channels(channels: Mapping[str, str]) -> None:
-    problems = []
-    if PRESSURE not in channels:
-        problems.append(
-            Problem(
-                PRESSURE, "missing", "among the channels", "It tells the burn from the rest and is the reference of c*."
-            )
-        )
-    if not {FLOW, OXIDIZER, FUEL, THRUST} & set(channels):
-        problems.append(
-            Problem("channels", ", ".join(channels) or "empty", "with a flow or the thrust besides the pressure")
-        )
-    if (OXIDIZER in channels) != (FUEL in channels) and FLOW not in channels:
-        problems.append(Problem("channels", "with one of two propellant flows", "with both flows, or with mass_flow"))
-    if problems:
-        raise InputError(problems)
-
-
-def _calibration(given: Any, value: float, unit: str, name: str) -> float:
-    if given is None:
-        return 0.0
-    if isinstance(given, Distribution):
-        return given.resolve(value, unit, f"calibration of {name}").standard_uncertainty
-    return spread(given, value, unit, f"calibration of {name}")
-
-
-def _measured(name: str, given: Any, unit: str) -> tuple[float, float]:
-    if not isinstance(given, tuple | list) or len(given) != 2:
-        raise InputError(
-            Problem(name, f"{given!r}", "a pair: (value, standard uncertainty)", "For example ('180.2 mm', '0.05 mm').")
-        )
-    value = units.to_si(given[0], unit, name)
-    return value, spread(given[1], value, unit, name)
 
 
 def _rebuild(target: Performance, given: Mapping[str, Any], name: str) -> HotFire:
