@@ -115,7 +115,7 @@ class Face:
 
     def is_minor(self, name: str) -> bool:
         """Whether an input stands folded away."""
-        return name in self.minor and name not in self.link.inputs
+        return name == "name" or (name in self.minor and name not in self.link.inputs)
 
     def choose(self, group: Group, member: str) -> dict[str, Any]:
         """Return the changes that make `member` the given one of its group, at the value it has now."""

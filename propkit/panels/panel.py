@@ -184,9 +184,9 @@ class Panel(traitlets.HasTraits):
         """Return the script that reproduces exactly what the panel shows."""
         return str(self.value.as_code())
 
-    def record(self, **options: Any) -> Any:
+    def record(self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "") -> Any:
         """Return the record of the current object."""
-        return self.value.record(**options)
+        return self.value.record(title=title, author=author, purpose=purpose, notes=notes)
 
     def view(self, kind: str) -> Panel:
         """Return a second panel of the same chain, for one of its objects; both stay in step.

@@ -20,6 +20,7 @@ from propkit.panels.nozzle import NozzleFace
 from propkit.panels.performance import PerformanceFace
 
 MOST_STEPS = 100
+MOST_PINS = 1000
 FACES: dict[str, type[Face]] = {"case": CaseFace, "chamber": ChamberFace, "nozzle": NozzleFace, "performance": PerformanceFace}
 log = logging.getLogger("propkit.panels")
 
@@ -201,20 +202,20 @@ class Session:
     def pin(self, name: str = "") -> str:
         """Keep the current object as a baseline; return its name."""
         with self.lock:
-            given = name or self.value.given_name() or self._letter()
+            given = name or self._free_name(self.value.given_name())
             self.pins[given] = self.value
             self.baseline = given
             self.changed()
             return given
 
-    def _letter(self) -> str:
+    def _free_name(self, title: str) -> str:
+        """Return a name for a pin that no pin has: the title of the object, with a letter behind it where it has to be."""
         letters = "ABCDEFGHIJKLMNOPQRSTUVWXYZ"
-        count = next(n for n in range(1000) if self._numbered(letters, n) not in self.pins)
-        return self._numbered(letters, count)
-
-    @staticmethod
-    def _numbered(letters: str, count: int) -> str:
-        return letters[count % 26] + ("" if count < 26 else str(count // 26))
+        if title and title not in self.pins:
+            return title
+        first = 1 if title else 0
+        named = (f"{title} {letters[count % 26]}{count // 26 or ''}".strip() for count in range(first, first + MOST_PINS))
+        return next(name for name in named if name not in self.pins)
 
     def unpin(self, name: str = "") -> None:
         """Let go of a pin, or of all."""

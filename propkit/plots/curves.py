@@ -37,9 +37,9 @@ def shown(name: str, values: Any, system: UnitSystem, owner: str = "") -> Series
     return Series(row.label, tuple(units.convert(value, row.unit, unit) for value in listed), unit, row.symbol)
 
 
-def axis_of(series: Series, label: str = "", **limits: float | None) -> Axis:
+def axis_of(series: Series, low: float | None = None) -> Axis:
     """Return the axis of a series."""
-    return Axis(label or series.label, series.unit, series.symbol, low=limits.get("low"), high=limits.get("high"))
+    return Axis(series.label, series.unit, series.symbol, low=low)
 
 
 # -- mixture ratio ---------------------------------------------------------------------------------

@@ -29,6 +29,12 @@ SETTINGS = {
     "@jupyterlab/docmanager-extension/plugin.jupyterlab-settings": {"autosave": False},
 }
 QUIET_ERRORS = ("favicon", "ResizeObserver loop")
+SETUP = """import propkit as pk
+case = pk.PropellantCase("LOX", "LCH4", mixture_ratio=3.4)
+chamber = pk.Chamber(case, pressure="9.7 MPa")
+nozzle = pk.Nozzle(chamber, area_ratio=35, throat_diameter="0.18 m")
+perf = pk.Performance(nozzle, ambient="sea level")"""
+"""What every notebook of the tests begins with: one invented engine."""
 READ_FIGURES = """() => {
   const found = [];
   const walk = (node) => {
@@ -226,6 +232,14 @@ class Page:
             }""",
             timeout=seconds * 1000,
         )
+
+    def start(self, name: str, *cells: str, count: int = 2) -> PanelPage:
+        """Write a notebook of the common beginning and `cells`, open and run it; return its first panel once it is drawn."""
+        self.lab.write(name, [SETUP, *cells])
+        self.open(name)
+        self.run_all()
+        self.wait_figures(count)
+        return self.panel()
 
     def run_all(self, *, wait: bool = True) -> None:
         """Run every cell."""

@@ -15,11 +15,6 @@ from propkit.series import Line
 
 pytestmark = pytest.mark.browser
 
-SETUP = """import propkit as pk
-case = pk.PropellantCase("LOX", "LCH4", mixture_ratio=3.4)
-chamber = pk.Chamber(case, pressure="9.7 MPa")
-nozzle = pk.Nozzle(chamber, area_ratio=35, throat_diameter="0.18 m")
-perf = pk.Performance(nozzle, ambient="sea level")"""
 PRESSURE, RATIO = "chamber.pressure", "case.mixture_ratio"
 
 
@@ -43,16 +38,8 @@ def assert_shows(page: rig.Page, expected: pk.Performance, number: int = 0) -> N
                 np.testing.assert_allclose(got, layer.y.values, rtol=1e-12)
 
 
-def start(page: rig.Page, name: str, *cells: str, count: int = 2) -> rig.PanelPage:
-    page.lab.write(name, [SETUP, *cells])
-    page.open(name)
-    page.run_all()
-    page.wait_figures(count)
-    return page.panel()
-
-
 def test_a_whole_session(page: rig.Page) -> None:
-    panel = start(page, "session.ipynb", "panel = perf.panel()\npanel")
+    panel = page.start( "session.ipynb", "panel = perf.panel()\npanel")
     assert_shows(page, built())
     pixels = page.canvases()
 
@@ -98,7 +85,7 @@ def test_a_whole_session(page: rig.Page) -> None:
 
 def test_reload_shows_the_current_state_and_a_cut_plot_update_is_noticed(page: rig.Page) -> None:
     """The comparison is worth something only if it can fail: without the update of the plot it does."""
-    panel = start(page, "reload.ipynb", "panel = perf.panel()\npanel")
+    panel = page.start( "reload.ipynb", "panel = perf.panel()\npanel")
     panel.type(PRESSURE, "7.3 MPa")
     page.page.keyboard.press("Escape")
     page.command("docmanager:save")
@@ -116,7 +103,7 @@ def test_reload_shows_the_current_state_and_a_cut_plot_update_is_noticed(page: r
 
 
 def test_a_slider_moves_while_a_cell_runs_and_two_views_stay_in_step(page: rig.Page) -> None:
-    start(page, "busy.ipynb", "panel = perf.panel()\npanel", "panel.view('chamber')", "import time\ntime.sleep(0)", count=3)
+    page.start( "busy.ipynb", "panel = perf.panel()\npanel", "panel.view('chamber')", "import time\ntime.sleep(0)", count=3)
     page.page.evaluate(
         """() => {
           const kernel = window.jupyterapp.shell.currentWidget.sessionContext.session.kernel;
@@ -136,7 +123,7 @@ def test_a_slider_moves_while_a_cell_runs_and_two_views_stay_in_step(page: rig.P
 
 
 def test_without_a_kernel_the_static_sheet_stays(page: rig.Page) -> None:
-    panel = start(page, "twin.ipynb", "panel = perf.panel()\npanel")
+    panel = page.start( "twin.ipynb", "panel = perf.panel()\npanel")
     assert not page.page.locator(".pk-twin").first.is_visible()
     panel.type(PRESSURE, "7.3 MPa")
     page.command("docmanager:save")
@@ -159,7 +146,7 @@ def test_without_a_kernel_the_static_sheet_stays(page: rig.Page) -> None:
 
 
 def test_keyboard_labels_and_a_narrow_page_without_jumps(page: rig.Page) -> None:
-    panel = start(page, "keys.ipynb", "panel = perf.panel()\npanel")
+    panel = page.start( "keys.ipynb", "panel = perf.panel()\npanel")
     unlabelled = panel.root.evaluate(
         """(root) => [...root.querySelectorAll('input, select, button')].filter((item) => item.offsetParent &&
              !(item.labels && item.labels.length) && !item.getAttribute('aria-label') && !item.textContent.trim()).map((item) => item.outerHTML)"""

@@ -335,6 +335,12 @@ def test_pins_show_every_result_as_a_difference(panel: Any, perf: pk.Performance
     assert "difference" not in row(panel, "thrust")
 
 
+def test_pins_never_replace_each_other_by_chance(panel: Any, perf: pk.Performance) -> None:
+    assert [panel.pin(), panel.pin()] == ["A", "B"]
+    panel.set("performance.name", "stage")
+    assert [panel.pin(), panel.pin(), panel.pin()] == ["stage", "stage B", "stage C"]
+
+
 # -- views, units ------------------------------------------------------------------------------------
 
 

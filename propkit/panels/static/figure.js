@@ -99,7 +99,7 @@ class LiveFigure {
   async build(Bokeh, plot) {
     this.clear();
     const target = document.createElement("div");
-    target.style.height = `${plot.height}px`;
+    target.style.minHeight = `${plot.height}px`;
     this.live.replaceChildren(target);
     this.live.hidden = false;
     this.still.hidden = true;
