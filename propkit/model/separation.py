@@ -25,6 +25,9 @@ if TYPE_CHECKING:
 STATIONS = 160
 """Stations between throat and lip at which the criteria are evaluated."""
 
+SONIC = 1.0 + 1e-6
+"""Mach number up to which an exit counts as sonic."""
+
 SIDE_LOADS = "Separation is seldom even round the wall: expect side loads while starting, throttling and shutting down."
 
 
@@ -57,7 +60,7 @@ def limits(nozzle: Nozzle) -> dict[str, float]:
     """Return the ambient pressure [Pa] at which each criterion predicts separation at the lip; empty for a subsonic exit."""
     exit_state = nozzle.exit
     mach = exit_state.si("mach")
-    if mach < 1.0:
+    if mach <= SONIC:
         return {}
     pressure, stagnation = exit_state.si("pressure"), nozzle.chamber.si("stagnation_pressure")
     return {name: float(entry.ambient(pressure, stagnation, mach)) for name, entry in separation.CRITERIA.items()}
@@ -66,7 +69,7 @@ def limits(nozzle: Nozzle) -> dict[str, float]:
 def doubts(nozzle: Nozzle, ambient: float) -> Iterator[Doubt]:
     """Yield what is to be doubted of a full-flowing thrust at an ambient pressure [Pa]."""
     exit_state = nozzle.exit
-    if exit_state.si("mach") <= 1.0:
+    if exit_state.si("mach") <= SONIC:
         return
     pressure = exit_state.si("pressure")
     exponent = max(exit_state.si("isentropic_exponent"), _ISOTHERMAL)
