@@ -5,6 +5,8 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping, Sequence
 from typing import Any, Literal
 
+import numpy as np
+
 from propkit.errors import InputError, Problem
 from propkit.model.base import Calculation
 from propkit.study.distributions import Distribution, Normal
@@ -13,6 +15,11 @@ from propkit.study.joint import JointInputs, check_seed
 from propkit.study.propagation import FirstOrder, first_order, monte_carlo
 from propkit.study.sensitivity import sobol_indices
 from propkit.study.uncertainty_result import SobolResult, UncertaintyResult
+
+_BOX = 1000
+"""Cases that span the box for which the batch function is prepared."""
+_STRETCH = 1.3
+"""How far those are stretched, so that the tails of later draws lie inside."""
 
 
 class Uncertainty:
@@ -154,17 +161,28 @@ class Uncertainty:
             if seed is not None:
                 check_seed(seed)
             return UncertaintyResult(self, first_order(self._function, self._joint), None)
+        number = check_seed(seed)
         trials = monte_carlo(
             self._function,
             self._joint,
             samples,
-            check_seed(seed),
+            number,
             executor=executor,
             progress=progress,
             illegal=illegal,
+            quick=self._quick(number),
         )
         linear, reason = self._linear()
         return UncertaintyResult(self, linear, trials, reason, samples, illegal)
+
+    def _quick(self, seed: int) -> ChainFunction:
+        """Return the function prepared for the box of the trials: a first draw, stretched, inside the legal ranges."""
+        nominal, bounds = self._joint.nominal, self._joint.bounds
+        sample = {
+            path: np.clip(nominal[path] + _STRETCH * (values - nominal[path]), *bounds[path])
+            for path, values in self._joint.draw(seed, 0, _BOX).items()
+        }
+        return self._function.prepared(sample, _BOX)
 
     def _linear(self) -> tuple[FirstOrder | None, str]:
         try:
@@ -203,7 +221,8 @@ class Uncertainty:
         InputError, ConvergenceError, MissingExtraError
             As `propkit.study.sensitivity.sobol_indices`.
         """
-        found = sobol_indices(self._function, self._joint, seed, base=base, executor=executor, progress=progress)
+        quick = self._quick(check_seed(seed))
+        found = sobol_indices(quick, self._joint, seed, base=base, executor=executor, progress=progress)
         return SobolResult(self, found)
 
 
