@@ -184,8 +184,10 @@ def _inlet(reservoir: Combustion | GivenGas, isentrope: Isentrope, throat: FlowS
     ratio = reservoir.contraction_ratio[: len(throat.pressure)]
     finite = np.isfinite(ratio)
     if not finite.any():
-        at_rest = isinstance(isentrope, expansion.Shifting)
-        return isentrope.at_rest() if at_rest else expansion.at_pressure(isentrope, isentrope.pressure)  # type: ignore[union-attr]
+        if isinstance(isentrope, expansion.Shifting):
+            return isentrope.at_rest()
+        rest = expansion.at_pressure(isentrope, isentrope.pressure)
+        return replace(rest, velocity=np.zeros_like(rest.velocity))
     return expansion.at_area_ratio(isentrope, throat.mass_flux, np.where(finite, ratio, 1e6), throat, supersonic=False)
 
 

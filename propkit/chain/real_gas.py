@@ -44,7 +44,7 @@ def inlet_doubts(row: PropellantRow, temperature: float, pressure: float) -> Ite
     if abs(price.compressibility - 1.0) > NOTED or abs(price.mass_flow_ratio - 1.0) > NOTED:
         yield (
             f"{row.name} is no ideal gas at the inlet: its compressibility is {price.compressibility:.3f}, and the real gas would pass "
-            f"{abs(price.mass_flow_ratio - 1.0):.1%} {'more' if price.mass_flow_ratio > 1.0 else 'less'} mass flow than computed.",
+            f"{100.0 * abs(price.mass_flow_ratio - 1.0):.1f} % {'more' if price.mass_flow_ratio > 1.0 else 'less'} mass flow than computed.",
             "real-gas",
             "density",
         )
@@ -101,7 +101,7 @@ def flow_doubts(row: PropellantRow, found: Expansion) -> Iterator[tuple[str, str
     ratio = float(found.mass_flux[0] / state.mass_flux[0])
     gained = 1.0 - _vacuum_velocity(found, state) / _vacuum_velocity(found, found.exit)
     yield (
-        f"{where}. Saturation begins at area ratio {ratio:.3g}; the expansion beyond earns {gained:.1%} of the vacuum specific impulse, "
+        f"{where}. Saturation begins at area ratio {ratio:.3g}; the expansion beyond earns {100.0 * gained:.1f} % of the vacuum specific impulse, "
         f"which rests on the gas not condensing.",
         "saturation",
         "stations",

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -79,6 +80,19 @@ def share_figure(case: PropellantCase) -> Figure:
     alt = "Shares of the propellants: " + ", ".join(f"{c} {t}" for c, t in zip(categories, texts, strict=True))
     limits = Axis("share", "percent", low=0.0, high=100.0)
     return Figure("shares", "Shares in the tanks", alt, limits, Axis(""), (bars,))
+
+
+def gas_figure(fractions: Mapping[str, float]) -> Figure:
+    """Return the mole fractions of a gas as stored, the largest first."""
+    pairs = sorted(fractions.items(), key=lambda pair: -pair[1])
+    percent = tuple(100.0 * value for _, value in pairs)
+    texts = tuple(f"{value:.4g} %" for value in percent)
+    bars = Bars(tuple(name for name, _ in pairs), Series("mole fraction", percent, "percent", "x"), texts)
+    alt = "Mole fractions of the gas: " + ", ".join(
+        f"{name} {text}" for (name, _), text in zip(pairs, texts, strict=True)
+    )
+    limits = Axis("mole fraction", "percent", "x", low=0.0, high=100.0)
+    return Figure("composition", "Composition of the gas", alt, limits, Axis(""), (bars,))
 
 
 def assumptions(case: PropellantCase) -> tuple[Assumption, ...]:

@@ -146,8 +146,8 @@ class ColdGasCase(PropellantCase):
         return (case_sheet.basis_assumption(self), Assumption("ideal-gas", text, "method", "mass_flow"))
 
     def figures(self, system: UnitSystem = "SI") -> tuple[Figure, ...]:
-        """Return nothing: a single gas has no shares to draw."""
-        return ()
+        """Return the mole fractions of the gas as stored."""
+        return (case_sheet.gas_figure(self._values["gas"].row.gas_composition),)
 
     @property
     def _constructor(self) -> str:

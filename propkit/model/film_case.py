@@ -122,7 +122,10 @@ class FilmCase(PropellantCase):
         row = quantities.quantity("characteristic_velocity")
         unit = row.shown_in(system, (here,))
         shown = [f"{units.convert(value, row.unit, unit):.6g}" for value in (here, uniform)]
-        line = f"Against the uniform mixture: c* {shown[0]} instead of {shown[1]} {units.shown_unit(unit)} ({here / uniform - 1.0:+.2%})."
+        change = f"{100.0 * (here / uniform - 1.0):+.2f}".replace("-", "−")
+        line = (
+            f"Against the uniform mixture: c* {shown[0]} instead of {shown[1]} {units.shown_unit(unit)} ({change} %)."
+        )
         yield Section("film", "What the film costs", lines=(line,))
 
     def _uniform_cstar(self, chamber: Any) -> float:

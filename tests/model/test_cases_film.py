@@ -126,7 +126,7 @@ def test_the_price_against_the_uniform_mixture_is_on_the_sheets():
     assert beside.si("specific_impulse") == pytest.approx(uniform.si("specific_impulse"), rel=1e-12)
     lost = both.chamber.si("characteristic_velocity") / uniform.chamber.si("characteristic_velocity") - 1.0
     assert lost < -0.01
-    assert f"{lost:+.2%}" in str(both.chamber)
+    assert f"(−{-100 * lost:.2f} %)" in str(both.chamber)
     assert "uniform mixture" in str(both)
     assert "do not mix" in str(both)
 
