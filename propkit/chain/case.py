@@ -130,6 +130,14 @@ def one_stream(stream: Stream, count: int = 1, condensed: bool = False) -> Mixtu
     return Mixture(symbols, atoms, enthalpy, density, condensed)
 
 
+def repeated(mixture: Mixture, count: int) -> Mixture:
+    """Return a mixture of one case repeated `count` times."""
+    atoms, enthalpy, density = (np.repeat(part, count, axis=0) for part in (mixture.atoms, mixture.enthalpy, mixture.density))
+    held = mixture.composition
+    composition = None if held is None else {name: np.repeat(amount, count) for name, amount in held.items()}
+    return replace(mixture, atoms=atoms, enthalpy=enthalpy, density=density, composition=composition)
+
+
 def hydrazine_bed(stream: Stream, ammonia_dissociation: float, molar_mass: float) -> Mixture:
     """Return hydrazine decomposed to the composition that an ammonia dissociation fixes.
 

@@ -75,7 +75,7 @@ class Expansion:
         here = float(self.throat.mach[index])
         if abs(here - 1.0) < AT_SONIC:
             return None
-        one = self.isentrope.take(np.array([index]))
+        one = self.isentrope.take(np.array([index]))  # type: ignore[attr-defined]
         beyond = one.at_pressure(self.throat.pressure[[index]] * (1.0 - AT_SONIC), self.throat.take([index]))
         return here, float(beyond.mach[0])
 

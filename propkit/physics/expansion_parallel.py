@@ -18,7 +18,7 @@ import numpy as np
 from propkit.physics import gas_dynamics
 from propkit.physics.arrays import Array
 from propkit.physics.equilibrium import CONVERGED, NOT_CONVERGED, OUT_OF_RANGE
-from propkit.physics.equilibrium_newton import Integers
+from propkit.physics.equilibrium_terms import Integers
 from propkit.physics.expansion_state import FlowState, Isentrope, choose
 
 _STEPS: Final = 100

@@ -152,7 +152,7 @@ def _basis(chain: tuple[Calculation, ...]) -> dict[str, Any] | None:
         if mixture is not None:
             basis = load_basis(str(link.si("thermo_basis")))
             symbols = sorted(str(symbol) for symbol in mixture.symbols)
-            checksum = basis.checksum(tuple(symbols))
+            checksum = basis.checksum(tuple(symbols), mixture.condensed)
             return {"name": basis.name, "title": basis.title, "elements": symbols, "checksum": checksum}
     return None
 

@@ -211,7 +211,7 @@ class ChainFunction:
         requests = template._values.get("losses") or ()
         asked = {name.rpartition(".")[2] for name in (*self.results, *self.variables)}
         return (
-            all(type(link) in _BATCHED for link in template.chain())
+            all(_has_stage(link, self.variables) for link in template.chain())
             and all(entry.ratio is not None for entry in requests)
             and not asked & {*wall.WALL_RESULTS, *_WALL_SIZES}
         )
@@ -284,7 +284,7 @@ _AGREEMENT = 1e-9
 
 
 def _checked_batch(target: Calculation) -> dict[str, float]:
-    if not all(type(link) in _BATCHED for link in target.chain()):
+    if not all(_has_stage(link) for link in target.chain()):
         return {}
     try:
         with np.errstate(all="ignore"):
@@ -315,6 +315,14 @@ _WALL_SIZES = ("chamber_volume", "chamber_length", "stay_time", "characteristic_
 _BATCHED = (PropellantCase, Chamber, GasChamber, Nozzle, Performance)
 
 
+def _has_stage(link: Calculation, variables: Sequence[str] = ()) -> bool:
+    """Whether the stages can take an object as arrays: a case of one stream only as it is, core and film never."""
+    if type(link) in _BATCHED:
+        return True
+    varied = any(path.startswith(f"{link.kind}.") for path in variables)
+    return isinstance(link, PropellantCase) and link.held.mixture.shares is None and not varied
+
+
 class _Batch:
     """The stages of a chain over a batch; `results` by whole path, `good` where every stage has a solution."""
 
@@ -334,7 +342,8 @@ class _Batch:
             for name in link.declared_inputs:
                 if f"{link.kind}.{name}" in inputs:
                     self.results[f"{link.kind}.{name}"] = inputs[f"{link.kind}.{name}"]
-            stages.get(type(link), self._performance)(link)
+            other = self._single_case if isinstance(link, PropellantCase) else self._performance
+            stages.get(type(link), other)(link)
 
     def require(self, condition: Any, reason: str) -> None:
         """Note the cases that fail a condition, with the first reason of each."""
@@ -354,6 +363,10 @@ class _Batch:
     def keep(self, link: Calculation, results: Mapping[str, Any]) -> None:
         """Note results of an object."""
         self.results.update({f"{link.kind}.{name}": values for name, values in results.items()})
+
+    def _single_case(self, link: Calculation) -> None:
+        self.mixture = case_stage.repeated(link.held.mixture, self.count)
+        self.keep(link, {name: link.si(name) for name in link.declared_results if link.has(name)})
 
     def _case(self, link: Calculation) -> None:
         oxidizer, fuel = (self._stream(link, role) for role in ROLES)
@@ -590,13 +603,15 @@ class _Batch:
         )
         self.keep(link, {name: getattr(delivered, name) for name in performance_stage.Delivery.__slots__})
         self.keep(link, {"ambient": ambient})
-        if self.ratio is not None and self.mixture is not None:
+        if self.mixture is not None and np.isfinite(self.mixture.density).all():
+            density_impulse = thrust.density_impulse(delivered.specific_impulse, self.mixture.density)
+            self.keep(link, {"density_impulse": density_impulse})
+        if self.ratio is not None:
             self.keep(
                 link,
                 {
                     "oxidizer_mass_flow": balances.oxidizer_mass_flow(delivered.mass_flow, self.ratio, self.additive_fraction),
                     "fuel_mass_flow": balances.fuel_mass_flow(delivered.mass_flow, self.ratio, self.additive_fraction),
-                    "density_impulse": thrust.density_impulse(delivered.specific_impulse, self.mixture.density),
                 },
             )
 

@@ -286,3 +286,16 @@ def test_studies_and_replace_reach_the_inputs():
     gas = pk.Performance(cold("GN2"), ambient="vacuum")
     hotter = gas.replace({"case.temperature": "400 K"})
     assert hotter.si("specific_impulse") / gas.si("specific_impulse") == pytest.approx((400 / 298.15) ** 0.5, rel=5e-3)
+
+
+@pytest.mark.parametrize("case", CASES[:4], ids=lambda case: case.subtitle())
+def test_a_study_in_one_batch_gives_the_numbers_of_the_objects(case):
+    perf = pk.Performance(
+        pk.Nozzle(pk.Chamber(case, pressure="2 MPa"), area_ratio=8, throat_diameter="20 mm"), ambient="vacuum"
+    )
+    pressures = [1e6, 2e6, 3e6]
+    frame = pk.Study(perf, {"chamber.pressure": pressures}).run().frame
+    for pressure, row in zip(pressures, frame.itertuples(), strict=True):
+        one = perf.replace({"chamber.pressure": pressure})
+        for name in ("thrust", "specific_impulse", "mass_flow", "density_impulse"):
+            assert getattr(row, name) == pytest.approx(one.si(name), rel=1e-9)
