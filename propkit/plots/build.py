@@ -18,6 +18,8 @@ from propkit.series import Axis, Bars, Figure, Line, Mark, Rule, Series
 
 HEIGHT = 300
 FONT = "system-ui, sans-serif"
+ROOM_BELOW = 72
+"""Room for axis and legend below a plot [px]; without it BokehJS forgets the legend when the page is resized."""
 TOOLS = "pan,box_zoom,reset"
 
 
@@ -233,6 +235,7 @@ def _legend(plot: Plot, layer: Line, drawn: Any) -> None:
         legend.label_text_font, legend.label_text_font_size, legend.glyph_width = FONT, "12px", 18
         plot.paint(legend, "ink", "label_text_color")
         made.add_layout(legend, "below")
+        made.min_border_bottom = ROOM_BELOW
     made.legend[0].items.append(LegendItem(label=layer.label, renderers=[drawn]))
 
 

@@ -39,7 +39,7 @@ def assert_shows(page: rig.Page, expected: pk.Performance, number: int = 0) -> N
 
 
 def test_a_whole_session(page: rig.Page) -> None:
-    panel = page.start( "session.ipynb", "panel = perf.panel()\npanel")
+    panel = page.start("session.ipynb", "panel = perf.panel()\npanel")
     assert_shows(page, built())
     pixels = page.canvases()
 
@@ -85,7 +85,7 @@ def test_a_whole_session(page: rig.Page) -> None:
 
 def test_reload_shows_the_current_state_and_a_cut_plot_update_is_noticed(page: rig.Page) -> None:
     """The comparison is worth something only if it can fail: without the update of the plot it does."""
-    panel = page.start( "reload.ipynb", "panel = perf.panel()\npanel")
+    panel = page.start("reload.ipynb", "panel = perf.panel()\npanel")
     panel.type(PRESSURE, "7.3 MPa")
     page.page.keyboard.press("Escape")
     page.command("docmanager:save")
@@ -103,7 +103,7 @@ def test_reload_shows_the_current_state_and_a_cut_plot_update_is_noticed(page: r
 
 
 def test_a_slider_moves_while_a_cell_runs_and_two_views_stay_in_step(page: rig.Page) -> None:
-    page.start( "busy.ipynb", "panel = perf.panel()\npanel", "panel.view('chamber')", "import time\ntime.sleep(0)", count=3)
+    page.start("busy.ipynb", "panel = perf.panel()\npanel", "panel.view('chamber')", "import time\ntime.sleep(0)", count=3)
     page.page.evaluate(
         """() => {
           const kernel = window.jupyterapp.shell.currentWidget.sessionContext.session.kernel;
@@ -123,7 +123,7 @@ def test_a_slider_moves_while_a_cell_runs_and_two_views_stay_in_step(page: rig.P
 
 
 def test_without_a_kernel_the_static_sheet_stays(page: rig.Page) -> None:
-    panel = page.start( "twin.ipynb", "panel = perf.panel()\npanel")
+    panel = page.start("twin.ipynb", "panel = perf.panel()\npanel")
     assert not page.page.locator(".pk-twin").first.is_visible()
     panel.type(PRESSURE, "7.3 MPa")
     page.command("docmanager:save")
@@ -146,7 +146,7 @@ def test_without_a_kernel_the_static_sheet_stays(page: rig.Page) -> None:
 
 
 def test_keyboard_labels_and_a_narrow_page_without_jumps(page: rig.Page) -> None:
-    panel = page.start( "keys.ipynb", "panel = perf.panel()\npanel")
+    panel = page.start("keys.ipynb", "panel = perf.panel()\npanel")
     unlabelled = panel.root.evaluate(
         """(root) => [...root.querySelectorAll('input, select, button')].filter((item) => item.offsetParent &&
              !(item.labels && item.labels.length) && !item.getAttribute('aria-label') && !item.textContent.trim()).map((item) => item.outerHTML)"""
