@@ -428,7 +428,7 @@ class HotFire:
             "time": None,
         }
         texts = {"title": title or self._name, "author": author, "purpose": purpose, "notes": notes}
-        return record_of(RecordedFiring, self._target, options, **texts)
+        return record_of(RecordedFiring, self._target, options, texts)
 
     def __str__(self) -> str:
         return str(self.report())

@@ -466,7 +466,7 @@ class Reconciliation:
             "name": self._name or None,
         }
         texts = {"title": title or self._name, "author": author, "purpose": purpose, "notes": notes}
-        return record_of(RecordedReconciliation, self._target, options, **texts)
+        return record_of(RecordedReconciliation, self._target, options, texts)
 
     def __str__(self) -> str:
         return str(self.report())

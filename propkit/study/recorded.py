@@ -159,7 +159,7 @@ class RecordedUncertainty(Recorded):
         return listed
 
 
-def record_of(kind: type[Recorded], target: Calculation, options: Mapping[str, Any], **texts: str) -> Any:
+def record_of(kind: type[Recorded], target: Calculation, options: Mapping[str, Any], texts: Mapping[str, str]) -> Any:
     """Return the record of an analysis (see `Calculation.record`)."""
     given = {
         key: [[name, entry] for name, entry in value.items()] if key in kind.ordered else value

@@ -266,9 +266,8 @@ class UncertaintyResult:
             "seed": self.seed,
             "illegal": self._illegal,
         }
-        return record_of(
-            RecordedUncertainty, plan.target, options, title=title, author=author, purpose=purpose, notes=notes
-        )
+        texts = {"title": title, "author": author, "purpose": purpose, "notes": notes}
+        return record_of(RecordedUncertainty, plan.target, options, texts)
 
     def _how(self) -> str:
         if self.trials is None:
