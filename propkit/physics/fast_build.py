@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
-from typing import Final
+from collections.abc import Callable
+from typing import Any, Final
 
 import numpy as np
 
 from propkit.physics import equilibrium, expansion, gas_dynamics
 from propkit.physics.arrays import Array
-from propkit.physics.equilibrium_newton import Integers
 from propkit.physics.fast_flow import (
     Flow,
     Predictor,
+    as_guessed,
     chamber_and_throat,
     guesses,
     shifting_exit,
@@ -20,13 +21,10 @@ from propkit.physics.fast_newton import Kernel, Point, Solved, solve
 from propkit.physics.fast_predictor import NODES_PER_TERM, Coordinates, Fit, nodes, terms
 from propkit.physics.thermodynamics import SpeciesTable
 
-SEEDS: Final = 5
-"""Designs solved by the damped iteration, for each coordinate."""
+SEEDS_LEAST: Final = 6
+"""Designs solved by the damped iteration, beyond 1.4 for each term of a cubic."""
 
-MARCHED: Final = 10
-"""Designs followed along their isentrope to the exit, for each coordinate."""
-
-NEAR: Final = (3, 8, 5)
+NEAR: Final = (5, 12, 7)
 FAR: Final = (5, 7, 5)
 """Pieces and degrees of the polynomials for chamber and throat, and for the exit, over a wide box."""
 
@@ -76,25 +74,74 @@ def build(
         The predictor.
     """
     near = Coordinates.of(elements, enthalpy, log_pressure[None])
+    further = log_pressure[None] if log_exit is None else np.stack([log_pressure, log_exit])
+    far = near if log_exit is None else Coordinates.of(elements, enthalpy, further)
+    coarse = _coarse(table, kernel, near, far, further, to, log_exit is not None)
+    if coarse is None:
+        return None
+    first = _first(kernel, near, log_pressure, coarse, fineness)
+    if first is None or log_exit is None:
+        return None if first is None else Predictor(near, first)
+    return _with_exit(kernel, Predictor(near, first), far, further, coarse[2], to, fineness)
+
+
+Start = Callable[[Array, Array, Array], Array]
+"""(atoms, enthalpy, further logarithms) -> unknowns with ln of the pressure over that at rest, shape (element + 3, case)."""
+
+
+def _coarse(
+    table: SpeciesTable, kernel: Kernel, near: Coordinates, far: Coordinates, further: Array, to: str, with_exit: bool
+) -> tuple[Start, ...] | None:
+    """Return quadratic first guesses of chamber, throat and exit from a few designs solved by the damped iteration."""
+    at = nodes(SEEDS_LEAST + int(1.4 * len(terms((3,) * far.count))), far.count)
+    b, h, logs = far.back(at, further)
+    pressure = kernel.reference_pressure * np.exp(logs[0])
+    rest = equilibrium.solve(table, b.T, pressure=pressure, enthalpy=h)
+    isentrope = expansion.shifting(table, b.T, rest)
+    throat = expansion.throat(isentrope)
+    states: list[Any] = [rest, throat.equilibrium]
+    fine = (rest.status == 0) & (throat.status == 0)
+    if with_exit:
+        if to == "area_ratio":
+            flow = expansion.at_area_ratio(isentrope, throat.mass_flux, np.exp(logs[1]), throat)
+        else:
+            flow = expansion.at_pressure(isentrope, pressure * np.exp(logs[1]), throat)
+        states.append(flow.equilibrium)
+        fine &= flow.status == 0
+    found: list[Start] = []
+    for number, state in enumerate(states):
+        box, rows = (near, logs[:1]) if number < 2 else (far, logs)
+        at, _ = box(b, h, rows)
+        values = np.vstack([state.element_potentials.T, np.log(state.gas_moles), np.log(state.temperature), np.log(state.pressure / pressure)])
+        fit = Fit.of(at[:, fine], values[:, fine], (3,) * box.count)
+        if fit is None:
+            return None
+        found.append(_start(box, fit))
+    return tuple(found)
+
+
+def _start(box: Coordinates, fit: Fit) -> Start:
+    return lambda b, h, logs: fit(box(b, h, logs)[0])
+
+
+def _first(kernel: Kernel, near: Coordinates, log_pressure: Array, coarse: tuple[Start, ...], fineness: float) -> Fit | None:
+    """Return the fit of chamber and throat."""
     pieces, degrees = _shape(near, NEAR, fineness)
     at = nodes(int(NODES_PER_TERM * len(terms(degrees))) + 4, near.count, pieces)
     b, h, logs = near.back(at, log_pressure[None])
-    made = _first_solutions(table, kernel, b, h, logs[0], at)
-    if made is None:
-        return None
-    flow, change = made
-    good = flow.good & np.isfinite(change)
+    starts = [_point(start(b, h, logs), len(b), logs[0]) for start in coarse[:2]]
+    starts[0].log_pressure = logs[0]
+    flow = chamber_and_throat(kernel, b, h, logs[0], (starts[0], starts[1], np.zeros(len(h))), coarse=True)
+    there = flow.throat.solved.point
+    nudged = Point(there.potentials, there.log_moles, there.log_temperature, there.log_pressure + _NUDGE)
+    other = solve(kernel, b, flow.entropy, nudged, entropy=True)
+    change = (np.log(1.0 - flow.throat.turning) - np.log(1.0 - other.turning)) / _NUDGE
+    good = flow.good & other.good & np.isfinite(change)
     if good.mean() < _ENOUGH:
         return None
-    fall = flow.throat.solved.point.log_pressure - logs[0]
+    fall = there.log_pressure - logs[0]
     values = np.vstack([_unknowns(flow.chamber.solved), _unknowns(flow.throat.solved), fall[None], change[None]])
-    first = Fit.of(at[:, good], values[:, good], degrees, pieces)
-    if first is None:
-        return None
-    predictor = Predictor(near, first)
-    if log_exit is None:
-        return predictor
-    return _with_exit(kernel, predictor, elements, enthalpy, np.stack([log_pressure, log_exit]), to, fineness)
+    return Fit.of(at[:, good], values[:, good], degrees, pieces)
 
 
 def _shape(box: Coordinates, full: tuple[int, int, int], fineness: float) -> tuple[int, tuple[int, ...]]:
@@ -122,59 +169,58 @@ def _unknowns(found: Solved) -> Array:
     return np.vstack([found.point.potentials, found.point.log_moles, found.point.log_temperature])
 
 
-def _first_solutions(
-    table: SpeciesTable, kernel: Kernel, b: Array, h: Array, log_pressure: Array, at: Array
-) -> tuple[Flow, Array] | None:
-    """Return chamber and throat at the nodes, and d ln gamma / d ln p at the throat, from a coarse damped solution."""
-    some = _spread(len(h), SEEDS * max(1, at.shape[0]))
-    pressure = kernel.reference_pressure * np.exp(log_pressure[some])
-    rest = equilibrium.solve(table, b[:, some].T, pressure=pressure, enthalpy=h[some])
-    throat = expansion.throat(expansion.shifting(table, b[:, some].T, rest))
-    assert throat.equilibrium is not None
-    fine = (rest.status == 0) & (throat.status == 0)
-    starts = []
-    for state in (rest, throat.equilibrium):
-        fall = np.log(state.pressure / pressure)
-        values = np.vstack([state.element_potentials.T, np.log(state.gas_moles), np.log(state.temperature), fall])
-        fit = Fit.of(at[:, some][:, fine], values[:, fine], (2,) * at.shape[0])
-        if fit is None:
-            return None
-        starts.append(_point(fit(at), len(b), log_pressure))
-    flow = chamber_and_throat(kernel, b, h, log_pressure, (starts[0], starts[1], np.zeros(len(h))), whole=True)
-    there = flow.throat.solved.point
-    nudged = Point(there.potentials, there.log_moles, there.log_temperature, there.log_pressure + _NUDGE)
-    other = solve(kernel, b, flow.entropy, nudged, entropy=True)
-    change = (np.log(1.0 - flow.throat.turning) - np.log(1.0 - other.turning)) / _NUDGE
-    return flow, np.where(other.good, change, np.nan)
-
-
-def _spread(count: int, wanted: int) -> Integers:
-    return np.unique(np.linspace(0, count - 1, min(count, wanted)).astype(np.intp))
-
-
 def _point(table: Array, elements: int, log_pressure: Array) -> Point:
     return Point(table[:elements], table[elements], table[elements + 1], log_pressure + table[elements + 2])
 
 
 def _with_exit(
-    kernel: Kernel, predictor: Predictor, elements: Array, enthalpy: Array, logs: Array, to: str, fineness: float
+    kernel: Kernel, predictor: Predictor, far: Coordinates, further: Array, coarse: Start, to: str, fineness: float
 ) -> Predictor | None:
-    far = Coordinates.of(elements, enthalpy, logs)
+    """Return the predictor with the fit of the exit."""
     pieces, degrees = _shape(far, FAR, fineness)
     at = nodes(int(NODES_PER_TERM * len(terms(degrees))) + 4, far.count, pieces)
-    b, h, found = far.back(at, logs)
-    guess, _ = guesses(predictor, b, h, found[0])
-    flow = chamber_and_throat(kernel, b, h, found[0], guess, whole=True)
-    start = _marched(kernel, b, flow, found, to, at)
-    if start is None:
-        return None
-    station, good = shifting_exit(kernel, b, flow, start, found[1] if to == "area_ratio" else None, whole=True)
+    b, h, logs = far.back(at, further)
+    guess, _ = guesses(predictor, b, h, logs[0])
+    flow = as_guessed(kernel, b, h, guess)
+    start = _point(coarse(b, h, logs), len(b), logs[0])
+    if to == "exit_pressure":
+        start.log_pressure = logs[0] + logs[1]
+    ratio = logs[1] if to == "area_ratio" else None
+    station, good = shifting_exit(kernel, b, flow, start, ratio, coarse=True)
+    values = np.vstack([_unknowns(station.solved), (station.solved.point.log_pressure - logs[0])[None]])
+    left = np.flatnonzero(flow.good & ~good)
+    if left.size:
+        part = flow.take(left)
+        guess_left = _marched(kernel, b[:, left], part, logs[:, left], to)
+        again, fine = shifting_exit(kernel, b[:, left], part, guess_left, None if ratio is None else ratio[left], coarse=True)
+        values[:, left] = np.vstack([_unknowns(again.solved), (again.solved.point.log_pressure - logs[0, left])[None]])
+        good[left] = fine
     good &= flow.good
     if good.mean() < _ENOUGH:
         return None
-    values = np.vstack([_unknowns(station.solved), (station.solved.point.log_pressure - found[0])[None]])
     last = Fit.of(at[:, good], values[:, good], degrees, pieces)
     return None if last is None else Predictor(predictor.near, predictor.first, far, last, to)
+
+
+def _marched(kernel: Kernel, b: Array, flow: Flow, logs: Array, to: str) -> Point:
+    """Return first guesses of the exit of a few nodes, followed from the throat along the isentrope in short steps."""
+    throat = flow.throat
+    gamma = np.full(len(flow.good), 1.18)
+    point = throat.solved.point
+    if to == "area_ratio":
+        mach = gas_dynamics.mach_from_area_ratio(np.exp(np.maximum(logs[1], 0.0)), gamma, "supersonic")
+        fall = np.log(gas_dynamics.pressure_ratio(mach, gamma) / gas_dynamics.pressure_ratio(1.0, gamma))
+    else:
+        fall = logs[0] + logs[1] - point.log_pressure
+    first = _NUDGE / max(float(np.abs(fall).max()), _NUDGE)
+    steps = int(np.ceil(np.abs(fall).max() / _STRIDE))
+    before, last = point, first
+    for number, share in enumerate([first, *[(1.0 - first) / steps] * steps]):
+        ahead = _ahead(before, point, 0.0 if number == 0 else share / last)
+        ahead.log_pressure = point.log_pressure + share * fall
+        found = solve(kernel, b, flow.entropy, ahead, entropy=True)
+        before, point, last = point, found.point, share
+    return point
 
 
 def _ahead(before: Point, here: Point, share: float) -> Point:
@@ -185,35 +231,3 @@ def _ahead(before: Point, here: Point, share: float) -> Point:
         here.log_temperature + share * (here.log_temperature - before.log_temperature),
         here.log_pressure,
     )
-
-
-def _marched(kernel: Kernel, b: Array, flow: Flow, logs: Array, to: str, at: Array) -> Point | None:
-    """Return first guesses of the exit at the nodes: some nodes are followed from the throat along the isentrope, the rest fitted."""
-    some = _spread(at.shape[1], MARCHED * max(1, at.shape[0]))
-    good = flow.good[some]
-    throat = flow.throat
-    gamma = np.clip(throat.exponent[some], 1.05, 1.6)
-    point = throat.solved.point.take(some)
-    if to == "area_ratio":
-        mach = gas_dynamics.mach_from_area_ratio(np.exp(np.maximum(logs[1, some], 0.0)), gamma, "supersonic")
-        fall = np.log(gas_dynamics.pressure_ratio(mach, gamma) / gas_dynamics.pressure_ratio(1.0, gamma))
-    else:
-        fall = logs[0, some] + logs[1, some] - point.log_pressure
-    b, entropy = b[:, some], flow.entropy[some]
-    first = _NUDGE / max(float(np.abs(fall).max()), _NUDGE)
-    shares = np.concatenate([[first], np.full(steps := int(np.ceil(np.abs(fall).max() / _STRIDE)), (1.0 - first) / steps)])
-    before, last = point, first
-    for number, share in enumerate(shares):
-        ahead = _ahead(before, point, 0.0 if number == 0 else share / last)
-        ahead.log_pressure = point.log_pressure + share * fall
-        found = solve(kernel, b, entropy, ahead, entropy=True)
-        good &= found.good
-        before, point, last = point, found.point, share
-    values = np.vstack([point.potentials, point.log_moles, point.log_temperature, point.log_pressure - logs[0, some]])
-    fit = Fit.of(at[:, some][:, good], values[:, good], (2,) * at.shape[0])
-    if fit is None:
-        return None
-    start = _point(fit(at), len(b), logs[0])
-    if to == "exit_pressure":
-        start.log_pressure = logs[0] + logs[1]
-    return start

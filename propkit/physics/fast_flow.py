@@ -17,7 +17,7 @@ import numpy.typing as npt
 from propkit.constants import GAS_CONSTANT
 from propkit.physics.arrays import Array
 from propkit.physics.equilibrium_newton import LOWEST_TEMPERATURE
-from propkit.physics.fast_newton import AtFlux, Kernel, Point, Solved, Sonic, solve
+from propkit.physics.fast_newton import PATIENT, STEPS, AtFlux, Kernel, Point, Solved, Sonic, solve
 from propkit.physics.fast_predictor import Coordinates, Fit
 
 Truth = npt.NDArray[np.bool_]
@@ -68,10 +68,11 @@ class Station:
         """Isentropic exponent with the composition following."""
         return np.asarray(1.0 / (1.0 - self.turning))
 
-    @property
-    def density(self) -> Array:
-        """Density [kg/m3]."""
-        return np.asarray(self.pressure / (GAS_CONSTANT * self.moles * self.temperature))
+    def take(self, cases: Any) -> Station:
+        """Return some designs."""
+        s = self.solved
+        solved = Solved(s.point.take(cases), s.turning[cases], s.heating[cases], s.heat_capacity[cases], s.good[cases], s.steps[cases])
+        return Station(self.pressure[cases], self.temperature[cases], self.moles[cases], self.enthalpy[cases], self.turning[cases], solved)
 
 
 @dataclass(slots=True, eq=False)
@@ -83,7 +84,10 @@ class Flow:
     entropy: Array
     good: Truth
     kept: npt.NDArray[np.intp]
-    exit: Station | None = None
+
+    def take(self, cases: Any) -> Flow:
+        """Return some designs."""
+        return Flow(self.chamber.take(cases), self.throat.take(cases), self.entropy[cases], self.good[cases], self.kept)
 
 
 def select(kernel: Kernel, points: Point) -> npt.NDArray[np.intp]:
@@ -123,12 +127,12 @@ def _verified(kernel: Kernel, kept: npt.NDArray[np.intp], points: Point) -> Trut
 
 
 def _station(
-    kernel: Kernel, elements: Array, target: Array, guess: Point, entropy: bool, condition: Any, keep: bool, whole: bool
+    kernel: Kernel, elements: Array, target: Array, guess: Point, entropy: bool, condition: Any, keep: bool, coarse: bool
 ) -> tuple[Solved, Truth, npt.NDArray[np.intp]]:
-    kept = np.arange(len(kernel.composition)) if whole else select(kernel, guess)
-    found = solve(kernel.take(kept), elements, target, guess, entropy=entropy, condition=condition, keep_amounts=keep)
+    kept = select(kernel, guess)
+    found = solve(kernel.take(kept), elements, target, guess, entropy=entropy, condition=condition, keep_amounts=keep, steps=PATIENT if coarse else STEPS)
     inside = np.exp(found.point.log_temperature) > LOWEST_TEMPERATURE
-    return found, found.good & inside & _verified(kernel, kept, found.point), kept
+    return found, found.good & inside & (coarse or _verified(kernel, kept, found.point)), kept
 
 
 def _dot(a: Array, b: Array) -> Array:
@@ -143,7 +147,7 @@ def chamber_and_throat(
     guess: tuple[Point, Point, Array],
     *,
     keep: bool = False,
-    whole: bool = False,
+    coarse: bool = False,
 ) -> Flow:
     """Return chamber and throat from first guesses of both.
 
@@ -159,17 +163,29 @@ def chamber_and_throat(
         Unknowns at the chamber, at the throat, and d ln gamma / d ln p there.
     keep : bool
         Whether the amounts of the species in the chamber are kept.
-    whole : bool
-        Whether no species is left out.
+    coarse : bool
+        Whether the solutions serve a predictor only: more steps are allowed, and species left out are not verified.
     """
-    found, good, kept = _station(kernel, elements, enthalpy, guess[0], False, None, keep, whole)
+    found, good, kept = _station(kernel, elements, enthalpy, guess[0], False, None, keep, coarse)
     point = found.point
     temperature, moles = np.exp(point.log_temperature), np.exp(point.log_moles)
     entropy = enthalpy / temperature - GAS_CONSTANT * _dot(point.potentials, elements)
     pressure = kernel.reference_pressure * np.exp(log_pressure)
     chamber = Station(pressure, temperature, moles, enthalpy, found.turning, found)
-    throat, fine, _ = _station(kernel, elements, entropy, guess[1], True, Sonic(enthalpy, guess[2]), False, whole)
+    throat, fine, _ = _station(kernel, elements, entropy, guess[1], True, Sonic(enthalpy, guess[2]), False, coarse)
     return Flow(chamber, _at(kernel, elements, entropy, throat), entropy, good & fine, kept)
+
+
+def as_guessed(kernel: Kernel, elements: Array, enthalpy: Array, guess: tuple[Point, Point, Array]) -> Flow:
+    """Return chamber and throat as they are guessed, for what only needs them nearly."""
+    point, count = guess[0], enthalpy.size
+    temperature = np.exp(point.log_temperature)
+    entropy = enthalpy / temperature - GAS_CONSTANT * _dot(point.potentials, elements)
+    blank = np.zeros(count)
+    solved = [Solved(part, blank, blank, blank, np.ones(count, dtype=bool), np.zeros(count, dtype=np.intp)) for part in guess[:2]]
+    chamber = Station(kernel.reference_pressure * np.exp(point.log_pressure), temperature, np.exp(point.log_moles), enthalpy, blank, solved[0])
+    throat = _at(kernel, elements, entropy, solved[1])
+    return Flow(chamber, throat, entropy, np.isfinite(throat.enthalpy), np.arange(0))
 
 
 def _at(kernel: Kernel, elements: Array, entropy: Array, found: Solved) -> Station:
@@ -180,7 +196,7 @@ def _at(kernel: Kernel, elements: Array, entropy: Array, found: Solved) -> Stati
 
 
 def shifting_exit(
-    kernel: Kernel, elements: Array, flow: Flow, guess: Point, log_area_ratio: Array | None, *, whole: bool = False
+    kernel: Kernel, elements: Array, flow: Flow, guess: Point, log_area_ratio: Array | None, *, coarse: bool = False
 ) -> tuple[Station, Truth]:
     """Return the exit of flow in equilibrium, at an area ratio, or at the pressure of the guess where that is None."""
     condition = None
@@ -190,7 +206,7 @@ def shifting_exit(
         thermal = GAS_CONSTANT * throat.moles * throat.temperature
         log_flux = np.log(throat.pressure / kernel.reference_pressure * head / thermal) - log_area_ratio
         condition = AtFlux(flow.chamber.enthalpy, log_flux)
-    found, good, _ = _station(kernel, elements, flow.entropy, guess, True, condition, False, whole)
+    found, good, _ = _station(kernel, elements, flow.entropy, guess, True, condition, False, coarse)
     station = _at(kernel, elements, flow.entropy, found)
     fine = good & (station.pressure <= flow.throat.pressure * (1.0 + 1e-9))
     return station, fine

@@ -33,13 +33,17 @@ from propkit.physics.arrays import Array
 from propkit.physics.equilibrium_newton import Integers
 from propkit.physics.thermodynamics import SpeciesTable
 
-RESTED: Final = 5e-9
+RESTED: Final = 2e-9
 """Largest step of an unknown before which matrix and derivatives are those of the solution; the step itself is still taken."""
 
 RESTED_ALONG: Final = 3e-8
 """The same for throat and exit, whose heat capacity is not asked for: their exponents are good to a twentieth of it."""
 
 STEPS: Final = 9
+"""Steps after which a design is left to the damped iteration."""
+
+PATIENT: Final = 12
+"""Steps allowed where the predictor itself is made, from coarse first guesses."""
 _LONGEST: Final = 0.5
 """Longest step in ln T, ln N and ln p."""
 
@@ -183,6 +187,7 @@ def solve(
     entropy: bool,
     condition: Condition | None = None,
     keep_amounts: bool = False,
+    steps: int = STEPS,
 ) -> Solved:
     """Return the equilibrium of a block of cases from starts nearby.
 
@@ -202,6 +207,8 @@ def solve(
         Moves the pressure.
     keep_amounts : bool
         Whether the amounts of the species are returned.
+    steps : int
+        Steps allowed.
 
     Returns
     -------
@@ -212,13 +219,13 @@ def solve(
     out = Solved(
         Point(np.full_like(start.potentials, np.nan), *(np.full(count, np.nan) for _ in range(3))),
         np.full(count, np.nan), np.full(count, np.nan), np.full(count, np.nan),
-        np.zeros(count, dtype=bool), np.full(count, STEPS, dtype=np.intp),
+        np.zeros(count, dtype=bool), np.full(count, steps, dtype=np.intp),
         np.empty((len(kernel.composition), count)) if keep_amounts else None,
     )  # fmt: skip
     cases: Any = slice(None)
     x, stacked, amounts = start, start.stacked(), None
     before: Array | None = None
-    for step in range(1, STEPS + 1):
+    for step in range(1, steps + 1):
         amounts, enthalpy = _species(kernel, stacked, before, amounts)
         found = _step(kernel, elements, target, x, stacked, amounts, enthalpy, entropy, condition, cases)
         size = found.size
@@ -330,7 +337,7 @@ def _step(
         place += i + 1
     matrix[size, :size], matrix[size, size] = crossed[:size], nh.sum(axis=0) + heat_capacity
     matrix[size + 1, :size], matrix[size + 1, size], matrix[size + 1, m - 1] = atoms, heat, total - moles
-    right = np.zeros((m, 3, target.size))
+    right = np.zeros((m, 2 if entropy else 3, target.size))
     np.subtract(elements, atoms, out=right[:size, 0])
     missing_gas = moles - total
     right[size + 1, 0] = missing_gas
@@ -341,7 +348,8 @@ def _step(
     else:
         right[size, 0] = target / (GAS_CONSTANT * temperature) - heat
     right[:size, 1], right[size, 1], right[size + 1, 1] = atoms, heat + total, total
-    right[size, 2] = 1.0
+    if not entropy:
+        right[size, 2] = 1.0
     solution = _eliminate(matrix, right)
     step = solution[:, 0]
     turning = solution[size, 1] + solution[size + 1, 1]
@@ -354,7 +362,7 @@ def _step(
     largest = np.abs(step).max(axis=0)
     if pressure_step is not None:
         largest = np.maximum(largest, np.abs(pressure_step))
-    return _Found(step[:size], step[size + 1], step[size], pressure_step, largest, turning, solution[size, 2], heat_capacity)
+    return _Found(step[:size], step[size + 1], step[size], pressure_step, largest, turning, solution[size, -1], heat_capacity)
 
 
 def _polynomial(kernel: Kernel, coefficients: Array, temperature: Array, interval: int, n: Array) -> Array:

@@ -25,7 +25,7 @@ _SAME: Final = 1e-9
 MARGIN: Final = 0.02
 """Share of the box by which a case may lie outside it."""
 
-NODES_PER_TERM: Final = 1.5
+NODES_PER_TERM: Final = 1.3
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -37,7 +37,9 @@ def agree(result, rows, tolerance=1e-8):
         for name in result.results:
             value = frame.loc[row, name]
             if np.isfinite(value):
-                assert value == pytest.approx(paths.value_of(made, name), rel=tolerance, abs=1e-300), (row, name)
+                # gas at rest has a velocity of rounding in the objects, and none in a study
+                floor = 1e-2 if name.startswith("nozzle.inlet.") and name.endswith(("velocity", "mach")) else 1e-300
+                assert value == pytest.approx(paths.value_of(made, name), rel=tolerance, abs=floor), (row, name)
 
 
 def test_a_grid_varies_its_last_path_fastest_and_has_the_contracted_columns():
@@ -212,6 +214,26 @@ def test_exports_keep_every_digit(tmp_path):
 
 
 # -- where it runs --------------------------------------------------------------------------------
+
+
+@pytest.fixture(scope="module")
+def quick():
+    """A study of 1 200 designs, which the quick engine solves."""
+    ranges = {"chamber.pressure": ("3 MPa", "20 MPa"), "case.mixture_ratio": (2.6, 3.8), "nozzle.area_ratio": (5, 60)}
+    return pk.Study.sample(PERF, ranges, 1200, seed=2)
+
+
+def test_the_quick_engine_gives_the_same_bits_wherever_it_runs(quick, monkeypatch):
+    monkeypatch.setattr(sweep_plan, "BLOCK", 400)
+    study = pk.Study(quick.target, quick._designs)
+    here = study.run(executor=ThreadPoolExecutor(1), progress=False)
+    assert any("quick engine solved 1200 designs" in note for note in here.notes)
+    threads = study.run(executor=ThreadPoolExecutor(3), progress=False)
+    with ProcessPoolExecutor(1, mp_context=get_context("spawn")) as pool:
+        processes = study.run(executor=pool, progress=False)
+    for other in (threads, processes):
+        for name in here.results:
+            assert np.array_equal(here.values(name), other.values(name), equal_nan=True), name
 
 
 @pytest.fixture
