@@ -10,6 +10,7 @@ from typing import Any, Literal
 BlockKind = Literal["markdown", "code", "html", "text", "picture", "error"]
 
 _ANSI = re.compile(r"\x1b\[[0-9;?]*[ -/]*[@-~]|\x1b[@-_]")
+_LIVE_FIGURE = re.compile(r"(figure|Figure|GridPlot|Row|Column)\(id\s*=")
 _PICTURES = ("image/svg+xml", "image/png", "image/jpeg")
 _LONGEST_TEXT = 200_000
 
@@ -77,6 +78,9 @@ def _outputs(outputs: Any, number: int) -> Iterator[Block]:
 
 def _displayed(data: Mapping[str, Any], number: int) -> Iterator[Block]:
     if "application/vnd.jupyter.widget-view+json" in data:
+        return
+    if _LIVE_FIGURE.match(as_text(data.get("text/plain", ""))):
+        yield Block("markdown", "*A live figure stands here in the notebook.*", number)
         return
     if "text/html" in data:
         yield Block("html", as_text(data["text/html"]), number, others=data)

@@ -15,12 +15,13 @@ from propkit.record.build import CAUTIONS
 from propkit.record.outcome import Verification
 from propkit.record.record import Record
 from propkit.record.trace import Origin, trace
-from propkit.report import Report, Section, Step
+from propkit.report import Report, Row, Section, Step
 from propkit.sources import SOURCES, reference
 from propkit.view import numbers
 
 _MOST_ORIGINS = 1
 _ORDER = ("chamber", "throat", "exit")
+_WORKED = ("case", "chamber", "nozzle", "performance")
 _ABOUT = {"given": "as given", "default": "default", "method": "of the method", "computed": "computed"}
 
 
@@ -98,19 +99,14 @@ def _results(material: Material) -> Iterator[str]:
 
 def _assumptions(material: Material) -> Iterator[str]:
     entries = material.calculation.assumptions
-    priced = any(getattr(entry, "price", None) for entry in entries)
-    heads = ("assumption", "origin", "bears on", *(("price",) if priced else ()))
-    rows = [
-        (
-            str(getattr(entry, "statement", entry)),
-            _ABOUT.get(entry.origin, entry.origin),
-            entry.about.replace("_", " "),
-            *((str(getattr(entry, "price", "") or ""),) if priced else ()),
-        )
-        for entry in entries
-    ]
+    rows = [(str(entry.statement), _ABOUT.get(entry.origin, entry.origin), entry.about.replace("_", " ")) for entry in entries]
     if rows:
-        yield markup.text_table(heads, rows)
+        yield markup.text_table(("assumption", "origin", "bears on"), rows)
+    sections = entries.sections() if hasattr(entries, "sections") else ()
+    for section in sections:
+        if section.table is not None:
+            yield f"<h3>{escape(section.title)}</h3>"
+            yield markup.data_table(section.table)
 
 
 def _inputs(material: Material) -> Iterator[str]:
@@ -138,16 +134,22 @@ def _working(material: Material) -> Iterator[str]:
     told: set[str] = set()
     for report, link in zip(material.reports, material.links, strict=True):
         for row in report.headline:
-            if row.kind != "computed":
-                continue
-            try:
-                steps = [step for step in link.working(row.name).steps if _key(step) not in told]
-            except PropkitError:
-                continue
+            steps = [step for step in _steps(link, row) if _key(step) not in told]
             told |= {_key(step) for step in steps}
             if steps:
                 yield f"<h3>{escape(link.title)}: {escape(row.label)}</h3>"
                 yield markup.working(steps, untitled=row.label)
+
+
+def _steps(link: Calculation, row: Row) -> tuple[Step, ...]:
+    """Return the steps of a computed result; none for what is given, and for analyses, whose sheets tell how they came about."""
+    if row.kind != "computed" or link.kind not in _WORKED:
+        return ()
+    try:
+        steps: tuple[Step, ...] = link.working(row.name).steps
+    except PropkitError:
+        return ()
+    return steps
 
 
 def _key(step: Step) -> str:
@@ -211,6 +213,8 @@ def _warnings(material: Material) -> Iterator[str]:
 
 
 def _origins(material: Material) -> Iterator[str]:
+    if material.calculation.kind not in _WORKED:
+        return
     names = [row.name for row in material.last.headline if row.kind == "computed"]
     for name in [name for name in names if name != "thrust"][:_MOST_ORIGINS] or names[:1]:
         yield _tree(trace(material.calculation, name))
@@ -239,8 +243,7 @@ def _references(material: Material) -> Iterator[str]:
         found.update((row.source, None) for row in report.rows() if row.source)
     for link in material.links:
         for row in link.report().headline:
-            if row.kind == "computed":
-                found.update((step.source, None) for step in link.working(row.name).steps if step.source)
+            found.update((step.source, None) for step in _steps(link, row) if step.source)
     lines = [reference(key) for key in found if key not in ("definition", "conservation", "common-practice")]
     basis = material.content["basis"]
     if basis:

@@ -14,7 +14,6 @@ from propkit.sources import reference
 from propkit.view import cells, numbers, svg
 from propkit.view.symbols import html_species, html_symbol
 
-
 _LOWEST_POWER = -12
 _SUPERSCRIPTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 

@@ -6,23 +6,22 @@ import copy
 import json
 import re
 import unicodedata
-from collections.abc import Callable, Mapping
+from collections.abc import Callable
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
-from propkit import quantities, units
 from propkit.errors import MissingExtraError
 from propkit.memo import execute as execution
 from propkit.memo.blocks import blocks_of, title_of, without_title
 from propkit.memo.crate import record_crate
+from propkit.memo.markup import uncertainty, value_text
 from propkit.memo.notebook_pdf import notebook_pdf
 from propkit.memo.page import Bound, notebook_page
 from propkit.record.containers import Contents, records_of
 from propkit.record.record import Record
-from propkit.record.sheet import HEADLINES
 from propkit.record.storage import make_folder, write_atomically
-from propkit.view import cells, numbers
+from propkit.view import cells
 
 
 @dataclass(slots=True)
@@ -126,19 +125,7 @@ def _bind(contents: Contents) -> list[Bound]:
 
 def answers_of(record: Record) -> tuple[tuple[str, str, str], ...]:
     """Return the answer of a record as label, value and unit in display units."""
-    content = record.content
-    kind = content["object"]
-    stored: Mapping[str, Any] = content["objects"][kind]
-    made = []
-    for name in HEADLINES[kind]:
-        entry = stored["results"].get(name) or stored["inputs"].get(name)
-        if entry is None or not isinstance(entry["value"], int | float):
-            continue
-        quantity = quantities.quantity(name, kind)
-        unit = quantity.shown_in("SI", (entry["value"],))
-        value = units.convert(float(entry["value"]), quantity.unit, unit)
-        made.append((quantity.label, numbers.pretty(value, quantity.digits), cells.unit_text(unit)))
-    return tuple(made)
+    return tuple((row.label, f"{value_text(row)}{uncertainty(row)}", cells.unit_text(row.unit)) for row in record.report().headline)
 
 
 def _file_name(record: Record, taken: set[str]) -> str:

@@ -202,3 +202,19 @@ def test_trace_ends_in_inputs_and_data_rows(record):
 
 def test_zip_records(files):
     assert len(records_of(".zip", (files / "memo.zip").read_bytes(), "memo.zip").found) == 2
+
+
+def test_record_of_an_analysis_makes_a_memo(perf, tmp_path):
+    fit = pk.Reconciliation(perf, {"thrust": ("4.1 kN", "2 %"), "mass_flow": ("1.35 kg/s", "2 %"), "throat_diameter": ("40 mm", "0.1 mm")})
+    record = fit.record(title="Reconciled")
+    for suffix in (".pdf", ".html"):
+        path = record.save(tmp_path / f"x{suffix}")
+    assert "Reconciled" in pdf_text(tmp_path / "x.pdf")
+    assert verify_file(path).exit_code == 0
+
+
+def test_prices_stand_beside_the_assumptions(perf, files):
+    text = spaceless(pdf_text(files / "memo.pdf"))
+    priced = [price for entry in perf.assumptions for price in entry.prices if price.size >= 0]
+    assert priced
+    assert all(spaceless(price.alternative) in text for price in priced)
