@@ -97,7 +97,7 @@ POWER = Kind("power", "W", ("kW", "MW"), ("Btu/s",))
 IMPULSE = Kind("impulse", "N*s", ("N*s", "kN*s", "MN*s"), ("lbf*s",))
 HEAT_TRANSFER = Kind("heat transfer coefficient", "W/(m**2*K)", ("kW/(m**2*K)",), ("Btu/(inch**2*s*degR)",))
 TEMPERATURE_DIFFERENCE = Kind("temperature difference", "K", ("K",), ("degR",))
-VISCOSITY = Kind("viscosity", "Pa*s", ("uPa*s",), ("uPa*s",))
+VISCOSITY = Kind("viscosity", "Pa*s", ("mPa*s",), ("mPa*s",))
 BURN_TIME = Kind("time", "s", ("s",), ("s",))
 TEXT = Kind("choice", "", ("",), ("",))
 

@@ -288,8 +288,10 @@ def _real_gas(performance: Performance) -> Price | None:
 
 def _friction(performance: Performance) -> Price | None:
     """Return the price of frictionless flow: a boundary layer along the contour, or along a 15 degree cone without one."""
-    if "boundary layer" in performance.resolved_losses.ratios:
-        return None
+    taken_off = performance.resolved_losses.ratios.get("boundary layer")
+    if taken_off is not None:
+        change = 1.0 / taken_off - 1.0
+        return Price("no boundary layer loss", 0.0, change, change)
     from propkit.model import friction
 
     nozzle = performance.nozzle

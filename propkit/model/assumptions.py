@@ -141,7 +141,7 @@ def taken(performance: Performance, key: str) -> str:
         "contraction": "infinite" if contraction == float("inf") else f"ratio {contraction:g}, pressure at the {chamber._values['pressure_at']}",
         "cstar-efficiency": f"{chamber.si('cstar_efficiency'):g}",
         "flow": alternatives.FLOW_WORDS[nozzle.flow] if nozzle._values["freeze_at"] in (None, "chamber") else f"frozen from {_place(nozzle)}",
-        "isentropic": "none",
+        "isentropic": "loss taken off" if "boundary layer" in performance.resolved_losses.ratios else "none",
         "discharge": f"{nozzle.si('discharge_coefficient'):g}",
         "one-dimensional": nozzle.input_text("contour") if nozzle.has("contour") else "none: axial flow",
         "full-flow": "flows full",

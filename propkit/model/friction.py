@@ -15,7 +15,7 @@ from propkit.physics.wall import Segment
 if TYPE_CHECKING:
     from propkit.model.nozzle import Nozzle
 
-POINTS = 61
+POINTS = 31
 """Points on each segment for the integration along the wall."""
 
 

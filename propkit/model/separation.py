@@ -22,7 +22,7 @@ if TYPE_CHECKING:
     from propkit.model.nozzle import Nozzle
     from propkit.model.performance import Performance
 
-STATIONS = 160
+STATIONS = 64
 """Stations between throat and lip at which the criteria are evaluated."""
 
 SONIC = 1.0 + 1e-6

@@ -537,6 +537,7 @@ class _Batch:
         name = next(name for name in SIZES if name in link.inputs)
         ambient = link._values["sizing_ambient"]
         self.divergence = self._divergence(link, ratio)
+        self.require(np.isfinite(self.divergence), "the contour does not fit that area ratio")
         sizes = sizing.size(
             name,
             self.array(link, name),
@@ -547,6 +548,7 @@ class _Batch:
             ambient=ambient.pressure if ambient is not None else 0.0,
             discharge_coefficient=discharge,
             cstar_efficiency=self.efficiency,
+            divergence_factor=self.divergence if name == "thrust" else 1.0,
         )
         self.require(sizes.throat_area > 0.0, "no size delivers that thrust at that ambient pressure")
         self.expansion, self.sizes = expansion, sizes
@@ -588,6 +590,9 @@ class _Batch:
         given = self.inputs.get("performance.ambient")
         ambient = np.broadcast_to(link._values["ambient"].pressure if given is None else given, (self.count,))
         self.require(ambient < self.rest_pressure, "the ambient pressure is not below the stagnation pressure")
+        lowest = link._values["minimum_pressure"]
+        if lowest is not None:
+            self.require(self.results["chamber.pressure"] >= lowest, "the chamber pressure is below the minimum_pressure")
         losses = link.resolved_losses.ratios  # type: ignore[attr-defined]
         delivered = performance_stage.deliver(
             mass_flow=sizes.mass_flow,

@@ -15,7 +15,7 @@ from propkit.model.chamber import GasChamber
 from propkit.model.state import STATE_FIELDS
 from propkit.sources import SOURCES
 
-OBJECTS = [pk.PropellantCase, pk.Chamber, GasChamber, pk.Nozzle, pk.Performance, pk.Propellant]
+OBJECTS = [pk.PropellantCase, pk.Chamber, GasChamber, pk.Nozzle, pk.Performance, pk.Propellant, pk.Cone, pk.Bell]
 ROOT = Path(propkit.__file__).parent
 
 

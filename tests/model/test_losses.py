@@ -149,3 +149,35 @@ def test_impossible_losses_are_refused_in_words(case, losses, words):
     with pytest.raises(pk.InputError) as caught:
         pk.Performance(nozzle, ambient="vacuum", losses={"kinetics": 2, "boundary layer": math.pi})
     assert len(caught.value.problems) == 2
+
+
+@pytest.mark.parametrize("losses", [ASKED | {"two-phase": 0.999}, {"kinetics": "estimate"}, {"kinetics": "3 s"}], ids=["ratios", "estimate", "decrement"])
+def test_a_batch_takes_the_losses_as_single_objects_do(nozzle, losses):
+    from propkit.study.evaluation import function_of
+
+    perf = pk.Performance(nozzle, ambient="12 km", losses=losses)
+    ratios, pressures = np.array([10.0, 35.0, 60.0]), np.array([5e6, 9.7e6, 12e6])
+    function = function_of(perf, ["nozzle.area_ratio", "chamber.pressure"], ["thrust", "specific_impulse", "nozzle.mass_flow"])
+    found = function({"nozzle.area_ratio": ratios, "chamber.pressure": pressures})
+    for place in range(3):
+        one = perf.replace({"nozzle.area_ratio": ratios[place], "chamber.pressure": pressures[place]})
+        assert found["thrust"][place] == pytest.approx(one.si("thrust"), rel=1e-8)
+        assert found["specific_impulse"][place] == pytest.approx(one.si("specific_impulse"), rel=1e-8)
+        assert found["nozzle.mass_flow"][place] == pytest.approx(one.nozzle.si("mass_flow"), rel=1e-8)
+
+
+def test_a_batch_is_sized_with_the_divergence(case):
+    from propkit.study.evaluation import function_of
+
+    chamber = pk.Chamber(case, pressure="9.7 MPa")
+    nozzle = pk.Nozzle.sized_for(chamber, thrust="400 kN", ambient="sea level", area_ratio=20, contour=pk.Cone("15 deg"))
+    function = function_of(nozzle, ["chamber.pressure"], ["throat_area", "wetted_area"])
+    batch = function_of(nozzle, ["chamber.pressure"], ["throat_area"])
+    pressures = np.array([8e6, 11e6])
+    found, quick = function({"chamber.pressure": pressures}), batch({"chamber.pressure": pressures})
+    assert not function.batched
+    assert batch.batched
+    for place, pressure in enumerate(pressures):
+        one = nozzle.replace({"chamber.pressure": pressure})
+        assert quick["throat_area"][place] == pytest.approx(one.si("throat_area"), rel=1e-8)
+        assert found["wetted_area"][place] == pytest.approx(one.si("wetted_area"), rel=1e-12)
