@@ -42,6 +42,8 @@ DOWNWARD = {
     "panel": "propkit.panels:panel_of",
     "plot": "propkit.plots:plot_of",
     "figure": "propkit.plots.build:build",
+    "study_plot": "propkit.plots.study:plot_of_study",
+    "study_map": "propkit.plots.study:map_of_study",
 }
 """Method -> "module:function": the only references from the model to layers below it."""
 

@@ -24,6 +24,7 @@ CLASSES = {
     "RecordedReconciliation": "propkit.reconcile.recorded",
     "RecordedFiring": "propkit.reconcile.recorded",
     "RecordedUncertainty": "propkit.study.recorded",
+    "RecordedStudy": "propkit.study.sweep_record",
     "Normal": "propkit.study.distributions",
     "Uniform": "propkit.study.distributions",
     "Triangular": "propkit.study.distributions",

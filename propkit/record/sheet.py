@@ -22,6 +22,7 @@ _TITLES = {
     "reconciliation": "Reconciliation",
     "firing": "Hot firing",
     "uncertainty": "Uncertainty",
+    "study": "Study",
 }
 _DEEPEST_SHOWN = 3
 _INDENT = "\u2003"
@@ -33,6 +34,7 @@ HEADLINES = {
     "reconciliation": ("p_value", "chi_square", "degrees_of_freedom"),
     "firing": ("characteristic_velocity", "thrust_coefficient", "specific_impulse"),
     "uncertainty": (),
+    "study": (),
 }
 
 

@@ -327,19 +327,28 @@ class StudyResult:
             raise StorageError(f"{target} cannot be written: {error.strerror or error}", path=str(target)) from error
         return target
 
-    def record(self, *, title: str = "", sample: int = 12, seed: int = 0) -> Any:
-        """Return the record of the study, which a reviewer can verify: inputs, digest of the table, a sample of designs.
+    def record(
+        self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "", sample: int = 12, seed: int = 0
+    ) -> Any:
+        """Return the record of the study: what varied, and a sample of designs that a reviewer recomputes.
 
         Parameters
         ----------
-        title : str
-            Title of the record.
+        title, author, purpose, notes : str
+            Free text for the title block.
         sample : int
-            Designs whose results are recorded and recomputed, chosen by `seed`.
+            Designs whose results are recorded and recomputed, at most 200.
         seed : int
-            Seed of the choice.
+            Seed of their choice; stated in the record.
+
+        Raises
+        ------
+        RecordError
+            When a recomputed design does not agree with the table to 1e-8.
         """
-        return reach("study_record")(self, title=title, sample=sample, seed=seed)
+        from propkit.study.sweep_record import record_of_study
+
+        return record_of_study(self, title=title, author=author, purpose=purpose, notes=notes, sample=sample, seed=seed)
 
     # -- display ---------------------------------------------------------------------------------
 
