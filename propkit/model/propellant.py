@@ -31,7 +31,7 @@ from propkit.model.declare import (
 )
 from propkit.model.doubts import Doubt
 from propkit.model.propellant_table import propellants
-from propkit.physics.stoichiometry import VALENCES, net_valence
+from propkit.physics.stoichiometry import VALENCES, oxygen_balance
 from propkit.report import Section, UnitSystem
 from propkit.series import Figure
 
@@ -194,7 +194,8 @@ class Propellant(Calculation):
         results |= {name: float(value) for name in _FIGURES if (value := getattr(row, name)) is not None}
         absent = {name: f"The data of {row.name} have no {name}." for name in _FIGURES if name not in results}
         if all(symbol in VALENCES for symbol in row.elements):
-            results["oxygen_balance"] = -net_valence(row.elements) / 2.0 * ATOMIC_WEIGHTS["O"] * 1e-3 / row.molar_mass
+            per_mass = {symbol: count / row.molar_mass for symbol, count in row.element_counts}
+            results["oxygen_balance"] = float(oxygen_balance(per_mass, ATOMIC_WEIGHTS["O"] * 1e-3))
         else:
             absent["oxygen_balance"] = f"An element of {row.name} has no valence here."
         return Outcome(results=results, absent=absent, doubts=tuple(self._doubts(row)), held=row)
