@@ -423,6 +423,7 @@ _ROWS = (
     Quantity("peak_heat_flux", HEAT_FLUX, r"q_{max}", "largest heat flux", "largest convective heat flux along the wall", 4),
     Quantity("peak_heat_flux_equilibrium", HEAT_FLUX, r"q_{max,eq}", "largest heat flux, equilibrium heat capacity", "the same with the heat capacity of a reacting gas: the price of the frozen one", 4),
     Quantity("peak_position", LENGTH, r"x_{max}", "position of the largest flux", "axial position of the largest flux, throat at zero", 4),
+    Quantity("heat_transfer_coefficient", HEAT_TRANSFER, r"h", "heat transfer coefficient", "heat flux over adiabatic less actual wall temperature", 4),
     Quantity("mean_heat_flux", HEAT_FLUX, r"q_{m}", "mean heat flux", "heat load over wetted area", 4),
     Quantity("heat_share", NUMBER, r"", "share of the chamber power", "heat load over the power that cooling the gas to 298.15 K would give", 3),
     Quantity("viscosity", VISCOSITY, r"\mu", "viscosity at rest", "dynamic viscosity of the gas at rest", 4),

@@ -190,7 +190,7 @@ def _sections(frame: pd.DataFrame, geometry: Any, nozzle: Nozzle, system: UnitSy
     rows = [place for _, place in places]
     columns = []
     shown = (
-        ("x", "length", "axial position", "x"),
+        ("x", "divergent_length", "axial position", "x"),
         ("area_ratio", "area_ratio", "local area ratio", r"\epsilon"),
         ("temperature", "temperature", "gas temperature", "T"),
         ("adiabatic_wall_temperature", "temperature", "adiabatic wall temperature", "T_{aw}"),
@@ -198,11 +198,10 @@ def _sections(frame: pd.DataFrame, geometry: Any, nozzle: Nozzle, system: UnitSy
         ("heat_flux", "peak_heat_flux", "heat flux", "q"),
     )
     for name, key, label, symbol in shown:
-        kind = quantities.quantity({"length": "divergent_length"}.get(key, key)) if key != "heat_transfer_coefficient" else None
+        entry = quantities.quantity(key)
         raw = [float(frame[name].iloc[row]) for row in rows]
-        unit = kind.shown_in(system, raw) if kind is not None else quantities.HEAT_TRANSFER.si[0]
-        base = kind.unit if kind is not None else quantities.HEAT_TRANSFER.unit
-        columns.append(Column(name, label, symbol, unit, 4, tuple(units.convert(value, base, unit) for value in raw)))
+        unit = entry.shown_in(system, raw)
+        columns.append(Column(name, label, symbol, unit, 4, tuple(units.convert(value, entry.unit, unit) for value in raw)))
     yield Section("flux", "Along the wall", table=Table("flux", "Along the wall", "place", tuple(name for name, _ in places), tuple(columns)))
 
 
