@@ -12,7 +12,7 @@ from propkit.physics.arrays import Array
 from propkit.physics.thermodynamics import SpeciesTable
 
 CONCERNED = 1e-6
-"""Mole fraction above which a species outside its range is worth a warning."""
+"""Mole fraction above which a species outside its range, or a supersaturated vapour, is worth a warning."""
 
 
 def composition_range(
@@ -66,7 +66,9 @@ def supersaturation(
     if potentials is not None and np.isfinite(potentials).all():
         ratios = saturation.saturation_ratios(phases, state.temperature, potentials)[0]
     else:
-        ratios = saturation.vapour_saturation_ratios(phases, table, state.temperature, state.pressure, state.amounts)[0]
+        # a vapour of held composition that is next to nothing has next to nothing to give to a liquid or solid
+        vapours = np.where(state.amounts > CONCERNED * state.amounts.sum(axis=1, keepdims=True), state.amounts, 0.0)
+        ratios = saturation.vapour_saturation_ratios(phases, table, state.temperature, state.pressure, vapours)[0]
     present = (state.amounts[0] @ table.composition) > 0.0
     possible = ~(phases.composition[:, ~present] > 0.0).any(axis=1)
     ratios = np.where(possible, ratios, 0.0)

@@ -41,6 +41,12 @@ def state_at(nozzle: Nozzle, area_ratio: Any, pressure: Any, branch: str) -> Sta
                 "Give one of the two.",
             )
         )
+    if pressure is not None and branch != "supersonic":
+        raise InputError(
+            Problem(
+                "branch", as_text(branch), "left out beside pressure", "A pressure says on which side of the throat it is."
+            )
+        )
     if area_ratio is not None:
         ratio = units.to_si(area_ratio, "", "area_ratio")
         if not 1.0 <= ratio <= 1e6:

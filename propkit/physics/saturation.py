@@ -12,6 +12,9 @@ from propkit.physics.thermodynamics import SpeciesTable
 ABOVE_TABLE: Final = 20.0
 """Temperature [K] above the range of a liquid or solid up to which it is still looked at; below its range it always is."""
 
+LARGEST: Final = 700.0
+"""Logarithm [1] at which a saturation ratio is cut off, below the largest float: cold exits reach it."""
+
 
 def saturation_ratios(phases: SpeciesTable, temperature: Values, potentials: Array) -> Array:
     """Return the saturation ratio of liquids and solids over a gas in equilibrium.
@@ -80,5 +83,7 @@ def vapour_saturation_ratios(
             continue
         vapour = int(np.flatnonzero(same)[0])
         partial = amounts[:, vapour] / moles * p / gas.reference_pressure
-        ratios[:, place] = partial * np.exp(vapour_gibbs[:, vapour] - gibbs[:, place])
+        with np.errstate(divide="ignore"):  # no vapour at all: the logarithm is minus infinity, the ratio zero
+            logarithm = np.log(partial) + vapour_gibbs[:, vapour] - gibbs[:, place]
+        ratios[:, place] = np.exp(np.minimum(logarithm, LARGEST))
     return np.where(t[:, None] > phases.temperature_high + ABOVE_TABLE, 0.0, ratios)
