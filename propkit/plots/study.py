@@ -13,113 +13,18 @@ from propkit.errors import InputError, MissingExtraError, Problem
 from propkit.plots import paint
 from propkit.plots.build import FONT, TOOLS, Plot, _frame, build
 from propkit.report import UnitSystem
-from propkit.series import Axis, Figure, Line, Mark, Series
+from propkit.series import Figure, Mark
+from propkit.study.sweep_figures import curves, headline, path_of, shown_axis, shown_values
 
 Array = npt.NDArray[np.float64]
 
 CONTOURS = 9
 _HEIGHT = 420
-MOST_CURVES = 8
-
-
-def shown_axis(result: Any, name: str, system: UnitSystem) -> Axis:
-    """Return the axis of a column: its label, display unit and symbol."""
-    known = result.quantity(name)
-    return Axis(known.label, result.display(name, system)[0], known.symbol)
-
-
-def shown_values(result: Any, name: str, system: UnitSystem) -> Array:
-    """Return a column in its display unit."""
-    _, factor, offset = result.display(name, system)
-    return np.asarray(result.values(name) * factor + offset, dtype=np.float64)
-
-
-# -- curves ---------------------------------------------------------------------------------------
-
-
-def curves(result: Any, x: str | None, y: str | None, *, by: str | None, units: UnitSystem = "SI") -> Figure:
-    """Return a result over a path as neutral data, one curve for each value of another path.
-
-    Raises
-    ------
-    InputError
-        Where nothing varies along the axis, or a name is none.
-    """
-    plan = result.plan.plan
-    along = _path(result, x, longest=True)
-    name = result.name_of(y) if y is not None else headline(result)
-    others = [column for column in plan.columns if column.path != along]
-    split = next((column for column in plan.columns if column.path == _any_path(result, by)), None) if by is not None else None
-    if split is None and others:
-        split = max((column for column in others if len(np.unique(column.values)) > 1), key=lambda column: len(np.unique(column.values)), default=None)
-    xs, ys = shown_values(result, along, units), shown_values(result, name, units)
-    rows = np.arange(plan.count)
-    keep = np.isfinite(xs)
-    for column in others:
-        if column is not split:
-            values = column.at(rows)
-            keep &= values == values[0]
-    axis_x, axis_y = shown_axis(result, along, units), shown_axis(result, name, units)
-    lines = []
-    for place, (label, chosen) in enumerate(_kinds(result, split, rows[keep], units)):
-        order = chosen[np.argsort(xs[chosen], kind="stable")]
-        lines.append(
-            Line(
-                Series(axis_x.label, tuple(map(float, xs[order])), axis_x.unit, axis_x.symbol),
-                Series(axis_y.label, tuple(map(float, ys[order])), axis_y.unit, axis_y.symbol),
-                colour=place,
-                label=label,
-            )
-        )
-    title = f"{axis_y.label[:1].upper()}{axis_y.label[1:]} over {axis_x.label}"
-    return Figure("study-curves", title, f"{title}, {len(lines)} curves", axis_x, axis_y, tuple(lines))
-
-
-def _kinds(result: Any, split: Any, rows: npt.NDArray[np.intp], system: UnitSystem) -> list[tuple[str, npt.NDArray[np.intp]]]:
-    """Return label and designs of each curve, at most `MOST_CURVES` of them, evenly spread."""
-    if split is None:
-        return [("", rows)]
-    values = split.at(rows)
-    kinds = np.unique(values)
-    if len(kinds) > MOST_CURVES:
-        kinds = kinds[np.unique(np.linspace(0, len(kinds) - 1, MOST_CURVES).astype(int))]
-    if split.is_choice:
-        return [(str(split.shown(rows[values == kind][:1])[0]), rows[values == kind]) for kind in kinds]
-    unit, factor, offset = result.display(split.path, system)
-    text = unit_text.shown_unit(unit)
-    label = result.quantity(split.path).label
-    return [(f"{label} {float(kind) * factor + offset:.5g}{f' {text}' if text else ''}", rows[values == kind]) for kind in kinds]
 
 
 def plot_of_study(result: Any, x: str | None, y: str | None, *, by: str | None, units: UnitSystem = "SI") -> Any:
     """Return the Bokeh figure of `curves`."""
     return build(curves(result, x, y, by=by, units=units), height=_HEIGHT).figure
-
-
-def headline(result: Any) -> str:
-    """Return the result that is shown where none is named: the first of the object's headline."""
-    return next((name for name in result.plan.target.headline if name in result.results), result.results[0])
-
-
-def _any_path(result: Any, name: str) -> str:
-    found = [column.path for column in result.plan.plan.columns if column.path == name or column.path.endswith(f".{name}")]
-    if len(found) != 1:
-        listed = ", ".join(column.path for column in result.plan.plan.columns)
-        raise InputError(Problem("path", repr(name), f"one of {listed}"))
-    return str(found[0])
-
-
-def _path(result: Any, name: str | None, *, longest: bool = False, but: str = "") -> str:
-    """Return the path of a number that varies: the one named, or the first (or longest) other than `but`."""
-    numbers = [column for column in result.plan.plan.numbers if len(np.unique(column.values)) > 1 and column.path != but]
-    if name is not None:
-        path = _any_path(result, name)
-        if path not in {column.path for column in numbers}:
-            raise InputError(Problem("path", repr(name), "a number that varies in this study"))
-        return path
-    if not numbers:
-        raise InputError(Problem("designs", "without a number that varies" if not but else "with a single number that varies", "a study that varies another number"))
-    return str((max(numbers, key=lambda column: len(np.unique(column.values))) if longest else numbers[0]).path)
 
 
 # -- maps -----------------------------------------------------------------------------------------
@@ -146,10 +51,10 @@ class Grid:
             raise InputError(Problem("designs", "a list of designs", "a grid", "A map needs designs over a mapping of lists."))
         self.result, self.name = result, name
         if x is None and y is not None:
-            y = _path(result, y)
-            x = _path(result, None, but=y)
-        self.x = _path(result, x)
-        self.y = _path(result, y, but=self.x)
+            y = path_of(result, y)
+            x = path_of(result, None, but=y)
+        self.x = path_of(result, x)
+        self.y = path_of(result, y, but=self.x)
         if self.x == self.y:
             raise InputError(Problem("y", repr(y), "another path than x"))
         row, _ = result.best_design(name, minimum)
@@ -216,16 +121,16 @@ def map_of_study(
     plot = Plot(made, {"x": [float(xs[0]), float(xs[-1])], "y": [float(ys[0]), float(ys[-1])]})
     _frame(plot, Figure("study-map", title, title, axes[0], axes[1]))
     _contours(plot, xs, ys, table)
-    for place, (label, inside) in enumerate(allowed):
-        _band(plot, xs, ys, grid.on(inside.astype(np.float64)), label, place)
+    for place, (label, room) in enumerate(allowed):
+        _band(plot, xs, ys, grid.on(room), label, place)
     points = _points(grid, xs, ys, table, result, tuple(limits or {}), units)
     catch = made.scatter("x", "y", source=ColumnDataSource(points, name="designs"), size=12, fill_alpha=0.0, line_alpha=0.0)
     told = [(axes[0].label, _told("x", axes[0].unit)), (axes[1].label, _told("y", axes[1].unit)), (shown.label, _told("value", shown.unit))]
     told += [(other, f"@{{limit{place}}}") for place, other in enumerate(limits or {})]
     made.add_tools(HoverTool(renderers=[catch], tooltips=told))
     everywhere = np.ones(table.shape, dtype=bool)
-    for _, inside in allowed:
-        everywhere &= grid.on(inside.astype(np.float64)) > 0.5
+    for _, room in allowed:
+        everywhere &= grid.on(room) >= 0.0
     _optimum(plot, xs, ys, np.where(everywhere, table, np.nan), unit, minimum)
     return made
 
@@ -235,8 +140,8 @@ def _told(column: str, unit: str) -> str:
     return f"@{column}{{0.[00000]}}{f' {text}' if text else ''}"
 
 
-def _allowed(result: Any, limits: Mapping[str, tuple[Any, Any]]) -> list[tuple[str, npt.NDArray[np.bool_]]]:
-    """Return label and truth of each limit, one for each design."""
+def _allowed(result: Any, limits: Mapping[str, tuple[Any, Any]]) -> list[tuple[str, Array]]:
+    """Return label and room left by each limit, one for each design: negative outside."""
     from propkit import units as text_units
 
     found = []
@@ -253,11 +158,13 @@ def _allowed(result: Any, limits: Mapping[str, tuple[Any, Any]]) -> list[tuple[s
             problems.extend(error.problems)
             continue
         values = result.values(column)
-        inside = np.isfinite(values)
-        inside &= (values >= low) if low is not None else True
-        inside &= (values <= high) if high is not None else True
+        size = max(abs(end) for end in (low, high) if end is not None) if (low, high) != (None, None) else 1.0
+        room = np.full(values.shape, np.inf)
+        room = np.minimum(room, values - low) if low is not None else room
+        room = np.minimum(room, high - values) if high is not None else room
+        room = np.clip(np.where(np.isfinite(values), room / (size or 1.0), -1.0), -1.0, 1.0)
         words = " and ".join(f"{word} {end}" for word, end in zip(("at least", "at most"), ends, strict=True) if end is not None)
-        found.append((f"outside: {known.label} {words}", inside))
+        found.append((f"outside: {column} {words}", room))
     if problems:
         raise InputError(problems)
     return found
@@ -288,21 +195,20 @@ def contour_levels(low: float, high: float) -> list[float]:
     return [float(step * place) for place in np.arange(first, last + 1)]
 
 
-def _band(plot: Plot, xs: Array, ys: Array, inside: Array, label: str, place: int) -> None:
-    """Shade where a limit is broken."""
-    if (inside > 0.5).all():
+def _band(plot: Plot, xs: Array, ys: Array, room: Array, label: str, place: int) -> None:
+    """Shade where a limit is broken, up to the curve on which it is just met."""
+    if (room >= 0.0).all():
         return
     from bokeh.models import Legend, LegendItem
 
     hatch = ("right_diagonal_line", "left_diagonal_line", "cross", "dot")[place % 4]
-    width, height = np.gradient(xs), np.gradient(ys)
-    where_y, where_x = np.nonzero(inside < 0.5)
     role = f"series-{1 + place}"
-    shade = plot.figure.rect(
-        xs[where_x], ys[where_y], width=width[where_x], height=height[where_y], line_color=None, fill_alpha=0.16,
-        hatch_pattern=hatch, hatch_alpha=0.55, hatch_weight=0.8, hatch_scale=9,
+    colour = paint.colour(role)
+    drawn = plot.figure.contour(
+        xs, ys, room, [-2.0, 0.0], fill_color=[colour], fill_alpha=0.16, line_color=[colour, colour], line_width=1.4,
+        hatch_pattern=[hatch], hatch_color=[colour], hatch_alpha=0.55, hatch_weight=0.8, hatch_scale=9,
     )  # fmt: skip
-    plot.paint(shade.glyph, role, "fill_color", "hatch_color")
+    shade = drawn.fill_renderer
     made = plot.figure
     if not made.legend:
         legend: Any = Legend(items=[], orientation="horizontal", location="top_left", padding=2, margin=0)

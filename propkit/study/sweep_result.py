@@ -16,6 +16,7 @@ from propkit.model import paths
 from propkit.model.base import Calculation, reach, render
 from propkit.model.doubts import Doubt
 from propkit.report import Column, Report, Section, Table, UnitSystem
+from propkit.series import Figure
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -375,9 +376,25 @@ class StudyResult:
             units=system,
             sections=(Section("axes", "What varies", lines=tuple(self._axis_text(column, system) for column in plan.columns)), self._designs(system)),
             doubts=tuple(str(doubt) for doubt in self.warnings),
+            figures=self.figures(system),
             cautions=self.plan.target.cautions(),
             render=render,
         )
+
+    def figures(self, units: UnitSystem = "SI") -> tuple[Figure, ...]:
+        """Return the first result of the object's headline over the longest axis of a grid; nothing for a list of designs."""
+        from propkit.study.sweep_figures import curves
+
+        numbers = [column for column in self.plan.plan.numbers if len(column.values) > 1]
+        if not self.plan.plan.shape or not numbers or self.interrupted or not len(self):
+            return ()
+        return (curves(self, None, None, by=None, units=units),)
+
+    def curves(self, x: str | None = None, y: str | None = None, *, by: str | None = None, units: UnitSystem = "SI") -> Figure:
+        """Return a result over a path as neutral data, one curve for each value of another; arguments as for `plot`."""
+        from propkit.study.sweep_figures import curves
+
+        return curves(self, x, y, by=by, units=_system(units))
 
     def _axis_text(self, column: Any, system: UnitSystem) -> str:
         if column.is_choice:
