@@ -8,6 +8,7 @@ import os
 import sys
 from collections.abc import Callable, Sequence
 from pathlib import Path
+from typing import Any
 
 from propkit import __version__
 from propkit.errors import MissingExtraError, PropkitError
@@ -115,7 +116,8 @@ def _verify(options: argparse.Namespace) -> int:
     from propkit.record.outcome import junit_document
     from propkit.record.storage import write_atomically
 
-    results = [verify_file(file) for file in options.files]
+    known: dict[str, dict[str, Any]] = {}
+    results = [verify_file(file, known) for file in options.files]
     if options.rerun:
         from propkit.memo.rerun import rerun
 

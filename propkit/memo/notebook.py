@@ -117,9 +117,10 @@ def notebook_bytes(notebook: Any) -> bytes:
 def _bind(contents: Contents) -> list[Bound]:
     """Return the records of a notebook, each once, with their verification, in the order of the notebook."""
     made: dict[str, Bound] = {}
+    known: dict[str, dict[str, Any]] = {}
     for entry in contents.found:
         if entry.record.digest not in made:
-            made[entry.record.digest] = Bound(entry.record, entry.record.verify(entry.place), answers_of(entry.record))
+            made[entry.record.digest] = Bound(entry.record, entry.record.verify(entry.place, known), answers_of(entry.record))
     return list(made.values())
 
 

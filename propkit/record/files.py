@@ -64,13 +64,15 @@ class FileVerification:
         return "".join(part.to_junit() for part in (*([whole] if whole else []), *self.verifications))
 
 
-def verify_file(path: str | Path) -> FileVerification:
+def verify_file(path: str | Path, known: dict[str, dict[str, Any]] | None = None) -> FileVerification:
     """Return the verification of every record in a file; nothing in it is executed.
 
     Parameters
     ----------
     path : str or Path
         A .json, .ipynb, .html or .zip file.
+    known : dict, optional
+        What was recomputed already in this run, by digest of the recipe; filled.
 
     Returns
     -------
@@ -83,12 +85,13 @@ def verify_file(path: str | Path) -> FileVerification:
         return FileVerification(str(path), problem=error.message)
     if not contents.found:
         return FileVerification(str(path), problem="the file carries no record")
+    known = {} if known is None else known
     unique: dict[str, Verification] = {}
     made = []
     for entry in contents.found:
         digest = entry.record.digest
         if digest not in unique:
-            unique[digest] = entry.record.verify(entry.place)
+            unique[digest] = entry.record.verify(entry.place, known)
         first = unique[digest]
         made.append(Verification(entry.place, first.digest, first.title, (*first.checks, *entry.checks), first.leaves))
     return FileVerification(str(path), tuple(made), contents.checks)

@@ -100,15 +100,17 @@ class Record:
         """Return both digests as computed over the document in the form that it was sealed in."""
         return digest_of(self._sealed_as.get("content")), whole_digest(self._sealed_as)
 
-    def verify(self, name: str = "record") -> Verification:
+    def verify(self, name: str = "record", known: dict[str, dict[str, Any]] | None = None) -> Verification:
         """Return what comes out when everything is recomputed from the inputs and compared.
 
         Parameters
         ----------
         name : str
             What to call the record in the table.
+        known : dict, optional
+            What was recomputed already in this run, by digest of the recipe; filled, so that records of one calculation share it.
         """
-        return verify_document(self._document, name, self._seals(), self._migrated_from)
+        return verify_document(self._document, name, self._seals(), self._migrated_from, known)
 
     def compare(self, other: Record) -> Any:
         """Return what differs between this record and another: inputs, assumptions, versions, results.

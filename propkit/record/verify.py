@@ -26,7 +26,13 @@ _EDGE = 0.01
 """Width of the band round the smallest recorded fraction in which a species may be on one side only."""
 
 
-def verify_document(document: Mapping[str, Any], name: str, seals: tuple[str, str] | None = None, migrated_from: int | None = None) -> Verification:
+def verify_document(
+    document: Mapping[str, Any],
+    name: str,
+    seals: tuple[str, str] | None = None,
+    migrated_from: int | None = None,
+    known: dict[str, dict[str, Any]] | None = None,
+) -> Verification:
     """Return the verification of a document of the present form.
 
     Parameters
@@ -39,6 +45,8 @@ def verify_document(document: Mapping[str, Any], name: str, seals: tuple[str, st
         Content digest and digest as computed over the document before migration; over `document` itself unless given.
     migrated_from : int, optional
         Schema version that the record was written in, where it is an older one.
+    known : dict, optional
+        What was recomputed already in this run, by digest of the recipe; filled, so that records of one calculation share it.
 
     Returns
     -------
@@ -49,11 +57,20 @@ def verify_document(document: Mapping[str, Any], name: str, seals: tuple[str, st
     if migrated_from is not None:
         checks.append(Check("schema", "noted", f"written in version {migrated_from}, read through its migrations"))
     try:
-        again = recomputed(document["content"])
+        again = _shared(document["content"], known if known is not None else {})
     except PropkitError as error:
         checks.append(Check("recompute", "differs", f"the record cannot be recomputed: {error.message}"))
         return Verification(name, document["digest"], _label(document["content"]), tuple(checks), ())
     return judged(document, again, name, tuple(checks))
+
+
+def _shared(content: Mapping[str, Any], known: dict[str, dict[str, Any]]) -> dict[str, Any]:
+    key = digest_of(content["recipe"])
+    if key not in known:
+        known[key] = recomputed(content)
+    elif known[key]["object"] not in content["objects"]:
+        raise RecordError(f"its recipe makes a {known[key]['object']}, which the record does not hold")
+    return known[key]
 
 
 def recomputed(content: Mapping[str, Any]) -> dict[str, Any]:

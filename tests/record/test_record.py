@@ -340,3 +340,14 @@ def test_stored_samples_of_every_version_stay_readable(path):
 
 def test_every_version_has_a_sample():
     assert {path.stem for path in SAMPLES} == {f"record-v{version}" for version in range(1, schema.VERSION + 1)}
+
+
+def test_records_of_one_calculation_share_what_is_recomputed(record, perf):
+    known = {}
+    other = perf.record(title="Other")
+    assert record.verify(known=known).status == other.verify(known=known).status == "verified"
+    assert len(known) == 1
+    document = other.document
+    document["content"]["objects"]["performance"]["results"]["thrust"]["value"] *= 1.01
+    assert reseal(document).verify(known=known).exit_code == 1
+    assert other.verify(known=known).exit_code == 0
