@@ -72,6 +72,10 @@ class Host(anywidget.AnyWidget):
         self._structures: list[tuple[str, int]] = []
         self.on_msg(self._on_message)
 
+    def __repr__(self) -> str:
+        """Return a text without an address, so that an executed notebook repeats."""
+        return f"<{type(self).__name__}: live in a notebook with its kernel>"
+
     def show(self, figures: Sequence[Figure], heights: Sequence[int], *, still: bool = True) -> None:
         """Show figures: new numbers in the plots there are, or new plots where their structure differs."""
         structures = list(zip((structure(figure) for figure in figures), heights, strict=True))
