@@ -55,7 +55,8 @@ def stoichiometric_mixture_ratio(oxidizer: Mapping[str, float], fuel: Mapping[st
     Returns
     -------
     float
-        Mass of oxidizer over mass of fuel [1]; NaN where the pair cannot balance (a fuel and a fuel).
+        Mass of oxidizer over mass of fuel [1]; NaN where the pair cannot balance (a fuel and a fuel), or an element
+        has no valence in `VALENCES`.
 
     Notes
     -----
@@ -65,6 +66,8 @@ def stoichiometric_mixture_ratio(oxidizer: Mapping[str, float], fuel: Mapping[st
     ------
     Common practice, no source.
     """
+    if not {*fuel, *oxidizer} <= set(VALENCES):
+        return float("nan")
     rich, lean = net_valence(fuel), net_valence(oxidizer)
     return rich / -lean if rich > 0.0 and lean < 0.0 else float("nan")
 

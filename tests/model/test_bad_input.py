@@ -243,3 +243,22 @@ def test_a_gas_hotter_than_the_data_is_a_range_error():
     with pytest.raises(pk.RangeError) as caught:
         pk.Chamber(pk.PropellantCase("GOX", hot, mixture_ratio=1.0), pressure="1 MPa")
     assert caught.value.data["temperature"] > 0
+
+
+def _fuel_with(formula):
+    return pk.Propellant(
+        name="X", formula=formula, enthalpy="-24 kJ/mol", density="810 kg/m3", temperature="298.15 K", role="fuel"
+    )
+
+
+def test_an_element_without_species_data_is_refused_in_words():
+    with pytest.raises(pk.InputError, match="'Co'; it must be an element of the species data"):
+        pk.Chamber(pk.PropellantCase("LOX", _fuel_with("Co H2"), mixture_ratio=2), pressure="5 MPa")
+
+
+def test_an_element_without_an_oxidation_valence_has_no_stoichiometric_ratio():
+    case = pk.PropellantCase("LOX", _fuel_with("Zn C2 H6"), mixture_ratio=2)
+    with pytest.raises(pk.NotAvailableError):
+        _ = case.equivalence_ratio
+    with pytest.raises(pk.InputError, match="give mixture_ratio"):
+        pk.PropellantCase("LOX", _fuel_with("Zn C2 H6"), equivalence_ratio=1)
