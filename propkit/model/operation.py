@@ -14,7 +14,7 @@ from propkit import quantities, units
 from propkit.chain import alternatives as stage
 from propkit.chain import profile
 from propkit.constants import SEA_LEVEL_PRESSURE, STANDARD_GRAVITY
-from propkit.errors import InputError, Problem
+from propkit.errors import InputError, Problem, PropkitError
 from propkit.model import separation
 from propkit.model.alternatives import base_variant
 from propkit.model.answer import Answer
@@ -82,14 +82,21 @@ def throttle_map(
         if bad:
             hint = "Below it the chamber is not known to run: leave the lower pressures out, or state another minimum."
             raise InputError(Problem("pressure", f"{min(bad):g} Pa", f"at least the minimum_pressure of {lowest:g} Pa", hint))
+    streams = performance.chamber.case_or_none
+    joint = streams is None or len(streams.held.mixture.atoms) == 1
     sources = _sources(performance, mixture_ratio)
     if len(pressures) * len(sources) > MOST_CASES:
         raise InputError(Problem("pressure", f"{len(pressures) * len(sources)} cases", f"at most {MOST_CASES} cases with the mixture ratios"))
     base = base_variant(performance)
-    search = np.geomspace(0.02, 3.0, 36) * nominal
-    wanted = [replace(base, source=source, pressure=float(p)) for source in sources.values() for p in pressures]
-    wanted += [replace(base, pressure=float(p), ambient=0.0) for p in search]
-    found = stage.evaluate(wanted)
+    search = np.geomspace(0.02, 3.0, 36 if joint else 12) * nominal
+    if joint:
+        wanted = [replace(base, source=source, pressure=float(p)) for source in sources.values() for p in pressures]
+        wanted += [replace(base, pressure=float(p), ambient=0.0) for p in search]
+        found = stage.evaluate(wanted)
+    else:
+        own = next(iter(sources)) if mixture_ratio is None else math.nan
+        places = [(float(p), math.nan if ratio == own else ratio, base.ambient) for ratio in sources for p in pressures]
+        found = [_single(performance, *place) for place in (*places, *((float(p), math.nan, 0.0) for p in search))]
     grid, ladder = found[: len(pressures) * len(sources)], found[len(pressures) * len(sources) :]
     frame = _map_frame(performance, pressures, list(sources), grid)
     full = {name: _crossing(name, search, ladder) for name in criteria.CRITERIA}
@@ -118,6 +125,34 @@ def throttle_map(
         table=frame,
         drawn=(partial(_throttle_figure, frame, values.get("full_flow_pressure"), lowest),),
         shown=partial(_throttle_sections, frame),
+    )
+
+
+def _single(performance: Performance, pressure: float, mixture_ratio: float, ambient: float) -> stage.Delivered:
+    """Return one case of a gas that burns as several streams, as an object of its own on the same hardware."""
+    nozzle = performance.nozzle
+    changes: dict[str, Any] = {
+        "chamber.pressure": pressure,
+        "nozzle.throat_area": nozzle.si("throat_area"),
+        "nozzle.area_ratio": nozzle.si("area_ratio"),
+        "performance.ambient": ambient,
+        "performance.losses": dict(performance.resolved_losses.ratios) or None,
+        "performance.minimum_pressure": None,
+    }
+    if mixture_ratio == mixture_ratio:
+        changes["case.mixture_ratio"] = mixture_ratio
+    try:
+        other = performance.replace(changes)
+    except PropkitError as error:
+        return stage.Delivered(math.nan, math.nan, math.nan, error.message)
+    return stage.Delivered(
+        mass_flow=other.si("mass_flow"),
+        specific_impulse=other.si("specific_impulse"),
+        thrust=other.si("thrust"),
+        thrust_coefficient=other.thrust_coefficient,
+        exit_pressure=other.nozzle.exit.si("pressure"),
+        exit_mach=other.nozzle.exit.si("mach"),
+        stagnation_pressure=other.chamber.si("stagnation_pressure"),
     )
 
 

@@ -126,7 +126,10 @@ class Performance(Calculation):
         if "energy release" not in resolved.ratios:
             results["mass_flow"] = nozzle.si("mass_flow")
         results["ambient"] = ambient.pressure
-        absent = {}
+        absent = {
+            "losses": "no losses were given beside the c* efficiency and the contour",
+            "minimum_pressure": "no minimum chamber pressure was stated",
+        }
         case = nozzle.chamber.case_or_none
         if case is not None and case.has("mixture_ratio"):
             ratio = case.si("mixture_ratio")
