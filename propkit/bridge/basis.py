@@ -99,7 +99,7 @@ class Basis:
         known = {symbol for record in records for symbol, _ in record.atoms}
         missing = [symbol for symbol in elements if symbol not in known]
         if missing:
-            hint = f"Near: {', '.join(near_matches(missing[0], ATOMIC_WEIGHTS))}."
+            hint = "Neither basis has a species that holds it."
             raise InputError(
                 [Problem("elements", repr(symbol), "an element of the species data", hint) for symbol in missing]
             )

@@ -36,9 +36,11 @@ def working_of(
         row = _state_row(link, state, quantity, system)
     else:
         if name not in link.declared_results and name not in link.resolved():
-            raise InputError(
-                f"{result!r} was given, not computed: its working is the input itself ({link.typed_text(name) if name in link.inputs else 'default'})."
-            )
+            if name in link.inputs:
+                raise InputError(
+                    f"{result!r} was given, not computed: its working is the input itself ({link.typed_text(name)})."
+                )
+            raise InputError(f"{result!r} is an input left at its default, not computed: it has no working.")
         if not link.has(name):
             link.si(name)
         row = sheet.row_of(link, name, system)
