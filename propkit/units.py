@@ -194,7 +194,7 @@ def _registry() -> pint.UnitRegistry[Any]:
 
 def _scale(expression: str, unit: str) -> tuple[float, float] | None:
     """Return (factor, offset) from a unit expression to `unit`; None when it is not of that kind."""
-    registry = _registry()
+    registry: Any = _registry()
     actual = registry.get() if hasattr(registry, "get") else registry
     return _scale_in(actual, expression, unit)
 
