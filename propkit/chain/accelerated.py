@@ -165,7 +165,7 @@ class Accelerator:
         _, kernel = _kernel(self.basis, self.symbols)
         rest = reservoir.stagnation
         log_ratio = None if area_ratio is None else np.log(area_ratio)
-        log_exit = np.log(exit_pressure / rest.pressure) if log_ratio is None else log_ratio
+        log_exit = np.log(np.asarray(exit_pressure) / rest.pressure) if log_ratio is None else log_ratio
         guess, inside = fast_flow.exit_guess(self.predictor, reservoir.elements, reservoir.enthalpy, reservoir.log_pressure, log_exit)
         station, good = fast_flow.shifting_exit(kernel, reservoir.elements, reservoir.flow, guess, log_ratio)
         return _state(station, reservoir.enthalpy, reservoir.flow.entropy), good & inside
@@ -319,7 +319,8 @@ _COPIED = ("pressure", "temperature", "density", "velocity", "sound_speed", "mol
 
 
 def _copied(state: FlowState) -> FlowState:
-    return FlowState(*(np.array(getattr(state, name)) for name in _COPIED))
+    copies: Any = {name: np.array(getattr(state, name)) for name in _COPIED}
+    return FlowState(**copies)
 
 
 def _put(mine: Any, rows: Any, theirs: Any) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import OrderedDict
 from collections.abc import Callable
 from typing import Any, Final
 
@@ -74,50 +75,70 @@ def build(
         The predictor.
     """
     near = Coordinates.of(elements, enthalpy, log_pressure[None])
-    further = log_pressure[None] if log_exit is None else np.stack([log_pressure, log_exit])
-    far = near if log_exit is None else Coordinates.of(elements, enthalpy, further)
-    coarse = _coarse(table, kernel, near, far, further, to, log_exit is not None)
-    if coarse is None:
-        return None
-    first = _first(kernel, near, log_pressure, coarse, fineness)
+    first = _kept_first(table, kernel, near, log_pressure, fineness)
     if first is None or log_exit is None:
         return None if first is None else Predictor(near, first)
-    return _with_exit(kernel, Predictor(near, first), far, further, coarse[2], to, fineness)
+    further = np.stack([log_pressure, log_exit])
+    far = Coordinates.of(elements, enthalpy, further)
+    return _with_exit(kernel, Predictor(near, first), far, further, to, fineness)
 
 
 Start = Callable[[Array, Array, Array], Array]
 """(atoms, enthalpy, further logarithms) -> unknowns with ln of the pressure over that at rest, shape (element + 3, case)."""
 
+_KEPT: OrderedDict[tuple[Any, ...], Fit] = OrderedDict()
+_MOST_KEPT: Final = 16
 
-def _coarse(
-    table: SpeciesTable, kernel: Kernel, near: Coordinates, far: Coordinates, further: Array, to: str, with_exit: bool
-) -> tuple[Start, ...] | None:
-    """Return quadratic first guesses of chamber, throat and exit from a few designs solved by the damped iteration."""
-    at = nodes(SEEDS_LEAST + int(1.4 * len(terms((3,) * far.count))), far.count)
-    b, h, logs = far.back(at, further)
+
+def _kept_first(table: SpeciesTable, kernel: Kernel, near: Coordinates, log_pressure: Array, fineness: float) -> Fit | None:
+    """Return the fit of chamber and throat, that of an earlier study where the species and the box are the same to the bit."""
+    box = (near.centre, near.directions, near.size, near.low, near.high, near.used, log_pressure[:1])
+    key = (table.names, table.coefficients_high.tobytes(), fineness, *(part.tobytes() for part in box))
+    found = _KEPT.get(key)
+    if found is None:
+        coarse = _coarse(table, kernel, near, log_pressure)
+        found = None if coarse is None else _first(kernel, near, log_pressure, coarse, fineness)
+        if found is not None:
+            _KEPT[key] = found
+            while len(_KEPT) > _MOST_KEPT:
+                _KEPT.popitem(last=False)
+    return found
+
+
+def _few(box: Coordinates) -> Array:
+    """Return the nodes of a coarse solution, enough for a cubic."""
+    return nodes(SEEDS_LEAST + int(1.4 * len(terms((3,) * box.count))), box.count)
+
+
+def _coarse(table: SpeciesTable, kernel: Kernel, near: Coordinates, log_pressure: Array) -> tuple[Start, ...] | None:
+    """Return cubic first guesses of chamber and throat from a few designs solved by the damped iteration."""
+    at = _few(near)
+    b, h, logs = near.back(at, log_pressure[None])
     pressure = kernel.reference_pressure * np.exp(logs[0])
     rest = equilibrium.solve(table, b.T, pressure=pressure, enthalpy=h)
-    isentrope = expansion.shifting(table, b.T, rest)
-    throat = expansion.throat(isentrope)
-    states: list[Any] = [rest, throat.equilibrium]
+    throat = expansion.throat(expansion.shifting(table, b.T, rest))
+    assert throat.equilibrium is not None
     fine = (rest.status == 0) & (throat.status == 0)
-    if with_exit:
-        if to == "area_ratio":
-            flow = expansion.at_area_ratio(isentrope, throat.mass_flux, np.exp(logs[1]), throat)
-        else:
-            flow = expansion.at_pressure(isentrope, pressure * np.exp(logs[1]), throat)
-        states.append(flow.equilibrium)
-        fine &= flow.status == 0
     found: list[Start] = []
-    for number, state in enumerate(states):
-        box, rows = (near, logs[:1]) if number < 2 else (far, logs)
-        at, _ = box(b, h, rows)
+    for state in (rest, throat.equilibrium):
         values = np.vstack([state.element_potentials.T, np.log(state.gas_moles), np.log(state.temperature), np.log(state.pressure / pressure)])
-        fit = Fit.of(at[:, fine], values[:, fine], (3,) * box.count)
+        fit = Fit.of(at[:, fine], values[:, fine], (3,) * near.count)
         if fit is None:
             return None
-        found.append(_start(box, fit))
+        found.append(_start(near, fit))
     return tuple(found)
+
+
+def _coarse_exit(kernel: Kernel, predictor: Predictor, far: Coordinates, further: Array, to: str) -> Start | None:
+    """Return a cubic first guess of the exit from a few designs followed from the throat."""
+    at = _few(far)
+    b, h, logs = far.back(at, further)
+    guess, _ = guesses(predictor, b, h, logs[0])
+    point = _marched(kernel, b, as_guessed(kernel, b, h, guess), logs, to)
+    values = np.vstack([point.potentials, point.log_moles, point.log_temperature, point.log_pressure - logs[0]])
+    fine = np.isfinite(values).all(axis=0)
+    fit = Fit.of(at[:, fine], values[:, fine], (3,) * far.count)
+    return None if fit is None else _start(far, fit)
 
 
 def _start(box: Coordinates, fit: Fit) -> Start:
@@ -174,9 +195,12 @@ def _point(table: Array, elements: int, log_pressure: Array) -> Point:
 
 
 def _with_exit(
-    kernel: Kernel, predictor: Predictor, far: Coordinates, further: Array, coarse: Start, to: str, fineness: float
+    kernel: Kernel, predictor: Predictor, far: Coordinates, further: Array, to: str, fineness: float
 ) -> Predictor | None:
     """Return the predictor with the fit of the exit."""
+    coarse = _coarse_exit(kernel, predictor, far, further, to)
+    if coarse is None:
+        return None
     pieces, degrees = _shape(far, FAR, fineness)
     at = nodes(int(NODES_PER_TERM * len(terms(degrees))) + 4, far.count, pieces)
     b, h, logs = far.back(at, further)

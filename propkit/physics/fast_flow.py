@@ -16,7 +16,7 @@ import numpy.typing as npt
 
 from propkit.constants import GAS_CONSTANT
 from propkit.physics.arrays import Array
-from propkit.physics.equilibrium_newton import LOWEST_TEMPERATURE
+from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE
 from propkit.physics.fast_newton import PATIENT, STEPS, AtFlux, Kernel, Point, Solved, Sonic, solve
 from propkit.physics.fast_predictor import Coordinates, Fit
 
@@ -136,7 +136,8 @@ def _station(
 
 
 def _dot(a: Array, b: Array) -> Array:
-    return np.einsum("ij,ij->j", a, b)
+    found: Array = np.einsum("ij,ij->j", a, b)
+    return found
 
 
 def chamber_and_throat(

@@ -12,7 +12,7 @@ import numpy.typing as npt
 from propkit.constants import GAS_CONSTANT
 from propkit.physics import gas_dynamics
 from propkit.physics.arrays import Array
-from propkit.physics.equilibrium_newton import LOWEST_TEMPERATURE
+from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE
 from propkit.physics.thermodynamics import SpeciesTable
 
 _STEPS: Final = 12

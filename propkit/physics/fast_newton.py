@@ -30,7 +30,7 @@ import numpy.typing as npt
 
 from propkit.constants import GAS_CONSTANT
 from propkit.physics.arrays import Array
-from propkit.physics.equilibrium_newton import Integers
+from propkit.physics.equilibrium_terms import Integers
 from propkit.physics.thermodynamics import SpeciesTable
 
 RESTED: Final = 2e-9
@@ -124,7 +124,7 @@ class Kernel:
     @property
     def elements(self) -> int:
         """Number of elements."""
-        return self.composition.shape[1]
+        return int(self.composition.shape[1])
 
 
 @dataclass(slots=True, eq=False)
@@ -375,7 +375,7 @@ def _polynomial(kernel: Kernel, coefficients: Array, temperature: Array, interva
             if number != interval:
                 which = np.flatnonzero(intervals == number)
                 coefficients[:, which] = kernel.sum_rows[number, rows:] @ n[:, which]
-    found = coefficients[4] * temperature
+    found: Array = coefficients[4] * temperature
     for place in (3, 2, 1):
         found += coefficients[place]
         found *= temperature
@@ -384,7 +384,7 @@ def _polynomial(kernel: Kernel, coefficients: Array, temperature: Array, interva
 
 
 def _dot(a: Array, b: Array) -> Array:
-    found = a[0] * b[0]
+    found: Array = a[0] * b[0]
     for row in range(1, len(a)):
         found += a[row] * b[row]
     return found

@@ -18,7 +18,7 @@ import numpy as np
 import numpy.typing as npt
 
 from propkit.physics.arrays import Array
-from propkit.physics.equilibrium_newton import Integers
+from propkit.physics.equilibrium_terms import Integers
 
 _PRIMES: Final = (2, 3, 5, 7, 11, 13, 17, 19, 23, 29)
 _SAME: Final = 1e-9

@@ -99,7 +99,7 @@ def map_of_study(
 ) -> Any:
     """Return a Bokeh map of a result over two paths of a grid (see `StudyResult.map`)."""
     try:
-        from bokeh.models import ColumnDataSource, HoverTool, Range1d
+        from bokeh.models import ColumnDataSource, HoverTool
         from bokeh.plotting import figure as bokeh_figure
     except ImportError as error:
         raise MissingExtraError("bokeh", "notebook", "a map") from error
@@ -116,7 +116,7 @@ def map_of_study(
     title = f"{shown.label[:1].upper()}{shown.label[1:]}{f' [{unit}]' if unit else ''}"
     if grid.held:
         title += f"; {', '.join(f'{path} {value:.5g}' if isinstance(value, float) else f'{path} {value}' for path, value in grid.held.items())}"
-    ranges: dict[str, Any] = {"x_range": Range1d(float(xs[0]), float(xs[-1])), "y_range": Range1d(float(ys[0]), float(ys[-1]))}
+    ranges: dict[str, Any] = {"x_range": (float(xs[0]), float(xs[-1])), "y_range": (float(ys[0]), float(ys[-1]))}
     made: Any = bokeh_figure(height=_HEIGHT, tools=TOOLS, toolbar_location="above", sizing_mode="stretch_width", title=title, name="study-map", **ranges)
     plot = Plot(made, {"x": [float(xs[0]), float(xs[-1])], "y": [float(ys[0]), float(ys[-1])]})
     _frame(plot, Figure("study-map", title, title, axes[0], axes[1]))
@@ -199,7 +199,7 @@ def _band(plot: Plot, xs: Array, ys: Array, room: Array, label: str, place: int)
     """Shade where a limit is broken, up to the curve on which it is just met."""
     if (room >= 0.0).all():
         return
-    from bokeh.models import Legend, LegendItem
+    from bokeh.models.annotations import Legend, LegendItem
 
     hatch = ("right_diagonal_line", "left_diagonal_line", "cross", "dot")[place % 4]
     role = f"series-{1 + place}"

@@ -8,6 +8,7 @@ rebuilt object by object: slower, the same numbers.
 from __future__ import annotations
 
 import math
+from collections import OrderedDict
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any
@@ -272,12 +273,33 @@ def _all_given(target: Calculation, changed: Mapping[str, float]) -> bool:
     return given.issuperset(changed)
 
 
-def batch_results(target: Calculation) -> dict[str, float]:
-    """Return the results of the batch form of an object at its own inputs, by whole path; empty where it has none.
+_COVERED: OrderedDict[tuple[Any, ...], frozenset[str]] = OrderedDict()
+_MOST_COVERED = 64
 
-    They are compared with the object's own numbers first: where any differs, the batch form does not cover this recipe.
+
+def batch_names(target: Calculation) -> frozenset[str]:
+    """Return the whole paths of the results that the batch form of an object has; empty where it has none.
+
+    They are compared with the object's own numbers first: where any differs, the batch form does not cover this recipe. The
+    comparison is made once for each recipe: objects that differ in numbers only share it.
     """
-    return target.lazily("batch_results", lambda: _checked_batch(target))
+    key = tuple((type(link).__qualname__, tuple((name, _told(link, name)) for name in link.inputs)) for link in target.chain())
+    found = _COVERED.get(key)
+    if found is None:
+        found = _COVERED[key] = frozenset(_checked_batch(target))
+        while len(_COVERED) > _MOST_COVERED:
+            _COVERED.popitem(last=False)
+    return found
+
+
+def _told(link: Calculation, name: str) -> str:
+    """Return what of an input makes a recipe another one: not the value of a number."""
+    value, entry = link._values[name], link.declared_inputs[name]
+    if isinstance(value, Calculation):
+        return "upstream"
+    if isinstance(entry, QuantityInput | NumberInput) and isinstance(value, int | float):
+        return "infinite" if math.isinf(value) else "a number"
+    return repr(link.inputs[name])
 
 
 _AGREEMENT = 1e-9

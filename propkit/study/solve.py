@@ -474,7 +474,8 @@ def _local(values: Any, room: Any, start: Array, sign: float, scale: float, coun
         finite = np.isfinite(np.concatenate([bounds[:, 0], bounds[:, 1]]))
 
         def left(share: Array) -> Array:
-            return np.nan_to_num(np.asarray(room(values(np.clip(share, 0.0, 1.0)[None, :]))[0])[finite], nan=-1e3)
+            found: Array = np.asarray(room(values(np.clip(share, 0.0, 1.0)[None, :]))[0])[finite]
+            return np.asarray(np.nan_to_num(found, nan=-1e3))
 
         def left_slope(share: Array) -> Array:
             return _slopes(lambda points: np.asarray(room(values(points)))[:, finite], np.clip(share, 0.0, 1.0))

@@ -12,12 +12,12 @@ from propkit.errors import InputError, Problem, PropkitError
 from propkit.model import paths
 from propkit.model.base import Calculation
 from propkit.model.declare import as_text
-from propkit.study.evaluation import ChainFunction, batch_results, result_name
+from propkit.study.evaluation import ChainFunction, batch_names, result_name
 from propkit.study.executors import Failed, run_blocks
 from propkit.study.joint import check_seed
 from propkit.study.sweep_plan import Plan, read_plan, templates, unit_of, units_of
 from propkit.study.sweep_result import StudyResult
-from propkit.study.sweep_work import Blocks, Part, Work, value_or_nan
+from propkit.study.sweep_work import Blocks, Part, Work
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -262,13 +262,13 @@ def _part(
     """Return how one group of designs is computed: as a batch where that is known to give the object's own numbers."""
     if template is None:
         return Part(None, target, chosen, names if names is not None else _every_result(target, plan))
-    known = batch_results(template)
+    known = batch_names(template)
     own = f"{template.kind}."
     varied = {column.path for column in plan.columns}
     batched = tuple(path.removeprefix(own) for path in _in_order(template, known) if path not in varied)
     listed = _every_result(template, plan)
     wanted = names if names is not None else (batched or listed)
-    available = {path.removeprefix(own) for path in known} | set(known)
+    available = {path.removeprefix(own) for path in known} | known
     if not known or (names is not None and not available.issuperset(name for name in names if name in listed)):
         return Part(None, target, chosen, wanted)
     results = tuple(name for name in wanted if name in available)
@@ -276,7 +276,7 @@ def _part(
     return Part(ChainFunction(template, paths_varied, results), target, chosen, results)
 
 
-def _in_order(template: Calculation, known: Mapping[str, float]) -> list[str]:
+def _in_order(template: Calculation, known: frozenset[str]) -> list[str]:
     """Return the paths of results to be listed: the object's own first, then from the first object of the chain on."""
     own = template.chain()[-1]
     return [
@@ -295,10 +295,17 @@ def _every_result(template: Calculation, plan: Plan) -> tuple[str, ...]:
     for link in (own, *template.chain()[:-1]):
         for name in (*link.declared_results, *link.resolved(), *link.state_paths()):
             path = f"{link.kind}.{name}"
-            if path in varied or not np.isfinite(value_or_nan(template, path)):
+            if path in varied or not _is_number(link, name):
                 continue
             found.append(name if link is own else path)
     return tuple(dict.fromkeys(found))
+
+
+def _is_number(link: Calculation, name: str) -> bool:
+    try:
+        return bool(np.isfinite(float(link.si_of(name))))
+    except (PropkitError, AttributeError, TypeError, ValueError):
+        return False
 
 
 def _hypercube(target: Calculation, ranges: Mapping[str, Sequence[Any]], count: int, seed: int) -> dict[str, Any] | Any:

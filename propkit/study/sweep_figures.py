@@ -88,7 +88,7 @@ def _kinds(result: Any, split: Any, rows: npt.NDArray[np.intp], system: UnitSyst
 
 def headline(result: Any) -> str:
     """Return the result that is shown where none is named: the first of the object's headline."""
-    return next((name for name in result.plan.target.headline if name in result.results), result.results[0])
+    return str(next((name for name in result.plan.target.headline if name in result.results), result.results[0]))
 
 
 def _any_path(result: Any, name: str) -> str:
