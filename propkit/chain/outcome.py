@@ -9,6 +9,8 @@ import numpy as np
 from propkit.errors import ConvergenceError, RangeError
 
 CONVERGED, NOT_CONVERGED, OUT_OF_RANGE = 0, 1, 2
+COLD = 250.0
+"""Temperature [K] below which a search that ended outside the data ended at their cold end."""
 
 
 def raise_for(state: Any, what: str, index: int = 0) -> None:
@@ -41,12 +43,23 @@ def raise_for(state: Any, what: str, index: int = 0) -> None:
     reached = ", ".join(f"{name} {value:.6g}" for name, value in carried.items() if np.isfinite(value))
     if status == OUT_OF_RANGE:
         raise RangeError(
-            f"The {what} has no solution inside the range of the species data (state reached: {reached}).", **carried
+            f"The {what} has no solution inside the range of the species data (state reached: {reached}). {_hint(carried)}",
+            **carried,
         )
     raise ConvergenceError(
         f"The {what} did not converge (state reached: {reached}). Nothing is returned rather than a doubtful number.",
         **carried,
     )
+
+
+def _hint(state: dict[str, float]) -> str:
+    """Return what to look at, by the end of the range that was reached."""
+    if state.get("temperature", COLD) < COLD:
+        return (
+            "The enthalpy is lower than gases can hold there: check mixture ratio and propellant enthalpies; where "
+            "products condense, condensed=True may have a solution."
+        )
+    return "The enthalpy is higher than the data reach: check mixture ratio and propellant enthalpies."
 
 
 def _scalar(values: Any, index: int) -> float:

@@ -48,6 +48,8 @@ DOWNWARD = {
 """Method -> "module:function": the only references from the model to layers below it."""
 
 RECORD_MIME = "application/vnd.propkit.record+json"
+RECORDED = ("case", "chamber", "nozzle", "performance")
+"""Kinds of objects whose display carries their record, so that an executed notebook is itself verifiable."""
 
 T = TypeVar("T")
 
@@ -440,7 +442,7 @@ class Calculation:
 def display_bundle(calculation: Calculation, include: Any, exclude: Any) -> dict[str, Any]:
     """Return the sheet in several media, and the record where the object has one; a failing part is said, not hidden."""
     bundle: dict[str, Any] = dict(calculation.report()._repr_mimebundle_(include, exclude))
-    if calculation.upstream_input == "nozzle":
+    if calculation.kind in RECORDED:
         bundle.update(reach("record_bundle")(calculation))
     return bundle
 
