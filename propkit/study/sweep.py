@@ -12,7 +12,8 @@ from propkit.errors import InputError, Problem, PropkitError
 from propkit.model import paths
 from propkit.model.base import Calculation
 from propkit.model.declare import as_text
-from propkit.study.evaluation import ChainFunction, batch_names, result_name
+from propkit.study.batch import batch_names
+from propkit.study.evaluation import ChainFunction, result_name
 from propkit.study.executors import Failed, run_blocks
 from propkit.study.joint import check_seed
 from propkit.study.sweep_plan import Plan, read_plan, templates, unit_of, units_of

@@ -107,10 +107,10 @@ def test_stored_temperature_and_assigned_enthalpy():
 
 
 def test_recipes_without_a_batch_form_are_rebuilt_one_by_one(monkeypatch):
-    from propkit.study import evaluation
+    from propkit.study import batch
 
     batched = function_of(GAS, ["chamber.pressure"], ["thrust"])
-    monkeypatch.setattr(evaluation, "_BATCHED", ())
+    monkeypatch.setattr(batch, "BATCHED", ())
     slow = ChainFunction(GAS, batched.variables, batched.results)
     assert not slow.batched
     drawn = {"chamber.pressure": np.array([6e6, 7e6, 1e12])}
