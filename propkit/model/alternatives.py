@@ -187,6 +187,10 @@ def _divergence(performance: Performance, base: Variant) -> Iterator[Asked]:
         yield Asked("one-dimensional", contour.text, replace(base, divergence_factor=factor))
 
 
+_NO_METALS = {"C", "H", "N", "O"}
+"""Elements whose liquids and solids (graphite, water) the saturation warnings watch."""
+
+
 def _substances(performance: Performance, base: Variant) -> Iterator[Asked]:
     assert not isinstance(base.source, Gas)
     from propkit.bridge.basis import BASES
@@ -201,7 +205,10 @@ def _substances(performance: Performance, base: Variant) -> Iterator[Asked]:
     if base.source.condensed:
         yield Asked("condensation", "gases only", replace(base, source=replace(base.source, condensed=False)))
     else:
-        yield Asked("no-condensation", "liquids and solids may form", replace(base, source=replace(base.source, condensed=True)))
+        # Below saturation at every station the gas is the equilibrium with liquids and solids too: no second solution is needed.
+        dry = set(base.source.symbols) <= _NO_METALS and not any(doubt.code == "supersaturation" for doubt in performance.warnings)
+        source = base.source if dry else replace(base.source, condensed=True)
+        yield Asked("no-condensation", "liquids and solids may form", replace(base, source=source))
 
 
 def _enthalpies(performance: Performance, base: Variant) -> Iterator[Asked]:
