@@ -211,7 +211,8 @@ def _band(plot: Plot, xs: Array, ys: Array, room: Array, label: str, place: int)
     shade = drawn.fill_renderer
     made = plot.figure
     if not made.legend:
-        legend: Any = Legend(items=[], orientation="horizontal", location="top_left", padding=2, margin=0)
+        look: dict[str, Any] = {"orientation": "horizontal", "location": "top_left", "padding": 2, "margin": 0}
+        legend: Any = Legend(items=[], **look)
         legend.background_fill_color = legend.border_line_color = None
         legend.label_text_font, legend.label_text_font_size = FONT, "12px"
         plot.paint(legend, "ink", "label_text_color")
