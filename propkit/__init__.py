@@ -89,9 +89,9 @@ if TYPE_CHECKING:
     from propkit.model.propellant import propellants as propellants
     from propkit.model.propellant_case import PropellantCase as PropellantCase
     from propkit.model.state import State as State
-    from propkit.record import Record as Record
     from propkit.reconcile.firing import HotFire as HotFire
     from propkit.reconcile.reconciliation import Reconciliation as Reconciliation
+    from propkit.record import Record as Record
     from propkit.study.distributions import Empirical as Empirical
     from propkit.study.distributions import Normal as Normal
     from propkit.study.distributions import Triangular as Triangular

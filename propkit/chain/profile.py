@@ -56,7 +56,7 @@ def _repeated(part: Any, cases: Array) -> Any:
     if isinstance(part, np.ndarray):
         return part[cases]
     if isinstance(part, Parallel):
-        return part.take(cases)
+        return part.take(cases.astype(np.intp))
     if is_dataclass(part) and not isinstance(part, type):
         changed = {field.name: _repeated(getattr(part, field.name), cases) for field in fields(part) if field.name != "table"}
         return replace(part, **changed)

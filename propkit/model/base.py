@@ -262,7 +262,7 @@ class Calculation:
     def si_of(self, name: str) -> float:
         """Return an input, a result or a dotted name such as ``exit.pressure`` as an SI float."""
         state, _, quantity = name.partition(".")
-        return getattr(self, state).si(quantity) if quantity else self.si(name)  # type: ignore[no-any-return]
+        return getattr(self, state).si(quantity) if quantity else self.si(name)
 
     def given_or_result(self, name: str) -> Any:
         """Return what was given for an input in SI, else the result; None where this recipe has neither."""
