@@ -18,7 +18,7 @@ from propkit.study.executors import Failed, run_blocks
 from propkit.study.joint import check_seed
 from propkit.study.sweep_plan import Plan, read_plan, templates, unit_of, units_of
 from propkit.study.sweep_result import StudyResult
-from propkit.study.sweep_work import Blocks, Part, Work
+from propkit.study.sweep_work import ENOUGH, Blocks, Part, Work
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -231,6 +231,13 @@ class Study:
         notes = list(how.notes)
         if self.one_by_one:
             notes.append(f"{self.one_by_one} designs have no batch form and were rebuilt one by one: slower, the same numbers")
+        damped = sum(
+            len(rows)
+            for part, (_, rows) in zip(work.parts, blocks.groups, strict=True)
+            if part.function is not None and part.function.quick is None and len(rows) >= ENOUGH and part.burns
+        )
+        if damped:
+            notes.append(f"the quick engine does not serve {damped} designs (their recipe, or too wide a box): the damped solver took them")
         if counts[0]:
             notes.append(f"the quick engine solved {counts[0]} designs and left {counts[1]} of them to the damped solver")
         return StudyResult(self, columns, done, reasons, tuple(notes), how.interrupted, how.seconds)

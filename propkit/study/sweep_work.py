@@ -38,6 +38,11 @@ class Part:
     chosen: Mapping[str, Any]
     results: tuple[str, ...]
 
+    @property
+    def burns(self) -> bool:
+        """Whether the chain starts with propellants."""
+        return self.target.chain()[0].kind == "case"
+
     def __call__(self, inputs: Mapping[str, Array], count: int) -> Explained:
         """Return results by name, NaN where a design has none, and why."""
         if self.function is not None:
