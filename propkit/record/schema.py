@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Callable, Mapping
+import sys
+from collections.abc import Callable, Iterator, Mapping
+from contextlib import contextmanager
 from functools import lru_cache
 from importlib import resources
 from typing import Any
@@ -30,9 +32,27 @@ def schema() -> dict[str, Any]:
 
 @lru_cache(maxsize=1)
 def _validator() -> Any:
-    from jsonschema import Draft202012Validator
+    with _without_grammars():
+        from jsonschema import Draft202012Validator
 
     return Draft202012Validator(_inlined(schema(), schema()["$defs"]))
+
+
+@contextmanager
+def _without_grammars() -> Iterator[None]:
+    """Keep jsonschema's first import from building its grammars of internationalized addresses, which takes seconds.
+
+    They serve a format check that no propkit schema asks for. What another library imports itself is left as it is.
+    """
+    name = "rfc3987_syntax"
+    hidden = name not in sys.modules
+    if hidden:
+        sys.modules[name] = None  # type: ignore[assignment]
+    try:
+        yield
+    finally:
+        if hidden:
+            del sys.modules[name]
 
 
 def _inlined(part: Any, definitions: Mapping[str, Any]) -> Any:
