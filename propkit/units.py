@@ -61,7 +61,7 @@ _SUPERSCRIPTS = str.maketrans(
 _LONGEST = 80
 
 
-def to_si(value: object, unit: str, name: str = "value") -> float:
+def to_si(value: object, unit: str, name: str = "value", *, difference: bool = False) -> float:
     """Return `value` as a float in the SI unit `unit`.
 
     Parameters
@@ -72,6 +72,8 @@ def to_si(value: object, unit: str, name: str = "value") -> float:
         The SI unit asked for, in pint's spelling; ``""`` for a pure number.
     name : str
         Name of the input for the error text.
+    difference : bool
+        Whether a difference of temperatures is meant where `unit` is the kelvin.
 
     Returns
     -------
@@ -87,7 +89,7 @@ def to_si(value: object, unit: str, name: str = "value") -> float:
         return parse(value, unit, name)
     magnitude = getattr(value, "magnitude", None)
     if magnitude is not None and hasattr(value, "units"):
-        return _from_quantity(value, unit, name)
+        return _from_quantity(value, unit, name, difference)
     if isinstance(value, bool) or not isinstance(value, (numbers.Real, decimal.Decimal)):
         item = getattr(value, "item", None)
         if getattr(value, "shape", None) == () and item is not None and not isinstance(item(), bool):
@@ -214,7 +216,7 @@ def _scale_in(registry: Any, expression: str, unit: str) -> tuple[float, float] 
     return (float(one - zero), float(zero)) if zero else (float(one), 0.0)
 
 
-def _from_quantity(value: Any, unit: str, name: str) -> float:
+def _from_quantity(value: Any, unit: str, name: str, difference: bool) -> float:
     shown = _shorten(f"{value}")
     try:
         magnitude = value.to(unit or "dimensionless").magnitude
@@ -224,7 +226,7 @@ def _from_quantity(value: Any, unit: str, name: str) -> float:
         ) from error
     if getattr(magnitude, "shape", ()) not in ((), None):
         raise _wrong(name, shown, "one value", "A study takes lists of values: pk.Study(...).")
-    if unit == "K" and "delta_" in str(value.units):
+    if unit == "K" and not difference and "delta_" in str(value.units):
         raise _wrong(
             name, shown, f"{_kind_text(unit)}, for example {_example(unit)}", "That is a temperature difference."
         )

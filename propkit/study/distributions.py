@@ -329,8 +329,8 @@ def spread(value: object, nominal: float, unit: str, name: str = "value") -> flo
             )
         found = percent * abs(nominal)
     else:
-        found = units.to_si(value, unit, name)
-        if unit == "K" and units.to_si(_nothing_of(value), unit, name) != 0.0:
+        found = units.to_si(value, unit, name, difference=True)
+        if unit == "K" and units.to_si(_nothing_of(value), unit, name, difference=True) != 0.0:
             raise InputError(
                 Problem(
                     name,
