@@ -74,6 +74,7 @@ const lineOf = (model) => {
   return lines.get(model);
 };
 
+const NARROW = 760;
 let unique = 0;
 
 // One control: built once for its path and style, then only brought up to date.
@@ -158,30 +159,30 @@ class ControlView {
     const markup = `<span class="pk-mark pk-${spec.kind}" aria-hidden="true"></span>`;
     if (this.member) {
       setMarkup(this.label, `${markup}<span class="pk-hidden">${escapeText(spec.group.label)}</span>`);
-      this.label.setAttribute("for", this.member.id);
+      setAttribute(this.label, "for", this.member.id);
       setOptions(this.member, spec.group.members, spec.group.member);
-      this.field.setAttribute("aria-label", spec.label);
+      setAttribute(this.field, "aria-label", spec.label);
     } else {
       setMarkup(this.label, `${markup}${escapeText(spec.label)}${symbol}`);
     }
-    this.doc.textContent = `${spec.doc} ${spec.kind === "given" ? "Given." : "Default."}`;
-    this.element.title = spec.doc;
+    setText(this.doc, `${spec.doc} ${spec.kind === "given" ? "Given." : "Default."}`);
+    setAttribute(this.element, "title", spec.doc);
     if (spec.style === "choice") setOptions(this.field, spec.choices, spec.choice);
     else {
-      this.field.placeholder = spec.placeholder;
-      this.field.readOnly = spec.style === "fixed";
+      setAttribute(this.field, "placeholder", spec.placeholder);
+      if (this.field.readOnly !== (spec.style === "fixed")) this.field.readOnly = spec.style === "fixed";
       const editing = this.touched && this.field === this.field.getRootNode().activeElement;
       if (!editing && this.field.value !== spec.text) this.field.value = spec.text;
     }
     if (this.slider && spec.slider) this.updateSlider(spec);
     const label = spec.reset;
     this.resetButton.disabled = !label;
-    this.resetButton.title = label || "Nothing to reset";
-    this.resetButton.setAttribute("aria-label", `${spec.label}: ${label || "nothing to reset"}`);
-    this.note.textContent = spec.note;
-    if (this.error.textContent !== spec.error) this.error.textContent = spec.error;
+    setAttribute(this.resetButton, "title", label || "Nothing to reset");
+    setAttribute(this.resetButton, "aria-label", `${spec.label}: ${label || "nothing to reset"}`);
+    setText(this.note, spec.note);
+    setText(this.error, spec.error);
     this.element.classList.toggle("pk-refused", Boolean(spec.error));
-    this.field.setAttribute("aria-invalid", spec.error ? "true" : "false");
+    setAttribute(this.field, "aria-invalid", spec.error ? "true" : "false");
   }
 
   updateSlider(spec) {
@@ -190,8 +191,8 @@ class ControlView {
       if (Number(this.slider.getAttribute(name)) !== value) this.slider.setAttribute(name, value);
     }
     if (!this.line.moves(this.path)) this.slider.value = at;
-    this.slider.setAttribute("aria-label", spec.label);
-    this.slider.setAttribute("aria-valuetext", spec.text);
+    setAttribute(this.slider, "aria-label", spec.label);
+    setAttribute(this.slider, "aria-valuetext", spec.text);
   }
 
   // when the kernel has answered everything, the slider stands where the kernel says
@@ -201,11 +202,38 @@ class ControlView {
   }
 }
 
+// The page is touched only where something differs: every needless write costs a new layout.
+function setText(element, text) {
+  if (element.textContent !== text) element.textContent = text;
+}
+
+function setAttribute(element, name, value) {
+  if (element.getAttribute(name) !== value) element.setAttribute(name, value);
+}
+
+// Markup of the same tags as before changes only the texts that differ: numbers move, the page is not built anew.
+const TAGS = /<[^>]*>/g;
+const ENTITIES = { "&amp;": "&", "&lt;": "<", "&gt;": ">", "&quot;": '"', "&nbsp;": "\u00a0" };
+
 function setMarkup(element, markup) {
-  if (element.__markup !== markup) {
-    element.__markup = markup;
-    element.innerHTML = markup;
+  const before = element.__markup;
+  if (before === markup) return;
+  element.__markup = markup;
+  if (before === undefined || !changeTexts(element, before, markup)) element.innerHTML = markup;
+}
+
+function changeTexts(element, before, markup) {
+  if (String(before.match(TAGS)) !== String(markup.match(TAGS))) return false;
+  const [old, now] = [before.split(TAGS), markup.split(TAGS)];
+  if (old.some((text, n) => Boolean(text) !== Boolean(now[n]))) return false;
+  const walker = document.createTreeWalker(element, NodeFilter.SHOW_TEXT);
+  for (let n = 0; n < now.length; n++) {
+    if (!now[n]) continue;
+    const node = walker.nextNode();
+    if (!node) return false;
+    if (old[n] !== now[n]) node.data = now[n].replace(/&(amp|lt|gt|quot|nbsp);/g, (entity) => ENTITIES[entity]);
   }
+  return true;
 }
 
 function escapeText(text) {
@@ -295,6 +323,7 @@ class PanelView {
     this.update();
     this.stopFigures = hostFigures(model, this.figures);
     this.hideTwin(el);
+    this.watchWidth();
   }
 
   ask(what) {
@@ -370,14 +399,14 @@ class PanelView {
     const shown = this.model.get("shown");
     if (!shown?.sets) return;
     const compared = shown.pins.names.length > 0;
-    this.kind.textContent = shown.title;
-    this.name.textContent = shown.name;
-    this.root.setAttribute("aria-label", `${shown.title}: ${shown.name}`);
+    setText(this.kind, shown.title);
+    setText(this.name, shown.name);
+    setAttribute(this.root, "aria-label", `${shown.title}: ${shown.name}`);
     this.root.classList.toggle("pk-stale", !shown.current);
     this.undo.disabled = !shown.undo;
     this.redo.disabled = !shown.redo;
     this.unpin.hidden = !compared;
-    for (const units of ["SI", "US"]) this[`units${units}`].setAttribute("aria-pressed", units === shown.units ? "true" : "false");
+    for (const units of ["SI", "US"]) setAttribute(this[`units${units}`], "aria-pressed", units === shown.units ? "true" : "false");
     this.updateSets(shown.sets);
     setMarkup(this.headline, headlineMarkup(shown.headline, compared));
     setMarkup(this.results, tableMarkup(shown.results, compared, shown.pins.baseline));
@@ -386,7 +415,7 @@ class PanelView {
     this.updateFold("pins", compared ? pinsMarkup(shown.pins) : "");
     this.updateFold("stations", shown.stations ? stationsMarkup(shown.stations) : "");
     this.updateAbove(shown.above, compared, shown.pins.baseline);
-    this.code.textContent = shown.code;
+    setText(this.code, shown.code);
     this.state();
   }
 
@@ -395,7 +424,7 @@ class PanelView {
     if (!this.line.open) this.controls.forEach((view) => view.settle());
     const shown = this.model.get("shown");
     const words = this.line.slow ? "Waiting for the kernel …" : (shown.status ?? "");
-    if (this.status.textContent !== words) this.status.textContent = words;
+    setText(this.status, words);
     this.root.classList.toggle("pk-waiting", Boolean(this.line.slow));
   }
 
@@ -449,9 +478,9 @@ class PanelView {
       this.tabs.__key = key;
       this.tabs.replaceChildren(...figures.titles.map((title, at) => h("button", { type: "button", class: "pk-tab", onclick: () => this.ask({ do: "figure", at }) }, title)));
     }
-    [...this.tabs.children].forEach((tab, at) => tab.setAttribute("aria-pressed", at === figures.at ? "true" : "false"));
+    [...this.tabs.children].forEach((tab, at) => setAttribute(tab, "aria-pressed", at === figures.at ? "true" : "false"));
     this.tabs.hidden = figures.titles.length < 2;
-    this.figureError.textContent = figures.error ?? "";
+    setText(this.figureError, figures.error ?? "");
   }
 
   updateFold(key, markup) {
@@ -468,7 +497,7 @@ class PanelView {
         box = h("details", { class: "pk-fold" }, h("summary"), h("div", { class: "pk-fold-body" }));
         this.above.append(box);
       }
-      box.firstChild.textContent = `${link.title} results`;
+      setText(box.firstChild, `${link.title} results`);
       setMarkup(box.lastChild, tableMarkup(link.rows, compared, baseline));
     });
   }
@@ -506,7 +535,14 @@ class PanelView {
     this.showTwin = () => set(false);
   }
 
+  // A class, not a container query: inside a query's container every question for a style costs a layout.
+  watchWidth() {
+    this.width = new ResizeObserver(() => this.root.classList.toggle("pk-narrow", this.root.clientWidth <= NARROW));
+    this.width.observe(this.root);
+  }
+
   stop() {
+    this.width.disconnect();
     this.model.off("change:shown", this.draw);
     this.line.listeners.delete(this.listen);
     this.stopFigures();
