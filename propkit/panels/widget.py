@@ -59,8 +59,9 @@ class PanelWidget(Host):
         super()._on_message(widget, content, buffers)
         if not isinstance(content, dict) or "do" not in content:
             return
-        self.act(content)
-        self.ack = {"client": content.get("client", ""), "number": content.get("number", 0)}
+        with self.hold_sync():
+            self.act(content)
+            self.ack = {"client": content.get("client", ""), "number": content.get("number", 0)}
 
     def act(self, asked: dict[str, Any]) -> None:
         """Do what the page asks for. A refusal is shown by the panel; anything unforeseen is shown too, and logged."""
@@ -95,5 +96,7 @@ _ACTIONS: dict[str, Any] = {
     "pin": lambda panel, asked: panel.pin(asked.get("name", "")),
     "unpin": lambda panel, asked: panel.unpin(asked.get("name", "")),
     "units": lambda panel, asked: setattr(panel, "units", asked["units"]),
+    "tap": lambda panel, asked: panel.tap(float(asked["x"]), float(asked["y"])),
+    "press": lambda panel, asked: panel.press(asked["what"]),
     "figure": lambda panel, asked: setattr(panel, "figure", int(asked["at"])),
 }

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import re
 import unicodedata
+from functools import lru_cache
 from html import escape
 
 _GREEK = {
@@ -65,6 +66,7 @@ def _accented(shown: str, mark: str) -> str:
     return f"{match[1]}{mark}{match[2]}" if match else shown + mark
 
 
+@lru_cache(maxsize=1024)
 def html_symbol(symbol: str) -> str:
     """Return a symbol for HTML: italic letters, subscripts and superscripts."""
 

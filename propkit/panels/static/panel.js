@@ -21,7 +21,8 @@ class Line {
     this.waiting = [];
     this.open = null;
     this.listeners = new Set();
-    model.on("change:ack", () => this.acknowledged());
+    // what is shown comes in the same message: first that, then the next question
+    model.on("change:ack", () => queueMicrotask(() => this.acknowledged()));
     model.on("comm_live_update", () => this.tell());
   }
 
@@ -349,6 +350,9 @@ class PanelView {
     this.headline = h("div", { class: "pk-headline" });
     this.tabs = h("div", { class: "pk-tabs", role: "group", "aria-label": "Figure shown" });
     this.figures = h("div", { class: "pk-figures" });
+    this.figures.addEventListener("pk-tap", (event) => this.model.get("shown").facts && this.ask({ do: "tap", ...event.detail }));
+    this.facts = h("ul", { class: "pk-facts" });
+    this.actions = h("div", { class: "pk-actions" });
     this.figureError = h("p", { class: "pk-error" });
     this.results = h("div", { class: "pk-block" });
     this.doubts = h("ul", { class: "pk-doubts" });
@@ -372,7 +376,7 @@ class PanelView {
         "div",
         { class: "pk-body" },
         this.inputs,
-        h("div", { class: "pk-outcome" }, this.headline, this.doubts, this.tabs, this.figures, this.figureError, this.results, fold("pins", "Pinned designs side by side"), fold("stations", "Stations"), this.above, fold("code", "Code that reproduces this")),
+        h("div", { class: "pk-outcome" }, this.headline, this.doubts, this.tabs, this.figures, this.figureError, this.facts, this.actions, this.results, fold("pins", "Pinned designs side by side"), fold("stations", "Stations"), this.above, fold("code", "Code that reproduces this")),
       ),
     );
     this.details.code.body.append(h("pre", { class: "pk-code", tabindex: "0" }, this.code), this.copy, this.copied);
@@ -411,6 +415,8 @@ class PanelView {
     setMarkup(this.headline, headlineMarkup(shown.headline, compared));
     setMarkup(this.results, tableMarkup(shown.results, compared, shown.pins.baseline));
     setMarkup(this.doubts, shown.doubts.map((doubt) => `<li>${escapeText(doubt)}</li>`).join(""));
+    setMarkup(this.facts, (shown.facts ?? []).map((fact) => `<li>${escapeText(fact)}</li>`).join(""));
+    this.updateActions(shown.actions ?? []);
     this.updateTabs(shown.figures);
     this.updateFold("pins", compared ? pinsMarkup(shown.pins) : "");
     this.updateFold("stations", shown.stations ? stationsMarkup(shown.stations) : "");
@@ -436,7 +442,7 @@ class PanelView {
         const main = h("div", { class: "pk-controls" });
         const minor = h("div", { class: "pk-controls" });
         const more = h("details", { class: "pk-more" }, h("summary", {}, "More inputs"), minor);
-        box = { element: h("fieldset", { class: "pk-set" }, h("legend", {}, set.title), main, more), main, minor, more };
+        box = { element: h("fieldset", { class: "pk-set", "data-kind": set.kind }, h("legend", {}, set.title), main, more), main, minor, more };
         this.sets.set(set.kind, box);
         this.inputs.append(box.element);
       }
@@ -481,6 +487,13 @@ class PanelView {
     [...this.tabs.children].forEach((tab, at) => setAttribute(tab, "aria-pressed", at === figures.at ? "true" : "false"));
     this.tabs.hidden = figures.titles.length < 2;
     setText(this.figureError, figures.error ?? "");
+  }
+
+  updateActions(actions) {
+    const key = JSON.stringify(actions);
+    if (this.actions.__key === key) return;
+    this.actions.__key = key;
+    this.actions.replaceChildren(...actions.map(([what, label, title]) => h("button", { type: "button", class: "pk-button", title, onclick: () => this.ask({ do: "press", what }) }, label)));
   }
 
   updateFold(key, markup) {
