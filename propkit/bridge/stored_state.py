@@ -7,6 +7,7 @@ the sum over its ingredients. Every doubt (a phase boundary crossed, a range lef
 from __future__ import annotations
 
 import math
+from contextlib import suppress
 from dataclasses import dataclass
 from typing import Any
 
@@ -110,6 +111,12 @@ def stored_state(
 
 
 # ---- CoolProp ---------------------------------------------------------------------------------------------------
+
+
+def load_fluids() -> None:
+    """Read CoolProp's library of fluids now, where CoolProp is installed; else its first use does, for seconds."""
+    with suppress(ImportError):
+        import CoolProp  # noqa: F401
 
 
 def open_fluid(row: PropellantRow) -> Any:

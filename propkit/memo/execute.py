@@ -13,6 +13,7 @@ from typing import Any
 
 from propkit.errors import MissingExtraError, RecordError
 from propkit.record.reading import parse_json, read_file
+from propkit.record.schema import without_grammars
 
 
 def require() -> None:
@@ -44,10 +45,14 @@ def read_notebook(path: Path) -> Any:
         When it cannot be read, or is no notebook.
     """
     require()
-    import nbformat
-    from nbformat.v4.rwbase import rejoin_lines
+    with without_grammars():
+        import nbformat
+        from nbformat.v4.rwbase import rejoin_lines
 
-    value = parse_json(read_file(path))
+    try:
+        value = parse_json(read_file(path))
+    except RecordError as error:
+        raise RecordError(f"{path.name} is not a notebook that can be read: {error.message}") from None
     if not isinstance(value, Mapping) or not isinstance(value.get("cells"), list):
         raise RecordError(f"{path.name} is not a notebook of format 4: it has no list of cells")
     try:
@@ -75,24 +80,26 @@ def _give_ids(notebook: Any) -> None:
             taken.add(name)
 
 
-def execute(notebook: Any, folder: Path, timeout: int, say: Callable[[str], None]) -> str:
+def execute(notebook: Any, path: Path, timeout: int, say: Callable[[str], None], finished: Callable[[Any], None] = lambda cell: None) -> str:
     """Execute a notebook in place, in the present interpreter whatever its kernelspec says.
 
     Parameters
     ----------
     notebook : nbformat notebook
         Changed in place; after an error it holds the outputs so far.
-    folder : Path
-        Folder that the cells run in.
+    path : Path
+        Where the notebook is; the cells run in its folder.
     timeout : int
         Seconds that one cell may take.
     say : callable
         Told what happens, cell by cell.
+    finished : callable
+        Given each cell that was executed, with its outputs.
 
     Returns
     -------
     str
-        Empty, or what went wrong.
+        Empty, or what went wrong in which cell.
     """
     from nbclient.exceptions import CellExecutionError, CellTimeoutError, DeadKernelError
 
@@ -100,19 +107,41 @@ def execute(notebook: Any, folder: Path, timeout: int, say: Callable[[str], None
         if cell.cell_type == "code":
             cell.outputs, cell.execution_count = [], None
     notebook.metadata.pop("widgets", None)
+    progress = _Progress(notebook, say, finished)
     try:
         with tempfile.TemporaryDirectory(prefix="pk") as sockets:
-            _client(notebook, folder, timeout, say, Path(sockets)).execute(env=_environment())
+            _client(notebook, path.resolve().parent, timeout, progress, Path(sockets)).execute(env=_environment())
     except CellExecutionError as error:
-        return f"a cell raised {error.ename}: {error.evalue}"[:2000]
+        reason = f"{error.ename}: {error.evalue}"
     except CellTimeoutError:
-        return f"a cell took longer than {timeout} s"
+        reason = f"it took longer than {timeout} s"
     except DeadKernelError:
-        return "the kernel died while a cell was running"
-    return ""
+        reason = "the kernel died while it was running"
+    else:
+        return ""
+    return f"{path.name}, {progress.place}: {reason}"[:2000]
 
 
-def _client(notebook: Any, folder: Path, timeout: int, say: Callable[[str], None], sockets: Path) -> Any:
+class _Progress:
+    """Which code cell is running; blank cells are not counted."""
+
+    def __init__(self, notebook: Any, say: Callable[[str], None], finished: Callable[[Any], None]) -> None:
+        self._say, self._finished = say, finished
+        self._places = [place for place, cell in enumerate(notebook.cells) if cell.cell_type == "code" and cell.source.strip()]
+        self.place = "before its first cell"
+
+    def started(self, cell: Any, cell_index: int) -> None:
+        if cell_index in self._places:
+            number = f"cell {self._places.index(cell_index) + 1} of {len(self._places)}"
+            first = cell.source.strip().splitlines()[0][:70]
+            self.place = f"{number} ({first})"
+            self._say(f"  {number}: {first}")
+
+    def executed(self, cell: Any, **_: Any) -> None:
+        self._finished(cell)
+
+
+def _client(notebook: Any, folder: Path, timeout: int, progress: _Progress, sockets: Path) -> Any:
     from jupyter_client.kernelspec import KernelSpec
     from jupyter_client.manager import AsyncKernelManager
     from nbclient import NotebookClient
@@ -130,13 +159,6 @@ def _client(notebook: Any, folder: Path, timeout: int, say: Callable[[str], None
             argv = [sys.executable, "-m", "ipykernel_launcher", "-f", "{connection_file}"]
             return KernelSpec(argv=argv, display_name="Python", language="python")
 
-    code_cells = [place for place, cell in enumerate(notebook.cells) if cell.cell_type == "code" and cell.source.strip()]
-
-    def started(cell: Any, cell_index: int) -> None:
-        if cell_index in code_cells:
-            first = cell.source.strip().splitlines()[0]
-            say(f"  cell {code_cells.index(cell_index) + 1} of {len(code_cells)}: {first[:70]}")
-
     return NotebookClient(
         notebook,
         timeout=timeout,
@@ -144,7 +166,8 @@ def _client(notebook: Any, folder: Path, timeout: int, say: Callable[[str], None
         kernel_manager_class=Here,
         resources={"metadata": {"path": str(folder)}},
         record_timing=False,
-        on_cell_start=started,
+        on_cell_start=progress.started,
+        on_cell_executed=progress.executed,
     )
 
 

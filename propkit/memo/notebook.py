@@ -13,13 +13,15 @@ from typing import Any
 
 from propkit.errors import MissingExtraError
 from propkit.memo import execute as execution
+from propkit.memo.ahead import Ahead
 from propkit.memo.blocks import blocks_of, title_of, without_title
 from propkit.memo.crate import record_crate
 from propkit.memo.markup import uncertainty, value_text
 from propkit.memo.notebook_pdf import notebook_pdf
-from propkit.memo.page import Bound, notebook_page
+from propkit.memo.page import Bound, NotebookMemo, notebook_page
 from propkit.record.containers import Contents, records_of
 from propkit.record.record import Record
+from propkit.record.sheet import headline_of
 from propkit.record.storage import make_folder, write_atomically
 from propkit.view import cells
 
@@ -39,6 +41,7 @@ def write_memo(
     execute: bool = True,
     timeout: int = 600,
     crate: bool = False,
+    paper: str = "a4",
     say: Callable[[str], None] = print,
 ) -> Written:
     """Execute a notebook and write the executed notebook, its HTML and PDF memos and the records it carries.
@@ -55,6 +58,8 @@ def write_memo(
         Seconds that one cell may take.
     crate : bool
         Whether each record is written as an RO-Crate too, with the notebook inside.
+    paper : {"a4", "letter"}
+        Size of the sheets of the PDF.
     say : callable
         Told what happens.
 
@@ -72,21 +77,26 @@ def write_memo(
     notebook = execution.read_notebook(notebook_path)
     folder = make_folder(out if out is not None else notebook_path.parent)
     outcome = Written()
+    known: dict[str, dict[str, Any]] = {}
     if execute:
         say(f"executing {notebook_path.name}: this runs its code, in this Python")
-        outcome.error = execution.execute(notebook, notebook_path.resolve().parent, timeout, say)
+        with Ahead(known, fluids=_mentions_propkit(notebook)) as ahead:
+            outcome.error = execution.execute(notebook, notebook_path, timeout, say, ahead.finished)
         data = notebook_bytes(notebook)
         suffix = ".partial.ipynb" if outcome.error and folder.resolve() == notebook_path.resolve().parent else ".ipynb"
         outcome.written.append(write_atomically(folder / f"{notebook_path.stem}{suffix}", data))
     else:
         data = notebook_bytes(notebook)
     contents = records_of(".ipynb", data, notebook_path.name)
-    bound = _bind(contents)
+    bound = _bind(contents, known)
     blocks = list(blocks_of(notebook))
     title = title_of(blocks, notebook_path.stem.replace("_", " "))
-    page = notebook_page(title, notebook_path.name, without_title(blocks), bound, outcome.error)
-    outcome.written.append(write_atomically(folder / f"{notebook_path.stem}.html", page.encode()))
-    _write_pdf(folder / f"{notebook_path.stem}.pdf", title, notebook_path.name, without_title(blocks), bound, outcome, say)
+    memo = NotebookMemo(title, notebook_path.name, tuple(without_title(blocks)), tuple(bound), outcome.error)
+    outcome.written.append(write_atomically(folder / f"{notebook_path.stem}.html", notebook_page(memo).encode()))
+    try:
+        outcome.written.append(write_atomically(folder / f"{notebook_path.stem}.pdf", notebook_pdf(memo, paper)))
+    except MissingExtraError as error:
+        say(f"no PDF: {error}")
     taken: set[str] = set()
     for entry in bound:
         name = _file_name(entry.record, taken)
@@ -99,11 +109,8 @@ def write_memo(
     return outcome
 
 
-def _write_pdf(path: Path, title: str, source: str, blocks: list[Any], bound: list[Bound], outcome: Written, say: Callable[[str], None]) -> None:
-    try:
-        outcome.written.append(write_atomically(path, notebook_pdf(title, source, blocks, bound, outcome.error)))
-    except MissingExtraError as error:
-        say(f"no PDF: {error}")
+def _mentions_propkit(notebook: Any) -> bool:
+    return any("propkit" in cell.source for cell in notebook.cells)
 
 
 def notebook_bytes(notebook: Any) -> bytes:
@@ -114,10 +121,9 @@ def notebook_bytes(notebook: Any) -> bytes:
     return (json.dumps(divided, indent=1, ensure_ascii=False, sort_keys=True, allow_nan=False) + "\n").encode()
 
 
-def _bind(contents: Contents) -> list[Bound]:
-    """Return the records of a notebook, each once, with their verification, in the order of the notebook."""
+def _bind(contents: Contents, known: dict[str, dict[str, Any]]) -> list[Bound]:
+    """Return the records of a notebook, each once, with their verification, in the order of the notebook; `known` as for `Record.verify`."""
     made: dict[str, Bound] = {}
-    known: dict[str, dict[str, Any]] = {}
     for entry in contents.found:
         if entry.record.digest not in made:
             made[entry.record.digest] = Bound(entry.record, entry.record.verify(entry.place, known), answers_of(entry.record))
@@ -126,7 +132,7 @@ def _bind(contents: Contents) -> list[Bound]:
 
 def answers_of(record: Record) -> tuple[tuple[str, str, str], ...]:
     """Return the answer of a record as label, value and unit in display units."""
-    return tuple((row.label, f"{value_text(row)}{uncertainty(row)}", cells.unit_text(row.unit)) for row in record.report().headline)
+    return tuple((row.label, f"{value_text(row)}{uncertainty(row)}", cells.unit_text(row.unit)) for row in headline_of(record))
 
 
 def _file_name(record: Record, taken: set[str]) -> str:

@@ -7,6 +7,7 @@ import html
 import re
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 
 from propkit.memo import equations
 from propkit.memo.blocks import Block
@@ -32,8 +33,9 @@ class Bound:
         return ", ".join(f"{label} {value} {unit}".rstrip() for label, value, unit in self.answers)
 
 
-def notebook_page(title: str, source: str, blocks: Sequence[Block], records: Sequence[Bound], error: str = "") -> str:
-    """Return the memo of an executed notebook as a whole page.
+@dataclass(frozen=True)
+class NotebookMemo:
+    """What the memo of an executed notebook says, for its page and for its PDF.
 
     Parameters
     ----------
@@ -41,26 +43,61 @@ def notebook_page(title: str, source: str, blocks: Sequence[Block], records: Seq
         Title of the memo.
     source : str
         Name of the notebook.
-    blocks : sequence of Block
-        What the notebook holds.
-    records : sequence of Bound
+    blocks : tuple of Block
+        What the notebook holds, without its title.
+    records : tuple of Bound
         The records that it carries.
     error : str
         What went wrong while it was executed.
     """
-    styles: dict[str, None] = {}
-    body = body_of(blocks, styles)
+
+    title: str
+    source: str
+    blocks: tuple[Block, ...]
+    records: tuple[Bound, ...]
+    error: str = ""
+
+    @cached_property
+    def styled_body(self) -> tuple[str, dict[str, None]]:
+        """Text and outputs as clean markup, and the style sheets that outputs carry."""
+        styles: dict[str, None] = {}
+        return "".join(_block(block, styles) for block in self.blocks if block.kind != "code"), styles
+
+    @property
+    def body(self) -> str:
+        """Text and outputs as clean markup."""
+        return self.styled_body[0]
+
+    @property
+    def code(self) -> list[Block]:
+        """The cells that were executed."""
+        return [block for block in self.blocks if block.kind == "code"]
+
+    @property
+    def failure(self) -> str:
+        """What went wrong as a paragraph; empty where nothing did."""
+        return f'<p class="failure">The notebook stopped: {html.escape(self.error)}</p>' if self.error else ""
+
+    @property
+    def facts(self) -> list[tuple[str, str]]:
+        """The facts of the title block, from the last record."""
+        return [("notebook", self.source), *_facts_of(self.records)]
+
+
+def notebook_page(memo: NotebookMemo) -> str:
+    """Return the memo of an executed notebook as a whole page."""
+    body, styles = memo.styled_body
     parts = [
-        title_block(title, [("notebook", source), *facts_of(records)]),
-        f'<p class="failure">The notebook stopped: {html.escape(error)}</p>' if error else "",
-        summary(records),
+        title_block(memo.title, memo.facts),
+        memo.failure,
+        summary(memo.records),
         f'<main class="narrative">{body}</main>',
-        record_section(records),
+        record_section(memo.records),
         cautions(CAUTIONS),
-        _code_appendix(blocks),
-        "".join(record_template(bound.record) for bound in records),
+        _code_appendix(memo.code),
+        "".join(record_template(bound.record) for bound in memo.records),
     ]
-    return whole_page(title, "".join(parts), styles)
+    return whole_page(memo.title, "".join(parts), styles)
 
 
 def whole_page(title: str, body: str, styles: Iterable[str] = ()) -> str:
@@ -82,13 +119,7 @@ def title_block(title: str, facts: Iterable[tuple[str, str]]) -> str:
     return f'<header class="title-block"><h1>{html.escape(title)}</h1><dl>{listed}</dl></header>'
 
 
-def body_of(blocks: Sequence[Block], styles: dict[str, None]) -> str:
-    """Return text and outputs of a notebook as clean markup; style sheets that outputs carry go to `styles`."""
-    return "".join(_block(block, styles) for block in blocks if block.kind != "code")
-
-
-def facts_of(records: Sequence[Bound]) -> list[tuple[str, str]]:
-    """Return the facts of the title block, from the last record."""
+def _facts_of(records: Sequence[Bound]) -> list[tuple[str, str]]:
     if not records:
         return []
     last = records[-1].record
@@ -136,8 +167,7 @@ def cautions(lines: Iterable[str]) -> str:
     return f'<section class="cautions"><h2>Cautions</h2><ul>{listed}</ul></section>'
 
 
-def _code_appendix(blocks: Sequence[Block]) -> str:
-    code = [block for block in blocks if block.kind == "code"]
+def _code_appendix(code: Sequence[Block]) -> str:
     if not code:
         return ""
     cells = "".join(f'<div class="cell"><span class="number">{block.cell}</span>{highlighted(block.text)}</div>' for block in code)

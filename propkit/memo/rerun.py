@@ -31,7 +31,7 @@ def rerun(result: FileVerification, say: Callable[[str], None], timeout: int = 6
         return result
     notebook = execution.read_notebook(path)
     say(f"executing {path.name}: this runs its code, in this Python")
-    error = execution.execute(notebook, path.resolve().parent, timeout, say)
+    error = execution.execute(notebook, path, timeout, say)
     if error:
         check = Check("rerun", "differs", f"the notebook did not run to its end: {error}")
     else:
@@ -46,7 +46,12 @@ def rerun(result: FileVerification, say: Callable[[str], None], timeout: int = 6
 def _compared(carried: tuple[Found, ...], made: tuple[Found, ...]) -> Check:
     if len(carried) != len(made):
         return Check("rerun", "differs", f"the notebook carries {len(carried)} records, executed again it makes {len(made)}")
-    wrong = [one.place for one, two in zip(carried, made, strict=True) if not one.record.compare(two.record).same]
+    wrong = [f"{one.place} ({', '.join(topics)})" for one, two in zip(carried, made, strict=True) if (topics := _differing(one, two))]
     if wrong:
-        return Check("rerun", "differs", f"executed again, the records differ at {', '.join(wrong)}")
+        return Check("rerun", "differs", f"executed again, the records differ at {'; '.join(wrong)}")
     return Check("rerun", "same", f"executed again in a clean kernel, all {len(made)} records came out the same")
+
+
+def _differing(one: Found, two: Found) -> list[str]:
+    """Return the topics in which two records differ, versions apart."""
+    return [topic for topic, found in one.record.compare(two.record).topics.items() if found and topic != "versions"]

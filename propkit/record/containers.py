@@ -97,7 +97,7 @@ def _from_notebook(data: bytes, name: str) -> Contents:
     if not isinstance(cells, list) or not all(isinstance(cell, Mapping) for cell in cells):
         raise RecordError("this is not a notebook of format 4: it has no list of cells")
     sources = {text_digest(_source(cell)): place for place, cell in enumerate(cells, 1) if cell.get("cell_type") == "code"}
-    carried = [(place, cell, list(_documents(cell))) for place, cell in enumerate(cells, 1) if cell.get("cell_type") == "code"]
+    carried = [(place, cell, list(documents_of(cell))) for place, cell in enumerate(cells, 1) if cell.get("cell_type") == "code"]
     if sum(len(documents) for _, _, documents in carried) > MOST_RECORDS:
         raise RecordError(f"the notebook holds more than {MOST_RECORDS} records")
     found = []
@@ -123,7 +123,8 @@ def _source(cell: Mapping[str, Any]) -> str:
     return source if isinstance(source, str) else ""
 
 
-def _documents(cell: Mapping[str, Any]) -> Iterator[Any]:
+def documents_of(cell: Mapping[str, Any]) -> Iterator[Any]:
+    """Yield what the outputs of a notebook cell carry as records, whatever it is."""
     outputs = cell.get("outputs", [])
     for output in outputs if isinstance(outputs, list) else []:
         data = output.get("data") if isinstance(output, Mapping) else None

@@ -32,15 +32,15 @@ def schema() -> dict[str, Any]:
 
 @lru_cache(maxsize=1)
 def _validator() -> Any:
-    with _without_grammars():
+    with without_grammars():
         from jsonschema import Draft202012Validator
 
     return Draft202012Validator(_inlined(schema(), schema()["$defs"]))
 
 
 @contextmanager
-def _without_grammars() -> Iterator[None]:
-    """Keep jsonschema's first import from building its grammars of internationalized addresses, which takes seconds.
+def without_grammars() -> Iterator[None]:
+    """Keep the first import of jsonschema from building its grammars of internationalized addresses, which takes seconds.
 
     They serve a format check that no propkit schema asks for. What another library imports itself is left as it is.
     """

@@ -41,22 +41,27 @@ HEADLINES = {
 def report_of(record: Record) -> Report:
     """Return the report of a record."""
     content, provenance = record.content, record.provenance
-    last = content["objects"][content["object"]]
-    headline = [
-        _row(content["object"], name, entry, "computed")
-        for name in HEADLINES[content["object"]]
-        if (entry := last["results"].get(name) or last["inputs"].get(name))
-    ]
     return Report(
         kind="Calculation record",
         title=record.title,
         subtitle=content["description"] if content["title"] else "",
         units="SI",
-        headline=tuple(headline),
+        headline=headline_of(record),
         sections=(*_text_sections(content), *_object_sections(content), *_rest(record, content), _seal(record, provenance)),
         doubts=tuple(entry["text"] for entry in content["warnings"]),
         cautions=tuple(content["cautions"]),
         render=render,
+    )
+
+
+def headline_of(record: Record) -> tuple[Row, ...]:
+    """Return the answer of a record: the rows that head its report."""
+    content = record.content
+    last = content["objects"][content["object"]]
+    return tuple(
+        _row(content["object"], name, entry, "computed")
+        for name in HEADLINES[content["object"]]
+        if (entry := last["results"].get(name) or last["inputs"].get(name))
     )
 
 

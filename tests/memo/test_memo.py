@@ -130,7 +130,7 @@ def test_a_cell_that_raises_keeps_the_partial_notebook(tmp_path):
     source.write_text(json.dumps(notebook(("code", "x = 1\nx"), ("code", "1 / 0"), ("code", "y = 2"))))
     before = source.read_bytes()
     outcome = write_memo(source, tmp_path / "out", say=lambda text: None)
-    assert "ZeroDivisionError" in outcome.error
+    assert outcome.error.startswith("broken.ipynb, cell 2 of 3 (1 / 0): ZeroDivisionError")
     kept = json.loads((tmp_path / "out" / "broken.ipynb").read_text())
     assert [len(cell["outputs"]) for cell in kept["cells"]] == [1, 1, 0]
     assert "ZeroDivisionError" in (tmp_path / "out" / "broken.html").read_text()
@@ -155,7 +155,9 @@ def test_rerun(memo_folder, tmp_path):
     next(cell for cell in data["cells"] if cell["cell_type"] == "code")["source"] = SETUP.replace("0.18 m", "0.19 m")
     path = tmp_path / "other.ipynb"
     path.write_text(json.dumps(data))
-    assert rerun(verify_file(path), say=lambda text: None).exit_code == 1
+    other = rerun(verify_file(path), say=lambda text: None)
+    assert other.exit_code == 1
+    assert "results" in other.checks[-1].detail
 
 
 @pytest.mark.parametrize("hostile", [
@@ -214,9 +216,26 @@ def test_widget_views_are_left_out():
     assert [block.kind for block in made] == ["code"]
 
 
-@pytest.mark.parametrize("text", ["{}", '{"cells": 3}', '{"cells": [{"cell_type": "code"}]}', "[]", '{"cells": [{"cell_type": "raw", "source": 3}]}'])
+@pytest.mark.parametrize("text", ["{}", "{", '{"cells": 3}', '{"cells": [{"cell_type": "code"}]}', "[]", '{"cells": [{"cell_type": "raw", "source": 3}]}'])
 def test_what_is_no_notebook(tmp_path, text):
     path = tmp_path / "x.ipynb"
     path.write_text(text)
-    with pytest.raises(pk.PropkitError):
+    with pytest.raises(pk.PropkitError, match=r"x\.ipynb"):
         write_memo(path, tmp_path / "out", execute=False, say=lambda line: None)
+
+
+def test_records_are_recomputed_while_the_notebook_runs(memo_folder):
+    from propkit.memo.ahead import Ahead
+    from propkit.record.canonical import digest_of
+    from propkit.record.containers import documents_of
+
+    cells = [cell for cell in json.loads((memo_folder / "small.ipynb").read_text())["cells"] if cell["cell_type"] == "code"]
+    carrying = next(cell for cell in cells if list(documents_of(cell)))
+    broken = json.loads(json.dumps(carrying))
+    next(iter(documents_of(broken)))["content"] = 3
+    known = {}
+    with Ahead(known, fluids=False) as ahead:
+        for cell in (broken, *cells):
+            ahead.finished(cell)
+    recipe = next(iter(documents_of(carrying)))["content"]["recipe"]
+    assert list(known) == [digest_of(recipe)]
