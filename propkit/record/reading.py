@@ -13,6 +13,7 @@ from propkit.errors import RecordError, StorageError
 DEEPEST = 64
 LARGEST_BYTES = 50_000_000
 _MARK = re.compile(r'"(?:[^"\\]+|\\.)*+"?|[\[\]{}]', re.DOTALL)
+_ESCAPED_HALF = re.compile(r"\\u[dD][89a-fA-F]")
 _LONGEST_INTEGER = 400
 
 
@@ -86,6 +87,8 @@ def parse_json(data: bytes | str) -> Any:
         raise RecordError(f"this is not JSON: {error.msg} in line {error.lineno}, column {error.colno}") from None
     except (ValueError, RecursionError) as error:
         raise RecordError(f"this is not JSON that can be read: {error}") from None
+    if _ESCAPED_HALF.search(text):  # the text itself is UTF-8, so that half a character comes from an escape only
+        _no_surrogates(value)
     return value
 
 
@@ -115,19 +118,15 @@ def _object(pairs: list[tuple[str, Any]]) -> dict[str, Any]:
     for key, value in pairs:
         if key in made:
             raise RecordError(f"the key {_short(key)} is given twice")
-        made[key] = _no_surrogates(value)
-    for key in made:
-        _no_surrogates(key)
+        made[key] = value
     return made
 
 
-def _no_surrogates(value: Any) -> Any:
+def _no_surrogates(value: Any) -> None:
     if isinstance(value, str) and any("\ud800" <= character <= "\udfff" for character in value):
         raise RecordError("a text holds half a character (a lone surrogate)")
-    if isinstance(value, list):
-        for entry in value:
-            _no_surrogates(entry)
-    return value
+    for entry in [*value, *value.values()] if isinstance(value, dict) else value if isinstance(value, list) else ():
+        _no_surrogates(entry)
 
 
 def _refuse_constant(text: str) -> Any:
