@@ -116,8 +116,7 @@ def combust(
     """
     table = load_basis(basis).table(mixture.symbols, mixture.condensed)
     count = len(mixture.atoms)
-    p = np.broadcast_to(values(pressure), (count,)).astype(float)
-    ratio = np.broadcast_to(values(contraction_ratio), (count,)).astype(float)
+    p, ratio = (np.array(np.broadcast_to(values(part), (count,))) for part in (pressure, contraction_ratio))
     if mixture.composition is not None:
         return _held(table, mixture, p, ratio, pressure_at)
     contracted = np.isfinite(ratio).any()
@@ -264,7 +263,7 @@ def given_gas(
             for v in (pressure, temperature, gas_constant, isentropic_exponent, contraction_ratio)
         )
     )
-    p, t, r, gamma, ratio = (np.array(array, dtype=float) for array in arrays)
+    p, t, r, gamma, ratio = (np.array(array) for array in arrays)
     injector, stagnation = combustor.constant_property_pressures(p, gamma, ratio, pressure_at)
     cstar = gas_dynamics.characteristic_velocity(t, r, gamma)
     return GivenGas(gamma, r, t, injector, stagnation, ratio, np.asarray(cstar))

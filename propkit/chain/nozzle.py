@@ -135,10 +135,10 @@ def expand(
     throat = reservoir.throat if known else expansion.throat(isentrope)  # type: ignore[union-attr]
     flux = throat.mass_flux
     if area_ratio is not None:
-        ratio = np.broadcast_to(values(area_ratio), flux.shape).astype(float)
+        ratio = np.array(np.broadcast_to(values(area_ratio), flux.shape))
         exit_state = expansion.at_area_ratio(isentrope, flux, ratio, throat)
     else:
-        pressure = np.broadcast_to(values(exit_pressure), flux.shape).astype(float)  # type: ignore[arg-type]
+        pressure = np.array(np.broadcast_to(values(exit_pressure), flux.shape))  # type: ignore[arg-type]
         exit_state = expansion.at_pressure(isentrope, np.minimum(pressure, throat.pressure), throat)
         ratio = flux / exit_state.mass_flux
     if isinstance(isentrope, expansion.FrozenFrom) and freeze_at != "throat":

@@ -12,7 +12,7 @@ import numpy as np
 
 from propkit.errors import InputError, Problem
 from propkit.physics import equilibrium, expansion, gas_dynamics
-from propkit.physics.arrays import Array, Values, require, values
+from propkit.physics.arrays import Array, Values, distinct, has_tangent, magnitude, require, values
 from propkit.physics.equilibrium import EquilibriumState
 from propkit.physics.expansion import FlowState
 from propkit.physics.thermodynamics import SpeciesTable
@@ -102,7 +102,11 @@ def combustor(
         np.array(np.broadcast_to(values(part), shape)) for part in (enthalpy, pressure, contraction_ratio)
     )
     finite = np.isfinite(ratio)
-    p0 = quoted.copy()
+    p0, settled = quoted.copy(), _SETTLED
+    if has_tangent(atoms, h, quoted, ratio):
+        rows, back = distinct(atoms.real, h.real, quoted.real, ratio.real)
+        known = combustor(table, atoms.real[rows], h.real[rows], quoted.real[rows], ratio.real[rows], pressure_at)
+        p0, settled = quoted * (known.stagnation.pressure[back] / quoted.real), _ACCEPTED
     rest: EquilibriumState | None = None
     throat: FlowState | None = None
     for _ in range(_ITERATIONS):
@@ -113,14 +117,14 @@ def combustor(
         face = inlet.pressure + inlet.density * inlet.velocity**2
         found = {"injector": face, "nozzle stagnation": p0, "nozzle inlet static": inlet.pressure}[pressure_at]
         error = np.where(finite, quoted / found, 1.0)
-        moving = np.abs(error - 1.0) > _SETTLED
+        moving = magnitude(error - 1.0) > settled
         if not moving.any():
             break
         p0 = np.where(moving, p0 * error, p0)
     assert rest is not None
     assert throat is not None
     assert inlet.equilibrium is not None
-    solved = (np.abs(error - 1.0) <= _ACCEPTED) & (rest.status == equilibrium.CONVERGED)
+    solved = (magnitude(error - 1.0) <= _ACCEPTED) & (rest.status == equilibrium.CONVERGED)
     status = np.where(
         rest.status != equilibrium.CONVERGED, rest.status, np.where(solved, inlet.status, equilibrium.NOT_CONVERGED)
     )

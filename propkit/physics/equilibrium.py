@@ -14,7 +14,7 @@ import numpy.typing as npt
 
 from propkit.constants import GAS_CONSTANT
 from propkit.errors import InputError
-from propkit.physics.arrays import Array, Values, require, values
+from propkit.physics.arrays import Array, Values, distinct, has_tangent, plain, require, values
 from propkit.physics.equilibrium_condensed import SLOTS, iterate_phases
 from propkit.physics.equilibrium_newton import iterate
 from propkit.physics.equilibrium_search import Solver, cold_start, search, settled_start
@@ -38,6 +38,9 @@ BLOCK: Final = 2500
 """Cases worked on together; larger blocks leave the cache."""
 
 _LOWEST_LOG: Final = -700.0
+_STAYS: Final = 1e-7
+"""Relative change of the pressure beyond which a state is no solution of a flow condition."""
+
 _PLATEAU: Final = 1e-9
 """Share of a heating that warms, below which the heat capacity is undefined: a phase is changing."""
 
@@ -193,7 +196,14 @@ def solve(
     require(b.sum(axis=1) > 0.0, "elements", b.sum(axis=1), "above 0 for at least one element")
     if given == "temperature":
         require(target > 0.0, "temperature", target, "above 0")
-    return solve_batch(table, b, p, given, target, guess)
+    if guess is not None and has_tangent(guess.temperature):
+        guess = plain(guess)
+    if not has_tangent(b, p, target):
+        return solve_batch(table, b, p, given, target, guess)
+    rows, back = distinct(b.real, p.real, target.real)
+    near = None if guess is None else guess.take(rows)
+    known = solve_batch(table, b.real[rows], p.real[rows], given, target.real[rows], near)
+    return with_tangent(table, b, p, given, target, known.take(back))
 
 
 def _given(temperature: Values | None, enthalpy: Values | None, entropy: Values | None) -> tuple[Given, Values]:
@@ -248,6 +258,61 @@ def solve_batch(
             outside = _retry(problem, pressure[block], outcome)
             _fill(state, block, species, mask, problem, outcome, outside)
     return state
+
+
+def with_tangent(
+    table: SpeciesTable,
+    elements: Array,
+    pressure: Array,
+    given: Given,
+    target: Array,
+    known: EquilibriumState,
+    condition: FlowCondition | None = None,
+) -> EquilibriumState:
+    """Return states whose values are known with the tangents that those of the arguments give them.
+
+    Parameters
+    ----------
+    table, elements, pressure, given, target, condition
+        As for `solve_batch`, with tangents.
+    known : EquilibriumState
+        The solution without tangents.
+
+    Returns
+    -------
+    EquilibriumState
+        The same states with tangents; status 1 for a case that is no smooth solution of the condition.
+
+    Notes
+    -----
+    From a solution, one Newton step leads to the tangent of the unknowns, dx = -J^-1 (dF/dy) dy with the converged matrix J; the
+    sums and slopes at the unknowns so moved have theirs. The step is taken by the iteration itself, phases held.
+
+    Source: implicit function theorem.
+    """
+    state = _empty(pressure.size, table, np.complex128)
+    solved = known.status == CONVERGED
+    for rows, mask in _patterns(elements.real > 0.0):
+        block = rows[solved[rows]]
+        if not block.size:
+            continue
+        part, species = (table, np.arange(len(table.names))) if mask.all() else table.part(mask)
+        atoms, goal = elements[np.ix_(block, mask)].astype(np.complex128), target[block].astype(np.complex128)
+        problem = Problem(part, atoms, given, goal, _renumbered(condition, block))
+        start = _start(problem, known.pressure[block], known, block, species, mask).complex()
+        if condition is None:
+            start.log_pressure = np.log(pressure[block] / part.reference_pressure)
+        _fill(state, block, species, mask, problem, iterate(problem, start), np.zeros(block.size, dtype=bool))
+    # where the condition is met elsewhere (a throat at a jump of the sound speed) the step leads away
+    stays = np.abs(state.pressure.real - known.pressure) <= _STAYS * known.pressure
+    status = np.where(solved, np.where(stays, state.status, NOT_CONVERGED), known.status)
+    found: dict[str, Any] = {part.name: _joined(getattr(known, part.name), getattr(state, part.name)) for part in fields(EquilibriumState)}
+    return EquilibriumState(**found | {"status": status})
+
+
+def _joined(known: Array, moved: Array) -> Array:
+    """Return known values with the tangents of others, which differ from them by rounding."""
+    return known + 1j * moved.imag if np.iscomplexobj(moved) else moved
 
 
 def _renumbered(condition: FlowCondition | None, block: Integers) -> FlowCondition | None:
@@ -338,19 +403,20 @@ def _retry(problem: Problem, pressure: Array, outcome: Outcome) -> npt.NDArray[n
     return outside
 
 
-def _empty(count: int, table: SpeciesTable) -> EquilibriumState:
+def _empty(count: int, table: SpeciesTable, kind: Any = np.float64) -> EquilibriumState:
     """Return a batch of `count` states without numbers."""
 
     def blank() -> Array:
-        return np.full(count, np.nan)
+        return np.full(count, np.nan, dtype=kind)
 
     blanks: list[Any] = [blank() for _ in fields(EquilibriumState)]
     state = EquilibriumState(*blanks)
-    object.__setattr__(state, "amounts", np.zeros((count, len(table.names))))
-    object.__setattr__(state, "element_potentials", np.zeros((count, len(table.elements))))
+    object.__setattr__(state, "amounts", np.zeros((count, len(table.names)), dtype=kind))
+    object.__setattr__(state, "element_potentials", np.zeros((count, len(table.elements)), dtype=kind))
+    object.__setattr__(state, "residual", np.full(count, np.nan))
     object.__setattr__(state, "iterations", np.zeros(count, dtype=np.intp))
     object.__setattr__(state, "status", np.full(count, NOT_CONVERGED))
-    object.__setattr__(state, "condensed_mass_fraction", np.zeros(count))
+    object.__setattr__(state, "condensed_mass_fraction", np.zeros(count, dtype=kind))
     return state
 
 

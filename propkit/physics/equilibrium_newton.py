@@ -27,7 +27,7 @@ from typing import Any, Final
 import numpy as np
 
 from propkit.constants import GAS_CONSTANT
-from propkit.physics.arrays import Array
+from propkit.physics.arrays import Array, magnitude
 from propkit.physics.equilibrium_terms import (
     LOWEST_TEMPERATURE,
     FlowCondition,
@@ -86,7 +86,7 @@ def evaluate(problem: Problem, elements: Array, x: Unknowns) -> Sums:
     q = mu - x.potentials @ problem.atoms
     nh, nq = n * h, n * q
     width = size + 1 + slots
-    matrix, sides = np.zeros((cases, width, width)), np.zeros((2, cases, width))
+    matrix, sides = np.zeros((cases, width, width), dtype=n.dtype), np.zeros((2, cases, width), dtype=n.dtype)
     shortfall, correction = sides
     matrix[:, :size, :size] = (n @ problem.products).reshape(cases, size, size)
     total, moles = matrix[:, last, last].copy(), np.exp(x.log_moles)
@@ -110,14 +110,14 @@ def evaluate(problem: Problem, elements: Array, x: Unknowns) -> Sums:
         enthalpy=enthalpy,
         entropy=enthalpy - _dot(n, mu),
         heat_capacity=heat_capacity,
-        residual=np.abs(nq).sum(axis=1) / moles,
+        residual=magnitude(nq).sum(axis=1) / moles.real,
         spread=_dot(nq, q),
     )
     if slots:
         _add_slots(problem.table, every, x, sums, size)
     matrix[:, size, size] += sums.heat_capacity
-    missing = np.abs(shortfall[:, :last] / elements).max(axis=1)
-    sums.residual = np.maximum(np.maximum(sums.residual, missing), np.abs(shortfall[:, last]) / moles)
+    missing = magnitude(shortfall[:, :last] / elements).max(axis=1)
+    sums.residual = np.maximum(np.maximum(sums.residual, missing), magnitude(shortfall[:, last]) / moles.real)
     return sums
 
 
@@ -142,7 +142,7 @@ def _add_slots(table: SpeciesTable, every: StandardProperties, x: Unknowns, sums
         sums.enthalpy = sums.enthalpy + amount * h
         sums.entropy = sums.entropy + amount * (h - g)
         sums.heat_capacity = sums.heat_capacity + amount * cp
-        sums.residual = np.maximum(sums.residual, np.abs(sums.shortfall[:, row]))
+        sums.residual = np.maximum(sums.residual, magnitude(sums.shortfall[:, row]))
 
 
 def solve_scaled(matrix: Array, right: Array, moles: Array, elements: int) -> Array:
@@ -166,7 +166,7 @@ def solve_scaled(matrix: Array, right: Array, moles: Array, elements: int) -> Ar
     """
     diagonal = np.einsum("ijj->ij", matrix)
     scale = np.abs(diagonal)
-    scale[:, elements] = moles
+    scale[:, elements] = moles.real
     scale[:, elements + 2 :] = 1.0
     np.maximum(scale, _TINY, out=scale)
     scale = 1.0 / np.sqrt(scale)
@@ -209,7 +209,8 @@ def iterate(problem: Problem, start: Unknowns, iterations: int = ITERATIONS) -> 
     A case that runs away leaves the batch with a residual that is not finite, so floating-point warnings are left out.
     """
     count = start.log_moles.size
-    out = Outcome(start.take(np.arange(count)), np.full((count, 3), np.nan), np.full((count, 4), np.nan),
+    kind = start.log_amounts.dtype
+    out = Outcome(start.take(np.arange(count)), np.full((count, 3), np.nan, dtype=kind), np.full((count, 4), np.nan, dtype=kind),
                   np.full(count, iterations), np.full(count, np.inf), np.zeros(count, dtype=bool))  # fmt: skip
     number, x, elements, target = np.arange(count), start.take(np.arange(count)), problem.elements, problem.target
     bounds = problem.log_bounds + _ROOM_ABOVE_BOUND
@@ -217,11 +218,11 @@ def iterate(problem: Problem, start: Unknowns, iterations: int = ITERATIONS) -> 
     for step in range(iterations + 1):
         sums = evaluate(problem, elements, x)
         solution, energy = _solve(problem, sums, x, target)
-        residual = np.maximum(sums.residual, np.abs(energy) / sums.heat_capacity)
+        residual = np.maximum(sums.residual, magnitude(energy) / sums.heat_capacity.real)
         pressure_step = None
         if problem.condition is not None:
             flow, pressure_step = _flow(problem.condition, sums, x, solution, energy, number)
-            residual = np.maximum(residual, np.minimum(np.abs(flow), np.abs(pressure_step)))
+            residual = np.maximum(residual, np.minimum(magnitude(flow), magnitude(pressure_step)))
         done = (residual <= TOLERANCE) | ((residual <= _STALLED_TOLERANCE) & (residual >= 0.5 * before))
         leaving = np.ones_like(done) if step == iterations else done | ~np.isfinite(residual)
         if leaving.any():
@@ -248,7 +249,7 @@ def _solve(problem: Problem, sums: Sums, x: Unknowns, target: Array) -> tuple[Ar
     """
     size = problem.bordered.shape[1]
     last = size - 1
-    right = np.zeros((*sums.shortfall.shape, 3))
+    right = np.zeros((*sums.shortfall.shape, 3), dtype=sums.matrix.dtype)
     right[:, :, 0] = sums.shortfall + sums.correction
     energy = np.zeros_like(sums.enthalpy)
     if problem.given == "enthalpy":
@@ -310,7 +311,7 @@ def _advance(
     if pressure_step is not None:
         species -= pressure_step[:, None]
     abundant = x.log_amounts > (x.log_moles + _ABUNDANT)[:, None]
-    rise = np.max(species, axis=1, where=abundant, initial=0.0)
+    rise = np.max(species.real, axis=1, where=abundant, initial=0.0)
     longest = np.maximum(np.maximum(rise / _SPECIES_STEP, np.abs(dlnt) / _TEMPERATURE_STEP), np.abs(dlnn) / _MOLES_STEP)
     factor = 1.0 / np.maximum(longest, 1.0)
     x.log_amounts += factor[:, None] * species

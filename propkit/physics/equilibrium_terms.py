@@ -49,6 +49,11 @@ class Unknowns:
         """Return the unknowns of some cases (a copy)."""
         return Unknowns(*(getattr(self, part.name)[rows] for part in fields(self)))
 
+    def complex(self) -> Unknowns:
+        """Return the unknowns with room for tangents (a copy)."""
+        parts = (getattr(self, part.name) for part in fields(self))
+        return Unknowns(*(part.astype(np.complex128) if part.dtype.kind == "f" else part.copy() for part in parts))
+
     def put(self, rows: Any, other: Unknowns) -> None:
         """Overwrite some cases."""
         for part in fields(self):
@@ -119,7 +124,7 @@ class Problem:
 
     def _log_bounds(self) -> Array:
         """Return ln of what the elements of each case could form of each gas species at most, shape (case, species)."""
-        log_elements = np.log(self.elements)
+        log_elements = np.log(self.elements.real)
         bounds = np.full((self.elements.shape[0], self.table.gas_count), np.inf)
         for column in range(self.elements.shape[1]):
             has = self.bordered[:, column] > 0.0

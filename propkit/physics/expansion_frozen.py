@@ -14,7 +14,7 @@ import numpy as np
 
 from propkit.constants import GAS_CONSTANT
 from propkit.physics import gas_dynamics
-from propkit.physics.arrays import Array
+from propkit.physics.arrays import Array, magnitude
 from propkit.physics.equilibrium import CONVERGED, NOT_CONVERGED, OUT_OF_RANGE
 from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE, Integers
 from propkit.physics.expansion_shifting import Shifting
@@ -162,7 +162,7 @@ class Frozen:
                 (self.enthalpy - gas.enthalpy) / (gas.heat_capacity * gas.temperature), -_LARGEST_STEP, _LARGEST_STEP
             )
             x = x + step
-            if not (np.abs(step) > _ACCEPTED).any():
+            if not (magnitude(step) > _ACCEPTED).any():
                 break
         return np.exp(x)
 
@@ -176,7 +176,7 @@ class Frozen:
             with np.errstate(divide="ignore", invalid="ignore"):
                 step = np.clip(-value / slope, -_LARGEST_STEP, _LARGEST_STEP)
             x = np.where(active & np.isfinite(step), x + step, x)
-            smaller = np.minimum(np.abs(step), np.abs(value))
+            smaller = np.minimum(magnitude(step), magnitude(value))
             stalled = (smaller < _ACCEPTED) & (smaller >= 0.5 * size)
             size, steps = np.where(active, smaller, size), steps + active
             active &= (smaller > _TOLERANCE) & ~stalled & np.isfinite(step)

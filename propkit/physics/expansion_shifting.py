@@ -14,8 +14,8 @@ import numpy as np
 
 from propkit.constants import GAS_CONSTANT
 from propkit.physics import expansion_two_phase, gas_dynamics
-from propkit.physics.arrays import Array
-from propkit.physics.equilibrium import NOT_CONVERGED, EquilibriumState, solve_batch
+from propkit.physics.arrays import Array, distinct, has_tangent, plain
+from propkit.physics.equilibrium import CONVERGED, NOT_CONVERGED, EquilibriumState, solve_batch, with_tangent
 from propkit.physics.equilibrium_terms import FlowCondition, FlowTrial, Integers
 from propkit.physics.expansion_state import FlowState, choose, take_cases, velocity
 from propkit.physics.thermodynamics import SpeciesTable
@@ -70,11 +70,18 @@ class Shifting:
 
     def at_pressure(self, pressure: Array, near: FlowState | None = None) -> FlowState:
         """Return the state at a pressure [Pa]."""
+        if has_tangent(*self._given, pressure):
+            base, rows, back = self._plain(pressure)
+            nearby = None if near is None else plain(near).take(rows)
+            return self._moved(base.at_pressure(pressure.real[rows], nearby).take(back), None, pressure)
         known = self.reservoir if near is None or near.equilibrium is None else near.equilibrium
         return self._state(self._solve(pressure, known, None))
 
     def throat(self) -> FlowState:
         """Return the state of largest mass flux: Mach 1 with the composition following."""
+        if has_tangent(*self._given):
+            base, _, back = self._plain()
+            return self._moved(base.throat().take(back), _Sonic(self))
         if self.table.condensed.any():
             return expansion_two_phase.throat(self)
         gamma = np.maximum(self.reservoir.isentropic_exponent, _LOWEST_EXPONENT)
@@ -84,6 +91,10 @@ class Shifting:
 
     def at_mass_flux(self, mass_flux: Array, at_throat: FlowState, supersonic: bool) -> FlowState:
         """Return the state at a mass flux [kg/(m2 s)] on one side of the throat."""
+        if has_tangent(*self._given, mass_flux, at_throat.mass_flux):
+            base, rows, back = self._plain(mass_flux)
+            there = base.at_mass_flux(mass_flux.real[rows], plain(at_throat).take(rows), supersonic)
+            return self._moved(there.take(back), self._passing(mass_flux, at_throat, supersonic))
         if self.table.condensed.any():
             return expansion_two_phase.at_mass_flux(self, mass_flux, at_throat, supersonic)
         ratio = at_throat.mass_flux / mass_flux
@@ -98,6 +109,34 @@ class Shifting:
             slow = self.pressure - head
             pressure = np.where(head < _SLOW * self.pressure, slow, np.minimum(at_throat.pressure * fall, slow))
         known = at_throat.equilibrium if at_throat.equilibrium is not None and supersonic else self.reservoir
+        found = self._state(self._solve(pressure, known, self._passing(mass_flux, at_throat, supersonic)))
+        found = choose(found, at_throat, np.abs(np.log(ratio)) < _AT_THROAT)
+        return self._rescued(
+            found,
+            lambda part, rows: expansion_two_phase.at_mass_flux(
+                part, mass_flux[rows], at_throat.take(rows), supersonic
+            ),
+        )
+
+    @property
+    def _given(self) -> tuple[Array, ...]:
+        return self.elements, self.enthalpy, self.entropy, self.pressure
+
+    def _plain(self, *more: Array) -> tuple[Shifting, Integers, Integers]:
+        """Return the isentrope without tangents of the cases that differ, which these are, and where each case is among them."""
+        base = plain(self)
+        rows, back = distinct(*base._given, *(part.real for part in more))
+        return base.take(rows), rows, back
+
+    def _moved(self, known: FlowState, condition: FlowCondition | None, pressure: Array | None = None) -> FlowState:
+        """Return a state of known values with its tangents."""
+        assert known.equilibrium is not None
+        given = known.pressure if pressure is None else pressure
+        found = with_tangent(self.table, self.elements, given, "entropy", self.entropy, known.equilibrium, condition)
+        return self._state(replace(found, status=np.where(known.status == CONVERGED, found.status, known.status)))
+
+    def _passing(self, mass_flux: Array, at_throat: FlowState, supersonic: bool) -> FlowCondition:
+        """Return the condition of a mass flux on one side of the throat."""
         goal, log_top = np.log(mass_flux), np.log(at_throat.mass_flux)
         wanted = np.sqrt(2.0 * np.maximum(log_top - goal, 0.0))
 
@@ -109,14 +148,7 @@ class Shifting:
             near = root < np.sqrt(2.0 * _NEAR_THROAT)
             return np.where(near, distance - root, missing), np.where(near, -slope / distance, slope)
 
-        found = self._state(self._solve(pressure, known, condition))
-        found = choose(found, at_throat, np.abs(np.log(ratio)) < _AT_THROAT)
-        return self._rescued(
-            found,
-            lambda part, rows: expansion_two_phase.at_mass_flux(
-                part, mass_flux[rows], at_throat.take(rows), supersonic
-            ),
-        )
+        return condition
 
     def _rescued(self, found: FlowState, bracketed: Callable[[Shifting, Integers], FlowState]) -> FlowState:
         """Return the states with those that did not converge solved again by a bracket in pressure."""
@@ -176,7 +208,7 @@ class _Sonic:
 
     def __init__(self, isentrope: Shifting) -> None:
         self.isentrope = isentrope
-        self.log_pressure = np.full(isentrope.pressure.shape, np.nan)
+        self.log_pressure = np.full(isentrope.pressure.shape, np.nan, dtype=np.result_type(*isentrope._given))
         self.log_exponent = np.zeros_like(self.log_pressure)
 
     def __call__(self, trial: FlowTrial, number: Integers) -> tuple[Array, Array]:
@@ -185,7 +217,12 @@ class _Sonic:
         turning = trial.moles_slope + trial.temperature_slope
         log_exponent = -np.log(np.maximum(1.0 - turning, _SMALLEST_HEAD))
         with np.errstate(divide="ignore", invalid="ignore"):
-            change = (log_exponent - self.log_exponent[number]) / (trial.log_pressure - self.log_pressure[number])
+            change = _moving(log_exponent - self.log_exponent[number]) / _moving(trial.log_pressure - self.log_pressure[number])
         self.log_pressure[number], self.log_exponent[number] = trial.log_pressure, log_exponent
         change = np.clip(np.where(np.isfinite(change), change, 0.0), -_LARGEST_CHANGE, _LARGEST_CHANGE)
         return np.log(square / thermal) - log_exponent, -2.0 * thermal / square - turning - change
+
+
+def _moving(step: Array) -> Array:
+    """Return what moves in a step: where there are tangents the values have settled before."""
+    return step.imag if np.iscomplexobj(step) else step

@@ -11,7 +11,7 @@ from typing import Final, Literal
 import numpy as np
 
 from propkit.errors import ConvergenceError
-from propkit.physics.arrays import Array, Values, require, values
+from propkit.physics.arrays import Array, Values, has_tangent, require, values
 
 Branch = Literal["supersonic", "subsonic"]
 
@@ -227,18 +227,23 @@ def mach_from_area_ratio(area_ratio: Values, isentropic_exponent: Values, branch
     ratio, g = np.broadcast_arrays(values(area_ratio), checked_exponent(isentropic_exponent))
     require(np.isfinite(ratio) & (ratio >= 1.0), "area_ratio", ratio, "1 or more", "It is flow over sonic area.")
     sign = 1.0 if branch == "supersonic" else -1.0
-    goal = np.log(ratio)
-    start = np.sqrt(0.5 * (g + 1.0) * goal)
-    x = np.asarray(sign * start)
+    goal, exponent = np.log(ratio.real), g.real
+    x = np.asarray(sign * np.sqrt(0.5 * (exponent + 1.0) * goal))
     for _ in range(_ITERATIONS):
-        square = np.expm1(2.0 * x)
-        slope = square / (1.0 + 0.5 * (g - 1.0) * (square + 1.0))
-        step = np.where(goal > 0.0, (goal - _log_area_ratio(x, g)) / np.where(slope == 0.0, 1.0, slope), 0.0)
+        step = _towards(goal, x, exponent)
         x = x + step
         if np.all(np.abs(step) <= 4.0 * np.spacing(np.abs(x)) + _STEP):
-            return values(np.exp(x))
+            # one more step from the root carries the tangents
+            return values(np.exp(x + _towards(np.log(ratio), x, g) if has_tangent(ratio, g) else x))
     worst = float(np.max(np.abs(step)))
     raise ConvergenceError("The Mach number of an area ratio did not settle.", iterations=_ITERATIONS, residual=worst)
+
+
+def _towards(goal: Array, x: Array, g: Array) -> Array:
+    """Return Newton's step in x = ln M towards ln(A/A*) = goal; none at the throat, where the slope vanishes."""
+    square = np.expm1(2.0 * x)
+    slope = square / (1.0 + 0.5 * (g - 1.0) * (square + 1.0))
+    return np.where(goal > 0.0, (goal - _log_area_ratio(x, g)) / np.where(slope == 0.0, 1.0, slope), 0.0)
 
 
 def mach_from_pressure_ratio(pressure_ratio: Values, isentropic_exponent: Values) -> Array:

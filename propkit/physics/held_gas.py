@@ -7,7 +7,7 @@ from typing import Final
 import numpy as np
 
 from propkit.constants import GAS_CONSTANT
-from propkit.physics.arrays import Array, Values, values
+from propkit.physics.arrays import Array, Values, magnitude, values
 from propkit.physics.equilibrium import CONVERGED, NOT_CONVERGED, OUT_OF_RANGE, EquilibriumState
 from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE
 from propkit.physics.thermodynamics import SpeciesTable
@@ -49,7 +49,7 @@ def held_state(table: SpeciesTable, amounts: Array, pressure: Values, temperatur
     moles = amounts.sum(axis=1)
     with np.errstate(divide="ignore", invalid="ignore"):
         logs = np.where(amounts > 0.0, np.log(amounts / moles[:, None]), 0.0)
-    logs += np.log(p / table.reference_pressure)[:, None]
+    logs = logs + np.log(p / table.reference_pressure)[:, None]
     heat = GAS_CONSTANT * np.sum(amounts * properties.heat_capacity, axis=1)
     exponent = heat / (heat - GAS_CONSTANT * moles)
     outside = ~((t >= LOWEST_TEMPERATURE) & (t <= table.temperature_high.max()))
@@ -106,6 +106,6 @@ def held_temperature(table: SpeciesTable, amounts: Array, enthalpy: Values) -> A
         missing = wanted / (GAS_CONSTANT * t) - np.sum(amounts * properties.enthalpy, axis=1)
         step = np.clip(missing / heat, -_LARGEST_STEP, _LARGEST_STEP)
         t = t * np.exp(step)
-        if not (np.abs(step) > _SETTLED).any():
+        if not (magnitude(step) > _SETTLED).any():
             break
-    return np.where(np.abs(step) <= _ACCEPTED, t, np.nan)
+    return np.where(magnitude(step) <= _ACCEPTED, t, np.nan)

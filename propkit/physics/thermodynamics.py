@@ -151,7 +151,7 @@ class SpeciesTable:
 
     def interval(self, temperature: Array) -> npt.NDArray[np.intp]:
         """Return the number of the interval between breakpoints that each temperature [K] falls in."""
-        return np.searchsorted(self.breakpoints, temperature, side="right")
+        return np.searchsorted(self.breakpoints, temperature.real, side="right")
 
     def part(self, present: npt.NDArray[np.bool_]) -> tuple[SpeciesTable, npt.NDArray[np.intp]]:
         """Return the species that can form when only some of the elements are present.
@@ -226,7 +226,7 @@ def apply_segments(factors: Array, interval: npt.NDArray[np.intp], segments: Arr
     count, first = interval.size, int(interval[0])
     if count == 1 or (interval == first).all():
         return np.asarray(factors.reshape(3 * count, _COEFFICIENTS) @ segments[first]).reshape(3, count, -1)
-    out = np.empty((3, count, segments.shape[2]))
+    out = np.empty((3, count, segments.shape[2]), dtype=factors.dtype)
     for number in np.unique(interval):
         rows = np.flatnonzero(interval == number)
         out[:, rows] = (factors[:, rows].reshape(-1, _COEFFICIENTS) @ segments[number]).reshape(3, rows.size, -1)

@@ -30,6 +30,7 @@ from propkit.model.performance import Performance
 from propkit.model.propellant_case import ROLES, PropellantCase
 from propkit.model.state import STATE_FIELDS
 from propkit.physics import balances, thrust
+from propkit.physics.arrays import has_tangent, values
 
 Array = npt.NDArray[np.float64]
 
@@ -83,7 +84,14 @@ class Batch:
 
     def array(self, link: Calculation, name: str) -> Array:
         """Return an input as an array."""
-        return np.broadcast_to(np.asarray(self.value(link, name), dtype=np.float64), (self.count,)).astype(np.float64)
+        return np.array(np.broadcast_to(values(self.value(link, name)), (self.count,)))
+
+    def untouched(self, given: Any) -> Any:
+        """Return an input of what knows no tangents, without them; cases that have one there have no derivative."""
+        if not has_tangent(given):
+            return given
+        self.require(given.imag == 0.0, "no exact derivative passes through tabulated data")
+        return given.real
 
     def keep(self, link: Calculation, results: Mapping[str, Any]) -> None:
         """Note results of an object."""
@@ -115,7 +123,7 @@ class Batch:
         density: Any = stream.density
         stored = [f"{link.kind}.{role}_{name}" for name in ("temperature", "pressure")]
         if any(path in self.inputs for path in stored):
-            temperature, pressure = (self.value(link, f"{role}_{name}") for name in ("temperature", "pressure"))
+            temperature, pressure = (self.untouched(self.value(link, f"{role}_{name}")) for name in ("temperature", "pressure"))
             enthalpy, density = self._stored(link._values[role], temperature, pressure, role)
         assigned = self.inputs.get(f"case.{role}.{ENTHALPY}")
         if assigned is not None:
@@ -303,6 +311,7 @@ class Batch:
         if contour is None:
             return np.ones(self.count)
         factors: dict[float, float] = {}
+        ratio = self.untouched(ratio)
         for each in np.unique(ratio).tolist():
             try:
                 factors[each] = wall.divergence_factor(contour, each)
@@ -425,9 +434,9 @@ def _checked_batch(target: Calculation) -> dict[str, float]:
     if not batch.good.all():
         return {}
     links = {link.kind: link for link in target.chain()}
-    for path, values in batch.results.items():
+    for path, column in batch.results.items():
         kind, _, name = path.partition(".")
-        value = float(np.broadcast_to(values, (1,))[0])
+        value = float(np.broadcast_to(column, (1,))[0])
         try:
             known = links[kind].given_or_result(name) if "." not in name else links[kind].si_of(name)
         except (NotAvailableError, AttributeError):

@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -21,6 +22,7 @@ from propkit.model import paths, wall
 from propkit.model.base import Calculation
 from propkit.model.declare import Bounds, CustomInput, NumberInput, QuantityInput
 from propkit.model.propellant_case import ROLES, PropellantCase
+from propkit.physics.arrays import TANGENT
 from propkit.study.batch import ENTHALPY, WALL_SIZES, Batch, Probe, has_stage
 
 Array = npt.NDArray[np.float64]
@@ -119,6 +121,14 @@ class Explained:
     slow: int = 0
 
 
+@dataclass(frozen=True, slots=True)
+class Tangents:
+    """Results at one case by name, and their exact derivatives by input and result; empty where there are none."""
+
+    values: dict[str, float]
+    slopes: dict[str, dict[str, float]]
+
+
 @dataclass(frozen=True)
 class ChainFunction:
     """A batch function of the chain that ends in `target`; picklable.
@@ -174,6 +184,40 @@ class ChainFunction:
             probe = Probe(self.template, sample, count)
             made = probe.accelerator()
         return self if made is None else replace(self, quick=made)
+
+    def tangents(self, nominal: Mapping[str, float]) -> Tangents:
+        """Return results and derivatives, exact to rounding, at one case; an input without exact ones is left out.
+
+        Parameters
+        ----------
+        nominal : mapping of str to float
+            The inputs, in SI.
+
+        Notes
+        -----
+        One case for each input, with a tangent in it (see `propkit.physics.arrays`): a solver carries it with one step of its
+        converged matrix, every other relation as it stands. Inputs that go through tabulated data (stored temperatures, contours), results
+        at a phase boundary and recipes without a batch form have none.
+        """
+        if not self.batched:
+            return Tangents({}, {})
+        scales = {path: abs(value) or 1.0 for path, value in nominal.items()}
+        moved: dict[str, Any] = {
+            path: value + 1j * TANGENT * scales[path] * np.array([path == other for other in nominal]) for path, value in nominal.items()
+        }
+        try:
+            found = self.explained(moved, len(nominal)).results
+        except TypeError:  # a relation that takes one number at a time has no room for a tangent
+            return Tangents({}, {})
+        table = np.array(list(found.values()), dtype=np.complex128)
+        good: npt.NDArray[np.bool_] = np.asarray(np.isfinite(table).all(axis=0))
+        slopes = {
+            path: dict(zip(found, (table[:, place].imag / TANGENT / scales[path]).tolist(), strict=True))
+            for place, path in enumerate(nominal)
+            if good[place]
+        }
+        values = dict(zip(found, table[:, good.argmax()].real.tolist(), strict=True)) if good.any() else {}
+        return Tangents(values, slopes)
 
     def explained(self, inputs: Mapping[str, Array], count: int | None = None) -> Explained:
         """Return the results at every case, and why a case has none, by its number."""

@@ -10,14 +10,15 @@ import math
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from itertools import pairwise
-from typing import Any, Literal
+from typing import Any, Literal, Protocol, runtime_checkable
 
 import numpy as np
 import numpy.typing as npt
 
 from propkit.errors import ConvergenceError, InputError, Problem
 from propkit.study.coverage import Stability, statistics, tolerance
-from propkit.study.differences import Evaluate, stencil
+from propkit.study.differences import Evaluate, Stencil, stencil
+from propkit.study.evaluation import Tangents
 from propkit.study.executors import BlockRun, run_blocks
 from propkit.study.joint import JointInputs, Reach, check_seed
 
@@ -31,6 +32,14 @@ ADAPTIVE_ROUND = 10_000
 """Trials between two looks at the tolerance: max(100/(1 - p) rounded up, 10 000), JCGM 101 clause 7.9.4 b."""
 ADAPTIVE_MOST = 1_000_000
 """Trials after which an adaptive run stops whatever it has reached."""
+
+
+@runtime_checkable
+class Differentiable(Protocol):
+    """A batch function that knows derivatives of its own."""
+
+    def tangents(self, nominal: Mapping[str, float]) -> Tangents:
+        """Return results and exact derivatives at one case; an input without exact ones is left out."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -49,8 +58,8 @@ class FirstOrder:
         Covariance of the results.
     shares : array, shape (results, inputs)
         Share of each input in the variance of a result; they add up to 1, and with correlated inputs may be negative.
-    curvature : array, shape (results, inputs)
-        Second-order over first-order effect of one standard uncertainty [1].
+    exact : tuple of str
+        Inputs whose sensitivity coefficients are exact, not found by differences.
     """
 
     paths: tuple[str, ...]
@@ -59,7 +68,7 @@ class FirstOrder:
     derivatives: Array
     covariance: Array
     shares: Array
-    curvature: Array
+    exact: tuple[str, ...] = ()
 
     @property
     def standard_uncertainty(self) -> Array:
@@ -67,11 +76,10 @@ class FirstOrder:
         deviations: Array = np.sqrt(np.maximum(np.diag(self.covariance), 0.0))
         return deviations
 
-    @property
-    def bent(self) -> tuple[tuple[str, str], ...]:
-        """Pairs of result and input with a curvature above a tenth that matters: first order is doubtful there."""
+    def bent(self, curvature: Array) -> tuple[tuple[str, str], ...]:
+        """Return pairs of result and input with a curvature above a tenth that matters: first order is doubtful there."""
         share = np.abs(self.shares) > 0.01
-        found = np.argwhere((self.curvature > 0.1) & share)
+        found = np.argwhere((curvature > 0.1) & share)
         return tuple((self.results[i], self.paths[j]) for i, j in found)
 
 
@@ -133,7 +141,8 @@ def first_order(
     inputs : JointInputs
         Uncertain inputs.
     derivatives : mapping of result to mapping of path to float, optional
-        Sensitivity coefficients where they are known exactly; others are found by differences.
+        Sensitivity coefficients where they are known exactly; others are those that `evaluate` knows itself (see
+        `Differentiable`), or are found by differences.
 
     Returns
     -------
@@ -143,24 +152,51 @@ def first_order(
     Raises
     ------
     InputError
-        When the results do not exist at the nominal inputs or one standard uncertainty away from them.
+        When the results do not exist at the nominal inputs or, with differences, one standard uncertainty away from them.
 
     Notes
     -----
-    u(y)² = c V cᵀ with the sensitivity coefficients c and the covariance matrix V of the inputs. Differences use
+    u(y)² = c V cᵀ with the sensitivity coefficients c and the covariance matrix V of the inputs. Differences, where they are needed, use
     one and half a standard uncertainty to both sides (as the GUM suggests, 5.1.3 note 2), extrapolated to nothing by
     Richardson; near the end of a legal range they shrink or stay on one side.
 
     Source: JCGM 100:2008, 5.1.2 equation (10) and 5.2.2 equation (13).
     """
-    limits = np.array([inputs.bounds.get(path, (-math.inf, math.inf)) for path in inputs.paths])
-    deviations = inputs.deviations
-    around = stencil(np.array(list(inputs.nominal.values())), deviations, limits[:, 0], limits[:, 1])
-    answers = {
-        name: np.asarray(values, dtype=np.float64) for name, values in evaluate(around.inputs(inputs.paths)).items()
-    }
-    results = tuple(answers)
-    table = np.array([answers[name] for name in results])
+    known = evaluate.tangents(inputs.nominal) if isinstance(evaluate, Differentiable) else Tangents({}, {})
+    left = tuple(path for path in inputs.paths if path not in known.slopes)
+    values, slopes = known.values, known.slopes
+    if left:
+        values, differences = _differences(evaluate, inputs, left)
+        slopes = slopes | differences
+    results, nominal = tuple(values), np.array(list(values.values()))
+    table = np.array([[slopes[path][name] for path in inputs.paths] for name in results])
+    for place, name in enumerate(results):
+        for path, value in (derivatives or {}).get(name, {}).items():
+            table[place, inputs.paths.index(path)] = value
+    exact = tuple(path for path in inputs.paths if path in known.slopes or _known_for(path, results, derivatives))
+    return _budget(inputs, results, nominal, table, exact)
+
+
+def _known_for(path: str, results: Sequence[str], derivatives: Mapping[str, Mapping[str, float]] | None) -> bool:
+    return derivatives is not None and all(path in derivatives.get(name, {}) for name in results)
+
+
+def _around(evaluate: Evaluate, inputs: JointInputs, paths: Sequence[str]) -> tuple[Stencil, tuple[str, ...], Array]:
+    """Return a stencil about the nominal inputs in some of them, the names of the results, and the results at its points."""
+    limits = np.array([inputs.bounds.get(path, (-math.inf, math.inf)) for path in paths])
+    nominal = inputs.nominal
+    deviations = [inputs.distributions[path].standard_uncertainty for path in paths]
+    around = stencil(np.array([nominal[path] for path in paths]), np.array(deviations), limits[:, 0], limits[:, 1])
+    points = {path: np.full(len(around.points), value) for path, value in nominal.items()} | around.inputs(paths)
+    answers = evaluate(points)
+    return around, tuple(answers), np.array([np.asarray(values, dtype=np.float64) for values in answers.values()])
+
+
+def _differences(
+    evaluate: Evaluate, inputs: JointInputs, paths: Sequence[str]
+) -> tuple[dict[str, float], dict[str, dict[str, float]]]:
+    """Return nominal results, and derivatives by input and result, from differences."""
+    around, results, table = _around(evaluate, inputs, paths)
     bad = [name for name, row in zip(results, table, strict=True) if not np.isfinite(row).all()]
     if bad:
         raise InputError(
@@ -168,23 +204,51 @@ def first_order(
             "use a smaller uncertainty, or trials (samples=...), which count such cases",
             results=tuple(bad),
         )
-    slopes, bends = around.slopes(table), around.bends(table)
-    for place, name in enumerate(results):
-        for path, value in (derivatives or {}).get(name, {}).items():
-            slopes[place, inputs.paths.index(path)] = value
+    slopes = around.slopes(table)
+    found = {path: dict(zip(results, slopes[:, place].tolist(), strict=True)) for place, path in enumerate(paths)}
+    return dict(zip(results, table[:, 0].tolist(), strict=True)), found
+
+
+def curvature(evaluate: Evaluate, inputs: JointInputs, linear: FirstOrder) -> Array:
+    """Return what second order adds to first order over one standard uncertainty of each input [1].
+
+    Parameters
+    ----------
+    evaluate, inputs
+        As for `first_order`.
+    linear : FirstOrder
+        What that gave.
+
+    Returns
+    -------
+    array, shape (results, inputs)
+        Second-order over first-order effect; infinite where a result does not exist one standard uncertainty away.
+
+    Notes
+    -----
+    The second derivatives are found by differences.
+    """
+    around, _, table = _around(evaluate, inputs, inputs.paths)
+    deviations = inputs.deviations
+    effect = np.abs(linear.derivatives) * deviations
+    bent = 0.5 * np.abs(around.bends(table)) * deviations**2
+    found = np.divide(bent, effect, out=np.zeros_like(bent), where=effect > 0.0)
+    return np.where(np.isfinite(found), found, np.inf)
+
+
+def _budget(inputs: JointInputs, results: tuple[str, ...], nominal: Array, slopes: Array, exact: tuple[str, ...]) -> FirstOrder:
+    """Return covariance and shares."""
+    deviations = inputs.deviations
     # differences leave rounding where an input has no effect
     effects = np.abs(slopes) * deviations
-    floor = np.maximum(1e-9 * effects.max(axis=1), NOTHING * np.abs(table[:, 0]))
+    floor = np.maximum(1e-9 * effects.max(axis=1), NOTHING * np.abs(nominal))
     slopes = np.where(effects > floor[:, None], slopes, 0.0)
     covariance = slopes @ inputs.covariance @ slopes.T
     variance = np.diag(covariance)[:, None]
     mixed = slopes * (slopes @ inputs.covariance)
     # both arrays are divided only where there is something to divide by
     shares = np.divide(mixed, variance, out=np.zeros_like(mixed), where=variance > 0.0)
-    effect = np.abs(slopes) * deviations
-    bent = 0.5 * np.abs(bends) * deviations**2
-    curvature = np.divide(bent, effect, out=np.zeros_like(bent), where=effect > 0.0)
-    return FirstOrder(inputs.paths, results, table[:, 0], slopes, covariance, shares, curvature)
+    return FirstOrder(inputs.paths, results, nominal, slopes, covariance, shares, exact)
 
 
 def monte_carlo(

@@ -17,7 +17,7 @@ from propkit.report import Column, Report, Row, Section, Table, UnitSystem
 from propkit.series import Axis, Bars, Figure, Line, Rule, Series
 from propkit.study.coverage import COVERAGE
 from propkit.study.evaluation import result_quantity
-from propkit.study.propagation import NOTHING, FirstOrder, Trials
+from propkit.study.propagation import NOTHING, FirstOrder, Trials, curvature
 from propkit.study.rounding import Rounded, rounded
 from propkit.study.sensitivity import SobolIndices
 
@@ -47,12 +47,13 @@ class UncertaintyResult:
         Number of trials as asked for.
     """
 
-    __slots__ = ("_illegal", "_reason", "asked", "first_order", "plan", "trials")
+    __slots__ = ("_curvature", "_illegal", "_reason", "asked", "first_order", "plan", "trials")
 
     plan: Uncertainty
     first_order: FirstOrder | None
     trials: Trials | None
     asked: int | str | None
+    _curvature: Array | None
     _illegal: str
     _reason: str
 
@@ -65,6 +66,7 @@ class UncertaintyResult:
         asked: int | str | None = None,
         illegal: str = "refuse",
     ) -> None:
+        object.__setattr__(self, "_curvature", None)
         object.__setattr__(self, "asked", asked)
         object.__setattr__(self, "_illegal", illegal)
         object.__setattr__(self, "plan", plan)
@@ -102,11 +104,20 @@ class UncertaintyResult:
         if self._reason:
             found.append(Doubt(f"There is no first-order analysis: {self._reason}", code="first-order", about="budget"))
         if self.first_order is not None:
-            for result, path in self.first_order.bent:
+            for result, path in self.first_order.bent(self.curvature):
                 text = f"{result} bends noticeably over the uncertainty of {path}: first order is doubtful"
                 hint = "" if self.trials is not None else "; use trials (samples=...)"
                 found.append(Doubt(f"{text}{hint}.", code="curvature", about=result))
         return tuple(found)
+
+    @property
+    def curvature(self) -> Array:
+        """What second order adds to first order over one standard uncertainty, shape (results, inputs) [1]; found when asked for."""
+        if self._curvature is None:
+            found = curvature(self.plan.function, self.plan._joint, self._linear())
+            object.__setattr__(self, "_curvature", found)
+        assert self._curvature is not None
+        return self._curvature
 
     @property
     def table(self) -> pd.DataFrame:
@@ -156,7 +167,8 @@ class UncertaintyResult:
         -------
         DataFrame
             Index input; columns value, standard_uncertainty, sensitivity (result per input, SI), contribution (SI of the
-            result) and share of the variance [1]; with correlated inputs shares may be negative.
+            result), share of the variance [1] and derivative ("exact" or "differences": how the sensitivity was found); with
+            correlated inputs shares may be negative.
 
         Raises
         ------
@@ -175,6 +187,7 @@ class UncertaintyResult:
                 "sensitivity": linear.derivatives[place],
                 "contribution": np.abs(linear.derivatives[place]) * joint.deviations,
                 "share": linear.shares[place],
+                "derivative": ["exact" if path in linear.exact else "differences" for path in linear.paths],
             },
             index=pd.Index(linear.paths, name="input"),
         )
@@ -351,9 +364,17 @@ class UncertaintyResult:
             )
             for name in shown
         )
-        note = "Share of each input in the variance of a result, first order; see budget(result) for any other."
+        note = f"Share of each input in the variance of a result, first order, {self._how_derived()}; see budget(result) for any other."
         table = Table("budget", "Budget", "input", self.first_order.paths, columns, note)
         return (Section("budget", "Budget", table=table),)
+
+    def _how_derived(self) -> str:
+        """Return how the sensitivities were found."""
+        linear = self._linear()
+        left = [path for path in linear.paths if path not in linear.exact]
+        if not left:
+            return "derivatives exact"
+        return f"derivatives by differences in {', '.join(left)}{', exact in the others' if linear.exact else ''}"
 
     # -- figures ---------------------------------------------------------------------------------------
 
