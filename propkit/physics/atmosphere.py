@@ -463,9 +463,9 @@ def altitude_of_pressure(pressure: Values) -> Array:
             f"has {lowest:.4g} to {highest:.6g} Pa.",
             pressure=worst,
         )
-    return np.where(
-        wanted >= _TOP_PRESSURE, _layer_altitude(wanted), _upper_altitude(np.minimum(wanted, _TOP_PRESSURE))
-    )
+    found = _layer_altitude(wanted)
+    upper = wanted < _TOP_PRESSURE
+    return np.where(upper, _upper_altitude(np.minimum(wanted, _TOP_PRESSURE)), found) if upper.any() else found
 
 
 def _layer_altitude(wanted: Array) -> Array:
