@@ -7,7 +7,7 @@ Values are in display units already; `unit` says which.
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from typing import Literal
+from typing import Literal, TypeAlias
 
 
 @dataclass(frozen=True, slots=True)
@@ -92,6 +92,43 @@ class Rule:
 
 
 @dataclass(frozen=True, slots=True)
+class Regions:
+    """Regions of the plane, one laid over the other; each is rings of points with NaN between two rings.
+
+    The `hatched` ones stand for what is not allowed; a legend tells their `label`.
+    """
+
+    xs: tuple[tuple[float, ...], ...]
+    ys: tuple[tuple[float, ...], ...]
+    colour: int | Literal["ink", "accent", "quiet"] = 0
+    opacity: float = 0.1
+    outlined: bool = True
+    hatched: bool = False
+    label: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Texts:
+    """Short texts centred on points: the values of contours."""
+
+    x: tuple[float, ...]
+    y: tuple[float, ...]
+    texts: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Points:
+    """Points that a live plot tells of under the pointer, each with the numbers of `hover`; a drawing leaves them out."""
+
+    x: Series
+    y: Series
+    hover: tuple[Series, ...] = ()
+
+
+Layer: TypeAlias = Line | Bars | Mark | Rule | Regions | Texts | Points
+
+
+@dataclass(frozen=True, slots=True)
 class Figure:
     """One figure: axes and layers, with a text that replaces it for those who cannot see it.
 
@@ -103,6 +140,6 @@ class Figure:
     alt: str
     x: Axis
     y: Axis
-    layers: tuple[Line | Bars | Mark | Rule, ...] = field(default_factory=tuple)
+    layers: tuple[Layer, ...] = field(default_factory=tuple)
     equal_aspect: bool = False
     bare: bool = False

@@ -40,6 +40,7 @@ DOWNWARD = {
     "record": "propkit.record:record_of",
     "record_bundle": "propkit.record:bundle_of",
     "panel": "propkit.panels:panel_of",
+    "study_panel": "propkit.panels:panel_of_study",
     "plot": "propkit.plots:plot_of",
     "figure": "propkit.plots.build:build",
     "study_plot": "propkit.plots.study:plot_of_study",

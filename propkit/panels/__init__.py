@@ -2,11 +2,23 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from typing import Any
 
 from propkit.errors import MissingExtraError
 
-__all__ = ["panel_of"]
+__all__ = ["panel_of", "panel_of_study"]
+
+
+def _needed() -> None:
+    """Refuse where the packages of the ``notebook`` extra are not installed."""
+    try:
+        import anywidget
+        import bokeh
+        import ipywidgets
+    except ImportError as error:
+        raise MissingExtraError(error.name or "ipywidgets", "notebook", "a panel") from error
+    del anywidget, bokeh, ipywidgets
 
 
 def panel_of(calculation: Any) -> Any:
@@ -17,13 +29,7 @@ def panel_of(calculation: Any) -> Any:
     MissingExtraError
         When the packages of the ``notebook`` extra are not installed.
     """
-    try:
-        import anywidget
-        import bokeh
-        import ipywidgets
-    except ImportError as error:
-        raise MissingExtraError(error.name or "ipywidgets", "notebook", "a panel") from error
-    del anywidget, bokeh, ipywidgets
+    _needed()
     if calculation.kind in ("firing", "reconciliation"):
         from propkit.panels.analysis import FiringPanel, ReconciliationPanel
 
@@ -31,3 +37,17 @@ def panel_of(calculation: Any) -> Any:
     from propkit.panels.panel import Panel
 
     return Panel(calculation)
+
+
+def panel_of_study(study: Any, result: str, limits: Mapping[str, tuple[Any, Any]] | None, minimum: bool) -> Any:
+    """Return the panel of a study or of its results (see `Study.panel`).
+
+    Raises
+    ------
+    MissingExtraError
+        When the packages of the ``notebook`` extra are not installed.
+    """
+    _needed()
+    from propkit.panels.study_panel import StudyPanel
+
+    return StudyPanel(study, result=result, limits=limits, minimum=minimum)

@@ -72,6 +72,8 @@ class Face:
 
     def __init__(self, link: Any) -> None:
         self.link = link
+        self.varied: frozenset[str] = frozenset()
+        """Inputs that have no value of their own in this panel: a study varies them, or displaces them."""
 
     @property
     def kind(self) -> str:
@@ -109,7 +111,7 @@ class Face:
         grouped = {name: group for group in self.groups() for name in group.members}
         skipped = {self.link.upstream_input, *self.hidden(), *self.only_in_code}
         for name in self.link.declared_inputs:
-            if (name in skipped and not self.fixed(name)) or (name in grouped and grouped[name].member != name):
+            if (name in skipped and not self.fixed(name)) or (name in grouped and grouped[name].member != name) or name in self.varied:
                 continue
             yield name
 

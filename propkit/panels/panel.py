@@ -78,9 +78,13 @@ class Panel(traitlets.HasTraits):
         self.kind = str(calculation.kind)
         self._widget: PanelWidget | None = None
         self._quiet = True
-        super().__init__(value=calculation)
+        super().__init__(value=self.shown())
         self._quiet = False
         self.session.attach(self._refresh)
+
+    def shown(self) -> Any:
+        """Return what `value` is: the current object of this panel's kind."""
+        return self.session.link(self.kind)
 
     # -- what a person does, as methods ------------------------------------------------------------
 
@@ -224,7 +228,7 @@ class Panel(traitlets.HasTraits):
         return self.session.faces(self.kind)
 
     def _place(self, path: str) -> tuple[Face, str]:
-        place = paths.resolve(self.value, path, results=False)
+        place = paths.resolve(self.session.link(self.kind), path, results=False)
         kind, _, name = place.path.partition(".")
         return face_of(self.session.link(kind)), name
 
@@ -242,7 +246,7 @@ class Panel(traitlets.HasTraits):
     def _refresh(self) -> None:
         self._quiet = True
         try:
-            self.value = self.session.link(self.kind)
+            self.value = self.shown()
         finally:
             self._quiet = False
             if self._widget is not None:
@@ -299,12 +303,16 @@ class Panel(traitlets.HasTraits):
             self._widget = PanelWidget(self)
         return self._widget
 
+    def twin(self) -> Any:
+        """Return what stands in for the panel where no kernel is."""
+        return self.value
+
     def _ipython_display_(self) -> None:
         from IPython.display import display
 
         from propkit.panels.twin import twin_bundle
 
-        display(twin_bundle(self.value), raw=True)  # type: ignore[no-untyped-call]
+        display(twin_bundle(self.twin()), raw=True)  # type: ignore[no-untyped-call]
         display(self.widget)  # type: ignore[no-untyped-call]
 
     def __repr__(self) -> str:

@@ -22,6 +22,7 @@ log = logging.getLogger("propkit.panels")
 class PanelWidget(Host):
     """Front of a panel: one widget for all its controls, results and figures."""
 
+    height_alone = HEIGHT_ALONE
     _esm = static_text("figure.js", "panel.js")
     shown = traitlets.Dict().tag(sync=True)
     ack = traitlets.Dict().tag(sync=True)
@@ -47,7 +48,7 @@ class PanelWidget(Host):
             except PropkitError as error:
                 self.shown = {**shown, "figures": {**shown["figures"], "error": words_of(error)}}
                 return
-            height = HEIGHT_ALONE if len(figures) == 1 else HEIGHT_SHARED
+            height = self.height_alone if len(figures) == 1 else HEIGHT_SHARED
             self.show(figures, [height] * len(figures), still=not self._dragging)
 
     def close(self) -> None:

@@ -14,7 +14,7 @@ from propkit import units
 from propkit.errors import MissingExtraError
 from propkit.plots import paint
 from propkit.plots.limits import round_limits
-from propkit.series import Axis, Bars, Figure, Line, Mark, Rule, Series
+from propkit.series import Axis, Bars, Figure, Layer, Line, Mark, Points, Regions, Rule, Series, Texts
 
 HEIGHT = 300
 FONT = "system-ui, sans-serif"
@@ -54,15 +54,23 @@ def _layer_extra(layer: Any) -> list[Any]:
         return [layer.closed, layer.fill, layer.label, [[s.label, s.unit] for s in (layer.x, layer.y, *layer.hover)]]
     if isinstance(layer, Bars):
         return [layer.values.label, layer.values.unit]
+    if isinstance(layer, Regions):
+        return [layer.opacity, layer.outlined, layer.hatched, layer.label]
+    if isinstance(layer, Points):
+        return [[s.label, s.unit] for s in (layer.x, layer.y, *layer.hover)]
     return [getattr(layer, "axis", "")]
 
 
-def columns(layer: Line | Bars | Mark | Rule, where: dict[str, Any]) -> dict[str, list[Any]]:
-    """Return what the data source of a layer holds: lists of numbers or of texts by column.
+def columns(layer: Layer, where: dict[str, Any]) -> dict[str, list[Any]]:
+    """Return what the data source of a layer holds: lists of numbers, of texts, or of lists of numbers by column.
 
     `where` holds the limits of the figure: the label of a rule stands at the edge.
     """
-    if isinstance(layer, Line):
+    if isinstance(layer, Regions):
+        return {"xs": list(map(list, layer.xs)), "ys": list(map(list, layer.ys))}
+    if isinstance(layer, Texts):
+        return {"x": list(layer.x), "y": list(layer.y), "text": list(layer.texts)}
+    if isinstance(layer, Line | Points):
         made: dict[str, list[Any]] = {"x": list(layer.x.values), "y": list(layer.y.values)}
         return made | {f"hover{place}": list(series.values) for place, series in enumerate(layer.hover)}
     if isinstance(layer, Bars):
@@ -115,6 +123,8 @@ def _extent(layer: Any, axis: str) -> list[float]:
         return [0.0, *layer.values.values] if axis == "x" else []
     if isinstance(layer, Mark):
         return [layer.x if axis == "x" else layer.y]
+    if not isinstance(layer, Rule):
+        return []
     return [layer.at] if layer.axis == axis else []
 
 
@@ -224,12 +234,14 @@ def plain(renderer: Any) -> None:
     renderer.nonselection_glyph = renderer.selection_glyph = None
 
 
-def _legend(plot: Plot, layer: Line, drawn: Any) -> None:
+def _legend(plot: Plot, layer: Line | Regions, drawn: Any) -> None:
     from bokeh.models.annotations import Legend, LegendItem
 
     made = plot.figure
     if not made.legend:
         look: dict[str, Any] = {"orientation": "horizontal", "location": "top_left", "padding": 2, "spacing": 14, "margin": 0}
+        if isinstance(layer, Regions):
+            look |= {"orientation": "vertical", "spacing": 1}
         legend: Any = Legend(items=[], **look)
         legend.background_fill_color = legend.border_line_color = None
         legend.label_text_font, legend.label_text_font_size, legend.glyph_width = FONT, "12px", 18
@@ -286,4 +298,32 @@ def _rule(plot: Plot, layer: Rule, place: int) -> None:
     made.add_layout(label)
 
 
-_LAYERS: dict[type, Any] = {Line: _line, Bars: _bars, Mark: _mark, Rule: _rule}
+def _regions(plot: Plot, layer: Regions, place: int) -> None:
+    source, made = _source(plot, layer, place), plot.figure
+    role = paint.role_of(layer.colour)
+    hatch: dict[str, Any] = {"hatch_pattern": "right_diagonal_line", "hatch_alpha": 0.6, "hatch_weight": 0.8, "hatch_scale": 9} if layer.hatched else {}
+    drawn = made.patches("xs", "ys", source=source, fill_alpha=layer.opacity, line_width=(1.4 if layer.hatched else 0.6) if layer.outlined else 0.0, **hatch)
+    plot.paint(drawn.glyph, role, "fill_color", *(("line_color", "hatch_color") if layer.hatched else ()))
+    if not layer.hatched:
+        plot.paint(drawn.glyph, "quiet", "line_color")
+    plain(drawn)
+    if layer.label:
+        _legend(plot, layer, drawn)
+
+
+def _texts(plot: Plot, layer: Texts, place: int) -> None:
+    from bokeh.core.properties import value
+
+    drawn = plot.figure.text(
+        "x", "y", text="text", source=_source(plot, layer, place), text_align="center", text_baseline="middle", text_font=value(FONT), text_font_size="11px"
+    )
+    plot.paint(drawn.glyph, "ink", "text_color")
+
+
+def _points(plot: Plot, layer: Points, place: int) -> None:
+    catch = plot.figure.scatter("x", "y", source=_source(plot, layer, place), size=12, fill_alpha=0.0, line_alpha=0.0)
+    told = [_told(layer.x, "x"), _told(layer.y, "y"), *(_told(series, f"hover{n}") for n, series in enumerate(layer.hover))]
+    _hover(plot, catch, told, ["x", "y", *(f"hover{n}" for n in range(len(layer.hover)))])
+
+
+_LAYERS: dict[type, Any] = {Line: _line, Bars: _bars, Mark: _mark, Rule: _rule, Regions: _regions, Texts: _texts, Points: _points}

@@ -1,4 +1,7 @@
-"""Maps and curves of a study as Bokeh figures: contours, shaded limits, the optimum marked, and every number under the pointer."""
+"""Maps and curves of a study: contours, shaded limits, the optimum marked, and every number under the pointer.
+
+A map is a neutral figure first, so that the live plot, the panel and the static drawing show the same numbers.
+"""
 
 from __future__ import annotations
 
@@ -8,18 +11,22 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
+from propkit import quantities
 from propkit import units as unit_text
-from propkit.errors import InputError, MissingExtraError, Problem
-from propkit.plots import paint
-from propkit.plots.build import FONT, TOOLS, Plot, _frame, build
+from propkit.errors import InputError, Problem
+from propkit.physics import separation
+from propkit.plots.build import build
+from propkit.plots.level_sets import LevelSets, contour_levels, label_places
 from propkit.report import UnitSystem
-from propkit.series import Figure, Mark
+from propkit.series import Axis, Figure, Mark, Points, Regions, Series, Texts
 from propkit.study.sweep_figures import curves, headline, path_of, shown_axis, shown_values
 
 Array = npt.NDArray[np.float64]
 
-CONTOURS = 9
 _HEIGHT = 420
+SEPARATION = "separation_margin"
+"""Name of a limit that no column has: ambient pressure at which the middle of three criteria predicts separation, over the
+ambient pressure; at least 1 where the nozzle flows full."""
 
 
 def plot_of_study(result: Any, x: str | None, y: str | None, *, by: str | None, units: UnitSystem = "SI") -> Any:
@@ -98,52 +105,90 @@ def map_of_study(
     units: UnitSystem = "SI",
 ) -> Any:
     """Return a Bokeh map of a result over two paths of a grid (see `StudyResult.map`)."""
-    try:
-        from bokeh.models import ColumnDataSource, HoverTool
-        from bokeh.plotting import figure as bokeh_figure
-    except ImportError as error:
-        raise MissingExtraError("bokeh", "notebook", "a map") from error
+    return build(map_figure(result, name, x=x, y=y, limits=limits, minimum=minimum, units=units), height=_HEIGHT).figure
+
+
+def map_figure(
+    result: Any,
+    name: str | None = None,
+    *,
+    x: str | None = None,
+    y: str | None = None,
+    limits: Mapping[str, tuple[Any, Any]] | None = None,
+    minimum: bool = False,
+    units: UnitSystem = "SI",
+    less: Any = None,
+) -> Figure:
+    """Return a map of a result over two paths of a grid as neutral data.
+
+    Parameters
+    ----------
+    result : StudyResult
+        Results over a grid.
+    name : str, optional
+        Result whose contours are drawn; the first of the object's headline by default.
+    x, y : str, optional
+        Paths of the axes; the first two numbers that vary by default.
+    limits : mapping of str to (low, high), optional
+        Results that must stay inside a range (see `StudyResult.map`), or ``separation_margin``.
+    minimum : bool
+        Whether the smallest value is the optimum that is marked.
+    units : str
+        ``"SI"`` or ``"US"``.
+    less : StudyResult, optional
+        Results over the same grid that are taken off: a map of differences.
+
+    Raises
+    ------
+    InputError
+        Where there is nothing to draw, or a name or a limit is none.
+    """
     column = result.name_of(name) if name is not None else headline(result)
     grid = Grid(result, column, x, y, minimum)
-    allowed = _allowed(result, limits or {})
+    bands = allowed(result, limits or {})
     xs, ys = grid.ticks(grid.x, units), grid.ticks(grid.y, units)
-    table = grid.on(shown_values(result, column, units))
+    values = shown_values(result, column, units)
+    table = grid.on(values if less is None else values - _same_grid(result, less, column, units))
     if min(table.shape) < 2 or not np.isfinite(table).any():
         raise InputError(Problem("designs", f"a grid of {len(xs)} by {len(ys)} with results", "at least two values on each axis, and a result"))
-    axes = [shown_axis(result, path, units) for path in (grid.x, grid.y)]
     shown = shown_axis(result, column, units)
-    unit = unit_text.shown_unit(shown.unit)
-    title = f"{shown.label[:1].upper()}{shown.label[1:]}{f' [{unit}]' if unit else ''}"
-    if grid.held:
-        title += f"; {', '.join(f'{path} {value:.5g}' if isinstance(value, float) else f'{path} {value}' for path, value in grid.held.items())}"
-    ranges: dict[str, Any] = {"x_range": (float(xs[0]), float(xs[-1])), "y_range": (float(ys[0]), float(ys[-1]))}
-    made: Any = bokeh_figure(height=_HEIGHT, tools=TOOLS, toolbar_location="above", sizing_mode="stretch_width", title=title, name="study-map", **ranges)
-    plot = Plot(made, {"x": [float(xs[0]), float(xs[-1])], "y": [float(ys[0]), float(ys[-1])]})
-    _frame(plot, Figure("study-map", title, title, axes[0], axes[1]))
-    _contours(plot, xs, ys, table)
-    for place, (label, room) in enumerate(allowed):
-        _band(plot, xs, ys, grid.on(room), label, place)
-    points = _points(grid, xs, ys, table, result, tuple(limits or {}), units)
-    catch = made.scatter("x", "y", source=ColumnDataSource(points, name="designs"), size=12, fill_alpha=0.0, line_alpha=0.0)
-    told = [(axes[0].label, _told("x", axes[0].unit)), (axes[1].label, _told("y", axes[1].unit)), (shown.label, _told("value", shown.unit))]
-    told += [(other, f"@{{limit{place}}}") for place, other in enumerate(limits or {})]
-    made.add_tools(HoverTool(renderers=[catch], tooltips=told))
-    everywhere = np.ones(table.shape, dtype=bool)
-    for _, room in allowed:
+    axes = [shown_axis(result, path, units) for path in (grid.x, grid.y)]
+    title = _title(shown, grid.held, less is not None)
+    everywhere = np.isfinite(table)
+    for _, room in bands:
         everywhere &= grid.on(room) >= 0.0
-    _optimum(plot, xs, ys, np.where(everywhere, table, np.nan), unit, minimum)
-    return made
+    mark = _optimum(xs, ys, np.where(everywhere, table, np.nan), shown, minimum) if less is None else None
+    layers = (
+        *_contours(xs, ys, table),
+        *(_band(xs, ys, grid.on(room), label, place) for place, (label, room) in enumerate(bands)),
+        _points(grid, xs, ys, table, shown, axes, result, tuple(limits or {}), units),
+        *((mark,) if mark is not None else ()),
+    )
+    alt = f"{title} over {axes[0].label} and {axes[1].label}{f': {mark.label}' if mark is not None and mark.label else ''}"
+    across, up = (Axis(a.label, a.unit, a.symbol, "linear", float(t[0]), float(t[-1])) for a, t in zip(axes, (xs, ys), strict=True))
+    return Figure("study-map" if less is None else "study-difference", title, alt, across, up, layers)
 
 
-def _told(column: str, unit: str) -> str:
-    text = unit_text.shown_unit(unit)
-    return f"@{column}{{0.[00000]}}{f' {text}' if text else ''}"
+def _title(shown: Axis, held: Mapping[str, Any], difference: bool) -> str:
+    unit = unit_text.shown_unit(shown.unit)
+    title = f"{'Difference in ' + shown.label if difference else shown.label[:1].upper() + shown.label[1:]}{f' [{unit}]' if unit else ''}"
+    listed = ", ".join(f"{path} {value:.5g}" if isinstance(value, float) else f"{path} {value}" for path, value in held.items())
+    return f"{title}; {listed}" if listed else title
 
 
-def _allowed(result: Any, limits: Mapping[str, tuple[Any, Any]]) -> list[tuple[str, Array]]:
-    """Return label and room left by each limit, one for each design: negative outside."""
-    from propkit import units as text_units
+def _same_grid(result: Any, less: Any, column: str, units: UnitSystem) -> Array:
+    mine, theirs = result.plan.plan, less.plan.plan
+    same = mine.shape == theirs.shape and all(
+        one.path == other.path and np.array_equal(one.values, other.values) for one, other in zip(mine.columns, theirs.columns, strict=True)
+    )
+    if not same or column not in less.results:
+        raise InputError(Problem("less", "another grid", "results over the same designs"))
+    _, factor, offset = result.display(column, units)
+    return np.asarray(less.values(column) * factor + offset, dtype=np.float64)
 
+
+def allowed(result: Any, limits: Mapping[str, tuple[Any, Any]]) -> list[tuple[str, Array]]:
+    """Return label and room left by each limit, one for each design: negative outside, NaN where there is no result."""
     found = []
     problems: list[Problem] = []
     for name, ends in limits.items():
@@ -151,96 +196,111 @@ def _allowed(result: Any, limits: Mapping[str, tuple[Any, Any]]) -> list[tuple[s
             problems.append(Problem(name, repr(ends), "a pair (low, high), None for no limit"))
             continue
         try:
-            column = result.name_of(name)
-            known = result.quantity(column)
-            low, high = (None if end is None else text_units.to_si(end, known.unit, name) for end in ends)
+            column, values, unit = limited(result, name)
+            low, high = (None if end is None else unit_text.to_si(end, unit, name) for end in ends)
         except InputError as error:
             problems.extend(error.problems)
             continue
-        values = result.values(column)
-        size = max(abs(end) for end in (low, high) if end is not None) if (low, high) != (None, None) else 1.0
+        size = max((abs(end) for end in (low, high) if end is not None), default=1.0) or 1.0
         room = np.full(values.shape, np.inf)
-        room = np.minimum(room, values - low) if low is not None else room
-        room = np.minimum(room, high - values) if high is not None else room
-        room = np.clip(np.where(np.isfinite(values), room / (size or 1.0), -1.0), -1.0, 1.0)
-        words = " and ".join(f"{word} {end}" for word, end in zip(("at least", "at most"), ends, strict=True) if end is not None)
-        found.append((f"outside: {column} {words}", room))
+        room = np.minimum(room, (values - low) / size) if low is not None else room
+        room = np.minimum(room, (high - values) / size) if high is not None else room
+        words = " or ".join(f"{word} {_said(end)}" for word, end in zip(("below", "above"), ends, strict=True) if end is not None)
+        found.append((f"{limit_label(result.plan.target, column)} {words}", np.where(np.isnan(values), np.nan, room)))
     if problems:
         raise InputError(problems)
     return found
 
 
-def _contours(plot: Plot, xs: Array, ys: Array, table: Array) -> None:
+def _said(end: Any) -> str:
+    return f"{end:g}" if isinstance(end, int | float) else f"{end}"
+
+
+def limit_label(target: Any, name: str) -> str:
+    """Return what a person reads of what a limit is set on."""
+    return "margin against separation" if name == SEPARATION else result_label(target, name)
+
+
+def result_label(target: Any, name: str) -> str:
+    """Return what a person reads of a result: its label, with the station of a state, or the object it is of."""
+    kind, point, rest = name.partition(".")
+    is_upstream = bool(point) and any(link.kind == kind for link in target.chain())
+    owner, inner = (kind, rest) if is_upstream else (target.kind, name)
+    station, dotted, last = inner.rpartition(".")
+    label = quantities.quantity(last, owner).label
+    if dotted:
+        return f"{label} at the {station}"
+    return f"{label}, {owner}" if is_upstream and owner not in label else label
+
+
+def limited(result: Any, name: str) -> tuple[str, Array, str]:
+    """Return name, values and SI unit of what a limit is set on: a result, or the margin against separation."""
+    if name == SEPARATION:
+        return name, separation_margin(result), ""
+    column = result.name_of(name)
+    return column, result.values(column), result.quantity(column).unit
+
+
+def separation_margin(result: Any) -> Array:
+    """Return the ambient pressure at which the middle of three criteria predicts separation, over the ambient pressure.
+
+    Raises
+    ------
+    InputError
+        For a study without a nozzle's exit and an ambient pressure.
+    """
+    names = ("nozzle.exit.pressure", "chamber.stagnation_pressure", "nozzle.exit.mach")
+    if result.plan.target.kind != "performance" or any(name not in result.results for name in names):
+        raise InputError(Problem(SEPARATION, "not available", "a study of a performance with all its results"))
+    pressure, stagnation, mach = (result.values(name) for name in names)
+    varied = {column.path for column in result.plan.plan.columns}
+    ambient = result.values("performance.ambient") if "performance.ambient" in varied else np.full(len(pressure), result.plan.target.si("ambient"))
+    with np.errstate(all="ignore"):
+        found = [np.asarray(entry.ambient(pressure, stagnation, mach)) for entry in separation.CRITERIA.values()]
+        return np.asarray(np.median(np.stack(found), axis=0) / ambient, dtype=np.float64)
+
+
+def _contours(xs: Array, ys: Array, table: Array) -> tuple[Regions, Texts]:
+    """Return where the table is at least each of some round levels, laid over each other, and the values of the levels."""
     finite = table[np.isfinite(table)]
-    low, high = float(finite.min()), float(finite.max())
-    levels = contour_levels(low, high)
-    shades = [paint.lighter(paint.colour("series-0"), 0.92 - 0.72 * place / max(len(levels) - 2, 1)) for place in range(len(levels) - 1)]
-    drawn = plot.figure.contour(xs, ys, np.where(np.isfinite(table), table, np.nan), levels, fill_color=shades, line_color=paint.colour("quiet"), line_width=0.6)
-    bar: Any = drawn.construct_color_bar()
-    bar.background_fill_color = None
-    bar.major_label_text_font = FONT
-    plot.paint(bar, "ink", "major_label_text_color")
-    plot.figure.add_layout(bar, "right")
+    levels = contour_levels(float(finite.min()), float(finite.max()))
+    sets = LevelSets(xs, ys, table)
+    rings = [sets.rings(level) for level in levels[:-1]]
+    places = label_places(rings[1:], xs, ys)
+    regions = Regions(tuple(tuple(x.tolist()) for x, _ in rings), tuple(tuple(y.tolist()) for _, y in rings))
+    texts = tuple(f"{level:.6g}" for level in levels[1:-1])
+    return regions, Texts(tuple(x for x, _ in places), tuple(y for _, y in places), texts)
 
 
-def contour_levels(low: float, high: float) -> list[float]:
-    """Return round levels that enclose a range, about `CONTOURS` of them."""
-    if not high > low:
-        pad = abs(low) * 1e-3 or 1e-3
-        return [low - pad, low + pad]
-    raw = (high - low) / CONTOURS
-    size = 10.0 ** np.floor(np.log10(raw))
-    step = size * min((entry for entry in (1.0, 2.0, 2.5, 5.0, 10.0) if entry * size >= raw), default=10.0)
-    first, last = np.floor(low / step), np.ceil(high / step)
-    return [float(step * place) for place in np.arange(first, last + 1)]
-
-
-def _band(plot: Plot, xs: Array, ys: Array, room: Array, label: str, place: int) -> None:
-    """Shade where a limit is broken, up to the curve on which it is just met."""
-    if (room >= 0.0).all():
-        return
-    from bokeh.models.annotations import Legend, LegendItem
-
-    hatch = ("right_diagonal_line", "left_diagonal_line", "cross", "dot")[place % 4]
-    role = f"series-{1 + place}"
-    colour = paint.colour(role)
-    drawn = plot.figure.contour(
-        xs, ys, room, [-2.0, 0.0], fill_color=[colour], fill_alpha=0.16, line_color=[colour, colour], line_width=1.4,
-        hatch_pattern=[hatch], hatch_color=[colour], hatch_alpha=0.55, hatch_weight=0.8, hatch_scale=9,
-    )  # fmt: skip
-    shade = drawn.fill_renderer
-    made = plot.figure
-    if not made.legend:
-        look: dict[str, Any] = {"orientation": "horizontal", "location": "top_left", "padding": 2, "margin": 0}
-        legend: Any = Legend(items=[], **look)
-        legend.background_fill_color = legend.border_line_color = None
-        legend.label_text_font, legend.label_text_font_size = FONT, "12px"
-        plot.paint(legend, "ink", "label_text_color")
-        made.add_layout(legend, "below")
-    made.legend[0].items.append(LegendItem(label=label, renderers=[shade]))
+def _band(xs: Array, ys: Array, room: Array, label: str, place: int) -> Regions:
+    """Return where a limit is broken, up to the curve on which it is just met."""
+    if (room[np.isfinite(room)] >= 0.0).all():
+        x, y = np.empty(0), np.empty(0)
+    else:
+        x, y = LevelSets(xs, ys, -room).rings(0.0)
+    return Regions((tuple(x.tolist()),), (tuple(y.tolist()),), colour=1 + place, opacity=0.16, hatched=True, label=label)
 
 
 def _points(
-    grid: Grid, xs: Array, ys: Array, table: Array, result: Any, limits: tuple[str, ...], system: UnitSystem
-) -> dict[str, Any]:
+    grid: Grid, xs: Array, ys: Array, table: Array, shown: Axis, axes: list[Axis], result: Any, limits: tuple[str, ...], system: UnitSystem
+) -> Points:
     """Return what the pointer tells: every design of the map."""
-    across, up = np.meshgrid(xs, ys)
-    found: dict[str, Any] = {"x": across.ravel(), "y": up.ravel(), "value": table.ravel()}
-    for place, name in enumerate(limits):
+    across, up = (found.ravel().tolist() for found in np.meshgrid(xs, ys))
+    hover = [Series(shown.label, tuple(table.ravel().tolist()), shown.unit)]
+    for name in limits:
+        if name == SEPARATION:
+            hover.append(Series(name, tuple(grid.on(separation_margin(result)).ravel().tolist())))
+            continue
         column = result.name_of(name)
-        unit = unit_text.shown_unit(result.display(column, system)[0])
-        values = grid.on(shown_values(result, column, system)).ravel()
-        found[f"limit{place}"] = [f"{value:.5g}{f' {unit}' if unit else ''}" for value in values]
-    return found
+        hover.append(Series(column, tuple(grid.on(shown_values(result, column, system)).ravel().tolist()), result.display(column, system)[0]))
+    return Points(Series(axes[0].label, tuple(across), axes[0].unit), Series(axes[1].label, tuple(up), axes[1].unit), tuple(hover))
 
 
-def _optimum(plot: Plot, xs: Array, ys: Array, table: Array, unit: str, minimum: bool) -> None:
-    """Mark the best design of the map."""
+def _optimum(xs: Array, ys: Array, table: Array, shown: Axis, minimum: bool) -> Mark:
+    """Return the mark of the best design of the map; nowhere where there is none."""
     if not np.isfinite(table).any():
-        return
-    from propkit.plots.build import _mark
-
+        return Mark(float("nan"), float("nan"), "")
     up, across = np.unravel_index(int(np.nanargmin(table) if minimum else np.nanargmax(table)), table.shape)
-    value = float(table[up, across])
+    unit = unit_text.shown_unit(shown.unit)
     word = "smallest" if minimum else "largest"
-    _mark(plot, Mark(float(xs[across]), float(ys[up]), f"{word} {value:.5g}{f' {unit}' if unit else ''}"), 0)
+    return Mark(float(xs[across]), float(ys[up]), f"{word} {float(table[up, across]):.5g}{f' {unit}' if unit else ''}")

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import struct
 from collections.abc import Iterable
+from itertools import chain
 from typing import Any
 
 from propkit.plots.build import Plot, build, columns, limits, structure
@@ -47,7 +48,8 @@ def item_of(plot: Plot) -> dict[str, Any]:
 def frame_of(figures: Iterable[Figure]) -> tuple[list[dict[str, Any]], bytes]:
     """Return what changes with every calculation: a description of each figure, and all numbers as float64 bytes.
 
-    A column of numbers is described by its place and length in the bytes, a column of texts by the texts.
+    A column of numbers is described by its place and length in the bytes, a column of lists of numbers by the place and the
+    length of each, a column of texts by the texts.
     """
     described: list[dict[str, Any]] = []
     numbers: list[float] = []
@@ -58,6 +60,9 @@ def frame_of(figures: Iterable[Figure]) -> tuple[list[dict[str, Any]], bytes]:
             for name, values in columns(layer, where).items():
                 if values and isinstance(values[0], str):
                     source[name] = values
+                elif values and isinstance(values[0], list):
+                    source[name] = {"rows": [len(numbers), *map(len, values)]}
+                    numbers.extend(chain.from_iterable(values))
                 else:
                     source[name] = [len(numbers), len(values)]
                     numbers.extend(values)

@@ -10,7 +10,7 @@ import numpy as np
 from propkit import units
 from propkit.errors import InputError, Problem, PropkitError
 from propkit.model import paths
-from propkit.model.base import Calculation
+from propkit.model.base import Calculation, reach
 from propkit.model.declare import as_text
 from propkit.study.batch import batch_names
 from propkit.study.evaluation import ChainFunction, result_name
@@ -177,8 +177,21 @@ class Study:
     def one_by_one(self) -> int:
         """Designs whose recipe has no batch form: they are rebuilt one object at a time."""
         return sum(
-            len(rows) for part, (_, rows) in zip(self._work.parts, self._blocks.groups, strict=True) if part.function is None
+            len(rows)
+            for part, (_, rows) in zip(self._work.parts, self._blocks.groups, strict=True)
+            if part.function is None or not part.function.batched
         )
+
+    @property
+    def work(self) -> Work:
+        """What runs in a block."""
+        return self._work
+
+    @property
+    def template(self) -> Calculation:
+        """The object that the first group of designs is a variation of: every path that varies is one of its given inputs."""
+        part = self._work.parts[0]
+        return part.target if part.function is None else part.function.template
 
     # -- the run ---------------------------------------------------------------------------------
 
@@ -203,8 +216,11 @@ class Study:
         InputError
             For an executor that is none.
         """
+        return self.run_with(self._work.prepared(self._plan, self._blocks.groups), executor, progress)
+
+    def run_with(self, work: Work, executor: Any = None, progress: bool | Callable[[int, int, float], None] = True) -> StudyResult:
+        """Return the results at every design, by a work made ready beforehand (`Work.guided`); else as `run`."""
         count, blocks = self._plan.count, self._blocks
-        work = self._work.prepared(self._plan, blocks.groups)
         columns = {name: np.empty(count) for name in work.results}
         done = np.zeros(count, dtype=bool)
         reasons: dict[int, str] = {}
@@ -234,13 +250,29 @@ class Study:
         damped = sum(
             len(rows)
             for part, (_, rows) in zip(work.parts, blocks.groups, strict=True)
-            if part.function is not None and part.function.quick is None and len(rows) >= ENOUGH and part.burns
+            if part.function is not None and part.function.batched and part.function.quick is None and len(rows) >= ENOUGH and part.burns
         )
         if damped:
             notes.append(f"the quick engine does not serve {damped} designs (their recipe, or too wide a box): the damped solver took them")
         if counts[0]:
             notes.append(f"the quick engine solved {counts[0]} designs and left {counts[1]} of them to the damped solver")
         return StudyResult(self, columns, done, reasons, tuple(notes), how.interrupted, how.seconds)
+
+    def panel(
+        self, result: str | None = None, *, limits: Mapping[str, tuple[Any, Any]] | None = None, minimum: bool = False
+    ) -> Any:
+        """Return the interactive panel: a map or curves, solved anew while sliders move (extra ``notebook``).
+
+        Parameters
+        ----------
+        result : str, optional
+            Result shown first; the first of the object's headline by default.
+        limits : mapping of str to (low, high), optional
+            Results that must stay inside a range, None for no limit, as for `StudyResult.map`.
+        minimum : bool
+            Whether the smallest value is the best.
+        """
+        return reach("study_panel")(self, "" if result is None else _wanted(self._target, [self.template], [result])[0], limits, minimum)
 
 
 def _wanted(target: Calculation, made: Sequence[Any], names: Sequence[str]) -> tuple[str, ...]:

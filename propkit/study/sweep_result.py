@@ -191,6 +191,10 @@ class StudyResult:
                 if last.endswith(".enthalpy"):
                     return quantities.quantity("molar_enthalpy")
                 return self.plan.target.chain()[paths.resolve(self.plan.target, name).position].declared_inputs[last].quantity
+        if name in self._columns:
+            owner = name.partition(".")[0]
+            owner = owner if "." in name and any(link.kind == owner for link in self.plan.target.chain()) else self.plan.target.kind
+            return quantities.quantity(name.rpartition(".")[2], owner)
         place = paths.resolve(self.plan.target, name)
         link = self.plan.target.chain()[place.position]
         return quantities.quantity(place.name.rpartition(".")[2], link.kind)
@@ -477,13 +481,31 @@ class StudyResult:
         x, y : str, optional
             Paths of the axes; the first two numbers that vary by default.
         limits : mapping of str to (low, high), optional
-            Results that must stay inside a range, None for no limit; designs outside are shaded and do not count for the optimum.
+            Results that must stay inside a range, None for no limit; designs outside are hatched and do not count for the
+            optimum. ``separation_margin`` is the ambient pressure at which the middle of three criteria predicts separation over the
+            ambient pressure: ``(1, None)`` keeps to nozzles that flow full.
         minimum : bool
             Whether the smallest value is the optimum that is marked.
         units : str
             ``"SI"`` or ``"US"``.
         """
         return reach("study_map")(self, result, x=x, y=y, limits=limits, minimum=minimum, units=_system(units))
+
+    def panel(
+        self, result: str | None = None, *, limits: Mapping[str, tuple[Any, Any]] | None = None, minimum: bool = False
+    ) -> Any:
+        """Return the interactive panel: a map or curves, solved anew while sliders move (extra ``notebook``).
+
+        Parameters
+        ----------
+        result : str, optional
+            Result shown first; the first of the object's headline by default.
+        limits : mapping of str to (low, high), optional
+            Results that must stay inside a range, None for no limit, as for `StudyResult.map`.
+        minimum : bool
+            Whether the smallest value is the best.
+        """
+        return reach("study_panel")(self, "" if result is None else self.name_of(result), limits, minimum)
 
 
 def undominated(table: Array) -> npt.NDArray[np.intp]:

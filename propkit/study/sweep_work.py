@@ -6,7 +6,7 @@ import hashlib
 import pickle
 from collections import OrderedDict
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -79,7 +79,7 @@ class Answered:
     slow: int = 0
 
 
-def _spanning(plan: Plan, rows: Integers) -> Integers:
+def spanning(plan: Plan, rows: Integers) -> Integers:
     """Return designs that span those of a group: some spread evenly, and those at the ends of each column."""
     some = rows[np.unique(np.linspace(0, len(rows) - 1, min(SAMPLE, len(rows))).astype(np.intp))]
     ends = []
@@ -114,9 +114,17 @@ class Work:
         for part, (_, rows) in zip(self.parts, groups, strict=True):
             function = part.function
             if function is not None and len(rows) >= ENOUGH:
-                places = _spanning(plan, rows)
+                places = spanning(plan, rows)
                 function = function.prepared(plan.inputs(places), len(places))
             parts.append(Part(function, part.target, part.chosen, part.results))
+        return Work(parts, self.results)
+
+    def guided(self, quick: Sequence[Any]) -> Work:
+        """Return the work with a quick engine for each part that was made earlier (None for none): its guards still hold."""
+        parts = [
+            Part(None if part.function is None else replace(part.function, quick=engine), part.target, part.chosen, part.results)
+            for part, engine in zip(self.parts, quick, strict=True)
+        ]
         return Work(parts, self.results)
 
     def __reduce__(self) -> tuple[Any, ...]:

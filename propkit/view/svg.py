@@ -5,13 +5,13 @@ from __future__ import annotations
 import base64
 from html import escape
 
-from propkit.series import Bars, Figure, Line, Mark
+from propkit.series import Bars, Figure, Line, Mark, Regions
 from propkit.view import palette
 from propkit.view.svg_curves import curves
 from propkit.view.svg_parts import DASH, Box, number, path, text, width_of
 from propkit.view.symbols import text_species
 
-WIDTH, HEIGHT = 360, 220
+WIDTH, HEIGHT, MAP_HEIGHT = 360, 220, 300
 _TITLE = 28
 _BAR, _PITCH = 13, 22
 
@@ -32,7 +32,8 @@ def draw(figure: Figure, width: int = WIDTH, height: int = HEIGHT) -> str:
     elif figure.equal_aspect:
         body, height = _to_scale(figure, width, height)
     else:
-        body, height = curves(figure, width, height, _TITLE)
+        is_map = any(isinstance(layer, Regions) for layer in figure.layers)
+        body, height = curves(figure, width, max(height, MAP_HEIGHT) if is_map else height, _TITLE)
     head = (
         f"<svg xmlns='http://www.w3.org/2000/svg' viewBox='0 0 {width} {height}' width='{width}' height='{height}' role='img'>"
         f"<title>{escape(figure.alt)}</title><rect width='{width}' height='{height}' rx='3' fill='{palette.PLATE}'/>"

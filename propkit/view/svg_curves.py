@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from html import escape
 from itertools import pairwise
 
-from propkit.series import Axis, Figure, Line, Mark, Rule
+from propkit.series import Axis, Figure, Line, Mark, Regions, Rule, Texts
 from propkit.view import cells, palette
 from propkit.view.numbers import grouped, pretty
 from propkit.view.svg_parts import DASH, number, path, symbol, text, width_of
@@ -50,12 +50,13 @@ def ticks(low: float, high: float, count: int = 5) -> list[float]:
 
 
 def curves(figure: Figure, width: int, height: int, top: int) -> tuple[str, int]:
-    """Return lines, rules and marks in axes, and the height of the drawing."""
+    """Return regions, lines, rules and marks in axes, and the height of the drawing."""
     lines = [layer for layer in figure.layers if isinstance(layer, Line)]
     marks = [layer for layer in figure.layers if isinstance(layer, Mark)]
     rules = [layer for layer in figure.layers if isinstance(layer, Rule)]
+    regions = [layer for layer in figure.layers if isinstance(layer, Regions)]
     named = [line for line in lines if line.label]
-    legend, rows = _legend(named if len(named) > 1 else [], width, top + 6)
+    legend, rows = _legend([*(named if len(named) > 1 else []), *(layer for layer in regions if layer.label)], width, top + 6)
     height += 13 * rows
     xs = [x for line in lines for x in line.x.values]
     ys = [y for line in lines for y in line.y.values]
@@ -80,10 +81,12 @@ def curves(figure: Figure, width: int, height: int, top: int) -> tuple[str, int]
         f"<path d='M{number(left)} {number(y_foot)}H{number(right)}' stroke='{palette.QUIET}' stroke-width='.8'/>"
     )
     out.append(text(right, height - 7, _axis_title(figure.x, 9.5), size=9.5, anchor="end", colour=palette.QUIET))
+    out += [_regions(layer, x_scale, y_scale) for layer in regions]
+    out += [_texts(layer, x_scale, y_scale) for layer in figure.layers if isinstance(layer, Texts)]
     out += [_rule_line(rule, x_scale, y_scale) for rule in rules]
     out += [_line(line, x_scale, y_scale) for line in lines]
     inked = [point for line in lines for point in _dense(line, x_scale, y_scale)]
-    placed = [_mark(mark, x_scale, y_scale, inked) for mark in marks]
+    placed = [_mark(mark, x_scale, y_scale, inked) for mark in marks if math.isfinite(mark.x) and math.isfinite(mark.y)]
     taken = [corner for _, box in placed for corner in box]
     out += _rule_texts(rules, x_scale, y_scale, inked + taken)
     out += [drawn for drawn, _ in placed]
@@ -134,17 +137,50 @@ def _line(line: Line, x: Scale, y: Scale) -> str:
     )
 
 
-def _legend(lines: list[Line], width: int, y: float) -> tuple[str, int]:
-    """Return the names of the lines with a sample of each, and how many rows they take."""
+def _regions(layer: Regions, x: Scale, y: Scale) -> str:
+    """Return regions laid over each other, holes left open; hatched where nothing is allowed."""
+    colour = palette.colour(layer.colour)
+    edge = colour if layer.hatched else palette.QUIET
+    stroke = f"stroke='{edge}' stroke-width='{1.2 if layer.hatched else 0.5}'" if layer.outlined else ""
+    out = [_hatch(layer)] if layer.hatched and any(layer.xs) else []
+    for xs, ys in zip(layer.xs, layer.ys, strict=True):
+        if not xs:
+            continue
+        data = path((x.at(a), y.at(b)) for a, b in zip(xs, ys, strict=True))
+        out.append(f"<path d='{data}' fill='{colour}' fill-opacity='{layer.opacity:g}' fill-rule='evenodd' {stroke}/>")
+        if layer.hatched:
+            out.append(f"<path d='{data}' fill='url(#pk-hatch-{layer.colour})' fill-rule='evenodd'/>")
+    return "".join(out)
+
+
+def _hatch(layer: Regions) -> str:
+    colour = palette.colour(layer.colour)
+    return (
+        f"<defs><pattern id='pk-hatch-{layer.colour}' width='6' height='6' patternUnits='userSpaceOnUse'>"
+        f"<path d='M-1 7L7 -1M-1 1L1 -1M5 7L7 5' stroke='{colour}' stroke-width='.7' stroke-opacity='.6'/></pattern></defs>"
+    )
+
+
+def _texts(layer: Texts, x: Scale, y: Scale) -> str:
+    """Return texts centred on their points."""
+    placed = zip(layer.x, layer.y, layer.texts, strict=True)
+    return "".join(
+        text(x.at(a), y.at(b) + 3.0, escape(shown), size=8.5, anchor="middle", halo=True)
+        for a, b, shown in placed
+        if math.isfinite(a) and math.isfinite(b)
+    )
+
+
+def _legend(lines: list[Line | Regions], width: int, y: float) -> tuple[str, int]:
+    """Return the names of lines and regions with a sample of each, and how many rows they take."""
     out, at, row = [], 12.0, 0
     for line in lines:
         wide = 20 + width_of(line.label, 9.5) + 14
         if at > 12.0 and at + wide > width - 8:
             at, row = 12.0, row + 1
         down = y + 6 + 13 * row
-        out.append(
-            f"<path d='M{number(at)} {number(down - 3)}h15' stroke='{palette.colour(line.colour)}' stroke-width='2'{DASH[line.dash]}/>"
-        )
+        look = f"stroke-width='2'{DASH[line.dash]}" if isinstance(line, Line) else "stroke-width='8' stroke-opacity='.35'"
+        out.append(f"<path d='M{number(at)} {number(down - 3)}h15' stroke='{palette.colour(line.colour)}' {look}/>")
         out.append(text(at + 20, down, escape(line.label), size=9.5, colour=palette.QUIET))
         at += wide
     return "".join(out), row + 1 if lines else 0

@@ -48,10 +48,10 @@ def test_a_map_marks_the_best_design_inside_the_limits(found):
     assert marks[0]["x"][0] == pytest.approx(best["chamber.pressure"] / 1e6)
     assert marks[0]["y"][0] == pytest.approx(best["nozzle.area_ratio"])
     assert f"{best['specific_impulse']:.5g}" in marks[0]["text"][0]
-    told = next(source for source in _sources(made) if "limit0" in source)
-    assert len(told["value"]) == len(frame)
-    assert sorted(np.round(told["value"], 6)) == sorted(np.round(frame["specific_impulse"], 6))
-    assert "kPa" in told["limit0"][0]
+    told = next(source for source in _sources(made) if "hover1" in source)
+    assert len(told["hover0"]) == len(frame)
+    assert sorted(np.round(told["hover0"], 6)) == sorted(np.round(frame["specific_impulse"], 6))
+    assert sorted(np.round(told["hover1"], 6)) == sorted(np.round(frame["nozzle.exit.pressure"] / 1e3, 6))
 
 
 def _sources(made):
@@ -61,7 +61,7 @@ def _sources(made):
 
 
 def test_levels_are_round_and_enclose_the_values():
-    from propkit.plots.study import contour_levels
+    from propkit.plots.level_sets import contour_levels
 
     levels = contour_levels(287.3, 341.9)
     assert levels[0] <= 287.3

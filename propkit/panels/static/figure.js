@@ -136,6 +136,7 @@ class LiveFigure {
     spareStyles(plotView);
     this.root = plotView.model;
     this.document = this.root.document;
+    this.root.on_event("tap", (event) => this.element.dispatchEvent(new CustomEvent("pk-tap", { bubbles: true, detail: { x: event.x, y: event.y } })));
     this.paint();
   }
 

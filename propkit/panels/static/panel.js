@@ -418,6 +418,7 @@ class PanelView {
     setMarkup(this.facts, (shown.facts ?? []).map((fact) => `<li>${escapeText(fact)}</li>`).join(""));
     this.updateActions(shown.actions ?? []);
     this.updateTabs(shown.figures);
+    this.figures.hidden = Boolean(shown.figures.error);
     this.updateFold("pins", compared ? pinsMarkup(shown.pins) : "");
     this.updateFold("stations", shown.stations ? stationsMarkup(shown.stations) : "");
     this.updateAbove(shown.above, compared, shown.pins.baseline);

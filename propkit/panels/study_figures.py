@@ -1,0 +1,93 @@
+"""The live figures of a study's panel, its best design, and the design nearest to a point of a figure."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from propkit.errors import InputError, Problem
+from propkit.plots.study import allowed, map_figure
+from propkit.report import UnitSystem
+
+Array = npt.NDArray[np.float64]
+
+MAP, CURVES = "Map", "Curves"
+
+
+def titles_of(session: Any) -> list[str]:
+    """Return the titles of the figures: map, curves, and the map less the pinned one where both have one grid."""
+    plan = session.value
+    if plan.y is None or plan.y.options:
+        return [CURVES]
+    pinned = session.pins.get(session.baseline)
+    less = [f"Map less {session.baseline}"] if pinned is not None and _comparable(plan, pinned) else []
+    return [MAP, CURVES, *less]
+
+
+def _comparable(plan: Any, pinned: Any) -> bool:
+    return [span.path for span in plan.spans] == [span.path for span in pinned.spans] and all(
+        np.array_equal(one.values, other.values) for one, other in zip(plan.spans, pinned.spans, strict=True)
+    )
+
+
+def figures_of(session: Any, at: int, units: UnitSystem) -> tuple[Any, ...]:
+    """Return the figure at a place of `titles_of`."""
+    plan, titles = session.value, titles_of(session)
+    title = titles[min(at, len(titles) - 1)]
+    result = plan.result
+    if title == CURVES:
+        return (result.curves(plan.x.path, plan.result_name, by=None if plan.y is None else plan.y.path, units=units),)
+    options: dict[str, Any] = {"x": plan.x.path, "y": plan.y.path, "limits": plan.limits, "minimum": plan.minimum, "units": units}
+    if title != MAP:
+        pinned = session.pins[session.baseline]
+        result, base = _on_one_grid(plan, pinned)
+        options["less"] = base
+    return (map_figure(result, plan.result_name, **options),)
+
+
+def _on_one_grid(plan: Any, pinned: Any) -> tuple[Any, Any]:
+    """Return both results on one grid; the pinned one is solved again where the other is a coarse one."""
+    result, base = plan.result, pinned.result
+    if len(result) == len(base):
+        return result, base
+    return result, pinned.study_of(len(result)).run(progress=False)
+
+
+def best_row(plan: Any) -> int | None:
+    """Return the number of the best design inside the limits; None where there is none."""
+    return plan.kept("best", lambda: _best_row(plan))  # type: ignore[no-any-return]
+
+
+def _best_row(plan: Any) -> int | None:
+    result = plan.result
+    values = result.values(plan.result_name)
+    good = np.isfinite(values)
+    for _, room in allowed(result, plan.limits):
+        good &= room >= 0.0
+    if not good.any():
+        return None
+    worst = np.inf if plan.minimum else -np.inf
+    kept = np.where(good, values, worst)
+    return int(np.argmin(kept) if plan.minimum else np.argmax(kept))
+
+
+def nearest(plan: Any, units: UnitSystem, at: int, x: float, y: float | None) -> int:
+    """Return the number of the design nearest to a point of the figure, given in display units."""
+    result = plan.result
+    is_map = at != 1 and plan.y is not None and not plan.y.options
+    across = _shares(result, plan.x.path, x, units)
+    up = np.zeros_like(across) if y is None else _shares(result, plan.y.path if is_map else plan.result_name, y, units)
+    distance = across**2 + up**2
+    if not np.isfinite(distance).any():
+        raise InputError(Problem("x", f"{x}", "a point of the figure"))
+    return int(np.nanargmin(distance))
+
+
+def _shares(result: Any, name: str, point: float, units: UnitSystem) -> Array:
+    """Return how far each design is from a point, as a share of the range."""
+    _, factor, offset = result.display(name, units)
+    values = result.values(name) * factor + offset
+    extent = float(np.nanmax(values) - np.nanmin(values)) or 1.0
+    return np.asarray((values - point) / extent, dtype=np.float64)
