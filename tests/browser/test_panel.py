@@ -145,6 +145,22 @@ def test_without_a_kernel_the_static_sheet_stays(page: rig.Page) -> None:
     reader.close()
 
 
+def test_a_panel_whose_kernel_was_started_anew_says_so(page: rig.Page) -> None:
+    panel = page.start("restart.ipynb", "panel = perf.panel()\npanel")
+    page.page.evaluate("() => window.jupyterapp.shell.currentWidget.sessionContext.restartKernel()")
+    page.page.wait_for_timeout(1500)
+    page.wait_idle()
+    panel.press_slider(PRESSURE, "ArrowRight")
+    assert panel.status().startswith("No kernel is behind this panel")
+    assert page.page.locator(".pk-twin").first.is_visible()
+    assert_shows(page, built())
+    page.run_all()
+    page.wait_figures(2)
+    page.panel().press_slider(PRESSURE, "ArrowRight", 2)
+    assert page.panel().status() == ""
+    assert float(page.panel().field(PRESSURE).input_value().split()[0]) > 9.7
+
+
 def test_keyboard_labels_and_a_narrow_page_without_jumps(page: rig.Page) -> None:
     panel = page.start("keys.ipynb", "panel = perf.panel()\npanel")
     unlabelled = panel.root.evaluate(

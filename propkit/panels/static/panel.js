@@ -42,7 +42,16 @@ class Line {
     const what = this.waiting.shift();
     this.sent += 1;
     this.open = { number: this.sent, since: performance.now(), path: what.path, do: what.do };
-    this.model.send({ ...what, client: this.client, number: this.sent });
+    try {
+      this.model.send({ ...what, client: this.client, number: this.sent });
+    } catch {
+      // the kernel was stopped or started anew: nobody can answer
+      this.dead = true;
+      this.open = null;
+      this.waiting = [];
+      this.tell();
+      return;
+    }
     clearTimeout(this.timer);
     this.timer = setTimeout(() => this.tell(), 1500);
     this.tell();
@@ -76,6 +85,7 @@ const lineOf = (model) => {
 };
 
 const NARROW = 760;
+const GONE = "No kernel is behind this panel any more. Run its cell again to make it live; the sheet above is that of its last execution.";
 let unique = 0;
 
 // One control: built once for its path and style, then only brought up to date.
@@ -430,7 +440,8 @@ class PanelView {
     this.root.toggleAttribute("data-busy", Boolean(this.line.open));
     if (!this.line.open) this.controls.forEach((view) => view.settle());
     const shown = this.model.get("shown");
-    const words = this.line.slow ? "Waiting for the kernel …" : (shown.status ?? "");
+    const words = this.line.dead ? GONE : this.line.slow ? "Waiting for the kernel …" : (shown.status ?? "");
+    if (this.line.dead) this.showTwin?.();
     setText(this.status, words);
     this.root.classList.toggle("pk-waiting", Boolean(this.line.slow));
   }
@@ -508,11 +519,11 @@ class PanelView {
     above.forEach((link, n) => {
       let box = this.above.children[n];
       if (!box) {
-        box = h("details", { class: "pk-fold" }, h("summary"), h("div", { class: "pk-fold-body" }));
+        box = h("details", { class: "pk-fold", open: link.open }, h("summary"), h("div", { class: "pk-fold-body" }));
         this.above.append(box);
       }
       setText(box.firstChild, `${link.title} results`);
-      setMarkup(box.lastChild, tableMarkup(link.rows, compared, baseline));
+      setMarkup(box.lastChild, tableMarkup(link.rows, compared && !link.plain, baseline));
     });
   }
 
