@@ -144,7 +144,7 @@ def _opened(panel: StudyPanel, system: UnitSystem) -> list[dict[str, Any]]:
     where = ", ".join(f"{path.rpartition('.')[2].replace('_', ' ')} {value:.5g}" if isinstance(value, float) else f"{path.rpartition('.')[2]} {option_text(value)}" for path, value in panel.picked_values.items())
     links = reversed(made.chain())
     return [
-        {"kind": link.kind, "title": f"{f'Opened design ({where}): ' if place == 0 else ''}{link.title.lower() if place == 0 else link.title}", "rows": content.result_rows(link, content.result_names(link), system, None), "open": place == 0}
+        {"kind": link.kind, "title": f"{f'Opened design ({where}): ' if place == 0 else ''}{link.title.lower() if place == 0 else link.title}", "rows": content.result_rows(link, content.result_names(link), system, None), "open": place == 0, "plain": True}
         for place, link in enumerate(links)
     ]
 

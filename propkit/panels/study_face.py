@@ -41,11 +41,11 @@ class SettingFace(Face):
 class StudyFace(SettingFace):
     """Axes with their ends and points, the result, the optimum, limits."""
 
-    minor = ("x_points", "y_points", "optimum")
+    minor = ("optimum",)
 
     def scale(self, name: str, unit: Unit) -> Scale | None:
-        """Return a slider: limits have one, axes are typed."""
-        return super().scale(name, unit) if name.startswith("limit") else None
+        """Return no slider: ends and limits are typed."""
+        return None
 
 
 FACES["study"] = StudyFace

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -10,6 +11,7 @@ import numpy.typing as npt
 from propkit.errors import InputError, Problem
 from propkit.plots.study import allowed, map_figure
 from propkit.report import UnitSystem
+from propkit.series import Mark
 
 Array = npt.NDArray[np.float64]
 
@@ -32,7 +34,7 @@ def _comparable(plan: Any, pinned: Any) -> bool:
     )
 
 
-def figures_of(session: Any, at: int, units: UnitSystem) -> tuple[Any, ...]:
+def figures_of(session: Any, at: int, units: UnitSystem, picked: dict[str, Any]) -> tuple[Any, ...]:
     """Return the figure at a place of `titles_of`."""
     plan, titles = session.value, titles_of(session)
     title = titles[min(at, len(titles) - 1)]
@@ -44,7 +46,23 @@ def figures_of(session: Any, at: int, units: UnitSystem) -> tuple[Any, ...]:
         pinned = session.pins[session.baseline]
         result, base = _on_one_grid(plan, pinned)
         options["less"] = base
-    return (map_figure(result, plan.result_name, **options),)
+    drawn = map_figure(result, plan.result_name, **options)
+    return (replace(drawn, layers=(*drawn.layers, _picked(result, plan, picked, units))),)
+
+
+def _picked(result: Any, plan: Any, picked: dict[str, Any], units: UnitSystem) -> Mark:
+    """Return the mark of the opened design; nowhere where none is, where it is off the map, or where it is the best."""
+    places = []
+    best = best_row(plan)
+    if best is not None and result.plan.plan.design(best) == picked:
+        picked = {}
+    for span in plan.spans:
+        value = picked.get(span.path)
+        inside = value is not None and span.values[0] <= value <= span.values[-1]
+        _, factor, offset = result.display(span.path, units)
+        places.append(value * factor + offset if inside and value is not None else float("nan"))
+    there = bool(np.isfinite(places).all())
+    return Mark(*(places if there else (float("nan"), float("nan"))), "opened" if there else "", colour="ink")
 
 
 def _on_one_grid(plan: Any, pinned: Any) -> tuple[Any, Any]:

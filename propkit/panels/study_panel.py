@@ -200,7 +200,7 @@ class StudyPanel(Panel):
 
     def figures(self) -> tuple[Any, ...]:
         """Return the figure shown, as neutral data."""
-        return figures_of(self.session, self.figure, self.units)
+        return figures_of(self.session, self.figure, self.units, self.picked_values)
 
     @property
     def widget(self) -> PanelWidget:

@@ -102,10 +102,10 @@ class StudyPlan(LastLink):
         known = {**self.axes_known, **{path: self.axes_known.get(path, path) for path in self.opened.columns}}
         numbers = {path: label for path, label in known.items() if not self.opened.is_choice(path)}
         x = self.setting(ChoiceSetting("x", "across", "the input that varies across the map", numbers, self.opened.first(numbers)))
-        others = {path: label for path, label in known.items() if path != x}
-        y = self.setting(ChoiceSetting("y", "upwards", "the input that varies upwards, or makes the curves", {NONE: "nothing: one curve", **others}, self.opened.second(others)))
         self.labels = known
         self.x = self._span("x", x)
+        others = {path: label for path, label in known.items() if path != x}
+        y = self.setting(ChoiceSetting("y", "upwards", "the input that varies upwards, or makes the curves", {NONE: "nothing: one curve", **others}, self.opened.second(others)))
         self.y = None if y == NONE else self._span("y", y)
         self.study = self.study_of(None)
         results = self.study.results
@@ -113,6 +113,8 @@ class StudyPlan(LastLink):
         shown = self.opened.result if self.opened.result in self.result_labels else next((n for n in self.target.headline if n in results), results[0])
         self.setting(ChoiceSetting("result", "result shown", "the result whose contours or curves are drawn", self.result_labels, shown))
         self.setting(ChoiceSetting("optimum", "best design has", "which value of the result is the best", OPTIMA, "smallest" if self.opened.minimum else "largest"))
+        first = {name: self.declared_inputs.pop(name) for name in ("result", "optimum")}
+        self.declared_inputs = {**first, **self.declared_inputs}
         self._declare_limits()
 
     def _span(self, axis: str, path: str) -> Span:
@@ -123,20 +125,20 @@ class StudyPlan(LastLink):
         low, high, count, quantity, bounds = self._room(path, column)
         label = self.labels[path]
         ends = [
-            self.setting(NumberSetting(f"{axis}_{end}", quantity, f"{label}, {word}", f"the {word} {label} of the axis", value, bounds))
-            for end, word, value in (("low", "lowest", low), ("high", "highest", high))
+            self.setting(NumberSetting(f"{axis}_{end}", quantity, said, f"the {word} {label} of the axis", value, bounds))
+            for end, said, word, value in (("low", "from", "lowest", low), ("high", "to", "highest", high))
         ]
         number = quantities.Quantity("points", quantities.NUMBER, "", "points", "number of values along the axis", 4)
         points = self.setting(
-            NumberSetting(f"{axis}_points", number, f"{label}, points", "the number of values along the axis", float(count), Bounds(at_least=2, at_most=MOST_POINTS), whole=True)
+            NumberSetting(f"{axis}_points", number, "points", "the number of values along the axis", float(count), Bounds(at_least=2, at_most=MOST_POINTS), whole=True)
         )
         edited = any(f"{axis}_{end}" in self._typed for end in ("low", "high", "points"))
         if column is not None and not edited:
             return Span(path, np.sort(column.values.astype(np.float64)), given=self.opened.given(path))
         if not ends[0] < ends[1]:
-            said = {name: self._typed.get(name) for name in (f"{axis}_low", f"{axis}_high")}
-            name = next((name for name, value in said.items() if value is not None), f"{axis}_low")
-            raise InputError(Problem(name, str(said[name]), f"{'below the highest' if name.endswith('low') else 'above the lowest'} {label}"))
+            given = {name: self._typed.get(name) for name in (f"{axis}_low", f"{axis}_high")}
+            name = next((name for name, value in given.items() if value is not None), f"{axis}_low")
+            raise InputError(Problem(name, str(given[name]), f"{'below the highest' if name.endswith('low') else 'above the lowest'} {label}"))
         return Span(path, np.linspace(ends[0], ends[1], int(points)))
 
     def _room(self, path: str, column: Column | None) -> tuple[float, float, int, quantities.Quantity, Bounds]:
@@ -194,9 +196,15 @@ class StudyPlan(LastLink):
             name = "limit" if number == 0 else f"limit_{number + 1}"
             if self._values.get(name, NONE) == NONE:
                 break
-            ends = tuple(self._typed.get(f"{name}_{end}", self._values.get(f"{name}_{end}")) for end in ("low", "high"))
-            if ends != (None, None):
-                found[self._values[name]] = (ends[0], ends[1])
+            chosen = self._values[name]
+            given = list(self.opened.limits.items())[number : number + 1]
+            before = given[0][1] if given and given[0][0] == chosen else (None, None)
+            low, high = (
+                self._typed.get(f"{name}_{end}", self._values.get(f"{name}_{end}") if there is None else there)
+                for end, there in zip(("low", "high"), before, strict=True)
+            )
+            if (low, high) != (None, None):
+                found[chosen] = (low, high)
         return found
 
     @property

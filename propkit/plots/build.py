@@ -8,12 +8,14 @@ from __future__ import annotations
 
 import json
 from dataclasses import dataclass, field
+from functools import partial
 from typing import Any
 
 from propkit import units
 from propkit.errors import MissingExtraError
 from propkit.plots import paint
 from propkit.plots.limits import round_limits
+from propkit.plots.still import still
 from propkit.series import Axis, Bars, Figure, Layer, Line, Mark, Points, Regions, Rule, Series, Texts
 
 HEIGHT = 300
@@ -157,6 +159,7 @@ def build(figure: Figure, *, height: int = HEIGHT, width: int | None = None) -> 
     scales = {f"{name}_axis_type": "log" for name, axis in (("x", figure.x), ("y", figure.y)) if axis.scale == "log"}
     options: dict[str, Any] = {**ranges, **scales, **sizing, "title": figure.title, "name": figure.name}
     made: Any = bokeh_figure(height=height, tools=TOOLS, toolbar_location="above", **options)
+    made._repr_mimebundle_ = partial(still, figure)
     plot = Plot(made, where, legend=sum(isinstance(layer, Line) and bool(layer.label) for layer in figure.layers) > 1)
     _frame(plot, figure)
     if figure.equal_aspect:
@@ -248,6 +251,8 @@ def _legend(plot: Plot, layer: Line | Regions, drawn: Any) -> None:
         plot.paint(legend, "ink", "label_text_color")
         made.add_layout(legend, "below")
         made.min_border_bottom = ROOM_BELOW
+    if isinstance(layer, Regions):
+        made.min_border_bottom = ROOM_BELOW + 19 * len(made.legend[0].items)
     made.legend[0].items.append(LegendItem(label=layer.label, renderers=[drawn]))
 
 

@@ -205,15 +205,16 @@ def allowed(result: Any, limits: Mapping[str, tuple[Any, Any]]) -> list[tuple[st
         room = np.full(values.shape, np.inf)
         room = np.minimum(room, (values - low) / size) if low is not None else room
         room = np.minimum(room, (high - values) / size) if high is not None else room
-        words = " or ".join(f"{word} {_said(end)}" for word, end in zip(("below", "above"), ends, strict=True) if end is not None)
+        words = " or ".join(f"{word} {_said(end, unit)}" for word, end in zip(("below", "above"), ends, strict=True) if end is not None)
         found.append((f"{limit_label(result.plan.target, column)} {words}", np.where(np.isnan(values), np.nan, room)))
     if problems:
         raise InputError(problems)
     return found
 
 
-def _said(end: Any) -> str:
-    return f"{end:g}" if isinstance(end, int | float) else f"{end}"
+def _said(end: Any, unit: str) -> str:
+    shown = unit_text.shown_unit(unit)
+    return f"{end:g}{f' {shown}' if shown else ''}" if isinstance(end, int | float) else f"{end}"
 
 
 def limit_label(target: Any, name: str) -> str:
