@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections import OrderedDict
 from collections.abc import Callable
 from typing import Any, Final
@@ -33,8 +34,17 @@ _WIDE: Final = 0.45
 """Range of the first direction of (atoms, enthalpy), each over its size, that counts as wide."""
 
 _WIDE_LOG: Final = 2.0
-_STRIDE: Final = 0.5
-"""Longest step in ln p along an isentrope."""
+_FIRST: Final = (0.02, 0.2, 0.7)
+"""First places in ln p of a march along an isentrope, from which the later ones are seen."""
+
+_STRIDE: Final = 1.0
+"""Longest step in ln p along an isentrope beyond them."""
+
+_BACK: Final = 4
+"""Places passed that the next one is guessed from."""
+
+_NEARLY: Final = 1e-2
+"""Largest step of the unknowns at rest on the way; the step itself is still taken."""
 
 _NUDGE: Final = 0.01
 _ENOUGH: Final = 0.9
@@ -228,30 +238,46 @@ def _with_exit(
 
 def _marched(kernel: Kernel, b: Array, flow: Flow, logs: Array, to: str) -> Point:
     """Return first guesses of the exit of a few nodes, followed from the throat along the isentrope in short steps."""
-    throat = flow.throat
     gamma = np.full(len(flow.good), 1.18)
-    point = throat.solved.point
+    point = flow.throat.solved.point
     if to == "area_ratio":
         mach = gas_dynamics.mach_from_area_ratio(np.exp(np.maximum(logs[1], 0.0)), gamma, "supersonic")
         fall = np.log(gas_dynamics.pressure_ratio(mach, gamma) / gas_dynamics.pressure_ratio(1.0, gamma))
     else:
         fall = logs[0] + logs[1] - point.log_pressure
-    first = _NUDGE / max(float(np.abs(fall).max()), _NUDGE)
-    steps = int(np.ceil(np.abs(fall).max() / _STRIDE))
-    before, last = point, first
-    for number, share in enumerate([first, *[(1.0 - first) / steps] * steps]):
-        ahead = _ahead(before, point, 0.0 if number == 0 else share / last)
-        ahead.log_pressure = point.log_pressure + share * fall
-        found = solve(kernel, b, flow.entropy, ahead, entropy=True)
-        before, point, last = point, found.point, share
-    return point
+    reached = _stepped(kernel, b, flow.entropy, point, fall, _STRIDE, _BACK)
+    lost = np.flatnonzero(flow.good & ~np.isfinite(reached.log_pressure))
+    if lost.size:
+        _put(reached, lost, _stepped(kernel, b[:, lost], flow.entropy[lost], point.take(lost), fall[lost], 0.5 * _STRIDE, 2))
+    return reached
 
 
-def _ahead(before: Point, here: Point, share: float) -> Point:
-    """Return a point further along the line from `before` through `here`."""
-    return Point(
-        here.potentials + share * (here.potentials - before.potentials),
-        here.log_moles + share * (here.log_moles - before.log_moles),
-        here.log_temperature + share * (here.log_temperature - before.log_temperature),
-        here.log_pressure,
-    )
+def _stepped(kernel: Kernel, b: Array, entropy: Array, start: Point, fall: Array, stride: float, back: int) -> Point:
+    """Return the points a fall in ln p below others on their isentropes, step by step."""
+    far = max(float(np.abs(fall).max()), _NUDGE)
+    first = [place for place in _FIRST if place < far]
+    begun = first[-1] if first else 0.0
+    passed = [(0.0, start)]
+    for place in [*first, *np.linspace(begun, far, 1 + math.ceil((far - begun) / stride))[1:].tolist()]:
+        ahead = _ahead(passed[-back:], place)
+        ahead.log_pressure = start.log_pressure + place / far * fall
+        found = solve(kernel, b, entropy, ahead, entropy=True, rested=_NEARLY)
+        passed.append((place, found.point))
+    return passed[-1][1]
+
+
+def _put(points: Point, cases: Any, other: Point) -> None:
+    """Overwrite some cases."""
+    points.potentials[:, cases] = other.potentials
+    for name in ("log_moles", "log_temperature", "log_pressure"):
+        getattr(points, name)[cases] = getattr(other, name)
+
+
+def _ahead(passed: list[tuple[float, Point]], place: float) -> Point:
+    """Return a point ahead on the curve through points passed (Lagrange's polynomial)."""
+    weights = [math.prod((place - other) / (own - other) for other, _ in passed if other != own) for own, _ in passed]
+
+    def along(name: str) -> Array:
+        return np.asarray(sum(weight * getattr(point, name) for weight, (_, point) in zip(weights, passed, strict=True)))
+
+    return Point(along("potentials"), along("log_moles"), along("log_temperature"), along("log_pressure"))

@@ -92,7 +92,7 @@ class Flow:
 
 def select(kernel: Kernel, points: Point) -> npt.NDArray[np.intp]:
     """Return the species that matter at some of the points."""
-    highest = _log_fractions(kernel, _stride(points)).max(axis=1)
+    highest = np.fmax.reduce(_log_fractions(kernel, _stride(points)), axis=1)  # a point that is none has no say
     return np.flatnonzero(highest > NEGLIGIBLE)
 
 

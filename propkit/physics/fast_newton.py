@@ -188,6 +188,7 @@ def solve(
     condition: Condition | None = None,
     keep_amounts: bool = False,
     steps: int = STEPS,
+    rested: float | None = None,
 ) -> Solved:
     """Return the equilibrium of a block of cases from starts nearby.
 
@@ -209,6 +210,8 @@ def solve(
         Whether the amounts of the species are returned.
     steps : int
         Steps allowed.
+    rested : float, optional
+        Largest step of a case at rest, where not `RESTED` or `RESTED_ALONG`.
 
     Returns
     -------
@@ -225,18 +228,19 @@ def solve(
     cases: Any = slice(None)
     x, stacked, amounts = start, start.stacked(), None
     before: Array | None = None
+    largest = rested or (RESTED_ALONG if entropy else RESTED)
     for step in range(1, steps + 1):
         amounts, enthalpy = _species(kernel, stacked, before, amounts)
         found = _step(kernel, elements, target, x, stacked, amounts, enthalpy, entropy, condition, cases)
         size = found.size
-        rested = size <= (RESTED_ALONG if entropy else RESTED)
+        still = size <= largest
         moved = _moved(x, found)
-        if rested.all():
+        if still.all():
             _keep(out, cases, slice(None), moved, found, amounts, step)
             return out
-        if rested.any():
-            _keep(out, cases, rested, moved, found, amounts, step)
-            left = ~rested & np.isfinite(size)
+        if still.any():
+            _keep(out, cases, still, moved, found, amounts, step)
+            left = ~still & np.isfinite(size)
             if not left.any():
                 return out
             number = np.arange(count) if isinstance(cases, slice) else cases

@@ -199,7 +199,7 @@ def basis(orders: Integers, coordinates: Array) -> Array:
     others = [row for row in range(len(coordinates)) if row != last]
     place = 0
     # terms are listed with the coordinate of highest degree running fastest: a run of terms shares everything but that one
-    for length, first in _runs(orders, last):
+    for length, first in _runs(orders.tobytes(), orders.shape[1], last):
         run = out[place : place + length]
         factor = None
         for row in others:
@@ -214,10 +214,13 @@ def basis(orders: Integers, coordinates: Array) -> Array:
     return out
 
 
-def _runs(orders: Integers, last: int) -> list[tuple[int, Integers]]:
+@lru_cache(maxsize=64)
+def _runs(data: bytes, dimensions: int, last: int) -> list[tuple[int, list[int]]]:
+    """Return length and first orders of each run of terms."""
+    orders = np.frombuffer(data, dtype=np.intp).reshape(-1, dimensions)
     starts = np.flatnonzero(orders[:, last] == 0)
     ends = np.append(starts[1:], len(orders))
-    return [(int(end - start), orders[start]) for start, end in zip(starts, ends, strict=True)]
+    return [(int(end - start), orders[start].tolist()) for start, end in zip(starts, ends, strict=True)]
 
 
 def _chebyshev(degree: int, u: Array) -> Array:
