@@ -13,7 +13,7 @@ from propkit import quantities, units
 from propkit.model.doubts import Doubt
 from propkit.report import Column, Report, Row, Section, Table, UnitSystem
 from propkit.series import Axis, Figure, Line, Rule, Series
-from propkit.study.rounding import rounded
+from propkit.view.numbers import rounded_together
 
 if TYPE_CHECKING:
     from propkit.reconcile.firing import HotFire
@@ -154,7 +154,7 @@ def _means_section(firing: HotFire, system: UnitSystem) -> Section:
             units.convert(float(frame.loc[name, key]), quantity.unit, unit) - zero
             for key in ("random", "zero", "calibration")
         ]
-        pair = rounded(units.convert(value, quantity.unit, unit), math.hypot(*parts))
+        pair = rounded_together(units.convert(value, quantity.unit, unit), math.hypot(*parts))
         drift = firing.window.drift.get(str(name))
         rows.append(
             (

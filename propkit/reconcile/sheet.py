@@ -11,7 +11,7 @@ from propkit.model.doubts import Doubt
 from propkit.reconcile.adjustment import LARGE_RESIDUAL, NOT_CHECKABLE
 from propkit.report import Column, Report, Row, Section, Table, UnitSystem
 from propkit.series import Axis, Figure, Line, Mark, Series
-from propkit.study.rounding import rounded
+from propkit.view.numbers import rounded_together
 
 if TYPE_CHECKING:
     from propkit.reconcile.reconciliation import Reconciliation
@@ -92,7 +92,7 @@ def _shown(
     quantity = fit.quantity_of(name)
     unit = quantity.shown_in(system, (value,))
     zero = units.convert(0.0, quantity.unit, unit)
-    pair = rounded(units.convert(value, quantity.unit, unit), units.convert(uncertainty, quantity.unit, unit) - zero)
+    pair = rounded_together(units.convert(value, quantity.unit, unit), units.convert(uncertainty, quantity.unit, unit) - zero)
     return pair.value, pair.uncertainty, units.shown_unit(unit)
 
 
@@ -161,7 +161,7 @@ def _route_sections(fit: Reconciliation, system: UnitSystem) -> Iterator[Section
         factor = units.convert(1.0, quantity.unit, unit)
         pairs: list[tuple[str, str | None]] = []
         for entry in values:
-            pair = rounded(entry.value * factor, entry.standard_uncertainty * factor)
+            pair = rounded_together(entry.value * factor, entry.standard_uncertainty * factor)
             alone = not entry.figures
             pairs.append((f"{entry.value * factor:.5g}", None) if alone else (pair.value, pair.uncertainty))
         columns = (

@@ -18,8 +18,8 @@ from propkit.series import Axis, Bars, Figure, Line, Rule, Series
 from propkit.study.coverage import COVERAGE
 from propkit.study.evaluation import result_quantity
 from propkit.study.propagation import NOTHING, FirstOrder, Trials, curvature
-from propkit.study.rounding import Rounded, rounded
 from propkit.study.sensitivity import SobolIndices
+from propkit.view.numbers import Rounded, rounded_together
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -153,7 +153,7 @@ class UncertaintyResult:
         place = self._place(result)
         value, deviation, _, _ = self._columns()
         _, factor = self._display(result, units_shown)
-        return rounded(float(value[place]) * factor, float(deviation[place]) * factor)
+        return rounded_together(float(value[place]) * factor, float(deviation[place]) * factor)
 
     def budget(self, result: str) -> pd.DataFrame:
         """Return the first-order budget of a result, the largest share first.
@@ -332,7 +332,7 @@ class UncertaintyResult:
             quantity = quantities.quantity(entry.quantity.rpartition(".")[2], entry.quantity.partition(".")[0])
             unit = quantity.shown_in(system, (entry.nominal,))
             factor = units.convert(1.0, entry.unit, unit)
-            pair = rounded(entry.nominal * factor, self.plan._joint.distributions[path].standard_uncertainty * factor)
+            pair = rounded_together(entry.nominal * factor, self.plan._joint.distributions[path].standard_uncertainty * factor)
             paths.append(path)
             nominals.append(pair.value)
             deviations.append(pair.uncertainty)
@@ -415,6 +415,16 @@ class UncertaintyResult:
         alt = f"{title}: nominal {nominal:.6g}, 95 % between {low:.6g} and {high:.6g}"
         axes = Axis(quantity.label, unit, quantity.symbol), Axis("probability density", low=0.0)
         return Figure(f"histogram-{result}", title, f"{alt} {units.shown_unit(unit)}", *axes, (line, *rules))
+
+    def panel(self, result: str | None = None) -> Any:
+        """Return the interactive panel: sliders for the uncertainties and inputs, the budget redrawn live (extra ``notebook``).
+
+        Parameters
+        ----------
+        result : str, optional
+            Result shown first; the first of the object's headline by default.
+        """
+        return reach("uncertainty_panel")(self, "" if result is None else self.results[self._place(result)])
 
     def plot(self, result: str, kind: str = "tornado", units: UnitSystem = "SI") -> Any:
         """Return a Bokeh figure of a result: ``"tornado"`` or ``"histogram"``."""

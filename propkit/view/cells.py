@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from propkit import units
 from propkit.report import Column, Report, Row
+from propkit.view import numbers
 
 MARKS = {"given": "●", "default": "○", "computed": "="}
 """How given, default and computed are told apart without colour."""
@@ -17,6 +18,13 @@ def unit_text(unit: str) -> str:
     for plain, nice in (("liter", "L"), ("inch", "in"), ("foot", "ft")):
         shown = shown.replace(plain, nice)
     return shown
+
+
+def uncertainty_text(row: Row, *, plain: bool = False) -> str:
+    """Return the standard uncertainty of a row as it stands behind the value; plain in a terminal."""
+    if row.uncertainty is None or isinstance(row.value, str) or row.value is None:
+        return ""
+    return numbers.beside(row.value, row.uncertainty).uncertainty if plain else numbers.pretty_uncertainty(row.value, row.uncertainty)
 
 
 def shows_typed(row: Row) -> bool:

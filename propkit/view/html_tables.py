@@ -31,12 +31,12 @@ def value_html(row: Row) -> str:
         return "not available"
     if isinstance(row.value, str):
         return html_species(row.value) if row.name == "formula" else escape(row.value)
-    return numbers.pretty(row.value, row.digits)
+    return numbers.pretty(row.value, row.digits, row.uncertainty)
 
 
 def uncertainty_html(row: Row) -> str:
     """Return the standard uncertainty of a row behind its value."""
-    return f" ± {numbers.pretty(row.uncertainty, 2)}" if row.uncertainty is not None else ""
+    return f" ± {cells.uncertainty_text(row)}" if row.uncertainty is not None else ""
 
 
 def unit_html(unit: str) -> str:

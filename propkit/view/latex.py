@@ -57,8 +57,7 @@ def _value(row: Row) -> str:
         return "not available"
     if isinstance(row.value, str):
         return escaped(row.value)
-    sure = rf" \pm {numbers.latex(row.uncertainty, 2)}" if row.uncertainty is not None else ""
-    return f"${numbers.latex(row.value, row.digits)}{sure}$"
+    return f"${numbers.latex(row.value, row.digits, row.uncertainty)}$"
 
 
 def _rows(rows: Iterable[Row]) -> str:

@@ -55,14 +55,14 @@ def value_text(row: Row) -> str:
         return "not available"
     if isinstance(row.value, str):
         return escaped(row.value)
-    return numbers.pretty(row.value, row.digits)
+    return numbers.pretty(row.value, row.digits, row.uncertainty)
 
 
 def _rows(rows: Iterable[Row], head: str) -> str:
     lines = [f"| | {head} | symbol | value | unit |", "|---|---|---|---:|---|"]
     for row in rows:
         typed = f" ({escaped(row.typed)})" if cells.shows_typed(row) else ""
-        sure = f" ± {numbers.pretty(row.uncertainty, 2)}" if row.uncertainty is not None else ""
+        sure = f" ± {cells.uncertainty_text(row)}" if row.uncertainty is not None else ""
         doubts = "".join(f"<br>⚠ {escaped(doubt)}" for doubt in row.doubts)
         sign = escaped(text_symbol(row.symbol))
         lines.append(

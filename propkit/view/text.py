@@ -5,21 +5,25 @@ from __future__ import annotations
 import math
 import textwrap
 from collections.abc import Iterable
+from itertools import zip_longest
 
 from propkit.report import Column, Report, Row, Section, Step, Table
 from propkit.sources import reference
 from propkit.view import cells, numbers
 from propkit.view.symbols import text_species, text_symbol
 
-WIDTH = 100
+WIDTH = 80
+"""Columns of a terminal that nobody has widened."""
+_NARROWEST = 16
+"""Columns that text needs at least to be broken into lines."""
 
 
 def render(report: Report) -> str:
-    """Return the report as text, at most about 100 columns wide."""
-    title = f"{report.kind}: {report.title}" if report.title else report.kind
-    lines = [title, "─" * min(WIDTH, max(len(title), 40))]
+    """Return the report as text for a terminal of 80 columns."""
+    title = textwrap.wrap(f"{report.kind}: {report.title}" if report.title else report.kind, WIDTH) or [""]
+    lines = [*title, "─" * max(40, *map(len, title))]
     if report.subtitle not in ("", report.title):
-        lines.append(report.subtitle)
+        lines += textwrap.wrap(report.subtitle, WIDTH)
     if report.headline:
         lines += ["", *_rows(report.headline)]
     if report.given:
@@ -46,14 +50,14 @@ def _rows(rows: Iterable[Row]) -> list[str]:
     """Return rows with decimal signs in line; texts start where the numbers do."""
     listed = list(rows)
     lined = iter(
-        numbers.lined_up(numbers.rounded(row.value, row.digits) for row in listed if isinstance(row.value, int | float))
+        numbers.lined_up(numbers.rounded(row.value, row.digits, row.uncertainty) for row in listed if isinstance(row.value, int | float))
     )
     label = max(len(row.label) for row in listed)
     symbol = max(_width(text_symbol(row.symbol)) for row in listed)
     lines = []
     for row in listed:
         typed = f"   ({row.typed})" if cells.shows_typed(row) else ""
-        sure = f" ± {numbers.rounded(row.uncertainty, 2)}" if row.uncertainty is not None else ""
+        sure = f" ± {cells.uncertainty_text(row, plain=True)}" if row.uncertainty is not None else ""
         value = (
             next(lined)
             if isinstance(row.value, int | float)
@@ -63,12 +67,18 @@ def _rows(rows: Iterable[Row]) -> list[str]:
         )
         value = f"{value.rstrip()}{sure}" if sure else value
         sign = _padded(text_symbol(row.symbol), symbol)
-        lines.append(
-            f"  {cells.MARKS[row.kind]} {row.label:<{label}}  {sign}  {value} {cells.unit_text(row.unit)}{typed}"
-        )
+        start = f"  {cells.MARKS[row.kind]} {row.label:<{label}}  {sign}  "
+        lines += _broken(start, f"{value} {cells.unit_text(row.unit)}{typed}".rstrip())
         for doubt in row.doubts:
             lines += _bullets([doubt], "! ", "      ")
     return lines
+
+
+def _broken(start: str, text: str) -> list[str]:
+    """Return a line, or several where the text behind its start runs past the edge."""
+    if len(start) + len(text) <= WIDTH or WIDTH - len(start) < _NARROWEST:
+        return [start + text]
+    return textwrap.wrap(text, WIDTH, initial_indent=start, subsequent_indent=" " * len(start))
 
 
 def _width(text: str) -> int:
@@ -103,12 +113,29 @@ def _table(table: Table) -> list[str]:
         blocks.append(_block(head, cells.unit_text(column.unit), _texts(column), cells.numeric(column)))
     head_rows = [0] if all(not block[1].strip() for block in blocks) else [0, 1]
     lines: list[str] = []
-    for group in _groups(blocks, WIDTH - len(first[0]) - 4):
+    for group in _groups(blocks, WIDTH - _width(first[0]) - 4):
         if lines:
             lines.append("")
+        if len(group) == 1 and _width(first[0]) + _width(group[0][0]) + 4 > WIDTH:
+            lines += _tall(first, group[0])
+            continue
         for row in (*head_rows, *range(2, len(first))):
             lines.append("  " + "  ".join(block[row] for block in (first, *group)))
     return lines + (_bullets([table.note], "") if table.note else [])
+
+
+def _tall(first: list[str], block: list[str]) -> list[str]:
+    """Return a column of long texts beside the index, the texts broken into lines."""
+    wide = min(_width(first[0]), WIDTH - 2 * _NARROWEST)
+    lines = []
+    for place, (index, text) in enumerate(zip(first, block, strict=True)):
+        left = textwrap.wrap(index, wide) or [""]
+        right = textwrap.wrap(text.strip(), WIDTH - wide - 4) or [""]
+        if place == 1 and left == right == [""]:
+            continue
+        rows = zip_longest(left, right, fillvalue="")
+        lines += [f"  {_padded(begin, wide)}  {end}" for begin, end in rows]
+    return lines
 
 
 def _texts(column: Column) -> list[str]:
@@ -145,26 +172,30 @@ def _step(step: Step) -> list[str]:
     lines = [f"{step.label}"]
     if step.left is not None and step.right is not None:
         lines += [
-            f"  condition  {step.text}",
+            *_labelled("condition", step.text),
             f"  values     {step.left:.10g} = {step.right:.10g}",
             f"  residual   {step.residual:.1e}",
         ]
     else:
-        lines += [f"  relation   {step.text}", f"  numbers    {step.numbers}"]
+        lines += [*_labelled("relation", step.text), *_labelled("numbers", step.numbers)]
         if step.result is not None and isinstance(step.result.value, int | float):
             value = numbers.rounded(step.result.value, step.result.digits)
             lines.append(f"  result     {value} {cells.unit_text(step.result.unit)}")
     if step.source:
-        lines += textwrap.wrap(
-            f"source     {reference(step.source)}", WIDTH - 2, initial_indent="  ", subsequent_indent=" " * 13
-        )
+        lines += _labelled("source", reference(step.source))
     return lines
+
+
+def _labelled(label: str, text: str) -> list[str]:
+    return textwrap.wrap(
+        text, WIDTH, initial_indent=f"  {label:<11}", subsequent_indent=" " * 13, break_long_words=False
+    )
 
 
 def _bullets(texts: Iterable[str], mark: str, indent: str = "  ") -> list[str]:
     lines: list[str] = []
     for text in texts:
         lines += textwrap.wrap(
-            text, WIDTH - len(indent), initial_indent=indent + mark, subsequent_indent=indent + " " * len(mark)
+            text, WIDTH, initial_indent=indent + mark, subsequent_indent=indent + " " * len(mark)
         ) or [indent + mark]
     return lines

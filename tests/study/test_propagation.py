@@ -16,7 +16,7 @@ from propkit.study.coverage import interval_ranks, tolerance
 from propkit.study.distributions import Normal, Triangular, Uniform
 from propkit.study.joint import JointInputs
 from propkit.study.propagation import curvature, first_order, monte_carlo
-from propkit.study.rounding import rounded
+from propkit.view.numbers import rounded_together
 
 
 def inputs_of(entries, **options):
@@ -80,11 +80,11 @@ def test_gum_h1_end_gauge():
 
 def test_gum_7_2_6_rounding():
     # 7.2.6: 10.47 mΩ is rounded to 10.5 or 11 mΩ; y = 10.057 62 Ω with u = 27 mΩ is 10.058 Ω; u = 28.05 kHz is 28 kHz
-    assert str(rounded(10.05762, 0.027)) == "10.058 ± 0.027"
-    assert rounded(0.0, 28.05).uncertainty == "28"
-    assert rounded(0.0, 10.47).uncertainty == "10"
+    assert str(rounded_together(10.05762, 0.027)) == "10.058 ± 0.027"
+    assert rounded_together(0.0, 28.05).uncertainty == "28"
+    assert rounded_together(0.0, 10.47).uncertainty == "10"
     # 7.2.2: m_S = 100.021 47 g with u_c = 0.35 mg
-    assert str(rounded(100.02147, 0.00035)) == "100.02147 ± 0.00035"
+    assert str(rounded_together(100.02147, 0.00035)) == "100.02147 ± 0.00035"
 
 
 @pytest.mark.parametrize(
@@ -98,7 +98,7 @@ def test_gum_7_2_6_rounding():
     ],
 )
 def test_rounding_keeps_value_and_uncertainty_in_step(value, uncertainty, text):
-    assert str(rounded(value, uncertainty)) == text
+    assert str(rounded_together(value, uncertainty)) == text
 
 
 # -- supplement 1, JCGM 101:2008 ------------------------------------------------------------------------

@@ -2,6 +2,7 @@
 
 import math
 import pickle
+import re
 from concurrent.futures import ThreadPoolExecutor
 
 import numpy as np
@@ -11,6 +12,7 @@ from uncertainties import umath
 
 import propkit as pk
 from propkit.errors import InputError, NotAvailableError
+from propkit.view.numbers import beside, latex, pretty, pretty_uncertainty, rounded_together
 
 GAS = pk.Chamber.from_gas(pressure="7 MPa", temperature="3500 K", molar_mass="22 g/mol", isentropic_exponent=1.2)
 NOZZLE = pk.Nozzle(GAS, area_ratio=20, throat_diameter="0.1 m")
@@ -120,6 +122,30 @@ def test_sheet_shows_what_was_found():
     assert "seed 1" in text
     assert found._repr_mimebundle_()["text/html"]
     assert found.rounded("thrust", "US").value != found.rounded("thrust").value
+
+
+@pytest.mark.parametrize("medium", ["plain", "html", "markdown", "latex"])
+def test_every_medium_rounds_a_value_to_the_place_of_its_uncertainty(medium):
+    """GUM 7.2.6: two digits of the uncertainty, the value to the same decimal place."""
+    report = PLAN.run().report()
+    page = re.sub(r"<[^>]+>", "", report._repr_mimebundle_()[f"text/{medium}"])
+    page = re.sub(r"\s|\\,", "", page).replace(r"\pm", "±")
+    doubted = [row for row in (*report.headline, *report.results, *report.given) if row.uncertainty]
+    assert len(doubted) >= 8
+    for row in doubted:
+        pair = rounded_together(row.value, row.uncertainty)
+        assert len(pair.uncertainty.replace(".", "").strip("0")) <= 2
+        assert len(pair.value.partition(".")[2]) == len(pair.uncertainty.partition(".")[2])
+        assert f"{pair.value}±{pair.uncertainty}" in page, row.name
+
+
+def test_very_large_and_small_values_share_their_power_of_ten():
+    assert str(beside(2.903e-9, 1.2e-11)) == "2.903e-9 ± 0.012e-9"
+    assert pretty(2.903e-9, 4, 1.2e-11) == "2.903\u202f×\u202f10⁻⁹"
+    assert pretty_uncertainty(2.903e-9, 1.2e-11) == "0.012\u202f×\u202f10⁻⁹"
+    assert latex(4.12345e8, 6, 3.3e6) == r"4.123 \times 10^{8} \pm 0.033 \times 10^{8}"
+    assert pretty(402.05, 5, 5.2) == "402.0"
+    assert pretty(402.05, 5, 0.0) == pretty(402.05, 5, math.inf) == "402.05"
 
 
 def test_figures():

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import ast
 import html
+import math
 import re
 import subprocess
 import sys
@@ -58,7 +59,12 @@ def told(report: Report) -> Counter[float]:
     """Return every number that a report tells, at its digits; a row of the headline is told once."""
     answered = {row.name for row in report.headline}
     rows = [row for row in report.rows() if row not in report.results or row.name not in answered]
-    found = [expected(row.value, row.digits) for row in rows if isinstance(row.value, float)]
+    found = [
+        # JCGM 100:2008, 7.2.6: two digits of the uncertainty, the value to the same decimal place
+        round(row.value, 1 - math.floor(math.log10(row.uncertainty))) if row.uncertainty else expected(row.value, row.digits)
+        for row in rows
+        if isinstance(row.value, float)
+    ]
     for section in report.sections:
         if section.table is not None:
             for column in section.table.columns:
