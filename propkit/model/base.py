@@ -41,6 +41,7 @@ DOWNWARD = {
     "record_bundle": "propkit.record:bundle_of",
     "panel": "propkit.panels:panel_of",
     "study_panel": "propkit.panels:panel_of_study",
+    "uncertainty_panel": "propkit.panels:panel_of_uncertainty",
     "plot": "propkit.plots:plot_of",
     "figure": "propkit.plots.build:build",
     "study_plot": "propkit.plots.study:plot_of_study",
@@ -167,6 +168,10 @@ class Calculation:
     def typed_text(self, name: str) -> str:
         """Return an input as it was typed, as text."""
         typed = self._typed[name]
+        if isinstance(typed, Calculation):
+            return self.input_text(name)
+        if isinstance(typed, bool):
+            return "yes" if typed else "no"
         return typed if isinstance(typed, str) else f"{typed}"
 
     def given_name(self) -> str:

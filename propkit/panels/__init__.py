@@ -7,7 +7,7 @@ from typing import Any
 
 from propkit.errors import MissingExtraError
 
-__all__ = ["panel_of", "panel_of_study"]
+__all__ = ["panel_of", "panel_of_study", "panel_of_uncertainty"]
 
 
 def _needed() -> None:
@@ -51,3 +51,17 @@ def panel_of_study(study: Any, result: str, limits: Mapping[str, tuple[Any, Any]
     from propkit.panels.study_panel import StudyPanel
 
     return StudyPanel(study, result=result, limits=limits, minimum=minimum)
+
+
+def panel_of_uncertainty(uncertainty: Any, result: str) -> Any:
+    """Return the panel of an uncertainty or of its results (see `Uncertainty.panel`).
+
+    Raises
+    ------
+    MissingExtraError
+        When the packages of the ``notebook`` extra are not installed.
+    """
+    _needed()
+    from propkit.panels.uncertainty_panel import UncertaintyPanel
+
+    return UncertaintyPanel(uncertainty, result=result)

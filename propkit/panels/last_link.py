@@ -6,7 +6,7 @@ The settings are declared like inputs, but by the object at hand: which result i
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from types import MappingProxyType
 from typing import Any, ClassVar, Self
 
@@ -106,6 +106,10 @@ class LastLink:
         self.target = target
         self._typed = {name: value for name, value in typed.items() if value is not None}
         self._values: dict[str, Any] = {}
+        self._result: Any = None
+        self._kept: dict[str, Any] = {}
+        self.unsettled = False
+        """Whether the results held are those of a moving slider."""
         self.declared_inputs: dict[str, Input] = {}
         self.declare()
         self._typed = {name: value for name, value in self._typed.items() if name in self.declared_inputs}
@@ -137,11 +141,44 @@ class LastLink:
         target = self.target.replace(above) if above else self.target
         return self.rebuilt(target, self.tidied({**self._typed, **own}, own) if own else self._typed)
 
+    # -- results -----------------------------------------------------------------------------------
+
+    def solved(self) -> Any:
+        """Return the results of the analysis."""
+        raise NotImplementedError
+
+    @property
+    def result(self) -> Any:
+        """Results, solved when they are asked for and not held."""
+        if self._result is None:
+            self._result = self.solved()
+        return self._result
+
+    def hold(self, result: Any) -> None:
+        """Take results that were solved already, as a line of code does it."""
+        self._result, self._kept, self.unsettled = result, {}, False
+
+    def release(self) -> None:
+        """Let go of the results; they are solved again when they are wanted."""
+        self._result, self._kept = None, {}
+
+    def kept(self, key: str, make: Callable[[], Any]) -> Any:
+        """Return what follows from the results, made once."""
+        _ = self.result
+        if key not in self._kept:
+            self._kept[key] = make()
+        return self._kept[key]
+
     # -- as a link of a chain ----------------------------------------------------------------------
 
     def chain(self) -> tuple[Any, ...]:
         """Return the objects of the chain, this one last."""
         return (*self.target.chain(), self)
+
+    @property
+    def varied(self) -> frozenset[str]:
+        """Whole paths of inputs of the chain that have no value of their own here."""
+        return frozenset()
 
     @property
     def inputs(self) -> Mapping[str, Any]:
@@ -155,6 +192,11 @@ class LastLink:
     def si(self, name: str) -> Any:
         """Return the value of a setting."""
         return self._values[name]
+
+    @property
+    def warnings(self) -> tuple[Any, ...]:
+        """What to doubt about the analysis."""
+        return tuple(self.result.warnings)
 
     def state_paths(self) -> tuple[str, ...]:
         """Return no names: an analysis has no states."""

@@ -2,15 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Mapping
 from dataclasses import replace
 from typing import TYPE_CHECKING, Any
 
 from propkit.errors import InputError, Problem, RangeError
 from propkit.panels import study_face
-from propkit.panels.faces import Face
-from propkit.panels.panel import Panel
-from propkit.panels.session import Session
+from propkit.panels.last_link_panel import LastLinkPanel, LastLinkSession
 from propkit.panels.study_content import code_of_study, study_content
 from propkit.panels.study_figures import best_row, figures_of, nearest, titles_of
 from propkit.panels.study_plan import Opened, StudyPlan
@@ -27,45 +25,7 @@ _ = study_face
 """Imported for the faces that it registers."""
 
 
-class StudySession(Session):
-    """A study under change: its chain and its settings are one state; results are held for what is shown and for pins."""
-
-    def __init__(self, plan: StudyPlan, solver: Solver) -> None:
-        super().__init__(plan)
-        self.solver = solver
-
-    def faces(self, down_to: str) -> Iterator[Face]:
-        """Yield the faces, the study's first: without inputs that the study varies."""
-        varied = self.value.varied
-        listed = list(super().faces(down_to))
-        if down_to == StudyPlan.kind:
-            listed = [listed[-1], *listed[:-1]]
-        for face in listed:
-            face.varied = frozenset(path.partition(".")[2] for path in varied if path.startswith(f"{face.kind}."))
-            yield face
-
-    def _put(self, value: Any, run: str = "") -> None:
-        before = self.value
-        super()._put(value, run)
-        if self.value is before:
-            if before.unsettled and not value.unsettled:
-                before.hold(value.result)
-        elif all(before is not pinned for pinned in self.pins.values()):
-            before.release()
-
-    def _step(self, here: list[Any], there: list[Any]) -> None:
-        before = self.value
-        super()._step(here, there)
-        if before is not self.value and all(before is not pinned for pinned in self.pins.values()):
-            before.release()
-
-    def forget(self) -> None:
-        """Let go of every object and guess."""
-        super().forget()
-        self.solver.forget()
-
-
-class StudyPanel(Panel):
+class StudyPanel(LastLinkPanel):
     """Interactive view of a study.
 
     Parameters
@@ -89,11 +49,7 @@ class StudyPanel(Panel):
         opened = StudyPlan(plan.target, {}, Opened.of(plan, result, minimum, limits), self.solver)
         if isinstance(study, StudyResult) and _same_designs(study.plan, opened.study) and not study.interrupted:
             opened.hold(study)
-        super().__init__(opened, StudySession(opened, self.solver))
-
-    def shown(self) -> Any:
-        """Return what `value` is: the results."""
-        return self.session.value.result
+        super().__init__(opened, LastLinkSession(opened))
 
     # -- the study ---------------------------------------------------------------------------------
 
@@ -161,10 +117,10 @@ class StudyPanel(Panel):
 
     # -- what a panel has ----------------------------------------------------------------------------
 
-    @property
-    def pins(self) -> Mapping[str, Any]:
-        """The pinned results, by name."""
-        return {name: plan.result for name, plan in self.session.pins.items()}
+    def close(self) -> None:
+        """Close this view; with the last view of a chain its objects are let go."""
+        super().close()
+        self.solver.forget()
 
     def comparison(self) -> pd.DataFrame:
         """Return the best design of the study shown and of every pin side by side: SI floats, units in ``attrs["units"]``."""

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, ClassVar, Self
 
@@ -88,10 +88,6 @@ class StudyPlan(LastLink):
 
     def __init__(self, target: Any, typed: Mapping[str, Any], opened: Opened, solver: Solver) -> None:
         self.opened, self.solver = opened, solver
-        self._result: Any = None
-        self._kept: dict[str, Any] = {}
-        self.unsettled = False
-        """Whether the results held are those of a moving slider."""
         super().__init__(target, typed)
 
     # -- settings ----------------------------------------------------------------------------------
@@ -267,37 +263,14 @@ class StudyPlan(LastLink):
             spans = tuple(span if span.options else span.thinned(max(2, int(len(span) * share + 1e-9))) for span in spans)
         return Study(self.target, {span.path: span.designs for span in spans}, self.opened.results)
 
-    @property
-    def result(self) -> Any:
-        """Results, solved when they are asked for and not held."""
-        if self._result is None:
-            self._result = self.solver.solve(self)
-            self.unsettled = self.solver.moving
-        return self._result
-
-    def hold(self, result: Any) -> None:
-        """Take results that were solved already, as a line of code does it."""
-        self._result, self._kept, self.unsettled = result, {}, False
-
-    def release(self) -> None:
-        """Let go of the results; they are solved again when they are wanted."""
-        self._result, self._kept = None, {}
-
-    def kept(self, key: str, make: Callable[[], Any]) -> Any:
-        """Return what follows from the results, made once."""
-        _ = self.result
-        if key not in self._kept:
-            self._kept[key] = make()
-        return self._kept[key]
+    def solved(self) -> Any:
+        """Return the results; a moving slider may have them on a coarser grid."""
+        self.unsettled = self.solver.moving
+        return self.solver.solve(self)
 
     def subtitle(self) -> str:
         """Return what varies, in a line."""
         return " and ".join(self.labels[span.path] for span in self.spans)
-
-    @property
-    def warnings(self) -> tuple[Any, ...]:
-        """What to doubt about the study."""
-        return tuple(self.result.warnings)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

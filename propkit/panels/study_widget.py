@@ -15,9 +15,9 @@ class StudyWidget(PanelWidget):
     def act(self, asked: dict[str, Any]) -> None:
         """Do what the page asks for."""
         panel: Any = self._panel
-        solver = getattr(getattr(panel, "session", None), "solver", None)
-        if solver is None:
+        if panel is None or panel.value is None:
             return
+        solver = panel.solver
         solver.moving = asked.get("do") == "slide" and asked.get("phase") == "drag"
         try:
             super().act(asked)

@@ -8,9 +8,9 @@ from typing import Any, Literal
 import numpy as np
 
 from propkit.errors import InputError, Problem
-from propkit.model.base import Calculation
+from propkit.model.base import Calculation, reach
 from propkit.study.distributions import Distribution, Normal
-from propkit.study.evaluation import ChainFunction, Variable, function_of, variable
+from propkit.study.evaluation import ChainFunction, Variable, function_of, result_name, variable
 from propkit.study.joint import JointInputs, check_seed
 from propkit.study.propagation import FirstOrder, first_order, monte_carlo
 from propkit.study.sensitivity import sobol_indices
@@ -189,6 +189,16 @@ class Uncertainty:
             return first_order(self._function, self._joint), ""
         except InputError as error:
             return None, str(error)
+
+    def panel(self, result: str | None = None) -> Any:
+        """Return the interactive panel: sliders for the uncertainties and inputs, the budget redrawn live (extra ``notebook``).
+
+        Parameters
+        ----------
+        result : str, optional
+            Result shown first; the first of the object's headline by default.
+        """
+        return reach("uncertainty_panel")(self, "" if result is None else result_name(self._target, result))
 
     def sobol(
         self,
