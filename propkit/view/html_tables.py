@@ -14,6 +14,9 @@ from propkit.view.symbols import html_species, html_symbol
 BAR_COLUMNS = 4
 """Composition is drawn as bars beside the numbers up to this many stations."""
 
+_UNBROKEN = 12
+"""Letters up to which a word in a cell is not broken."""
+
 
 def lined_up(texts: Iterable[str]) -> list[str]:
     """Return numbers with the part behind the decimal sign in a box of one width, so that right alignment lines them up."""
@@ -145,7 +148,8 @@ def _cells(column: Column, largest: float) -> list[str]:
             bar = _bar(100.0 * abs(value) / largest) if largest else ""
             out.append(f"<td class='propkit-n'>{next(set_numbers)}</td>{bar}")
         else:
-            kind = " class='propkit-n'" if cells.numeric(column) else " class='propkit-t'"
+            short = len(value or "") <= _UNBROKEN and " " not in (value or "")
+            kind = " class='propkit-n'" if cells.numeric(column) else " class='propkit-s'" if short else " class='propkit-t'"
             out.append(f"<td{kind}>{written(value) if value else ''}</td>" + ("<td></td>" if largest else ""))
     return out
 
