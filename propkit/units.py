@@ -58,6 +58,8 @@ _SUPERSCRIPTS = str.maketrans(
     dict(zip("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-", strict=True))
     | {"\u2103": "°C", "\u2109": "°F", "\u212a": "K", "\u00ba": "°", "\u02da": "°"}
 )
+_MINUS = re.compile("^\\s*\N{MINUS SIGN}")
+"""The minus of a printed page, as sheets show it, in front of a number."""
 _LONGEST = 80
 
 
@@ -129,6 +131,7 @@ def parse(text: str, unit: str, name: str = "value") -> float:
     """
     shown = _shorten(repr(text))
     allowed = f"{_kind_text(unit)}, for example {_example(unit)}"
+    text = _MINUS.sub("-", text)
     match = _TEXT.fullmatch(text) if len(text) <= _LONGEST else None
     if match is None:
         raise _wrong(name, shown, allowed, _hint_for_text(text))
@@ -302,7 +305,9 @@ def _hint_for_text(text: str) -> str:
         return f"A comma is ambiguous: write {stripped.replace(',', '')} or {stripped.replace(',', '.', 1)}."
     if re.match(r"[+-]?\d+,\d", stripped):
         return f"Write the decimal sign as a point, without grouping: {stripped.replace(',', '.', 1)}."
-    if "_" in stripped:
+    if "delta_" in stripped:
+        return "That is a temperature difference."
+    if re.match(r"[+-]?\d*_", stripped):
         return "Write the number without underscores."
     if re.match(r"[+-]?\d+(\s\d{3})+(?!\d)", stripped):
         return f"Write the number without spaces: {re.sub(r'(?<=[0-9])[ ](?=[0-9])', '', stripped)}."

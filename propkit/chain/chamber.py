@@ -21,6 +21,12 @@ from propkit.physics.thermodynamics import SpeciesTable
 STREAMS = ("core", "film")
 """What the streams of a chamber with a film are called."""
 
+COLD_STREAM = (
+    "A cold liquid alone cannot be a gas of its own enthalpy: a film takes its heat from the core, which this model does not pass on. "
+    "Let it burn a little (film_mixture_ratio=0.3), or feed it warm, as from a cooling jacket (fuel_temperature=)."
+)
+"""What to try where a stream has less enthalpy than gases can hold."""
+
 INJECTOR_RESULTS = (
     "pressure", "temperature", "density", "molar_mass", "gas_constant", "isentropic_exponent", "frozen_isentropic_exponent",
     "specific_heat", "frozen_specific_heat", "sound_speed",
@@ -56,7 +62,7 @@ class Combustion:
     def raise_for_status(self, what: str, index: int = 0) -> None:
         """Raise when a case has no solution."""
         for stream in range(len(self.shares) if self.shares is not None else 0):
-            outcome.raise_for(self.injector, f"combustion of the {STREAMS[stream]}", stream)
+            outcome.raise_for(self.injector, f"combustion of the {STREAMS[stream]}", stream, COLD_STREAM)
         outcome.raise_for(self.injector, "combustion at the injector face", index)
         outcome.raise_for(self.stagnation, "stagnation state at the nozzle inlet", index)
         outcome.raise_for(self.throat, "throat", index)

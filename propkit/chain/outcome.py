@@ -13,7 +13,10 @@ COLD = 250.0
 """Temperature [K] below which a search that ended outside the data ended at their cold end."""
 
 
-def raise_for(state: Any, what: str, index: int = 0) -> None:
+_UNITS = {"pressure": " Pa", "temperature": " K"}
+
+
+def raise_for(state: Any, what: str, index: int = 0, cold_hint: str = "") -> None:
     """Raise when a case of a batch has no solution.
 
     Parameters
@@ -24,6 +27,8 @@ def raise_for(state: Any, what: str, index: int = 0) -> None:
         What was being solved, for the message.
     index : int
         Case of the batch.
+    cold_hint : str
+        What to try where the enthalpy is lower than gases can hold; of gases in general by default.
 
     Raises
     ------
@@ -40,10 +45,10 @@ def raise_for(state: Any, what: str, index: int = 0) -> None:
         for name in ("pressure", "temperature", "iterations", "residual")
         if getattr(state, name, None) is not None
     }
-    reached = ", ".join(f"{name} {value:.6g}" for name, value in carried.items() if np.isfinite(value))
+    reached = ", ".join(f"{name} {value:.6g}{_UNITS.get(name, '')}" for name, value in carried.items() if np.isfinite(value))
     if status == OUT_OF_RANGE:
         raise RangeError(
-            f"The {what} has no solution inside the range of the species data (state reached: {reached}). {_hint(carried)}",
+            f"The {what} has no solution inside the range of the species data (state reached: {reached}). {_hint(carried, cold_hint)}",
             **carried,
         )
     raise ConvergenceError(
@@ -52,10 +57,10 @@ def raise_for(state: Any, what: str, index: int = 0) -> None:
     )
 
 
-def _hint(state: dict[str, float]) -> str:
+def _hint(state: dict[str, float], cold_hint: str) -> str:
     """Return what to look at, by the end of the range that was reached."""
     if state.get("temperature", COLD) < COLD:
-        return (
+        return cold_hint or (
             "The enthalpy is lower than gases can hold there: check mixture ratio and propellant enthalpies; where "
             "products condense, condensed=True may have a solution."
         )

@@ -65,7 +65,7 @@ def read(declared: Mapping[str, Input], named: Mapping[str, Any], problems: list
         if not given:
             values[name] = None if entry.required else entry.default
             if entry.required:
-                problems.append(Problem(name, "missing", _allowed(entry), entry.doc))
+                problems.append(Problem(name, "missing", _allowed(entry), _sentence(entry.doc)))
             continue
         try:
             values[name] = entry.read(named[name])
@@ -74,6 +74,11 @@ def read(declared: Mapping[str, Input], named: Mapping[str, Any], problems: list
             problems.extend(error.problems or (Problem(name, repr(named[name]), str(error)),))
             values[name] = None
     return Bound(typed, values)
+
+
+def _sentence(text: str) -> str:
+    """Return a one-line meaning as a sentence."""
+    return f"{text[:1].upper()}{text[1:]}." if text else ""
 
 
 def _allowed(entry: Input) -> str:

@@ -55,7 +55,9 @@ def size_problems(typed: Mapping[str, Any], values: Mapping[str, Any], bad: Coll
     one_size = len(expansion) == 1 and len(throat) + len(lips) + len(flows) == 1
     if not (two_sizes or one_size):
         missing = not expansion or not (throat or lips or flows)
-        hint = "Add what is missing." if missing and len(given) <= 1 else "Leave out what is too much."
+        add = 'area_ratio=35 and throat_diameter="0.18 m"' if not given else 'throat_diameter="0.18 m"'
+        add = "area_ratio=35" if given and not expansion else add
+        hint = f"Add, for example, {add}." if missing and len(given) <= 1 else "Leave out what is too much."
         yield Problem("nozzle size", shown, wanted, hint)
     if two_sizes and not set(bad) & set(given):
         ratio = size_ratio(typed, values)

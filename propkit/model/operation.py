@@ -286,7 +286,11 @@ def burn(
         time = impulse / thrust if thrust > 0.0 else 1.0
     shares = {}
     for name, value, default in (("ullage", ullage, ULLAGE), ("residuals", residuals, RESIDUALS)):
-        shares[name] = default if value is None else units.to_si(value, "", name)
+        try:
+            shares[name] = default if value is None else units.to_si(value, "", name)
+        except InputError as error:
+            problems += error.problems
+            continue
         if not 0.0 <= shares[name] < 0.5:
             problems.append(Problem(name, as_text(value), "0 or more and below 0.5", "It is a share: 0.03 is 3 %."))
     if problems:
@@ -313,7 +317,11 @@ def burn(
 
 
 def _positive(name: str, value: Any, unit: str, problems: list[Problem]) -> float:
-    read = units.to_si(value, unit, name)
+    try:
+        read = units.to_si(value, unit, name)
+    except InputError as error:
+        problems += error.problems
+        return 1.0
     if not 0.0 < read < 1e12:
         problems.append(Problem(name, as_text(value), "above 0"))
         return 1.0

@@ -5,7 +5,7 @@ Any unambiguous suffix of a path may be typed. A bare name that the object itsel
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
@@ -66,13 +66,24 @@ def resolve(calculation: Calculation, path: str, *, inputs: bool = True, results
         return known[found[0]]
     if found:
         raise InputError(f"{path!r} is ambiguous; it could be {', '.join(found)}.", path=path, candidates=found)
-    suffix = path.rpartition(".")[2]
-    near = [other for other in known if other.rpartition(".")[2] == suffix] or near_matches(path, known)
-    bare = {other.rpartition(".")[2]: other for other in known}
-    near = near or [bare[name] for name in near_matches(suffix, bare)]
+    near = _near(calculation.kind, path, known)
     what = "input" if not results else "input or result"
     hint = f" Did you mean {' or '.join(near)}?" if near else ""
     raise InputError(f"{path!r} is no {what} of this chain.{hint}", path=path, candidates=near)
+
+
+def _near(kind: str, path: str, known: Iterable[str]) -> list[str]:
+    """Return the paths most like one that is unknown: those of the object named, or else its own first, then upstream."""
+    ordered = sorted(known, key=lambda other: not other.startswith(f"{kind}."))
+    owner, _, name = path.partition(".")
+    theirs = [other for other in ordered if name and other.startswith(f"{owner}.")]
+    exact = [other for other in ordered if other.partition(".")[2] == (name or path)]
+    if exact:
+        return exact[:4]
+    names = dict.fromkeys(other.partition(".")[2] for other in theirs or ordered)
+    wanted = near_matches(name if theirs else path, names)
+    found = [other for match in wanted for other in theirs or ordered if other.partition(".")[2] == match]
+    return (found or near_matches(path, ordered))[:4]
 
 
 def replace(calculation: Calculation, changes: Mapping[str, Any]) -> Any:

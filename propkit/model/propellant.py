@@ -170,6 +170,8 @@ class Propellant(Calculation):
     def _check(self, bad: set[str]) -> list[Problem]:
         typed = self._typed
         problems = []
+        if "name" in typed and not str(self._values["name"] or "").strip():
+            problems.append(Problem("name", repr(typed["name"]), "a name with letters, or left out", "The formula then stands for it."))
         if "heat_capacity_range" in typed and not {"heat_capacity", "library_name"} & (set(typed) | bad):
             problems.append(Problem("heat_capacity_range", "given alone", "given together with heat_capacity"))
         if "library_name" in typed or "library_name" in bad:
@@ -177,7 +179,7 @@ class Propellant(Calculation):
             hints = {
                 name: _STORED_ELSEWHERE if name in ("temperature", "pressure") else _STATED_ELSEWHERE for name in beside
             }
-            return [Problem(name, "given beside library_name", "left out", hints[name]) for name in beside]
+            return problems + [Problem(name, "given beside library_name", "left out", hints[name]) for name in beside]
         for name, example in (("formula", '"C H1.95"'), ("enthalpy", '"-24.717 kJ/mol"')):
             if name not in typed and name not in bad:
                 hint = "Or take a row of the library: pk.Propellant.from_library(name)." if name == "formula" else ""

@@ -23,7 +23,9 @@ _RANGE = 'two temperatures, the lower first, for example ("260 K", "340 K")'
 
 
 def enthalpy(name: str, value: Any) -> tuple[str, float]:
-    """Return (unit, value in it): J/mol of the formula or J/kg; a bare number could be either and is refused."""
+    """Return (unit, value in it): J/mol of the formula or J/kg; a bare number other than 0 could be either and is refused."""
+    if not isinstance(value, bool) and isinstance(value, int | float) and value == 0:
+        return "J/mol", 0.0
     if not isinstance(value, str) and not hasattr(value, "units"):
         hint = "A number alone could be per mole or per mass."
         raise InputError(Problem(name, as_text(value), _ENTHALPY, hint))

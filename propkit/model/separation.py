@@ -83,7 +83,7 @@ def doubts(nozzle: Nozzle, ambient: float) -> Iterator[Doubt]:
     found = limits(nozzle)
     predicted = [separation.CRITERIA[name].title for name, limit in found.items() if ambient > limit]
     if predicted:
-        count = f"{len(predicted)} of {len(found)} criteria" if len(predicted) < len(found) else "All three criteria"
+        count = f"{len(predicted)} of {len(found)} criteria" if len(predicted) < len(found) else "all three criteria"
         yield Doubt(
             f"Separation is {'likely' if len(predicted) > 1 else 'possible'}: {count} predict it ({'; '.join(predicted)}) with the exit pressure at "
             f"{pressure / ambient:.3g} of the ambient pressure. The thrust is the full-flowing value{'; thrust_separated has an estimate' if len(predicted) > 1 else ''}. {SIDE_LOADS}",

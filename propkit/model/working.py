@@ -52,7 +52,6 @@ def working_of(
         units=system,
         headline=(row,),
         steps=tuple(steps),
-        doubts=row.doubts,
         render=render,
     )
 

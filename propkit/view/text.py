@@ -111,7 +111,6 @@ def _table(table: Table) -> list[str]:
     for column in table.columns:
         head = column.label if species and len(table.columns) > 1 else text_symbol(column.symbol) or column.label
         blocks.append(_block(head, cells.unit_text(column.unit), _texts(column), cells.numeric(column)))
-    head_rows = [0] if all(not block[1].strip() for block in blocks) else [0, 1]
     lines: list[str] = []
     for group in _groups(blocks, WIDTH - _width(first[0]) - 4):
         if lines:
@@ -119,6 +118,7 @@ def _table(table: Table) -> list[str]:
         if len(group) == 1 and _width(first[0]) + _width(group[0][0]) + 4 > WIDTH:
             lines += _tall(first, group[0])
             continue
+        head_rows = (0, 1) if any(block[1].strip() for block in group) else (0,)
         for row in (*head_rows, *range(2, len(first))):
             lines.append("  " + "  ".join(block[row] for block in (first, *group)))
     return lines + (_bullets([table.note], "") if table.note else [])

@@ -47,7 +47,7 @@ def test_the_nozzle_flows_full_from_the_altitude_of_that_pressure(perf):
 
 def test_the_thrust_stays_full_flowing_and_the_estimate_is_marked(perf):
     doubts = {doubt.code: doubt for doubt in perf.own_warnings}
-    assert "All three criteria" in doubts["separation"]
+    assert "all three criteria" in doubts["separation"]
     assert "side loads" in doubts["separation"]
     assert doubts["separation"].about == "thrust"
     lip, nozzle = perf.nozzle.exit, perf.nozzle
