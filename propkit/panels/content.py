@@ -67,8 +67,9 @@ def control_set(session: Session, face: Face, system: UnitSystem) -> dict[str, A
     return {
         "kind": face.kind,
         "title": face.title,
-        "controls": [entry for name, entry in made if not face.is_minor(name)],
-        "minor": [entry for name, entry in made if face.is_minor(name)],
+        # a refused control is never folded away
+        "controls": [entry for name, entry in made if not face.is_minor(name) or entry["error"]],
+        "minor": [entry for name, entry in made if face.is_minor(name) and not entry["error"]],
     }
 
 

@@ -88,17 +88,15 @@ def headline(plan: UncertaintyPlan, base: Any, system: UnitSystem) -> list[dict[
     decimals = len(both.uncertainty.partition(".")[2])
     value, deviation, low, high = (number * factor for number in _numbers(result, name))
     before = None if base is None or name not in base.results else [number * factor for number in _numbers(base, name)]
+    answers = (
+        ("value", plan.result_labels[name], both.value, value),
+        ("standard_uncertainty", "standard uncertainty", both.uncertainty, deviation),
+        ("interval", "95 % interval", f"{low:.{decimals}f} to {high:.{decimals}f}", math.nan),
+    )
     made = []
-    for place, (label, text, number) in enumerate(
-        (
-            (plan.result_labels[name], both.value, value),
-            ("standard uncertainty", both.uncertainty, deviation),
-            ("95 % from", f"{low:.{decimals}f}", low),
-            ("95 % to", f"{high:.{decimals}f}", high),
-        )
-    ):
-        entry = {"name": ("value", "standard_uncertainty", "low", "high")[place], "label": show.sentence(label), "symbol": show.symbol(quantity.symbol) if place == 0 else "", "text": text.replace("-", "\N{MINUS SIGN}"), "unit": shown_unit(unit), "kind": "computed", "doubts": []}
-        if before is not None:
+    for place, (key, label, text, number) in enumerate(answers):
+        entry = {"name": key, "label": show.sentence(label), "symbol": show.symbol(quantity.symbol) if place == 0 else "", "text": text.replace("-", "\N{MINUS SIGN}"), "unit": shown_unit(unit), "kind": "computed", "doubts": []}
+        if before is not None and place < 2:
             step = number - before[place]
             entry["difference"] = show.signed(f"{abs(step):.{decimals}f}", step) if step else "±0"
             entry["share"] = f"{100.0 * step / abs(before[place]):+.2f} %".replace("-", "\N{MINUS SIGN}") if before[place] else ""
@@ -117,7 +115,7 @@ def row(result: Any, name: str, label: str, base: Any, system: UnitSystem) -> di
         "label": show.sentence(label),
         "symbol": show.symbol(quantity.symbol),
         "text": f"{result.rounded(name, system)}".replace("-", "\N{MINUS SIGN}"),
-        "unit": f"{shown_unit(unit)}{f'  ({share})' if share else ''}",
+        "unit": f"{shown_unit(unit)}{f'  ({share})' if share and base is None else ''}",
         "kind": "computed",
         "doubts": [str(doubt) for doubt in result.warnings if doubt.about == name],
     }
@@ -189,7 +187,7 @@ def code_of_uncertainty(plan: UncertaintyPlan) -> str:
         lines.append("result = uncertainty.run()")
     else:
         samples, seed = plan.trials
-        more = f", illegal={plan.opened.illegal!r}" if plan.opened.illegal != "refuse" else ""
+        more = f", illegal={plan.si('illegal')!r}" if plan.si("illegal") != "refuse" else ""
         lines.append(f"result = uncertainty.run(samples={samples!r}, seed={seed}{more})")
     drawn = "tornado" if plan.result.first_order is not None else "histogram"
     lines.append(f"figure = result.plot({plan.result_name!r}, {drawn!r})")

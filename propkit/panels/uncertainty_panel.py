@@ -34,7 +34,7 @@ if TYPE_CHECKING:
 class UncertaintyFace(SettingFace):
     """The result shown, the spread of every uncertain input, and how trials are run."""
 
-    minor = ("method", "samples", "seed")
+    minor = ("method", "samples", "seed", "illegal")
 
     def is_minor(self, name: str) -> bool:
         """Whether an input stands folded away."""

@@ -18,6 +18,7 @@ from propkit.study.uncertainty import Uncertainty
 SAMPLES, SEED = 10_000, 1
 MOST_SAMPLES = 1_000_000
 FIRST_ORDER, TRIALS = "first order", "trials"
+ILLEGAL = {"refuse": "refuse the trials", "leave out": "leave out and count"}
 METHODS = {FIRST_ORDER: "first order", TRIALS: "trials (Monte Carlo)"}
 
 
@@ -35,13 +36,14 @@ class SpreadSetting(CustomInput):
     """
 
     def __init__(self, path: str, label: str, quantity: quantities.Quantity, value: Distribution) -> None:
+        short = "uncertainty" if isinstance(value, Normal) else "values" if isinstance(value, Empirical) else "half-width"
         what = "standard uncertainty" if isinstance(value, Normal) else "half-width"
         if isinstance(value, Normal) and value.k != 1.0:
             what = f"expanded uncertainty, k = {value.k:g}"
         doc = f"the {what} of the {label} ({type(value).__name__.lower()} distribution); in % it is of the value"
         super().__init__(doc=doc, reader=lambda name, given: spread_of(value, given), default=spread_text(value, quantity))
         self.name, self.owner, self.value = path, "", value
-        self.label = f"{label}, {'±' if not isinstance(value, Empirical) else 'samples'}"
+        self.label = f"{short} of {label}"
         self._row = quantity
 
     @property
@@ -120,6 +122,7 @@ class UncertaintyPlan(LastLink):
         inputs = {path: self._spread(path, value) for path, value in opened.inputs.items()}
         self.uncertainty = Uncertainty(self.target, inputs, opened.correlation or None, list(opened.results))
         self.setting(ChoiceSetting("method", "method", "first order, or trials of the whole distributions", METHODS, opened.method))
+        self.setting(ChoiceSetting("illegal", "draws outside the legal range", "what trials do with a draw that an input cannot have", ILLEGAL, opened.illegal))
         for name, label, value, bounds in (
             ("samples", "trials", opened.samples, Bounds(at_least=100, at_most=MOST_SAMPLES)),
             ("seed", "seed", opened.seed, Bounds(at_least=0, at_most=2**31)),
@@ -141,7 +144,7 @@ class UncertaintyPlan(LastLink):
 
     def tidied(self, typed: dict[str, Any], changes: Mapping[str, Any]) -> dict[str, Any]:
         """Go back to first order when a spread changes: trials are run on demand."""
-        if not changes.keys() & {"method", "result", "samples", "seed"}:
+        if not changes.keys() & {"method", "result", "samples", "seed", "illegal"}:
             typed["method"] = FIRST_ORDER
         return typed
 
@@ -157,7 +160,7 @@ class UncertaintyPlan(LastLink):
 
     def _only_shown(self, other: UncertaintyPlan) -> bool:
         """Whether another plan has the same numbers, and only shows another result of them."""
-        if other.method != self.method or (self.method == TRIALS and other.trials != self.trials):
+        if other.method != self.method or (self.method == TRIALS and (other.trials, other.si("illegal")) != (self.trials, self.si("illegal"))):
             return False
         return dict(other.uncertainty.inputs) == dict(self.uncertainty.inputs)
 
@@ -182,8 +185,9 @@ class UncertaintyPlan(LastLink):
         if self.method == FIRST_ORDER:
             return self.uncertainty.run()
         samples, seed = self.trials
-        return self.uncertainty.run(samples=samples, seed=seed, progress=False, illegal=self.opened.illegal)  # type: ignore[arg-type]
+        return self.uncertainty.run(samples=samples, seed=seed, progress=False, illegal=self._values["illegal"])  # type: ignore[arg-type]
 
     def subtitle(self) -> str:
         """Return what is uncertain, in a line."""
-        return ", ".join(self.labels.values())
+        listed = list(self.labels.values())
+        return ", ".join(listed) if len(listed) < 4 else f"{len(listed)} inputs"

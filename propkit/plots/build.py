@@ -22,6 +22,8 @@ HEIGHT = 300
 FONT = "system-ui, sans-serif"
 ROOM_BELOW = 72
 """Room for axis and legend below a plot [px]; without it BokehJS forgets the legend when the page is resized."""
+LONG_TEXT = 8
+"""Texts of bars up to this length stand beside the frame."""
 TOOLS = "pan,box_zoom,reset"
 
 
@@ -122,12 +124,19 @@ def _extent(layer: Any, axis: str) -> list[float]:
     if isinstance(layer, Line):
         return [value for value in (layer.x if axis == "x" else layer.y).values if value == value]
     if isinstance(layer, Bars):
-        return [0.0, *layer.values.values] if axis == "x" else []
+        return [0.0, *layer.values.values, _room_for_texts(layer)] if axis == "x" else []
     if isinstance(layer, Mark):
         return [layer.x if axis == "x" else layer.y]
     if not isinstance(layer, Rule):
         return []
     return [layer.at] if layer.axis == axis else []
+
+
+def _room_for_texts(bars: Bars) -> float:
+    """Return how far the axis of bars reaches so that long texts at their ends stay inside the frame."""
+    longest = max((len(text) for text in bars.texts), default=0)
+    largest = max(bars.values.values, default=0.0)
+    return largest / (1.0 - min(0.02 * longest, 0.5)) if longest > LONG_TEXT else largest
 
 
 def axis_text(axis: Axis) -> str:

@@ -163,6 +163,23 @@ def test_an_error_stands_beside_its_control_and_the_last_result_stays(panel: Any
     assert panel.errors == {}
 
 
+def test_trials_that_reach_illegal_draws_are_refused_in_sight_or_leave_them_out() -> None:
+    plan = pk.Uncertainty(built(), {"chamber.cstar_efficiency": "0.3 %", THROAT: "0.1 %"})
+    panel = plan.panel("specific_impulse")
+    panel.set("uncertainty.samples", 500)
+    page(panel, do="press", what="trials")
+    assert "illegal" in panel.errors["uncertainty.method"]
+    main = [entry["path"] for entry in panel.content()["sets"][0]["controls"]]
+    assert "uncertainty.method" in main
+    panel.reset("uncertainty.method")
+    panel.set("uncertainty.illegal", "leave out")
+    panel.run_trials()
+    wanted = plan.run(samples=500, seed=1, progress=False, illegal="leave out")
+    assert panel.value.table.equals(wanted.table)
+    assert any("left out" in doubt for doubt in panel.content()["doubts"])
+    panel.close()
+
+
 def test_observed_values_have_no_slider() -> None:
     draws = [9.7e6 + 1e4 * step for step in range(-10, 11)]
     panel = pk.Uncertainty(built(), {PRESSURE: pk.Empirical(draws), THROAT: "0.1 %"}).panel()
