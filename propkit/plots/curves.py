@@ -231,9 +231,9 @@ def altitude_figure(performance: Any, name: str, system: UnitSystem) -> Figure:
     if not full.all():
         share = np.where(full, np.nan, curve.values)
         share[min(int(full.argmax()), len(share) - 1)] = curve.values[int(full.argmax())]
-        layers.append(_line(x, share, curve, unit, "dashed", "full-flowing value, separation predicted"))
+        layers.append(_line(x, share, curve, unit, "dashed", "full-flowing value, below a limit of separation"))
     layers.append(_line(x, np.where(full, curve.values, np.nan), curve, unit, "solid", curve.label))
-    layers += [Rule("x", height / scale, f"separated below: {criterion}") for criterion, height in limits.items()]
+    layers += [Rule("x", height / scale, f"{criterion} limit") for criterion, height in limits.items()]
     ambient = performance._values["ambient"]
     at = _altitude(ambient)
     layers.append(Mark(at / scale, here, ambient.text))
