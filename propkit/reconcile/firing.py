@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from propkit import units
-from propkit.errors import InputError, NotAvailableError, Problem, near_matches
+from propkit.errors import InputError, NotAvailableError, Problem, RangeError, near_matches
 from propkit.model.base import reach
 from propkit.model.doubts import Doubt
 from propkit.model.performance import Performance
@@ -22,11 +22,12 @@ from propkit.reconcile.firing_inputs import (
     quantity_of,
     require_channels,
     result_unit,
+    stretch_of,
 )
 from propkit.reconcile.firing_results import AMBIENT, FLOW, FUEL, OXIDIZER, PRESSURE, THROAT, DeliveredFunction
 from propkit.reconcile.firing_series import Recording, read_recording
 from propkit.reconcile.firing_statistics import FEWEST, Zero, mean_of, throat_at, zero_of
-from propkit.reconcile.firing_window import Criterion, Window, find_window
+from propkit.reconcile.firing_window import Criterion, Window, burns, find_window
 from propkit.study.distributions import Normal
 from propkit.study.joint import JointInputs
 from propkit.study.propagation import FirstOrder, first_order
@@ -42,6 +43,8 @@ _AFTER = 0.25
 """Share of the burn left out after the cutoff before the zero after is taken (tail-off)."""
 _BEFORE = 0.05
 """Share of the burn left out before the ignition."""
+_SURROUNDINGS = 1.2
+"""Chamber over ambient pressure below which nothing burns; a choked throat needs 1.7 at the least."""
 
 
 class HotFire:
@@ -65,7 +68,7 @@ class HotFire:
     calibration : mapping of str to uncertainty, optional
         Channel -> standard uncertainty of its calibration, common to all samples.
     window : (start, end), optional
-        Steady window [s]; found by the criterion where not given.
+        Steady window [s], as numbers, texts or quantities; found by the criterion where not given.
     criterion : Criterion, optional
         What counts as steady.
     zero_before, zero_after : (start, end), optional
@@ -108,10 +111,10 @@ class HotFire:
         throat_after: Any = None,
         throat_growth: Any = 0.0,
         calibration: Mapping[str, Any] | None = None,
-        window: tuple[float, float] | None = None,
+        window: tuple[Any, Any] | None = None,
         criterion: Criterion | None = None,
-        zero_before: tuple[float, float] | None = None,
-        zero_after: tuple[float, float] | None = None,
+        zero_before: tuple[Any, Any] | None = None,
+        zero_after: tuple[Any, Any] | None = None,
         correct_zero: bool = True,
         time: str | None = None,
         full_scale: Mapping[str, tuple[Any, Any]] | None = None,
@@ -124,10 +127,10 @@ class HotFire:
             "throat_after": throat_after,
             "throat_growth": throat_growth,
             "calibration": dict(calibration or {}),
-            "window": window,
+            "window": None if window is None else stretch_of("window", window),
             "criterion": criterion,
-            "zero_before": zero_before,
-            "zero_after": zero_after,
+            "zero_before": None if zero_before is None else stretch_of("zero_before", zero_before),
+            "zero_after": None if zero_after is None else stretch_of("zero_after", zero_after),
             "correct_zero": correct_zero,
             "time": time,
             "full_scale": dict(full_scale or {}),
@@ -152,7 +155,7 @@ class HotFire:
         )
         hold(self, "_recording", read)
         watched = [channel for channel in KNOWN if channel in channels and channel != AMBIENT]
-        hold(self, "_window", find_window(read, PRESSURE, watched, criterion, window))
+        hold(self, "_window", find_window(read, PRESSURE, watched, criterion, given["window"]))
         self._average(correct_zero, calibration or {})
         self._throats(throat_before, throat_after, throat_growth)
         self._deliver()
@@ -178,15 +181,16 @@ class HotFire:
         if name == AMBIENT or quantity_of(name).kind.name not in ("pressure", "force", "mass flow"):
             return None
         stretches = []
-        burn = self._window.cutoff - self._window.ignition
-        found = (
-            (float(self._recording.time[0]), self._window.ignition - _BEFORE * burn),
-            (self._window.cutoff + _AFTER * burn, float(self._recording.time[-1])),
-        )
+        time, window = self._recording.time, self._window
+        quiet = np.ones(len(time), dtype=bool)
+        for start, end in burns(self._recording, PRESSURE):
+            length = end - start
+            quiet &= (time < start - _BEFORE * length) | (time > end + _AFTER * length)
+        found = (quiet & (time < window.ignition), quiet & (time > window.cutoff))
         channel = self._recording.channels[name]
         for key, default in zip(("zero_before", "zero_after"), found, strict=True):
             stretch = self._given[key]
-            use = self._recording.within(*(stretch or default)) & channel.good
+            use = (default if stretch is None else self._recording.within(*stretch)) & channel.good
             enough = np.count_nonzero(use) >= FEWEST
             if stretch is not None and not enough:
                 raise InputError(Problem(key, f"{np.count_nonzero(use)} good samples of {name}", f"at least {FEWEST}"))
@@ -229,6 +233,12 @@ class HotFire:
             for name, (value, _) in entries.items()
             if not value > 0.0 and name != AMBIENT
         ]
+        ambient, pressure = self._ambient(), entries[PRESSURE][0]
+        if pressure < _SURROUNDINGS * ambient:
+            raise RangeError(
+                f"nothing burns: chamber.pressure is {pressure:.4g} Pa, that of the surroundings ({ambient:.4g} Pa)",
+                pressure=pressure,
+            )
         if bad:
             raise InputError(bad)
         resolved = {

@@ -93,6 +93,16 @@ def calibration_of(given: Any, value: float, unit: str, name: str) -> float:
     return spread(given, value, unit, f"calibration of {name}")
 
 
+def stretch_of(name: str, given: Any) -> tuple[float, float]:
+    """Return a stretch of time in seconds."""
+    try:
+        start, end = given
+    except (TypeError, ValueError):
+        allowed = 'a pair of times: (start, end), in seconds or with units such as ("6 s", "10 s")'
+        raise InputError(Problem(name, repr(given), allowed)) from None
+    return units.to_si(start, "s", name), units.to_si(end, "s", name)
+
+
 def measured(name: str, given: Any, unit: str) -> tuple[float, float]:
     """Return a measured value and its standard uncertainty in SI."""
     if not isinstance(given, tuple | list) or len(given) != 2:

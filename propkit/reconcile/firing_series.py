@@ -28,6 +28,7 @@ Mask = npt.NDArray[np.bool_]
 
 _HEADER = re.compile(r"\s*(?P<label>.*?)\s*(?:\[(?P<square>[^\]]*)\]|\((?P<round>[^)]*)\))\s*")
 _NO_UNIT = ("", "-", "1")
+_GAUGE = "That is a gauge pressure; pressures are absolute: add the barometer reading of the test to the column, and call its unit psi or bar."
 SPIKE = 8.0
 """Departure from the local median that makes a spike, in robust standard deviations."""
 SATURATED = 5
@@ -184,7 +185,7 @@ def flagged(name: str, column: str, unit: str, values: Array, full_scale: tuple[
     (1974) 383-393, for the spikes (from memory); common practice, no source, for the rest.
     """
     missing = ~np.isfinite(values)
-    filled = _bridged(values, missing)
+    filled = _bridged(name, values, missing)
     runs, far = _run_lengths(filled), _far(filled)
     brief = far & (_lengths_of(far) <= 3)
     # a spike beyond the end of the range does not hide a channel that sits at that end
@@ -215,10 +216,10 @@ def _far(values: Array) -> Mask:
     return far
 
 
-def _bridged(values: Array, missing: Mask) -> Array:
+def _bridged(name: str, values: Array, missing: Mask) -> Array:
     """Return the samples with the missing ones bridged by straight lines, for looking at their neighbours only."""
     if missing.all():
-        raise InputError("a channel has no number at all")
+        raise InputError(Problem(name, "without any number", "a column with samples"))
     places = np.arange(len(values))
     bridged: Array = np.where(missing, np.interp(places, places[~missing], values[~missing]), values)
     return bridged
@@ -242,6 +243,8 @@ def _table(source: Any) -> pd.DataFrame:
     if isinstance(source, pd.DataFrame):
         table = source
     else:
+        if not isinstance(source, str | Path):
+            raise InputError(Problem("recording", f"{source!r}"[:60], "the path of a CSV file, or a DataFrame"))
         try:
             table = pd.read_csv(Path(source), comment="#", skipinitialspace=True)
         except OSError as error:
@@ -250,6 +253,9 @@ def _table(source: Any) -> pd.DataFrame:
             raise InputError(
                 f"{source} is not a table of comma-separated columns with a header line: {error}"
             ) from error
+    if len(table.columns) == 1 and any(mark in str(table.columns[0]) for mark in ";\t"):
+        hint = "Columns seem to be divided by semicolons or tabs: save with commas, and with decimal points."
+        raise InputError(Problem("recording", "one column", "a table of comma-separated columns", hint))
     if len(table) < 10:
         raise InputError(Problem("recording", f"{len(table)} rows", "at least 10 rows"))
     return table
@@ -283,9 +289,8 @@ def _time_header(headers: list[str], time: str | None, problems: list[Problem]) 
     found = [header for header in headers if split_header(header)[0].casefold() in ("time", "t")]
     if len(found) == 1:
         return found[0]
-    problems.append(
-        Problem("time", f"{len(found)} columns named so", "one column named 'time [s]'", "Or name the column: time=...")
-    )
+    given = f"the name of {len(found)} columns" if found else "not among the columns"
+    problems.append(Problem("time", given, "one column named 'time [s]'", "Or name the column: time=..."))
     return None
 
 
@@ -324,7 +329,12 @@ def _conversion(stated: str, unit: str, name: str) -> tuple[float, float]:
             allowed = f"a unit such as {units.shown_unit(unit)}"
             raise InputError(Problem(f"unit of {name}", repr(stated), allowed))
         return 1.0, 0.0
-    offset = units.to_si(f"0 {stated}", unit, f"unit of {name}")
+    try:
+        offset = units.to_si(f"0 {stated}", unit, f"unit of {name}")
+    except InputError as error:
+        problem = error.problems[0]
+        hint = _GAUGE if "gauge" in problem.hint else problem.hint
+        raise InputError(Problem(problem.name, repr(stated), f"that of {problem.allowed}", hint)) from error
     # two readings far apart keep the digits of the factor
     return (units.to_si(f"1000 {stated}", unit, f"unit of {name}") - offset) / 1000.0, offset
 
@@ -352,6 +362,6 @@ def _check_time(moments: Array, problems: list[Problem]) -> None:
                 "time",
                 f"{moments[row + 1]:g} s after {moments[row]:g} s in row {row + 2}",
                 "increasing from row to row",
-                f"It fails to in {backward.size} places.",
+                f"It fails to in {backward.size} place{'s' if backward.size > 1 else ''}.",
             )
         )

@@ -11,6 +11,8 @@ import numpy as np
 
 from propkit import quantities, units
 from propkit.model.doubts import Doubt
+from propkit.reconcile.firing_inputs import KNOWN
+from propkit.reconcile.firing_results import AMBIENT
 from propkit.report import Column, Report, Row, Section, Table, UnitSystem
 from propkit.series import Axis, Figure, Line, Rule, Series
 from propkit.view.numbers import rounded_together
@@ -19,6 +21,8 @@ if TYPE_CHECKING:
     from propkit.reconcile.firing import HotFire
 
 HEADLINE = ("characteristic_velocity", "thrust_coefficient", "specific_impulse")
+LOST = 0.1
+"""Share of the window without a good reading of a channel that is worth a warning."""
 POINTS = 1200
 """Most points of a trace."""
 
@@ -49,6 +53,10 @@ def doubts(firing: HotFire) -> Iterator[Doubt]:
     for name, channel in recording.channels.items():
         for note in channel.notes(inside):
             yield Doubt(f"{note} in the window.", code="anomaly", about=name)
+        lost = float(np.mean(~channel.good[inside]))
+        if lost > LOST:
+            text = f"{name} has no good reading in {100.0 * lost:.0f} % of the window: its mean is that of the rest."
+            yield Doubt(text, code="gap", about=name)
         if np.count_nonzero(channel.saturated & inside):
             text = f"{name} is saturated in the window: what is left is biased, its mean should not be used."
             yield Doubt(text, code="saturated", about=name)
@@ -72,15 +80,16 @@ def doubts(firing: HotFire) -> Iterator[Doubt]:
                 code="one-zero",
                 about=name,
             )
-    table = firing.table["value"]
-    for index, value in table.items():
-        if str(index).startswith("cstar_efficiency") and value > 1.0:
-            yield Doubt(
-                f"{label_of(str(index))} is {value:.4f}, above 1: look at flow, pressure and throat.",
-                code="efficiency",
-                about=str(index),
-            )
+    table = firing.table
+    if "cstar_efficiency_shifting" in table.index and table.loc["cstar_efficiency_shifting", "low"] > 1.0:
+        value = float(table.loc["cstar_efficiency_shifting", "value"])
+        text = f"{label_of('cstar_efficiency_shifting')} is {value:.4f}, above 1 by more than its uncertainty: look at flow, pressure and throat."
+        yield Doubt(text, code="efficiency", about="cstar_efficiency_shifting")
     means = firing.channel_means
+    uncalibrated = [name for name in KNOWN if name in means and name != AMBIENT and not means[name].calibration]
+    if uncalibrated:
+        text = f"No calibration uncertainty of {', '.join(uncalibrated)} is given: the uncertainties are those of scatter and zero alone, and likely too small."
+        yield Doubt(text, code="calibration", about="means")
     if {"mass_flow", "oxidizer_mass_flow", "fuel_mass_flow"} <= set(means):
         total, parts = means["mass_flow"], (means["oxidizer_mass_flow"], means["fuel_mass_flow"])
         gap = total.value - sum(part.value for part in parts)

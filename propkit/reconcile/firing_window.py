@@ -9,6 +9,7 @@ import numpy as np
 import numpy.typing as npt
 
 from propkit.errors import InputError, Problem, RangeError
+from propkit.reconcile.firing_inputs import stretch_of
 from propkit.reconcile.firing_series import Mask, Recording
 from propkit.reconcile.firing_statistics import FEWEST
 
@@ -166,12 +167,28 @@ def find_window(
 
 
 def burn(recording: Recording, reference: str) -> tuple[float, float]:
-    """Return when the burn starts and ends [s].
+    """Return when the longest burn starts and ends [s].
 
     Raises
     ------
     RangeError
         When the reference never stands clear of its typical low reading.
+    """
+    return max(burns(recording, reference), key=lambda ends: ends[1] - ends[0])
+
+
+def burns(recording: Recording, reference: str) -> list[tuple[float, float]]:
+    """Return when each burn of the recording starts and ends [s], in order of time.
+
+    Raises
+    ------
+    RangeError
+        When the reference never stands clear of its typical low reading.
+
+    Notes
+    -----
+    A stretch without readings does not end a burn that is seen on both of its sides: the other channels tell whether it is
+    steady through the stretch.
     """
     channel = recording.channels[reference]
     good = channel.good
@@ -180,23 +197,15 @@ def burn(recording: Recording, reference: str) -> tuple[float, float]:
     low, high = np.percentile(channel.values[good], [2.0, 98.0])
     idle = low if low < 0.3 * high else 0.0
     burning = np.where(good, channel.values, np.nan) > idle + BURNING * (high - idle)
-    # a flagged sample inside the burn does not end it
-    burning |= ~good & _neighbours(burning)
+    known = np.flatnonzero(good)
+    before = np.clip(np.searchsorted(known, np.arange(len(good)), side="right") - 1, 0, len(known) - 1)
+    after = np.clip(before + 1, 0, len(known) - 1)
+    burning |= ~good & burning[known[before]] & burning[known[after]]
     if not high > 0.0 or not burning.any():
         raise RangeError(f"{reference} shows no burn: its typical readings run from {low:g} to {high:g}")
     padded = np.concatenate([[False], burning, [False]])
     starts, ends = np.flatnonzero(~padded[:-1] & padded[1:]), np.flatnonzero(padded[:-1] & ~padded[1:])
-    longest = int(np.argmax(ends - starts))
-    return float(recording.time[starts[longest]]), float(recording.time[ends[longest] - 1])
-
-
-def _neighbours(flags: Mask) -> Mask:
-    """Return samples that lie between flagged ones at most 25 samples away on each side."""
-    places = np.arange(len(flags))
-    before = np.maximum.accumulate(np.where(flags, places, -(10**9)))
-    after = np.minimum.accumulate(np.where(flags, places, 10**9)[::-1])[::-1]
-    near: Mask = (places - before <= 25) & (after - places <= 25)
-    return near
+    return [(float(recording.time[k]), float(recording.time[m - 1])) for k, m in zip(starts, ends, strict=True)]
 
 
 def _steady_runs(recording: Recording, name: str, inside: Mask, edges: Array, rule: Criterion) -> Mask:
@@ -230,10 +239,7 @@ def _steady_runs(recording: Recording, name: str, inside: Mask, edges: Array, ru
 
 
 def _checked(given: tuple[float, float], recording: Recording) -> tuple[float, float]:
-    try:
-        start, end = (float(edge) for edge in given)
-    except (TypeError, ValueError):
-        raise InputError(Problem("window", repr(given), "a pair of times in seconds: (start, end)")) from None
+    start, end = stretch_of("window", given)
     low, high = float(recording.time[0]), float(recording.time[-1])
     if not low <= start < end <= high:
         raise InputError(

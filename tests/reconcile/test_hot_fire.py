@@ -248,3 +248,102 @@ def test_recording_without_a_burn():
     quiet = made[made["time [s]"] < 2.9].reset_index(drop=True)
     with pytest.raises((RangeError, InputError)):
         FIRING.replace(recording=quiet)
+
+
+def _plain_firing(perf, ramp, seconds=20.0, noise=0.0, seed=0):
+    """A recording whose truth is the performance itself, times `ramp` of time (0 cold, 1 burning)."""
+    rng = np.random.default_rng(seed)
+    time = np.arange(0.0, seconds, 0.01)
+    share = ramp(time)
+    scatter = rng.normal(0.0, noise, (4, time.size)) if noise else np.zeros((4, time.size))
+    pressure = 101325.0 + (perf.chamber.si("pressure") - 101325.0) * share
+    table = pd.DataFrame(
+        {
+            "time [s]": time,
+            "pc [Pa]": pressure * (1.0 + scatter[0]),
+            "ox [kg/s]": perf.si("oxidizer_mass_flow") * share * (1.0 + scatter[1]),
+            "fu [kg/s]": perf.si("fuel_mass_flow") * share * (1.0 + scatter[2]),
+            "F [N]": perf.si("thrust") * share * (1.0 + scatter[3]),
+        }
+    )
+    channels = {
+        "chamber.pressure": "pc [Pa]",
+        "oxidizer_mass_flow": "ox [kg/s]",
+        "fuel_mass_flow": "fu [kg/s]",
+        "thrust": "F [N]",
+    }
+    return table, channels
+
+
+@pytest.fixture(scope="module")
+def stand():
+    case = pk.PropellantCase("LOX", "LCH4", mixture_ratio=3.0)
+    nozzle = pk.Nozzle(pk.Chamber(case, pressure="3 MPa"), area_ratio=6, throat_diameter="50 mm")
+    return pk.Performance(nozzle, ambient="sea level")
+
+
+def _burn(start, end):
+    return lambda time: np.clip((time - start) / 0.5, 0.0, 1.0) * np.clip((end - time) / 0.5, 0.0, 1.0)
+
+
+def test_a_long_gap_in_the_pressure_leaves_the_results_right_and_says_so(stand):
+    table, channels = _plain_firing(stand, _burn(3.0, 15.0), noise=1e-3)
+    table.loc[400:1300, "pc [Pa]"] = np.nan
+    firing = pk.HotFire(stand, table, channels)
+    assert firing.table.loc["specific_impulse", "value"] == pytest.approx(stand.si("specific_impulse"), rel=1e-3)
+    assert firing.table.loc["cstar_efficiency_shifting", "value"] == pytest.approx(1.0, abs=2e-3)
+    assert any(doubt.code == "gap" and "chamber.pressure" in doubt for doubt in firing.warnings)
+    assert not any(doubt.code == "zero-drift" for doubt in firing.warnings)
+
+
+def test_zeros_leave_out_another_burn_of_the_same_recording(stand):
+    first, second = _burn(3.0, 15.0), _burn(22.0, 28.0)
+    table, channels = _plain_firing(stand, lambda time: first(time) + second(time), seconds=40.0, noise=1e-3)
+    firing = pk.HotFire(stand, table, channels)
+    assert firing.zeros["drift"].abs().max() < 100.0
+    assert firing.table.loc["thrust", "value"] == pytest.approx(stand.si("thrust"), rel=1e-3)
+
+
+def test_a_recording_in_which_nothing_burns_is_refused(stand):
+    table, channels = _plain_firing(stand, lambda time: 0.0 * time + 1e-6, noise=1e-3)
+    with pytest.raises(pk.RangeError, match="nothing burns"):
+        pk.HotFire(stand, table, channels)
+
+
+def test_an_efficiency_within_its_uncertainty_of_one_is_no_doubt_and_a_frozen_reference_never_is(stand):
+    table, channels = _plain_firing(stand, _burn(3.0, 15.0), noise=1e-3)
+    firing = pk.HotFire(stand, table, channels)
+    assert firing.table.loc["cstar_efficiency_frozen", "value"] > 1.0
+    assert not any(doubt.code == "efficiency" for doubt in firing.warnings)
+    low = pk.HotFire(stand, table, channels, throat_before=("52 mm", "0.01 mm"))
+    assert any(doubt.code == "efficiency" for doubt in low.warnings)
+
+
+def test_a_missing_calibration_is_a_doubt(stand):
+    table, channels = _plain_firing(stand, _burn(3.0, 15.0), noise=1e-3)
+    whole = dict.fromkeys(channels, "0.3 %")
+    assert any(doubt.code == "calibration" for doubt in pk.HotFire(stand, table, channels).warnings)
+    assert not any(d.code == "calibration" for d in pk.HotFire(stand, table, channels, calibration=whole).warnings)
+
+
+def test_stretches_of_time_may_be_typed_with_units(stand):
+    table, channels = _plain_firing(stand, _burn(3.0, 15.0), noise=1e-3)
+    typed = pk.HotFire(stand, table, channels, window=("6 s", "10 s"), zero_before=("0 s", "2000 ms"))
+    plain = pk.HotFire(stand, table, channels, window=(6.0, 10.0), zero_before=(0.0, 2.0))
+    assert typed.window == plain.window
+    assert typed.table.equals(plain.table)
+    with pytest.raises(pk.InputError, match="zero_after"):
+        pk.HotFire(stand, table, channels, zero_after="late")
+
+
+@pytest.mark.parametrize("source", [[1, 2], None, 3.0])
+def test_what_is_no_recording_is_refused_in_words(stand, source):
+    with pytest.raises(pk.InputError, match="path of a CSV file, or a DataFrame"):
+        pk.HotFire(stand, source, {"chamber.pressure": "p", "thrust": "F"})
+
+
+def test_columns_divided_by_semicolons_get_a_hint(stand, tmp_path):
+    path = tmp_path / "stand.csv"
+    path.write_text("time [s];pc [bar]\n" + "".join(f"{k};1,5\n" for k in range(30)), encoding="utf-8")
+    with pytest.raises(pk.InputError, match="semicolons"):
+        pk.HotFire(stand, path, {"chamber.pressure": "pc", "thrust": "F"})
