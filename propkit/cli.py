@@ -63,6 +63,7 @@ def _parser() -> argparse.ArgumentParser:
     memo.add_argument("--out", type=Path, metavar="DIR", help="folder to write to (default: beside the notebook)")
     memo.add_argument("--as-is", action="store_true", help="take an already executed notebook; execute nothing")
     memo.add_argument("--crate", action="store_true", help="write each record as an RO-Crate (.zip) too, with the notebook inside")
+    memo.add_argument("--paper", choices=("a4", "letter"), default="a4", help="size of the sheets of the PDF (default %(default)s)")
     memo.add_argument("--timeout", type=int, default=600, metavar="S", help="seconds that one cell may take (default %(default)s)")
     memo.set_defaults(command=_memo)
 
@@ -98,7 +99,7 @@ def _parser() -> argparse.ArgumentParser:
 def _memo(options: argparse.Namespace) -> int:
     from propkit.memo.notebook import write_memo
 
-    outcome = write_memo(options.notebook, options.out, execute=not options.as_is, timeout=options.timeout, crate=options.crate, say=_say)
+    outcome = write_memo(options.notebook, options.out, execute=not options.as_is, timeout=options.timeout, crate=options.crate, paper=options.paper, say=_say)
     for path in outcome.written:
         print(f"wrote {path}")
     if outcome.error:

@@ -11,7 +11,11 @@ BlockKind = Literal["markdown", "code", "html", "text", "picture", "error"]
 
 _ANSI = re.compile(r"\x1b\[[0-9;?]*[ -/]*[@-~]|\x1b[@-_]")
 _LIVE_FIGURE = re.compile(r"(figure|Figure|GridPlot|Row|Column)\(id\s*=")
+_LEFT_OUT = ("application/vnd.jupyter.widget-view+json", "application/vnd.bokehjs_load.v0+json")
+_SHOWN_LIVE = "application/vnd.bokehjs_exec.v0+json"
 _PICTURES = ("image/svg+xml", "image/png", "image/jpeg")
+_MARKED = re.compile(r"(?<![\\\w])(\*\*|__|[*_`$])(?=\S)(.+?)(?<=\S)\1(?!\w)")
+_ESCAPED = re.compile(r"\\([\\`*_$#+.!(){}\[\]-])")
 _LONGEST_TEXT = 200_000
 
 
@@ -77,10 +81,10 @@ def _outputs(outputs: Any, number: int) -> Iterator[Block]:
 
 
 def _displayed(data: Mapping[str, Any], number: int) -> Iterator[Block]:
-    if "application/vnd.jupyter.widget-view+json" in data:
+    if any(media in data for media in _LEFT_OUT):
         return
-    if _LIVE_FIGURE.match(as_text(data.get("text/plain", ""))):
-        yield Block("markdown", "*A live figure stands here in the notebook.*", number)
+    if _SHOWN_LIVE in data or _LIVE_FIGURE.match(as_text(data.get("text/plain", ""))):
+        yield Block("markdown", "*A live figure stands here in the notebook; shown by itself, without show(), it leaves its drawing.*", number)
         return
     if "text/html" in data:
         yield Block("html", as_text(data["text/html"]), number, others=data)
@@ -111,7 +115,7 @@ def title_of(blocks: list[Block], fallback: str) -> str:
         if block.kind == "markdown":
             match = re.search(r"^#\s+(.+?)\s*#*\s*$", block.text, re.MULTILINE)
             if match:
-                return re.sub(r"[*_`$]", "", match.group(1))
+                return _ESCAPED.sub(r"\1", _MARKED.sub(r"\2", match.group(1)))
     return fallback
 
 

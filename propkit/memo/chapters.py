@@ -225,16 +225,20 @@ def _tree(origin: Origin) -> str:
     repeated: list[str] = []
     listed = list(origin.lines())
     for place, (depth, entry) in enumerate(listed):
-        indent = "\u2003" * depth
         if entry.how == "see above":
             repeated.append(entry.path.rpartition(".")[2].replace("_", " "))
             following = listed[place + 1] if place + 1 < len(listed) else None
             if following is None or following[0] != depth or following[1].how != "see above":
-                rows.append(f"<tr><td>{indent}{escape(', '.join(repeated))}</td><td>see above</td></tr>")
+                rows.append(_tree_row(depth, ", ".join(repeated), "see above"))
                 repeated = []
             continue
-        rows.append(f"<tr><td>{indent}{escape(entry.text)}</td><td>{escape(entry.how)}</td></tr>")
+        rows.append(_tree_row(depth, entry.text, entry.how))
     return f'<div class="table-frame"><table class="trace"><thead><tr><th>number</th><th>how it came about</th></tr></thead><tbody>{"".join(rows)}</tbody></table></div>'
+
+
+def _tree_row(depth: int, text: str, how: str) -> str:
+    indent = f' style="padding-left:{depth}em"' if depth else ""
+    return f"<tr><td{indent}>{escape(text)}</td><td>{escape(how)}</td></tr>"
 
 
 def _references(material: Material) -> Iterator[str]:

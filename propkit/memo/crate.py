@@ -21,7 +21,7 @@ _FORMATS = {".json": "application/json", ".html": "text/html", ".pdf": "applicat
 _FORMULA = ("=", "+", "-", "@", "\t", "\r")
 
 
-def record_crate(record: Record, extra: Mapping[str, tuple[str, bytes]] | None = None) -> bytes:
+def record_crate(record: Record, extra: Mapping[str, tuple[str, bytes]] | None = None, paper: str = "a4") -> bytes:
     """Return a record as the bytes of an RO-Crate; the same record gives the same bytes.
 
     Parameters
@@ -30,6 +30,8 @@ def record_crate(record: Record, extra: Mapping[str, tuple[str, bytes]] | None =
         The record.
     extra : mapping, optional
         Further files: name -> (description, bytes), for instance the executed notebook.
+    paper : {"a4", "letter"}
+        Size of the sheets of the PDF memo.
 
     Raises
     ------
@@ -42,7 +44,7 @@ def record_crate(record: Record, extra: Mapping[str, tuple[str, bytes]] | None =
     files: dict[str, tuple[str, bytes]] = {
         "calculation.record.json": ("Calculation record: inputs, results, provenance and digests", record.to_bytes()),
         "memo.html": ("Memo as a page that carries the record", record_page(record)),
-        "memo.pdf": ("Memo as PDF/A-2b", record_pdf(record)),
+        "memo.pdf": ("Memo as PDF/A-2b", record_pdf(record, paper)),
         "tables/inputs_and_results.csv": ("Inputs and results in SI units", _values_csv(content)),
     }
     if content["stations"]["rows"]:

@@ -22,7 +22,7 @@ def value_text(row: Row) -> str:
     """Return the value of a row as text."""
     if row.value is None:
         return "not available"
-    return row.value if isinstance(row.value, str) else numbers.pretty(row.value, row.digits)
+    return row.value if isinstance(row.value, str) else numbers.pretty(row.value, row.digits, row.uncertainty)
 
 
 def aligned(texts: Sequence[str]) -> list[str]:
@@ -46,7 +46,7 @@ def answers(rows: Iterable[Row]) -> str:
 
 def uncertainty(row: Row) -> str:
     """Return the standard uncertainty of a row, where it has one."""
-    return f" ± {numbers.pretty(row.uncertainty, 2)}" if row.uncertainty is not None else ""
+    return f" ± {cells.uncertainty_text(row)}" if row.uncertainty is not None else ""
 
 
 def rows_table(rows: Sequence[Row], typed: bool = False) -> str:
@@ -81,10 +81,11 @@ def data_table(table: Table) -> str:
         ]
         numeric = [isinstance(value, int | float) for value in column.values]
         padded = iter(aligned([text for text, number in zip(shown, numeric, strict=True) if number]))
-        columns.append((kind, [next(padded) if number else text for text, number in zip(shown, numeric, strict=True)]))
+        written = html_species if column.name == "formula" else escape
+        columns.append((kind, [next(padded) if number else written(text) for text, number in zip(shown, numeric, strict=True)]))
     body = "".join(
         f"<tr><td>{html_species(name) if species else escape(name)}</td>"
-        + "".join(f"<td{kind}>{escape(texts[place])}</td>" for kind, texts in columns)
+        + "".join(f"<td{kind}>{texts[place]}</td>" for kind, texts in columns)
         + "</tr>"
         for place, name in enumerate(table.index)
     )

@@ -20,7 +20,7 @@ from propkit.memo.markup import uncertainty, value_text
 from propkit.memo.notebook_pdf import notebook_pdf
 from propkit.memo.page import Bound, NotebookMemo, notebook_page
 from propkit.record.containers import Contents, records_of
-from propkit.record.record import Record
+from propkit.record.record import Record, check_paper
 from propkit.record.sheet import headline_of
 from propkit.record.storage import make_folder, write_atomically
 from propkit.view import cells
@@ -70,9 +70,10 @@ def write_memo(
 
     Raises
     ------
-    StorageError, RecordError, MissingExtraError
-        When the notebook cannot be read, a file cannot be written, or the memo extra is absent.
+    InputError, StorageError, RecordError, MissingExtraError
+        For another paper; when the notebook cannot be read, a file cannot be written, or the memo extra is absent.
     """
+    check_paper(paper, ".pdf")
     notebook_path = Path(path)
     notebook = execution.read_notebook(notebook_path)
     folder = make_folder(out if out is not None else notebook_path.parent)
@@ -103,7 +104,7 @@ def write_memo(
         outcome.written.append(entry.record.save(folder / f"{name}.record.json"))
         if crate:
             extra = {notebook_path.name: ("The executed notebook", data)}
-            outcome.written.append(write_atomically(folder / f"{name}.zip", record_crate(entry.record, extra)))
+            outcome.written.append(write_atomically(folder / f"{name}.zip", record_crate(entry.record, extra, paper)))
     for entry in bound:
         say(f"{entry.record.title}: {entry.headline} ({entry.verification.status})")
     return outcome

@@ -18,6 +18,8 @@ from propkit.record.containers import record_template
 from propkit.record.outcome import Verification
 from propkit.record.record import Record
 
+_LONGEST_FOOT = 80
+
 
 @dataclass(frozen=True, slots=True)
 class Bound:
@@ -92,7 +94,7 @@ def notebook_page(memo: NotebookMemo) -> str:
         memo.failure,
         summary(memo.records),
         f'<main class="narrative">{body}</main>',
-        record_section(memo.records),
+        record_section(memo.records, "This page"),
         cautions(CAUTIONS),
         _code_appendix(memo.code),
         "".join(record_template(bound.record) for bound in memo.records),
@@ -102,7 +104,7 @@ def notebook_page(memo: NotebookMemo) -> str:
 
 def whole_page(title: str, body: str, styles: Iterable[str] = ()) -> str:
     """Return a page of a body: language, character set, style sheets."""
-    sheets = "\n".join((PAGE_STYLE, *styles))
+    sheets = "\n".join((PAGE_STYLE, *styles, _printed_foot(title)))
     policy = "default-src 'none'; img-src data:; style-src 'unsafe-inline'"
     return (
         '<!doctype html>\n<html lang="en">\n<head>\n<meta charset="utf-8">\n'
@@ -111,6 +113,14 @@ def whole_page(title: str, body: str, styles: Iterable[str] = ()) -> str:
         f'<meta name="generator" content="propkit">\n<title>{html.escape(title)}</title>\n<style>{sheets}</style>\n</head>\n'
         f"<body><article>{body}</article></body>\n</html>\n"
     )
+
+
+def _printed_foot(title: str) -> str:
+    """Return the rule that puts title and page number at the foot of printed pages."""
+    shown = title if len(title) <= _LONGEST_FOOT else f"{title[: _LONGEST_FOOT - 1]}…"
+    text = "".join(letter if letter == " " or (letter.isascii() and letter.isalnum()) else f"\\{ord(letter):x} " for letter in shown)
+    look = "font:8pt sans-serif;color:#5d6b78"
+    return f'@page{{@bottom-left{{content:"{text}";{look}}}@bottom-right{{content:"page " counter(page) " of " counter(pages);{look}}}}}'
 
 
 def title_block(title: str, facts: Iterable[tuple[str, str]]) -> str:
@@ -145,8 +155,8 @@ def summary(records: Sequence[Bound]) -> str:
     return f'<section class="summary"><div class="answers">{shown}</div><p class="quiet">{html.escape(last.record.content["description"])}</p></section>'
 
 
-def record_section(records: Sequence[Bound]) -> str:
-    """Return the records with their digests and what recomputing them gave."""
+def record_section(records: Sequence[Bound], carried_by: str) -> str:
+    """Return the records with their digests and what recomputing them gave; `carried_by` says where they are."""
     if not records:
         return '<section><h2>Records</h2><p>This notebook shows no object that carries a record.</p></section>'
     rows = "".join(
@@ -156,7 +166,7 @@ def record_section(records: Sequence[Bound]) -> str:
     )
     return (
         "<section><h2>Records</h2><p>Each record was recomputed from its inputs when this memo was written, and compared value by value. "
-        "This page carries them: <code>propkit verify</code> on this file does the same again.</p>"
+        f"{html.escape(carried_by)} carries them: <code>propkit verify</code> on it does the same again.</p>"
         f'<table class="records"><thead><tr><th>record</th><th>SHA-256</th><th>outcome</th></tr></thead><tbody>{rows}</tbody></table></section>'
     )
 

@@ -11,6 +11,8 @@ from importlib import resources
 from propkit.errors import MissingExtraError, RecordError
 from propkit.memo.typeset import typeset_blocks
 
+_PAPERS = {"a4": "a4", "letter": "us-letter"}
+
 
 def compiled(
     title: str,
@@ -39,7 +41,7 @@ def compiled(
     footer : str
         Text at the foot of every page.
     paper : str
-        ``"a4"`` or ``"us-letter"``.
+        ``"a4"`` or ``"letter"``.
 
     Raises
     ------
@@ -60,7 +62,7 @@ def compiled(
         "facts": [[name, value] for name, value in facts if value],
         "answers": [{"label": label, "value": value, "unit": unit} for label, value, unit in answers],
         "footer": footer,
-        "paper": paper,
+        "paper": _PAPERS[paper],
         "blocks": typeset_blocks(markup),
     }
     stamp = datetime.strptime(date, "%Y-%m-%dT%H:%M:%SZ").replace(tzinfo=UTC)

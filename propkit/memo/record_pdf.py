@@ -9,8 +9,15 @@ from propkit.record.record import Record
 from propkit.view import cells
 
 
-def record_pdf(record: Record) -> bytes:
+def record_pdf(record: Record, paper: str = "a4") -> bytes:
     """Return the memo of a record as the bytes of a PDF file; the same record gives the same bytes.
+
+    Parameters
+    ----------
+    record : Record
+        The record.
+    paper : {"a4", "letter"}
+        Size of the sheets.
 
     Raises
     ------
@@ -33,4 +40,5 @@ def record_pdf(record: Record) -> bytes:
         facts=material.facts(),
         answers=answers,
         footer=f"record {record.digest[:27]}… · preliminary analysis, not a release of hardware",
+        paper=paper,
     )

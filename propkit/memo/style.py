@@ -13,7 +13,7 @@ h2{font-size:1.2rem}
 h3,h4{font-size:1.02rem}
 p,ul,ol{margin:.5em 0 .8em}
 .prose p,.prose ul,.prose ol,section>p,section>ul{max-width:46rem}
-.propkit-sheet{font-family:inherit}
+article .propkit-sheet{font-family:inherit}
 a{color:var(--accent)}
 code,pre{font-family:"Source Code Pro",ui-monospace,Menlo,Consolas,"DejaVu Sans Mono",monospace;font-size:.85em}
 .title-block{border-top:3px solid var(--accent);border-bottom:1px solid var(--line);padding:1rem 0 .9rem}
@@ -31,7 +31,7 @@ td.unit{color:var(--quiet);padding-left:0}
 .formula{padding:.3rem 0 .5rem;border-bottom:1px solid var(--line)}.formula p{margin:.2rem 0;max-width:none}.formula code{overflow-wrap:anywhere}
 .display img{background:#fff;padding:2px 4px}
 figure{margin:.8rem 0}.figures{display:flex;flex-wrap:wrap;gap:0 1.6rem}.figures figure{flex:1 1 20rem}figure img{max-width:26rem;width:100%;height:auto}
-.trace td{font-size:.84rem}.trace td:first-child{white-space:pre-wrap}
+.trace td{font-size:.84rem}
 .quiet{color:var(--quiet);font-size:.92rem}
 .failure{border-left:3px solid var(--bad);padding:.4rem .8rem;color:var(--bad);overflow-wrap:anywhere;white-space:pre-wrap}
 .output{margin:.8rem 0 1.2rem;overflow-x:auto}
@@ -53,12 +53,13 @@ pre.printed{background:var(--wash);padding:.6rem .8rem}
 .appendix .cell pre{white-space:pre-wrap;overflow-wrap:anywhere}
 .cell .number{color:var(--quiet);font-size:.8rem}
 .k,.kn,.kc,.ow{font-weight:600}.c1,.ch,.cm,.sd{color:var(--quiet);font-style:italic}.s1,.s2,.sa,.si{color:var(--accent)}
-tr,img,.summary,.title-block,.formula{break-inside:avoid}
+tr,img,.summary,.title-block,.formula,.cautions{break-inside:avoid}
 @media (prefers-color-scheme:dark){:root{--ink:#e4e8ee;--quiet:#9aa6b5;--line:#3a4452;--paper:#161b22;--wash:#1e252e;--accent:#f0905f;--bad:#e9bd57}
 img.equation{padding:2px 4px}}
 @media (max-width:40rem){article{padding:1rem .8rem 2rem}body{font-size:15px}h1{font-size:1.35rem}}
 @page{margin:18mm 16mm 20mm}
-@media print{:root{--ink:#000;--quiet:#444;--line:#bbb;--paper:#fff;--wash:#fff;--accent:#b3481b}
-body{font-size:10pt}article{max-width:none;padding:0}.output,.table-frame,.display,pre{overflow:visible}pre{white-space:pre-wrap}
-pre.printed{padding:0;border-left:2px solid var(--line);padding-left:.6rem}a{color:inherit;text-decoration:none}thead{display:table-header-group}}
+@media print{html{font-size:10.5pt}:root{--ink:#000;--quiet:#444;--line:#bbb;--paper:#fff;--wash:#fff;--accent:#b3481b}
+body{font-size:1rem}article{max-width:none;padding:0}.output,.table-frame,.display,pre{overflow:visible}pre{white-space:pre-wrap}
+pre.printed{padding:0;border-left:2px solid var(--line);padding-left:.6rem}a{color:inherit;text-decoration:none}thead{display:table-header-group}
+table:not(:has(tbody tr:nth-child(14))),figure,.propkit-body,.propkit-step{break-inside:avoid}.prose,.propkit-strip,.propkit-answers,.propkit-caption,.propkit-steptitle,section>p:has(+.table-frame),section>p:has(+table){break-after:avoid}}
 """

@@ -11,9 +11,16 @@ _INLINE = {"b": "b", "strong": "b", "em": "i", "i": "i", "code": "c", "sub": "_"
 _BLOCKS = frozenset(("p", "div", "section", "header", "main", "article", "aside", "figure", "figcaption", "blockquote", "li", "dt", "dd", "dl", "caption", "details", "summary"))
 _SIDE_BY_SIDE = {"figures": False, "propkit-body": False, "propkit-answers": True, "answers": True}
 """Class of an element whose children stand side by side -> whether its columns are only as wide as they need."""
+_KEPT_WHOLE = frozenset(("formula", "cautions"))
+"""Classes of elements that stay on one page."""
 _DATA = re.compile(r"data:image/(png|jpeg|gif|webp|svg\+xml);base64,(.*)", re.DOTALL)
 _SIZE = re.compile(r'<svg[^>]*?\bwidth="([0-9.]+)(?:px|pt)?"[^>]*?\bheight="([0-9.]+)(?:px|pt)?"', re.DOTALL)
 _FONT = re.compile(r"""font-family\s*([:=])\s*(["'])?[^"';>]*(["'])?""")
+_INDENT = re.compile(r"padding-left:\s*([0-9.]+)em")
+_NUMBER = re.compile(r"[-+\u2212]?[0-9][0-9 ,_.\u2007\u202f]*(?:[eE][-+]?[0-9]+)?|NaN|None|[-+]?inf|True|False|<NA>|NaT")
+_SHORT = 400
+_BOLD = 1.1
+_DIGEST = re.compile(r"([0-9a-f]{32})([0-9a-f]{32})")
 _SHIFT = re.compile(r"vertical-align:\s*(-?[0-9.]+)px")
 
 Run = dict[str, Any]
@@ -65,6 +72,10 @@ class _Reader(HTMLParser):
             self._flush_cell()
             number = any(part in ("number", "propkit-n") for part in kind.split())
             self.cell = {"runs": [], "number": number, "head": tag == "th", "span": _span(known)}
+            if kind == "digest":
+                self.cell["digest"] = True
+            if (indent := _INDENT.search(known.get("style", ""))) is not None:
+                self.cell["indent"] = float(indent.group(1))
             if known.get("class", "") in ("unit", "propkit-u", "quiet"):
                 self.styles.append("q")
                 self.cell["quiet"] = True
@@ -120,6 +131,8 @@ class _Reader(HTMLParser):
     def _close_block(self, kind: str, start: int) -> None:
         """Gather what an element held: a column where its parent sets columns, or the columns that it sets itself."""
         inside = self.blocks[start:]
+        if inside and _KEPT_WHOLE & set(kind.split()):
+            inside = self.blocks[start:] = [{"kind": "whole", "blocks": inside}]
         outer, own = _sides(self.classes[-1]) if self.classes else None, _sides(kind)
         if inside and outer is not None:
             self.blocks[start:] = [{"kind": "column", "blocks": inside}]
@@ -176,6 +189,8 @@ class _Reader(HTMLParser):
             _trim(self.cell["runs"])
             if self.cell.pop("quiet", False) and self.styles:
                 self.styles.pop()
+            if self.cell.pop("digest", False) and self.cell["runs"] and "t" in self.cell["runs"][0]:
+                self.cell["runs"][0]["t"] = _DIGEST.sub(r"\1\n\2", self.cell["runs"][0]["t"])
             self.row.append(self.cell)
         self.cell = None
 
@@ -252,16 +267,33 @@ def typeset_blocks(markup: str) -> list[Block]:
     reader.feed(markup)
     reader.close()
     reader._flush()
-    _square_all(reader.blocks)
+    _finish(reader.blocks)
     return reader.blocks
 
 
-def _square_all(blocks: list[Block]) -> None:
-    for block in blocks:
+def _finish(blocks: list[Block]) -> None:
+    """Make every table square, set drawings that follow each other side by side, and keep a short text with the table that it leads to."""
+    _gather_drawings(blocks)
+    for block, following in zip(blocks, [*blocks[1:], {"kind": ""}], strict=True):
+        if block["kind"] == "text" and following["kind"] == "table":
+            block["leads"] = sum(len(run.get("t", "")) for run in block["runs"]) <= _SHORT
         if block["kind"] == "table":
             _square(block)
         for inside in block.get("items", ()) if block["kind"] in ("columns", "list") else ():
-            _square_all(inside)
+            _finish(inside)
+        if block["kind"] == "whole":
+            _finish(block["blocks"])
+
+
+def _gather_drawings(blocks: list[Block]) -> None:
+    place = 0
+    while place < len(blocks):
+        end = place
+        while end < len(blocks) and blocks[end]["kind"] == "picture" and not blocks[end]["equation"]:
+            end += 1
+        if end - place > 1:
+            blocks[place:end] = [{"kind": "gallery", "pictures": blocks[place:end]}]
+        place += 1
 
 
 def _square(table: Block) -> None:
@@ -273,6 +305,9 @@ def _square(table: Block) -> None:
         row += [{"runs": [], "number": False, "head": row[-1]["head"], "span": 1} for _ in range(lacking)]
     table["columns"] = widest
     table["numbers"] = [False] * widest
+    if "dataframe" in table["class"].split():
+        _find_numbers(table)
+    table["demand"] = sum(max((_longest_word(cell) for cell in column), default=0.0) for column in _columns(rows, widest))
     for row in table["rows"]:
         place = 0
         for cell in row:
@@ -282,6 +317,35 @@ def _square(table: Block) -> None:
     for place in range(widest):
         if table["numbers"][place] and all(sum(cell["span"] for cell in row) == len(row) for row in table["rows"]):
             _align([row[place]["runs"] for row in table["rows"]])
+
+
+def _columns(rows: list[list[Block]], count: int) -> list[list[Block]]:
+    """Return the cells of each column of a square table, those that span several left out."""
+    made: list[list[Block]] = [[] for _ in range(count)]
+    for row in rows:
+        place = 0
+        for cell in row:
+            if cell["span"] == 1:
+                made[place].append(cell)
+            place += cell["span"]
+    return made
+
+
+def _longest_word(cell: Block) -> float:
+    """Return how many letters wide the widest part of a cell is that no line break divides; a number is one part."""
+    text = "".join(run.get("t", "\u2003" if "width" not in run else "m" * round(run["width"] / 8)) for run in cell["runs"])
+    parts = text.split("\n") if cell["number"] else text.split()
+    return max((len(part) for part in parts), default=0) * (_BOLD if cell["head"] else 1.0)
+
+
+def _find_numbers(table: Block) -> None:
+    """Mark the columns of a data frame that hold numbers and nothing else, heads included."""
+    plain = [row for row in table["rows"] if all(cell["span"] == 1 for cell in row)]
+    for place in range(1, table["columns"]):
+        texts = ["".join(run.get("t", "") for run in row[place]["runs"]).strip() for row in plain]
+        if any(texts) and all(_NUMBER.fullmatch(text) for text in texts if text):
+            for row in plain:
+                row[place]["number"] = True
 
 
 def _align(column: list[list[Run]]) -> None:

@@ -24,6 +24,9 @@ WRITERS = {
 }
 """Suffix -> "module:function" that turns a record into the bytes of a file; resolved when such a file is asked for."""
 
+PAPERS = ("a4", "letter")
+_WITH_PAPER = (".pdf", ".zip")
+
 
 class Record:
     """A calculation record: an immutable document with its seals.
@@ -152,13 +155,15 @@ class Record:
         """Return the document as a JSON file: its canonical form and a line end."""
         return canonical_bytes(self._document) + b"\n"
 
-    def save(self, path: str | Path) -> Path:
+    def save(self, path: str | Path, paper: str | None = None) -> Path:
         """Write the record; the old file stays whole until the new one is complete.
 
         Parameters
         ----------
         path : str or Path
             A name that ends in .json, .html (memo page), .pdf (memo) or .zip (RO-Crate with all of them).
+        paper : {"a4", "letter"}, optional
+            Size of the sheets of the PDF memo, A4 unless given; a page of HTML takes the paper of the printer.
 
         Returns
         -------
@@ -168,7 +173,7 @@ class Record:
         Raises
         ------
         InputError
-            For another suffix.
+            For another suffix, another paper, or a paper for a file without sheets.
         StorageError
             When it cannot be written.
         MissingExtraError
@@ -177,13 +182,14 @@ class Record:
         if not isinstance(path, str | Path) or not str(path).strip():
             raise InputError(Problem("path", repr(path), "the name of a file", 'For example "engine.record.json".'))
         suffix = Path(path).suffix.lower()
+        check_paper(paper, suffix)
         if suffix == ".json":
             return write_atomically(path, self.to_bytes())
         if suffix not in WRITERS:
             raise InputError(Problem("path", repr(str(path)), "a name that ends in .json, " + ", ".join(WRITERS)))
         module, _, function = WRITERS[suffix].partition(":")
-        write: Callable[[Record], bytes] = getattr(importlib.import_module(module), function)
-        return write_atomically(path, write(self))
+        write: Callable[..., bytes] = getattr(importlib.import_module(module), function)
+        return write_atomically(path, write(self, paper=paper) if paper else write(self))
 
     @classmethod
     def load(cls, path: str | Path) -> Record:
@@ -255,6 +261,20 @@ class Record:
 
     def __deepcopy__(self, memo: Any) -> Record:
         return self
+
+
+def check_paper(paper: str | None, suffix: str) -> None:
+    """Raise for a paper that is none, or that a file of this suffix has no use for.
+
+    Raises
+    ------
+    InputError
+        Naming what is legal.
+    """
+    if paper is not None and paper not in PAPERS:
+        raise InputError(Problem("paper", repr(paper)[:60], " or ".join(f'"{name}"' for name in PAPERS)))
+    if paper is not None and suffix not in _WITH_PAPER:
+        raise InputError(Problem("paper", repr(paper), f"a file with sheets: {' or '.join(_WITH_PAPER)}", f"A {suffix} file has none; leave paper out."))
 
 
 def _ordered(value: Any) -> Any:

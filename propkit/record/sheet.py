@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator, Mapping
 from typing import TYPE_CHECKING, Any
 
@@ -25,6 +26,8 @@ _TITLES = {
     "study": "Study",
 }
 _DEEPEST_SHOWN = 3
+_LONGEST_VALUE = 80
+_SAMPLED = re.compile(r"design (?P<design>[0-9]{1,9}) (?P<result>.+)")
 _INDENT = "\u2003"
 HEADLINES = {
     "case": ("mixture_ratio", "bulk_density"),
@@ -76,9 +79,28 @@ def _object_sections(content: Mapping[str, Any]) -> Iterator[Section]:
         stored = content["objects"].get(kind)
         if stored is None:
             continue
-        rows = [_row(kind, name, entry, entry["kind"]) for name, entry in _declared(kind, stored["inputs"])]
-        rows += [_row(kind, name, entry, "computed") for name, entry in _declared(kind, stored["results"])]
-        yield Section(kind, stored["name"] or _TITLES[kind], rows=tuple(rows))
+        listed = [(name, entry, entry["kind"]) for name, entry in _declared(kind, stored["inputs"])]
+        listed += [(name, entry, "computed") for name, entry in _declared(kind, stored["results"]) if not _SAMPLED.fullmatch(name)]
+        long = {name for name, entry, _ in listed if isinstance(entry["value"], str) and len(entry["value"]) > _LONGEST_VALUE}
+        rows = tuple(_row(kind, name, entry, how) for name, entry, how in listed if name not in long)
+        lines = tuple(f"{name.replace('_', ' ')}: {entry['value']}" for name, entry, _ in listed if name in long)
+        yield Section(kind, stored["name"] or _TITLES[kind], rows=rows, lines=lines)
+        sample = _sample_table(stored["results"])
+        if sample is not None:
+            yield Section(f"{kind}-sample", sample.title, table=sample)
+
+
+def _sample_table(results: Mapping[str, Any]) -> Table | None:
+    """Return the designs of a study that its record holds as a table, a column for each; None where there are none."""
+    found: dict[str, dict[str, Any]] = {}
+    for name, entry in results.items():
+        match = _SAMPLED.fullmatch(name)
+        if match is not None:
+            unit = f" [{units.shown_unit(entry['unit'])}]" if entry["unit"] else ""
+            found.setdefault(match["result"].replace("_", " ") + unit, {})[match["design"]] = entry["value"]
+    designs = sorted({design for values in found.values() for design in values}, key=int)
+    columns = tuple(Column(f"design {design}", f"design {design}", "", "", 6, tuple(values.get(design) for values in found.values())) for design in designs)
+    return Table("sample", "Designs that are recomputed", "result", tuple(found), columns) if found else None
 
 
 def _declared(kind: str, entries: Mapping[str, Any]) -> list[tuple[str, Any]]:
@@ -97,6 +119,8 @@ def _row(kind: str, name: str, entry: Mapping[str, Any], how: Any) -> Row:
         digits, symbol, label = quantity.digits, quantity.symbol, quantity.label
         if quantity.unit == unit and isinstance(value, int | float):
             value, unit = in_display(quantity, value, "SI")
+    elif isinstance(value, float) and value.is_integer() and abs(value) < 1e6 and not unit:
+        digits = len(str(abs(int(value))))
     if isinstance(value, bool):
         value = "yes" if value else "no"
     typed = str(entry.get("typed", ""))

@@ -121,7 +121,9 @@ def _body(report: Report, beside: Section | None) -> str:
     if not columns:
         return ""
     form = ["propkit-body"]
-    if len(report.given) >= len(rest):
+    if not report.given and not rest:
+        form.append("propkit-alone")
+    elif len(report.given) >= len(rest):
         form.append("propkit-picright")
     if min(len(report.given), len(rest)) < _BESIDE:
         form.append("propkit-two")

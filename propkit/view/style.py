@@ -47,6 +47,7 @@ _CSS = f"""
 .propkit-left{{grid-area:left}}
 .propkit-right{{grid-area:right}}
 .propkit-pic{{grid-area:pic}}
+.propkit-sheet .propkit-alone{{display:block}}.propkit-alone .propkit-pic{{display:flex;flex-wrap:wrap;gap:0 16px}}.propkit-alone img{{flex:0 1 360px;min-width:0}}
 .propkit-sheet table{{border-collapse:collapse;width:100%;margin:0 0 6px;font-size:13px;border:0;color:inherit;background:none;table-layout:auto}}
 .propkit-sheet caption,.propkit-caption{{caption-side:top;text-align:left;color:var(--pk-quiet);font-size:11px;font-weight:400;letter-spacing:.06em;text-transform:uppercase;padding:6px 0 2px}}
 .propkit-sheet table.propkit-slim{{width:auto;min-width:45%}}

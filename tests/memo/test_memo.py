@@ -239,3 +239,86 @@ def test_records_are_recomputed_while_the_notebook_runs(memo_folder):
             ahead.finished(cell)
     recipe = next(iter(documents_of(carrying)))["content"]["recipe"]
     assert list(known) == [digest_of(recipe)]
+
+
+def displayed(value):
+    """Return the output that a notebook keeps of a value."""
+    from IPython.core.formatters import DisplayFormatter
+
+    data, metadata = DisplayFormatter().format(value)
+    return {"output_type": "execute_result", "data": data, "metadata": metadata, "execution_count": 1}
+
+
+def test_a_live_plot_leaves_its_drawing_in_page_and_pdf():
+    pytest.importorskip("bokeh")
+    from propkit.memo.notebook_pdf import notebook_pdf
+    from propkit.memo.page import NotebookMemo, notebook_page
+    from propkit.view.svg import data_uri
+
+    gas = pk.Chamber.from_gas(pressure="2 MPa", temperature="3000 K", molar_mass="22 g/mol", isentropic_exponent=1.2)
+    nozzle = pk.Nozzle(gas, area_ratio=10, throat_diameter="50 mm")
+    fit = pk.Reconciliation(pk.Performance(nozzle, ambient="vacuum"), {"mass_flow": ("2.4 kg/s", "5 %"), "thrust": ("6 kN", "5 %")})
+    for one, figure in ((nozzle.plot(), None), (fit.plot("mass_flow"), fit.drawing("mass_flow"))):
+        cells = [{"cell_type": "code", "source": "x", "outputs": [displayed(one)]}]
+        memo = NotebookMemo("Plot", "x.ipynb", tuple(blocks_of({"cells": cells})), ())
+        page = notebook_page(memo)
+        assert_self_contained(page)
+        assert "live figure" not in page
+        assert 'src="data:image/svg+xml;base64,' in page
+        if figure is not None:
+            assert data_uri(figure) in page
+        assert len(notebook_pdf(memo)) > len(notebook_pdf(NotebookMemo("Plot", "x.ipynb", (), ()))) + 2000
+
+
+def test_a_figure_shown_live_is_told_in_a_line():
+    outputs = [
+        {"output_type": "display_data", "data": {"application/vnd.bokehjs_load.v0+json": "", "application/javascript": "x"}, "metadata": {}},
+        {"output_type": "display_data", "data": {"application/vnd.bokehjs_exec.v0+json": "", "text/html": "<div id='a'></div>"}, "metadata": {}},
+    ]
+    made = list(blocks_of({"cells": [{"cell_type": "code", "source": "show(x)", "outputs": outputs}]}))
+    assert [block.kind for block in made] == ["code", "markdown"]
+    assert "leaves its drawing" in made[1].text
+
+
+@pytest.mark.parametrize(("heading", "title"), [
+    ("From a recording to c*, thrust and p_value_two", "From a recording to c*, thrust and p_value_two"),
+    (r"A \*star\* and **bold** `code` $x$", "A *star* and bold code x"),
+    ("_Linnet_: first", "Linnet: first"),
+])  # fmt: skip
+def test_title_is_plain_text(heading, title):
+    from propkit.memo.blocks import Block, title_of
+
+    assert title_of([Block("markdown", f"# {heading}\n\ntext")], "x") == title
+
+
+def test_a_hostile_title_stays_in_the_foot_of_the_page():
+    from propkit.memo.page import whole_page
+
+    page = whole_page('"}</style><script>x</script>\\41 é' + "x" * 100, "")
+    assert_self_contained(page)
+    assert page.count("</style>") == 1
+    assert "\\3c \\2f script" in page
+
+
+def test_tables_are_set_to_fit():
+    from propkit.memo.typeset import typeset_blocks
+
+    frame = "<table class='dataframe'><thead><tr><th></th><th>a_very_long_name</th><th>b</th></tr></thead><tbody><tr><th>x</th><td>-1.5e+03</td><td>1 2</td></tr><tr><th>y</th><td>NaN</td><td>word</td></tr></tbody></table>"
+    (table,) = typeset_blocks(frame)
+    assert table["numbers"] == [False, True, False]
+    assert table["demand"] == pytest.approx(1.1 * (1 + 16) + 4)
+    drawings = "".join(f"<img alt='{n}' src='data:image/svg+xml;base64,PHN2Zy8+'>" for n in range(3))
+    assert [block["kind"] for block in typeset_blocks(f"<div>{drawings}</div>")] == ["gallery"]
+    text, whole = typeset_blocks("<p>Leads to</p><table><tr><td class='digest'>" + "0123456789abcdef" * 4 + "</td></tr></table><div class='formula'><p>a</p><p>b</p></div>")[0::2]
+    assert text["leads"]
+    assert whole["kind"] == "whole"
+
+
+def test_paper_of_a_notebook_memo(memo_folder, tmp_path):
+    from propkit import cli
+
+    assert cli.main(["memo", str(memo_folder / "small.ipynb"), "--as-is", "--paper", "letter", "--out", str(tmp_path)]) == 0
+    info = subprocess.run(["pdfinfo", str(tmp_path / "small.pdf")], capture_output=True, text=True, check=True).stdout
+    assert "612 x 792" in info
+    with pytest.raises(pk.InputError, match="paper"):
+        write_memo(memo_folder / "small.ipynb", tmp_path, execute=False, paper="us-letter")

@@ -218,3 +218,38 @@ def test_prices_stand_beside_the_assumptions(perf, files):
     priced = [price for entry in perf.assumptions for price in entry.prices if price.size >= 0]
     assert priced
     assert all(spaceless(price.alternative) in text for price in priced)
+
+
+def page_size(path):
+    found = re.search(r"Page size:\s+([0-9.]+) x ([0-9.]+)", subprocess.run(["pdfinfo", str(path)], capture_output=True, text=True, check=True).stdout)
+    return tuple(round(float(side)) for side in found.groups())
+
+
+def test_paper(record, tmp_path):
+    """A4 is 210 mm by 297 mm (ISO 216), Letter 8.5 in by 11 in (ANSI/ASME Y14.1); a point is 1/72 in."""
+    assert page_size(record.save(tmp_path / "x.pdf", paper="a4")) == (595, 842)
+    assert page_size(record.save(tmp_path / "y.pdf", paper="letter")) == (612, 792)
+    with zipfile.ZipFile(record.save(tmp_path / "z.zip", paper="letter")) as archive:
+        (tmp_path / "z.pdf").write_bytes(archive.read("memo.pdf"))
+    assert page_size(tmp_path / "z.pdf") == (612, 792)
+    for name, paper in (("x.pdf", "legal"), ("x.json", "a4"), ("x.html", "letter"), ("x.pdf", 4)):
+        with pytest.raises(pk.InputError, match="paper"):
+            record.save(tmp_path / name, paper=paper)
+
+
+def test_digests_are_whole_in_the_pdf(files, record):
+    assert record.content_digest in spaceless(pdf_text(files / "memo.pdf"))
+
+
+def test_a_study_shows_its_sample_as_a_table(perf):
+    result = pk.Study(perf, {"chamber.pressure": ["2 MPa", "3 MPa"]}).run(progress=False)
+    report = result.record(title="Two").report()
+    names = [section.name for section in report.sections]
+    table = next(section.table for section in report.sections if section.name == "study-sample")
+    assert names.index("study-sample") == names.index("study") + 1
+    assert len(table.index) > 20
+    assert not any(row.name.startswith("design ") for section in report.sections for row in section.rows)
+    stored = result.record().content["objects"]["study"]["results"]
+    place = next(place for place, name in enumerate(table.index) if name.startswith("thrust ["))
+    for column in table.columns:
+        assert column.values[place] == stored[f"{column.name} thrust"]["value"]
