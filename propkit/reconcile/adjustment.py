@@ -28,6 +28,8 @@ SIGNIFICANT = 0.05
 """Probability below which the figures contradict each other."""
 LARGE_RESIDUAL = 1.96
 """Normalised residual above which a figure is suspect: the two-sided 5 % point of the normal distribution."""
+_BLIND = 1e-6
+"""What doubling an unknown moves a figure by, in standard uncertainties, below which the figure does not depend on it."""
 _SHIFT = 1e-6
 """Largest last step, in standard uncertainties of the figures."""
 _ITERATIONS = 60
@@ -345,9 +347,9 @@ class _Solver:
 
     def _least_squares(self, slopes: Array, residual: Array, places: npt.NDArray[np.intp], estimate: Array) -> Array:
         scale = np.linalg.norm(slopes, axis=0)
-        # differences leave some rounding: what doubling an unknown moves by less than this moves nothing
+        # differences leave some rounding
         effect = scale * np.where(estimate[places] != 0.0, np.abs(estimate[places]), 1.0)
-        blind = [self.paths[place] for place, size in zip(places, effect, strict=True) if not size > 1e-6]
+        blind = [self.paths[place] for place, size in zip(places, effect, strict=True) if not size > _BLIND]
         if blind:
             raise InputError(
                 f"no figure depends on {', '.join(blind)}: quote one that does, or do not free it",
@@ -397,6 +399,10 @@ class _Solver:
     def result(self, estimate: Array, iterations: int, correlation: Mapping[tuple[str, str], float]) -> Adjustment:
         """Return the adjustment at the estimate."""
         values, slopes = self.linearise(estimate)
+        # what doubling an unknown moves by less than this is rounding: the figure does not depend on it
+        size = np.where(estimate != 0.0, np.abs(estimate), 1.0)
+        deviations = np.sqrt(np.diag(self.covariance))
+        slopes = np.where(np.abs(slopes) * size > _BLIND * deviations[:, None], slopes, 0.0)
         whitened = self.whiten(slopes)
         residual = self.given - values
         _, free = self._step(whitened, self.whiten(residual), estimate)
@@ -469,7 +475,7 @@ def _check(figures: Sequence[Figure], unknowns: Sequence[Unknown]) -> None:
     if len(figures) < len(unknowns):
         free = ", ".join(unknown.path for unknown in unknowns)
         raise InputError(
-            f"{len(figures)} figures cannot determine {len(unknowns)} unknowns ({free}): quote more figures or free fewer inputs",
+            f"{len(figures)} figure{'s' if len(figures) > 1 else ''} cannot determine {len(unknowns)} unknowns ({free}): quote more figures or free fewer inputs",
             figures=tuple(names),
             unknowns=tuple(unknown.path for unknown in unknowns),
         )

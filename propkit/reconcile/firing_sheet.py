@@ -80,9 +80,9 @@ def doubts(firing: HotFire) -> Iterator[Doubt]:
                 code="one-zero",
                 about=name,
             )
-    table = firing.table
-    if "cstar_efficiency_shifting" in table.index and table.loc["cstar_efficiency_shifting", "low"] > 1.0:
-        value = float(table.loc["cstar_efficiency_shifting", "value"])
+    lows, values = (firing.table[column].to_dict() for column in ("low", "value"))
+    if lows.get("cstar_efficiency_shifting", 0.0) > 1.0:
+        value = float(values["cstar_efficiency_shifting"])
         text = f"{label_of('cstar_efficiency_shifting')} is {value:.4f}, above 1 by more than its uncertainty: look at flow, pressure and throat."
         yield Doubt(text, code="efficiency", about="cstar_efficiency_shifting")
     means = firing.channel_means

@@ -19,6 +19,14 @@ if TYPE_CHECKING:
 SHOWN_ROUTES = ("mass_flow", "throat_diameter", "specific_impulse", "specific_impulse_vacuum")
 
 
+SMALLEST = 1e-15
+"""Probability below which only that is said."""
+
+
+def _chance(probability: float) -> float | str:
+    return probability if probability >= SMALLEST else f"below {SMALLEST:g}"
+
+
 def doubts(fit: Reconciliation) -> Iterator[Doubt]:
     """Yield what to doubt about figures and adjustment."""
     found = fit.adjustment
@@ -34,7 +42,8 @@ def doubts(fit: Reconciliation) -> Iterator[Doubt]:
         yield Doubt("There are as many unknowns as figures: nothing is checked.", code="no-redundancy", about="p_value")
     if not found.consistent:
         first = found.suspects[0] if found.suspects else "none that can be checked"
-        text = f"The figures contradict each other (p = {found.p_value:.2g}); most suspect: {first}."
+        chance = f"p = {found.p_value:.2g}" if found.p_value >= SMALLEST else f"p below {SMALLEST:g}"
+        text = f"The figures contradict each other ({chance}); most suspect: {first}."
         yield Doubt(text, code="inconsistent", about="p_value")
         for group in found.twins:
             if set(group) & set(found.suspects):
@@ -57,7 +66,7 @@ def doubts(fit: Reconciliation) -> Iterator[Doubt]:
 def report_of(fit: Reconciliation, system: UnitSystem, render: Callable[[Report, str], str]) -> Report:
     """Return the report of a reconciliation."""
     found = fit.adjustment
-    probability = None if math.isnan(found.p_value) else found.p_value
+    probability = None if math.isnan(found.p_value) else _chance(found.p_value)
     suspects = ", ".join(fit.suspects) or "none"
     headline = (
         _plain("p_value", "probability of the contradictions by chance", probability),
@@ -71,7 +80,7 @@ def report_of(fit: Reconciliation, system: UnitSystem, render: Callable[[Report,
     return Report(
         kind="Reconciliation",
         title=fit.title,
-        subtitle=f"{len(fit.figures)} figures, free: {', '.join(fit.free)}",
+        subtitle=f"{len(fit.figures)} figure{'s' if len(fit.figures) > 1 else ''}, free: {', '.join(fit.free)}",
         units=system,
         headline=headline,
         sections=(*sections, *((strikes,) if strikes is not None else ())),
@@ -182,7 +191,7 @@ def _strike_section(fit: Reconciliation) -> Section | None:
         return None
     columns = (
         Column("chi_square", "chi-square of the rest", "", "", 3, tuple(map(float, frame["chi_square"]))),
-        Column("p_value", "probability", "", "", 3, tuple(map(float, frame["p_value"]))),
+        Column("p_value", "probability", "", "", 3, tuple(_chance(float(value)) for value in frame["p_value"])),
         Column("restores", "consistent then", "", "", 0, tuple("yes" if good else "no" for good in frame["restores"])),
     )
     table = Table("strikes", "If one figure is struck out", "struck out", tuple(map(str, frame.index)), columns)

@@ -265,7 +265,7 @@ def test_no_redundancy_is_no_contradiction():
 
 
 def test_fewer_figures_than_unknowns():
-    with pytest.raises(InputError, match="1 figures cannot determine 2 unknowns"):
+    with pytest.raises(InputError, match="1 figure cannot determine 2 unknowns"):
         adjust(balance, [Figure("a", 10.0, 1.0)], [Unknown("a", 5.0), Unknown("b", 5.0)])
 
 

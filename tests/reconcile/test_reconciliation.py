@@ -363,3 +363,19 @@ def test_held_mixture_ratio_is_said():
     logs = np.log([2.56, 93.0 / 36.0])
     best = math.exp(expected * (logs[0] / 0.01**2 + logs[1] / (2.0 * 0.01**2)))
     assert free.adjusted.loc["mixture_ratio", "value"] == pytest.approx(best, rel=2e-4)
+
+
+def test_a_figure_that_nothing_free_moves_has_no_uncertainty_of_rounding():
+    case = pk.PropellantCase("LOX", "LCH4", mixture_ratio=3.4)
+    nozzle = pk.Nozzle(pk.Chamber(case, pressure="9.7 MPa"), area_ratio=35, throat_diameter="0.18 m")
+    perf = pk.Performance(nozzle, ambient="sea level")
+    fit = pk.Reconciliation(
+        perf, {"thrust": ("800 kN", "0.1 %"), "mass_flow": ("130 kg/s", "0.1 %"), "specific_impulse": ("290 s", "0.1 %")}
+    )
+    assert fit.adjusted.loc["specific_impulse", "standard_uncertainty"] == 0.0
+    assert fit.residuals.loc["specific_impulse", "redundancy"] == 1.0
+    sheet = str(fit)
+    assert "297.75714" not in sheet
+    assert "p below 1e-15" in sheet
+    one = str(pk.Reconciliation(perf, {"thrust": ("380 kN", "1 %")}))
+    assert "1 figure, free" in one
