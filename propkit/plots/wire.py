@@ -8,7 +8,7 @@ from itertools import chain
 from typing import Any
 
 from propkit.plots.build import Plot, build, columns, limits, structure
-from propkit.series import Figure
+from propkit.series import Figure, Points
 
 
 def plot_json(figure: Figure, height: int) -> dict[str, Any]:
@@ -22,6 +22,11 @@ def plot_json(figure: Figure, height: int) -> dict[str, Any]:
         Height of the plot [px].
     """
     plot = build(figure, height=height)
+    for place, layer in enumerate(figure.layers):
+        if isinstance(layer, Points):
+            # thousands of designs travel as bytes, not as text in the document as well
+            source = plot.figure.select_one({"name": f"layer-{place}"})
+            source.data = {column: [] for column in source.data}
     return {"key": structure(figure), "item": item_of(plot), "painted": [[m.id, name, role, _is_vector(m)] for m, name, role in plot.painted]}
 
 
