@@ -63,12 +63,17 @@ class Line:
 
 @dataclass(frozen=True, slots=True)
 class Bars:
-    """Horizontal bars, one per category, longest first as given; `texts` are written at their ends."""
+    """Horizontal bars, one per category, in the order given; `texts` are written at their ends.
+
+    A bar reaches from its entry of `starts`, else from zero, to its value. With `starts`, those that begin at the low end of
+    the axis are cut off there, and are drawn so.
+    """
 
     categories: tuple[str, ...]
     values: Series
     texts: tuple[str, ...] = ()
     colour: int | Literal["ink", "accent", "quiet"] = 0
+    starts: tuple[float, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

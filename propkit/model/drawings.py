@@ -33,7 +33,12 @@ def nozzle_figures(nozzle: Nozzle, system: UnitSystem) -> tuple[Figure, ...]:
     scale = units.convert(1.0, "m", unit)
     xs, ys = (tuple(scale * point[axis] for point in outline) for axis in (0, 1))
     body = Line(
-        Series("axial position", xs, unit, "x"), Series("radius", ys, unit, "r"), colour="ink", closed=True, fill=True
+        Series("axial position", xs, unit, "x"),
+        Series("radius", ys, unit, "r"),
+        colour="ink",
+        dash="solid" if real else "dashed",
+        closed=True,
+        fill=True,
     )
     end = wall[-1][0]
     marks = (
@@ -41,7 +46,9 @@ def nozzle_figures(nozzle: Nozzle, system: UnitSystem) -> tuple[Figure, ...]:
         Mark(scale * end, scale * lip, f"exit {_diameter('exit_diameter', nozzle, system)}"),
     )
     alt = f"Nozzle outline: throat diameter {scale * 2 * throat:.4g} {units.shown_unit(unit)}, exit diameter {scale * 2 * lip:.4g}, area ratio {nozzle.si('area_ratio'):.4g}"
-    title = "Nozzle, diameters to scale; length schematic (15° cone)"
+    title = "Schematic: diameters to scale, a 15° cone assumed"
+    if not math.isfinite(ratio):
+        title = "Schematic: diameters to scale, 15° cone and chamber assumed"
     if real:
         title = f"Nozzle to scale: {nozzle.input_text('contour')}"
         if not nozzle.geometry.upstream:

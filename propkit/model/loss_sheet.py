@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from typing import TYPE_CHECKING
 
 from propkit import quantities, sources, units
@@ -49,14 +50,23 @@ def _short(key: str) -> str:
 
 
 def figure(performance: Performance) -> Figure:
-    """Return the steps from ideal to delivered specific impulse, in their order, as bars of what each takes."""
+    """Return the steps from ideal to delivered specific impulse, in their order: each bar takes up where the one above ends."""
     ideal, listed = losses.entries(performance)
-    names = tuple(f"{entry.name}{' (estimate)' if entry.estimate else ''}" for entry in listed)
-    texts = tuple(f"−{entry.decrement:.1f} s ({100.0 * (1.0 - entry.ratio):.1f} %)" for entry in listed)
     total = listed[-1].after
-    names = (*names, "ideal to delivered")
-    texts = (*texts, f"−{ideal - total:.1f} s ({100.0 * (1.0 - total / ideal):.1f} %)")
-    values = Series("specific impulse lost", (*(entry.decrement for entry in listed), ideal - total), "s", r"\Delta I_{sp}")
+    names = ("ideal", *(f"{entry.name}{' (estimate)' if entry.estimate else ''}" for entry in listed), "delivered")
+    steps = tuple(f"−{entry.decrement:.1f} s ({100.0 * (1.0 - entry.ratio):.1f} %)" for entry in listed)
+    texts = (f"{ideal:.1f} s", *steps, f"{total:.1f} s ({100.0 * total / ideal:.1f} %)")
+    values = Series("specific impulse", (ideal, *(entry.before for entry in listed), total), "s", "I_{sp}")
+    low = _floor(total, ideal)
+    starts = (low, *(entry.after for entry in listed), low)
     alt = f"Specific impulse from {ideal:.1f} s ideal to {total:.1f} s delivered: " + ", ".join(f"{n} {t}" for n, t in zip(names, texts, strict=True))
     title = f"From {ideal:.1f} s ideal to {total:.1f} s delivered"
-    return Figure("ledger", title, alt, Axis("specific impulse lost", "s", low=0.0), Axis(""), (Bars(names, values, texts),))
+    return Figure("ledger", title, alt, Axis("specific impulse", "s", "I_{sp}", low=low), Axis(""), (Bars(names, values, texts, starts=starts),))
+
+
+def _floor(total: float, ideal: float) -> float:
+    """Return a round value below the delivered one from which the axis of the steps begins, so that the steps are seen."""
+    span = max(ideal - total, 1e-6 * abs(ideal))
+    step = 10.0 ** math.floor(math.log10(span))
+    low = step * math.floor((total - 0.4 * span) / step)
+    return max(low, 0.0) if total > 0.0 else low

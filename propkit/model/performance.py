@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
+from dataclasses import replace
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -311,7 +312,16 @@ class Performance(Calculation):
     @property
     def assumptions(self) -> Assumptions:
         """Assumptions that carry the numbers, each with what its alternatives would change; the largest first."""
-        return self.lazily("assumptions", lambda: priced(self, super(Performance, self).assumptions))
+        return self.lazily("assumptions", lambda: priced(self, tuple(self._stated(super(Performance, self).assumptions))))
+
+    def _stated(self, listed: Iterable[Assumption]) -> Iterator[Assumption]:
+        """Yield the assumptions; an energy release among the losses stands in for the chamber's c* efficiency."""
+        for entry in listed:
+            if entry.key == "cstar-efficiency" and "energy release" in self.resolved_losses.ratios:
+                text = "The chamber's own c* efficiency stays 1: the energy release among the losses stands in for it."
+                yield replace(entry, statement=text, origin="given")
+            else:
+                yield entry
 
     def cross_check(self) -> Any:
         """Return an independent solution of chamber, throat and exit by Cantera's own solver, with the differences.

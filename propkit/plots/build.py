@@ -79,7 +79,7 @@ def columns(layer: Layer, where: dict[str, Any]) -> dict[str, list[Any]]:
         return made | {f"hover{place}": list(series.values) for place, series in enumerate(layer.hover)}
     if isinstance(layer, Bars):
         texts = layer.texts or tuple(f"{value:.4g}" for value in layer.values.values)
-        return {"category": categories(layer), "value": list(layer.values.values), "text": list(texts)}
+        return {"category": categories(layer), "start": list(layer.starts or (0.0,) * len(texts)), "value": list(layer.values.values), "text": list(texts)}
     if isinstance(layer, Mark):
         low, high = where["x"]
         late = layer.x > low + 0.7 * (high - low)
@@ -124,7 +124,7 @@ def _extent(layer: Any, axis: str) -> list[float]:
     if isinstance(layer, Line):
         return [value for value in (layer.x if axis == "x" else layer.y).values if value == value]
     if isinstance(layer, Bars):
-        return [0.0, *layer.values.values, _room_for_texts(layer)] if axis == "x" else []
+        return [*(layer.starts or (0.0,)), *layer.values.values, _room_for_texts(layer)] if axis == "x" else []
     if isinstance(layer, Mark):
         return [layer.x if axis == "x" else layer.y]
     if not isinstance(layer, Rule):
@@ -135,8 +135,8 @@ def _extent(layer: Any, axis: str) -> list[float]:
 def _room_for_texts(bars: Bars) -> float:
     """Return how far the axis of bars reaches so that long texts at their ends stay inside the frame."""
     longest = max((len(text) for text in bars.texts), default=0)
-    largest = max(bars.values.values, default=0.0)
-    return largest / (1.0 - min(0.02 * longest, 0.5)) if longest > LONG_TEXT else largest
+    low, largest = min(bars.starts, default=0.0), max(bars.values.values, default=0.0)
+    return low + (largest - low) / (1.0 - min(0.02 * longest, 0.5)) if longest > LONG_TEXT else largest
 
 
 def axis_text(axis: Axis) -> str:
@@ -269,7 +269,7 @@ def _bars(plot: Plot, layer: Bars, place: int) -> None:
     from bokeh.core.properties import value
 
     source, made = _source(plot, layer, place), plot.figure
-    bar = made.hbar(y="category", right="value", left=0.0, height=0.62, source=source, line_color=None)
+    bar = made.hbar(y="category", right="value", left="start", height=0.62, source=source, line_color=None)
     plot.paint(bar.glyph, paint.role_of(layer.colour), "fill_color")
     plain(bar)
     text = made.text("value", "category", text="text", source=source, x_offset=5, text_baseline="middle", text_font=value(FONT), text_font_size="12px")

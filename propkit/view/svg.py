@@ -28,7 +28,8 @@ def draw(figure: Figure, width: int = WIDTH, height: int = HEIGHT) -> str:
     """
     bars = [layer for layer in figure.layers if isinstance(layer, Bars)]
     if bars:
-        body, height = _bars(bars[0], width, species=figure.name == "composition")
+        low = figure.x.low if bars[0].starts and figure.x.low is not None else 0.0
+        body, height = _bars(bars[0], width, low, species=figure.name == "composition")
     elif figure.equal_aspect:
         body, height = _to_scale(figure, width, height)
     else:
@@ -47,24 +48,34 @@ def data_uri(figure: Figure) -> str:
     return f"data:image/svg+xml;base64,{base64.b64encode(draw(figure).encode()).decode()}"
 
 
-def _bars(bars: Bars, width: int, species: bool) -> tuple[str, int]:
-    """Return horizontal bars and the height that they need."""
+def _bars(bars: Bars, width: int, low: float, species: bool) -> tuple[str, int]:
+    """Return horizontal bars on an axis from `low`, and the height that they need."""
     texts = bars.texts or tuple(f"{value:.3g}" for value in bars.values.values)
     names = [text_species(name) if species else name for name in bars.categories]
     left = 20 + max((width_of(name, 10) for name in names), default=0.0)
     left = min(left, 0.5 * width)
     room = width - left - 20 - max((width_of(entry, 10) for entry in texts), default=0.0)
-    largest = max((abs(value) for value in bars.values.values), default=0.0) or 1.0
+    starts = bars.starts or (low,) * len(names)
+    largest = max((abs(value - low) for value in bars.values.values), default=0.0) or 1.0
     out = []
-    for position, (name, value, entry) in enumerate(zip(names, bars.values.values, texts, strict=True)):
+    for position, (name, start, value, entry) in enumerate(zip(names, starts, bars.values.values, texts, strict=True)):
         y = _TITLE + 6 + _PITCH * position
-        long = max(1.0, room * abs(value) / largest)
+        begin = left + room * (start - low) / largest
+        long = max(1.0, room * abs(value - start) / largest)
         out.append(text(left - 8, y + 10, escape(_fitting(name, left - 16)), anchor="end"))
         out.append(
-            f"<rect x='{number(left)}' y='{y}' width='{number(long)}' height='{_BAR}' fill='{palette.colour(bars.colour)}'/>"
+            f"<rect x='{number(begin)}' y='{y}' width='{number(long)}' height='{_BAR}' fill='{palette.colour(bars.colour)}'/>"
         )
-        out.append(text(left + long + 6, y + 10, escape(entry), colour=palette.QUIET))
+        if bars.starts and low != 0.0 and start == low:
+            out.append(_cut(begin + 7, y))
+        out.append(text(begin + long + 6, y + 10, escape(entry), colour=palette.QUIET))
     return "".join(out), _TITLE + 10 + _PITCH * len(names)
+
+
+def _cut(x: float, y: float) -> str:
+    """Return the sign that a bar is cut off: a slanted gap across it."""
+    slant = f"M{number(x)} {y - 1}l-3 {_BAR + 2}h3l3 {-_BAR - 2}z"
+    return f"<path d='{slant}' fill='{palette.PLATE}'/>"
 
 
 def _fitting(name: str, room: float) -> str:
@@ -100,20 +111,31 @@ def _to_scale(figure: Figure, width: int, height: int) -> tuple[str, int]:
     out.append(
         f"<path d='M{number(left)} {number(y0)}H{number(right)}' stroke='{palette.QUIET}' stroke-width='.7' stroke-dasharray='9 3 2 3'/>"
     )
-    end = -float(width)
-    for mark in sorted(marks, key=lambda each: each.x):
+    marks.sort(key=lambda each: each.x)
+    lefts = _side_by_side([place(mark.x, 0.0)[0] for mark in marks], [width_of(mark.label, 10) for mark in marks], width)
+    for mark, left in zip(marks, lefts, strict=True):
         x, high = place(mark.x, mark.y)
-        low = place(mark.x, -mark.y)[1]
-        drawn, end = _dimension(mark, x, high, low, width, height, end)
-        out.append(drawn)
+        out.append(_dimension(mark, x, high, place(mark.x, -mark.y)[1], height, left))
     return "".join(out), height
 
 
-def _dimension(mark: Mark, x: float, high: float, low: float, width: int, height: int, end: float) -> tuple[str, float]:
-    """Return a mark as a dimension line across the body with its text below, clear of the text that ended at `end`."""
+def _side_by_side(centres: list[float], widths: list[float], width: int) -> list[float]:
+    """Return where texts begin that are to stand under `centres`, clear of each other and inside the drawing."""
+    lefts: list[float] = []
+    end = 0.0
+    for centre, wide in zip(centres, widths, strict=True):
+        lefts.append(max(centre - wide / 2, end + 10.0))
+        end = lefts[-1] + wide
+    end = float(width)
+    for place in reversed(range(len(lefts))):
+        lefts[place] = min(lefts[place], end - 10.0 - widths[place])
+        end = lefts[place]
+    return lefts
+
+
+def _dimension(mark: Mark, x: float, high: float, low: float, height: int, left: float) -> str:
+    """Return a mark as a dimension line across the body with its text below, which begins at `left`."""
     colour = palette.colour(mark.colour)
-    wide = width_of(mark.label, 10)
-    left = min(max(x - wide / 2, 10.0, end + 10.0), width - 10.0 - wide)
     base = height - 9
     at = number(x)
     arrows = "".join(
@@ -123,6 +145,5 @@ def _dimension(mark: Mark, x: float, high: float, low: float, width: int, height
     return (
         f"<path d='M{at} {number(high)}V{number(low)}' stroke='{colour}' stroke-width='1'/>{inside}"
         f"<path d='M{at} {number(low)}V{base - 11}' stroke='{colour}' stroke-width='.6' stroke-dasharray='1.5 2'/>"
-        + text(left, base, escape(mark.label), colour=colour),
-        left + wide,
+        + text(left, base, escape(mark.label), colour=colour)
     )

@@ -181,3 +181,25 @@ def test_a_batch_is_sized_with_the_divergence(case):
         one = nozzle.replace({"chamber.pressure": pressure})
         assert quick["throat_area"][place] == pytest.approx(one.si("throat_area"), rel=1e-8)
         assert found["wetted_area"][place] == pytest.approx(one.si("wetted_area"), rel=1e-12)
+
+
+def test_an_energy_release_among_the_losses_is_not_contradicted_by_the_assumptions(nozzle):
+    nozzle = nozzle.replace({"chamber.cstar_efficiency": 1.0})
+    perf = pk.Performance(nozzle, ambient="vacuum", losses={"energy release": 0.97})
+    assert "energy release among the losses" in perf.assumptions.of("cstar-efficiency").statement
+    assert "Nothing is lost in the chamber" not in str(perf)
+    without = pk.Performance(nozzle, ambient="vacuum")
+    assert "Nothing is lost in the chamber" in without.assumptions.of("cstar-efficiency").statement
+
+
+def test_the_drawn_ledger_goes_from_an_ideal_bar_to_a_delivered_bar_each_taking_up_where_the_last_ended(nozzle):
+    perf = pk.Performance(nozzle, ambient="vacuum", losses={"kinetics": 0.99, "boundary layer": 0.985})
+    figure = next(figure for figure in perf.figures() if figure.name == "ledger")
+    bars = figure.layers[0]
+    assert bars.categories[0] == "ideal"
+    assert bars.categories[-1] == "delivered"
+    assert bars.values.values[0] == perf.ideal.si("specific_impulse")
+    assert bars.values.values[-1] == pytest.approx(perf.si("specific_impulse"), rel=1e-12)
+    assert bars.values.values[1:-1] == (perf.ideal.si("specific_impulse"), *bars.starts[1:-2])
+    assert bars.starts[-2] == pytest.approx(perf.si("specific_impulse"), rel=1e-12)
+    assert bars.starts[0] == bars.starts[-1] == figure.x.low < bars.starts[-2]

@@ -8,9 +8,10 @@ import xml.etree.ElementTree as ET
 import pytest
 
 from propkit.report import Report
-from propkit.series import Axis, Figure, Line, Mark, Series
+from propkit.series import Axis, Bars, Figure, Line, Mark, Series
 from propkit.view import palette, svg
 from propkit.view.svg_curves import ticks
+from propkit.view.svg_parts import width_of
 
 SPACE = "{http://www.w3.org/2000/svg}"
 
@@ -168,3 +169,24 @@ def lab(colour: str, kind: str) -> tuple[float, float, float]:
     ]
     f = [value ** (1 / 3) if value > (6 / 29) ** 3 else value / (3 * (6 / 29) ** 2) + 4 / 29 for value in xyz]
     return 116 * f[1] - 16, 500 * (f[0] - f[1]), 200 * (f[1] - f[2])
+
+
+def test_bars_with_starts_hang_where_they_begin_and_those_cut_off_say_so() -> None:
+    values = Series("Isp", (300.0, 300.0, 290.0), "s")
+    bars = Bars(("ideal", "loss", "delivered"), values, ("300 s", "-10 s", "290 s"), starts=(280.0, 290.0, 280.0))
+    root = drawn(Figure("ledger", "t", "a", Axis("Isp", "s", low=280.0), Axis(""), (bars,)))
+    rects = [r for r in root.iter(f"{SPACE}rect") if r.get("fill") != palette.PLATE]
+    ends = [(float(r.get("x") or 0), float(r.get("x") or 0) + float(r.get("width") or 0)) for r in rects]
+    assert ends[1][0] == pytest.approx(ends[2][1], abs=0.2)
+    assert ends[1][1] == pytest.approx(ends[0][1], abs=0.2)
+    assert len([p for p in root.iter(f"{SPACE}path") if p.get("fill") == palette.PLATE]) == 2
+
+
+@pytest.mark.parametrize("at", [(0.0, 0.0), (0.0, 0.1), (9.0, 10.0), (0.0, 10.0)])
+def test_labels_of_dimensions_never_overlap(at: tuple[float, float]) -> None:
+    wall = Line(Series("x", (-10.0, 10.0, 10.0, -10.0), "m"), Series("r", (3.0, 3.0, -3.0, -3.0), "m"), closed=True)
+    marks = tuple(Mark(x, 3.0, f"{name} 180 mm") for x, name in zip(at, ("throat", "exit"), strict=True))
+    root = drawn(Figure("outline", "t", "a", Axis("x", "m"), Axis("r", "m"), (wall, *marks), equal_aspect=True))
+    left, right = (float(t.get("x") or 0) for t in root.iter(f"{SPACE}text") if "180 mm" in "".join(t.itertext()))
+    assert right - left >= width_of("throat 180 mm", 10)
+    assert right + width_of("exit 180 mm", 10) <= svg.WIDTH - 5
