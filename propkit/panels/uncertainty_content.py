@@ -105,7 +105,7 @@ def headline(plan: UncertaintyPlan, base: Any, system: UnitSystem) -> list[dict[
 
 
 def row(result: Any, name: str, label: str, base: Any, system: UnitSystem) -> dict[str, Any]:
-    """Return a result with its standard uncertainty, and the difference of that to the pinned one."""
+    """Return a result with its standard uncertainty, and its difference to the pinned one."""
     quantity = result._quantity(name)
     unit, factor = result._display(name, system)
     value, deviation, _, _ = _numbers(result, name)
@@ -123,7 +123,7 @@ def row(result: Any, name: str, label: str, base: Any, system: UnitSystem) -> di
         before = _numbers(base, name)
         step = (value - before[0]) * factor
         made["difference"] = show.difference(step, value * factor, quantity.digits)
-        made["share"] = f"u {100.0 * (deviation / before[1] - 1.0):+.3g} %".replace("-", "\N{MINUS SIGN}") if before[1] else ""
+        made["share"] = ""
     return made
 
 
