@@ -7,6 +7,8 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from typing import Any, Literal
 
+from propkit.record.build import printable
+
 BlockKind = Literal["markdown", "code", "html", "text", "picture", "error"]
 
 _ANSI = re.compile(r"\x1b\[[0-9;?]*[ -/]*[@-~]|\x1b[@-_]")
@@ -106,7 +108,7 @@ def plain_text(text: str) -> str:
     """Return a text as a terminal would show it: without escape sequences, carriage returns resolved."""
     text = _ANSI.sub("", text[:_LONGEST_TEXT])
     lines = [line.rstrip("\r").rpartition("\r")[2] for line in text.split("\n")]
-    return "".join(character for character in "\n".join(lines).rstrip() if character.isprintable() or character in "\n\t")
+    return "".join(character for character in "\n".join(lines).rstrip() if printable(character))
 
 
 def title_of(blocks: list[Block], fallback: str) -> str:

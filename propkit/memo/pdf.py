@@ -3,13 +3,12 @@
 from __future__ import annotations
 
 import json
-import warnings
 from collections.abc import Sequence
 from datetime import UTC, datetime
-from importlib import resources
 
 from propkit.errors import MissingExtraError, RecordError
-from propkit.memo.typeset import typeset_blocks
+from propkit.memo.letters import set_whole
+from propkit.memo.typeset import shown, typeset_blocks
 
 _PAPERS = {"a4": "a4", "letter": "us-letter"}
 
@@ -54,31 +53,20 @@ def compiled(
         import typst
     except ImportError:
         raise MissingExtraError("typst", "memo", "a PDF memo") from None
+    stamp = datetime.strptime(date, "%Y-%m-%dT%H:%M:%SZ").replace(tzinfo=UTC)
     data = {
-        "title": title,
-        "author": author,
+        "title": shown(title),
+        "author": shown(author),
         "date": date[:10],
         "digest": digest,
-        "facts": [[name, value] for name, value in facts if value],
+        "facts": [[name, shown(value)] for name, value in facts if value],
         "answers": [{"label": label, "value": value, "unit": unit} for label, value, unit in answers],
-        "footer": footer,
+        "footer": shown(footer),
         "paper": _PAPERS[paper],
         "blocks": typeset_blocks(markup),
     }
-    stamp = datetime.strptime(date, "%Y-%m-%dT%H:%M:%SZ").replace(tzinfo=UTC)
-    home = resources.files("propkit.memo")
-    with resources.as_file(home.joinpath("fonts")) as fonts, warnings.catch_warnings():
-        warnings.simplefilter("ignore")
-        try:
-            made: bytes = typst.compile(  # type: ignore[call-overload, unused-ignore]
-                home.joinpath("memo.typ").read_bytes(),
-                font_paths=[str(fonts)],
-                ignore_system_fonts=True,
-                format="pdf",
-                sys_inputs={"memo": json.dumps(data, ensure_ascii=False)},
-                pdf_standards=["a-2b"],
-                timestamp=stamp,
-            )
-        except typst.TypstError as error:
-            raise RecordError(f"the memo cannot be set as PDF: {str(error).splitlines()[0][:300]}") from None
+    try:
+        made = set_whole(json.dumps(data, ensure_ascii=False), stamp)
+    except typst.TypstError as error:
+        raise RecordError(f"the memo cannot be set as PDF: {str(error).splitlines()[0][:300]}") from None
     return made

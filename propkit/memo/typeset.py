@@ -7,6 +7,8 @@ import re
 from html.parser import HTMLParser
 from typing import Any
 
+from propkit.record.build import printable
+
 _INLINE = {"b": "b", "strong": "b", "em": "i", "i": "i", "code": "c", "sub": "_", "sup": "^", "small": "q", "var": "i", "cite": "i", "kbd": "c", "samp": "c"}
 _BLOCKS = frozenset(("p", "div", "section", "header", "main", "article", "aside", "figure", "figcaption", "blockquote", "li", "dt", "dd", "dl", "caption", "details", "summary"))
 _SIDE_BY_SIDE = {"figures": False, "propkit-body": False, "propkit-answers": True, "answers": True}
@@ -148,6 +150,7 @@ class _Reader(HTMLParser):
     def _text(self, text: str) -> None:
         if self.table is not None and self.cell is None and not text.strip():
             return
+        text = shown(text)
         target = self._target()
         if not target and not text.strip(" "):
             return
@@ -166,7 +169,7 @@ class _Reader(HTMLParser):
             data = base64.b64decode(match.group(2), validate=False)
         except ValueError:
             return
-        run: Run = {"alt": known.get("alt", ""), "format": {"svg+xml": "svg", "jpeg": "jpg"}.get(match.group(1), match.group(1))}
+        run: Run = {"alt": shown(known.get("alt", "")), "format": {"svg+xml": "svg", "jpeg": "jpg"}.get(match.group(1), match.group(1))}
         if run["format"] == "svg":
             text = data.decode("utf-8", "replace")
             size = _SIZE.search(text)
@@ -215,6 +218,11 @@ class _Reader(HTMLParser):
             self.lists[-1]["items"].append([{"kind": "text", "runs": runs, "class": ""}])
         else:
             self.blocks.append({"kind": "text", "runs": runs, "class": " ".join(part for part in self.classes if part)})
+
+
+def shown(text: str) -> str:
+    """Return a text without control characters, which no font has."""
+    return "".join(filter(printable, text))
 
 
 def _sides(kind: str) -> bool | None:

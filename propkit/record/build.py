@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import sys
+import unicodedata
 from collections.abc import Mapping
 from datetime import UTC, datetime
 from typing import Any
@@ -75,7 +76,7 @@ def read_texts(texts: Mapping[str, Any]) -> dict[str, str]:
     problems = []
     for name, value in texts.items():
         longest = LONGEST[name]
-        legal = isinstance(value, str) and len(value) <= longest and all(_printable(character) for character in value)
+        legal = isinstance(value, str) and len(value) <= longest and all(printable(character) for character in value)
         if not legal:
             shown = ascii(value)
             shown = shown if len(shown) <= 60 else f"{shown[:57]}..."
@@ -85,8 +86,12 @@ def read_texts(texts: Mapping[str, Any]) -> dict[str, str]:
     return {name: str(value) for name, value in texts.items()}
 
 
-def _printable(character: str) -> bool:
-    return character.isprintable() or character in "\n\t"
+_JOINERS = "\u200c\u200d"
+
+
+def printable(character: str) -> bool:
+    """Whether a character may stand in a text: letters, signs, spaces of every width, line ends; no controls, no half characters."""
+    return character.isprintable() or character in "\n\t" or character in _JOINERS or unicodedata.category(character) == "Zs"
 
 
 def provenance_now(show_cell: bool = False) -> dict[str, Any]:

@@ -1,4 +1,7 @@
-r"""Reports as LaTeX: plain ``tabular`` and ``\paragraph``-free, to be put into a document."""
+r"""Reports as LaTeX: plain ``tabular`` and ``\paragraph``-free, to be put into a document.
+
+They need the packages ``fontenc`` (T1) and ``amsmath``; letters of other scripts than the Latin and the Greek need LuaLaTeX.
+"""
 
 from __future__ import annotations
 
@@ -13,8 +16,24 @@ _ESCAPES = {
     "\\": r"\textbackslash{}", "&": r"\&", "%": r"\%", "$": r"\$", "#": r"\#", "_": r"\_", "{": r"\{", "}": r"\}",
     "~": r"\textasciitilde{}", "^": r"\textasciicircum{}", "<": r"\textless{}", ">": r"\textgreater{}", "\n": " ",
 }  # fmt: skip
+_GREEK = dict(zip(
+    "αβγδεζηθικλμνξπρστυφχψωΓΔΘΛΞΠΣΥΦΨΩ",
+    "alpha beta gamma delta epsilon zeta eta theta iota kappa lambda mu nu xi pi rho sigma tau upsilon phi chi psi omega "
+    "Gamma Delta Theta Lambda Xi Pi Sigma Upsilon Phi Psi Omega".split(),
+    strict=True,
+))  # fmt: skip
 _MARKS = {"given": r"$\bullet$", "default": r"$\circ$", "computed": "="}
-_LETTERS = str.maketrans({"°": r"$^\circ$", "²": "$^2$", "³": "$^3$", "·": r"$\cdot$", "−": "--", "×": r"$\times$"})
+_LETTERS = str.maketrans({
+    "°": r"$^\circ$", "²": "$^2$", "³": "$^3$", "·": r"$\cdot$", "−": "--", "×": r"$\times$", "±": r"$\pm$", "→": r"$\rightarrow$",
+    "≤": r"$\leq$", "≥": r"$\geq$", "≈": r"$\approx$", "≠": r"$\neq$", "∞": r"$\infty$", "√": r"$\surd$",
+    "\u2003": r"\quad{}", "\u2007": "~", "\u2008": "~", "\u2009": r"\,", "\u202f": r"\,", "\u200b": "", "\t": " ",
+    **{chr(0x2080 + figure): f"$_{figure}$" for figure in range(10)},
+    **{letter: rf"$\{name}$" for letter, name in _GREEK.items()},
+})  # fmt: skip
+_LONG = 40
+"""Longest text of a column that is set in one line."""
+_MANY = 7
+"""Columns of a table from which it is set small."""
 
 
 def escaped(text: str) -> str:
@@ -91,7 +110,7 @@ def _items(title: str, lines: Iterable[str]) -> str:
 
 
 def _table(table: Table) -> str:
-    form = "l" + "".join("r" if cells.numeric(column) else "l" for column in table.columns)
+    form = _form(table.index) + "".join("r" if cells.numeric(column) else _form(column.values) for column in table.columns)
     heads = [escaped(table.index_label)]
     for column in table.columns:
         name = (
@@ -113,8 +132,15 @@ def _table(table: Table) -> str:
             )
         lines.append(" & ".join(row) + r" \\")
     lines.append(r"\end{tabular}")
+    if len(table.columns) >= _MANY:
+        lines = [r"{\footnotesize\setlength{\tabcolsep}{3pt}", *lines, "}"]
     note = f"\n\n{escaped(table.note)}" if table.note else ""
     return "\n".join(lines) + note
+
+
+def _form(values: Iterable[object]) -> str:
+    """Return the form of a column of texts: paragraphs where some are long."""
+    return r"p{0.34\linewidth}" if any(len(value) > _LONG for value in values if isinstance(value, str)) else "l"
 
 
 def _step(step: Step) -> str:

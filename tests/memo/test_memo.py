@@ -208,6 +208,7 @@ def test_equations_leave_code_alone():
 
 def test_terminal_text():
     assert plain_text("a\x1b[31mred\x1b[0m\x07\r\nbar 10%\rbar 100%\n") == "ared\nbar 100%"
+    assert plain_text("12\u202f000\u00a0N\u202e\x00") == "12\u202f000\u00a0N"
 
 
 def test_widget_views_are_left_out():

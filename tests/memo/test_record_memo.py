@@ -253,3 +253,22 @@ def test_a_study_shows_its_sample_as_a_table(perf):
     place = next(place for place, name in enumerate(table.index) if name.startswith("thrust ["))
     for column in table.columns:
         assert column.values[place] == stored[f"{column.name} thrust"]["value"]
+
+
+@pytest.mark.parametrize("title", ["推力 \u0928\u094d\u200d \u05d0\u05d1 \U0001f680", "12\u202f000\u2009N ½ ≤ Ω", "\U0001f468\u200d\U0001f680" * 20])
+def test_letters_of_any_script_can_be_set(perf, tmp_path, title):
+    path = perf.nozzle.chamber.case.record(title=f"Title {title}", notes=title).save(tmp_path / "x.pdf")
+    fonts = subprocess.run(["pdffonts", str(path)], capture_output=True, text=True, check=True).stdout
+    assert all(line.split()[-5] == "yes" for line in fonts.splitlines()[2:]), fonts
+    assert "Title" in pdf_text(path)
+
+
+def test_control_characters_of_a_notebook_do_not_stop_the_pdf():
+    from propkit.memo.blocks import blocks_of
+    from propkit.memo.notebook_pdf import notebook_pdf
+    from propkit.memo.page import NotebookMemo
+
+    noise = "".join(map(chr, [*range(32), 0x7F, 0x85, 0xAD, 0x202E, 0xFFFE, 0xE000, 0x10FFFF])) + "end"
+    outputs = [{"output_type": "display_data", "data": {"text/html": f"<p title='{noise}'>{noise}</p><img alt='{noise}' src='x'>"}, "metadata": {}}]
+    cells = [{"cell_type": "markdown", "source": f"# T{noise}\n\n{noise}"}, {"cell_type": "code", "source": f"x{noise}", "outputs": outputs}]
+    assert notebook_pdf(NotebookMemo(f"T{noise}", f"{noise}.ipynb", tuple(blocks_of({"cells": cells})), (), noise)).startswith(b"%PDF")

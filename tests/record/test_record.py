@@ -279,6 +279,16 @@ def test_bad_texts_are_refused(perf, texts):
         perf.record(**texts)
 
 
+def test_texts_may_hold_spaces_of_every_width(perf):
+    title = "Thrust\u00a0of 12\u202f000\u2009N, \u2003 \u0928\u094d\u200d\U0001f680"
+    record = perf.record(title=title)
+    assert record.title == title
+    assert record.verify().ok
+    for bad in ("\u202e", "\x07", "\u2028", "\ufeff"):
+        with pytest.raises(InputError):
+            perf.record(title=f"a{bad}")
+
+
 def test_bundle_is_a_record(perf):
     from propkit.record import bundle_of
 
