@@ -32,7 +32,7 @@ _PUBLIC = {
     "load_propellants": "propkit.model.propellant",
     "Study": "propkit.study.sweep",
     "solve_for": "propkit.study.solve",
-    "maximise": "propkit.study.solve",
+    "maximise": "propkit.study.maximise",
     "Uncertainty": "propkit.study.uncertainty",
     "Normal": "propkit.study.distributions",
     "Uniform": "propkit.study.distributions",
@@ -96,7 +96,7 @@ if TYPE_CHECKING:
     from propkit.study.distributions import Normal as Normal
     from propkit.study.distributions import Triangular as Triangular
     from propkit.study.distributions import Uniform as Uniform
-    from propkit.study.solve import maximise as maximise
+    from propkit.study.maximise import maximise as maximise
     from propkit.study.solve import solve_for as solve_for
     from propkit.study.sweep import Study as Study
     from propkit.study.uncertainty import Uncertainty as Uncertainty

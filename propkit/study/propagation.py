@@ -314,6 +314,8 @@ def monte_carlo(
     Source: JCGM 101:2008, clauses 7.5 to 7.9.
     """
     seed = check_seed(seed)
+    if illegal not in ("refuse", "leave out"):
+        raise InputError(Problem("illegal", repr(illegal), "'refuse' or 'leave out'"))
     run = _Run(evaluate, quick or evaluate, inputs, seed, block, executor, progress, should_stop)
     adaptive = samples == "adaptive"
     total = _checked_samples(samples, most)

@@ -76,6 +76,8 @@ class Study:
     ) -> None:
         if not isinstance(target, Calculation):
             raise InputError(Problem("target", as_text(target), "a propkit object, such as a pk.Performance"))
+        if results is not None and not len(results):
+            raise InputError(Problem("results", as_text(results), "a list of names, one at least", "Leave it out for every result."))
         if isinstance(results, str):
             raise InputError(Problem("results", repr(results), "a list of names", f"Write [{results!r}] for a single one."))
         plan = read_plan(target, designs)

@@ -236,6 +236,8 @@ def _listed(path: str, values: Any) -> Any:
         found = list(values)
     else:
         found = np.asarray(values)
+        if found.ndim == 0:
+            raise InputError(Problem(path, as_text(values), "a list of values"))
         if found.ndim != 1:
             raise InputError(Problem(path, f"an array of shape {found.shape}", "a list of values, one-dimensional"))
     if len(found) == 0:

@@ -11,12 +11,13 @@ import numpy as np
 import numpy.typing as npt
 
 from propkit import quantities, units
-from propkit.errors import InputError, MissingExtraError, Problem, RangeError, StorageError, near_matches
+from propkit.errors import InputError, Problem, RangeError, near_matches
 from propkit.model import paths
 from propkit.model.base import Calculation, reach, render
 from propkit.model.doubts import Doubt
-from propkit.report import Column, Report, Section, Table, UnitSystem
+from propkit.report import Report, UnitSystem
 from propkit.series import Figure
+from propkit.study.pareto import undominated
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -24,11 +25,6 @@ if TYPE_CHECKING:
     from propkit.study.sweep import Study
 
 Array = npt.NDArray[np.float64]
-
-SHOWN = 12
-"""Designs listed on the sheet of a study."""
-SHOWN_COLUMNS = 5
-
 
 class StudyResult:
     """The results of a study; immutable.
@@ -142,7 +138,7 @@ class StudyResult:
         InputError
             For a result that the study does not have; candidates are listed.
         """
-        if result in self._columns:
+        if isinstance(result, str) and result in self._columns:
             return result
         ends = [name for name in self._columns if name.endswith(f".{result}")]
         own = f"{self.plan.target.kind}."
@@ -234,7 +230,7 @@ class StudyResult:
         RangeError
             When no design has that result.
         """
-        from propkit.study.solve import refined
+        from propkit.study.maximise import refined
 
         row, name = self.best_design(result, minimum)
         plan = self.plan.plan
@@ -269,10 +265,11 @@ class StudyResult:
         """
         if isinstance(minimum, str):
             minimum = (minimum,)
-        names = tuple(dict.fromkeys((*results, *minimum)))
+        names = tuple(dict.fromkeys(self._column_name(name) for name in (*results, *minimum)))
+        small = {self._column_name(name) for name in minimum}
         if len(names) < 2:
             raise InputError(Problem("results", ", ".join(names) or "missing", "two results or more", "With one there is a best design: best(...)."))
-        found = [(-1.0 if name in minimum else 1.0) * self.values(name) for name in names]
+        found = [(-1.0 if name in small else 1.0) * self.values(name) for name in names]
         table = np.stack(found, axis=1)
         usable = np.flatnonzero(np.isfinite(table).all(axis=1))
         kept = usable[undominated(table[usable])]
@@ -280,6 +277,11 @@ class StudyResult:
         frame = self.frame.loc[order]
         frame.attrs["units"] = self.units
         return frame
+
+    def _column_name(self, name: str) -> str:
+        """Return the column of a result, or of a number that varies."""
+        varied = [column.path for column in self.plan.plan.numbers if name == column.path or column.path.endswith(f".{name}")]
+        return varied[0] if varied else self.name_of(name)
 
     # -- files -----------------------------------------------------------------------------------
 
@@ -291,16 +293,9 @@ class StudyResult:
         StorageError
             When the file cannot be written.
         """
-        target = Path(path)
-        frame = self.frame
-        known = self.units
-        frame.columns = [f"{name} [{known[name]}]" if known.get(str(name)) else str(name) for name in frame.columns]
-        frame["failed"] = [self._reasons.get(int(row), "") for row in frame.index]
-        try:
-            frame.to_csv(target, index=True, lineterminator="\n")
-        except OSError as error:
-            raise StorageError(f"{target} cannot be written: {error.strerror or error}", path=str(target)) from error
-        return target
+        from propkit.study.sweep_files import write_csv
+
+        return write_csv(self._whole_frame(), self.units, Path(path))
 
     def to_parquet(self, path: str | os.PathLike[str]) -> Path:
         """Write the table as Parquet (extra ``study``), with the units in the metadata; return where.
@@ -312,25 +307,15 @@ class StudyResult:
         StorageError
             When the file cannot be written.
         """
-        try:
-            import pyarrow as arrow
-            from pyarrow import parquet
-        except ImportError as error:
-            raise MissingExtraError("pyarrow", "study", "Writing Parquet") from error
-        target = Path(path)
-        frame = self.frame
-        units_text = {str(name): unit for name, unit in self.units.items()}
-        frame.attrs = {}
-        frame["failed"] = [self._reasons.get(int(row), "") for row in frame.index]
-        table = arrow.Table.from_pandas(frame)
-        import json
+        from propkit.study.sweep_files import write_parquet
 
-        table = table.replace_schema_metadata({**(table.schema.metadata or {}), b"propkit.units": json.dumps(units_text).encode()})
-        try:
-            parquet.write_table(table, target)
-        except OSError as error:
-            raise StorageError(f"{target} cannot be written: {error.strerror or error}", path=str(target)) from error
-        return target
+        return write_parquet(self._whole_frame(), self.units, Path(path))
+
+    def _whole_frame(self) -> pd.DataFrame:
+        """Return the table with the reasons of failed designs as its last column."""
+        frame = self.frame
+        frame["failed"] = [self._reasons.get(int(row), "") for row in frame.index]
+        return frame
 
     def record(
         self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "", sample: int = 12, seed: int = 0
@@ -371,14 +356,15 @@ class StudyResult:
 
     def report(self, units: UnitSystem = "SI") -> Report:
         """Return the sheet of the study: what varied, and designs spread evenly over the table."""
+        from propkit.study.sweep_sheet import axes_section, designs_section
+
         system = _system(units)
-        plan = self.plan.plan
         return Report(
             kind="study",
             title="Study",
             subtitle=f"{self.plan.target.subtitle()}; {len(self)} designs",
             units=system,
-            sections=(Section("axes", "What varies", lines=tuple(self._axis_text(column, system) for column in plan.columns)), self._designs(system)),
+            sections=(axes_section(self, system), designs_section(self, system)),
             doubts=tuple(str(doubt) for doubt in self.warnings),
             figures=self.figures(system),
             cautions=self.plan.target.cautions(),
@@ -399,40 +385,6 @@ class StudyResult:
         from propkit.study.sweep_figures import curves
 
         return curves(self, x, y, by=by, units=_system(units))
-
-    def _axis_text(self, column: Any, system: UnitSystem) -> str:
-        if column.is_choice:
-            from propkit.study.sweep_plan import option_text
-
-            return f"{column.path}: {', '.join(str(option_text(option)) for option in column.options)}"
-        unit, factor, offset = self.display(column.path, system)
-        low, high = (float(end) * factor + offset for end in (np.min(column.values), np.max(column.values)))
-        text = units.shown_unit(unit)
-        places = len(np.unique(column.values))
-        return f"{column.path}: {places} values, {low:.5g} to {high:.5g}{f' {text}' if text else ''}"
-
-    def _designs(self, system: UnitSystem) -> Section:
-        rows = np.flatnonzero(self._done)
-        shown = rows[np.unique(np.linspace(0, len(rows) - 1, min(SHOWN, len(rows))).astype(int))] if len(rows) else rows
-        columns = []
-        for column in self.plan.plan.columns:
-            if column.is_choice:
-                columns.append(Column(column.path, column.path, "", "", 0, tuple(str(value) for value in column.shown(shown))))
-            else:
-                columns.append(self._shown_column(column.path, shown, system))
-        target = self.plan.target
-        picked = [name for name in target.headline if name in self._columns]
-        picked += [name for name in self._columns if name not in picked]
-        columns += [self._shown_column(name, shown, system) for name in picked[:SHOWN_COLUMNS]]
-        note = f"{len(shown)} of {len(rows)} designs, spread evenly; .frame has all of them, with every result in SI."
-        return Section("designs", "Designs", table=Table("designs", "Designs", "design", tuple(str(row) for row in shown), tuple(columns), note))
-
-    def _shown_column(self, name: str, rows: npt.NDArray[np.intp], system: UnitSystem) -> Column:
-        known = self.quantity(name)
-        assert known is not None
-        unit, factor, offset = self.display(name, system)
-        values = self.values(name)[rows] * factor + offset
-        return Column(name, name, known.symbol, unit, known.digits, tuple(float(value) if np.isfinite(value) else None for value in values))
 
     def __str__(self) -> str:
         return str(self.report())
@@ -506,29 +458,6 @@ class StudyResult:
             Whether the smallest value is the best.
         """
         return reach("study_panel")(self, "" if result is None else self.name_of(result), limits, minimum)
-
-
-def undominated(table: Array) -> npt.NDArray[np.intp]:
-    """Return the rows of a table that no other row equals or exceeds in every column at once.
-
-    Parameters
-    ----------
-    table : array
-        Values to be large, shape (row, column).
-
-    Returns
-    -------
-    array of int
-        Row numbers, ascending. Of equal rows the first is kept.
-    """
-    order = np.lexsort(tuple(-table[:, place] for place in reversed(range(table.shape[1]))))
-    kept: list[int] = []
-    front = np.empty((0, table.shape[1]))
-    for row in order:
-        if not (front >= table[row]).all(axis=1).any():
-            kept.append(int(row))
-            front = np.vstack([front, table[row]])
-    return np.array(sorted(kept), dtype=np.intp)
 
 
 def _rounded(values: Array, digits: int) -> Array:

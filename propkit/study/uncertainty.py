@@ -9,6 +9,7 @@ import numpy as np
 
 from propkit.errors import InputError, Problem
 from propkit.model.base import Calculation, reach
+from propkit.model.declare import as_text
 from propkit.study.distributions import Distribution, Normal
 from propkit.study.evaluation import ChainFunction, Variable, function_of, result_name, variable
 from propkit.study.joint import JointInputs, check_seed
@@ -87,7 +88,9 @@ class Uncertainty:
             path: entry.resolve(variables[path].nominal, variables[path].unit, path) for path, entry in given.items()
         }
         bounds = {path: (entry.low, entry.high) for path, entry in variables.items()}
-        pairs = {_pair(target, pair): value for pair, value in (correlation or {}).items()}
+        if results is not None:
+            results = _wanted(target, results)
+        pairs = _pairs(target, {} if correlation is None else correlation)
         hold = object.__setattr__
         hold(self, "_target", target)
         hold(self, "_inputs", given)
@@ -261,6 +264,38 @@ def _read(
 
 def _as_problem(path: str, error: InputError) -> Problem:
     return Problem(path, "not understood", "a path of a numeric input", str(error))
+
+
+def _wanted(target: Calculation, results: Any) -> tuple[str, ...]:
+    """Return results as tables call them; every bad name in one error."""
+    if isinstance(results, str) or not isinstance(results, Sequence) or not results:
+        hint = f"Write [{results!r}] for a single one." if isinstance(results, str) else ""
+        raise InputError(Problem("results", as_text(results), "a list of names, one at least", hint))
+    problems: list[Problem] = []
+    found: list[str] = []
+    for name in results:
+        try:
+            found.append(result_name(target, name))
+        except InputError as error:
+            problems.extend(error.problems or (Problem(str(name), "not understood", "a path of a result", str(error)),))
+    if problems:
+        raise InputError(problems)
+    return tuple(dict.fromkeys(found))
+
+
+def _pairs(target: Calculation, correlation: Any) -> dict[tuple[str, str], float]:
+    """Return correlations by pairs of whole paths; each pair once."""
+    if not isinstance(correlation, Mapping):
+        raise InputError(Problem("correlation", as_text(correlation), "a mapping of pairs of paths, as {(path, path): value}"))
+    found: dict[tuple[str, str], float] = {}
+    for pair, value in correlation.items():
+        first, second = _pair(target, pair)
+        if (first, second) in found or (second, first) in found:
+            raise InputError(Problem(f"correlation of {first} and {second}", "given twice", "given once"))
+        if isinstance(value, bool) or not isinstance(value, int | float | np.number):
+            raise InputError(Problem(f"correlation of {first} and {second}", as_text(value), "a number between -1 and 1"))
+        found[first, second] = float(value)
+    return found
 
 
 def _pair(target: Calculation, pair: Any) -> tuple[str, str]:

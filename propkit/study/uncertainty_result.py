@@ -10,7 +10,7 @@ import numpy.typing as npt
 from scipy import special
 
 from propkit import quantities, units
-from propkit.errors import InputError, NotAvailableError, near_matches
+from propkit.errors import InputError, NotAvailableError, Problem, near_matches
 from propkit.model.base import reach
 from propkit.model.doubts import Doubt
 from propkit.report import Column, Report, Row, Section, Table, UnitSystem
@@ -236,6 +236,8 @@ class UncertaintyResult:
     def _display(self, result: str, system: UnitSystem) -> tuple[str, float]:
         """Return display unit of a result, and the factor from SI for values and differences (none has an offset)."""
         quantity = self._quantity(result)
+        if system not in ("SI", "US"):
+            raise InputError(Problem("units", repr(system), "'SI' or 'US'"))
         unit = quantity.shown_in(system, (float(self._columns()[0][self._place(result)]),))
         return unit, units.convert(1.0, quantity.unit, unit)
 

@@ -16,7 +16,7 @@ import propkit as pk
 from propkit.model import paths
 from propkit.physics import fast_build
 from propkit.study import sweep_plan
-from propkit.study.sweep_result import undominated
+from propkit.study.pareto import undominated
 
 CASE = pk.PropellantCase("LOX", "LCH4", mixture_ratio=3.4)
 CHAMBER = pk.Chamber(CASE, pressure="9.7 MPa")
