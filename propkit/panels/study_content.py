@@ -182,6 +182,9 @@ def _left_out(plan: StudyPlan) -> list[str]:
     found = []
     if not opened.is_grid:
         found.append(f"The study is a list of {_count(opened.count)} designs; the panel shows a grid over their ranges.")
+    spans = {span.path: span for span in plan.spans}
+    if any(path in spans and not column.is_choice and not np.isfinite(column.values).all() for path, column in opened.columns.items()):
+        found.append("Infinite values of an axis are left out.")
     held = [plan.labels[path] for path in opened.columns if path not in shown]
     if held:
         found.append(f"Held at the value of the object: {', '.join(held)}. Choose it as an axis to vary it.")

@@ -11,8 +11,9 @@ from propkit.panels import study_face
 from propkit.panels.last_link_panel import LastLinkPanel, LastLinkSession
 from propkit.panels.study_content import code_of_study, study_content
 from propkit.panels.study_figures import best_row, figures_of, nearest, titles_of
-from propkit.panels.study_plan import Opened, StudyPlan
-from propkit.panels.study_solver import Solver
+from propkit.panels.study_plan import Opened, StudyPlan, constants
+from propkit.panels.study_solver import SETTLED, Solver
+from propkit.study.evaluation import is_enthalpy
 from propkit.study.sweep import Study
 from propkit.study.sweep_result import StudyResult
 
@@ -43,12 +44,9 @@ class StudyPanel(LastLinkPanel):
     def __init__(
         self, study: Study | StudyResult, *, result: str = "", limits: Mapping[str, tuple[Any, Any]] | None = None, minimum: bool = False
     ) -> None:
-        plan = study.plan if isinstance(study, StudyResult) else study
         self.solver = Solver()
         self.picked_values: dict[str, Any] = {}
-        opened = StudyPlan(plan.target, {}, Opened.of(plan, result, minimum, limits), self.solver)
-        if isinstance(study, StudyResult) and _same_designs(study.plan, opened.study) and not study.interrupted:
-            opened.hold(study)
+        opened = self._opened(study, result, minimum, limits or {})
         super().__init__(opened, LastLinkSession(opened))
 
     # -- the study ---------------------------------------------------------------------------------
@@ -177,10 +175,17 @@ class StudyPanel(LastLinkPanel):
         if not isinstance(plan, Study):
             raise InputError(Problem("value", repr(value), "a study or its results"))
         now = self.session.value
-        made = StudyPlan(plan.target, {}, Opened.of(plan, now.result_name, now.minimum, now.limits), self.solver)
-        if isinstance(value, StudyResult) and _same_designs(plan, made.study):
-            made.hold(value)
-        self.session.set_value(made)
+        self.session.set_value(self._opened(value, now.result_name, now.minimum, now.limits))
+
+    def _opened(self, study: Study | StudyResult, result: str, minimum: bool, limits: Mapping[str, tuple[Any, Any]]) -> StudyPlan:
+        """Return the plan of a study, with its results where it has them and they are not too many to draw."""
+        plan = study.plan if isinstance(study, StudyResult) else study
+        fixed = {path: value for path, value in constants(plan).items() if not is_enthalpy(path)}
+        target = plan.target.replace(fixed) if fixed else plan.target
+        made = StudyPlan(target, {}, Opened.of(plan, result, minimum, limits), self.solver)
+        if isinstance(study, StudyResult) and not study.interrupted and len(study) <= SETTLED["quick"] and _same_designs(plan, made.study):
+            made.hold(study)
+        return made
 
     def __repr__(self) -> str:
         return f"<Panel of {self.study!r}>" if self.value is not None else "<Panel, closed>"

@@ -130,7 +130,8 @@ class StudyPlan(LastLink):
         )
         edited = any(f"{axis}_{end}" in self._typed for end in ("low", "high", "points"))
         if column is not None and not edited:
-            return Span(path, np.sort(column.values.astype(np.float64)), given=self.opened.given(path))
+            values = column.values.astype(np.float64)
+            return Span(path, np.unique(values[np.isfinite(values)]), given=self.opened.given(path))
         if not ends[0] < ends[1]:
             given = {name: self._typed.get(name) for name in (f"{axis}_low", f"{axis}_high")}
             name = next((name for name, value in given.items() if value is not None), f"{axis}_low")
@@ -146,7 +147,8 @@ class StudyPlan(LastLink):
             entry = self.target.chain()[place.position].declared_inputs[place.name]
             quantity, bounds = entry.quantity, Bounds(at_least=0.0) if isinstance(entry, CustomInput) else entry.bounds
         if column is not None:
-            return float(np.min(column.values)), float(np.max(column.values)), max(len(column.values), 2), quantity, bounds
+            finite = column.values[np.isfinite(column.values)]
+            return float(np.min(finite)), float(np.max(finite)), max(len(finite), 2), quantity, bounds
         from propkit.study.evaluation import variable
 
         nominal = variable(self.target, path).nominal
@@ -292,7 +294,7 @@ class Opened:
         plan = study.plan
         _, (_, designs, results) = study.__reduce__()
         columns = {column.path: column if plan.shape else _as_axis(column) for column in plan.columns}
-        columns = {path: column for path, column in columns.items() if column.is_choice or len(np.unique(column.values)) > 1 or len(plan.columns) == 1}
+        columns = {path: column for path, column in columns.items() if _varies(column)}
         return cls(columns, designs, bool(plan.shape), plan.count, results, result, minimum, dict(limits or {}))
 
     def is_choice(self, path: str) -> bool:
@@ -306,8 +308,8 @@ class Opened:
             return None
         column = self.columns[path]
         listed = next((values for name, values in self.designs.items() if path == name or path.endswith(f".{name}")), None)
-        ascending = bool((np.diff(column.values) > 0.0).all())
-        return list(listed) if ascending and isinstance(listed, list | tuple) else [float(v) for v in np.sort(column.values)]
+        ascending = bool((np.diff(column.values) > 0.0).all()) and bool(np.isfinite(column.values).all())
+        return list(listed) if ascending and isinstance(listed, list | tuple) else None
 
     def first(self, numbers: Mapping[str, str]) -> str:
         """Return the path across where none is chosen."""
@@ -317,6 +319,17 @@ class Opened:
     def second(self, others: Mapping[str, str]) -> str:
         """Return the path upwards where none is chosen."""
         return next((path for path, column in self.columns.items() if path in others and not column.is_choice), next((path for path in self.columns if path in others), NONE))
+
+
+def _varies(column: Column) -> bool:
+    """Whether a column has more than one choice, or more than one finite number."""
+    return len(column.options) > 1 if column.is_choice else len(np.unique(column.values[np.isfinite(column.values)])) > 1
+
+
+def constants(study: Study) -> dict[str, Any]:
+    """Return the inputs that a study sets to one value throughout."""
+    same = {column.path for column in study.plan.columns if (len(column.options) == 1 if column.is_choice else len(np.unique(column.values)) == 1)}
+    return {path: value for path, value in study.plan.design(0).items() if path in same}
 
 
 def _as_axis(column: Column) -> Column:

@@ -17,9 +17,10 @@ class StudyWidget(PanelWidget):
         panel: Any = self._panel
         if panel is None or panel.value is None:
             return
-        solver = panel.solver
-        solver.moving = asked.get("do") == "slide" and asked.get("phase") == "drag"
-        try:
-            super().act(asked)
-        finally:
-            solver.moving = False
+        # under the lock of the session: what code sets meanwhile is no move
+        with panel.session.lock:
+            panel.solver.moving = asked.get("do") == "slide" and asked.get("phase") == "drag"
+            try:
+                super().act(asked)
+            finally:
+                panel.solver.moving = False
