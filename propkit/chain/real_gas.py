@@ -11,6 +11,7 @@ import numpy as np
 
 from propkit.bridge import real_gas
 from propkit.chain.nozzle import Expansion
+from propkit.chain.warnings import times
 from propkit.data.propellant_row import PropellantRow
 from propkit.errors import RangeError
 from propkit.physics import expansion as flows
@@ -39,7 +40,7 @@ def inlet_doubts(row: PropellantRow, temperature: float, pressure: float) -> Ite
     try:
         price = real_gas.real_gas_price(row, temperature, pressure)
     except RangeError as error:
-        yield f"The real gas is not known at the inlet: {error.message}", "real-gas", "density"
+        yield f"The real gas is not known at the inlet. {error.message}", "real-gas", "density"
         return
     if abs(price.compressibility - 1.0) > NOTED or abs(price.mass_flow_ratio - 1.0) > NOTED:
         yield (
@@ -78,7 +79,7 @@ def flow_doubts(row: PropellantRow, found: Expansion) -> Iterator[tuple[str, str
     last = float(ratios[-1])
     if last <= 1.0:
         return
-    where = f"At the exit {row.name} is at {float(found.exit.temperature[0]):.4g} K and {last:.3g} times its vapour pressure"
+    where = f"At the exit {row.name} is at {float(found.exit.temperature[0]):.4g} K and {times(last)} times its vapour pressure"
     dry = int(np.argmax(ratios > 1.0))
     if dry == 0:
         yield (

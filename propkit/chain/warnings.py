@@ -15,6 +15,11 @@ CONCERNED = 1e-6
 """Mole fraction above which a species outside its range, or a supersaturated vapour, is worth a warning."""
 
 
+def times(ratio: float) -> str:
+    """Return a saturation ratio in words: beyond a million its size tells nothing more."""
+    return f"{ratio:.3g}" if ratio < 1e6 else "over a million"
+
+
 def composition_range(
     table: SpeciesTable, amounts: Array, temperature: float, where: str, about: str
 ) -> Iterator[tuple[str, str, str]]:
@@ -79,7 +84,7 @@ def supersaturation(
         largest = max(found, default=0.0)
         if largest > 1.0:
             text = (
-                f"At {where} the gas is supersaturated with {words} (saturation ratio {largest:.3g}), but only gases are counted; "
+                f"At {where} the gas is supersaturated with {words} (saturation ratio {times(largest)}), but only gases are counted; "
                 f"condensed=True on the case lets it form."
             )
             yield text, "supersaturation", about

@@ -117,7 +117,8 @@ def _changes(alternative: str, here: Delivered, there: Delivered, note: str = ""
 
 
 def _change(here: float, there: float) -> float:
-    change = there / here - 1.0
+    """Return the change as a share of the size of what it changes: more is more where that is negative too."""
+    change = (there - here) / abs(here)
     return change if abs(change) > NOISE else 0.0
 
 
@@ -288,9 +289,9 @@ def _real_gas(performance: Performance) -> Price | None:
     push = (nozzle.exit.si("pressure") * gone.exit_pressure_ratio - performance.si("ambient")) * nozzle.si("exit_area")
     thrust = flow * performance.delivered_velocity * gone.velocity_ratio + push
     here = performance.si("thrust")
-    impulse = (thrust / flow) / (here / performance.si("mass_flow"))
+    impulse = _change(here / performance.si("mass_flow"), thrust / flow)
     note = f"frozen composition; {100.0 * gone.left_out:.2g} % of the gas (radicals) left out"
-    return Price(f"Redlich-Kwong, Z = {gone.compressibility:.4f}", gone.mass_flow_ratio - 1.0, impulse - 1.0, thrust / here - 1.0, note)
+    return Price(f"Redlich-Kwong, Z = {gone.compressibility:.4f}", gone.mass_flow_ratio - 1.0, impulse, _change(here, thrust), note)
 
 
 def _friction(performance: Performance) -> Price | None:
@@ -327,7 +328,7 @@ def _separated(performance: Performance) -> Price:
     except NotAvailableError:
         found = [entry for entry in separation.predictions(performance) if not entry.separates]
         return Price("separated flow", 0.0, 0.0, 0.0, note=f"{len(found)} of 3 criteria find it flowing full")
-    change = thrust / performance.si("thrust") - 1.0
+    change = _change(performance.si("thrust"), thrust)
     return Price("separated flow", 0.0, change, change, note="middle of three criteria, an estimate")
 
 

@@ -175,7 +175,14 @@ def _origin(entry: Assumption) -> str:
 
 def _line(entry: Assumption) -> str:
     reason = next((price.note for price in entry.prices if price.note), "")
-    return f"{entry.statement}{_origin(entry)}{f' Not priced: {reason}.' if reason else ''}"
+    return f"{entry.statement}{_origin(entry)}{f' Not priced: {_clause(reason)}.' if reason else ''}"
+
+
+def _clause(sentence: str) -> str:
+    """Return a sentence as the end of another one."""
+    first = sentence.split(maxsplit=1)[0]
+    plain = first[1:].islower() or len(first) == 1
+    return (f"{sentence[0].lower()}{sentence[1:]}" if plain else sentence).rstrip(".")
 
 
 def _table(rows: list[tuple[Assumption, Price]]) -> Table:

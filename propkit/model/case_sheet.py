@@ -9,6 +9,7 @@ import numpy as np
 
 from propkit import units
 from propkit.bridge import basis as bases
+from propkit.data.formula import formula_text
 from propkit.model.doubts import Assumption
 from propkit.report import Column, Section, Table, UnitSystem
 from propkit.series import Axis, Bars, Figure, Series
@@ -33,6 +34,12 @@ def parts_of(case: PropellantCase) -> list[tuple[str, Any, Any, float]]:
     return listed
 
 
+def _formula(part: Any) -> str:
+    """Return the formula of a propellant; that of a blend, which is made of shares, to four digits."""
+    row = part.row
+    return formula_text(dict(row.element_counts), 4) if row.components else str(row.formula)
+
+
 def propellant_section(case: PropellantCase, system: UnitSystem) -> Section:
     """Return the propellants as stored."""
     rows = parts_of(case)
@@ -45,7 +52,7 @@ def propellant_section(case: PropellantCase, system: UnitSystem) -> Section:
 
     columns = (
         Column("propellant", "propellant", "", "", 0, tuple(part.label for _, part, _, _ in rows)),
-        Column("formula", "formula", "", "", 0, tuple(part.formula for _, part, _, _ in rows)),
+        Column("formula", "formula", "", "", 0, tuple(_formula(part) for _, part, _, _ in rows)),
         Column("share", "share by mass", "w", "percent", 4, tuple(100.0 * share for *_, share in rows)),
         Column(
             "enthalpy", "enthalpy", "h", energy_unit, 6,

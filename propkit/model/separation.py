@@ -213,7 +213,8 @@ def section(performance: Performance, system: UnitSystem) -> Section | None:
     note = "From tests of cones and bells, good to some 20 %. "
     note += "Separated thrust is an estimate: the wall beyond takes ambient pressure. " if any(entry.separates for entry in found) else ""
     note += SIDE_LOADS if any(entry.separates for entry in found) else "Flows full from: altitude of the standard atmosphere."
-    title = f"Separation at {performance.input_text('ambient')}"
+    place = performance.input_text("ambient")
+    title = f"Separation {'in' if place == 'vacuum' else 'at'} {place}"
     return Section("separation", "Separation", table=Table("separation", title, "criterion", tuple(entry.title for entry in found), tuple(columns), note))
 
 

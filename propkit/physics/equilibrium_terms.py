@@ -18,6 +18,9 @@ Integers = npt.NDArray[np.intp]
 LOWEST_TEMPERATURE: Final = 10.0
 """Lowest temperature [K] searched; heat capacities are held below the tables."""
 
+LOWEST_HELD_TEMPERATURE: Final = 1.0
+"""Lowest temperature [K] of a gas of held composition, whose heat capacity is constant there: monatomic gas cools that far."""
+
 
 @dataclass(slots=True, eq=False)
 class Unknowns:

@@ -16,7 +16,7 @@ from propkit.constants import GAS_CONSTANT
 from propkit.physics import gas_dynamics
 from propkit.physics.arrays import Array, magnitude
 from propkit.physics.equilibrium import CONVERGED, NOT_CONVERGED, OUT_OF_RANGE
-from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE, Integers
+from propkit.physics.equilibrium_terms import LOWEST_HELD_TEMPERATURE, Integers
 from propkit.physics.expansion_shifting import Shifting
 from propkit.physics.expansion_state import FlowState, choose, take_cases, velocity
 from propkit.physics.thermodynamics import SpeciesTable, powers
@@ -184,7 +184,7 @@ class Frozen:
                 break
         gas = self.mixture(x)
         status = np.where(size <= _ACCEPTED, CONVERGED, NOT_CONVERGED)
-        outside = (gas.temperature < LOWEST_TEMPERATURE) | (gas.temperature > self.table.temperature_high.max())
+        outside = (gas.temperature < LOWEST_HELD_TEMPERATURE) | (gas.temperature > self.table.temperature_high.max())
         return self._state(gas, np.where(outside, OUT_OF_RANGE, status), steps, size)
 
     def _state(self, gas: Mixture, status: Integers, steps: Integers, residual: Array) -> FlowState:

@@ -9,7 +9,7 @@ import numpy as np
 from propkit.constants import GAS_CONSTANT
 from propkit.physics.arrays import Array, Values, magnitude, values
 from propkit.physics.equilibrium import CONVERGED, NOT_CONVERGED, OUT_OF_RANGE, EquilibriumState
-from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE
+from propkit.physics.equilibrium_terms import LOWEST_HELD_TEMPERATURE
 from propkit.physics.thermodynamics import SpeciesTable
 
 _ITERATIONS: Final = 80
@@ -52,7 +52,7 @@ def held_state(table: SpeciesTable, amounts: Array, pressure: Values, temperatur
     logs = logs + np.log(p / table.reference_pressure)[:, None]
     heat = GAS_CONSTANT * np.sum(amounts * properties.heat_capacity, axis=1)
     exponent = heat / (heat - GAS_CONSTANT * moles)
-    outside = ~((t >= LOWEST_TEMPERATURE) & (t <= table.temperature_high.max()))
+    outside = ~((t >= LOWEST_HELD_TEMPERATURE) & (t <= table.temperature_high.max()))
     return EquilibriumState(
         pressure=p,
         temperature=t,

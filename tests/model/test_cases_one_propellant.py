@@ -299,3 +299,16 @@ def test_a_study_in_one_batch_gives_the_numbers_of_the_objects(case):
         one = perf.replace({"chamber.pressure": pressure})
         for name in ("thrust", "specific_impulse", "mass_flow", "density_impulse"):
             assert getattr(row, name) == pytest.approx(one.si(name), rel=1e-9)
+
+
+@pytest.mark.parametrize("gas", ["GHe", "argon", "neon"])
+@pytest.mark.parametrize("ratio", [20.0, 100.0, 400.0])
+def test_a_monatomic_cold_gas_expands_as_far_as_the_area_law_says(gas, ratio):
+    # closed form of NACA Report 1135, equations 43, 44 and 80, for an exponent of 5/3; below 200 K the data hold cp, which is
+    # exact for a monatomic gas
+    case = pk.PropellantCase.cold_gas(gas, temperature="293 K")
+    nozzle = pk.Nozzle(pk.Chamber(case, pressure="10 bar"), area_ratio=ratio, throat_diameter="1 mm")
+    mach = nozzle.exit.mach
+    temperature = 293.0 / (1.0 + mach**2 / 3.0)
+    assert nozzle.exit.si("temperature") == pytest.approx(temperature, rel=1e-9)
+    assert ((1.0 + mach**2 / 3.0) / (4.0 / 3.0)) ** 2 / mach == pytest.approx(ratio, rel=1e-9)

@@ -112,3 +112,28 @@ def test_a_text_sheet_fits_a_terminal_of_80_columns():
     for sheet in sheets:
         widest = max(str(sheet).splitlines(), key=lambda line: sum(not 0x300 <= ord(letter) < 0x370 for letter in line))
         assert sum(not 0x300 <= ord(letter) < 0x370 for letter in widest) <= 80, widest
+
+
+def test_prices_have_the_sign_of_the_change_where_the_thrust_is_negative(perf):
+    worse = perf.replace({"chamber.pressure": "0.3 MPa", "nozzle.area_ratio": 60})
+    assert worse.si("thrust") < 0.0
+    efficiency = next(p for p in worse.assumptions.of("cstar-efficiency").prices if p.alternative == "0.97")
+    # 0.97 of the characteristic velocity takes more mass flow for the same (negative) thrust: a smaller negative impulse
+    assert efficiency.specific_impulse == pytest.approx(0.03, rel=1e-9)
+    assert worse.assumptions.of("full-flow").prices[0].thrust > 1.0
+
+
+def test_a_saturation_beyond_all_bounds_is_said_in_words():
+    case = pk.PropellantCase.cold_gas("xenon", temperature="200 K")
+    nozzle = pk.Nozzle(pk.Chamber(case, pressure="1 kPa"), area_ratio=200, throat_diameter="30 um")
+    sheet = " ".join(str(pk.Performance(nozzle, ambient="vacuum")).split())
+    assert "over a million times its vapour pressure" in sheet
+    assert "throat.." not in sheet
+    assert "Separation in vacuum" in str(pk.Performance(nozzle, ambient="vacuum").report().sections)
+
+
+def test_the_formula_of_a_blend_is_shown_to_four_digits():
+    blend = pk.blend({"ethanol": 0.5, "water": 0.2, "RP-1": 0.3})
+    table = next(s.table for s in pk.PropellantCase("LOX", blend, mixture_ratio=2).sections("SI") if s.name == "propellants")
+    formula = next(column for column in table.columns if column.name == "formula").values[1]
+    assert all(len(part.lstrip("CHO").replace(".", "").lstrip("0")) <= 4 for part in formula.split())
