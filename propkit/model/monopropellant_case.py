@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from typing import ClassVar
 
 import numpy as np
@@ -12,10 +13,12 @@ from propkit.data import propellants as library
 from propkit.errors import Problem
 from propkit.model import case_inputs
 from propkit.model.base import Outcome
+from propkit.model.conditions import condition
 from propkit.model.declare import Bounds, CustomInput, NumberInput, QuantityInput, QuantityResult
 from propkit.model.doubts import Assumption, Doubt
 from propkit.model.propellant import Propellant, as_propellant
 from propkit.model.propellant_case import CaseArrays, PropellantCase
+from propkit.report import Step
 
 _TWO_ONLY = (
     "oxidizer", "fuel", "mixture_ratio", "equivalence_ratio", "mixture_ratio_by_volume", "oxidizer_percent", "oxidizer_temperature",
@@ -115,6 +118,18 @@ class MonopropellantCase(PropellantCase):
             code="ammonia",
             about="propellant",
         )
+
+    def conditions(self, name: str) -> Iterator[Step]:
+        """Yield the conditions that a result of the case satisfies."""
+        row = self._values["propellant"].row
+        stored = self.held.propellant.density
+        if name == "bulk_density" and row.components and row.density_source != "as given":
+            volume = sum(share / part.density for part, share in row.components) * row.density / float(stored)
+            text, latex = "sum of w/rho over the ingredients = 1 / bulk density", r"\sum w/\rho = 1/\rho_b"
+            yield condition(name, "volume of a kilogram [m3]", text, latex, volume, 1.0 / self.si(name), "definition")
+        elif name == "bulk_density":
+            text, latex = "density as stored = bulk density", r"\rho = \rho_b"
+            yield condition(name, "density [kg/m3]", text, latex, float(stored), self.si(name), "definition")
 
     def input_text(self, name: str) -> str:
         """Return the propellant as its label."""

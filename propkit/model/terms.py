@@ -14,7 +14,8 @@ from propkit.constants import GAS_CONSTANT
 from propkit.data.atomic_weights import ATOMIC_WEIGHTS
 from propkit.model import losses
 from propkit.model.conditions import condition, element_conditions
-from propkit.physics import stoichiometry
+from propkit.model.wall_conditions import wall_conditions
+from propkit.physics import gas_dynamics, stoichiometry
 from propkit.physics.expansion_parallel import Parallel
 from propkit.report import Step
 
@@ -214,10 +215,11 @@ def conditions(link: Any, name: str) -> Iterator[Step]:
         yield from link.conditions(name)
         return
     if link.kind == "chamber":
-        if link.upstream is not None:
-            yield from _chamber_conditions(link, name)
+        yield from _chamber_conditions(link, name) if link.upstream is not None else _gas_conditions(link, name)
         return
     nozzle = link if link.kind == "nozzle" else link.nozzle
+    if link.kind == "nozzle":
+        yield from wall_conditions(nozzle, name)
     if link.kind == "performance" and name.startswith(("thrust", "specific_impulse")) and not name.endswith("_vacuum"):
         yield from losses.conditions(link)
     if name in ("mass_flow", "throat_area", "throat_diameter", "characteristic_velocity"):
@@ -263,6 +265,31 @@ def _chamber_conditions(chamber: Any, name: str) -> Iterator[Step]:
         "characteristic_velocity",
     ):
         yield from _combustor_conditions(held)
+
+
+def _gas_conditions(chamber: Any, name: str) -> Iterator[Step]:
+    """Yield what the results of a gas given outright satisfy."""
+    held = chamber.held
+    exponent, rest = float(held.isentropic_exponent[0]), float(held.stagnation_pressure[0])
+    if name == "characteristic_velocity":
+        closed = float(gas_dynamics.characteristic_velocity(chamber.si("temperature"), chamber.si("gas_constant"), exponent))
+        yield condition(
+            "cstar", "characteristic velocity [m/s]", "c* = sqrt(R T0) over the choked mass flux function of the exponent",
+            r"c^{*} = \sqrt{R T_0} / \Gamma(\gamma)", chamber.si(name), closed, "sutton-biblarz",
+        )  # fmt: skip
+    if name not in ("stagnation_pressure", "pressure"):
+        return
+    ratio, face = float(held.contraction_ratio[0]), float(held.injector_pressure[0])
+    if not np.isfinite(ratio):
+        text = "p0 = pressure of the gas at rest in a wide chamber"
+        yield condition("stagnation_pressure", "stagnation pressure [Pa]", text, r"p_0 = p_c", rest, face, "definition")
+        return
+    mach = float(gas_dynamics.mach_from_area_ratio(ratio, exponent, "subsonic"))
+    static = rest * float(gas_dynamics.pressure_ratio(mach, exponent))
+    yield condition(
+        "combustor_momentum", f"momentum from the face to the nozzle inlet, at Mach {mach:.5g} [Pa]", "p (1 + g M^2) = p at the face",
+        r"p (1 + \gamma M^2) = p_{inj}", static * (1.0 + exponent * mach**2), face, "conservation",
+    )  # fmt: skip
 
 
 def _combustor_conditions(held: Any) -> Iterator[Step]:
@@ -374,6 +401,8 @@ def _stream_conditions(held: Any, there: Any, state: str) -> Iterator[Step]:
             f"{name}_entropy", f"entropy of the {name} at the {state} [J/(kg K)]", "s = entropy of the reservoir", r"s = s_0",
             float(each.entropy[place]), float(rest.entropy[place]), "conservation", gas_constant,
         )  # fmt: skip
+    if not float(there.mass_flux[0]) > 0.0:
+        return
     area = float((shares / (each.density * each.velocity)).sum())
     yield condition(
         "areas", f"area for a unit of mass flow at the {state} [m2 s/kg]", "sum of w/(rho u) over the streams = 1/(rho u)",

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 from propkit.constants import GAS_CONSTANT
 from propkit.errors import InputError, NotAvailableError
 from propkit.model import paths, sheet, terms
+from propkit.physics.expansion_parallel import Parallel
 from propkit.physics.relations import RELATIONS
 from propkit.report import Report, Row, Step, UnitSystem
 
@@ -114,7 +115,7 @@ def state_steps(link: Any, state: str, quantity: str) -> Iterator[Step]:
         raise NotAvailableError(f"the {state} state has no {quantity}")
     values = {name: getattr(link, state).si(name) for name in getattr(link, state).names()}
     simple = {"mach": "mach", "sound_speed": "sound_speed", "density": "ideal_gas_density"}
-    if quantity in simple:
+    if quantity in simple and (quantity == "mach" or not isinstance(link.held.isentrope, Parallel)):
         there = dict(values)
         if "molar_mass" in there:
             there["gas_constant"] = GAS_CONSTANT / there["molar_mass"]
