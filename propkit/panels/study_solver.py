@@ -20,7 +20,7 @@ from propkit.study.sweep_work import Part, spanning
 
 Array = npt.NDArray[np.float64]
 
-LIVE: Final = {"quick": 2500, "damped": 400, "one by one": 16}
+LIVE: Final = {"quick": 2500, "damped": 225, "one by one": 16}
 """Designs of a map while a slider moves: by the quick engine, by the damped solver, and object by object."""
 
 SETTLED: Final = {"quick": 40_000, "damped": 5_000, "one by one": 100}
