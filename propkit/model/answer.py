@@ -45,6 +45,11 @@ class Answer:
             raise NotAvailableError(f"the {self.kind.lower()} has no table", name="frame")
         return self.table.copy()  # type: ignore[no-any-return]
 
+    @property
+    def warnings(self) -> tuple[str, ...]:
+        """What to doubt about the answer, in words."""
+        return self.doubts
+
     def si(self, name: str) -> float:
         """Return a value as an SI float; NotAvailableError with the reason where there is none."""
         if name not in self.values:

@@ -41,9 +41,7 @@ def heat_flux(
     nozzle: Nozzle, wall_temperature: QuantityLike, coolant: str | None, coolant_pressure: QuantityLike | None, coolant_limit: QuantityLike | None
 ) -> Answer:
     """Return the heat flux along the contour of a nozzle; see `Nozzle.heat_flux`."""
-    wall_kelvin = units.to_si(wall_temperature, "K", "wall_temperature")
-    if not 20.0 <= wall_kelvin <= 6000.0:
-        raise InputError(Problem("wall_temperature", as_text(wall_temperature), "20 K to 6000 K"))
+    wall_kelvin, jacket, limit = _read(nozzle, wall_temperature, coolant, coolant_pressure, coolant_limit)
     geometry = wall_of(nozzle)
     gas = gas_at_rest(nozzle)
     drawn, nodes = walls.draw(geometry.segments, POINTS), walls.quadrature(geometry.segments)
@@ -74,7 +72,7 @@ def heat_flux(
         absent["coolant_temperature_rise"] = 'no coolant was named; coolant="fuel" takes a propellant'
     else:
         given["coolant"] = coolant
-        doubts += _coolant(nozzle, coolant, coolant_pressure, coolant_limit, load, values, given)
+        doubts += _coolant(nozzle, coolant, jacket, limit, load, values, given)
     frame = _frame(nozzle, drawn, along)
     return Answer(
         kind="Heat flux",
@@ -90,6 +88,39 @@ def heat_flux(
         drawn=(partial(_figure, frame),),
         shown=partial(_sections, frame, geometry, nozzle),
     )
+
+
+def _read(
+    nozzle: Nozzle, wall_temperature: Any, coolant: str | None, pressure: Any, limit: Any
+) -> tuple[float, float | None, float | None]:
+    """Return wall temperature [K], jacket pressure [Pa] and limit [K] of the coolant; every problem in one error."""
+    problems: list[Problem] = []
+    wanted = (
+        ("wall_temperature", wall_temperature, "K", 20.0, 6000.0),
+        ("coolant_pressure", pressure, "Pa", 100.0, 1e9),
+        ("coolant_limit", limit, "K", 1.0, 6000.0),
+    )
+    read: list[float | None] = []
+    for name, given, unit, low, high in wanted:
+        value = None
+        if given is not None or name == "wall_temperature":
+            try:
+                value = units.to_si(given, unit, name)
+                if not low <= value <= high:
+                    problems.append(Problem(name, as_text(given), f"{low:g} {unit} to {high:g} {unit}"))
+            except InputError as error:
+                problems += error.problems
+            if coolant is None and name != "wall_temperature":
+                problems.append(Problem(name, as_text(given), "left out without a coolant", 'coolant="fuel" names one.'))
+        read.append(value)
+    case = nozzle.chamber.case_or_none
+    roles = () if case is None else tuple(role for role in case.roles if role != "gas")
+    if coolant is not None and coolant not in roles:
+        allowed = " or ".join(map(repr, roles)) or "left out: the gas has no propellants"
+        problems.append(Problem("coolant", as_text(coolant), allowed, "The coolant is one of the propellants."))
+    if problems or read[0] is None:
+        raise InputError(problems)
+    return read[0], read[1], read[2]
 
 
 def _along(nozzle: Nozzle, gas: GasAtRest, wall: walls.Wall, wall_temperature: float) -> dict[str, Array]:
@@ -133,27 +164,23 @@ def _power(nozzle: Nozzle, gas: GasAtRest) -> float:
 
 
 def _coolant(
-    nozzle: Nozzle, coolant: str, pressure: Any, limit: Any, load: float, values: dict[str, float], given: dict[str, float | str]
+    nozzle: Nozzle, coolant: str, pressure: float | None, limit: float | None, load: float, values: dict[str, float], given: dict[str, float | str]
 ) -> Iterator[str]:
     """Add what the coolant takes up to `values` and `given`, and yield doubts."""
     from propkit.bridge.coolant import warmed
 
-    case = nozzle.chamber.case_or_none
-    roles = () if case is None else tuple(role for role in case.roles if role != "gas")
-    if case is None or coolant not in roles:
-        allowed = " or ".join(map(repr, roles)) or "left out: the gas has no propellants"
-        raise InputError(Problem("coolant", as_text(coolant), allowed, "The coolant is one of the propellants."))
+    case: Any = nozzle.chamber.case_or_none
     share = 1.0
     if case.has("mixture_ratio") and coolant in ("oxidizer", "fuel"):
         ratio = case.si("mixture_ratio")
-        share = (ratio if coolant == "oxidizer" else 1.0) / (1.0 + ratio)
+        share = (1.0 - case.additive_fraction) * (ratio if coolant == "oxidizer" else 1.0) / (1.0 + ratio)
     flow = share * nozzle.si("mass_flow")
     row = case._values[coolant].row
     start = case._values.get(f"{coolant}_temperature") or row.temperature
-    jacket = nozzle.chamber.si("pressure") if pressure is None else units.to_si(pressure, "Pa", "coolant_pressure")
+    jacket = nozzle.chamber.si("pressure") if pressure is None else pressure
     after = warmed(row, start, jacket, load / flow)
     values |= {"coolant_mass_flow": flow, "coolant_pressure": jacket, "coolant_temperature_rise": after.temperature - start, "coolant_temperature": after.temperature}
-    known = after.boiling_temperature if limit is None else units.to_si(limit, "K", "coolant_limit")
+    known = after.boiling_temperature if limit is None else limit
     label = case._values[coolant].label
     if known is None:
         yield f"No limit of {label} as a coolant is known here (it has no boiling point at {jacket / 1e6:.3g} MPa, or no equation of state); give coolant_limit, for instance where it cokes or decomposes."

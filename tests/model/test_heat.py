@@ -118,3 +118,43 @@ def test_a_gas_given_outright_takes_the_estimates_of_bartz():
     heat = nozzle.heat_flux("800 K")
     assert heat.si("prandtl_number") == pytest.approx(4.0 * 1.2 / (9.0 * 1.2 - 5.0), rel=1e-12)
     assert any("estimates" in doubt for doubt in heat.doubts)
+
+
+@pytest.fixture(scope="module")
+def watered() -> pk.Nozzle:
+    case = pk.PropellantCase("LOX", "ethanol-75", mixture_ratio=1.3)
+    chamber = pk.Chamber(case, pressure="2 MPa", contraction_ratio=4, characteristic_length="1 m")
+    return pk.Nozzle(chamber, area_ratio=8, throat_diameter="60 mm", contour=pk.Bell())
+
+
+def test_a_blend_cools_by_what_its_ingredients_take_up(watered):
+    # mass-weighted enthalpies of ethanol and water by CoolProp's high-level interface, without heat of mixing
+    props = pytest.importorskip("CoolProp.CoolProp").PropsSI
+    found = watered.heat_flux(wall_temperature="2000 K", coolant="fuel", coolant_pressure="30 bar", coolant_limit="320 K")
+    ends = (298.15, found.si("coolant_temperature"))
+    taken = sum(
+        share * (props("H", "T", ends[1], "P", 3e6, fluid) - props("H", "T", ends[0], "P", 3e6, fluid))
+        for fluid, share in (("Ethanol", 0.75), ("Water", 0.25))
+    )
+    assert taken == pytest.approx(found.si("heat_load") / found.si("coolant_mass_flow"), rel=1e-3)
+    assert any("reaches its limit at 320 K" in text for text in found.warnings)
+    boiling = min(props("T", "P", 3e6, "Q", 0, fluid) for fluid in ("Ethanol", "Water"))
+    hot = watered.heat_flux(wall_temperature="600 K", coolant="fuel", coolant_pressure="30 bar")
+    assert any(f"boils at {boiling:.5g} K" in text for text in hot.warnings)
+
+
+def test_every_problem_of_a_heat_flux_is_listed_and_no_argument_is_ignored(watered):
+    with pytest.raises(pk.InputError) as caught:
+        watered.heat_flux(wall_temperature="x", coolant="water", coolant_pressure="-3 Pa", coolant_limit="1 kg")
+    assert {problem.name for problem in caught.value.problems} == {
+        "wall_temperature", "coolant", "coolant_pressure", "coolant_limit",
+    }  # fmt: skip
+    with pytest.raises(pk.InputError, match="left out without a coolant"):
+        watered.heat_flux(wall_temperature="600 K", coolant_pressure="3 MPa")
+
+
+def test_additives_are_no_part_of_the_coolant_flow():
+    case = pk.PropellantCase("LOX", "RP-1", mixture_ratio=2.4, additives={"water": 0.1})
+    nozzle = pk.Nozzle(pk.Chamber(case, pressure="4 MPa"), area_ratio=8, throat_diameter="0.1 m", contour=pk.Bell())
+    found = nozzle.heat_flux(wall_temperature="800 K", coolant="fuel", coolant_limit="700 K")
+    assert found.si("coolant_mass_flow") == pytest.approx(pk.Performance(nozzle, ambient="vacuum").si("fuel_mass_flow"))
