@@ -12,6 +12,8 @@ from propkit.errors import InputError, Problem
 from propkit.plots.study import allowed, map_figure
 from propkit.report import UnitSystem
 from propkit.series import Mark
+from propkit.study.sweep_figures import MOST_CURVES, shown_values
+from propkit.units import shown_unit
 
 Array = npt.NDArray[np.float64]
 
@@ -40,7 +42,8 @@ def figures_of(session: Any, at: int, units: UnitSystem, picked: dict[str, Any])
     title = titles[min(at, len(titles) - 1)]
     result = plan.result
     if title == CURVES:
-        return (result.curves(plan.x.path, plan.result_name, by=None if plan.y is None else plan.y.path, units=units),)
+        drawn = result.curves(plan.x.path, plan.result_name, by=None if plan.y is None else plan.y.path, units=units)
+        return (replace(drawn, layers=(*drawn.layers, _best_on_curves(plan, units))),)
     options: dict[str, Any] = {"x": plan.x.path, "y": plan.y.path, "limits": plan.limits, "minimum": plan.minimum, "units": units}
     if title != MAP:
         pinned = session.pins[session.baseline]
@@ -63,6 +66,17 @@ def _picked(result: Any, plan: Any, picked: dict[str, Any], units: UnitSystem) -
         places.append(value * factor + offset if inside and value is not None else float("nan"))
     there = bool(np.isfinite(places).all())
     return Mark(*(places if there else (float("nan"), float("nan"))), "opened" if there else "", colour="ink")
+
+
+def _best_on_curves(plan: Any, units: UnitSystem) -> Mark:
+    """Return the mark of the best design on its curve; nowhere where there is none, or its curve is not among those drawn."""
+    result, row = plan.result, best_row(plan)
+    shown = plan.y is None or len(plan.y) <= MOST_CURVES
+    if row is None or not shown:
+        return Mark(float("nan"), float("nan"), "")
+    x, value = (float(shown_values(result, name, units)[row]) for name in (plan.x.path, plan.result_name))
+    unit = shown_unit(result.display(plan.result_name, units)[0])
+    return Mark(x, value, f"{'smallest' if plan.minimum else 'largest'} {value:.5g}{f' {unit}' if unit else ''}")
 
 
 def _on_one_grid(plan: Any, pinned: Any) -> tuple[Any, Any]:

@@ -326,7 +326,8 @@ def test_choices_make_curves() -> None:
     axes = {"nozzle.flow": ["shifting", "frozen"], RATIO: RATIOS}
     panel = pk.Study(built(), axes).panel("specific_impulse")
     assert panel.figure_titles() == ["Curves"]
-    lines = panel.figures()[0].layers
+    *lines, mark = panel.figures()[0].layers
+    assert (mark.x, mark.y) == (panel.best.case.mixture_ratio, pytest.approx(panel.best.specific_impulse.magnitude, rel=1e-8))
     assert [line.label for line in lines] == ["shifting", "frozen"]
     for line in lines:
         alone = pk.Study(built().replace({"nozzle.flow": line.label}), {RATIO: RATIOS}).run(progress=False)
