@@ -11,7 +11,7 @@ from propkit.bridge.basis import load_basis
 from propkit.chain import outcome, warnings
 from propkit.chain.case import Mixture
 from propkit.constants import GAS_CONSTANT
-from propkit.physics import combustor, equilibrium, expansion, gas_dynamics, held_gas
+from propkit.physics import combustor, equilibrium, expansion, held_gas, ideal_nozzle
 from propkit.physics.arrays import Array, Values, values
 from propkit.physics.equilibrium import EquilibriumState
 from propkit.physics.expansion import FlowState
@@ -271,7 +271,7 @@ def given_gas(
     )
     p, t, r, gamma, ratio = (np.array(array) for array in arrays)
     injector, stagnation = combustor.constant_property_pressures(p, gamma, ratio, pressure_at)
-    cstar = gas_dynamics.characteristic_velocity(t, r, gamma)
+    cstar = ideal_nozzle.characteristic_velocity(t, r, gamma)
     return GivenGas(gamma, r, t, injector, stagnation, ratio, np.asarray(cstar))
 
 

@@ -15,7 +15,7 @@ from propkit.data.atomic_weights import ATOMIC_WEIGHTS
 from propkit.model import losses
 from propkit.model.conditions import condition, element_conditions
 from propkit.model.wall_conditions import wall_conditions
-from propkit.physics import gas_dynamics, stoichiometry
+from propkit.physics import gas_dynamics, ideal_nozzle, stoichiometry
 from propkit.physics.expansion_parallel import Parallel
 from propkit.report import Step
 
@@ -272,7 +272,7 @@ def _gas_conditions(chamber: Any, name: str) -> Iterator[Step]:
     held = chamber.held
     exponent, rest = float(held.isentropic_exponent[0]), float(held.stagnation_pressure[0])
     if name == "characteristic_velocity":
-        closed = float(gas_dynamics.characteristic_velocity(chamber.si("temperature"), chamber.si("gas_constant"), exponent))
+        closed = float(ideal_nozzle.characteristic_velocity(chamber.si("temperature"), chamber.si("gas_constant"), exponent))
         yield condition(
             "cstar", "characteristic velocity [m/s]", "c* = sqrt(R T0) over the choked mass flux function of the exponent",
             r"c^{*} = \sqrt{R T_0} / \Gamma(\gamma)", chamber.si(name), closed, "sutton-biblarz",

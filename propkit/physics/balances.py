@@ -10,7 +10,7 @@ import numpy as np
 
 from propkit.constants import GAS_CONSTANT
 from propkit.physics.arrays import Array, Values, values
-from propkit.physics.gas_dynamics import choked_mass_flux
+from propkit.physics.ideal_nozzle import choked_mass_flux
 
 
 def choked_mass_flow(

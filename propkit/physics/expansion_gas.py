@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from propkit.constants import GAS_CONSTANT
-from propkit.physics import gas_dynamics
+from propkit.physics import gas_dynamics, ideal_nozzle
 from propkit.physics.arrays import Array
 from propkit.physics.equilibrium import CONVERGED, OUT_OF_RANGE
 from propkit.physics.equilibrium_terms import Integers
@@ -50,7 +50,7 @@ class PerfectGas:
 
     def at_mass_flux(self, mass_flux: Array, at_throat: FlowState, supersonic: bool) -> FlowState:
         """Return the state at a mass flux [kg/(m2 s)] on one side of the throat; status 2 above the choked one."""
-        choked = gas_dynamics.choked_mass_flux(self.pressure, self.temperature, self.gas_constant, self.gamma)
+        choked = ideal_nozzle.choked_mass_flux(self.pressure, self.temperature, self.gas_constant, self.gamma)
         ratio = choked / mass_flux
         ratio = np.where(np.abs(ratio - 1.0) < 1e-12, 1.0, ratio)
         good = (ratio >= 1.0) & np.isfinite(ratio)

@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from types import MappingProxyType
 from typing import Any
 
-from propkit.physics import balances, gas_dynamics, stoichiometry, thrust
+from propkit.physics import balances, gas_dynamics, ideal_nozzle, stoichiometry, thrust
 from propkit.physics.relation import TERMS, Relation, Term, relation
 from propkit.physics.relations_delivered import DELIVERED
 
@@ -217,13 +217,13 @@ _LIST = (
         "naca1135",
     ),
     relation(
-        "choked_mass_flux_function", Term(r"\Gamma"), _CHOKED, gas_dynamics.choked_mass_flux_function, "sutton-biblarz"
+        "choked_mass_flux_function", Term(r"\Gamma"), _CHOKED, ideal_nozzle.choked_mass_flux_function, "sutton-biblarz"
     ),
     relation(
         "choked_mass_flux",
         TERMS["throat_mass_flux"],
         f"{{stagnation_pressure}} / sqrt({{gas_constant}} * {{stagnation_temperature}}) * {_CHOKED}",
-        gas_dynamics.choked_mass_flux,
+        ideal_nozzle.choked_mass_flux,
         "sutton-biblarz",
     ),
     relation(
@@ -237,7 +237,7 @@ _LIST = (
         "characteristic_velocity_constant_properties",
         TERMS["characteristic_velocity"],
         f"sqrt({{gas_constant}} * {{stagnation_temperature}}) / ({_CHOKED})",
-        gas_dynamics.characteristic_velocity,
+        ideal_nozzle.characteristic_velocity,
         "sutton-biblarz",
     ),
     relation(
@@ -245,7 +245,7 @@ _LIST = (
         TERMS["velocity"],
         "sqrt(2 * {isentropic_exponent} / ({isentropic_exponent} - 1) * {gas_constant} * {stagnation_temperature}"
         " * (1 - {pressure_ratio} ** (({isentropic_exponent} - 1) / {isentropic_exponent})))",
-        gas_dynamics.exhaust_velocity,
+        ideal_nozzle.exhaust_velocity,
         "sutton-biblarz",
     ),
     relation(
@@ -255,7 +255,7 @@ _LIST = (
         " * (2 / ({isentropic_exponent} + 1)) ** (({isentropic_exponent} + 1) / ({isentropic_exponent} - 1))"
         " * (1 - {exit_pressure_ratio} ** (({isentropic_exponent} - 1) / {isentropic_exponent})))"
         " + ({exit_pressure_ratio} - {ambient_pressure_ratio}) * {area_ratio}",
-        gas_dynamics.thrust_coefficient,
+        ideal_nozzle.thrust_coefficient,
         "sutton-biblarz",
     ),
     # nozzle and performance

@@ -16,7 +16,7 @@ from propkit.chain import case as case_stage
 from propkit.chain import chamber as chamber_stage
 from propkit.chain import profile
 from propkit.constants import STANDARD_GRAVITY
-from propkit.physics import atmosphere, gas_dynamics, separation, thrust
+from propkit.physics import atmosphere, gas_dynamics, ideal_nozzle, separation, thrust
 from propkit.report import UnitSystem
 from propkit.series import Axis, Figure, Line, Mark, Rule, Series
 
@@ -142,7 +142,7 @@ def gas_figure(chamber: Any, system: UnitSystem) -> Figure:
     pressure = chamber.si("stagnation_pressure")
     throat = float(gas_dynamics.pressure_ratio(1.0, gamma))
     ratios = np.geomspace(1e-3, 0.999, POINTS)
-    speeds = gas_dynamics.exhaust_velocity([*ratios, throat], rest, gas, gamma)
+    speeds = ideal_nozzle.exhaust_velocity([*ratios, throat], rest, gas, gamma)
     y = shown("velocity", speeds, system)
     x = shown("pressure", [*(ratios * pressure), throat * pressure], system)
     line = Line(Series(x.label, x.values[:-1], x.unit, "p"), Series(y.label, y.values[:-1], y.unit, "u"), "accent", label="velocity")

@@ -11,7 +11,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from propkit.errors import InputError
-from propkit.physics import boundary_layer, contour, gas_dynamics, losses, wall
+from propkit.physics import boundary_layer, contour, gas_dynamics, ideal_nozzle, losses, wall
 
 RATIOS = st.floats(0.5, 1.0, exclude_min=True)
 
@@ -142,7 +142,7 @@ def nozzle_flow(throat_radius: float, pressure: float, ratio: float, count: int 
     flow = boundary_layer.WallFlow(run, shape.r, velocity, density, temperature, viscosity, adiabatic, cooled)
     theta = boundary_layer.momentum_thickness(flow)[-1]
     drag = boundary_layer.boundary_layer_drag(shape.r[-1], shape.angle[-1], density[-1], velocity[-1], theta)
-    coefficient = gas_dynamics.thrust_coefficient(1.2, static[-1] / pressure, ratio)
+    coefficient = ideal_nozzle.thrust_coefficient(1.2, static[-1] / pressure, ratio)
     return float(drag), float(coefficient) * pressure * math.pi * throat_radius**2
 
 

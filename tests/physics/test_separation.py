@@ -10,7 +10,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from propkit.errors import InputError
-from propkit.physics import gas_dynamics, separation
+from propkit.physics import gas_dynamics, ideal_nozzle, separation
 
 PRESSURES = st.floats(1e2, 1e6)
 
@@ -72,8 +72,8 @@ def test_separated_thrust_exceeds_the_full_flowing_one() -> None:
     mach = np.linspace(1.0, 5.0, 800)
     g, p0, ambient, throat = 1.2, 5e6, 101_325.0, 0.01
     pressure, area = p0 * gas_dynamics.pressure_ratio(mach, g), throat * gas_dynamics.area_ratio(mach, g)
-    velocity = gas_dynamics.exhaust_velocity(pressure / p0, 3300.0, 360.0, g)
-    flow = float(gas_dynamics.choked_mass_flux(p0, 3300.0, 360.0, g)) * throat
+    velocity = ideal_nozzle.exhaust_velocity(pressure / p0, 3300.0, 360.0, g)
+    flow = float(ideal_nozzle.choked_mass_flux(p0, 3300.0, 360.0, g)) * throat
     share = separation.separation_share(separation.CRITERIA["schmucker"], pressure, mach, ambient, p0)
     columns = [separation.at_share(share, column) for column in (velocity, pressure, area)]
     estimate = float(separation.separated_thrust(flow, columns[0], columns[1], ambient, columns[2]))
