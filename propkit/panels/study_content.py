@@ -172,7 +172,8 @@ def facts(plan: StudyPlan) -> list[str]:
         more = "when it is let go" if plan.unsettled else "by the code with more values"
         found.append(f"{when}: {_count(wanted)} designs {more}.")
     found += [f"{show.sentence(note.replace('left 0 of them', 'left none'))}." for note in result.notes]
-    if plan.target.chain()[0].kind == "case" and not any("quick engine" in note or "one by one" in note for note in result.notes):
+    kinds = [link.kind for link in plan.target.chain()]
+    if {"case", "chamber"} <= set(kinds) and not any("quick engine" in note or "one by one" in note for note in result.notes):
         found.append("Solved by the damped solver.")
     found += _left_out(plan)
     return found
