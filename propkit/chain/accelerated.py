@@ -1,13 +1,14 @@
 """The quick way through chamber and nozzle for many designs at once; what it cannot keep goes through the plain stages.
 
 The quick engine (`propkit.physics.fast_flow`) solves the same equations as the damped iteration. It serves gases in equilibrium,
-from a chamber of infinite contraction, in shifting, frozen (from the nozzle inlet) and constant-property flow; designs that its guards
+from a chamber of infinite or finite contraction, in shifting, frozen (from the nozzle inlet) and constant-property flow; designs that its guards
 refuse are solved by the plain stages, one by one as it were, and counted.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Callable
+from dataclasses import dataclass, replace
 from functools import lru_cache
 from typing import Any, Final
 
@@ -17,10 +18,12 @@ from propkit.bridge.basis import load_basis
 from propkit.chain import chamber as chamber_stage
 from propkit.chain import nozzle as nozzle_stage
 from propkit.chain.case import Mixture
+from propkit.chain.chamber import Combustion
 from propkit.constants import GAS_CONSTANT
-from propkit.physics import expansion, fast_build, fast_flow
-from propkit.physics.arrays import Array
+from propkit.physics import expansion, fast_build, fast_combustor, fast_flow
+from propkit.physics.arrays import Array, Values, values
 from propkit.physics.expansion import FlowState
+from propkit.physics.fast_combustor import Contracted
 from propkit.physics.fast_flow import Flow, Predictor, Station
 from propkit.physics.fast_frozen import HeldFlow, HeldGas
 from propkit.physics.fast_newton import Kernel
@@ -53,7 +56,10 @@ class Rest:
 
 @dataclass(slots=True, eq=False)
 class Reservoir:
-    """What the plain chamber stage gives of a wide chamber, from the quick engine; `slow` are designs left to the plain stages."""
+    """What the plain chamber stage gives, from the quick engine; `slow` are designs left to the plain stages.
+
+    `again` solves some designs by the plain chamber stage; `contracted` has the nozzle inlet of finite contraction.
+    """
 
     table: SpeciesTable
     atoms: Array
@@ -67,7 +73,8 @@ class Reservoir:
     elements: Array
     log_pressure: Array
     slow: Any
-    mixture: Mixture
+    again: Callable[[Any], Combustion]
+    contracted: Contracted | None = None
     inlet_velocity: Any = None
 
 
@@ -104,29 +111,46 @@ class Accelerator:
             len(mixture.atoms) >= FEWEST
             and mixture.symbols == self.symbols
             and servable(mixture)
-            and not np.isfinite(contraction_ratio).any()
+            and one_kind(contraction_ratio)
         )
 
-    def combust(self, mixture: Mixture, pressure: Array, *, keep: bool = False) -> Reservoir:
+    def combust(
+        self, mixture: Mixture, pressure: Array, *, contraction_ratio: Values = np.inf, pressure_at: str = "injector", keep: bool = False
+    ) -> Reservoir:
         """Return the combustion of a mixture at each pressure [Pa], as the plain chamber stage does; `keep` keeps the composition."""
         table, kernel = _kernel(self.basis, self.symbols)
         elements = np.ascontiguousarray(mixture.atoms.T)
-        log_pressure = np.log(pressure / kernel.reference_pressure)
-        guess, inside = fast_flow.guesses(self.predictor, elements, mixture.enthalpy, log_pressure)
-        flow = fast_flow.chamber_and_throat(kernel, elements, mixture.enthalpy, log_pressure, guess, keep=keep)
-        rest = _rest(flow)
+        contraction = np.array(np.broadcast_to(values(contraction_ratio), pressure.shape))
+        contracted: Contracted | None = None
+        if np.isfinite(contraction).all():
+            contracted = fast_combustor.contracted(
+                kernel, self.predictor, elements, mixture.enthalpy, pressure, contraction, pressure_at, keep=keep
+            )
+            flow, log_pressure, good = contracted.flow, contracted.log_pressure, contracted.good
+            rest, face = _rest(flow.chamber, flow.entropy), _rest(contracted.face, contracted.face_entropy)
+        else:
+            log_pressure = np.log(pressure / kernel.reference_pressure)
+            guess, inside = fast_flow.guesses(self.predictor, elements, mixture.enthalpy, log_pressure)
+            flow = fast_flow.chamber_and_throat(kernel, elements, mixture.enthalpy, log_pressure, guess, keep=keep)
+            rest = face = _rest(flow.chamber, flow.entropy)
+            good = flow.good & inside
         throat = _state(flow.throat, mixture.enthalpy, flow.entropy)
-        slow = np.flatnonzero(~(flow.good & inside))
-        cstar = pressure / throat.mass_flux
+        slow = np.flatnonzero(~good)
+        cstar = rest.pressure / throat.mass_flux
+
+        def again(rows: Any) -> Combustion:
+            return chamber_stage.combust(
+                _some(mixture, rows), self.basis, pressure=pressure[rows], contraction_ratio=contraction[rows], pressure_at=pressure_at
+            )
+
         if slow.size:
-            plain = chamber_stage.combust(_some(mixture, slow), self.basis, pressure=pressure[slow])
-            _put(rest, slow, plain.injector)
-            _put(throat, slow, plain.throat)
+            plain = again(slow)
+            for mine, theirs in ((rest, plain.stagnation), (face, plain.injector), (throat, plain.throat)):
+                _put(mine, slow, theirs)
             cstar[slow] = plain.characteristic_velocity
-        count = len(pressure)
         return Reservoir(
-            table, mixture.atoms, mixture.enthalpy, rest, rest, throat, np.full(count, np.inf), cstar,
-            flow, elements, log_pressure, slow, mixture,
+            table, mixture.atoms, mixture.enthalpy, face, rest, throat, contraction, cstar,
+            flow, elements, log_pressure, slow, again, contracted,
         )  # fmt: skip
 
     def expand(
@@ -139,16 +163,15 @@ class Accelerator:
         if flow == "frozen":
             throat, inlet, exit_state, good = _frozen(reservoir, area_ratio, exit_pressure)
         else:
-            throat, inlet = reservoir.throat, _inlet(reservoir.stagnation, frozen=False)
+            throat, inlet = reservoir.throat, _shifting_inlet(reservoir)
             exit_state, good = self._shifting(reservoir, area_ratio, exit_pressure)
         good[reservoir.slow] = False
         flux = throat.mass_flux
         ratio = flux / exit_state.mass_flux if area_ratio is None else area_ratio
         slow = np.flatnonzero(~good)
         if slow.size:
-            rest = chamber_stage.combust(_some(reservoir.mixture, slow), self.basis, pressure=reservoir.stagnation.pressure[slow])
             plain = nozzle_stage.expand(
-                rest,
+                reservoir.again(slow),
                 flow=flow,
                 freeze_at="chamber" if flow == "frozen" else None,
                 area_ratio=None if area_ratio is None else area_ratio[slow],
@@ -176,8 +199,21 @@ def servable(mixture: Mixture) -> bool:
     return not mixture.condensed and mixture.composition is None and bool((mixture.atoms > 0.0).all())
 
 
+def one_kind(contraction_ratio: Array) -> bool:
+    """Whether all contractions are infinite, or all finite."""
+    finite = np.isfinite(contraction_ratio)
+    return bool(finite.all() or not finite.any())
+
+
 def prepare(
-    mixture: Mixture, basis: str, pressure: Array, *, area_ratio: Array | None = None, exit_pressure: Array | None = None
+    mixture: Mixture,
+    basis: str,
+    pressure: Array,
+    *,
+    area_ratio: Array | None = None,
+    exit_pressure: Array | None = None,
+    contraction_ratio: Array | None = None,
+    pressure_at: str = "injector",
 ) -> Accelerator | None:
     """Return an accelerator for the box of some designs; None where the quick engine does not serve.
 
@@ -191,9 +227,21 @@ def prepare(
         p [Pa].
     area_ratio, exit_pressure : array, optional
         Exit area over effective throat area [1], or exit pressure [Pa], of shifting flow; neither where no exit is wanted.
+    contraction_ratio : array, optional
+        Chamber area over throat area [1]; infinite by default.
+    pressure_at : str
+        Where the pressure holds.
     """
+    elements, enthalpy = np.ascontiguousarray(mixture.atoms.T), mixture.enthalpy
     if not servable(mixture) or not (np.isfinite(pressure) & (pressure > 0.0)).all():
         return None
+    if contraction_ratio is not None and np.isfinite(contraction_ratio).any():
+        if not one_kind(contraction_ratio):
+            return None
+        # the box has to hold the pressure at the face as well as that at rest at the nozzle inlet
+        pressure = np.concatenate(fast_combustor.typical_pressures(pressure, contraction_ratio, pressure_at))
+        elements, enthalpy = np.tile(elements, 2), np.tile(enthalpy, 2)
+        area_ratio, exit_pressure = (None if part is None else np.tile(part, 2) for part in (area_ratio, exit_pressure))
     table, kernel = _kernel(basis, mixture.symbols)
     log_pressure = np.log(pressure / kernel.reference_pressure)
     to, log_exit = "area_ratio", None
@@ -202,7 +250,7 @@ def prepare(
     elif exit_pressure is not None:
         to, log_exit = "exit_pressure", np.log(exit_pressure / pressure)
     with np.errstate(all="ignore"):
-        made = fast_build.build(table, kernel, np.ascontiguousarray(mixture.atoms.T), mixture.enthalpy, log_pressure, log_exit, to)
+        made = fast_build.build(table, kernel, elements, enthalpy, log_pressure, log_exit, to)
     return None if made is None else Accelerator(basis, mixture.symbols, made, to if log_exit is not None else "")
 
 
@@ -216,8 +264,7 @@ def _some(mixture: Mixture, rows: Any) -> Mixture:
     return Mixture(mixture.symbols, mixture.atoms[rows], mixture.enthalpy[rows], mixture.density[rows])
 
 
-def _rest(flow: Flow) -> Rest:
-    chamber = flow.chamber
+def _rest(chamber: Station, entropy: Array) -> Rest:
     gas_constant, cp = GAS_CONSTANT * chamber.moles, chamber.solved.heat_capacity
     exponent = chamber.exponent
     return Rest(
@@ -232,7 +279,7 @@ def _rest(flow: Flow) -> Rest:
         frozen_specific_heat=GAS_CONSTANT * cp,
         sound_speed=np.sqrt(exponent * gas_constant * chamber.temperature),
         enthalpy=np.array(chamber.enthalpy),
-        entropy=np.array(flow.entropy),
+        entropy=np.array(entropy),
         status=np.zeros(len(cp), dtype=np.intp),
     )
 
@@ -277,13 +324,21 @@ def _inlet(rest: Rest, *, frozen: bool) -> FlowState:
     )
 
 
+def _shifting_inlet(reservoir: Reservoir) -> FlowState:
+    """Return the nozzle inlet of flow in equilibrium: at rest, or at the contraction ratio."""
+    found = reservoir.contracted
+    if found is None:
+        return _inlet(reservoir.stagnation, frozen=False)
+    state = _state(found.inlet, reservoir.enthalpy, reservoir.flow.entropy)
+    return replace(state, velocity=np.array(found.inlet_velocity))
+
+
 def _frozen(reservoir: Reservoir, area_ratio: Array | None, exit_pressure: Array | None) -> tuple[FlowState, FlowState, FlowState, Any]:
-    """Return throat, inlet and exit of flow whose composition is that of the gas at rest, and which designs were found."""
-    rest, solved = reservoir.stagnation, reservoir.flow.chamber.solved
-    assert solved.amounts is not None
-    gas = HeldGas(
-        reservoir.table, reservoir.flow.kept, solved.amounts, 1.0 / rest.molar_mass, rest.temperature, rest.pressure, rest.enthalpy
-    )
+    """Return throat, inlet and exit of flow whose composition is that of the nozzle inlet, and which designs were found."""
+    rest, found_inlet = reservoir.stagnation, reservoir.contracted
+    source, kept = (reservoir.flow.chamber, reservoir.flow.kept) if found_inlet is None else (found_inlet.inlet, found_inlet.kept)
+    assert source.solved.amounts is not None
+    gas = HeldGas(reservoir.table, kept, source.solved.amounts, source.moles, source.temperature, source.pressure, rest.enthalpy)
     sonic = gas.throat()
     throat = _held(sonic, gas, rest)
     if area_ratio is not None:
@@ -291,7 +346,13 @@ def _frozen(reservoir: Reservoir, area_ratio: Array | None, exit_pressure: Array
     else:
         assert exit_pressure is not None
         found = gas.at_pressure(np.minimum(exit_pressure, sonic.pressure))
-    return throat, _inlet(rest, frozen=True), _held(found, gas, rest), sonic.good & found.good
+    good = sonic.good & found.good
+    if found_inlet is None:
+        return throat, _inlet(rest, frozen=True), _held(found, gas, rest), good
+    flux = throat.mass_flux / reservoir.contraction_ratio
+    slow = gas.before_throat(flux, sonic)
+    inlet = _held(slow, gas, rest)
+    return throat, replace(inlet, velocity=flux / inlet.density), _held(found, gas, rest), good & slow.good
 
 
 def _held(found: HeldFlow, gas: HeldGas, rest: Rest) -> FlowState:
@@ -304,7 +365,7 @@ def _held(found: HeldFlow, gas: HeldGas, rest: Rest) -> FlowState:
         density=found.pressure / thermal,
         velocity=expansion.velocity(rest.enthalpy, found.enthalpy),
         sound_speed=np.sqrt(exponent * thermal),
-        molar_mass=np.array(rest.molar_mass),
+        molar_mass=GAS_CONSTANT / gas.gas_constant,
         isentropic_exponent=exponent,
         enthalpy=found.enthalpy,
         entropy=np.array(rest.entropy),

@@ -17,7 +17,7 @@ import numpy.typing as npt
 from propkit.constants import GAS_CONSTANT
 from propkit.physics.arrays import Array
 from propkit.physics.equilibrium_terms import LOWEST_TEMPERATURE
-from propkit.physics.fast_newton import PATIENT, STEPS, AtFlux, Kernel, Point, Solved, Sonic, solve
+from propkit.physics.fast_newton import PATIENT, RESTED, STEPS, AtFlux, Kernel, Point, Solved, Sonic, solve
 from propkit.physics.fast_predictor import Coordinates, Fit
 
 Truth = npt.NDArray[np.bool_]
@@ -130,7 +130,11 @@ def _station(
     kernel: Kernel, elements: Array, target: Array, guess: Point, entropy: bool, condition: Any, keep: bool, coarse: bool
 ) -> tuple[Solved, Truth, npt.NDArray[np.intp]]:
     kept = select(kernel, guess)
-    found = solve(kernel.take(kept), elements, target, guess, entropy=entropy, condition=condition, keep_amounts=keep, steps=PATIENT if coarse else STEPS)
+    # amounts that are kept are those before the last step
+    found = solve(
+        kernel.take(kept), elements, target, guess, entropy=entropy, condition=condition, keep_amounts=keep,
+        steps=PATIENT if coarse else STEPS, rested=RESTED if keep else None,
+    )  # fmt: skip
     inside = np.exp(found.point.log_temperature) > LOWEST_TEMPERATURE
     return found, found.good & inside & (coarse or _verified(kernel, kept, found.point)), kept
 
@@ -138,6 +142,18 @@ def _station(
 def _dot(a: Array, b: Array) -> Array:
     found: Array = np.einsum("ij,ij->j", a, b)
     return found
+
+
+def at_rest(
+    kernel: Kernel, elements: Array, enthalpy: Array, log_pressure: Array, guess: Point, *, keep: bool = False, coarse: bool = False
+) -> tuple[Station, Array, Truth, npt.NDArray[np.intp]]:
+    """Return the burnt gas at rest, its entropy [J/(kg K)], which designs were found, and the species kept; arguments as below."""
+    found, good, kept = _station(kernel, elements, enthalpy, guess, False, None, keep, coarse)
+    point = found.point
+    temperature, moles = np.exp(point.log_temperature), np.exp(point.log_moles)
+    entropy = enthalpy / temperature - GAS_CONSTANT * _dot(point.potentials, elements)
+    pressure = kernel.reference_pressure * np.exp(log_pressure)
+    return Station(pressure, temperature, moles, enthalpy, found.turning, found), entropy, good, kept
 
 
 def chamber_and_throat(
@@ -167,12 +183,7 @@ def chamber_and_throat(
     coarse : bool
         Whether the solutions serve a predictor only: more steps are allowed, and species left out are not verified.
     """
-    found, good, kept = _station(kernel, elements, enthalpy, guess[0], False, None, keep, coarse)
-    point = found.point
-    temperature, moles = np.exp(point.log_temperature), np.exp(point.log_moles)
-    entropy = enthalpy / temperature - GAS_CONSTANT * _dot(point.potentials, elements)
-    pressure = kernel.reference_pressure * np.exp(log_pressure)
-    chamber = Station(pressure, temperature, moles, enthalpy, found.turning, found)
+    chamber, entropy, good, kept = at_rest(kernel, elements, enthalpy, log_pressure, guess[0], keep=keep, coarse=coarse)
     throat, fine, _ = _station(kernel, elements, entropy, guess[1], True, Sonic(enthalpy, guess[2]), False, coarse)
     return Flow(chamber, _at(kernel, elements, entropy, throat), entropy, good & fine, kept)
 
@@ -200,17 +211,29 @@ def shifting_exit(
     kernel: Kernel, elements: Array, flow: Flow, guess: Point, log_area_ratio: Array | None, *, coarse: bool = False
 ) -> tuple[Station, Truth]:
     """Return the exit of flow in equilibrium, at an area ratio, or at the pressure of the guess where that is None."""
-    condition = None
-    if log_area_ratio is not None:
-        throat = flow.throat
-        head = np.sqrt(np.maximum(2.0 * (flow.chamber.enthalpy - throat.enthalpy), 0.0))
-        thermal = GAS_CONSTANT * throat.moles * throat.temperature
-        log_flux = np.log(throat.pressure / kernel.reference_pressure * head / thermal) - log_area_ratio
-        condition = AtFlux(flow.chamber.enthalpy, log_flux)
+    condition = None if log_area_ratio is None else _passing(kernel, flow, log_area_ratio)
     found, good, _ = _station(kernel, elements, flow.entropy, guess, True, condition, False, coarse)
     station = _at(kernel, elements, flow.entropy, found)
     fine = good & (station.pressure <= flow.throat.pressure * (1.0 + 1e-9))
     return station, fine
+
+
+def _passing(kernel: Kernel, flow: Flow, log_area_ratio: Array) -> AtFlux:
+    """Return the condition of an area ratio over the throat."""
+    throat = flow.throat
+    head = np.sqrt(np.maximum(2.0 * (flow.chamber.enthalpy - throat.enthalpy), 0.0))
+    thermal = GAS_CONSTANT * throat.moles * throat.temperature
+    log_flux = np.log(throat.pressure / kernel.reference_pressure * head / thermal) - log_area_ratio
+    return AtFlux(flow.chamber.enthalpy, log_flux)
+
+
+def nozzle_inlet(
+    kernel: Kernel, elements: Array, flow: Flow, guess: Point, log_area_ratio: Array, *, keep: bool = False
+) -> tuple[Station, Truth, npt.NDArray[np.intp]]:
+    """Return the state of flow in equilibrium at a subsonic area ratio, which designs were found, and the species kept."""
+    found, good, kept = _station(kernel, elements, flow.entropy, guess, True, _passing(kernel, flow, log_area_ratio), keep, False)
+    station = _at(kernel, elements, flow.entropy, found)
+    return station, good & (station.pressure > flow.throat.pressure) & (station.pressure < flow.chamber.pressure), kept
 
 
 def guesses(predictor: Predictor, elements: Array, enthalpy: Array, log_pressure: Array) -> tuple[tuple[Point, Point, Array], Truth]:

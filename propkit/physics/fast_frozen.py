@@ -121,6 +121,20 @@ class HeldGas:
 
         return self._found(equation, self.temperature * (pressure / self.pressure) ** (self.gas_constant / self.rest.heat_capacity))
 
+    def before_throat(self, mass_flux: Array, sonic: HeldFlow) -> HeldFlow:
+        """Return the subsonic state at a mass flux [kg/(m2 s)], from the state given: energy with the velocity of the mass flux."""
+
+        def equation(gas: Held) -> tuple[Array, Array]:
+            thermal = self.gas_constant * gas.temperature
+            square = (mass_flux * thermal / np.exp(self.log_pressure(gas))) ** 2
+            content = gas.heat_capacity * gas.temperature
+            missing = (gas.enthalpy_over_temperature * gas.temperature + 0.5 * square - self.enthalpy) / content
+            return missing, 1.0 - square * (gas.heat_capacity / self.gas_constant - 1.0) / content
+
+        found = self._found(equation, self.temperature)
+        found.good &= found.temperature > sonic.temperature
+        return found
+
     def at_mass_flux(self, mass_flux: Array, sonic: HeldFlow) -> HeldFlow:
         """Return the supersonic state at a mass flux [kg/(m2 s)] at most that of the throat."""
         gamma = sonic.heat_capacity / (sonic.heat_capacity - self.gas_constant)

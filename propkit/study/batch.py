@@ -8,6 +8,7 @@ from __future__ import annotations
 import math
 from collections import OrderedDict
 from collections.abc import Mapping, Sequence
+from types import MappingProxyType
 from typing import Any
 
 import numpy as np
@@ -155,7 +156,8 @@ class Batch:
         ratio, pressure = self.array(link, "contraction_ratio"), self.array(link, "pressure")
         if self.quick is not None and self.quick.serves(self.mixture, ratio):
             frozen = any(below._values.get("flow") == "frozen" for below in self.target.chain())
-            self.reservoir: Any = self.quick.combust(self.mixture, pressure, keep=frozen)
+            at = link._values["pressure_at"]
+            self.reservoir: Any = self.quick.combust(self.mixture, pressure, contraction_ratio=ratio, pressure_at=at, keep=frozen)
             self.quick_cases, self.slow_cases = self.count, len(self.reservoir.slow)
         else:
             self.quick = None
@@ -363,10 +365,12 @@ class Probe(Batch):
     asked: tuple[Array | None, Array | None] = (None, None)
     served = True
     flow = ""
+    contraction: Mapping[str, Any] = MappingProxyType({})
 
     def _chamber(self, link: Calculation) -> None:
-        self.served &= type(link) is Chamber and not np.isfinite(self.array(link, "contraction_ratio")).any()
+        self.served &= type(link) is Chamber
         self.basis, self.pressure = self._basis(link), self.array(link, "pressure")
+        self.contraction = {"contraction_ratio": self.array(link, "contraction_ratio"), "pressure_at": link._values["pressure_at"]}
 
     def _nozzle(self, link: Calculation) -> None:
         values = link._values
@@ -387,7 +391,7 @@ class Probe(Batch):
         if not self.served or self.mixture is None or self.pressure is None or getattr(self, "additive_fraction", 0.0) is None:
             return None
         ratio, pressure = self.asked if self.flow == "shifting" else (None, None)
-        return accelerated.prepare(self.mixture, self.basis, self.pressure, area_ratio=ratio, exit_pressure=pressure)
+        return accelerated.prepare(self.mixture, self.basis, self.pressure, area_ratio=ratio, exit_pressure=pressure, **self.contraction)
 
 
 _COVERED: OrderedDict[tuple[Any, ...], frozenset[str]] = OrderedDict()
@@ -438,7 +442,7 @@ def _checked_batch(target: Calculation) -> dict[str, float]:
         kind, _, name = path.partition(".")
         value = float(np.broadcast_to(column, (1,))[0])
         try:
-            known = links[kind].given_or_result(name) if "." not in name else links[kind].si_of(name)
+            known: Any = links[kind].si_of(name)
         except (NotAvailableError, AttributeError):
             continue
         known = getattr(known, "pressure", known)

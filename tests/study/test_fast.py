@@ -25,22 +25,27 @@ def designs(pair, count, seed=1):
     return mixture, np.exp(rng.uniform(np.log(1e6), np.log(2.5e7), count)), np.exp(rng.uniform(np.log(3.0), np.log(150.0), count))
 
 
-def compared(pair, count, flow="shifting", seed=1, exit_pressure=False, basis="tm4513+atct"):
+def compared(pair, count, flow="shifting", seed=1, exit_pressure=False, basis="tm4513+atct", pressure_at=None):
     """Return largest relative differences of the quick engine from the plain stages, by station and quantity, and designs it left."""
     mixture, pressure, ratio = designs(pair, count, seed)
     asked = {"area_ratio": None, "exit_pressure": pressure / (10.0 * ratio)} if exit_pressure else {"area_ratio": ratio, "exit_pressure": None}
-    quick = accelerated.prepare(mixture, basis, pressure, **{name: value for name, value in asked.items() if value is not None and flow == "shifting"})
+    contraction = {}
+    if pressure_at:
+        contraction = {"contraction_ratio": np.random.default_rng(seed).uniform(1.3, 12.0, count), "pressure_at": pressure_at}
+    wanted = {name: value for name, value in asked.items() if value is not None and flow == "shifting"}
+    quick = accelerated.prepare(mixture, basis, pressure, **wanted, **contraction)
     assert quick is not None
-    rest = quick.combust(mixture, pressure, keep=flow == "frozen")
+    rest = quick.combust(mixture, pressure, keep=flow == "frozen", **contraction)
     expanded = quick.expand(rest, flow=flow, exponent="equilibrium", **asked)
-    plain_rest = chamber.combust(mixture, basis, pressure=pressure)
+    plain_rest = chamber.combust(mixture, basis, pressure=pressure, **contraction)
     freeze = {"freeze_at": "chamber"} if flow == "frozen" else {}
     plain = nozzle.expand(plain_rest, flow=flow, exponent="equilibrium", **freeze, **asked)
     worst = {}
     for name in chamber.INJECTOR_RESULTS:
         worst[f"face {name}"] = apart(getattr(rest.injector, name), getattr(plain_rest.injector, name))
     worst["c*"] = apart(rest.characteristic_velocity, plain_rest.characteristic_velocity)
-    for place in ("throat", "exit"):
+    worst["stagnation pressure"] = apart(rest.stagnation.pressure, plain_rest.stagnation.pressure)
+    for place in ("inlet", "throat", "exit") if pressure_at else ("throat", "exit"):
         mine, theirs = getattr(expanded.expansion, place), getattr(plain, place)
         for name in STATES:
             scale = np.abs(theirs.enthalpy).max() if name == "enthalpy" else None
@@ -69,6 +74,31 @@ def test_other_flows_agree_with_the_damped_solver(flow):
 def test_an_exit_pressure_may_be_asked_for_and_the_data_as_published_used():
     worst, _ = compared(("LOX", "LH2"), 200, exit_pressure=True, basis="tm4513")
     assert max(worst.values()) < 1e-8, worst
+
+
+@pytest.mark.parametrize("flow", ["shifting", "frozen", "constant-property"])
+@pytest.mark.parametrize("pressure_at", ["injector", "nozzle stagnation", "nozzle inlet static"])
+def test_chambers_of_finite_contraction_agree_with_the_damped_solver(flow, pressure_at):
+    worst, slow = compared(("LOX", "LCH4"), 150, flow, pressure_at=pressure_at)
+    assert max(worst.values()) < 1e-8, worst
+    assert slow < 15
+
+
+@pytest.mark.full
+@pytest.mark.parametrize("pair", PAIRS, ids="/".join)
+@pytest.mark.parametrize("flow", ["shifting", "frozen"])
+def test_many_chambers_of_finite_contraction_agree_with_the_damped_solver(pair, flow):
+    worst, slow = compared(pair, 1500, flow, seed=5, pressure_at="injector")
+    assert max(worst.values()) < 1e-8, worst
+    assert slow < 150
+
+
+def test_finite_and_infinite_contraction_together_are_refused():
+    mixture, pressure, ratio = designs(("LOX", "LCH4"), 120)
+    mixed = np.where(np.arange(120) % 2, 3.0, np.inf)
+    assert accelerated.prepare(mixture, "tm4513+atct", pressure, area_ratio=ratio, contraction_ratio=mixed) is None
+    quick = accelerated.prepare(mixture, "tm4513+atct", pressure, area_ratio=ratio)
+    assert not quick.serves(mixture, mixed)
 
 
 @pytest.mark.full
