@@ -45,7 +45,9 @@ def main(arguments: Sequence[str] | None = None) -> int:
 
 
 def _complain(text: str) -> None:
-    print(f"propkit: {text}", file=sys.stderr)
+    from propkit.record.outcome import visible
+
+    print("\n".join(visible(line) for line in f"propkit: {text}".split("\n")), file=sys.stderr)
 
 
 def _parser() -> argparse.ArgumentParser:
@@ -109,7 +111,9 @@ def _memo(options: argparse.Namespace) -> int:
 
 
 def _say(text: str) -> None:
-    print(text, flush=True)
+    from propkit.record.outcome import visible
+
+    print(visible(text), flush=True)
 
 
 def _verify(options: argparse.Namespace) -> int:
@@ -133,7 +137,9 @@ def _verify(options: argparse.Namespace) -> int:
 
 
 def _tell(text: str) -> None:
-    print(text, file=sys.stderr)
+    from propkit.record.outcome import visible
+
+    print(visible(text), file=sys.stderr)
 
 
 def _compare(options: argparse.Namespace) -> int:

@@ -53,7 +53,8 @@ def read_notebook(path: Path) -> Any:
         value = parse_json(read_file(path))
     except RecordError as error:
         raise RecordError(f"{path.name} is not a notebook that can be read: {error.message}") from None
-    if not isinstance(value, Mapping) or not isinstance(value.get("cells"), list):
+    cells = value.get("cells") if isinstance(value, Mapping) else None
+    if not isinstance(cells, list) or not all(isinstance(cell, Mapping) for cell in cells):
         raise RecordError(f"{path.name} is not a notebook of format 4: it has no list of cells")
     try:
         notebook = nbformat.from_dict({"metadata": {}, "nbformat": 4, "nbformat_minor": 5, **value})  # type: ignore[no-untyped-call]

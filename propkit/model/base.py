@@ -135,7 +135,8 @@ class Calculation:
             hold(self, "_values", bound.values)
             hold(self, "_cache", {})
             hold(self, "_lock", threading.RLock())
-            problems.extend(self._check({problem.name for problem in problems}))
+            refused = {name for name, value in bound.values.items() if value is None and named.get(name) is not None}
+            problems.extend(self._check({problem.name for problem in problems} | refused))
             if problems:
                 raise InputError(problems)
             hold(self, "_outcome", self._calculate())

@@ -52,7 +52,7 @@ def build(recipe: Mapping[str, Any], depth: int = 0) -> Any:
     ):
         raise RecordError("a recipe has the two entries 'object' and 'inputs'")
     name = recipe["object"]
-    if name not in CLASSES:
+    if not isinstance(name, str) or name not in CLASSES:
         raise RecordError(f"a recipe cannot name {name!r}; it names one of {', '.join(CLASSES)}")
     maker = getattr(importlib.import_module(CLASSES[name]), name)
     inputs = {str(key): _value(value, depth) for key, value in recipe["inputs"].items()}

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 from propkit.record.differences import ABSENT, Leaf, leaves
+from propkit.record.outcome import visible
 
 if TYPE_CHECKING:
     from propkit.record.record import Record
@@ -48,7 +49,7 @@ class Comparison:
                 lines += [f"  {' | '.join(cells)}" for cells in _cells(found)]
         if not any(self.topics.values()):
             lines.append("no difference")
-        return "\n".join(lines)
+        return "\n".join(visible(line) for line in lines)
 
     def to_html(self) -> str:
         """Return the tables as a fragment of HTML; everything is escaped."""
@@ -86,6 +87,8 @@ def _name(leaf: Leaf) -> str:
 def _text(value: Any) -> str:
     if isinstance(value, float | int) and not isinstance(value, bool):
         return f"{value:.9g}"
+    if isinstance(value, Mapping):
+        return f"present, {len(value)} {'entry' if len(value) == 1 else 'entries'}"
     text = " ".join(str(value).split())
     return text if len(text) <= 100 else f"{text[:97]}..."
 

@@ -185,7 +185,7 @@ def _from_zip(data: bytes, name: str) -> Contents:
     for member, text in _members(data):
         suffix = Path(member).suffix.lower()
         if member.endswith(".record.json") or suffix in (".ipynb", ".html"):
-            inside = records_of(".json" if suffix == ".json" else suffix, text, f"{name}, {member}")
+            inside = records_of(".json" if suffix == ".json" else suffix, text, f"{name}, {member if member.isprintable() else _shown(member)}")
             found += inside.found
             checks += inside.checks
     return Contents(tuple(found), tuple(checks))

@@ -8,7 +8,7 @@ from typing import Any
 
 from propkit.errors import PropkitError
 from propkit.record.containers import records_in
-from propkit.record.outcome import Check, Verification
+from propkit.record.outcome import Check, Verification, visible
 
 
 @dataclass(frozen=True, slots=True)
@@ -40,10 +40,10 @@ class FileVerification:
 
     def __str__(self) -> str:
         if self.problem:
-            return f"{self.path}: unusable\n  {self.problem}"
+            return f"{visible(self.path)}: unusable\n  {visible(self.problem)}"
         count = len(self.verifications)
-        lines = [f"{self.path}: {self.status} ({count} record{'s' if count != 1 else ''})"]
-        lines += [f"  {check.name}: {check.detail}" for check in self.checks]
+        lines = [f"{visible(self.path)}: {self.status} ({count} record{'s' if count != 1 else ''})"]
+        lines += [f"  {check.name}: {visible(check.detail)}" for check in self.checks]
         return "\n\n".join(["\n".join(lines), *(str(verification) for verification in self.verifications)])
 
     def to_dict(self) -> dict[str, Any]:

@@ -14,6 +14,7 @@ CheckStatus = Literal["same", "noted", "differs"]
 
 _WORDS = {"same": "agrees", "noted": "noted", "differs": "DIFFERS"}
 _MOST_SHOWN = 25
+WIDE_SPACES = "\u00a0\u2003\u2007\u2008\u2009\u202f"
 _ILLEGAL_XML = dict.fromkeys((*range(9), 11, 12, *range(14, 32), 0xFFFE, 0xFFFF), "\ufffd")
 
 
@@ -82,7 +83,7 @@ class Verification:
         lines = [f"{self.name}: {self.title}", f"  {self.status}: {self._count()} values recomputed and compared"]
         lines += [f"  {check.name:<{width}}  {_WORDS[check.status]:<8}  {check.detail}" for check in self.checks]
         lines += [f"    {line}" for line in self._difference_lines()]
-        return "\n".join(lines)
+        return "\n".join(visible(line) for line in lines)
 
     def _count(self) -> int:
         return len(self.leaves)
@@ -137,6 +138,11 @@ class Verification:
             wrong = "\n".join([check.detail, *self._difference_lines()])
             return f"{name}><failure message={_attribute(check.detail)}>{escape(wrong.translate(_ILLEGAL_XML))}</failure></testcase>"
         return f"{name}><system-out>{escape(check.detail.translate(_ILLEGAL_XML))}</system-out></testcase>"
+
+
+def visible(text: str) -> str:
+    """Return a line from a stranger as a terminal may show it: control characters are written as escapes."""
+    return "".join(letter if letter.isprintable() or letter in WIDE_SPACES else ascii(letter)[1:-1] for letter in text)
 
 
 def _weighs(check: Check) -> bool:

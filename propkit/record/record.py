@@ -13,7 +13,7 @@ from propkit.errors import InputError, Problem, RecordError
 from propkit.model.base import RECORD_MIME, Calculation, from_recipe
 from propkit.record import build, schema
 from propkit.record.canonical import LARGEST_INTEGER, canonical_bytes, digest_of, sealed, whole_digest
-from propkit.record.outcome import Verification
+from propkit.record.outcome import Verification, visible
 from propkit.record.storage import write_atomically
 from propkit.record.verify import seal_checks, verify_document
 
@@ -237,7 +237,7 @@ class Record:
         return report_of(self)
 
     def __str__(self) -> str:
-        return str(self.report())
+        return "\n".join(visible(line) for line in str(self.report()).split("\n"))
 
     def __repr__(self) -> str:
         return f"<Record {self.title!r}, {self.digest[:19]}…>"

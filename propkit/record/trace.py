@@ -97,6 +97,15 @@ def trace(calculation: Calculation, name: str) -> Origin:
     return _Tracer().of(link, place.name)
 
 
+_ANALYSES = {
+    "study": "a design of the study, computed through the chain with inputs of its own",
+    "uncertainty": "propagated from the distributions of the inputs",
+    "reconciliation": "least-squares adjustment of the quoted figures",
+    "firing": "from the recording, over its steady window",
+}
+"""Kind of an analysis -> how its results come about; its sheet tells the rest."""
+
+
 class _Tracer:
     """Walks up a chain; what was shown once is not shown again."""
 
@@ -105,6 +114,8 @@ class _Tracer:
 
     def of(self, link: Calculation, name: str) -> Origin:
         path = f"{link.kind}.{name}"
+        if link.kind in _ANALYSES and link.kind_of(name) == "computed":
+            return Origin(path, _text(link, name), _ANALYSES[link.kind], "")
         state, _, quantity = name.partition(".")
         text = _state_text(link, state, quantity) if quantity else _text(link, name)
         if path in self.shown:

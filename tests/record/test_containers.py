@@ -107,3 +107,33 @@ def test_odd_outputs(outputs):
         assert not records_of(".ipynb", json.dumps({"cells": [cell]}).encode(), "x.ipynb").found
     except RecordError:
         pass
+
+
+def test_odd_archives(record):
+    inner = archive(("a.record.json", record.to_bytes()))
+    assert not records_of(".zip", archive(("inner.zip", inner)), "x.zip").found
+    assert not records_of(".zip", archive(("a.record.json/", b"")), "x.zip").found
+    for data in (archive(("a.record.json", b"")), inner + b"x" * 70_000):
+        with pytest.raises(RecordError):
+            records_of(".zip", data, "x.zip")
+    for change, value in ((42, b"\xf0\xff\xff\x0f"), (10, b"a\0"), (20, b"\x0a\0\0\0")):  # offset, method, packed size
+        lying = bytearray(inner)
+        place = lying.find(b"PK\x01\x02") + change
+        lying[place : place + len(value)] = value
+        with pytest.raises(RecordError):
+            records_of(".zip", bytes(lying), "x.zip")
+    for method in (zipfile.ZIP_BZIP2, zipfile.ZIP_LZMA):
+        assert len(records_of(".zip", archive(("å/日本.record.json", record.to_bytes()), compression=method), "x.zip").found) == 1
+
+
+def test_names_in_an_archive_never_reach_a_terminal(record):
+    found = records_of(".zip", archive(("a\n\x1b[31m.record.json", record.to_bytes())), "x.zip").found
+    assert found[0].place.isprintable()
+
+
+def test_pages_with_several_records(record):
+    element = record_template(record)
+    assert len(records_of(".html", (element + element).encode(), "x.html").found) == 2
+    for page in (f"<template data-propkit-record>{element}</template>", element * 501, "<template data-propkit-record></template>"):
+        with pytest.raises(RecordError):
+            records_of(".html", page.encode(), "x.html")

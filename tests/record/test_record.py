@@ -289,6 +289,65 @@ def test_texts_may_hold_spaces_of_every_width(perf):
             perf.record(title=f"a{bad}")
 
 
+WRONG = (None, True, 3, -1.5, "x", [], {}, [[]], {"a": {}}, "infinite")
+"""Values of every kind, for places that ask for another."""
+
+
+def places(value, path=()):
+    """Yield the path of every entry, mappings and lists included."""
+    for key, entry in value.items() if isinstance(value, dict) else enumerate(value) if isinstance(value, list) else ():
+        yield (*path, key)
+        yield from places(entry, (*path, key))
+
+
+def check_wrong_types(record, step):
+    """Whatever stands at a place, only our errors come out of loading, judging, showing and comparing."""
+    document = record.document
+    again = recomputed(document["content"])
+    for number, path in enumerate(list(places(document))[::step]):
+        for wrong in WRONG if step == 1 else (WRONG[number % len(WRONG)],):
+            try:
+                changed_record = pk.Record(with_leaf(document, path, wrong))
+                str(judged(changed_record.document, again, "record"))
+                str(changed_record.compare(record))
+                changed_record._repr_mimebundle_()
+            except pk.PropkitError:
+                continue
+
+
+def test_wrong_types_give_our_errors(record):
+    check_wrong_types(record, 3)
+
+
+@pytest.mark.full
+def test_wrong_types_give_our_errors_at_length(record):
+    check_wrong_types(record, 1)
+
+
+@pytest.mark.parametrize("wrong", [[], {}, [[]], 3, None])
+def test_a_recipe_that_names_no_class_is_refused(record, wrong):
+    document = record.document
+    document["content"]["recipe"]["inputs"]["nozzle"]["object"] = wrong
+    with pytest.raises(RecordError):
+        assert pk.Record(document).calculation
+
+
+def test_control_characters_never_reach_a_terminal(record):
+    document = record.document
+    document["content"]["title"] = "\x1b[31mred\r\nx.json: verified \u202e"
+    odd = reseal(document)
+    for text in (str(odd.verify("\x1b[2J.json")), str(odd.compare(record)), str(odd)):
+        assert not set(text) & {"\x1b", "\r", "\u202e"}
+    assert "\\x1b[31mred" in str(odd.verify())
+
+
+def test_lists_have_a_limit(record):
+    document = record.document
+    document["content"]["cautions"] = ["x"] * 1001
+    with pytest.raises(RecordError, match="cautions"):
+        pk.Record(document)
+
+
 def test_bundle_is_a_record(perf):
     from propkit.record import bundle_of
 
