@@ -12,11 +12,17 @@ Times are processor time and elapsed time of this process; on a shared machine t
 
 Measured on two shared cores without AVX-512 and under load, numpy 2.4, medians of three repeats of one run each:
 
-* 1 900 to 2 300 times the plain loop (40 to 75 ms a design there, 18 to 28 us here), 150 to 190 times the economical one;
-* LOX/LCH4 1.2, LOX/LH2 0.8 to 1.0, NTO/MMH 1.6 to 1.8 of LOX/RP-1; frozen 0.5 to 0.65, constant-property 0.45 to 0.6 of shifting;
+* 3 100 to 3 600 times the plain loop (41 to 66 ms a design there, 13 to 16 us here), 260 to 280 times the economical one;
+* LOX/LCH4 1.0, LOX/LH2 0.9 to 1.0, NTO/MMH 1.7 to 2.3 of LOX/RP-1; frozen 0.6 to 0.8, constant-property 0.5 of shifting;
+* finite contraction 2 (stagnation pressure quoted) to 3 times (injector pressure) infinite: 28 and 42 us a design; by the damped solver
+  305 and 1 400 us;
 * 1 000 000 designs with ten results: 15.5 us a design, 0.66 of the cost at 10 000, 0.43 GB at the peak;
-* 10 000 trials on four inputs: 0.26 s; a map of 2 500 designs re-solved: 58 ms processor time at best, 93 as the median under load;
-* two threads 0.9 to 1.1 times as fast as one at 200 000 designs, two processes 0.7: the second core was not free.
+* 10 000 trials on four inputs: 0.17 to 0.27 s; a map of 2 500 designs re-solved: 28 ms processor time at best, 38 to 43 as the median
+  under load (before isentropes were followed in few steps: 50 at best, 58 as the median);
+* first order with exact derivatives, seven inputs: 22 to 35 ms processor time (fourth-order differences: 25 ms), without warnings;
+* two threads 0.4 to 1.5 times as fast as one at 200 000 designs, on two cores with a load of four: the scheduler's own counts
+  (`/proc/self/task/*/schedstat`) say that a thread waits for the other 0 to 5 % of its time (once 13 %), for a free core 60 %, and that the
+  processor time of both is that of one. Blocks of 5 000 and 10 000 designs are no better.
 
 Where the time of 10 000 designs goes (profile, processor time): before local fits 45 % predictor, 8.4 evaluations a design (2 chamber, 3
 throat, 3.4 exit); with fits by pieces 25 % predictor, 5.3 evaluations (1.3, 1, 3). Of an evaluation the exponentials are two fifths, matrix products a
@@ -50,9 +56,9 @@ RANGES = {"chamber.pressure": (3e6, 2e7), "nozzle.area_ratio": (5.0, 60.0)}
 PAIRS = {("LOX", "RP-1"): (1.8, 3.4), ("LOX", "LCH4"): (2.2, 4.2), ("LOX", "LH2"): (3.0, 8.0), ("NTO", "MMH"): (1.2, 2.6)}
 
 
-def performance(pair, ratio, flow="shifting"):
+def performance(pair, ratio, flow="shifting", **chamber):
     case = pk.PropellantCase(*pair, mixture_ratio=ratio, thermo_basis=BASIS)
-    nozzle = pk.Nozzle(pk.Chamber(case, pressure=1e7), area_ratio=30, throat_diameter=0.1, flow=flow)
+    nozzle = pk.Nozzle(pk.Chamber(case, pressure=1e7, **chamber), area_ratio=30, throat_diameter=0.1, flow=flow)
     return pk.Performance(nozzle, ambient="sea level")
 
 
@@ -209,6 +215,12 @@ def others(executor):
         made = study(("LOX", "RP-1"), PAIRS["LOX", "RP-1"], DESIGNS, flow)
         best = min(timed_study(made, executor)[0].processor for _ in range(3)) / DESIGNS
         print(f"  {flow:17} {1e6 * best:7.1f} us a design, {best / base:4.2f} of shifting")
+    for pressure_at in ("injector", "nozzle stagnation"):
+        target = performance(("LOX", "RP-1"), 2.6, contraction_ratio=2.5, pressure_at=pressure_at)
+        ranges = {**RANGES, "case.mixture_ratio": PAIRS["LOX", "RP-1"], "chamber.contraction_ratio": (1.4, 6.0)}
+        made = pk.Study.sample(target, ranges, DESIGNS, seed=1)
+        best = min(timed_study(made, executor)[0].processor for _ in range(3)) / DESIGNS
+        print(f"  finite contraction, {pressure_at} pressure: {1e6 * best:7.1f} us a design, {best / base:4.2f} of infinite")
     for count in (1000, 2500, 50_000):
         made = study(("LOX", "RP-1"), PAIRS["LOX", "RP-1"], count)
         best = min(timed_study(made, executor)[0].processor for _ in range(3)) / count
@@ -224,6 +236,19 @@ def live_map(executor):
             pk.Study(target, axes, results=["specific_impulse", "thrust"]).run(executor=executor, progress=False)
         times.append(clock)
     print(f"  map of 2500 designs re-solved: {1e3 * statistics.median(t.elapsed for t in times):.0f} ms elapsed, {1e3 * statistics.median(t.processor for t in times):.0f} ms processor")
+
+
+def first_order():
+    """Print the time of first-order analyses with exact derivatives, warnings (curvature by differences) not asked for."""
+    inputs = {"chamber.pressure": "1 %", "case.mixture_ratio": "1 %", "nozzle.area_ratio": "1 %", "nozzle.throat_diameter": "0.2 %",
+              "case.fuel.enthalpy": "1 kJ/mol", "case.oxidizer.enthalpy": "0.2 kJ/mol", "performance.ambient": "1 kPa"}  # fmt: skip
+    for flow in ("shifting", "frozen", "constant-property"):
+        plan, times = pk.Uncertainty(performance(("LOX", "RP-1"), 2.6, flow), inputs), []
+        for _ in range(9):
+            with Clock() as clock:
+                plan.run()
+            times.append(clock.processor)
+        print(f"  first order, {len(inputs)} inputs, {flow}: {1e3 * min(times):.1f} ms processor")
 
 
 def trials(executor):
@@ -255,6 +280,7 @@ def main() -> None:
         others(executor)
         live_map(executor)
         trials(executor)
+        first_order()
         if "--large" in sys.argv:
             large(executor)
 
