@@ -2,17 +2,14 @@
 
 from __future__ import annotations
 
-import math
 import os
 from collections.abc import Iterator, Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Self
 
 from propkit import units
-from propkit.chain import nozzle as stage
-from propkit.chain import outcome, sizing
-from propkit.errors import InputError, Problem, RangeError
-from propkit.model import nozzle_flow, nozzle_sizes, nozzle_states, sheet
+from propkit.errors import InputError, Problem
+from propkit.model import nozzle_calculation, nozzle_flow, nozzle_sizes, nozzle_states, sheet
 from propkit.model import wall as wall_of_nozzle
 from propkit.model.ambient import read_ambient
 from propkit.model.base import Calculation, Outcome
@@ -28,7 +25,7 @@ from propkit.model.declare import (
     QuantityResult,
     as_text,
 )
-from propkit.model.doubts import Assumption, Doubt
+from propkit.model.doubts import Assumption
 from propkit.model.nozzle_sizes import EXPANSIONS, read_chamber, read_freeze
 from propkit.model.nozzle_sizes import SIZES as SIZES
 from propkit.model.state import STATE_FIELDS, State
@@ -165,112 +162,23 @@ class Nozzle(Calculation):
         problems += list(nozzle_sizes.size_problems(self._typed, self._values, bad))
         if "chamber" in bad or "flow" in bad:
             return problems
-        return [*problems, *nozzle_flow.flow_problems(self._values["chamber"], self._flow(), self._typed, self._values)]
+        return [*problems, *nozzle_flow.flow_problems(self._values["chamber"], self.flow_model(), self._typed, self._values)]
 
     def displaced(self, typed: dict[str, Any], changes: Mapping[str, Any]) -> dict[str, Any]:
         """Return `typed` without the sizes that the changes displace: naming one member of a group displaces the others."""
         return nozzle_sizes.displaced(typed, changes)
 
-    def _flow(self) -> str:
+    def flow_model(self) -> str:
+        """Return the flow model asked for, or the first that the chamber allows."""
         return str(self._values["flow"] or self._values["chamber"].flows[0])
 
     # -- the calculation -------------------------------------------------------------------------
 
     def _calculate(self) -> Outcome:
-        chamber: Chamber = self._values["chamber"]
-        flow = self._flow()
-        self._values["flow"] = flow
-        if flow == "frozen":
-            self._values["freeze_at"] = self._values["freeze_at"] or "chamber"
-        if flow == "constant-property" and chamber.chooses_exponent:
-            self._values["exponent"] = self._values["exponent"] or "equilibrium"
-        discharge = self._values["discharge_coefficient"]
-        ratio, pressure = self._values["area_ratio"], self._values["exit_pressure"]
-        if ratio is None and pressure is None:
-            ratio = nozzle_sizes.size_ratio(self._typed, self._values)
-        freeze_at = self._values["freeze_at"]
-        expansion = stage.expand(
-            chamber.held,
-            flow=flow,
-            freeze_at=freeze_at / discharge if isinstance(freeze_at, float) else freeze_at,
-            exponent=self._values["exponent"],
-            area_ratio=None if ratio is None else ratio / discharge,
-            exit_pressure=pressure,
-        )
-        self._refuse(expansion, pressure)
-        geometric = ratio if ratio is not None else float(expansion.area_ratio[0]) * discharge
-        return self._sized(chamber, expansion, geometric)
+        return nozzle_calculation.calculate(self)
 
-    def _refuse(self, expansion: stage.Expansion, pressure: float | None) -> None:
-        throat_pressure = float(expansion.throat.pressure[0])
-        if pressure is not None and pressure > throat_pressure:
-            raise InputError(
-                Problem(
-                    "exit_pressure",
-                    f"{pressure:g} Pa",
-                    f"at most the throat pressure, {throat_pressure:g} Pa",
-                    "A nozzle with an exit accelerates the gas beyond its throat.",
-                )
-            )
-        frozen_late = isinstance(self._values["freeze_at"], float)
-        if frozen_late and outcome.OUT_OF_RANGE in (int(expansion.exit.status[0]), int(expansion.throat.status[0])):
-            raise InputError(
-                Problem(
-                    "freeze_at",
-                    as_text(self._typed["freeze_at"]),
-                    "an area ratio beyond the frozen sonic point",
-                    "Take a larger area ratio, or 'throat'.",
-                )
-            )
-        expansion.raise_for_status(self.kind)
-
-    def _sized(self, chamber: Chamber, expansion: stage.Expansion, ratio: float) -> Outcome:
-        name = next(name for name in SIZES if name in self._typed)
-        ambient = self._values["sizing_ambient"]
-        sizes = sizing.size(
-            name,
-            self._values[name],
-            mass_flux=expansion.mass_flux,
-            area_ratio=ratio,
-            exit_velocity=expansion.exit.velocity,
-            exit_pressure=expansion.exit.pressure,
-            ambient=ambient.pressure if ambient is not None else 0.0,
-            discharge_coefficient=self._values["discharge_coefficient"],
-            cstar_efficiency=chamber.si("cstar_efficiency"),
-            divergence_factor=wall_of_nozzle.divergence_factor(self._values["contour"], ratio) if name == "thrust" else 1.0,
-        )
-        throat_area, exit_area, mass_flow = (
-            float(getattr(sizes, field)[0]) for field in ("throat_area", "exit_area", "mass_flow")
-        )
-        if not (throat_area > 0.0 and math.isfinite(throat_area)):
-            raise RangeError(
-                f"No size gives a thrust of {self._values['thrust']:g} N at an ambient pressure of {ambient.pressure:g} Pa: this expansion "
-                f"delivers no thrust there (exit pressure {float(expansion.exit.pressure[0]):g} Pa). Choose a smaller area_ratio.",
-                throat_area=throat_area,
-            )
-        area = {"throat": throat_area, "exit": exit_area}
-        results = {f"{where}_area": value for where, value in area.items()}
-        results |= {f"{where}_diameter": math.sqrt(4.0 * value / math.pi) for where, value in area.items()}
-        results |= {"area_ratio": ratio, "mass_flow": mass_flow, "exit_pressure": float(expansion.exit.pressure[0])}
-        results["characteristic_velocity"] = chamber.si("stagnation_pressure") * throat_area / mass_flow
-        if name in self._typed:
-            results[name] = self._values[name]
-        if ambient is not None:
-            results["sizing_ambient"] = ambient.pressure
-        shape = self._shape(results)
-        results |= shape.results
-        absent = {
-            **shape.absent,
-            "contour": wall_of_nozzle.NO_CONTOUR,
-            "thrust": "the nozzle was not sized for a thrust; pk.Performance(nozzle, ambient=...).thrust has the thrust",
-            "sizing_ambient": "the nozzle was not sized for a thrust",
-            "freeze_at": "only frozen flow freezes its composition",
-            "exponent": "only constant-property flow of a chamber gas chooses its exponent",
-        }
-        doubts = [*self._doubts(expansion), *(Doubt(text, code="contour-chart", about="contour") for text in shape.doubts)]
-        return Outcome(results, absent, tuple(doubts), expansion)
-
-    def _shape(self, results: Mapping[str, float]) -> wall_of_nozzle.Geometry:
+    def shape(self, results: Mapping[str, float]) -> wall_of_nozzle.Geometry:
+        """Return the wall for a throat diameter and an area ratio."""
         chamber = self._values["chamber"]
         return wall_of_nozzle.geometry(
             self._values["contour"],
@@ -285,18 +193,7 @@ class Nozzle(Calculation):
     @property
     def geometry(self) -> wall_of_nozzle.Geometry:
         """Segments of the wall and its measures."""
-        return self.lazily("geometry", lambda: self._shape(self._outcome.results))
-
-    def _doubts(self, expansion: stage.Expansion) -> Iterator[Doubt]:
-        for text, code, about in expansion.doubts():
-            yield Doubt(text, code=code, about=about)
-        case = self._values["chamber"].case_or_none
-        if case is not None:
-            yield from case.flow_doubts(expansion)
-        late, ratio = self._values["freeze_at"], float(expansion.area_ratio[0]) * self._values["discharge_coefficient"]
-        if isinstance(late, float) and late >= ratio:
-            text = f"The composition freezes at area ratio {late:g}, beyond the exit at {ratio:.4g}: the flow is shifting all the way."
-            yield Doubt(text, code="freezes-beyond-exit", about="flow")
+        return self.lazily("geometry", lambda: self.shape(self._outcome.results))
 
     # -- constructors and states ------------------------------------------------------------------
 
