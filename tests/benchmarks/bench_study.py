@@ -16,11 +16,11 @@ Measured on two shared cores without AVX-512 and under load, numpy 2.4, medians 
 * LOX/LCH4 1.0, LOX/LH2 0.9 to 1.0, NTO/MMH 1.7 to 2.3 of LOX/RP-1; frozen 0.6 to 0.8, constant-property 0.5 of shifting;
 * finite contraction 2 (stagnation pressure quoted) to 3 times (injector pressure) infinite: 28 and 42 us a design; by the damped solver
   305 and 1 400 us;
-* 1 000 000 designs with ten results: 15.5 us a design, 0.66 of the cost at 10 000, 0.43 GB at the peak;
+* 1 000 000 designs with ten results: 13.0 us a design, 1.13 of the cost at 10 000 in one run under load, 0.41 GB at the peak;
 * 10 000 trials on four inputs: 0.17 to 0.27 s; a map of 2 500 designs re-solved: 28 ms processor time at best, 38 to 43 as the median
   under load (before isentropes were followed in few steps: 50 at best, 58 as the median);
 * first order with exact derivatives, seven inputs: 22 to 35 ms processor time (fourth-order differences: 25 ms), without warnings;
-* two threads 0.4 to 1.5 times as fast as one at 200 000 designs, on two cores with a load of four: the scheduler's own counts
+* two threads 0.4 to 1.5 times as fast as one at 200 000 designs, 0.8 at 1 000 000, on two cores with a load of four to five: the scheduler's own counts
   (`/proc/self/task/*/schedstat`) say that a thread waits for the other 0 to 5 % of its time (once 13 %), for a free core 60 %, and that the
   processor time of both is that of one. Blocks of 5 000 and 10 000 designs are no better.
 
