@@ -24,7 +24,8 @@ from propkit.reconcile.model import (
     figure_quantity,
     name_of,
 )
-from propkit.reconcile.routes import RouteValue, routes_to
+from propkit.reconcile.route_values import route_values
+from propkit.reconcile.routes import RouteValue
 from propkit.study.evaluation import variable
 
 if TYPE_CHECKING:
@@ -388,37 +389,7 @@ class Reconciliation:
 
     def route_values(self, quantity: str) -> tuple[RouteValue, ...]:
         """Return the routes as neutral data (see `routes`)."""
-        target = self._target
-        nozzle, chamber = target.nozzle, target.nozzle.chamber
-        rest = chamber.si("stagnation_pressure")
-        model = {
-            "model.pressure_ratio": rest / float(variable(target, "chamber.pressure").nominal),
-            "model.characteristic_velocity": nozzle.si("characteristic_velocity"),
-            "model.thrust_coefficient": target.si("thrust_coefficient"),
-            "model.thrust_coefficient_vacuum": target.si("thrust_coefficient_vacuum"),
-            "model.specific_impulse": target.si("specific_impulse"),
-            "model.specific_impulse_vacuum": target.si("specific_impulse_vacuum"),
-        }
-        chosen: dict[str, QuotedFigure] = {}
-        for figure in self._figures.values():
-            if figure.key not in chosen or figure.level == "chamber":
-                chosen[figure.key] = figure
-        return routes_to(quantity, chosen, model, self._to_chamber(chosen))
-
-    def _to_chamber(self, figures: Mapping[str, QuotedFigure]) -> dict[str, float]:
-        keys = [key for key, figure in figures.items() if figure.level == "engine" and key in LEVELLED]
-        if not keys:
-            return {}
-        values = {
-            key: value
-            for key, value in zip(self._free, self._adjustment.estimate, strict=True)
-            if key in EXTRA_UNKNOWNS
-        }
-        asked = tuple((key, level) for key in keys for level in ("engine", "chamber"))
-        fixed = {**self._model.fixed, **{key: float(value) for key, value in values.items()}}
-        model = FigureModel(self._target, (), asked, fixed)
-        found = model({"burn_time": np.array([fixed.get("burn_time", 1.0)])})
-        return {key: float(found[name_of(key, "chamber")][0] / found[name_of(key, "engine")][0]) for key in keys}
+        return route_values(self, quantity)
 
     def unit_of(self, name: str) -> str:
         """Return the SI unit of a figure or prior, in pint's spelling."""
