@@ -68,6 +68,7 @@ def limits(nozzle: Nozzle) -> dict[str, float]:
 
 def doubts(nozzle: Nozzle, ambient: float) -> Iterator[Doubt]:
     """Yield what is to be doubted of a full-flowing thrust at an ambient pressure [Pa]."""
+    yield from _unchoked(nozzle, ambient)
     exit_state = nozzle.exit
     if exit_state.si("mach") <= SONIC:
         return
@@ -89,6 +90,21 @@ def doubts(nozzle: Nozzle, ambient: float) -> Iterator[Doubt]:
             f"{pressure / ambient:.3g} of the ambient pressure. The thrust is the full-flowing value{'; thrust_separated has an estimate' if len(predicted) > 1 else ''}. {SIDE_LOADS}",
             code="separation",
             about="thrust",
+        )
+
+
+def _unchoked(nozzle: Nozzle, ambient: float) -> Iterator[Doubt]:
+    """Yield a doubt where the ambient pressure is above that of a wholly subsonic nozzle with a sonic throat."""
+    if ambient <= nozzle.throat.si("pressure"):
+        return
+    ratio = nozzle.si("area_ratio")
+    highest = nozzle.at(area_ratio=max(ratio, 1.0), branch="subsonic").si("pressure")
+    if ambient > highest:
+        yield Doubt(
+            f"The throat is not choked: that needs an ambient pressure below {highest / 1e3:.4g} kPa, at which the whole nozzle is subsonic. "
+            "Mass flow, thrust and specific impulse do not hold.",
+            code="not-choked",
+            about="mass_flow",
         )
 
 

@@ -101,3 +101,21 @@ def test_an_exit_that_is_not_supersonic_has_no_such_separation():
     with pytest.raises(pk.NotAvailableError, match="not supersonic"):
         _ = perf.separation
     assert "Separation at" not in str(perf)
+
+
+@pytest.mark.parametrize(("exponent", "ratio"), [(1.2, 2.0), (1.4, 2.0), (1.4, 2.5), (1.25, 1.0)])
+def test_a_throat_that_is_not_choked_is_a_doubt_about_the_mass_flow(exponent, ratio):
+    # first critical pressure ratio from the area law of NACA Report 1135, equations 44 and 80, solved by hand here
+    from scipy.optimize import brentq
+
+    def area(mach):
+        inside = 2.0 / (exponent + 1.0) * (1.0 + 0.5 * (exponent - 1.0) * mach**2)
+        return inside ** (0.5 * (exponent + 1.0) / (exponent - 1.0)) / mach
+
+    mach = brentq(lambda m: area(m) - ratio, 1e-6, 1.0) if ratio > 1.0 else 1.0
+    critical = (1.0 + 0.5 * (exponent - 1.0) * mach**2) ** (-exponent / (exponent - 1.0))
+    gas = {"temperature": "1200 K", "molar_mass": "20 g/mol", "isentropic_exponent": exponent}
+    for factor, choked in ((1.01, True), (0.99, False)):
+        chamber = pk.Chamber.from_gas(pressure=factor * 101325.0 / critical, **gas)
+        perf = pk.Performance(pk.Nozzle(chamber, area_ratio=ratio, throat_diameter="0.1 m"), ambient="sea level")
+        assert any(doubt.code == "not-choked" for doubt in perf.warnings) is not choked
