@@ -138,7 +138,8 @@ class _Progress:
             self.place = f"{number} ({first})"
             self._say(f"  {number}: {first}")
 
-    def executed(self, cell: Any, **_: Any) -> None:
+    def executed(self, cell: Any, cell_index: int, execute_reply: Any) -> None:
+        del cell_index, execute_reply
         self._finished(cell)
 
 
