@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator
 from html import escape
 from typing import Any
@@ -22,6 +23,7 @@ from propkit.view import numbers
 _MOST_ORIGINS = 1
 _ORDER = ("chamber", "throat", "exit")
 _WORKED = ("case", "chamber", "nozzle", "performance")
+_SAMPLES = re.compile(r"([\[(])((?:[-+0-9.eNonaif]+,\s*){30,}[-+0-9.eNonaif]+)")
 _ABOUT = {"given": "as given", "default": "default", "method": "of the method", "computed": "computed"}
 
 
@@ -62,6 +64,7 @@ def chapters(material: Material) -> Iterator[tuple[str, str]]:
     makers = (
         ("Purpose", _purpose),
         ("Results", _results),
+        ("The analysis", _analysis),
         ("Assumptions", _assumptions),
         ("Inputs", _inputs),
         ("Results along the chain", _between),
@@ -95,6 +98,20 @@ def _results(material: Material) -> Iterator[str]:
     drawings = "".join(markup.drawing(figure) for part in material.reports[-2:] for figure in part.figures)
     if drawings:
         yield f'<div class="figures">{drawings}</div>'
+
+
+def _analysis(material: Material) -> Iterator[str]:
+    """Yield what the sheet of a study, an uncertainty, a reconciliation or a firing tells beyond its results."""
+    if material.calculation.kind in _WORKED:
+        return
+    for section in material.last.sections:
+        yield f"<h3>{escape(section.title)}</h3>"
+        if section.rows:
+            yield markup.rows_table(section.rows)
+        if section.table is not None:
+            yield markup.data_table(section.table)
+        if section.lines:
+            yield markup.lines_list(section.lines)
 
 
 def _assumptions(material: Material) -> Iterator[str]:
@@ -270,4 +287,8 @@ def _provenance(material: Material) -> Iterator[str]:
         rows.append(("notebook cell", provenance["cell"]))
     yield markup.text_table(("what", "value"), rows)
     yield "<h3>The same calculation as a script</h3>"
-    yield f"<pre>{escape(material.calculation.as_code().rstrip())}</pre>"
+    code = material.calculation.as_code().rstrip()
+    shown = _SAMPLES.sub(lambda match: f"{match[1]}... {match[2].count(',') + 1} values here ...", code)
+    if shown != code:
+        yield "<p>Long rows of numbers are left out here; the record holds them.</p>"
+    yield f"<pre>{escape(shown)}</pre>"

@@ -283,7 +283,7 @@ def _finish(blocks: list[Block]) -> None:
     """Make every table square, set drawings that follow each other side by side, and keep a short text with the table that it leads to."""
     _gather_drawings(blocks)
     for block, following in zip(blocks, [*blocks[1:], {"kind": ""}], strict=True):
-        if block["kind"] == "text" and following["kind"] == "table":
+        if block["kind"] == "text" and following["kind"] in ("table", "heading" if _is_legend(block) else ""):
             block["leads"] = sum(len(run.get("t", "")) for run in block["runs"]) <= _SHORT
         if block["kind"] == "table":
             _square(block)
@@ -291,6 +291,10 @@ def _finish(blocks: list[Block]) -> None:
             _finish(inside)
         if block["kind"] == "whole":
             _finish(block["blocks"])
+
+
+def _is_legend(block: Block) -> bool:
+    return "quiet" in block["class"]
 
 
 def _gather_drawings(blocks: list[Block]) -> None:

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import re
+import subprocess
 from pathlib import Path
 from typing import Any
 
@@ -45,3 +47,27 @@ def test_a_memo_needs_no_network(browser: Any, memos: list[Path], which: int, wi
     assert page.evaluate("document.documentElement.scrollWidth") <= width + 1
     assert "specific impulse" in page.inner_text("body")
     context.close()
+
+
+@pytest.mark.parametrize(("paper", "size"), [("A4", (595, 842)), ("Letter", (612, 792))])
+@pytest.mark.parametrize("which", [0, 1])
+def test_a_memo_prints_on_both_papers(browser: Any, memos: list[Path], tmp_path: Path, which: int, paper: str, size: tuple[int, int]) -> None:
+    """Page numbers stand at the foot, nothing is cut at the right edge, and no heading is left alone at the foot of a page."""
+    page = browser.new_page()
+    page.goto(memos[which].as_uri())
+    printed = tmp_path / "memo.pdf"
+    page.pdf(path=str(printed), format=paper)
+    page.close()
+    info = subprocess.run(["pdfinfo", str(printed)], capture_output=True, text=True, check=True).stdout
+    wide, high = (round(float(side)) for side in re.findall(r"Page size:\s+([0-9.]+) x ([0-9.]+)", info)[0])
+    assert abs(wide - size[0]) <= 1
+    assert abs(high - size[1]) <= 1
+    count = int(re.findall(r"Pages:\s+(\d+)", info)[0])
+    pages = subprocess.run(["pdftotext", "-layout", str(printed), "-"], capture_output=True, text=True, check=True).stdout.split("\f")
+    headings = {"Chamber", "Nozzle", "Records", "Cautions", "Code", "4. Inputs", "6. Working", "8. Checks", "11. References", "12. Provenance"}
+    for number, text in enumerate(pages[:count], 1):
+        lines = [line.strip() for line in text.splitlines() if line.strip()]
+        assert f"page {number} of {count}" in lines[-1]
+        assert lines[-2] not in headings, (number, lines[-3:])
+    boxes = subprocess.run(["pdftotext", "-bbox", str(printed), "-"], capture_output=True, text=True, check=True).stdout
+    assert max(float(edge) for edge in re.findall(r'xMax="([0-9.]+)"', boxes)) < wide - 20

@@ -1,5 +1,6 @@
 """Records of every kind of object: verified, set as memos, compared with each other, every number traced."""
 
+import html
 import itertools
 import json
 
@@ -35,7 +36,7 @@ def analyses():
     made = demo_firing(target, 1)
     options = {"throat_before": made.throat_before, "throat_after": made.throat_after, "throat_growth": made.throat_growth}
     calibration = {name: f"{100.0 * share:g} %" for name, share in CALIBRATION.items()}
-    yield "firing", pk.HotFire(target, made.table, {name: column for name, column in HEADERS.items()}, calibration=calibration, **options)
+    yield "firing", pk.HotFire(target, made.table, HEADERS, calibration=calibration, **options)
 
 
 RECORDS = {name: one.record(title=name, author="A. Analyst") for name, one in itertools.chain(OBJECTS.items(), others(), analyses())}
@@ -74,3 +75,21 @@ def test_unlike_records_compare():
 def test_an_object_on_one_side_is_told_in_a_word():
     text = str(RECORDS["case"].compare(RECORDS["performance"]))
     assert "performance | (absent) | present, 1 entry" in text
+
+
+def test_the_samples_of_a_firing_are_left_out_of_its_memo(tmp_path):
+    page = RECORDS["firing"].save(tmp_path / "x.html").read_text(encoding="utf-8")
+    text, _, _ = page.partition("<template")
+    assert "values here" in text
+    assert "the record holds them" in text
+    assert len(RECORDS["firing"].to_bytes()) > 5 * len(text[text.index("The same calculation as a script") :])
+
+
+@pytest.mark.parametrize("name", ["study", "uncertainty", "reconciliation", "firing"])
+def test_the_memo_of_an_analysis_tells_its_whole_sheet(name, tmp_path):
+    page = RECORDS[name].save(tmp_path / "x.html").read_text(encoding="utf-8")
+    sections = RECORDS[name].calculation.report().sections
+    assert sections
+    for section in sections:
+        assert f"<h3>{html.escape(section.title)}</h3>" in page
+        assert all(html.escape(line) in page for line in section.lines)
