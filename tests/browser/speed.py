@@ -7,19 +7,20 @@ from typing import Any
 MOVE = """async (path) => {
   const root = document.querySelector('.pk-panel');
   const slider = root.querySelector(`.pk-control[data-path="${path}"] .pk-slider`);
-  const readout = root.querySelector('.pk-answer[data-name="thrust"] b');
+  // the text beside the slider and the readouts are written together; a readout alone may stand still at a maximum
+  const text = root.querySelector(`.pk-control[data-path="${path}"] .pk-text`);
   const plots = [...root.querySelectorAll('.pk-figure')].map((figure) => figure.__propkit);
   const frame = () => new Promise((done) => requestAnimationFrame(done));
   const times = [];
   let direction = 1;
   for (let move = 0; move < COUNT; move++) {
-    const before = readout.textContent, drawn = plots.map((plot) => plot.count);
+    const before = text.value, drawn = plots.map((plot) => plot.count);
     const step = Number(slider.step);
     if (slider.valueAsNumber + 3 * direction * step > Number(slider.max) || slider.valueAsNumber + 3 * direction * step < Number(slider.min)) direction = -direction;
     slider.valueAsNumber += 2 * direction * step;
     const start = performance.now();
     slider.dispatchEvent(new Event('input', {bubbles: true}));
-    while (root.querySelector('.pk-answer[data-name="thrust"] b').textContent === before || plots.some((plot, n) => plot.count === drawn[n])) {
+    while (text.value === before || plots.some((plot, n) => plot.count === drawn[n])) {
       if (performance.now() - start > 5000) return {times, stuck: move};
       await new Promise((done) => setTimeout(done, 1));
     }
