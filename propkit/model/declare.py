@@ -56,9 +56,11 @@ class Bounds:
 
     def text(self, unit: str) -> str:
         """Return the range in words, for instance ``above 0 Pa and at most 1e+08 Pa``."""
-        shown = units.shown_unit(unit)
+        # a person reads angles in degrees
+        shown_in = "degree" if unit == "radian" else unit
+        shown = units.shown_unit(shown_in)
         parts = [
-            f"{word} {limit:g}{f' {shown}' if shown else ''}"
+            f"{word} {units.convert(limit, unit, shown_in):g}{f' {shown}' if shown else ''}"
             for word, limit in (
                 ("at least", self.at_least),
                 ("above", self.above),

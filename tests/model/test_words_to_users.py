@@ -137,3 +137,8 @@ def test_the_formula_of_a_blend_is_shown_to_four_digits():
     table = next(s.table for s in pk.PropellantCase("LOX", blend, mixture_ratio=2).sections("SI") if s.name == "propellants")
     formula = next(column for column in table.columns if column.name == "formula").values[1]
     assert all(len(part.lstrip("CHO").replace(".", "").lstrip("0")) <= 4 for part in formula.split())
+
+
+def test_the_range_of_an_angle_is_told_in_degrees():
+    with pytest.raises(pk.InputError, match="above 0 ° and below 90 °"):
+        pk.Cone(15)
