@@ -78,20 +78,34 @@ def _parser() -> argparse.ArgumentParser:
     verify.add_argument("files", type=Path, nargs="+", metavar="FILE")
     verify.add_argument("--json", action="store_true", help="print the outcome as JSON")
     verify.add_argument("--junit", type=Path, metavar="XML", help="write the outcome as JUnit XML too")
-    verify.add_argument("--rerun", action="store_true", help="EXECUTE each notebook in a clean kernel and compare the records it makes with those it carries")
+    verify.add_argument(
+        "--rerun",
+        action="store_true",
+        help="EXECUTE each notebook in a clean kernel and compare the records it makes with those it carries",
+    )
     verify.set_defaults(command=_verify)
 
-    compare = commands.add_parser("compare", help="show what differs between two records", description="Show what differs between two records. Nothing is executed.")
+    compare = commands.add_parser(
+        "compare", help="show what differs between two records", description="Show what differs between two records. Nothing is executed."
+    )
     compare.add_argument("first", type=Path, metavar="A")
     compare.add_argument("second", type=Path, metavar="B")
     compare.add_argument("--html", type=Path, metavar="FILE", help="write the comparison as a page too")
     compare.set_defaults(command=_compare)
 
-    propellants = commands.add_parser("propellants", help="list the propellants, or show one", description="List the propellants of the library, or show one with its source and hazards.")
+    propellants = commands.add_parser(
+        "propellants",
+        help="list the propellants, or show one",
+        description="List the propellants of the library, or show one with its source and hazards.",
+    )
     propellants.add_argument("name", nargs="?", metavar="NAME")
     propellants.set_defaults(command=_propellants)
 
-    notebooks = commands.add_parser("notebooks", help="copy the notebooks that come with propkit", description="Copy the notebooks that come with propkit into a folder.")
+    notebooks = commands.add_parser(
+        "notebooks",
+        help="copy the notebooks that come with propkit",
+        description="Copy the notebooks that come with propkit into a folder.",
+    )
     notebooks.add_argument("folder", type=Path, metavar="DIR")
     notebooks.add_argument("--open", action="store_true", help="open JupyterLab there (extra notebook)")
     notebooks.set_defaults(command=_notebooks)
@@ -101,7 +115,15 @@ def _parser() -> argparse.ArgumentParser:
 def _memo(options: argparse.Namespace) -> int:
     from propkit.memo.notebook import write_memo
 
-    outcome = write_memo(options.notebook, options.out, execute=not options.as_is, timeout=options.timeout, crate=options.crate, paper=options.paper, say=_say)
+    outcome = write_memo(
+        options.notebook,
+        options.out,
+        execute=not options.as_is,
+        timeout=options.timeout,
+        crate=options.crate,
+        paper=options.paper,
+        say=_say,
+    )
     for path in outcome.written:
         print(f"wrote {path}")
     if outcome.error:

@@ -190,9 +190,7 @@ _ROWS = (
         4,
     ),
     Quantity("additives", TEXT, r"", "additives", "what is added, as mass fractions of the whole propellant flow"),
-    Quantity(
-        "additive_fraction", NUMBER, r"w_{ad}", "additive fraction", "mass of all additives over the whole mass", 4
-    ),
+    Quantity("additive_fraction", NUMBER, r"w_{ad}", "additive fraction", "mass of all additives over the whole mass", 4),
     Quantity("condensed", TEXT, r"", "condensed products", "whether liquids and solids may form among the products"),
     Quantity("propellant", TEXT, r"", "propellant", "the single propellant, or the mixture that burns as one"),
     Quantity("propellant_pressure", PRESSURE, r"p_{pr}", "propellant pressure", "pressure as stored or fed", 4),
@@ -215,15 +213,9 @@ _ROWS = (
     Quantity("gas", TEXT, r"", "gas", "the gas that expands as it is, without combustion"),
     Quantity("case.temperature", TEMPERATURE, r"T", "temperature", "temperature of the gas as stored", 5),
     Quantity("tank_pressure", PRESSURE, r"p_{tk}", "tank pressure", "pressure at which the gas is stored", 5),
-    Quantity(
-        "film_fraction", NUMBER, r"w_{f}", "film fraction", "mass flow of the film over the whole mass flow", 4
-    ),
-    Quantity(
-        "film_mixture_ratio", NUMBER, r"r_{f}", "film mixture ratio", "oxidizer over fuel mass flow in the film", 4
-    ),
-    Quantity(
-        "core_mixture_ratio", NUMBER, r"r_{c}", "core mixture ratio", "oxidizer over fuel mass flow in the core", 4
-    ),
+    Quantity("film_fraction", NUMBER, r"w_{f}", "film fraction", "mass flow of the film over the whole mass flow", 4),
+    Quantity("film_mixture_ratio", NUMBER, r"r_{f}", "film mixture ratio", "oxidizer over fuel mass flow in the film", 4),
+    Quantity("core_mixture_ratio", NUMBER, r"r_{c}", "core mixture ratio", "oxidizer over fuel mass flow in the core", 4),
     # chamber
     Quantity(
         "chamber.pressure",
@@ -234,9 +226,7 @@ _ROWS = (
         5,
     ),
     Quantity("pressure_at", TEXT, r"", "pressure quoted at", "where the quoted chamber pressure holds"),
-    Quantity(
-        "contraction_ratio", NUMBER, r"\epsilon_{c}", "contraction ratio", "chamber cross-section over throat area", 4
-    ),
+    Quantity("contraction_ratio", NUMBER, r"\epsilon_{c}", "contraction ratio", "chamber cross-section over throat area", 4),
     Quantity(
         "cstar_efficiency",
         NUMBER,
@@ -295,9 +285,7 @@ _ROWS = (
     Quantity("mach", NUMBER, r"M", "Mach number", "velocity over sound speed", 5),
     Quantity("sound_speed", SPEED, r"a", "sound speed", "speed of sound of the flow model", 6),
     Quantity("molar_mass", MOLAR_MASS, r"\mathrm{M}", "molar mass", "mass over moles of gas", 6),
-    Quantity(
-        "isentropic_exponent", NUMBER, r"\gamma", "isentropic exponent", "d ln p / d ln rho at constant entropy", 5
-    ),
+    Quantity("isentropic_exponent", NUMBER, r"\gamma", "isentropic exponent", "d ln p / d ln rho at constant entropy", 5),
     Quantity("entropy", SPECIFIC_HEAT, r"s", "entropy", "specific entropy, 1 bar standard state", 6),
     Quantity("mass_flux", MASS_FLUX, r"\rho u", "mass flux", "mass flow per area", 6),
     Quantity(
@@ -318,9 +306,7 @@ _ROWS = (
     Quantity("throat_area", AREA, r"A_{t}", "throat area", "geometric throat area", 5),
     Quantity("exit_diameter", LENGTH, r"d_{e}", "exit diameter", "geometric exit diameter", 5),
     Quantity("exit_area", AREA, r"A_{e}", "exit area", "geometric exit area", 5),
-    Quantity(
-        "discharge_coefficient", NUMBER, r"C_{d}", "discharge coefficient", "effective over geometric throat area", 4
-    ),
+    Quantity("discharge_coefficient", NUMBER, r"C_{d}", "discharge coefficient", "effective over geometric throat area", 4),
     Quantity(
         "sizing_ambient",
         PRESSURE,
@@ -359,9 +345,7 @@ _ROWS = (
     Quantity("ambient", PRESSURE, r"p_{a}", "ambient pressure", "pressure of the surroundings", 5),
     Quantity("ambient_pressure", PRESSURE, r"p_{a}", "ambient pressure", "pressure of the surroundings", 5),
     Quantity("thrust", FORCE, r"F", "thrust", "full-flowing thrust at the given ambient pressure", 5),
-    Quantity(
-        "thrust_vacuum", FORCE, r"F_{vac}", "thrust in vacuum", "full-flowing thrust against no ambient pressure", 5
-    ),
+    Quantity("thrust_vacuum", FORCE, r"F_{vac}", "thrust in vacuum", "full-flowing thrust against no ambient pressure", 5),
     Quantity(
         "specific_impulse",
         DURATION,
@@ -411,27 +395,55 @@ _ROWS = (
         "oxidizer part of the propellant mass flow",
         5,
     ),
-    Quantity(
-        "fuel_mass_flow", MASS_FLOW, r"\dot{m}_{fu}", "fuel mass flow", "fuel part of the propellant mass flow", 5
-    ),
+    Quantity("fuel_mass_flow", MASS_FLOW, r"\dot{m}_{fu}", "fuel mass flow", "fuel part of the propellant mass flow", 5),
     Quantity("losses", TEXT, r"", "losses", "what is lost from ideal to delivered, by name"),
-    Quantity("minimum_pressure", PRESSURE, r"p_{c,min}", "minimum chamber pressure", "lowest chamber pressure at which the chamber is known to run", 4),
+    Quantity(
+        "minimum_pressure",
+        PRESSURE,
+        r"p_{c,min}",
+        "minimum chamber pressure",
+        "lowest chamber pressure at which the chamber is known to run",
+        4,
+    ),
     Quantity("altitude", ALTITUDE, r"h", "altitude", "geometric altitude in the standard atmosphere", 4),
     # answers: heat load, burn, throttling
     Quantity("wall_temperature", TEMPERATURE, r"T_{w}", "wall temperature", "temperature of the gas-side wall", 5),
     Quantity("heat_load", POWER, r"\dot{Q}", "heat load", "heat flow into the wetted wall", 4),
     Quantity("peak_heat_flux", HEAT_FLUX, r"q_{max}", "largest heat flux", "largest convective heat flux along the wall", 4),
-    Quantity("peak_heat_flux_equilibrium", HEAT_FLUX, r"q_{max,eq}", "largest heat flux, equilibrium heat capacity", "the same with the heat capacity of a reacting gas: the price of the frozen one", 4),
+    Quantity(
+        "peak_heat_flux_equilibrium",
+        HEAT_FLUX,
+        r"q_{max,eq}",
+        "largest heat flux, equilibrium heat capacity",
+        "the same with the heat capacity of a reacting gas: the price of the frozen one",
+        4,
+    ),
     Quantity("peak_position", LENGTH, r"x_{max}", "position of the largest flux", "axial position of the largest flux, throat at zero", 4),
-    Quantity("heat_transfer_coefficient", HEAT_TRANSFER, r"h", "heat transfer coefficient", "heat flux over adiabatic less actual wall temperature", 4),
+    Quantity(
+        "heat_transfer_coefficient",
+        HEAT_TRANSFER,
+        r"h",
+        "heat transfer coefficient",
+        "heat flux over adiabatic less actual wall temperature",
+        4,
+    ),
     Quantity("mean_heat_flux", HEAT_FLUX, r"q_{m}", "mean heat flux", "heat load over wetted area", 4),
-    Quantity("heat_share", NUMBER, r"", "share of the chamber power", "heat load over the power that cooling the gas to 298.15 K would give", 3),
+    Quantity(
+        "heat_share", NUMBER, r"", "share of the chamber power", "heat load over the power that cooling the gas to 298.15 K would give", 3
+    ),
     Quantity("viscosity", VISCOSITY, r"\mu", "viscosity at rest", "dynamic viscosity of the gas at rest", 4),
     Quantity("prandtl_number", NUMBER, r"Pr", "Prandtl number", "Prandtl number of the gas at rest, frozen", 4),
     Quantity("coolant", TEXT, r"", "coolant", "propellant that takes up the heat"),
     Quantity("coolant_mass_flow", MASS_FLOW, r"\dot{m}_{k}", "coolant mass flow", "mass flow of the coolant", 4),
     Quantity("coolant_pressure", PRESSURE, r"p_{k}", "coolant pressure", "pressure of the coolant in the jacket", 4),
-    Quantity("coolant_temperature_rise", TEMPERATURE_DIFFERENCE, r"\Delta T_{k}", "coolant temperature rise", "temperature of the coolant after less before the jacket", 4),
+    Quantity(
+        "coolant_temperature_rise",
+        TEMPERATURE_DIFFERENCE,
+        r"\Delta T_{k}",
+        "coolant temperature rise",
+        "temperature of the coolant after less before the jacket",
+        4,
+    ),
     Quantity("coolant_temperature", TEMPERATURE, r"T_{k}", "coolant temperature after", "temperature of the coolant after the jacket", 5),
     Quantity("coolant_limit", TEMPERATURE, r"T_{k,max}", "limit of the coolant", "temperature that the coolant must stay below", 5),
     Quantity("duration", BURN_TIME, r"t_{b}", "burn duration", "time of steady burning", 4),
@@ -444,7 +456,14 @@ _ROWS = (
     Quantity("propellant_tank_volume", VOLUME, r"V_{p}", "propellant tank volume", "volume of the loaded propellant and its ullage", 4),
     Quantity("ullage", NUMBER, r"", "ullage", "share of the tank volume that holds gas when loaded", 3),
     Quantity("residuals", NUMBER, r"", "residuals", "share of the loaded propellant that is left", 3),
-    Quantity("full_flow_pressure", PRESSURE, r"p_{c,full}", "full-flow chamber pressure", "chamber pressure below which the middle of three criteria predicts separation at sea level", 4),
+    Quantity(
+        "full_flow_pressure",
+        PRESSURE,
+        r"p_{c,full}",
+        "full-flow chamber pressure",
+        "chamber pressure below which the middle of three criteria predicts separation at sea level",
+        4,
+    ),
     # propellants
     Quantity("formula", TEXT, r"", "formula", "atoms of one formula unit"),
     Quantity("role", TEXT, r"", "role", "what the propellant serves as"),
@@ -468,9 +487,7 @@ _ROWS = (
         "assigned enthalpy as given",
         "formation at 298.15 K and the change to the state of the propellant",
     ),
-    Quantity(
-        "specific_enthalpy", SPECIFIC_ENERGY, r"h", "assigned enthalpy by mass", "assigned enthalpy over molar mass", 6
-    ),
+    Quantity("specific_enthalpy", SPECIFIC_ENERGY, r"h", "assigned enthalpy by mass", "assigned enthalpy over molar mass", 6),
     Quantity(
         "oxygen_balance",
         NUMBER,
@@ -479,9 +496,7 @@ _ROWS = (
         "oxygen left over (positive) or missing after full oxidation, over the mass",
         4,
     ),
-    Quantity(
-        "heat_capacity", SPECIFIC_HEAT, r"c_{p}", "specific heat", "specific heat used for other stored temperatures", 4
-    ),
+    Quantity("heat_capacity", SPECIFIC_HEAT, r"c_{p}", "specific heat", "specific heat used for other stored temperatures", 4),
     Quantity(
         "heat_capacity_range",
         TEXT,
@@ -489,9 +504,7 @@ _ROWS = (
         "range of the specific heat",
         "temperatures between which the specific heat holds",
     ),
-    Quantity(
-        "freezing_point", TEMPERATURE, r"T_{m}", "freezing point", "temperature at which the propellant freezes", 5
-    ),
+    Quantity("freezing_point", TEMPERATURE, r"T_{m}", "freezing point", "temperature at which the propellant freezes", 5),
     Quantity(
         "boiling_point",
         TEMPERATURE,

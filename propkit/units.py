@@ -47,16 +47,11 @@ SHOWN = {
 
 _NUMBER = r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?"
 _TEXT = re.compile(rf"\s*(?P<number>{_NUMBER})\s*(?P<unit>.*?)\s*", re.DOTALL)
-_TOKEN = re.compile(
-    r"\s*(?:(?P<name>[A-Za-zµμ°%]+)(?P<digit>-?[1-9](?![0-9]))?|(?P<operator>\*\*|\^|\*|·|/|\(|\)|-?[1-9](?![0-9])))"
-)
-_GAUGE = re.compile(
-    r"(?:(?P<unit>psi|bar|mbar|[kMh]?Pa|atm)\s*\(?\s*(?:g|gauge|gage)\s*\)?|(?P<unit2>psi)\s*g)", re.IGNORECASE
-)
+_TOKEN = re.compile(r"\s*(?:(?P<name>[A-Za-zµμ°%]+)(?P<digit>-?[1-9](?![0-9]))?|(?P<operator>\*\*|\^|\*|·|/|\(|\)|-?[1-9](?![0-9])))")
+_GAUGE = re.compile(r"(?:(?P<unit>psi|bar|mbar|[kMh]?Pa|atm)\s*\(?\s*(?:g|gauge|gage)\s*\)?|(?P<unit2>psi)\s*g)", re.IGNORECASE)
 _ABSOLUTE = re.compile(r"(?P<unit>psi|bar|mbar|[kMh]?Pa|atm)\s*\(?\s*(?:a|abs|absolute)\s*\)?", re.IGNORECASE)
 _SUPERSCRIPTS = str.maketrans(
-    dict(zip("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-", strict=True))
-    | {"\u2103": "°C", "\u2109": "°F", "\u212a": "K", "\u00ba": "°", "\u02da": "°"}
+    dict(zip("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-", strict=True)) | {"\u2103": "°C", "\u2109": "°F", "\u212a": "K", "\u00ba": "°", "\u02da": "°"}
 )
 _MINUS = re.compile("^\\s*\N{MINUS SIGN}")
 """The minus of a printed page, as sheets show it, in front of a number."""
@@ -96,14 +91,8 @@ def to_si(value: object, unit: str, name: str = "value", *, difference: bool = F
         item = getattr(value, "item", None)
         if getattr(value, "shape", None) == () and item is not None and not isinstance(item(), bool):
             return to_si(item(), unit, name)
-        hint = (
-            "A study takes lists of values: pk.Study(...)."
-            if isinstance(value, (list, tuple)) or hasattr(value, "shape")
-            else ""
-        )
-        raise _wrong(
-            name, _shorten(repr(value)), f"{_kind_text(unit)} (text, a quantity or a number in {_si_text(unit)})", hint
-        )
+        hint = "A study takes lists of values: pk.Study(...)." if isinstance(value, (list, tuple)) or hasattr(value, "shape") else ""
+        raise _wrong(name, _shorten(repr(value)), f"{_kind_text(unit)} (text, a quantity or a number in {_si_text(unit)})", hint)
     return _finite(_as_float(value), unit, name, repr(value))
 
 
@@ -138,9 +127,7 @@ def parse(text: str, unit: str, name: str = "value") -> float:
     number, unit_text = float(match["number"]), match["unit"]
     if not unit_text:
         if unit:
-            raise _wrong(
-                name, shown, allowed, f"The unit is missing: write {match['number']} {_si_text(unit)} if that is meant."
-            )
+            raise _wrong(name, shown, allowed, f"The unit is missing: write {match['number']} {_si_text(unit)} if that is meant.")
         return _finite(number, unit, name, shown)
     gauge = _GAUGE.fullmatch(unit_text)
     if gauge and unit == "Pa":
@@ -224,15 +211,11 @@ def _from_quantity(value: Any, unit: str, name: str, difference: bool) -> float:
     try:
         magnitude = value.to(unit or "dimensionless").magnitude
     except Exception as error:
-        raise _wrong(
-            name, shown, f"{_kind_text(unit)}, for example {_example(unit)}", "The quantity is of another kind."
-        ) from error
+        raise _wrong(name, shown, f"{_kind_text(unit)}, for example {_example(unit)}", "The quantity is of another kind.") from error
     if getattr(magnitude, "shape", ()) not in ((), None):
         raise _wrong(name, shown, "one value", "A study takes lists of values: pk.Study(...).")
     if unit == "K" and not difference and "delta_" in str(value.units):
-        raise _wrong(
-            name, shown, f"{_kind_text(unit)}, for example {_example(unit)}", "That is a temperature difference."
-        )
+        raise _wrong(name, shown, f"{_kind_text(unit)}, for example {_example(unit)}", "That is a temperature difference.")
     if isinstance(magnitude, bool) or not isinstance(magnitude, (numbers.Real, decimal.Decimal)):
         item = getattr(magnitude, "item", None)
         magnitude = item() if item is not None else magnitude
@@ -322,9 +305,7 @@ def _hint_for_text(text: str) -> str:
 
 def _gauge_hint(number: str, unit: str) -> str:
     base = {"psi": ("psi", 14.695949), "atm": ("atm", 1.0), "bar": ("bar", 1.01325), "mbar": ("mbar", 1013.25)}
-    spelled, standard = base.get(
-        unit.lower(), (unit, {"kpa": 101.325, "mpa": 0.101325, "hpa": 1013.25}.get(unit.lower(), 101325.0))
-    )
+    spelled, standard = base.get(unit.lower(), (unit, {"kpa": 101.325, "mpa": 0.101325, "hpa": 1013.25}.get(unit.lower(), 101325.0)))
     return (
         f"That is a gauge pressure; pressures are absolute. Over the standard atmosphere it is {float(number) + standard:.6g} {spelled}; "
         f"use the barometer reading of the test if there is one."

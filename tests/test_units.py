@@ -33,9 +33,7 @@ def test_every_kind_of_real_number_is_read(value):
     assert units.to_si(value, "Pa") == pytest.approx(7e6, rel=1e-15)
 
 
-@pytest.mark.parametrize(
-    "text", ["25 °C", "25 \N{DEGREE CELSIUS}", "25 \N{MASCULINE ORDINAL INDICATOR}C", "298.15 \N{KELVIN SIGN}"]
-)
+@pytest.mark.parametrize("text", ["25 °C", "25 \N{DEGREE CELSIUS}", "25 \N{MASCULINE ORDINAL INDICATOR}C", "298.15 \N{KELVIN SIGN}"])
 def test_degree_signs_as_keyboards_type_them(text):
     assert units.to_si(text, "K") == pytest.approx(298.15, abs=1e-9)
 

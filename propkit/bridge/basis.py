@@ -100,9 +100,7 @@ class Basis:
         missing = [symbol for symbol in elements if symbol not in known]
         if missing:
             hint = "Neither basis has a species that holds it."
-            raise InputError(
-                [Problem("elements", repr(symbol), "an element of the species data", hint) for symbol in missing]
-            )
+            raise InputError([Problem("elements", repr(symbol), "an element of the species data", hint) for symbol in missing])
         composition = np.array([[dict(record.atoms).get(symbol, 0.0) for symbol in elements] for record in records])
         weights = np.array([atomic_weight(symbol) for symbol in elements])
         temperatures = np.array([record.temperatures for record in records])
@@ -263,9 +261,7 @@ def _read() -> tuple[_Record, ...]:
     records = []
     for condensed, file in _FILES.items():
         for species in cantera.Species.list_from_file(file):
-            usable = (
-                isinstance(species.thermo, cantera.NasaPoly2) and not species.charge and not species.name.endswith("+")
-            )
+            usable = isinstance(species.thermo, cantera.NasaPoly2) and not species.charge and not species.name.endswith("+")
             if usable and "E" not in species.composition:
                 records.append(_record(species, condensed))
     return tuple(records)

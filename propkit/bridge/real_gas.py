@@ -132,9 +132,7 @@ def _real_mass_flux(fluid: Any, row: PropellantRow, temperature: float, pressure
         fluxes.append(fluid.rhomass() * math.sqrt(max(2.0 * (enthalpy - fluid.hmass()), 0.0)))
     largest = _peak(fluxes)
     if largest is None:
-        raise RangeError(
-            f"The isentrope of {row.name} leaves CoolProp's range before the throat.", temperature=temperature
-        )
+        raise RangeError(f"The isentrope of {row.name} leaves CoolProp's range before the throat.", temperature=temperature)
     return largest, float(compressibility)
 
 

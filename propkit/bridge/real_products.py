@@ -68,7 +68,12 @@ class Departure:
 
 
 def departure(
-    temperature: float, pressure: float, mole_fractions: Mapping[str, float], area_ratio: float, thermo_basis: str, elements: tuple[str, ...]
+    temperature: float,
+    pressure: float,
+    mole_fractions: Mapping[str, float],
+    area_ratio: float,
+    thermo_basis: str,
+    elements: tuple[str, ...],
 ) -> Departure:
     """Return what the ideal-gas assumption costs along a nozzle.
 
@@ -111,7 +116,10 @@ def departure(
     import cantera
 
     try:
-        ideal, real = (_expand(_phase(kind, thermo_basis, elements, shares), temperature, pressure, shares, area_ratio) for kind in ("ideal-gas", "Redlich-Kwong"))
+        ideal, real = (
+            _expand(_phase(kind, thermo_basis, elements, shares), temperature, pressure, shares, area_ratio)
+            for kind in ("ideal-gas", "Redlich-Kwong")
+        )
     except (cantera.CanteraError, ValueError) as error:
         raise NotAvailableError("the cubic equation of state has no solution along this nozzle") from error
     flow, velocity, exit_pressure = (theirs / ours for theirs, ours in zip(real[1:], ideal[1:], strict=True))

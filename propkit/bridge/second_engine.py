@@ -202,9 +202,7 @@ class _Solver:
         """Return the present state, noting a species that matters outside its range."""
         gas = self.gas
         t = float(gas.T)
-        far = (gas.X > _CONCERNED) & (
-            (t < self.table.temperature_low - 1e-9) | (t > self.table.temperature_high + 1e-9)
-        )
+        far = (gas.X > _CONCERNED) & ((t < self.table.temperature_low - 1e-9) | (t > self.table.temperature_high + 1e-9))
         if far.any() and not self.outside:
             self.outside = f"{self.table.names[int(np.flatnonzero(far)[0])]} at {t:.1f} K"
         speed = float(np.sqrt(max(2.0 * (self.h0 - gas.h), 0.0)))

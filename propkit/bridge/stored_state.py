@@ -104,8 +104,7 @@ def stored_state(
             input_name,
             f"{at:g} K for {row.name!r}",
             f"{row.temperature:g} K, the temperature of its row",
-            "No specific heat of it is known here: give the propellant one (heat_capacity=), or its enthalpy at that "
-            "temperature.",
+            "No specific heat of it is known here: give the propellant one (heat_capacity=), or its enthalpy at that temperature.",
         )
     )
 
@@ -124,9 +123,7 @@ def open_fluid(row: PropellantRow) -> Any:
     try:
         from CoolProp.CoolProp import AbstractState
     except ImportError as error:
-        raise MissingExtraError(
-            "CoolProp", "fluids", f"The stored state of {row.name} at another temperature or pressure"
-        ) from error
+        raise MissingExtraError("CoolProp", "fluids", f"The stored state of {row.name} at another temperature or pressure") from error
     try:
         return AbstractState("HEOS", row.coolprop_fluid or "")
     except ValueError as error:
@@ -135,9 +132,7 @@ def open_fluid(row: PropellantRow) -> Any:
         ) from error
 
 
-def _update(
-    fluid: Any, row: PropellantRow, pair: str, first: float, second: float, at: float, pressure: float | None
-) -> None:
+def _update(fluid: Any, row: PropellantRow, pair: str, first: float, second: float, at: float, pressure: float | None) -> None:
     import CoolProp
 
     try:
@@ -146,9 +141,7 @@ def _update(
         where = f"{at:g} K" if pressure is None else f"{at:g} K and {pressure / 1e5:.4g} bar"
         frozen = row.freezing_point is not None and at < row.freezing_point
         why = f"it is below the freezing point, {row.freezing_point:g} K" if frozen else f"CoolProp says: {error}"
-        raise RangeError(
-            f"{row.name} has no fluid state at {where}: {why}.", temperature=at, pressure=pressure
-        ) from error
+        raise RangeError(f"{row.name} has no fluid state at {where}: {why}.", temperature=at, pressure=pressure) from error
 
 
 def _reference_enthalpy(fluid: Any, row: PropellantRow) -> float:
@@ -189,9 +182,7 @@ def _from_coolprop(row: PropellantRow, at: float, pressure: float | None) -> Sto
 def _hot_limit(row: PropellantRow, at: float, highest: float) -> list[str]:
     """Return a warning above the range of the equation of state; refuse what is far above it."""
     if at > _EXTRAPOLATED * highest:
-        raise RangeError(
-            f"{row.name} has no fluid state at {at:g} K: CoolProp has it up to {highest:g} K.", temperature=at
-        )
+        raise RangeError(f"{row.name} has no fluid state at {at:g} K: CoolProp has it up to {highest:g} K.", temperature=at)
     if at > highest:
         return [f"{row.name} at {at:g} K is above the range of its equation of state ({highest:g} K): extrapolated."]
     return []
@@ -220,9 +211,7 @@ def _pressure_taken(
     return max(min(row.pressure, SEA_LEVEL_PRESSURE), vapour_pressure), False
 
 
-def _coolprop_state(
-    fluid: Any, row: PropellantRow, at: float, pressure: float, ideal: bool, vapour_pressure: float | None
-) -> str:
+def _coolprop_state(fluid: Any, row: PropellantRow, at: float, pressure: float, ideal: bool, vapour_pressure: float | None) -> str:
     """Set the fluid to the state and return its phase."""
     if ideal:
         _update(fluid, row, "PT_INPUTS", _VANISHING_PRESSURE, at, at, None)
@@ -258,8 +247,7 @@ def _from_heat_capacity(row: PropellantRow, specific_heat: float, at: float, pre
     low, high = row.heat_capacity_range or (row.temperature, row.temperature)
     if not low <= at <= high:
         warnings.append(
-            f"{row.name} at {at:g} K is outside the range of its specific heat, {low:g} to {high:g} K: held constant "
-            f"beyond it."
+            f"{row.name} at {at:g} K is outside the range of its specific heat, {low:g} to {high:g} K: held constant beyond it."
         )
     density, slope = _density(row, at), row.density_slope or 0.0
     per_mass = specific_heat * (at - row.temperature)
@@ -268,9 +256,7 @@ def _from_heat_capacity(row: PropellantRow, specific_heat: float, at: float, pre
     elif row.phase == "gas":
         density = taken * row.molar_mass / (GAS_CONSTANT * at)
     kept = "" if slope or density is None or row.phase == "gas" else "; density of the row kept"
-    source = (
-        f"specific heat {specific_heat:g} J/(kg K) held constant ({row.heat_capacity_source or 'of the row'}){kept}"
-    )
+    source = f"specific heat {specific_heat:g} J/(kg K) held constant ({row.heat_capacity_source or 'of the row'}){kept}"
     return StoredState(at, taken, per_mass * row.molar_mass, density, row.phase, tuple(warnings), source)
 
 
@@ -285,15 +271,9 @@ def _limits(row: PropellantRow, at: float, pressure: float | None) -> list[str]:
     """Return warnings for a state beyond the freezing or boiling point of a row without an equation of state."""
     warnings = []
     if row.freezing_point is not None and row.phase == "liquid" and at < row.freezing_point:
-        warnings.append(
-            f"{row.name} at {at:g} K is below its freezing point ({row.freezing_point:g} K): the heat of fusion is "
-            f"left out."
-        )
+        warnings.append(f"{row.name} at {at:g} K is below its freezing point ({row.freezing_point:g} K): the heat of fusion is left out.")
     if row.freezing_point is not None and row.phase == "solid" and at > row.freezing_point:
-        warnings.append(
-            f"{row.name} at {at:g} K is above its melting point ({row.freezing_point:g} K): the heat of fusion is "
-            f"left out."
-        )
+        warnings.append(f"{row.name} at {at:g} K is above its melting point ({row.freezing_point:g} K): the heat of fusion is left out.")
     if row.boiling_point is None or row.phase != "liquid":
         return warnings
     boiling = vapour_pressure_estimate(row, at)
@@ -348,9 +328,7 @@ def _from_ingredients(row: PropellantRow, at: float, pressure: float | None) -> 
     warnings = _limits(row, at, pressure)
     per_mass, volume_ratio = 0.0, 0.0
     for part, share in row.components:
-        start, end = (
-            _ingredient(row, part, point, where) for point, where in ((row.temperature, row.pressure), (at, taken))
-        )
+        start, end = (_ingredient(row, part, point, where) for point, where in ((row.temperature, row.pressure), (at, taken)))
         per_mass += share * (end.enthalpy_change - start.enthalpy_change) / part.molar_mass
         if start.density and end.density and not math.isnan(volume_ratio):
             volume_ratio += share / end.density if row.density is None else share * start.density / end.density
@@ -361,13 +339,10 @@ def _from_ingredients(row: PropellantRow, at: float, pressure: float | None) -> 
         density: float | None = taken * row.molar_mass / (GAS_CONSTANT * at)
         if taken > _IDEAL_UP_TO:
             warnings.append(
-                f"{row.name} at {taken / 1e5:.3g} bar is summed from ideal gases: the real-gas change of its enthalpy "
-                f"is neglected."
+                f"{row.name} at {taken / 1e5:.3g} bar is summed from ideal gases: the real-gas change of its enthalpy is neglected."
             )
         if row.boiling_point is not None and at < row.boiling_point:
-            warnings.append(
-                f"{row.name} at {at:g} K is below its boiling point ({row.boiling_point:g} K): taken as a gas."
-            )
+            warnings.append(f"{row.name} at {at:g} K is below its boiling point ({row.boiling_point:g} K): taken as a gas.")
     else:
         density = None if math.isnan(volume_ratio) or row.density is None else row.density / volume_ratio
     source = "sum over its ingredients, heat of mixing unchanged: " + ", ".join(part.name for part, _ in row.components)
@@ -378,18 +353,11 @@ def _ingredient(row: PropellantRow, part: PropellantRow, at: float, pressure: fl
     """Return the state of one ingredient inside a mixture: of the phase of the mixture, whatever it would be alone."""
     if row.phase == "gas":
         return stored_state(part, at)
-    if (
-        part.phase == "liquid"
-        and part.coolprop_fluid
-        and part.freezing_point is not None
-        and at < part.freezing_point + 0.1
-    ):
+    if part.phase == "liquid" and part.coolprop_fluid and part.freezing_point is not None and at < part.freezing_point + 0.1:
         warm, colder = (_ingredient(row, part, part.freezing_point + step, pressure) for step in (5.1, 0.1))
         slope = (warm.enthalpy_change - colder.enthalpy_change) / 5.0
         change = colder.enthalpy_change + slope * (at - part.freezing_point - 0.1)
-        return StoredState(
-            at, pressure, change, colder.density, part.phase, (), "in solution below its own freezing point"
-        )
+        return StoredState(at, pressure, change, colder.density, part.phase, (), "in solution below its own freezing point")
     if part.coolprop_fluid and part.phase == "liquid":
         fluid = open_fluid(part)
         if at < fluid.T_critical():

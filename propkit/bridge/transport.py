@@ -21,9 +21,7 @@ WARN_ABOVE: Final = 0.02
 REFUSE_ABOVE: Final = 0.10
 """Mole fraction of species without transport data above which there is no answer."""
 
-SOURCE: Final = (
-    "Cantera, mixture-averaged transport, with the species data of gri30.yaml (GRI-Mech 3.0 transport database)."
-)
+SOURCE: Final = "Cantera, mixture-averaged transport, with the species data of gri30.yaml (GRI-Mech 3.0 transport database)."
 
 _OTHER_NAMES: Final = {
     "Ar": "AR",

@@ -107,12 +107,7 @@ class Accelerator:
 
     def serves(self, mixture: Mixture, contraction_ratio: Array) -> bool:
         """Whether the quick engine can take a batch."""
-        return (
-            len(mixture.atoms) >= FEWEST
-            and mixture.symbols == self.symbols
-            and servable(mixture)
-            and one_kind(contraction_ratio)
-        )
+        return len(mixture.atoms) >= FEWEST and mixture.symbols == self.symbols and servable(mixture) and one_kind(contraction_ratio)
 
     def combust(
         self, mixture: Mixture, pressure: Array, *, contraction_ratio: Values = np.inf, pressure_at: str = "injector", keep: bool = False

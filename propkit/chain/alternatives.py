@@ -147,9 +147,7 @@ def _reservoir(variants: Sequence[Variant]) -> tuple[Any, Array]:
         gas = chamber.given_gas(pressure=pressure, contraction_ratio=ratio, pressure_at=pressure_at, **properties)
         return gas, np.ones(len(variants), dtype=bool)
     mixtures = [source for source in sources if isinstance(source, Mixture)]
-    found = chamber.combust(
-        _joined(mixtures), variants[0].basis, pressure=pressure, contraction_ratio=ratio, pressure_at=pressure_at
-    )
+    found = chamber.combust(_joined(mixtures), variants[0].basis, pressure=pressure, contraction_ratio=ratio, pressure_at=pressure_at)
     status = (found.injector.status, found.stagnation.status, found.throat.status)
     good = np.all([np.asarray(part) == CONVERGED for part in status], axis=0)
     return replace(found, watched=None), good
@@ -160,8 +158,7 @@ def _joined(mixtures: Sequence[Mixture]) -> Mixture:
     composition = None
     if first.composition is not None:
         composition = {
-            name: np.concatenate([np.atleast_1d((mixture.composition or {})[name]) for mixture in mixtures])
-            for name in first.composition
+            name: np.concatenate([np.atleast_1d((mixture.composition or {})[name]) for mixture in mixtures]) for name in first.composition
         }
     columns = [np.concatenate([getattr(mixture, name) for mixture in mixtures]) for name in ("atoms", "enthalpy", "density")]
     return replace(first, atoms=columns[0], enthalpy=columns[1], density=columns[2], composition=composition)

@@ -124,9 +124,7 @@ def one_stream(stream: Stream, count: int = 1, condensed: bool = False) -> Mixtu
     """Return the mixture of a single stream, repeated `count` times."""
     symbols = element_order((stream,))
     atoms = np.tile(_atoms(stream, symbols), (count, 1))
-    enthalpy, density = (
-        np.array(np.broadcast_to(values(part), (count,))) for part in (stream.enthalpy, stream.density)
-    )
+    enthalpy, density = (np.array(np.broadcast_to(values(part), (count,))) for part in (stream.enthalpy, stream.density))
     return Mixture(symbols, atoms, enthalpy, density, condensed)
 
 
@@ -156,9 +154,7 @@ def hydrazine_bed(stream: Stream, ammonia_dissociation: float, molar_mass: float
     return Mixture(whole.symbols, whole.atoms, whole.enthalpy, whole.density, composition=composition)
 
 
-def unreacted_gas(
-    table: SpeciesTable, mole_fractions: Mapping[str, float], temperature: float, density: float = float("nan")
-) -> Mixture:
+def unreacted_gas(table: SpeciesTable, mole_fractions: Mapping[str, float], temperature: float, density: float = float("nan")) -> Mixture:
     """Return a gas that expands with the composition it is stored with, as an ideal gas.
 
     Parameters

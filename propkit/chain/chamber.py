@@ -77,8 +77,7 @@ class Combustion:
         values_there = {name: float(getattr(face, name)[index]) for name in ("pressure", "temperature", "density")}
         values_there |= {"velocity": 0.0, "mach": 0.0}
         values_there |= {
-            name: float(getattr(face, name)[index])
-            for name in ("sound_speed", "molar_mass", "isentropic_exponent", "enthalpy", "entropy")
+            name: float(getattr(face, name)[index]) for name in ("sound_speed", "molar_mass", "isentropic_exponent", "enthalpy", "entropy")
         }
         if self.table.condensed.any():
             values_there["condensed_mass_fraction"] = float(condensed_mass_fraction(self.table, face.amounts)[index])
@@ -205,9 +204,7 @@ def _held(table: SpeciesTable, mixture: Mixture, pressure: Array, ratio: Array, 
         mixture.atoms,
         mixture.enthalpy,
         at_rest(pressure if pressure_at == "injector" else rest.pressure * face),
-        held_gas.held_state(
-            table, amounts, rest.pressure * static, np.where(finite, inlet.temperature, temperature)
-        ),
+        held_gas.held_state(table, amounts, rest.pressure * static, np.where(finite, inlet.temperature, temperature)),
         np.where(finite, inlet.velocity, 0.0),
         rest,
         throat,
@@ -264,10 +261,7 @@ def given_gas(
 ) -> GivenGas:
     """Return the reservoir of a gas of constant properties; arguments as for `combust`, temperature at rest [K]."""
     arrays = np.broadcast_arrays(
-        *(
-            np.atleast_1d(values(v))
-            for v in (pressure, temperature, gas_constant, isentropic_exponent, contraction_ratio)
-        )
+        *(np.atleast_1d(values(v)) for v in (pressure, temperature, gas_constant, isentropic_exponent, contraction_ratio))
     )
     p, t, r, gamma, ratio = (np.array(array) for array in arrays)
     injector, stagnation = combustor.constant_property_pressures(p, gamma, ratio, pressure_at)

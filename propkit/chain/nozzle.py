@@ -49,9 +49,7 @@ class Expansion:
         for state, where in ((self.throat, "the throat"), (self.exit, "the exit")):
             if state.amounts is None:
                 continue
-            yield from warnings.composition_range(
-                self.table, state.amounts[index], float(state.temperature[index]), where, "stations"
-            )
+            yield from warnings.composition_range(self.table, state.amounts[index], float(state.temperature[index]), where, "stations")
             yield from warnings.supersaturation(self.watched, self.table, state.take([index]), where, "stations")
 
     def _phase_doubts(self, index: int) -> Iterator[tuple[str, str, str]]:
@@ -67,7 +65,9 @@ class Expansion:
                     "stations",
                 )
         elif self.condensed_mass_fraction(self.exit, index):
-            text = "Liquids and solids are held as they are in frozen flow: nothing melts, freezes or condenses, and heat capacities are held."
+            text = (
+                "Liquids and solids are held as they are in frozen flow: nothing melts, freezes or condenses, and heat capacities are held."
+            )
             yield text, "held-phases", "stations"
 
     def mach_beside_throat(self, index: int = 0) -> tuple[float, float] | None:
@@ -96,11 +96,7 @@ class Expansion:
         if self.table is None:
             return []
         listed = (("nozzle inlet", self.inlet), ("throat", self.throat), ("exit", self.exit))
-        return [
-            (name, sorted_fractions(self.table, state.amounts[index]))
-            for name, state in listed
-            if state.amounts is not None
-        ]
+        return [(name, sorted_fractions(self.table, state.amounts[index])) for name, state in listed if state.amounts is not None]
 
 
 def expand(
@@ -148,9 +144,7 @@ def expand(
     return Expansion(isentrope, inlet, throat, exit_state, flux, ratio, table, watched)
 
 
-def _isentrope(
-    reservoir: Combustion | GivenGas, flow: str, freeze_at: str | float | None, exponent: str | None
-) -> Isentrope:
+def _isentrope(reservoir: Combustion | GivenGas, flow: str, freeze_at: str | float | None, exponent: str | None) -> Isentrope:
     if isinstance(reservoir, GivenGas):
         return expansion.perfect_gas(
             reservoir.isentropic_exponent, reservoir.gas_constant, reservoir.temperature, reservoir.stagnation_pressure
@@ -161,14 +155,10 @@ def _isentrope(
         return shifting
     if flow == "constant-property":
         gamma = rest.isentropic_exponent if exponent == "equilibrium" else rest.frozen_isentropic_exponent
-        return expansion.perfect_gas(
-            gamma, rest.gas_constant, rest.temperature, rest.pressure, rest.enthalpy, rest.entropy
-        )
+        return expansion.perfect_gas(gamma, rest.gas_constant, rest.temperature, rest.pressure, rest.enthalpy, rest.entropy)
     if freeze_at == "chamber":
         inlet = reservoir.inlet
-        return expansion.frozen(
-            reservoir.table, inlet.amounts, rest.enthalpy, rest.entropy, rest.pressure, rest.temperature
-        )
+        return expansion.frozen(reservoir.table, inlet.amounts, rest.enthalpy, rest.entropy, rest.pressure, rest.temperature)
     return expansion.frozen_from(shifting, reservoir.throat, None if freeze_at == "throat" else float(freeze_at))  # type: ignore[arg-type]
 
 
@@ -191,9 +181,7 @@ def _inlet(reservoir: Combustion | GivenGas, isentrope: Isentrope, throat: FlowS
     return expansion.at_area_ratio(isentrope, throat.mass_flux, np.where(finite, ratio, 1e6), throat, supersonic=False)
 
 
-def state_at(
-    found: Expansion, *, area_ratio: float | None = None, pressure: float | None = None, supersonic: bool = True
-) -> FlowState:
+def state_at(found: Expansion, *, area_ratio: float | None = None, pressure: float | None = None, supersonic: bool = True) -> FlowState:
     """Return the state at a local area over effective throat area, or at a pressure [Pa]."""
     if pressure is not None:
         return expansion.at_pressure(found.isentrope, pressure, found.throat)

@@ -20,15 +20,11 @@ def times(ratio: float) -> str:
     return f"{ratio:.3g}" if ratio < 1e6 else "over a million"
 
 
-def composition_range(
-    table: SpeciesTable, amounts: Array, temperature: float, where: str, about: str
-) -> Iterator[tuple[str, str, str]]:
+def composition_range(table: SpeciesTable, amounts: Array, temperature: float, where: str, about: str) -> Iterator[tuple[str, str, str]]:
     """Yield a doubt when species that matter are outside the range of their data."""
     fractions = amounts / amounts.sum()
     gas = ~table.condensed
-    beyond = (
-        gas & (fractions > CONCERNED) & ((temperature < table.temperature_low) | (temperature > table.temperature_high))
-    )
+    beyond = gas & (fractions > CONCERNED) & ((temperature < table.temperature_low) | (temperature > table.temperature_high))
     if beyond.any():
         names = ", ".join(table.names[k] for k in np.argsort(-fractions) if beyond[k])
         side = "below" if temperature < float(table.temperature_low[beyond].max()) else "above"
@@ -47,9 +43,7 @@ def watched_phases(table: SpeciesTable) -> SpeciesTable | None:
     return table.take(rows) if rows else None
 
 
-def supersaturation(
-    phases: SpeciesTable | None, table: SpeciesTable, state: Any, where: str, about: str
-) -> Iterator[tuple[str, str, str]]:
+def supersaturation(phases: SpeciesTable | None, table: SpeciesTable, state: Any, where: str, about: str) -> Iterator[tuple[str, str, str]]:
     """Yield a doubt when a gas-only state holds more carbon or water vapour than a condensed phase would allow.
 
     Parameters
@@ -78,9 +72,7 @@ def supersaturation(
     possible = ~(phases.composition[:, ~present] > 0.0).any(axis=1)
     ratios = np.where(possible, ratios, 0.0)
     for key, words in WATCHED.items():
-        found = [
-            float(ratio) for name, ratio in zip(phases.names, ratios, strict=True) if name.partition(" (")[0] == key
-        ]
+        found = [float(ratio) for name, ratio in zip(phases.names, ratios, strict=True) if name.partition(" (")[0] == key]
         largest = max(found, default=0.0)
         if largest > 1.0:
             text = (

@@ -49,9 +49,7 @@ def parse_formula(text: str, name: str = "formula") -> dict[str, float]:
         raise InputError(Problem(name, repr(text), _ALLOWED, "Give the formula as text."))
     shown = repr(text) if len(text) <= 60 else repr(f"{text[:57]}...")
     if len(text) > _LONGEST or not text.strip():
-        raise InputError(
-            Problem(name, shown, _ALLOWED, "A formula cannot be empty." if not text.strip() else "That is too long.")
-        )
+        raise InputError(Problem(name, shown, _ALLOWED, "A formula cannot be empty." if not text.strip() else "That is too long."))
     plain = text.translate(_SUBSCRIPTS)
     counts: dict[str, float] = {}
     position = 0
@@ -68,9 +66,7 @@ def parse_formula(text: str, name: str = "formula") -> dict[str, float]:
         counts[symbol] = counts.get(symbol, 0.0) + count
         position = match.end()
         if not 1e-9 <= counts[symbol] <= _LARGEST_COUNT:
-            raise InputError(
-                Problem(name, shown, _ALLOWED, f"The count of {symbol} is beyond {_LARGEST_COUNT:g} or nearly 0.")
-            )
+            raise InputError(Problem(name, shown, _ALLOWED, f"The count of {symbol} is beyond {_LARGEST_COUNT:g} or nearly 0."))
     return counts
 
 

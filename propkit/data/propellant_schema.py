@@ -66,11 +66,7 @@ def _shares(value: Any) -> str | None:
     wanted = "a table of row names and shares above 0 that add up to 1 (1e-6)"
     if not isinstance(value, dict) or not value or not all(_is_number(share) and share > 0 for share in value.values()):
         return wanted
-    return (
-        None
-        if abs(math.fsum(value.values()) - 1.0) <= 1e-6
-        else f"{wanted}; these add up to {math.fsum(value.values()):.8g}"
-    )
+    return None if abs(math.fsum(value.values()) - 1.0) <= 1e-6 else f"{wanted}; these add up to {math.fsum(value.values()):.8g}"
 
 
 def _others(value: Any) -> str | None:
@@ -92,12 +88,8 @@ FIELDS: Mapping[str, Field] = {
     "formula": Field(_text, "element symbols with counts; the enthalpy is for one mole of it"),
     "mixture": Field(_shares, "row name -> share, instead of formula and enthalpy"),
     "mixture_by": Field(_one_of(("mass", "mole")), "whether the shares are of mass or of moles; mass unless given"),
-    "mixing_enthalpy_kJ_kg": Field(
-        _number(-5000, 5000, "kJ/kg"), "heat of mixing of a mixture, negative when released"
-    ),
-    "enthalpy_kJ_mol": Field(
-        _number(-1e5, 1e5, "kJ/mol"), "assigned enthalpy at the state of the row, per mole of formula"
-    ),
+    "mixing_enthalpy_kJ_kg": Field(_number(-5000, 5000, "kJ/kg"), "heat of mixing of a mixture, negative when released"),
+    "enthalpy_kJ_mol": Field(_number(-1e5, 1e5, "kJ/mol"), "assigned enthalpy at the state of the row, per mole of formula"),
     "enthalpy_kJ_kg": Field(_number(-1e5, 1e5, "kJ/kg"), "the same per kilogram, instead of enthalpy_kJ_mol"),
     "temperature_K": Field(_number(1, 2000, "K"), "temperature of the row", required=True),
     "pressure_kPa": Field(_number(0.001, 1e6, "kPa"), "pressure of the row; 100 kPa unless given"),
@@ -108,9 +100,7 @@ FIELDS: Mapping[str, Field] = {
     "density_temperature_K": Field(_number(1, 2000, "K"), "temperature of the density where it is another one"),
     "density_slope_kg_m3_K": Field(_number(-50, 0, "kg/m3/K"), "change of density with temperature"),
     "density_source": Field(_text, "where the density comes from"),
-    "heat_capacity_J_kg_K": Field(
-        _number(50, 20000, "J/(kg K)"), "specific heat for stored states where CoolProp has no fluid"
-    ),
+    "heat_capacity_J_kg_K": Field(_number(50, 20000, "J/(kg K)"), "specific heat for stored states where CoolProp has no fluid"),
     "heat_capacity_range_K": Field(_range, "where that specific heat holds"),
     "heat_capacity_source": Field(_text, "where the specific heat comes from"),
     "freezing_K": Field(_number(0.1, 5000, "K"), "freezing point"),
@@ -145,9 +135,7 @@ def row_problems(file: str, name: str, row: Any) -> list[Problem]:
             shown = repr(value) if len(repr(value)) <= 60 else f"{repr(value)[:57]}..."
             problems.append(Problem(f"{where} {field}", shown, wanted, f"It is {FIELDS[field].meaning}."))
     problems += [
-        Problem(f"{where} {field}", "missing", "given", f"It is {FIELDS[field].meaning}.")
-        for field in REQUIRED
-        if field not in row
+        Problem(f"{where} {field}", "missing", "given", f"It is {FIELDS[field].meaning}.") for field in REQUIRED if field not in row
     ]
     return problems + _combinations(where, row)
 
@@ -158,19 +146,13 @@ def _combinations(where: str, row: Mapping[str, Any]) -> list[Problem]:
     if "mixture" in row:
         for field in ("formula", *enthalpies):
             if field in row:
-                problems.append(
-                    Problem(
-                        f"{where} {field}", "given beside `mixture`", "left out", "A mixture takes both from its rows."
-                    )
-                )
+                problems.append(Problem(f"{where} {field}", "given beside `mixture`", "left out", "A mixture takes both from its rows."))
     else:
         if "formula" not in row:
             problems.append(Problem(f"{where} formula", "missing", "given, or `mixture` instead", ""))
         if len(enthalpies) != 1:
             given = "missing" if not enthalpies else "given twice"
-            problems.append(
-                Problem(f"{where} enthalpy_kJ_mol", given, "given once, as enthalpy_kJ_mol or enthalpy_kJ_kg", "")
-            )
+            problems.append(Problem(f"{where} enthalpy_kJ_mol", given, "given once, as enthalpy_kJ_mol or enthalpy_kJ_kg", ""))
         for field in ("mixture_by", "mixing_enthalpy_kJ_kg"):
             if field in row:
                 problems.append(Problem(f"{where} {field}", "given without `mixture`", "left out", ""))

@@ -65,9 +65,7 @@ def load_library(path: str | Path) -> Mapping[str, PropellantRow]:
     file = Path(path)
     try:
         if file.stat().st_size > _LARGEST_FILE:
-            raise StorageError(
-                f"{file} has more than {_LARGEST_FILE // 1_000_000} MB; that is not a propellant library."
-            )
+            raise StorageError(f"{file} has more than {_LARGEST_FILE // 1_000_000} MB; that is not a propellant library.")
         text = file.read_text(encoding="utf-8")
     except UnicodeDecodeError as error:
         raise InputError(Problem(str(file), "not text in UTF-8", "a TOML file", "")) from error
@@ -104,13 +102,9 @@ def find(name: str, rows: Mapping[str, PropellantRow] | None = None, input_name:
     if isinstance(name, str) and name in known:
         return known[name]
     if not isinstance(name, str):
-        raise InputError(
-            Problem(input_name, repr(name)[:60], "a library name or a pk.Propellant", 'For example "LOX".'), near=[]
-        )
+        raise InputError(Problem(input_name, repr(name)[:60], "a library name or a pk.Propellant", 'For example "LOX".'), near=[])
     near = suggestions(name, known)
-    raise InputError(
-        Problem(input_name, repr(name[:60]), "a name of the library or a pk.Propellant", _near_text(near)), near=near
-    )
+    raise InputError(Problem(input_name, repr(name[:60]), "a name of the library or a pk.Propellant", _near_text(near)), near=near)
 
 
 def suggestions(name: str, rows: Mapping[str, PropellantRow] | None = None, count: int = 4) -> list[str]:
@@ -316,9 +310,7 @@ def _row(name: str, fields: Mapping[str, Any], basic: dict[str, Any], origin: st
         freezing_point=fields.get("freezing_K"),
         boiling_point=fields.get("boiling_K"),
         vapour_pressure=None if "vapour_pressure_kPa" not in fields else fields["vapour_pressure_kPa"] * 1e3,
-        other_values=tuple(
-            OtherValue(item["source"], item["enthalpy_kJ_mol"] * 1e3) for item in fields.get("other_values", ())
-        ),
+        other_values=tuple(OtherValue(item["source"], item["enthalpy_kJ_mol"] * 1e3) for item in fields.get("other_values", ())),
         note=fields.get("note", ""),
         impulse_note=fields.get("impulse_note", ""),
         library=origin,

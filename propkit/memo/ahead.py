@@ -53,4 +53,3 @@ class Ahead:
             for document in documents_of(cell):
                 with contextlib.suppress(Exception):  # what is wrong with it is said when it is bound
                     Record(document).verify(known=self._known)
-

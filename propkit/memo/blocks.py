@@ -86,7 +86,9 @@ def _displayed(data: Mapping[str, Any], number: int) -> Iterator[Block]:
     if any(media in data for media in _LEFT_OUT):
         return
     if _SHOWN_LIVE in data or _LIVE_FIGURE.match(as_text(data.get("text/plain", ""))):
-        yield Block("markdown", "*A live figure stands here in the notebook; shown by itself, without show(), it leaves its drawing.*", number)
+        yield Block(
+            "markdown", "*A live figure stands here in the notebook; shown by itself, without show(), it leaves its drawing.*", number
+        )
         return
     if "text/html" in data:
         yield Block("html", as_text(data["text/html"]), number, others=data)

@@ -54,7 +54,10 @@ class Material:
             ("author", self.content["author"]),
             ("date", provenance["time"].replace("T", " ").replace("Z", " UTC")),
             ("subject", self.content["description"]),
-            ("computed with", f"propkit {provenance['versions']['propkit']}, data basis {self.content['basis']['name'] if self.content['basis'] else 'none'}"),
+            (
+                "computed with",
+                f"propkit {provenance['versions']['propkit']}, data basis {self.content['basis']['name'] if self.content['basis'] else 'none'}",
+            ),
             ("record", self.record.digest),
         ]
 

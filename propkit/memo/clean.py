@@ -7,12 +7,98 @@ import re
 from html.parser import HTMLParser
 
 _KEPT = frozenset(
-    ["a", "abbr", "article", "aside", "b", "blockquote", "br", "caption", "cite", "code", "col", "colgroup", "dd", "del", "details", "dfn", "div", "dl", "dt", "em", "figcaption", "figure", "h1", "h2", "h3", "h4", "h5", "h6", "hr", "i", "img", "ins", "kbd", "li", "mark", "ol", "p", "pre", "q", "s", "samp", "section", "small", "span", "strong", "sub", "summary", "sup", "table", "tbody", "td", "tfoot", "th", "thead", "tr", "u", "ul", "var"]
+    [
+        "a",
+        "abbr",
+        "article",
+        "aside",
+        "b",
+        "blockquote",
+        "br",
+        "caption",
+        "cite",
+        "code",
+        "col",
+        "colgroup",
+        "dd",
+        "del",
+        "details",
+        "dfn",
+        "div",
+        "dl",
+        "dt",
+        "em",
+        "figcaption",
+        "figure",
+        "h1",
+        "h2",
+        "h3",
+        "h4",
+        "h5",
+        "h6",
+        "hr",
+        "i",
+        "img",
+        "ins",
+        "kbd",
+        "li",
+        "mark",
+        "ol",
+        "p",
+        "pre",
+        "q",
+        "s",
+        "samp",
+        "section",
+        "small",
+        "span",
+        "strong",
+        "sub",
+        "summary",
+        "sup",
+        "table",
+        "tbody",
+        "td",
+        "tfoot",
+        "th",
+        "thead",
+        "tr",
+        "u",
+        "ul",
+        "var",
+    ]
 )
 _VOID = frozenset(("br", "hr", "img", "col"))
-_DROPPED_WHOLE = frozenset(("script", "iframe", "object", "embed", "noscript", "template", "textarea", "title", "select", "svg", "math", "video", "audio", "head"))
+_DROPPED_WHOLE = frozenset(
+    ("script", "iframe", "object", "embed", "noscript", "template", "textarea", "title", "select", "svg", "math", "video", "audio", "head")
+)
 _ATTRIBUTES = frozenset(
-    ["align", "alt", "aria-hidden", "aria-label", "class", "colspan", "dir", "headers", "height", "href", "id", "lang", "open", "role", "rowspan", "scope", "span", "src", "start", "style", "title", "type", "value", "width"]
+    [
+        "align",
+        "alt",
+        "aria-hidden",
+        "aria-label",
+        "class",
+        "colspan",
+        "dir",
+        "headers",
+        "height",
+        "href",
+        "id",
+        "lang",
+        "open",
+        "role",
+        "rowspan",
+        "scope",
+        "span",
+        "src",
+        "start",
+        "style",
+        "title",
+        "type",
+        "value",
+        "width",
+    ]
 )
 _LINK = re.compile(r"(https?://|mailto:|#)", re.IGNORECASE)
 _PICTURE = re.compile(r"data:image/(png|jpeg|gif|webp|svg\+xml);base64,[A-Za-z0-9+/=\s]*", re.IGNORECASE)

@@ -17,7 +17,13 @@ from propkit.record.record import Record
 SPECIFICATION = "https://w3id.org/ro/crate/1.1"
 CONTEXT = "https://w3id.org/ro/crate/1.1/context"
 METADATA = "ro-crate-metadata.json"
-_FORMATS = {".json": "application/json", ".html": "text/html", ".pdf": "application/pdf", ".csv": "text/csv", ".ipynb": "application/x-ipynb+json"}
+_FORMATS = {
+    ".json": "application/json",
+    ".html": "text/html",
+    ".pdf": "application/pdf",
+    ".csv": "text/csv",
+    ".ipynb": "application/x-ipynb+json",
+}
 _FORMULA = ("=", "+", "-", "@", "\t", "\r")
 
 
@@ -60,7 +66,10 @@ def packed(time: str, described: Mapping[str, Any], files: Mapping[str, tuple[st
     moment = (*(int(part) for part in time[:10].split("-")), *(int(part) for part in time[11:19].split(":")))
     stream = io.BytesIO()
     with zipfile.ZipFile(stream, "w", zipfile.ZIP_DEFLATED) as archive:
-        members = {METADATA: json.dumps(described, indent=1, ensure_ascii=False).encode(), **{name: data for name, (_, data) in files.items()}}
+        members = {
+            METADATA: json.dumps(described, indent=1, ensure_ascii=False).encode(),
+            **{name: data for name, (_, data) in files.items()},
+        }
         for name, data in members.items():
             entry = zipfile.ZipInfo(name, moment)  # type: ignore[arg-type]
             entry.compress_type = zipfile.ZIP_DEFLATED
@@ -86,7 +95,13 @@ def metadata(record: Record, files: Mapping[str, tuple[str, bytes]]) -> dict[str
         **({"author": author[0]} if author else {}),
     }
     parts = [
-        {"@id": name, "@type": "File", "name": about, "encodingFormat": _FORMATS["." + name.rpartition(".")[2]], "contentSize": str(len(data))}
+        {
+            "@id": name,
+            "@type": "File",
+            "name": about,
+            "encodingFormat": _FORMATS["." + name.rpartition(".")[2]],
+            "contentSize": str(len(data)),
+        }
         for name, (about, data) in files.items()
     ]
     people = [{"@id": "#author", "@type": "Person", "name": content["author"]}] if content["author"] else []
@@ -124,7 +139,9 @@ def _calculation(record: Record, provenance: Mapping[str, Any]) -> Sequence[dict
 def _values_csv(content: Mapping[str, Any]) -> bytes:
     rows: list[Sequence[Any]] = [("object", "name", "value", "unit", "kind", "as typed")]
     for kind, stored in content["objects"].items():
-        rows += [(kind, name, entry["value"], entry["unit"], entry["kind"], entry.get("typed", "")) for name, entry in stored["inputs"].items()]
+        rows += [
+            (kind, name, entry["value"], entry["unit"], entry["kind"], entry.get("typed", "")) for name, entry in stored["inputs"].items()
+        ]
         rows += [(kind, name, entry["value"], entry["unit"], "computed", "") for name, entry in stored["results"].items()]
     return _csv(rows)
 

@@ -81,7 +81,9 @@ def _give_ids(notebook: Any) -> None:
             taken.add(name)
 
 
-def execute(notebook: Any, path: Path, timeout: int, say: Callable[[str], None], finished: Callable[[Any], None] = lambda cell: None) -> str:
+def execute(
+    notebook: Any, path: Path, timeout: int, say: Callable[[str], None], finished: Callable[[Any], None] = lambda cell: None
+) -> str:
     """Execute a notebook in place, in the present interpreter whatever its kernelspec says.
 
     Parameters

@@ -76,8 +76,7 @@ def data_table(table: Table) -> str:
         kind = ' class="number"' if cells.numeric(column) else ""
         heads.append(f"<th{kind}>{sign}{f'<br>{escape(unit)}' if unit else ''}</th>")
         shown = [
-            "" if value is None else value if isinstance(value, str) else numbers.pretty(value, column.digits)
-            for value in column.values
+            "" if value is None else value if isinstance(value, str) else numbers.pretty(value, column.digits) for value in column.values
         ]
         numeric = [isinstance(value, int | float) for value in column.values]
         padded = iter(aligned([text for text, number in zip(shown, numeric, strict=True) if number]))
@@ -123,7 +122,13 @@ def working(steps: Iterable[Step], untitled: str = "") -> str:
 def conditions_table(steps: Iterable[Step]) -> str:
     """Return the conditions that iterated states satisfy: both sides evaluated, and the residual."""
     rows = [
-        (step.label, step.text, numbers.grouped(f"{step.left:.9g}"), numbers.grouped(f"{step.right:.9g}"), power_above(step.residual or 0.0))
+        (
+            step.label,
+            step.text,
+            numbers.grouped(f"{step.left:.9g}"),
+            numbers.grouped(f"{step.right:.9g}"),
+            power_above(step.residual or 0.0),
+        )
         for step in steps
     ]
     return text_table(("condition", "relation", "left side", "right side", "residual below"), rows, (2, 3, 4))

@@ -31,7 +31,13 @@ def notebook_pdf(memo: NotebookMemo, paper: str = "a4") -> bytes:
         Without the typst package.
     """
     code = "".join(f"<p class='caption'>cell {block.cell}</p><pre>{escape(block.text)}</pre>" for block in memo.code)
-    parts = [memo.failure, memo.body, record_section(memo.records, "The page of HTML beside this document"), cautions(CAUTIONS), f"<h2>Code</h2>{code}" if code else ""]
+    parts = [
+        memo.failure,
+        memo.body,
+        record_section(memo.records, "The page of HTML beside this document"),
+        cautions(CAUTIONS),
+        f"<h2>Code</h2>{code}" if code else "",
+    ]
     last = memo.records[-1].record if memo.records else None
     return compiled(
         memo.title,

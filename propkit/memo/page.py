@@ -158,7 +158,7 @@ def summary(records: Sequence[Bound]) -> str:
 def record_section(records: Sequence[Bound], carried_by: str) -> str:
     """Return the records with their digests and what recomputing them gave; `carried_by` says where they are."""
     if not records:
-        return '<section><h2>Records</h2><p>This notebook shows no object that carries a record.</p></section>'
+        return "<section><h2>Records</h2><p>This notebook shows no object that carries a record.</p></section>"
     rows = "".join(
         f"<tr><td>{html.escape(bound.record.title)}</td><td class='digest'>{bound.record.digest[7:]}</td>"
         f"<td>{html.escape(bound.verification.status)}, {len(bound.verification.leaves)} values</td></tr>"

@@ -9,8 +9,41 @@ from typing import Any
 
 from propkit.record.build import printable
 
-_INLINE = {"b": "b", "strong": "b", "em": "i", "i": "i", "code": "c", "sub": "_", "sup": "^", "small": "q", "var": "i", "cite": "i", "kbd": "c", "samp": "c"}
-_BLOCKS = frozenset(("p", "div", "section", "header", "main", "article", "aside", "figure", "figcaption", "blockquote", "li", "dt", "dd", "dl", "caption", "details", "summary"))
+_INLINE = {
+    "b": "b",
+    "strong": "b",
+    "em": "i",
+    "i": "i",
+    "code": "c",
+    "sub": "_",
+    "sup": "^",
+    "small": "q",
+    "var": "i",
+    "cite": "i",
+    "kbd": "c",
+    "samp": "c",
+}
+_BLOCKS = frozenset(
+    (
+        "p",
+        "div",
+        "section",
+        "header",
+        "main",
+        "article",
+        "aside",
+        "figure",
+        "figcaption",
+        "blockquote",
+        "li",
+        "dt",
+        "dd",
+        "dl",
+        "caption",
+        "details",
+        "summary",
+    )
+)
 _SIDE_BY_SIDE = {"figures": False, "propkit-body": False, "propkit-answers": True, "answers": True}
 """Class of an element whose children stand side by side -> whether its columns are only as wide as they need."""
 _KEPT_WHOLE = frozenset(("formula", "cautions"))

@@ -151,7 +151,11 @@ def _flow(performance: Performance, base: Variant) -> Iterator[Asked]:
 
 
 def _contraction(base: Variant) -> Iterator[Asked]:
-    places = {"injector": "at the injector", "nozzle stagnation": "as stagnation at the inlet", "nozzle inlet static": "static at the inlet"}
+    places = {
+        "injector": "at the injector",
+        "nozzle stagnation": "as stagnation at the inlet",
+        "nozzle inlet static": "static at the inlet",
+    }
     if math.isinf(base.contraction_ratio):
         for place in ("injector", "nozzle inlet static"):
             variant = replace(base, contraction_ratio=FINITE_CONTRACTION, pressure_at=place)
@@ -164,7 +168,10 @@ def _contraction(base: Variant) -> Iterator[Asked]:
 
 
 def _efficiencies(base: Variant) -> Iterator[Asked]:
-    for key, field, other in (("cstar-efficiency", "cstar_efficiency", OTHER_EFFICIENCY), ("discharge", "discharge_coefficient", OTHER_DISCHARGE)):
+    for key, field, other in (
+        ("cstar-efficiency", "cstar_efficiency", OTHER_EFFICIENCY),
+        ("discharge", "discharge_coefficient", OTHER_DISCHARGE),
+    ):
         here = getattr(base, field)
         if key == "discharge" and here != 1.0:
             continue
@@ -226,7 +233,11 @@ def _enthalpies(performance: Performance, base: Variant) -> Iterator[Asked]:
     if base.source.composition is None:
         drop = 0.5 * performance.nozzle.exit.si("velocity") ** 2
         source = replace(base.source, enthalpy=base.source.enthalpy - HEAT_SHARE * drop)
-        yield Asked("equilibrium", f"{HEAT_SHARE * drop / 1e3:.3g} kJ/kg, {100.0 * HEAT_SHARE:g} % of the enthalpy drop", replace(base, source=source))
+        yield Asked(
+            "equilibrium",
+            f"{HEAT_SHARE * drop / 1e3:.3g} kJ/kg, {100.0 * HEAT_SHARE:g} % of the enthalpy drop",
+            replace(base, source=source),
+        )
 
 
 def _warmer(case: Any, role: str) -> tuple[str, float] | None:
@@ -278,7 +289,9 @@ def _real_gas(performance: Performance) -> Price | None:
             found = real_gas_price(case._values["gas"].row, temperature, pressure)
         except (PropkitError, ValueError) as error:
             raise NotAvailableError(str(error)) from error
-        return Price(f"real gas, Z = {found.compressibility:.4g}", found.mass_flow_ratio - 1.0, note="choked flow by CoolProp's equation of state")
+        return Price(
+            f"real gas, Z = {found.compressibility:.4g}", found.mass_flow_ratio - 1.0, note="choked flow by CoolProp's equation of state"
+        )
     from propkit.bridge.real_products import departure
 
     table, amounts = chamber.held.table, rest.amounts[0]

@@ -81,7 +81,16 @@ class Assumptions(tuple[Assumption, ...]):
         for entry in self:
             for price in entry.prices or (Price(""),):
                 keys.append(entry.key)
-                row = (entry.statement, entry.origin, entry.taken, price.alternative, price.mass_flow, price.specific_impulse, price.thrust, price.note)
+                row = (
+                    entry.statement,
+                    entry.origin,
+                    entry.taken,
+                    price.alternative,
+                    price.mass_flow,
+                    price.specific_impulse,
+                    price.thrust,
+                    price.note,
+                )
                 for name, value in zip(columns, row, strict=True):
                     columns[name].append(value)
         frame = pd.DataFrame(columns, index=pd.Index(keys, name="assumption"))
@@ -109,8 +118,18 @@ class Assumptions(tuple[Assumption, ...]):
         from propkit.model.base import render
 
         first = self.priced[0] if self.priced else None
-        subtitle = f"largest: {LABELS.get(first.key, first.key)}, {first.alternative} changes {_largest(first)}" if first is not None else ""
-        return Report("Assumptions", "What each assumption costs", subtitle, units, sections=tuple(self.sections()), figures=self.figures(), render=render)
+        subtitle = (
+            f"largest: {LABELS.get(first.key, first.key)}, {first.alternative} changes {_largest(first)}" if first is not None else ""
+        )
+        return Report(
+            "Assumptions",
+            "What each assumption costs",
+            subtitle,
+            units,
+            sections=tuple(self.sections()),
+            figures=self.figures(),
+            render=render,
+        )
 
     def __str__(self) -> str:
         return str(self.report())
@@ -138,9 +157,13 @@ def taken(performance: Performance, key: str) -> str:
     case = chamber.case_or_none
     contraction = chamber._values["contraction_ratio"]
     words = {
-        "contraction": "infinite" if contraction == float("inf") else f"ratio {contraction:g}, pressure at the {chamber._values['pressure_at']}",
+        "contraction": "infinite"
+        if contraction == float("inf")
+        else f"ratio {contraction:g}, pressure at the {chamber._values['pressure_at']}",
         "cstar-efficiency": f"{chamber.si('cstar_efficiency'):g}",
-        "flow": alternatives.FLOW_WORDS[nozzle.flow] if nozzle._values["freeze_at"] in (None, "chamber") else f"frozen from {_place(nozzle)}",
+        "flow": alternatives.FLOW_WORDS[nozzle.flow]
+        if nozzle._values["freeze_at"] in (None, "chamber")
+        else f"frozen from {_place(nozzle)}",
         "isentropic": "loss taken off" if "boundary layer" in performance.resolved_losses.ratios else "none",
         "discharge": f"{nozzle.si('discharge_coefficient'):g}",
         "one-dimensional": nozzle.input_text("contour") if nozzle.has("contour") else "none: axial flow",
@@ -209,9 +232,22 @@ def _figure(entries: tuple[Assumption, ...]) -> Figure:
     ordered = sorted(zip(entries, sizes, strict=True), key=lambda pair: -pair[1])
     kept = [(entry, 100.0 * size) for entry, size in ordered if size > 0.0]
     texts = tuple(f"{value:.2f} %" if value >= 0.01 else "< 0.01 %" for _, value in kept)
-    bars = Bars(tuple(LABELS.get(entry.key, entry.key) for entry, _ in kept), Series("largest change of specific impulse", tuple(value for _, value in kept), "percent"), texts)
-    alt = "Largest change of specific impulse: " + ", ".join(f"{category} {text}" for category, text in zip(bars.categories, texts, strict=True))
-    return Figure("prices", "What carries the specific impulse", alt, Axis("largest change of specific impulse", "percent", low=0.0), Axis(""), (bars,))
+    bars = Bars(
+        tuple(LABELS.get(entry.key, entry.key) for entry, _ in kept),
+        Series("largest change of specific impulse", tuple(value for _, value in kept), "percent"),
+        texts,
+    )
+    alt = "Largest change of specific impulse: " + ", ".join(
+        f"{category} {text}" for category, text in zip(bars.categories, texts, strict=True)
+    )
+    return Figure(
+        "prices",
+        "What carries the specific impulse",
+        alt,
+        Axis("largest change of specific impulse", "percent", low=0.0),
+        Axis(""),
+        (bars,),
+    )
 
 
 def _largest(entry: Assumption) -> str:

@@ -257,9 +257,7 @@ class Calculation:
             return outcome.results[name]
         value = self._values.get(name)
         if value is None:
-            raise NotAvailableError(
-                outcome.absent.get(name, f"{type(self).__name__} has no {name} in this recipe"), name=name
-            )
+            raise NotAvailableError(outcome.absent.get(name, f"{type(self).__name__} has no {name} in this recipe"), name=name)
         return value  # type: ignore[no-any-return]
 
     def state_paths(self) -> tuple[str, ...]:
@@ -299,11 +297,7 @@ class Calculation:
         if name in self._typed:
             return "given"
         entry = self.declared_inputs.get(name)
-        return (
-            "default"
-            if entry is not None and self._values.get(name) is not None and name not in self._outcome.results
-            else "computed"
-        )
+        return "default" if entry is not None and self._values.get(name) is not None and name not in self._outcome.results else "computed"
 
     @property
     def held(self) -> Any:

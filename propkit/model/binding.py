@@ -35,9 +35,7 @@ def signature(declared: Mapping[str, Input]) -> inspect.Signature:
     )
 
 
-def name_arguments(
-    kind: str, declared: Mapping[str, Input], args: tuple[Any, ...], keywords: Mapping[str, Any]
-) -> dict[str, Any]:
+def name_arguments(kind: str, declared: Mapping[str, Input], args: tuple[Any, ...], keywords: Mapping[str, Any]) -> dict[str, Any]:
     """Return the arguments by name; TypeError for one that is unknown or given twice."""
     positional = [name for name, entry in declared.items() if not entry.kw_only]
     if len(args) > len(positional):

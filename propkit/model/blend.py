@@ -32,11 +32,7 @@ def _read_ingredients(name: str, value: Any) -> tuple[tuple[Propellant, float], 
     """Return (propellant, share) pairs whose shares add up to 1."""
     pairs = list(value.items()) if isinstance(value, Mapping) else value
     allowed = 'ingredients with their shares, for example {"ethanol": 0.92, "water": 0.08}'
-    if (
-        not isinstance(pairs, list | tuple)
-        or not pairs
-        or not all(isinstance(p, list | tuple) and len(p) == 2 for p in pairs)
-    ):
+    if not isinstance(pairs, list | tuple) or not pairs or not all(isinstance(p, list | tuple) and len(p) == 2 for p in pairs):
         raise InputError(Problem(name, as_text(value), allowed))
     problems: list[Problem] = []
     read: list[tuple[Propellant, float]] = []
@@ -57,9 +53,7 @@ def _read_ingredients(name: str, value: Any) -> tuple[tuple[Propellant, float], 
     total = math.fsum(fraction for _, fraction in read)
     if not problems and abs(total - 1.0) > _CLOSES:
         missing = f"{abs(1.0 - total):.6g} {'is missing' if total < 1.0 else 'too much'}."
-        problems.append(
-            Problem(name, f"a set of shares that add up to {total:.8g}", "shares that add up to 1", missing)
-        )
+        problems.append(Problem(name, f"a set of shares that add up to {total:.8g}", "shares that add up to 1", missing))
     if problems:
         raise InputError(problems)
     return tuple((propellant, fraction / total) for propellant, fraction in read)
@@ -79,12 +73,8 @@ class Blend(Propellant):
         name for name in Propellant.declared_inputs if name not in ("density", "role", "hazard", "source", "name")
     )
 
-    ingredients: CustomInput = CustomInput(
-        doc="what is blended, with shares that add up to 1", reader=_read_ingredients, kw_only=False
-    )
-    by: ChoiceInput = ChoiceInput(
-        choices=WAYS, doc="whether the shares are of mass, volume or moles of the formulas", default="mass"
-    )
+    ingredients: CustomInput = CustomInput(doc="what is blended, with shares that add up to 1", reader=_read_ingredients, kw_only=False)
+    by: ChoiceInput = ChoiceInput(choices=WAYS, doc="whether the shares are of mass, volume or moles of the formulas", default="mass")
     mixing_enthalpy: QuantityInput = QuantityInput(
         doc="enthalpy of the mixture less that of its ingredients, negative when heat is released", default=None
     )
@@ -146,11 +136,7 @@ class Blend(Propellant):
 
     def _mixing_text(self) -> str:
         mixing = self._values["mixing_enthalpy"]
-        return (
-            "heat of mixing neglected"
-            if mixing is None
-            else f"heat of mixing {mixing / 1e3:.4g} kJ/kg included as given"
-        )
+        return "heat of mixing neglected" if mixing is None else f"heat of mixing {mixing / 1e3:.4g} kJ/kg included as given"
 
     def _doubts(self, row: PropellantRow) -> Iterator[Doubt]:
         weak = [part.name for part, _ in row.components if part.trust == "weak"]
@@ -326,11 +312,7 @@ def _roles_of(rows: Sequence[PropellantRow]) -> tuple[str, ...]:
 def _library_mixing(row: PropellantRow) -> str:
     """Return what the library knows of the heat of mixing of the same ingredients; empty when nothing."""
     shares = row.mixture
-    alike = [
-        known
-        for known in library_data.library().values()
-        if known.mixing_enthalpy and set(known.mixture) == set(shares)
-    ]
+    alike = [known for known in library_data.library().values() if known.mixing_enthalpy and set(known.mixture) == set(shares)]
     if not alike:
         return ""
     nearest = min(alike, key=lambda known: sum(abs(known.mixture[part] - share) for part, share in shares.items()))

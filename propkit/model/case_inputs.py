@@ -39,9 +39,7 @@ class PercentInput(NumberInput):
 def read_additives(name: str, value: Any) -> tuple[tuple[Propellant, float], ...]:
     """Return (propellant, mass fraction of the whole) pairs that together are less than the whole."""
     pairs = list(value.items()) if isinstance(value, Mapping) else value
-    if not isinstance(pairs, list | tuple) or not all(
-        isinstance(pair, list | tuple) and len(pair) == 2 for pair in pairs
-    ):
+    if not isinstance(pairs, list | tuple) or not all(isinstance(pair, list | tuple) and len(pair) == 2 for pair in pairs):
         raise InputError(Problem(name, as_text(value), _ADDITIVES))
     problems: list[Problem] = []
     read: list[tuple[Propellant, float]] = []
@@ -57,9 +55,7 @@ def read_additives(name: str, value: Any) -> tuple[tuple[Propellant, float], ...
         read.append((propellant, fraction))
     total = sum(fraction for _, fraction in read)
     if not problems and total >= 1.0:
-        problems.append(
-            Problem(name, f"{total:g} of the whole", "less than the whole", "They are fractions of the whole flow.")
-        )
+        problems.append(Problem(name, f"{total:g} of the whole", "less than the whole", "They are fractions of the whole flow."))
     if problems:
         raise InputError(problems)
     return tuple(read)
@@ -78,9 +74,7 @@ def amount_problems(typed: Mapping[str, Any], bad: set[str]) -> Iterator[Problem
             "Give one of the two." if len(given) == 2 else "Give one of them.",
         )
     elif not given and not bad & set(stage.AMOUNTS):
-        yield Problem(
-            "mixture_ratio", "missing", f"given, or one of {others} in its place", "For example mixture_ratio=3.4."
-        )
+        yield Problem("mixture_ratio", "missing", f"given, or one of {others} in its place", "For example mixture_ratio=3.4.")
 
 
 def amount_results(found: Mapping[str, Any]) -> tuple[dict[str, float], dict[str, str]]:
@@ -94,9 +88,7 @@ def amount_results(found: Mapping[str, Any]) -> tuple[dict[str, float], dict[str
     return results, {name: reasons[name] for name in found if name not in results}
 
 
-def mixture_results(
-    mixture: stage.Mixture, results: dict[str, float], absent: dict[str, str], unknown_density: str
-) -> None:
+def mixture_results(mixture: stage.Mixture, results: dict[str, float], absent: dict[str, str], unknown_density: str) -> None:
     """Add enthalpy, bulk density and oxygen balance of a mixture to the results, or why they are absent."""
     results["enthalpy"] = float(mixture.enthalpy[0])
     if np.isfinite(mixture.density[0]):
@@ -115,11 +107,7 @@ def fuel_rich_doubts(equivalence_ratio: float | None, mixture: stage.Mixture) ->
     if equivalence_ratio is None or equivalence_ratio < stage.FUEL_RICH_LIMIT:
         return
     slow = [words for symbol, words in _SLOW.items() if symbol in mixture.symbols]
-    why = (
-        f"{' and '.join(slow)} do not come to equilibrium in the time there is"
-        if slow
-        else "mixing is then seldom complete"
-    )
+    why = f"{' and '.join(slow)} do not come to equilibrium in the time there is" if slow else "mixing is then seldom complete"
     yield Doubt(
         f"At {equivalence_ratio:.3g} times the stoichiometric fuel the real gas is far from equilibrium: {why}. A gas that was measured "
         f"goes in through pk.Chamber.from_gas(...).",
@@ -130,9 +118,7 @@ def fuel_rich_doubts(equivalence_ratio: float | None, mixture: stage.Mixture) ->
 
 def unknown_species(name: str, unknown: list[str]) -> InputError:
     """Return the error for a gas whose species the data do not have."""
-    return InputError(
-        Problem("gas", f"{name!r}, with {', '.join(unknown)}", "a gas whose species are in the species data")
-    )
+    return InputError(Problem("gas", f"{name!r}, with {', '.join(unknown)}", "a gas whose species are in the species data"))
 
 
 def no_core(typed: Mapping[str, Any], mixture_ratio: float) -> InputError:

@@ -24,13 +24,9 @@ def parts_of(case: PropellantCase) -> list[tuple[str, Any, Any, float]]:
     added = sum(share for _, share in held.additives)
     ratio = held.mixture_ratio
     shares = {"oxidizer": ratio / (1.0 + ratio), "fuel": 1.0 / (1.0 + ratio)} if len(case.roles) == 2 else {}
-    listed = [
-        (role, case._values[role], held.stream(role), (1.0 - added) * shares.get(role, 1.0)) for role in case.roles
-    ]
+    listed = [(role, case._values[role], held.stream(role), (1.0 - added) * shares.get(role, 1.0)) for role in case.roles]
     named = case._values.get("additives") or ()
-    listed += [
-        ("additive", part, stream, share) for (part, _), (stream, share) in zip(named, held.additives, strict=True)
-    ]
+    listed += [("additive", part, stream, share) for (part, _), (stream, share) in zip(named, held.additives, strict=True)]
     return listed
 
 
@@ -95,9 +91,7 @@ def gas_figure(fractions: Mapping[str, float]) -> Figure:
     percent = tuple(100.0 * value for _, value in pairs)
     texts = tuple(f"{value:.4g} %" for value in percent)
     bars = Bars(tuple(name for name, _ in pairs), Series("mole fraction", percent, "percent", "x"), texts)
-    alt = "Mole fractions of the gas: " + ", ".join(
-        f"{name} {text}" for (name, _), text in zip(pairs, texts, strict=True)
-    )
+    alt = "Mole fractions of the gas: " + ", ".join(f"{name} {text}" for (name, _), text in zip(pairs, texts, strict=True))
     limits = Axis("mole fraction", "percent", "x", low=0.0, high=100.0)
     return Figure("composition", "Composition of the gas", alt, limits, Axis(""), (bars,))
 

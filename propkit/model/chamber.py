@@ -50,9 +50,7 @@ def read_case(name: str, value: Any) -> PropellantCase:
     """Return `value` when it is a propellant case."""
     if isinstance(value, PropellantCase):
         return value
-    raise InputError(
-        Problem(name, as_text(value), "a pk.PropellantCase", "Chain the objects: case, chamber, nozzle, performance.")
-    )
+    raise InputError(Problem(name, as_text(value), "a pk.PropellantCase", "Chain the objects: case, chamber, nozzle, performance."))
 
 
 class Chamber(Calculation):
@@ -89,9 +87,7 @@ class Chamber(Calculation):
     headline = ("temperature", "characteristic_velocity", "molar_mass")
     case: CustomInput = CustomInput(doc="the propellants upstream", reader=read_case, kw_only=False, quantity="name")
     pressure: QuantityInput = QuantityInput(doc="quoted chamber pressure, absolute", bounds=PRESSURES)
-    pressure_at: ChoiceInput = ChoiceInput(
-        doc="where the quoted pressure holds", choices=PRESSURE_PLACES, default=PRESSURE_PLACES[0]
-    )
+    pressure_at: ChoiceInput = ChoiceInput(doc="where the quoted pressure holds", choices=PRESSURE_PLACES, default=PRESSURE_PLACES[0])
     contraction_ratio: NumberInput = NumberInput(
         doc="chamber area over throat area",
         default=math.inf,
@@ -139,11 +135,7 @@ class Chamber(Calculation):
         )
         combustion.raise_for_status(self.kind)
         face = combustion.injector
-        results = {
-            name: float(getattr(face, name)[0])
-            for name in stage.INJECTOR_RESULTS
-            if math.isfinite(getattr(face, name)[0])
-        }
+        results = {name: float(getattr(face, name)[0]) for name in stage.INJECTOR_RESULTS if math.isfinite(getattr(face, name)[0])}
         results["stagnation_pressure"] = float(combustion.stagnation.pressure[0])
         results["characteristic_velocity"] = float(combustion.characteristic_velocity[0])
         pressure = self._values["pressure"]
@@ -246,11 +238,7 @@ class Chamber(Calculation):
 
     def states(self) -> tuple[State, ...]:
         """Return the states that belong to the chamber: the injector face, where it differs from the nozzle inlet."""
-        return (
-            (self.lazily("injector", lambda: State("injector face", self.held.injector_values())),)
-            if self._shows_face()
-            else ()
-        )
+        return (self.lazily("injector", lambda: State("injector face", self.held.injector_values())),) if self._shows_face() else ()
 
     def _shows_face(self) -> bool:
         return math.isfinite(self._values["contraction_ratio"])
@@ -296,9 +284,7 @@ class Chamber(Calculation):
         percent = tuple(100.0 * value for _, value in pairs)
         texts = tuple(f"{value:.2f} %" if value < 10.0 else f"{value:.1f} %" for value in percent)
         bars = Bars(tuple(name for name, _ in pairs), Series("mole fraction", percent, "percent", "x"), texts)
-        alt = "Largest mole fractions: " + ", ".join(
-            f"{name} {text}" for (name, _), text in zip(pairs, texts, strict=True)
-        )
+        alt = "Largest mole fractions: " + ", ".join(f"{name} {text}" for (name, _), text in zip(pairs, texts, strict=True))
         return (
             Figure(
                 "composition",
@@ -329,9 +315,7 @@ class GasChamber(Chamber):
         @property
         def case(self) -> Any:
             """Raise: a gas given outright has no propellant case."""
-            raise NotAvailableError(
-                "the chamber is of a gas given outright: it has no propellant case; pk.Chamber(case, ...) has one"
-            )
+            raise NotAvailableError("the chamber is of a gas given outright: it has no propellant case; pk.Chamber(case, ...) has one")
 
     def _check(self, bad: set[str]) -> list[Problem]:
         given = [name for name in self.groups[0] if name in self._typed]
@@ -345,11 +329,7 @@ class GasChamber(Chamber):
                 )
             ]
         if not given and not bad & set(self.groups[0]):
-            return [
-                Problem(
-                    "molar_mass", "missing", "given, or gas_constant in its place", 'For example molar_mass="22 g/mol".'
-                )
-            ]
+            return [Problem("molar_mass", "missing", "given, or gas_constant in its place", 'For example molar_mass="22 g/mol".')]
         return []
 
     def _calculate(self) -> Outcome:

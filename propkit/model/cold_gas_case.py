@@ -35,9 +35,7 @@ class ColdGasCase(PropellantCase):
     undeclared: ClassVar[tuple[str, ...]] = (*_TWO_ONLY, "condensed", "stoichiometric_mixture_ratio", "oxygen_balance")
     no_amount: ClassVar[str] = "it is a gas that does not burn"
 
-    gas: CustomInput = CustomInput(
-        doc="the gas that expands as it is, without combustion", reader=as_propellant, kw_only=False
-    )
+    gas: CustomInput = CustomInput(doc="the gas that expands as it is, without combustion", reader=as_propellant, kw_only=False)
     temperature: QuantityInput = QuantityInput(
         doc="temperature of the gas as stored", default=None, bounds=Bounds(at_least=20.0, at_most=3000.0)
     )
@@ -84,9 +82,7 @@ class ColdGasCase(PropellantCase):
             density = float(np.asarray(stored.density))
             doubts = [Doubt(word, code="stored-state", about="bulk_density") for word in words]
         mixture = stage.unreacted_gas(table, row.gas_composition, temperature, density)
-        stream = stage.Stream(
-            dict(zip(mixture.symbols, mixture.atoms[0].tolist(), strict=True)), float(mixture.enthalpy[0]), density
-        )
+        stream = stage.Stream(dict(zip(mixture.symbols, mixture.atoms[0].tolist(), strict=True)), float(mixture.enthalpy[0]), density)
         results: dict[str, float] = {}
         absent = dict.fromkeys((*_TWO_ONLY, *self.undeclared), self.no_amount)
         case_inputs.mixture_results(mixture, results, absent, _NO_DENSITY)
@@ -102,9 +98,7 @@ class ColdGasCase(PropellantCase):
         if name == "bulk_density":
             stored, _ = self._values["gas"].stream(self.si("temperature"), self.si("tank_pressure"), "gas")
             text, latex = "density as stored = bulk density", r"\rho(p, T) = \rho_b"
-            yield condition(
-                name, "density [kg/m3]", text, latex, float(np.asarray(stored.density)), self.si(name), "definition"
-            )
+            yield condition(name, "density [kg/m3]", text, latex, float(np.asarray(stored.density)), self.si(name), "definition")
 
     def _table(self) -> Any:
         return load_basis(str(self.si("thermo_basis"))).table(self.held.mixture.symbols)

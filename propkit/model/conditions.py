@@ -10,9 +10,7 @@ import numpy as np
 from propkit.report import Step
 
 
-def condition(
-    name: str, label: str, text: str, latex: str, left: float, right: float, source: str, scale: float = 0.0
-) -> Step:
+def condition(name: str, label: str, text: str, latex: str, left: float, right: float, source: str, scale: float = 0.0) -> Step:
     """Return a condition with both sides evaluated; the residual is relative to the larger side, or to `scale`."""
     size = scale or max(abs(left), abs(right)) or 1.0
     return Step(
@@ -28,9 +26,7 @@ def condition(
     )
 
 
-def element_conditions(
-    symbols: tuple[str, ...], atoms: np.ndarray[Any, Any], found: np.ndarray[Any, Any]
-) -> Iterator[Step]:
+def element_conditions(symbols: tuple[str, ...], atoms: np.ndarray[Any, Any], found: np.ndarray[Any, Any]) -> Iterator[Step]:
     """Yield the balance of each element: atoms in the propellants against atoms in the products."""
     for symbol, given, made in zip(symbols, atoms, found, strict=True):
         yield condition(

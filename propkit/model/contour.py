@@ -144,9 +144,7 @@ class Bell(Contour):
         doc="length over that of a 15 degree cone", default=0.8, bounds=Bounds(above=0.0, at_most=2.0), kw_only=False,
         hint="It is a share: 0.8 is the common 80 % bell.",
     )  # fmt: skip
-    throat_angle: QuantityInput = QuantityInput(
-        doc="wall angle where the parabola starts", default=None, bounds=_ANGLES, hint=_HINT_ANGLE
-    )
+    throat_angle: QuantityInput = QuantityInput(doc="wall angle where the parabola starts", default=None, bounds=_ANGLES, hint=_HINT_ANGLE)
     exit_angle: QuantityInput = QuantityInput(
         doc="wall angle at the lip", default=None, bounds=Bounds(at_least=0.0, below=math.radians(90.0)), hint=_HINT_ANGLE
     )

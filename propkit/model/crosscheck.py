@@ -36,8 +36,7 @@ class CrossCheck:
 
     def __str__(self) -> str:
         return (
-            f"Second engine ({self.engine}) solved chamber, throat and exit independently: "
-            f"largest relative difference {self.largest:.1e}."
+            f"Second engine ({self.engine}) solved chamber, throat and exit independently: largest relative difference {self.largest:.1e}."
         )
 
 

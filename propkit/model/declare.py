@@ -311,9 +311,7 @@ class Result(Declared):
         Whether the sheet lists it among the results.
     """
 
-    def __init__(
-        self, *, relation: str = "", source: str = "", quantity: str = "", doc: str = "", shown: bool = True
-    ) -> None:
+    def __init__(self, *, relation: str = "", source: str = "", quantity: str = "", doc: str = "", shown: bool = True) -> None:
         super().__init__(quantity=quantity, doc=doc)
         self.relation = relation
         self.source = source

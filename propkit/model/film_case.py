@@ -35,9 +35,7 @@ class FilmCase(PropellantCase):
     title = "Propellant case with film"
     headline: ClassVar[tuple[str, ...]] = ("mixture_ratio", "core_mixture_ratio", "film_fraction")
 
-    film_fraction: NumberInput = NumberInput(
-        doc="mass flow of the film over the whole mass flow", bounds=Bounds(above=0.0, at_most=0.9)
-    )
+    film_fraction: NumberInput = NumberInput(doc="mass flow of the film over the whole mass flow", bounds=Bounds(above=0.0, at_most=0.9))
     film_mixture_ratio: NumberInput = NumberInput(
         doc="oxidizer over fuel mass flow in the film; 0 is fuel alone",
         default=0.0,
@@ -63,8 +61,7 @@ class FilmCase(PropellantCase):
         if film_ratio > 0.0 and "stoichiometric_mixture_ratio" in whole.results:
             rich = whole.results["stoichiometric_mixture_ratio"] / film_ratio
             doubts += [
-                Doubt(f"Film: {text}", code=text.code, about="film_mixture_ratio")
-                for text in case_inputs.fuel_rich_doubts(rich, parts)
+                Doubt(f"Film: {text}", code=text.code, about="film_mixture_ratio") for text in case_inputs.fuel_rich_doubts(rich, parts)
             ]
         elif film_ratio == 0.0:
             text = "Film of fuel alone: it is taken at the chemical equilibrium of the fuel, which a cool film does not reach."
@@ -114,18 +111,14 @@ class FilmCase(PropellantCase):
             _column("mixture_ratio", ratios, system),
         ]
         columns += [_column(name, tuple(getattr(held.injector, name).tolist()), system) for name in _CHAMBER_COLUMNS]
-        yield Section(
-            "streams", "Streams", table=Table("streams", "Streams", "stream", chamber_stage.STREAMS, tuple(columns))
-        )
+        yield Section("streams", "Streams", table=Table("streams", "Streams", "stream", chamber_stage.STREAMS, tuple(columns)))
         uniform = self.lazily(f"uniform {chamber.si('pressure')}", lambda: self._uniform_cstar(chamber))
         here = chamber.si("characteristic_velocity")
         row = quantities.quantity("characteristic_velocity")
         unit = row.shown_in(system, (here,))
         shown = [f"{units.convert(value, row.unit, unit):.6g}" for value in (here, uniform)]
         change = f"{100.0 * (here / uniform - 1.0):+.2f}".replace("-", "−")
-        line = (
-            f"Against the uniform mixture: c* {shown[0]} instead of {shown[1]} {units.shown_unit(unit)} ({change} %)."
-        )
+        line = f"Against the uniform mixture: c* {shown[0]} instead of {shown[1]} {units.shown_unit(unit)} ({change} %)."
         yield Section("film", "What the film costs", lines=(line,))
 
     def _uniform_cstar(self, chamber: Any) -> float:
@@ -141,9 +134,7 @@ class FilmCase(PropellantCase):
                 index.append(f"{station}, {stream}")
                 states.append({name: float(getattr(found, name)[place]) for name in _FLOW_COLUMNS})
         columns = tuple(_column(name, tuple(state[name] for state in states), system) for name in _FLOW_COLUMNS)
-        yield Section(
-            "streams", "Core and film", table=Table("streams", "Core and film", "stream", tuple(index), columns)
-        )
+        yield Section("streams", "Core and film", table=Table("streams", "Core and film", "stream", tuple(index), columns))
 
     # -- the uniform mixture beside it ----------------------------------------------------------
 
@@ -159,9 +150,7 @@ class FilmCase(PropellantCase):
         for link in performance.chain()[1:]:
             typed = {**link._typed, link.upstream_input: above}
             if link.kind == "nozzle":
-                typed = {
-                    name: value for name, value in typed.items() if name not in (*SIZES, *EXPANSIONS, "sizing_ambient")
-                }
+                typed = {name: value for name, value in typed.items() if name not in (*SIZES, *EXPANSIONS, "sizing_ambient")}
                 typed |= {"throat_area": link.si("throat_area"), "area_ratio": link.si("area_ratio")}
             above = type(link)(**typed)
         made: Performance = above

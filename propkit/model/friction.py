@@ -34,9 +34,7 @@ def drag(nozzle: Nozzle, wall_temperature: float | None) -> tuple[float, str]:
     return found, f"momentum integral along the wall {start}, {words}"
 
 
-def along(
-    nozzle: Nozzle, segments: tuple[Segment, ...], wall_temperature: float | None, quick: bool = False
-) -> tuple[float, str]:
+def along(nozzle: Nozzle, segments: tuple[Segment, ...], wall_temperature: float | None, quick: bool = False) -> tuple[float, str]:
     """Return the thrust that a boundary layer along segments of a wall costs [N], and its thickness in words.
 
     `quick` takes fewer points and Bartz's estimate of the viscosity, whose fifth root enters.

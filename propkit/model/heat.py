@@ -38,7 +38,11 @@ LEFT_OUT = (
 
 
 def heat_flux(
-    nozzle: Nozzle, wall_temperature: QuantityLike, coolant: str | None, coolant_pressure: QuantityLike | None, coolant_limit: QuantityLike | None
+    nozzle: Nozzle,
+    wall_temperature: QuantityLike,
+    coolant: str | None,
+    coolant_pressure: QuantityLike | None,
+    coolant_limit: QuantityLike | None,
 ) -> Answer:
     """Return the heat flux along the contour of a nozzle; see `Nozzle.heat_flux`."""
     wall_kelvin, jacket, limit = _read(nozzle, wall_temperature, coolant, coolant_pressure, coolant_limit)
@@ -65,7 +69,9 @@ def heat_flux(
     given: dict[str, float | str] = {"wall_temperature": wall_kelvin}
     doubts = [gas.doubt] if gas.doubt else []
     if not geometry.upstream:
-        doubts.append("The contraction is infinite: the wall starts at the throat, and chamber and convergent are not in the load. Give the chamber a contraction_ratio.")
+        doubts.append(
+            "The contraction is infinite: the wall starts at the throat, and chamber and convergent are not in the load. Give the chamber a contraction_ratio."
+        )
     elif nozzle.chamber._values["characteristic_length"] is None:
         doubts.append("The chamber has no characteristic_length: its cylinder is not in the load.")
     if coolant is None:
@@ -81,7 +87,12 @@ def heat_flux(
         given=given,
         headline=("peak_heat_flux", "heat_load", "heat_share", "coolant_temperature_rise"),
         absent=absent,
-        sources={"peak_heat_flux": "bartz-1957", "heat_load": "bartz-1957", "viscosity": gas.source, "coolant_temperature_rise": "conservation"},
+        sources={
+            "peak_heat_flux": "bartz-1957",
+            "heat_load": "bartz-1957",
+            "viscosity": gas.source,
+            "coolant_temperature_rise": "conservation",
+        },
         doubts=tuple(doubts),
         lines=LEFT_OUT,
         table=frame,
@@ -164,7 +175,13 @@ def _power(nozzle: Nozzle, gas: GasAtRest) -> float:
 
 
 def _coolant(
-    nozzle: Nozzle, coolant: str, pressure: float | None, limit: float | None, load: float, values: dict[str, float], given: dict[str, float | str]
+    nozzle: Nozzle,
+    coolant: str,
+    pressure: float | None,
+    limit: float | None,
+    load: float,
+    values: dict[str, float],
+    given: dict[str, float | str],
 ) -> Iterator[str]:
     """Add what the coolant takes up to `values` and `given`, and yield doubts."""
     from propkit.bridge.coolant import warmed
@@ -179,7 +196,12 @@ def _coolant(
     start = case._values.get(f"{coolant}_temperature") or row.temperature
     jacket = nozzle.chamber.si("pressure") if pressure is None else pressure
     after = warmed(row, start, jacket, load / flow)
-    values |= {"coolant_mass_flow": flow, "coolant_pressure": jacket, "coolant_temperature_rise": after.temperature - start, "coolant_temperature": after.temperature}
+    values |= {
+        "coolant_mass_flow": flow,
+        "coolant_pressure": jacket,
+        "coolant_temperature_rise": after.temperature - start,
+        "coolant_temperature": after.temperature,
+    }
     known = after.boiling_temperature if limit is None else limit
     label = case._values[coolant].label
     if known is None:
@@ -229,7 +251,9 @@ def _sections(frame: pd.DataFrame, geometry: Any, nozzle: Nozzle, system: UnitSy
         raw = [float(frame[name].iloc[row]) for row in rows]
         unit = entry.shown_in(system, raw)
         columns.append(Column(name, label, symbol, unit, 4, tuple(units.convert(value, entry.unit, unit) for value in raw)))
-    yield Section("flux", "Along the wall", table=Table("flux", "Along the wall", "place", tuple(name for name, _ in places), tuple(columns)))
+    yield Section(
+        "flux", "Along the wall", table=Table("flux", "Along the wall", "place", tuple(name for name, _ in places), tuple(columns))
+    )
 
 
 def _figure(frame: pd.DataFrame, system: UnitSystem) -> Figure:
@@ -243,4 +267,11 @@ def _figure(frame: pd.DataFrame, system: UnitSystem) -> Figure:
     line = Line(Series("axial position", xs, length, "x"), Series("heat flux", ys, unit, "q"), colour="accent")
     mark = Mark(xs[top], ys[top], f"{ys[top]:.3g} {units.shown_unit(unit)}")
     alt = f"Convective heat flux along the wall: largest {ys[top]:.4g} {units.shown_unit(unit)} near the throat"
-    return Figure("heat_flux", "Convective heat flux along the wall", alt, Axis("axial position", length, "x"), Axis("heat flux", unit, "q", low=0.0), (line, mark))
+    return Figure(
+        "heat_flux",
+        "Convective heat flux along the wall",
+        alt,
+        Axis("axial position", length, "x"),
+        Axis("heat flux", unit, "q", low=0.0),
+        (line, mark),
+    )

@@ -31,7 +31,9 @@ def section(performance: Performance, system: UnitSystem) -> Section:
         Column("source", "source", "", "", 0, ("", *(_short(entry.source) for entry, _ in listed), "")),
     )
     how = "; ".join(f"{name}: {words}" for name, words in performance.resolved_losses.estimates.items())
-    note = f"At {performance.input_text('ambient')}, in the fixed order of the bookkeeping; the product of the ratios is delivered over ideal."
+    note = (
+        f"At {performance.input_text('ambient')}, in the fixed order of the bookkeeping; the product of the ratios is delivered over ideal."
+    )
     if how:
         note += f" Estimates: {how}."
     return Section("losses", "From ideal to delivered", table=Table("losses", "From ideal to delivered", "loss", names, columns, note))
@@ -59,9 +61,13 @@ def figure(performance: Performance) -> Figure:
     values = Series("specific impulse", (ideal, *(entry.before for entry in listed), total), "s", "I_{sp}")
     low = _floor(total, ideal)
     starts = (low, *(entry.after for entry in listed), low)
-    alt = f"Specific impulse from {ideal:.1f} s ideal to {total:.1f} s delivered: " + ", ".join(f"{n} {t}" for n, t in zip(names, texts, strict=True))
+    alt = f"Specific impulse from {ideal:.1f} s ideal to {total:.1f} s delivered: " + ", ".join(
+        f"{n} {t}" for n, t in zip(names, texts, strict=True)
+    )
     title = f"From {ideal:.1f} s ideal to {total:.1f} s delivered"
-    return Figure("ledger", title, alt, Axis("specific impulse", "s", "I_{sp}", low=low), Axis(""), (Bars(names, values, texts, starts=starts),))
+    return Figure(
+        "ledger", title, alt, Axis("specific impulse", "s", "I_{sp}", low=low), Axis(""), (Bars(names, values, texts, starts=starts),)
+    )
 
 
 def _floor(total: float, ideal: float) -> float:

@@ -106,9 +106,15 @@ def _read(word: str, label: str, given: Any) -> Request:
         return _read_parts(word, label, given)
     if given == "estimate":
         if word not in _ESTIMATES:
-            raise InputError(Problem(label, "'estimate'", "given as a number", "There is no estimate of it here: it is measured, or common experience."))
+            raise InputError(
+                Problem(label, "'estimate'", "given as a number", "There is no estimate of it here: it is measured, or common experience.")
+            )
         if word == "two-phase":
-            raise InputError(Problem(label, "'estimate'", 'given with a lag, as in {"velocity_lag": 0.05}', "The lag of the particles is not computed here."))
+            raise InputError(
+                Problem(
+                    label, "'estimate'", 'given with a lag, as in {"velocity_lag": 0.05}', "The lag of the particles is not computed here."
+                )
+            )
         return Request(word, source=_SOURCES[word])
     ratio, decrement = _ratio_or_decrement(label, given)
     return Request(word, ratio, decrement, source="given")
@@ -120,7 +126,9 @@ def _read_parts(word: str, label: str, given: Mapping[str, Any]) -> Request:
         raise InputError(Problem(label, repr(unknown[0]), "one of " + ", ".join(map(repr, _OPTIONS[word]))))
     ways = [key for key in given if key != "source"]
     if len(ways) != 1:
-        raise InputError(Problem(label, as_text(dict(given)), "one of " + ", ".join(map(repr, _OPTIONS[word][:-1])) + ", with or without a source"))
+        raise InputError(
+            Problem(label, as_text(dict(given)), "one of " + ", ".join(map(repr, _OPTIONS[word][:-1])) + ", with or without a source")
+        )
     source = str(given.get("source", ""))
     if not source.isprintable() or len(source) > 200:
         raise InputError(Problem(f"{label}, source", as_text(source), "a printable text of at most 200 characters"))
@@ -189,7 +197,9 @@ def resolve(requests: Requests, nozzle: Nozzle, ambient: float) -> Resolved:
             ratio = entry.ratio
         elif entry.decrement is not None:
             if entry.decrement >= before:
-                raise InputError(Problem(f"losses: {entry.name}", f"{entry.decrement:g} s", f"below the specific impulse that is left, {before:.4g} s"))
+                raise InputError(
+                    Problem(f"losses: {entry.name}", f"{entry.decrement:g} s", f"below the specific impulse that is left, {before:.4g} s")
+                )
             ratio = float(physics.ratio_of_decrement(entry.decrement, before))
         else:
             ratio, made.estimates[entry.name], made.relations[entry.name] = _estimate(entry, nozzle, ambient, before)
@@ -220,16 +230,23 @@ def _impulse_before(name: str, nozzle: Nozzle, ambient: float, ratios: Mapping[s
     return ideal
 
 
-def _estimate(
-    entry: Request, nozzle: Nozzle, ambient: float, before: float
-) -> tuple[float, str, tuple[str, dict[str, float]]]:
+def _estimate(entry: Request, nozzle: Nozzle, ambient: float, before: float) -> tuple[float, str, tuple[str, dict[str, float]]]:
     """Return the estimated ratio, how it came about in words, and its relation with the numbers put in."""
     label = f"losses: {entry.name}"
     if entry.name == "kinetics":
         if nozzle.flow != "shifting":
-            raise InputError(Problem(label, "'estimate'", "given as a number with this flow", "The estimate lies between shifting and frozen flow and starts from shifting."))
+            raise InputError(
+                Problem(
+                    label,
+                    "'estimate'",
+                    "given as a number with this flow",
+                    "The estimate lies between shifting and frozen flow and starts from shifting.",
+                )
+            )
         share = physics.KINETICS_SHARE if entry.parameter is None else entry.parameter
-        shifting, frozen = stage.shifting_and_frozen(nozzle.chamber.held, nozzle.si("area_ratio") / nozzle.si("discharge_coefficient"), ambient)
+        shifting, frozen = stage.shifting_and_frozen(
+            nozzle.chamber.held, nozzle.si("area_ratio") / nozzle.si("discharge_coefficient"), ambient
+        )
         terms = {"shifting": shifting, "frozen": min(frozen, shifting), "share": share}
         ratio = float(physics.kinetics_ratio(**terms))
         return ratio, f"{share:.3g} of the way from shifting ({shifting:.5g} s) to frozen ({frozen:.5g} s)", ("kinetics_ratio", terms)
@@ -237,7 +254,14 @@ def _estimate(
         from propkit.model import friction
 
         if not nozzle.has("contour"):
-            raise InputError(Problem(label, "'estimate'", "given as a number without a contour", "The integral method runs along a wall: give the nozzle a contour."))
+            raise InputError(
+                Problem(
+                    label,
+                    "'estimate'",
+                    "given as a number without a contour",
+                    "The integral method runs along a wall: give the nozzle a contour.",
+                )
+            )
         drag, words = friction.drag(nozzle, entry.parameter)
         force = before * nozzle.si("mass_flow") * STANDARD_GRAVITY
         return float(physics.boundary_layer_ratio(drag, force)), words, ("boundary_layer_ratio", {"drag": drag, "thrust": force})
@@ -268,8 +292,7 @@ def entries(performance: Performance) -> tuple[float, tuple[physics.Entry, ...]]
     resolved: Resolved = performance.resolved_losses
     ideal, ratios = delivery.ledger(**_terms(nozzle, performance.si("ambient")), losses=resolved.ratios)
     listed = [
-        physics.Loss(name, ratio, source=_source(performance, name), estimate=name in resolved.estimates)
-        for name, ratio in ratios.items()
+        physics.Loss(name, ratio, source=_source(performance, name), estimate=name in resolved.estimates) for name, ratio in ratios.items()
     ]
     return ideal, physics.ledger(ideal, listed)
 

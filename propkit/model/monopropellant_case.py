@@ -40,9 +40,7 @@ class MonopropellantCase(PropellantCase):
     undeclared: ClassVar[tuple[str, ...]] = (*_TWO_ONLY, "stoichiometric_mixture_ratio")
     no_amount: ClassVar[str] = "it has one propellant"
 
-    propellant: CustomInput = CustomInput(
-        doc="the propellant, or the mixture that burns as one", reader=as_propellant, kw_only=False
-    )
+    propellant: CustomInput = CustomInput(doc="the propellant, or the mixture that burns as one", reader=as_propellant, kw_only=False)
     propellant_temperature: QuantityInput = QuantityInput(
         doc="temperature of the propellant as stored or fed", default=None, bounds=case_inputs.TEMPERATURES
     )

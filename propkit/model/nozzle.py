@@ -61,9 +61,7 @@ def read_nozzle(name: str, value: Any) -> Nozzle:
     """Return `value` when it is a nozzle."""
     if isinstance(value, Nozzle):
         return value
-    raise InputError(
-        Problem(name, as_text(value), "a pk.Nozzle", "Chain the objects: case, chamber, nozzle, performance.")
-    )
+    raise InputError(Problem(name, as_text(value), "a pk.Nozzle", "Chain the objects: case, chamber, nozzle, performance."))
 
 
 class Nozzle(Calculation):
@@ -113,9 +111,7 @@ class Nozzle(Calculation):
         bounds=Bounds(at_least=1.0, at_most=1e4),
         hint="Did you pass throat over exit?",
     )
-    exit_pressure: QuantityInput = QuantityInput(
-        doc="static pressure at the exit", default=None, bounds=Bounds(at_least=0.1, at_most=1e8)
-    )
+    exit_pressure: QuantityInput = QuantityInput(doc="static pressure at the exit", default=None, bounds=Bounds(at_least=0.1, at_most=1e8))
     throat_diameter: QuantityInput = QuantityInput(doc="geometric throat diameter", default=None, bounds=_LENGTHS)
     throat_area: QuantityInput = QuantityInput(doc="geometric throat area", default=None, bounds=_AREAS)
     exit_diameter: QuantityInput = QuantityInput(doc="geometric exit diameter", default=None, bounds=_LENGTHS)
@@ -271,9 +267,7 @@ class Nozzle(Calculation):
         """The propellant case upstream."""
         return self.chamber.case
 
-    def at(
-        self, *, area_ratio: NumberLike | None = None, pressure: QuantityLike | None = None, branch: str = "supersonic"
-    ) -> State:
+    def at(self, *, area_ratio: NumberLike | None = None, pressure: QuantityLike | None = None, branch: str = "supersonic") -> State:
         """Return the flow state at a local area ratio or at a pressure.
 
         Parameters

@@ -87,9 +87,7 @@ def _sized(nozzle: Nozzle, chamber: Chamber, expansion: stage.Expansion, ratio: 
         cstar_efficiency=chamber.si("cstar_efficiency"),
         divergence_factor=wall_of_nozzle.divergence_factor(nozzle._values["contour"], ratio) if name == "thrust" else 1.0,
     )
-    throat_area, exit_area, mass_flow = (
-        float(getattr(sizes, field)[0]) for field in ("throat_area", "exit_area", "mass_flow")
-    )
+    throat_area, exit_area, mass_flow = (float(getattr(sizes, field)[0]) for field in ("throat_area", "exit_area", "mass_flow"))
     if not (throat_area > 0.0 and math.isfinite(throat_area)):
         raise RangeError(
             f"No size gives a thrust of {nozzle._values['thrust']:g} N at an ambient pressure of {ambient.pressure:g} Pa: this expansion "

@@ -12,9 +12,7 @@ if TYPE_CHECKING:
     from propkit.model.chamber import Chamber
 
 
-def flow_problems(
-    chamber: Chamber, flow: str, typed: Mapping[str, Any], values: Mapping[str, Any]
-) -> Iterator[Problem]:
+def flow_problems(chamber: Chamber, flow: str, typed: Mapping[str, Any], values: Mapping[str, Any]) -> Iterator[Problem]:
     """Yield what is wrong with flow, freeze_at and exponent for a chamber.
 
     Parameters

@@ -19,9 +19,7 @@ def read_chamber(name: str, value: Any) -> Chamber:
     """Return `value` when it is a chamber."""
     if isinstance(value, Chamber):
         return value
-    raise InputError(
-        Problem(name, as_text(value), "a pk.Chamber", "Chain the objects: case, chamber, nozzle, performance.")
-    )
+    raise InputError(Problem(name, as_text(value), "a pk.Chamber", "Chain the objects: case, chamber, nozzle, performance."))
 
 
 def read_freeze(name: str, value: Any) -> str | float:
@@ -46,11 +44,7 @@ def size_problems(typed: Mapping[str, Any], values: Mapping[str, Any], bad: Coll
     flows = [name for name in sizing.FLOW_SIZES if name in typed or name in bad]
     given = [*expansion, *throat, *lips, *flows]
     shown = ", ".join(f"{name}={as_text(typed.get(name, '?'))}" for name in given) or "missing"
-    wanted = (
-        "one of area_ratio or exit_pressure with one size ("
-        + ", ".join(SIZES)
-        + "), or one throat size with one exit size"
-    )
+    wanted = "one of area_ratio or exit_pressure with one size (" + ", ".join(SIZES) + "), or one throat size with one exit size"
     two_sizes = len(throat) == 1 and len(lips) == 1 and not flows and not expansion
     one_size = len(expansion) == 1 and len(throat) + len(lips) + len(flows) == 1
     if not (two_sizes or one_size):
@@ -86,10 +80,7 @@ def size_problems(typed: Mapping[str, Any], values: Mapping[str, Any], bad: Coll
 def size_ratio(typed: Mapping[str, Any], values: Mapping[str, Any]) -> float:
     """Return exit over throat area from the two sizes given."""
     areas = [
-        float(sizing.area_of(name, values[name]))
-        for group in (sizing.EXIT_SIZES, sizing.THROAT_SIZES)
-        for name in group
-        if name in typed
+        float(sizing.area_of(name, values[name])) for group in (sizing.EXIT_SIZES, sizing.THROAT_SIZES) for name in group if name in typed
     ]
     return areas[0] / areas[1]
 
@@ -97,9 +88,7 @@ def size_ratio(typed: Mapping[str, Any], values: Mapping[str, Any]) -> float:
 def displaced(typed: Mapping[str, Any], changes: Mapping[str, Any]) -> dict[str, Any]:
     """Return `typed` without the sizes that the changes displace: naming one member of a group displaces the others."""
     kept = dict(typed)
-    throat, lips, flows, expansion = (
-        set(group) for group in (sizing.THROAT_SIZES, sizing.EXIT_SIZES, sizing.FLOW_SIZES, EXPANSIONS)
-    )
+    throat, lips, flows, expansion = (set(group) for group in (sizing.THROAT_SIZES, sizing.EXIT_SIZES, sizing.FLOW_SIZES, EXPANSIONS))
     named = set(changes)
     drop: set[str] = set()
     two_sizes = bool(throat & set(typed)) and bool(lips & set(typed))

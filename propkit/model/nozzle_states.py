@@ -43,27 +43,19 @@ def state_at(nozzle: Nozzle, area_ratio: Any, pressure: Any, branch: str) -> Sta
         )
     if pressure is not None and branch != "supersonic":
         raise InputError(
-            Problem(
-                "branch", as_text(branch), "left out beside pressure", "A pressure says on which side of the throat it is."
-            )
+            Problem("branch", as_text(branch), "left out beside pressure", "A pressure says on which side of the throat it is.")
         )
     if area_ratio is not None:
         ratio = units.to_si(area_ratio, "", "area_ratio")
         if not 1.0 <= ratio <= 1e6:
             raise InputError(Problem("area_ratio", as_text(area_ratio), "at least 1 and at most 1e+06"))
-        flow = stage.state_at(
-            nozzle.held, area_ratio=ratio / nozzle.si("discharge_coefficient"), supersonic=branch == "supersonic"
-        )
+        flow = stage.state_at(nozzle.held, area_ratio=ratio / nozzle.si("discharge_coefficient"), supersonic=branch == "supersonic")
         label = f"{branch}, area ratio {ratio:g}"
     else:
         wanted = units.to_si(pressure, "Pa", "pressure")
         stagnation = nozzle.chamber.si("stagnation_pressure")
         if not 0.0 < wanted <= stagnation:
-            raise InputError(
-                Problem(
-                    "pressure", as_text(pressure), f"above 0 and at most the stagnation pressure, {stagnation:g} Pa"
-                )
-            )
+            raise InputError(Problem("pressure", as_text(pressure), f"above 0 and at most the stagnation pressure, {stagnation:g} Pa"))
         flow = stage.state_at(nozzle.held, pressure=wanted)
         label = f"pressure {wanted:g} Pa"
     if nozzle.flow == "frozen" and int(flow.status[0]) == outcome.OUT_OF_RANGE:

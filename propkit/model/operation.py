@@ -60,19 +60,26 @@ def altitude_profile(performance: Performance) -> pd.DataFrame:
         },
         index=pd.Index(altitude, name="altitude"),
     )
-    frame.attrs["units"] = {"altitude": "m", "ambient_pressure": "Pa", "thrust": "N", "specific_impulse": "s", "thrust_coefficient": "", "optimum_area_ratio": ""}
+    frame.attrs["units"] = {
+        "altitude": "m",
+        "ambient_pressure": "Pa",
+        "thrust": "N",
+        "specific_impulse": "s",
+        "thrust_coefficient": "",
+        "optimum_area_ratio": "",
+    }
     return frame
 
 
 # -- throttling -----------------------------------------------------------------------------------
 
 
-def throttle_map(
-    performance: Performance, pressure: Any, mixture_ratio: Any, minimum_pressure: QuantityLike | None
-) -> Answer:
+def throttle_map(performance: Performance, pressure: Any, mixture_ratio: Any, minimum_pressure: QuantityLike | None) -> Answer:
     """Return the performance over chamber pressures and mixture ratios; see `Performance.throttle_map`."""
     nominal = performance.chamber.si("pressure")
-    lowest = performance._values["minimum_pressure"] if minimum_pressure is None else units.to_si(minimum_pressure, "Pa", "minimum_pressure")
+    lowest = (
+        performance._values["minimum_pressure"] if minimum_pressure is None else units.to_si(minimum_pressure, "Pa", "minimum_pressure")
+    )
     if lowest is not None and not lowest > 0.0:
         raise InputError(Problem("minimum_pressure", as_text(minimum_pressure), "above 0"))
     default = np.linspace(max(0.3 * nominal, lowest or 0.0), max(nominal, lowest or 0.0), 15)
@@ -86,7 +93,9 @@ def throttle_map(
     joint = streams is None or len(streams.held.mixture.atoms) == 1
     sources = _sources(performance, mixture_ratio)
     if len(pressures) * len(sources) > MOST_CASES:
-        raise InputError(Problem("pressure", f"{len(pressures) * len(sources)} cases", f"at most {MOST_CASES} cases with the mixture ratios"))
+        raise InputError(
+            Problem("pressure", f"{len(pressures) * len(sources)} cases", f"at most {MOST_CASES} cases with the mixture ratios")
+        )
     base = base_variant(performance)
     search = np.geomspace(0.02, 3.0, 36 if joint else 12) * nominal
     if joint:
@@ -105,7 +114,9 @@ def throttle_map(
     if len(known) == len(full):
         values["full_flow_pressure"] = float(np.median(known))
     else:
-        absent["full_flow_pressure"] = "no chamber pressure up to three times this one is the limit of full flow at sea level for every criterion"
+        absent["full_flow_pressure"] = (
+            "no chamber pressure up to three times this one is the limit of full flow at sea level for every criterion"
+        )
     doubts = []
     if performance.resolved_losses.estimates or performance.resolved_losses.ratios:
         doubts.append("The losses are held at their ratios of this performance.")
@@ -121,7 +132,11 @@ def throttle_map(
         absent=absent,
         sources={"full_flow_pressure": "summerfield-1954, kalt-badal-1965, schmucker-1973"},
         doubts=tuple(doubts),
-        lines=(*_limit_lines(full), "The hardware is held: throat area and area ratio. Thrust is the full-flowing value.", separation.SIDE_LOADS),
+        lines=(
+            *_limit_lines(full),
+            "The hardware is held: throat area and area ratio. Thrust is the full-flowing value.",
+            separation.SIDE_LOADS,
+        ),
         table=frame,
         drawn=(partial(_throttle_figure, frame, values.get("full_flow_pressure"), lowest),),
         shown=partial(_throttle_sections, frame),
@@ -157,7 +172,9 @@ def _single(performance: Performance, pressure: float, mixture_ratio: float, amb
 
 
 def _list(name: str, given: Any, unit: str, low: float, high: float) -> Array:
-    listed = [given] if isinstance(given, str | int | float) or (hasattr(given, "magnitude") and np.ndim(given.magnitude) == 0) else list(given)
+    listed = (
+        [given] if isinstance(given, str | int | float) or (hasattr(given, "magnitude") and np.ndim(given.magnitude) == 0) else list(given)
+    )
     read = [units.to_si(value, unit, name) for value in listed]
     if not read:
         raise InputError(Problem(name, "empty", "at least one value"))
@@ -180,7 +197,15 @@ def _sources(performance: Performance, mixture_ratio: Any) -> dict[float, Any]:
     return {float(ratio): case.replace(mixture_ratio=float(ratio)).held.mixture for ratio in ratios}
 
 
-_MAP_UNITS = {"pressure": "Pa", "mixture_ratio": "", "thrust": "N", "specific_impulse": "s", "mass_flow": "kg/s", "thrust_coefficient": "", "exit_pressure": "Pa"}
+_MAP_UNITS = {
+    "pressure": "Pa",
+    "mixture_ratio": "",
+    "thrust": "N",
+    "specific_impulse": "s",
+    "mass_flow": "kg/s",
+    "thrust_coefficient": "",
+    "exit_pressure": "Pa",
+}
 
 
 def _map_frame(performance: Performance, pressures: Array, ratios: Sequence[float], found: Sequence[stage.Delivered]) -> pd.DataFrame:
@@ -231,16 +256,40 @@ def _limit_lines(full: dict[str, float | None]) -> Iterator[str]:
 def _throttle_sections(frame: pd.DataFrame, system: UnitSystem) -> Iterator[Section]:
     rows = frame if len(frame) <= 24 else frame.iloc[np.linspace(0, len(frame) - 1, 24).astype(int)]
     columns = []
-    shown = (("mixture_ratio", "mixture_ratio"), ("thrust", "thrust"), ("specific_impulse", "specific_impulse"), ("mass_flow", "mass_flow"), ("exit_pressure", "exit_pressure"))
+    shown = (
+        ("mixture_ratio", "mixture_ratio"),
+        ("thrust", "thrust"),
+        ("specific_impulse", "specific_impulse"),
+        ("mass_flow", "mass_flow"),
+        ("exit_pressure", "exit_pressure"),
+    )
     for name, key in shown:
         entry = quantities.quantity(key, "performance")
         raw = rows[name].tolist()
         if all(value != value for value in raw):
             continue
         unit = entry.shown_in(system, [value for value in raw if value == value])
-        columns.append(Column(name, entry.label, entry.symbol, unit, 4, tuple(None if value != value else units.convert(value, entry.unit, unit) for value in raw)))
+        columns.append(
+            Column(
+                name,
+                entry.label,
+                entry.symbol,
+                unit,
+                4,
+                tuple(None if value != value else units.convert(value, entry.unit, unit) for value in raw),
+            )
+        )
     words = {True: "full", False: "separates", None: "no solution"}
-    columns.append(Column("sea_level", "at sea level", "", "", 0, tuple(words[None if value is None else bool(value)] for value in rows["flows_full_at_sea_level"])))
+    columns.append(
+        Column(
+            "sea_level",
+            "at sea level",
+            "",
+            "",
+            0,
+            tuple(words[None if value is None else bool(value)] for value in rows["flows_full_at_sea_level"]),
+        )
+    )
     pressure = quantities.quantity("pressure", "chamber")
     unit = pressure.shown_in(system, rows["pressure"].tolist())
     index = tuple(f"{units.convert(value, pressure.unit, unit):.4g} {units.shown_unit(unit)}" for value in rows["pressure"])
@@ -257,19 +306,32 @@ def _throttle_figure(frame: pd.DataFrame, full: float | None, lowest: float | No
         xs = tuple(units.convert(float(value), "Pa", x_unit) for value in part["pressure"])
         ys = tuple(units.convert(float(value), "N", y_unit) for value in part["thrust"])
         label = f"r = {float(ratio):.3g}" if float(ratio) == float(ratio) else ""  # type: ignore[arg-type]
-        layers.append(Line(Series("chamber pressure", xs, x_unit, "p_{c}"), Series("thrust", ys, y_unit, "F"), colour=place % 6, label=label))
+        layers.append(
+            Line(Series("chamber pressure", xs, x_unit, "p_{c}"), Series("thrust", ys, y_unit, "F"), colour=place % 6, label=label)
+        )
     for at, label in ((full, "flows full at sea level"), (lowest, "minimum pressure")):
         if at is not None and float(frame["pressure"].min()) <= at <= float(frame["pressure"].max()):
             layers.append(Rule("x", units.convert(at, "Pa", x_unit), label))
     alt = f"Thrust against chamber pressure, {len(layers)} lines"
-    return Figure("throttle", "Thrust against chamber pressure", alt, Axis("chamber pressure", x_unit, "p_{c}"), Axis("thrust", y_unit, "F"), tuple(layers))
+    return Figure(
+        "throttle",
+        "Thrust against chamber pressure",
+        alt,
+        Axis("chamber pressure", x_unit, "p_{c}"),
+        Axis("thrust", y_unit, "F"),
+        tuple(layers),
+    )
 
 
 # -- a burn ---------------------------------------------------------------------------------------
 
 
 def burn(
-    performance: Performance, duration: QuantityLike | None, total_impulse: QuantityLike | None, ullage: NumberLike | None, residuals: NumberLike | None
+    performance: Performance,
+    duration: QuantityLike | None,
+    total_impulse: QuantityLike | None,
+    ullage: NumberLike | None,
+    residuals: NumberLike | None,
 ) -> Answer:
     """Return what a burn needs; see `Performance.burn`."""
     if (duration is None) == (total_impulse is None):
@@ -282,7 +344,9 @@ def burn(
     else:
         impulse = _positive("total_impulse", total_impulse, "N*s", problems)
         if thrust <= 0.0:
-            problems.append(Problem("total_impulse", as_text(total_impulse), "left out: the thrust is not positive at this ambient pressure"))
+            problems.append(
+                Problem("total_impulse", as_text(total_impulse), "left out: the thrust is not positive at this ambient pressure")
+            )
         time = impulse / thrust if thrust > 0.0 else 1.0
     shares = {}
     for name, value, default in (("ullage", ullage, ULLAGE), ("residuals", residuals, RESIDUALS)):

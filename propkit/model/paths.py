@@ -58,9 +58,7 @@ def resolve(calculation: Calculation, path: str, *, inputs: bool = True, results
     if not results and own in places(calculation):
         others = [other for other in known if other.endswith(f".{path}")]
         hint = f" The input {' or '.join(others)} can be set." if others else ""
-        raise InputError(
-            f"{path!r} is a result of the {calculation.kind}, not an input.{hint}", path=path, candidates=others
-        )
+        raise InputError(f"{path!r} is a result of the {calculation.kind}, not an input.{hint}", path=path, candidates=others)
     found = [other for other in known if other.endswith(f".{path}")]
     if len(found) == 1:
         return known[found[0]]

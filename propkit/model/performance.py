@@ -103,7 +103,7 @@ class Performance(Calculation):
                 f"{ambient:g} Pa",
                 f"below the chamber's stagnation pressure, {pressure:g} Pa",
                 "Nothing would flow out.",
-            )
+            ),
         ]
 
     def _calculate(self) -> Outcome:
@@ -142,16 +142,12 @@ class Performance(Calculation):
                 "the gas has no mixture ratio: it is not made from an oxidizer and a fuel"
             )
         if case is not None and case.has("bulk_density"):
-            results["density_impulse"] = float(
-                thrust.density_impulse(results["specific_impulse"], case.si("bulk_density"))
-            )
+            results["density_impulse"] = float(thrust.density_impulse(results["specific_impulse"], case.si("bulk_density")))
         else:
             absent["density_impulse"] = "the bulk density of the propellants is not known"
         return Outcome(results, absent, tuple(self._doubts(results, nozzle, ambient.pressure, resolved)), resolved)
 
-    def _doubts(
-        self, results: dict[str, float], nozzle: Nozzle, ambient: float, resolved: bookkeeping.Resolved
-    ) -> Iterator[Doubt]:
+    def _doubts(self, results: dict[str, float], nozzle: Nozzle, ambient: float, resolved: bookkeeping.Resolved) -> Iterator[Doubt]:
         if results["thrust"] < 0.0:
             yield Doubt(
                 "The thrust is negative: the surroundings push harder than the jet; the nozzle cannot run like this.",
@@ -368,12 +364,8 @@ class Performance(Calculation):
         at = (
             ambient.altitude
             if ambient.altitude is not None
-            else (
-                60e3 if ambient.pressure <= pressures[-1] else float(atmosphere.altitude_of_pressure(ambient.pressure))
-            )
+            else (60e3 if ambient.pressure <= pressures[-1] else float(atmosphere.altitude_of_pressure(ambient.pressure)))
         )
         mark = Mark(min(max(at, 0.0), 60e3) / scale, units.convert(self.si("thrust"), row.unit, unit), ambient.text)
         alt = f"Thrust against altitude: {shown[0]:.4g} {units.shown_unit(unit)} at sea level, {shown[-1]:.4g} at 60 km"
-        return Figure(
-            "altitude", "Thrust against altitude", alt, Axis("altitude", length), Axis("thrust", unit, "F"), (line, mark)
-        )
+        return Figure("altitude", "Thrust against altitude", alt, Axis("altitude", length), Axis("thrust", unit, "F"), (line, mark))

@@ -46,9 +46,7 @@ _LIMITS = ("freezing_point", "boiling_point", "vapour_pressure")
 _FIGURES = ("density", "temperature", "pressure", "heat_capacity", *_LIMITS)
 _OWN_ONLY = ("formula", "temperature", "pressure", "phase", "saturated", "coolprop_fluid", "species")
 _STATED_ELSEWHERE = "A row of the library brings its own; for another give formula and enthalpy, without library_name."
-_STORED_ELSEWHERE = (
-    "A row has its own state; another stored state is an input of the case: oxidizer_temperature=, fuel_pressure=."
-)
+_STORED_ELSEWHERE = "A row has its own state; another stored state is an input of the case: oxidizer_temperature=, fuel_pressure=."
 
 
 class Propellant(Calculation):
@@ -106,12 +104,8 @@ class Propellant(Calculation):
     temperature: QuantityInput = QuantityInput(
         doc="temperature that the enthalpy is for; 298.15 K unless given", default=None, bounds=_TEMPERATURES
     )
-    pressure: QuantityInput = QuantityInput(
-        doc="pressure of the propellant; 1 bar unless given", default=None, bounds=_PRESSURES
-    )
-    role: CustomInput = CustomInput(
-        doc="what it serves as; not checked where not given", reader=read.roles, default=None
-    )
+    pressure: QuantityInput = QuantityInput(doc="pressure of the propellant; 1 bar unless given", default=None, bounds=_PRESSURES)
+    role: CustomInput = CustomInput(doc="what it serves as; not checked where not given", reader=read.roles, default=None)
     phase: ChoiceInput = ChoiceInput(choices=PHASES, doc="state of aggregation; liquid unless given", default=None)
     saturated: FlagInput = FlagInput(doc="whether it is a liquid at its own vapour pressure", default=False)
     heat_capacity: QuantityInput = QuantityInput(
@@ -124,9 +118,7 @@ class Propellant(Calculation):
     boiling_point: QuantityInput = QuantityInput(doc="boiling point at 101.325 kPa", default=None, bounds=_TEMPERATURES)
     vapour_pressure: QuantityInput = QuantityInput(doc="vapour pressure at 298.15 K", default=None, bounds=_PRESSURES)
     coolprop_fluid: TextInput = TextInput(doc="name of the fluid in CoolProp, for other stored states", default=None)
-    species: TextInput = TextInput(
-        doc="formula key of an unreacting gas in the species data, for cold gas", default=None
-    )
+    species: TextInput = TextInput(doc="formula key of an unreacting gas in the species data, for cold gas", default=None)
     hazard: TextInput = TextInput(doc="one line on what can hurt", default=None)
     source: TextInput = TextInput(doc="where the enthalpy comes from", default=None)
     library_name: CustomInput = CustomInput(
@@ -176,9 +168,7 @@ class Propellant(Calculation):
             problems.append(Problem("heat_capacity_range", "given alone", "given together with heat_capacity"))
         if "library_name" in typed or "library_name" in bad:
             beside = [name for name in typed if name in _OWN_ONLY]
-            hints = {
-                name: _STORED_ELSEWHERE if name in ("temperature", "pressure") else _STATED_ELSEWHERE for name in beside
-            }
+            hints = {name: _STORED_ELSEWHERE if name in ("temperature", "pressure") else _STATED_ELSEWHERE for name in beside}
             return problems + [Problem(name, "given beside library_name", "left out", hints[name]) for name in beside]
         for name, example in (("formula", '"C H1.95"'), ("enthalpy", '"-24.717 kJ/mol"')):
             if name not in typed and name not in bad:
@@ -240,9 +230,7 @@ class Propellant(Calculation):
         """Everything it can serve as, the main role first; empty where nobody stated one."""
         return self.row.roles
 
-    def stream(
-        self, temperature: float | None = None, pressure: float | None = None, role: str = ""
-    ) -> tuple[Stream, tuple[str, ...]]:
+    def stream(self, temperature: float | None = None, pressure: float | None = None, role: str = "") -> tuple[Stream, tuple[str, ...]]:
         """Return the propellant as a stream at a stored state, and what to doubt about it.
 
         Parameters

@@ -107,13 +107,9 @@ class PropellantCase(CaseKinds, Calculation):
     undeclared: ClassVar[tuple[str, ...]] = ()
     no_amount: ClassVar[str] = ""
 
-    oxidizer: CustomInput = CustomInput(
-        doc="propellant that supplies the oxidizing elements", reader=as_propellant, kw_only=False
-    )
+    oxidizer: CustomInput = CustomInput(doc="propellant that supplies the oxidizing elements", reader=as_propellant, kw_only=False)
     fuel: CustomInput = CustomInput(doc="propellant that is burnt", reader=as_propellant, kw_only=False)
-    mixture_ratio: NumberInput = NumberInput(
-        doc="oxidizer mass flow over fuel mass flow", default=None, bounds=case_inputs.RATIOS
-    )
+    mixture_ratio: NumberInput = NumberInput(doc="oxidizer mass flow over fuel mass flow", default=None, bounds=case_inputs.RATIOS)
     equivalence_ratio: NumberInput = NumberInput(
         doc="stoichiometric over actual mixture ratio; above 1 is fuel-rich", default=None, bounds=case_inputs.RATIOS
     )
@@ -132,18 +128,14 @@ class PropellantCase(CaseKinds, Calculation):
     oxidizer_pressure: QuantityInput = QuantityInput(
         doc="pressure of the oxidizer as stored or fed", default=None, bounds=case_inputs.PRESSURES
     )
-    fuel_pressure: QuantityInput = QuantityInput(
-        doc="pressure of the fuel as stored or fed", default=None, bounds=case_inputs.PRESSURES
-    )
+    fuel_pressure: QuantityInput = QuantityInput(doc="pressure of the fuel as stored or fed", default=None, bounds=case_inputs.PRESSURES)
     additives: CustomInput = CustomInput(
         doc="what is added, as mass fractions of the whole propellant flow",
         reader=case_inputs.read_additives,
         default=None,
     )
     condensed: FlagInput = FlagInput(doc="whether liquids and solids may form among the products", default=False)
-    thermo_basis: ChoiceInput = ChoiceInput(
-        doc="species data that the equilibrium rests on", choices=bases.BASES, default=bases.BASES[0]
-    )
+    thermo_basis: ChoiceInput = ChoiceInput(doc="species data that the equilibrium rests on", choices=bases.BASES, default=bases.BASES[0])
 
     stoichiometric_mixture_ratio = NumberResult(relation="stoichiometric_mixture_ratio", source="common-practice")
     bulk_density = QuantityResult(relation="bulk_density", source="definition")

@@ -19,9 +19,7 @@ def limits(propellant: Propellant, names: tuple[str, ...], system: UnitSystem) -
     """Return the state of the data and the storage limits, as far as known."""
     shown = [name for name in names if name in propellant.declared_inputs and propellant.has(name)]
     shown = [name for name in shown if name not in propellant.inputs]
-    return Section(
-        "storage", "State and storage limits", rows=tuple(row_of(propellant, name, system) for name in shown)
-    )
+    return Section("storage", "State and storage limits", rows=tuple(row_of(propellant, name, system) for name in shown))
 
 
 def about(row: PropellantRow) -> Section:

@@ -30,9 +30,7 @@ def propellants(library: str | Path | None = None) -> pd.DataFrame:
     import pandas as pd
 
     rows = library_data.library() if library is None else library_data.load_library(library)
-    frame = pd.DataFrame.from_records(
-        [_record_of(row) for row in rows.values()], index=pd.Index(list(rows), name="name")
-    )
+    frame = pd.DataFrame.from_records([_record_of(row) for row in rows.values()], index=pd.Index(list(rows), name="name"))
     frame.attrs["units"] = dict(_FRAME_UNITS)
     return frame
 

@@ -45,11 +45,7 @@ def build(recipe: Mapping[str, Any], depth: int = 0) -> Any:
     """
     if depth > DEEPEST:
         raise RecordError("the recipe is nested too deeply")
-    if (
-        not isinstance(recipe, Mapping)
-        or set(recipe) != {"object", "inputs"}
-        or not isinstance(recipe["inputs"], Mapping)
-    ):
+    if not isinstance(recipe, Mapping) or set(recipe) != {"object", "inputs"} or not isinstance(recipe["inputs"], Mapping):
         raise RecordError("a recipe has the two entries 'object' and 'inputs'")
     name = recipe["object"]
     if not isinstance(name, str) or name not in CLASSES:
@@ -61,9 +57,7 @@ def build(recipe: Mapping[str, Any], depth: int = 0) -> Any:
     except TypeError as error:
         raise RecordError(f"the inputs of {name} in the recipe are not those of a {name}: {error}") from error
     except InputError as error:
-        raise RecordError(
-            f"the inputs of {name} in the recipe are refused: {error}", problems=error.problems
-        ) from error
+        raise RecordError(f"the inputs of {name} in the recipe are refused: {error}", problems=error.problems) from error
 
 
 def _value(value: Any, depth: int) -> Any:

@@ -128,7 +128,9 @@ def predictions(performance: Performance) -> tuple[Prediction, ...]:
         criterion = separation.CRITERIA[name]
         pressure = float(criterion.pressure(ambient, stagnation, mach))
         there = _separated(performance, criterion, row, ambient, stagnation) if ambient > limit else (math.nan,) * 3
-        made.append(Prediction(name, criterion.title, criterion.source, pressure, limit, ambient > limit, full_flow_altitude(limit), *there))
+        made.append(
+            Prediction(name, criterion.title, criterion.source, pressure, limit, ambient > limit, full_flow_altitude(limit), *there)
+        )
     return tuple(made)
 
 
@@ -183,7 +185,9 @@ def separated_thrust(performance: Performance) -> float:
     """
     found = predictions(performance)
     if sum(entry.separates for entry in found) < 2:
-        raise NotAvailableError("fewer than two of three criteria predict separation here: the nozzle is taken to flow full", name="thrust_separated")
+        raise NotAvailableError(
+            "fewer than two of three criteria predict separation here: the nozzle is taken to flow full", name="thrust_separated"
+        )
     full = performance.si("thrust")
     return float(np.median([entry.thrust if math.isfinite(entry.thrust) else full for entry in found]))
 
@@ -220,18 +224,33 @@ def section(performance: Performance, system: UnitSystem) -> Section | None:
         verdict,
         column("exit_pressure", "exit pressure", "p_{e}", "pressure", [performance.nozzle.exit.si("pressure")] * len(found)),
         column("pressure", "separation pressure at the lip", "p_{sep}", "pressure", [entry.pressure for entry in found]),
-        column("ambient_limit", "ambient pressure at which it separates", "p_{a,sep}", "pressure", [entry.ambient_limit for entry in found]),
+        column(
+            "ambient_limit", "ambient pressure at which it separates", "p_{a,sep}", "pressure", [entry.ambient_limit for entry in found]
+        ),
         column("altitude", "flows full from", "h", "altitude", [entry.altitude or 0.0 for entry in found]),
     ]
     if any(entry.separates for entry in found):
-        columns.append(Column("area_ratio", "area ratio where it leaves the wall", r"\epsilon_{sep}", "", 4, tuple(_finite(entry.area_ratio) for entry in found)))
+        columns.append(
+            Column(
+                "area_ratio",
+                "area ratio where it leaves the wall",
+                r"\epsilon_{sep}",
+                "",
+                4,
+                tuple(_finite(entry.area_ratio) for entry in found),
+            )
+        )
         columns.append(column("thrust", "thrust, separated (estimate)", "F_{sep}", "thrust", [_finite(entry.thrust) for entry in found]))
     note = "From tests of cones and bells, good to some 20 %. "
     note += "Separated thrust is an estimate: the wall beyond takes ambient pressure. " if any(entry.separates for entry in found) else ""
     note += SIDE_LOADS if any(entry.separates for entry in found) else "Flows full from: altitude of the standard atmosphere."
     place = performance.input_text("ambient")
     title = f"Separation {'in' if place == 'vacuum' else 'at'} {place}"
-    return Section("separation", "Separation", table=Table("separation", title, "criterion", tuple(entry.title for entry in found), tuple(columns), note))
+    return Section(
+        "separation",
+        "Separation",
+        table=Table("separation", title, "criterion", tuple(entry.title for entry in found), tuple(columns), note),
+    )
 
 
 def _finite(value: float) -> float | None:

@@ -109,9 +109,7 @@ def frame_of(calculation: Calculation, system: UnitSystem) -> pd.DataFrame:
     return frame
 
 
-def station_table(
-    states: Iterable[State], columns: Iterable[str], system: UnitSystem, title: str = "Stations"
-) -> Section:
+def station_table(states: Iterable[State], columns: Iterable[str], system: UnitSystem, title: str = "Stations") -> Section:
     """Return the stations as a section: stations down, quantities across."""
     listed = list(states)
     made = []
@@ -144,20 +142,14 @@ def composition_along(stations: list[tuple[str, list[tuple[str, float]]]], small
         shown.update({name: None for name, value in pairs if value >= smallest})
     first = dict(stations[0][1])
     names = sorted(shown, key=lambda name: -first[name])
-    columns = tuple(
-        Column(station, station, "x", "", 4, tuple(dict(pairs)[name] for name in names)) for station, pairs in stations
-    )
+    columns = tuple(Column(station, station, "x", "", 4, tuple(dict(pairs)[name] for name in names)) for station, pairs in stations)
     note = f"Mole fractions, species of {smallest:g} and above at some station."
-    return Section(
-        "composition", "Composition", table=Table("composition", "Composition", "species", tuple(names), columns, note)
-    )
+    return Section("composition", "Composition", table=Table("composition", "Composition", "species", tuple(names), columns, note))
 
 
 def assumption_section(calculation: Calculation) -> Section:
     """Return the assumptions in words."""
-    lines = tuple(
-        f"{entry.statement}{' (default)' if entry.origin == 'default' else ''}" for entry in calculation.assumptions
-    )
+    lines = tuple(f"{entry.statement}{' (default)' if entry.origin == 'default' else ''}" for entry in calculation.assumptions)
     return Section("assumptions", "Assumptions", lines=lines)
 
 

@@ -68,9 +68,7 @@ def _nozzle_key(nozzle: Any, name: str) -> str:
 
 def values_for(link: Any, key: str, name: str) -> dict[str, float]:
     """Return the numbers that go into a relation [SI], by the names that the relation uses."""
-    return {"case": _case, "chamber": _chamber, "nozzle": _nozzle, "performance": _performance}[link.kind](
-        link, key, name
-    )
+    return {"case": _case, "chamber": _chamber, "nozzle": _nozzle, "performance": _performance}[link.kind](link, key, name)
 
 
 def _case(case: Any, key: str, name: str) -> dict[str, float]:

@@ -114,9 +114,7 @@ def geometry(
     return Geometry(upstream, divergent, results, absent, contour.own_doubts(area_ratio) if contour is not None else ())
 
 
-def _measures(
-    contour: Contour, upstream: tuple[Segment, ...], divergent: tuple[Segment, ...], throat_radius: float
-) -> dict[str, float]:
+def _measures(contour: Contour, upstream: tuple[Segment, ...], divergent: tuple[Segment, ...], throat_radius: float) -> dict[str, float]:
     whole = (*upstream, *divergent)
     return {
         "divergent_length": walls.length(divergent),

@@ -112,7 +112,9 @@ def _chamber_length(nozzle: Any, value: float) -> Step:
     pieces = shapes.chamber(radius, *given) if contour is None else contour.upstream_wall(radius, *given)
     text = "volume of cylinder and convergent of this length = characteristic length times throat area"
     right = given[1] * nozzle.si("throat_area")
-    return condition("chamber_length", "volume of the chamber [m3]", text, r"\int \pi r^2\, dx = L^{*} A_t", _volume(pieces), right, "sutton-biblarz")
+    return condition(
+        "chamber_length", "volume of the chamber [m3]", text, r"\int \pi r^2\, dx = L^{*} A_t", _volume(pieces), right, "sutton-biblarz"
+    )
 
 
 def _volume(segments: Any) -> float:

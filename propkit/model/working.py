@@ -16,9 +16,7 @@ if TYPE_CHECKING:
     from propkit.model.base import Calculation
 
 
-def working_of(
-    calculation: Calculation, result: str, system: UnitSystem, render: Callable[[Report, str], str]
-) -> Report:
+def working_of(calculation: Calculation, result: str, system: UnitSystem, render: Callable[[Report, str], str]) -> Report:
     """Return the working of a result of the chain as a report.
 
     Raises
@@ -38,9 +36,7 @@ def working_of(
     else:
         if name not in link.declared_results and name not in link.resolved():
             if name in link.inputs:
-                raise InputError(
-                    f"{result!r} was given, not computed: its working is the input itself ({link.typed_text(name)})."
-                )
+                raise InputError(f"{result!r} was given, not computed: its working is the input itself ({link.typed_text(name)}).")
             raise InputError(f"{result!r} is an input left at its default, not computed: it has no working.")
         if not link.has(name):
             link.si(name)
@@ -104,9 +100,7 @@ def _state_row(link: Calculation, state: str, quantity: str, system: UnitSystem)
 
     entry = quantities.quantity(quantity, "state")
     value, unit = sheet.in_display(entry, getattr(link, state).si(quantity), system)
-    return Row(
-        f"{state}.{quantity}", f"{entry.label} at the {state}", entry.symbol, value, unit, entry.digits, "computed"
-    )
+    return Row(f"{state}.{quantity}", f"{entry.label} at the {state}", entry.symbol, value, unit, entry.digits, "computed")
 
 
 def state_steps(link: Any, state: str, quantity: str) -> Iterator[Step]:

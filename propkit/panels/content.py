@@ -249,7 +249,9 @@ def pins(session: Session, kind: str, system: UnitSystem) -> dict[str, Any]:
         values = [_in_unit(other, name, row) for other in (here, *others)]
         if any(isinstance(value, float) for value in values):
             texts = [show.value(value, row.digits) for value in values]
-            rows.append({"label": show.sentence(row.label), "symbol": show.symbol(row.symbol), "unit": shown_unit(row.unit), "texts": texts})
+            rows.append(
+                {"label": show.sentence(row.label), "symbol": show.symbol(row.symbol), "unit": shown_unit(row.unit), "texts": texts}
+            )
     return {"names": names, "baseline": session.baseline, "rows": rows}
 
 

@@ -30,7 +30,15 @@ def static_text(*names: str) -> str:
 
 def style_sheet() -> str:
     """Return the style sheet with the colours of the palette."""
-    colours = {"accent": palette.ACCENT, "accent-dark": palette.ACCENT_DARK, "doubt": palette.DOUBT, "doubt-dark": palette.DOUBT_DARK, "ink": palette.INK, "quiet": palette.QUIET, "line": palette.HAIRLINE}
+    colours = {
+        "accent": palette.ACCENT,
+        "accent-dark": palette.ACCENT_DARK,
+        "doubt": palette.DOUBT,
+        "doubt-dark": palette.DOUBT_DARK,
+        "ink": palette.INK,
+        "quiet": palette.QUIET,
+        "line": palette.HAIRLINE,
+    }
     text = static_text("panel.css")
     for name, colour in colours.items():
         text = text.replace(f"%{name}%", colour)

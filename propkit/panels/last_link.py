@@ -228,4 +228,7 @@ def numeric_inputs(target: Any) -> dict[str, str]:
 def told_apart(labels: Mapping[str, str]) -> dict[str, str]:
     """Return labels with the place behind those that would else read the same."""
     listed = list(labels.values())
-    return {path: f"{label} ({path.rpartition('.')[0].replace('.', ' ')})" if listed.count(label) > 1 and "." in path else label for path, label in labels.items()}
+    return {
+        path: f"{label} ({path.rpartition('.')[0].replace('.', ' ')})" if listed.count(label) > 1 and "." in path else label
+        for path, label in labels.items()
+    }

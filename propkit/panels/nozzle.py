@@ -79,7 +79,11 @@ class NozzleFace(Face):
         """Return inputs that must be named beside `name`, so that none of them is displaced."""
         given = self.link.inputs
         if name in (*THROATS, *LIPS):
-            return {self.path(other): given[other] for other in (*THROATS, *LIPS) if other in given and other != name and self._pair(name, other)}
+            return {
+                self.path(other): given[other]
+                for other in (*THROATS, *LIPS)
+                if other in given and other != name and self._pair(name, other)
+            }
         if name == "sizing_ambient" and "thrust" in given:
             return {self.path("thrust"): given["thrust"]}
         if name == "thrust" and "sizing_ambient" in given:

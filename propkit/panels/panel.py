@@ -23,6 +23,7 @@ if TYPE_CHECKING:
 
     from propkit.panels.widget import PanelWidget
 
+
 class Control:
     """One control of a panel, as code sees it: reading gives what it shows, setting acts at once."""
 

@@ -123,7 +123,7 @@ class Session:
         with self.lock:
             waiting = {p: v for other in self.refusals.values() if other.path != path for p, v in other.changes.items() if p not in changes}
             error: Exception | None = None
-            for attempt in ([{**waiting, **changes}, dict(changes)] if waiting else [dict(changes)]):
+            for attempt in [{**waiting, **changes}, dict(changes)] if waiting else [dict(changes)]:
                 try:
                     value = self.value.replace(attempt)
                 except Exception as refused:

@@ -48,7 +48,10 @@ def study_content(panel: StudyPanel) -> dict[str, Any]:
         "stations": None,
         "doubts": doubts(plan, row),
         "facts": facts(plan),
-        "actions": [["best", "Open the best design", "Show every result of the best design"], *([["close", "Close the design", "Put the opened design away"]] if panel.picked_values else [])],
+        "actions": [
+            ["best", "Open the best design", "Show every result of the best design"],
+            *([["close", "Close the design", "Put the opened design away"]] if panel.picked_values else []),
+        ],
         "pins": pins(session, names, system),
         "code": code_of_study(plan),
         "undo": bool(session.past or session.refusals),
@@ -64,7 +67,9 @@ def _listed(plan: StudyPlan) -> list[str]:
     result = plan.result
     limits = [result.name_of(name) for name in plan.limits if name != SEPARATION]
     own = [name for name in result.results if "." not in name]
-    return [name for name in dict.fromkeys([*plan.target.headline, *limits, *own]) if name in result.results and name != plan.result_name][:LISTED]
+    return [name for name in dict.fromkeys([*plan.target.headline, *limits, *own]) if name in result.results and name != plan.result_name][
+        :LISTED
+    ]
 
 
 def _headline(plan: StudyPlan, row: int | None, base: Any, system: UnitSystem) -> list[dict[str, Any]]:
@@ -80,7 +85,17 @@ def _headline(plan: StudyPlan, row: int | None, base: Any, system: UnitSystem) -
     for span in plan.spans:
         if span.options:
             shown = _column(result, span.path).shown(np.array([row]))[0]
-            made.append({"name": span.path, "label": f"with {plan.labels[span.path]}", "symbol": "", "text": str(option_text(shown)), "unit": "", "kind": "given", "doubts": []})
+            made.append(
+                {
+                    "name": span.path,
+                    "label": f"with {plan.labels[span.path]}",
+                    "symbol": "",
+                    "text": str(option_text(shown)),
+                    "unit": "",
+                    "kind": "given",
+                    "doubts": [],
+                }
+            )
     return made
 
 
@@ -141,10 +156,21 @@ def _opened(panel: StudyPanel, system: UnitSystem) -> list[dict[str, Any]]:
     made = panel.picked
     if made is None:
         return []
-    where = ", ".join(f"{path.rpartition('.')[2].replace('_', ' ')} {value:.5g}" if isinstance(value, float) else f"{path.rpartition('.')[2]} {option_text(value)}" for path, value in panel.picked_values.items())
+    where = ", ".join(
+        f"{path.rpartition('.')[2].replace('_', ' ')} {value:.5g}"
+        if isinstance(value, float)
+        else f"{path.rpartition('.')[2]} {option_text(value)}"
+        for path, value in panel.picked_values.items()
+    )
     links = reversed(made.chain())
     return [
-        {"kind": link.kind, "title": f"{f'Opened design ({where}): ' if place == 0 else ''}{link.title.lower() if place == 0 else link.title}", "rows": content.result_rows(link, content.result_names(link), system, None), "open": place == 0, "plain": True}
+        {
+            "kind": link.kind,
+            "title": f"{f'Opened design ({where}): ' if place == 0 else ''}{link.title.lower() if place == 0 else link.title}",
+            "rows": content.result_rows(link, content.result_names(link), system, None),
+            "open": place == 0,
+            "plain": True,
+        }
         for place, link in enumerate(links)
     ]
 
@@ -212,7 +238,14 @@ def pins(session: Any, names: list[str], system: UnitSystem) -> dict[str, Any]:
         largest = max((abs(value) for value in values if np.isfinite(value)), default=0.0)
         unit, factor, offset = _shown(quantity, largest, system)
         texts = [show.value(value * factor + offset, quantity.digits) for value in values]
-        made.append({"label": show.sentence(label_of(result, name)), "symbol": show.symbol(quantity.symbol), "unit": shown_unit(unit), "texts": texts})
+        made.append(
+            {
+                "label": show.sentence(label_of(result, name)),
+                "symbol": show.symbol(quantity.symbol),
+                "unit": shown_unit(unit),
+                "texts": texts,
+            }
+        )
     return {"names": list(session.pins), "baseline": session.baseline, "rows": made}
 
 

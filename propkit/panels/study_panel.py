@@ -204,4 +204,3 @@ def _same_designs(one: Study, other: Study) -> bool:
             for a, b in zip(one.plan.columns, other.plan.columns, strict=True)
         )
     )
-

@@ -101,14 +101,34 @@ class StudyPlan(LastLink):
         self.labels = known
         self.x = self._span("x", x)
         others = {path: label for path, label in known.items() if path != x}
-        y = self.setting(ChoiceSetting("y", "upwards", "the input that varies upwards, or makes the curves", {NONE: "nothing: one curve", **others}, self.opened.second(others)))
+        y = self.setting(
+            ChoiceSetting(
+                "y",
+                "upwards",
+                "the input that varies upwards, or makes the curves",
+                {NONE: "nothing: one curve", **others},
+                self.opened.second(others),
+            )
+        )
         self.y = None if y == NONE else self._span("y", y)
         self.study = self.study_of(None)
         results = self.study.results
         self.result_labels = told_apart({name: result_label(self.target, name) for name in results})
-        shown = self.opened.result if self.opened.result in self.result_labels else next((n for n in self.target.headline if n in results), results[0])
+        shown = (
+            self.opened.result
+            if self.opened.result in self.result_labels
+            else next((n for n in self.target.headline if n in results), results[0])
+        )
         self.setting(ChoiceSetting("result", "result shown", "the result whose contours or curves are drawn", self.result_labels, shown))
-        self.setting(ChoiceSetting("optimum", "best design has", "which value of the result is the best", OPTIMA, "smallest" if self.opened.minimum else "largest"))
+        self.setting(
+            ChoiceSetting(
+                "optimum",
+                "best design has",
+                "which value of the result is the best",
+                OPTIMA,
+                "smallest" if self.opened.minimum else "largest",
+            )
+        )
         first = {name: self.declared_inputs.pop(name) for name in ("result", "optimum")}
         self.declared_inputs = {**first, **self.declared_inputs}
         self._declare_limits()
@@ -126,7 +146,15 @@ class StudyPlan(LastLink):
         ]
         number = quantities.Quantity("points", quantities.NUMBER, "", "points", "number of values along the axis", 4)
         points = self.setting(
-            NumberSetting(f"{axis}_points", number, "points", "the number of values along the axis", float(count), Bounds(at_least=2, at_most=MOST_POINTS), whole=True)
+            NumberSetting(
+                f"{axis}_points",
+                number,
+                "points",
+                "the number of values along the axis",
+                float(count),
+                Bounds(at_least=2, at_most=MOST_POINTS),
+                whole=True,
+            )
         )
         edited = any(f"{axis}_{end}" in self._typed for end in ("low", "high", "points"))
         if column is not None and not edited:
@@ -135,7 +163,9 @@ class StudyPlan(LastLink):
         if not ends[0] < ends[1]:
             given = {name: self._typed.get(name) for name in (f"{axis}_low", f"{axis}_high")}
             name = next((name for name, value in given.items() if value is not None), f"{axis}_low")
-            raise InputError(Problem(name, str(given[name]), f"{'below the highest' if name.endswith('low') else 'above the lowest'} {label}"))
+            raise InputError(
+                Problem(name, str(given[name]), f"{'below the highest' if name.endswith('low') else 'above the lowest'} {label}")
+            )
         return Span(path, np.linspace(ends[0], ends[1], int(points)))
 
     def _room(self, path: str, column: Column | None) -> tuple[float, float, int, quantities.Quantity, Bounds]:
@@ -163,7 +193,9 @@ class StudyPlan(LastLink):
             name = "limit" if number == 0 else f"limit_{number + 1}"
             label = "limit on" if number == 0 else f"limit {number + 1} on"
             first = given[number] if number < len(given) else (NONE, (None, None))
-            chosen = self.setting(ChoiceSetting(name, label, "a result that must stay inside a range", options, first[0] if first[0] in options else NONE))
+            chosen = self.setting(
+                ChoiceSetting(name, label, "a result that must stay inside a range", options, first[0] if first[0] in options else NONE)
+            )
             if chosen == NONE:
                 break
             quantity, unit = self._limited(chosen)
@@ -172,7 +204,9 @@ class StudyPlan(LastLink):
                 value = None if opened is None else _si(opened, unit, name)
                 if chosen == SEPARATION and end == "low" and first[0] != SEPARATION:
                     value = 1.0
-                self.setting(NumberSetting(f"{name}_{end}", quantity, word, "designs outside are hatched and do not count for the best", value))
+                self.setting(
+                    NumberSetting(f"{name}_{end}", quantity, word, "designs outside are hatched and do not count for the best", value)
+                )
 
     def _separates(self) -> bool:
         needed = {"nozzle.exit.pressure", "chamber.stagnation_pressure", "nozzle.exit.mach"}
@@ -180,7 +214,9 @@ class StudyPlan(LastLink):
 
     def _limited(self, name: str) -> tuple[quantities.Quantity, str]:
         if name == SEPARATION:
-            return quantities.Quantity(name, quantities.NUMBER, "", "margin against separation", "ambient pressure at separation over ambient pressure", 3), ""
+            return quantities.Quantity(
+                name, quantities.NUMBER, "", "margin against separation", "ambient pressure at separation over ambient pressure", 3
+            ), ""
         from propkit.study.evaluation import result_quantity
 
         quantity = result_quantity(self.target, name)
@@ -235,7 +271,11 @@ class StudyPlan(LastLink):
                 continue
             for end in ("low", "high"):
                 typed.pop(f"{axis}_{end}", None)
-            if changes[axis] == before[other] and before[axis] != NONE and not self.opened.is_choice(changes[axis] if axis == "x" else before[axis]):
+            if (
+                changes[axis] == before[other]
+                and before[axis] != NONE
+                and not self.opened.is_choice(changes[axis] if axis == "x" else before[axis])
+            ):
                 typed[other] = before[axis]
                 for end in ("low", "high"):
                     for to, since in ((axis, other), (other, axis)):
@@ -318,7 +358,10 @@ class Opened:
 
     def second(self, others: Mapping[str, str]) -> str:
         """Return the path upwards where none is chosen."""
-        return next((path for path, column in self.columns.items() if path in others and not column.is_choice), next((path for path in self.columns if path in others), NONE))
+        return next(
+            (path for path, column in self.columns.items() if path in others and not column.is_choice),
+            next((path for path in self.columns if path in others), NONE),
+        )
 
 
 def _varies(column: Column) -> bool:
@@ -328,7 +371,11 @@ def _varies(column: Column) -> bool:
 
 def constants(study: Study) -> dict[str, Any]:
     """Return the inputs that a study sets to one value throughout."""
-    same = {column.path for column in study.plan.columns if (len(column.options) == 1 if column.is_choice else len(np.unique(column.values)) == 1)}
+    same = {
+        column.path
+        for column in study.plan.columns
+        if (len(column.options) == 1 if column.is_choice else len(np.unique(column.values)) == 1)
+    }
     return {path: value for path, value in study.plan.design(0).items() if path in same}
 
 
@@ -344,4 +391,3 @@ def _si(value: Any, unit: str, name: str) -> float:
     from propkit import units
 
     return float(units.to_si(value, unit, name))
-

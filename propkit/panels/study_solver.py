@@ -123,7 +123,20 @@ def _ranges(template: Any, study: Study, rows: Any) -> dict[str, tuple[float, fl
 
 def _key(template: Any, ranges: dict[str, Any]) -> Any:
     """Return what must be the same for guesses to serve: everything upstream of the exit that the box does not hold."""
-    free = {"name", "case", "chamber", "throat_diameter", "throat_area", "mass_flow", "thrust", "sizing_ambient", "contour", "wall_thickness", "wall_density", "cstar_efficiency"}
+    free = {
+        "name",
+        "case",
+        "chamber",
+        "throat_diameter",
+        "throat_area",
+        "mass_flow",
+        "thrust",
+        "sizing_ambient",
+        "contour",
+        "wall_thickness",
+        "wall_density",
+        "cstar_efficiency",
+    }
     return (
         tuple(ranges),
         *(
@@ -155,5 +168,3 @@ def _box(study: Study, part: Part, rows: npt.NDArray[np.intp], here: dict[str, t
             ranges = {path: (float(values.min()), float(values.max())) for path, values in sample.items()}
             return Box(made, {**here, **ranges})
     return Box(None, dict.fromkeys(here, (0.0, math.inf)))
-
-

@@ -52,7 +52,11 @@ def uncertainty_content(panel: UncertaintyPanel) -> dict[str, Any]:
 def actions(plan: UncertaintyPlan) -> list[list[str]]:
     """Return the buttons: trials, or back to first order."""
     samples, _ = plan.trials
-    run = [TRIALS, f"Run {samples} trials" if isinstance(samples, int) else "Run trials until they are enough", "Draw every input from its whole distribution (Monte Carlo)"]
+    run = [
+        TRIALS,
+        f"Run {samples} trials" if isinstance(samples, int) else "Run trials until they are enough",
+        "Draw every input from its whole distribution (Monte Carlo)",
+    ]
     back = [FIRST_ORDER, "Back to first order", "Show the first-order interval again"]
     return [run] if plan.method == FIRST_ORDER else [back]
 
@@ -95,7 +99,15 @@ def headline(plan: UncertaintyPlan, base: Any, system: UnitSystem) -> list[dict[
     )
     made = []
     for place, (key, label, text, number) in enumerate(answers):
-        entry = {"name": key, "label": show.sentence(label), "symbol": show.symbol(quantity.symbol) if place == 0 else "", "text": text.replace("-", "\N{MINUS SIGN}"), "unit": shown_unit(unit), "kind": "computed", "doubts": []}
+        entry = {
+            "name": key,
+            "label": show.sentence(label),
+            "symbol": show.symbol(quantity.symbol) if place == 0 else "",
+            "text": text.replace("-", "\N{MINUS SIGN}"),
+            "unit": shown_unit(unit),
+            "kind": "computed",
+            "doubts": [],
+        }
         if before is not None and place < 2:
             step = number - before[place]
             entry["difference"] = show.signed(f"{abs(step):.{decimals}f}", step) if step else "±0"
@@ -136,7 +148,14 @@ def pins(session: Any, system: UnitSystem) -> dict[str, Any]:
     for name in results[0].results:
         quantity, (unit, _) = results[0]._quantity(name), results[0]._display(name, system)
         texts = [f"{result.rounded(name, system)}" if name in result.results else show.ABSENT for result in results]
-        made.append({"label": show.sentence(session.value.result_labels[name]), "symbol": show.symbol(quantity.symbol), "unit": shown_unit(unit), "texts": texts})
+        made.append(
+            {
+                "label": show.sentence(session.value.result_labels[name]),
+                "symbol": show.symbol(quantity.symbol),
+                "unit": shown_unit(unit),
+                "texts": texts,
+            }
+        )
     return {"names": list(session.pins), "baseline": session.baseline, "rows": made}
 
 
@@ -163,12 +182,16 @@ def normal_curve(plan: UncertaintyPlan, system: UnitSystem) -> Figure | None:
     steps = np.linspace(-REACH, REACH, POINTS)
     density = np.exp(-0.5 * steps**2) / (deviation * math.sqrt(2.0 * math.pi))
     line = Line(
-        Series(quantity.label, tuple((value + steps * deviation).tolist()), unit, quantity.symbol), Series("density", tuple(density.tolist())), fill=True
+        Series(quantity.label, tuple((value + steps * deviation).tolist()), unit, quantity.symbol),
+        Series("density", tuple(density.tolist())),
+        fill=True,
     )
     rules = tuple(Rule("x", place, text) for place, text in ((value, "nominal"), (low, "2.5 %"), (high, "97.5 %")))
     title = f"{show.sentence(quantity.label)}: normal, of the first-order standard uncertainty"
     alt = f"{title}: {value:.6g}, 95 % between {low:.6g} and {high:.6g} {shown_unit(unit)}"
-    return Figure(f"interval-{name}", title, alt, Axis(quantity.label, unit, quantity.symbol), Axis("probability density", low=0.0), (line, *rules))
+    return Figure(
+        f"interval-{name}", title, alt, Axis(quantity.label, unit, quantity.symbol), Axis("probability density", low=0.0), (line, *rules)
+    )
 
 
 # -- code --------------------------------------------------------------------------------------------

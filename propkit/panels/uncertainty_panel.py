@@ -179,5 +179,3 @@ def _opened(uncertainty: Uncertainty | UncertaintyResult, result: str) -> Uncert
     if solved is not None:
         made.hold(solved)
     return made
-
-

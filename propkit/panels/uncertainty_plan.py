@@ -122,14 +122,20 @@ class UncertaintyPlan(LastLink):
         inputs = {path: self._spread(path, value) for path, value in opened.inputs.items()}
         self.uncertainty = Uncertainty(self.target, inputs, opened.correlation or None, list(opened.results))
         self.setting(ChoiceSetting("method", "method", "first order, or trials of the whole distributions", METHODS, opened.method))
-        self.setting(ChoiceSetting("illegal", "draws outside the legal range", "what trials do with a draw that an input cannot have", ILLEGAL, opened.illegal))
+        self.setting(
+            ChoiceSetting(
+                "illegal", "draws outside the legal range", "what trials do with a draw that an input cannot have", ILLEGAL, opened.illegal
+            )
+        )
         for name, label, value, bounds in (
             ("samples", "trials", opened.samples, Bounds(at_least=100, at_most=MOST_SAMPLES)),
             ("seed", "seed", opened.seed, Bounds(at_least=0, at_most=2**31)),
         ):
             row = quantities.Quantity(name, quantities.NUMBER, "", label, label, 6)
             start = float(value) if isinstance(value, int) else float(SAMPLES)
-            self.setting(NumberSetting(name, row, label, f"the {'number' if name == 'samples' else 'seed'} of the trials", start, bounds, whole=True))
+            self.setting(
+                NumberSetting(name, row, label, f"the {'number' if name == 'samples' else 'seed'} of the trials", start, bounds, whole=True)
+            )
 
     def _spread(self, path: str, distribution: Distribution) -> Distribution:
         entry = self._row(path)
@@ -160,7 +166,9 @@ class UncertaintyPlan(LastLink):
 
     def _only_shown(self, other: UncertaintyPlan) -> bool:
         """Whether another plan has the same numbers, and only shows another result of them."""
-        if other.method != self.method or (self.method == TRIALS and (other.trials, other.si("illegal")) != (self.trials, self.si("illegal"))):
+        if other.method != self.method or (
+            self.method == TRIALS and (other.trials, other.si("illegal")) != (self.trials, self.si("illegal"))
+        ):
             return False
         return dict(other.uncertainty.inputs) == dict(self.uncertainty.inputs)
 

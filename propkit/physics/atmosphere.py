@@ -282,9 +282,7 @@ def temperature(altitude: Values) -> Array:
     height = _checked(altitude)
     lower, _ = _layer_state(np.minimum(height, LAYER_TOP))
     upper = np.maximum(height, LAYER_TOP)
-    return np.where(
-        height <= LAYER_TOP, lower, _upper_kinetic_temperature(upper) / np.interp(upper, _NODE_HEIGHT, _NODE_RATIO)
-    )
+    return np.where(height <= LAYER_TOP, lower, _upper_kinetic_temperature(upper) / np.interp(upper, _NODE_HEIGHT, _NODE_RATIO))
 
 
 def kinetic_temperature(altitude: Values) -> Array:

@@ -25,9 +25,7 @@ def choked_mass_flow(
     return flux * values(throat_area)
 
 
-def mass_flow(
-    throat_mass_flux: Values, throat_area: Values, discharge_coefficient: Values = 1.0, cstar_efficiency: Values = 1.0
-) -> Array:
+def mass_flow(throat_mass_flux: Values, throat_area: Values, discharge_coefficient: Values = 1.0, cstar_efficiency: Values = 1.0) -> Array:
     """Return the mass flow [kg/s]: ideal throat mass flux [kg/(m2 s)] and area [m2], Cd, c* efficiency."""
     return values(discharge_coefficient) * values(throat_mass_flux) * values(throat_area) / values(cstar_efficiency)
 

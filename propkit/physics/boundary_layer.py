@@ -154,9 +154,7 @@ def momentum_thickness(flow: WallFlow) -> Array:
     return values(grown**0.8)
 
 
-def boundary_layer_drag(
-    exit_radius: Values, lip_angle: Values, density: Values, velocity: Values, momentum_thickness: Values
-) -> Array:
+def boundary_layer_drag(exit_radius: Values, lip_angle: Values, density: Values, velocity: Values, momentum_thickness: Values) -> Array:
     """Return the thrust that a boundary layer costs [N].
 
     Parameters

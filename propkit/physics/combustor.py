@@ -98,9 +98,7 @@ def combustor(
     _checked(pressure, contraction_ratio, pressure_at)
     atoms = np.atleast_2d(values(elements))
     shape = atoms.shape[:1]
-    h, quoted, ratio = (
-        np.array(np.broadcast_to(values(part), shape)) for part in (enthalpy, pressure, contraction_ratio)
-    )
+    h, quoted, ratio = (np.array(np.broadcast_to(values(part), shape)) for part in (enthalpy, pressure, contraction_ratio))
     finite = np.isfinite(ratio)
     p0, settled = quoted.copy(), _SETTLED
     if has_tangent(atoms, h, quoted, ratio):
@@ -129,9 +127,7 @@ def combustor(
     assert throat is not None
     assert inlet.equilibrium is not None
     solved = (miss <= _ACCEPTED) & (rest.status == equilibrium.CONVERGED)
-    status = np.where(
-        rest.status != equilibrium.CONVERGED, rest.status, np.where(solved, inlet.status, equilibrium.NOT_CONVERGED)
-    )
+    status = np.where(rest.status != equilibrium.CONVERGED, rest.status, np.where(solved, inlet.status, equilibrium.NOT_CONVERGED))
     status = np.where(finite, status, rest.status)
     rest = replace(rest, status=status)
     face = quoted if pressure_at == "injector" else np.where(finite & np.isfinite(face), face, p0)
@@ -148,9 +144,7 @@ def _checked(pressure: Values, contraction_ratio: Values, pressure_at: str) -> N
         raise InputError(Problem("pressure_at", repr(pressure_at), "one of " + ", ".join(map(repr, PRESSURES))))
 
 
-def constant_property_pressures(
-    pressure: Values, gamma: Values, contraction_ratio: Values, pressure_at: str
-) -> tuple[Array, Array]:
+def constant_property_pressures(pressure: Values, gamma: Values, contraction_ratio: Values, pressure_at: str) -> tuple[Array, Array]:
     """Pressures at the injector face and of the nozzle inlet at rest, for a gas with constant properties.
 
     Parameters

@@ -48,9 +48,7 @@ def _throat_arc(throat_radius: float, arc: float, end_angle: float) -> tuple[Arc
     return piece, (float(x[0]), float(r[0]))
 
 
-def cone_length(
-    throat_radius: Values, area_ratio: Values, half_angle: Values, throat_arc: float = DOWNSTREAM_ARC
-) -> Array:
+def cone_length(throat_radius: Values, area_ratio: Values, half_angle: Values, throat_arc: float = DOWNSTREAM_ARC) -> Array:
     """Return the length [m] from throat to exit of a cone that leaves the throat in an arc.
 
     Parameters
@@ -87,9 +85,7 @@ def cone_length(
     return rt * rise / np.tan(angle)
 
 
-def cone(
-    throat_radius: float, area_ratio: float, half_angle: float, throat_arc: float = DOWNSTREAM_ARC
-) -> tuple[Segment, ...]:
+def cone(throat_radius: float, area_ratio: float, half_angle: float, throat_arc: float = DOWNSTREAM_ARC) -> tuple[Segment, ...]:
     """Return a conical divergent: throat arc and straight wall.
 
     Parameters
@@ -176,17 +172,13 @@ def bell(
     Rao (1960).
     """
     exit_radius = _checked_radii(throat_radius, area_ratio)
-    require(
-        length_fraction > 0.0, "length", length_fraction, "above 0", "It is the share of a 15 degree cone's length."
-    )
+    require(length_fraction > 0.0, "length", length_fraction, "above 0", "It is the share of a 15 degree cone's length.")
     if throat_angle is None or exit_angle is None:
         from_table = bell_angles(area_ratio, length_fraction)
         throat_angle = float(from_table[0]) if throat_angle is None else throat_angle
         exit_angle = float(from_table[1]) if exit_angle is None else exit_angle
     require(0.0 < throat_angle < 0.5 * np.pi, "throat_angle", np.degrees(throat_angle), "above 0 and below 90 degrees")
-    require(
-        0.0 <= exit_angle < throat_angle, "exit_angle", np.degrees(exit_angle), "0 or more and below the throat angle"
-    )
+    require(0.0 <= exit_angle < throat_angle, "exit_angle", np.degrees(exit_angle), "0 or more and below the throat angle")
     piece, start = _throat_arc(throat_radius, throat_arc, throat_angle)
     total = length_fraction * float(cone_length(throat_radius, area_ratio, REFERENCE_ANGLE, throat_arc))
     chord = float(np.arctan2(exit_radius - start[1], total - start[0]))
@@ -207,9 +199,7 @@ def bell(
     return piece, Curve("bell", start, crossing, (total, exit_radius))
 
 
-def largest_convergent_angle(
-    contraction_ratio: float, upstream_arc: float = UPSTREAM_ARC, inlet_arc: float = INLET_ARC
-) -> float:
+def largest_convergent_angle(contraction_ratio: float, upstream_arc: float = UPSTREAM_ARC, inlet_arc: float = INLET_ARC) -> float:
     """Return the steepest convergent half-angle [rad] whose two arcs fit between chamber and throat radius."""
     rise = (np.sqrt(contraction_ratio) - 1.0) / (upstream_arc + inlet_arc)
     return float(np.arccos(max(1.0 - rise, 0.0)))
@@ -250,9 +240,7 @@ def convergent(
     Geometry; arc of 1.5 throat radii after Rao (1960), the rest common practice, no source.
     """
     require(throat_radius > 0.0, "throat_radius", throat_radius, "above 0")
-    require(
-        contraction_ratio > 1.0, "contraction_ratio", contraction_ratio, "above 1", "It is chamber over throat area."
-    )
+    require(contraction_ratio > 1.0, "contraction_ratio", contraction_ratio, "above 1", "It is chamber over throat area.")
     require(upstream_arc > 0.0, "upstream_arc", upstream_arc, "above 0")
     require(inlet_arc > 0.0, "inlet_arc", inlet_arc, "above 0")
     steepest = largest_convergent_angle(contraction_ratio, upstream_arc, inlet_arc)

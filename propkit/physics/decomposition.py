@@ -38,8 +38,6 @@ def hydrazine_products(ammonia_dissociation: float) -> dict[str, float]:
     """
     x = float(ammonia_dissociation)
     if not 0.0 <= x <= 1.0:
-        raise InputError(
-            Problem("ammonia_dissociation", f"{x:g}", "from 0 to 1", "0.4 to 0.7 is usual for a warm bed.")
-        )
+        raise InputError(Problem("ammonia_dissociation", f"{x:g}", "from 0 to 1", "0.4 to 0.7 is usual for a warm bed."))
     made = {"NH3": 4.0 * (1.0 - x) / 3.0, "N2": (1.0 + 2.0 * x) / 3.0, "H2": 2.0 * x}
     return {species: moles for species, moles in made.items() if moles > 0.0}

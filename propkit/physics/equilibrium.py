@@ -187,9 +187,7 @@ def solve(
     b = np.atleast_2d(values(elements))
     given, wanted = _given(temperature, enthalpy, entropy)
     if b.shape[1] != len(table.elements):
-        raise InputError(
-            f"`elements` has {b.shape[1]} columns; the table has the elements {', '.join(table.elements)}."
-        )
+        raise InputError(f"`elements` has {b.shape[1]} columns; the table has the elements {', '.join(table.elements)}.")
     p, target = (np.array(np.broadcast_to(values(part), b.shape[0])) for part in (pressure, wanted))
     require(p > 0.0, "pressure", p, "above 0")
     require(b >= 0.0, "elements", b, "0 or more")

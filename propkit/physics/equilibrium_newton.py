@@ -226,9 +226,7 @@ def iterate(problem: Problem, start: Unknowns, iterations: int = ITERATIONS) -> 
         done = (residual <= TOLERANCE) | ((residual <= _STALLED_TOLERANCE) & (residual >= 0.5 * before))
         leaving = np.ones_like(done) if step == iterations else done | ~np.isfinite(residual)
         if leaving.any():
-            _store(
-                out, number[leaving], x.take(leaving), sums, solution, leaving, done[leaving], residual[leaving], step
-            )
+            _store(out, number[leaving], x.take(leaving), sums, solution, leaving, done[leaving], residual[leaving], step)
             if leaving.all():
                 break
             keep = ~leaving
@@ -257,9 +255,7 @@ def _solve(problem: Problem, sums: Sums, x: Unknowns, target: Array) -> tuple[Ar
         right[:, size, 0] += energy
     elif problem.given == "entropy":
         energy = target / GAS_CONSTANT - sums.entropy
-        right[:, size, 0] += (
-            energy + _dot(x.potentials, sums.shortfall[:, :last]) + sums.shortfall[:, last] - sums.spread
-        )
+        right[:, size, 0] += energy + _dot(x.potentials, sums.shortfall[:, :last]) + sums.shortfall[:, last] - sums.spread
         sums.matrix[:, size, : size + 1] -= sums.correction[:, : size + 1]
         sums.matrix[:, size, size + 1 :] -= sums.shortfall[:, size + 1 :]
     right[:, size, 1] = 1.0
@@ -278,9 +274,7 @@ def _solve(problem: Problem, sums: Sums, x: Unknowns, target: Array) -> tuple[Ar
     return solution, energy
 
 
-def _flow(
-    condition: FlowCondition, sums: Sums, x: Unknowns, solution: Array, energy: Array, number: Integers
-) -> tuple[Array, Array]:
+def _flow(condition: FlowCondition, sums: Sums, x: Unknowns, solution: Array, energy: Array, number: Integers) -> tuple[Array, Array]:
     """Return the residual of the flow condition and the step in ln p that removes it."""
     last = x.potentials.shape[1]
     heat = energy + _dot(x.potentials, sums.shortfall[:, :last]) + sums.shortfall[:, last]
@@ -296,9 +290,7 @@ def _flow(
     return residual, np.clip(-residual / slope, -_PRESSURE_STEP, _PRESSURE_STEP)
 
 
-def _advance(
-    problem: Problem, x: Unknowns, sums: Sums, solution: Array, pressure_step: Array | None, bounds: Array
-) -> None:
+def _advance(problem: Problem, x: Unknowns, sums: Sums, solution: Array, pressure_step: Array | None, bounds: Array) -> None:
     """Take the step, shortened where it is too long; changes `x`."""
     last = x.potentials.shape[1]
     step = solution[:, :, 0]

@@ -70,9 +70,7 @@ def settled_start(problem: Problem, pressure: Array, slots: int = 0) -> Unknowns
     return iterate(fixed, cold_start(fixed, pressure, slots), _WARMING_UP).unknowns
 
 
-def search(
-    problem: Problem, pressure: Array, slots: int = 0, solver: Solver = iterate
-) -> tuple[Outcome, npt.NDArray[np.bool_]]:
+def search(problem: Problem, pressure: Array, slots: int = 0, solver: Solver = iterate) -> tuple[Outcome, npt.NDArray[np.bool_]]:
     """Solve cases by walking in temperature from equilibrium to equilibrium, then the plain iteration inside the bracket.
 
     Parameters

@@ -43,14 +43,10 @@ def shifting(table: SpeciesTable, elements: Array, reservoir: EquilibriumState) 
     Shifting
         The isentrope.
     """
-    return Shifting(
-        table, np.atleast_2d(values(elements)), reservoir.enthalpy, reservoir.entropy, reservoir.pressure, reservoir
-    )
+    return Shifting(table, np.atleast_2d(values(elements)), reservoir.enthalpy, reservoir.entropy, reservoir.pressure, reservoir)
 
 
-def frozen(
-    table: SpeciesTable, amounts: Array, enthalpy: Array, entropy: Array, pressure: Array, temperature: Array
-) -> Frozen:
+def frozen(table: SpeciesTable, amounts: Array, enthalpy: Array, entropy: Array, pressure: Array, temperature: Array) -> Frozen:
     """Return the isentrope of a gas whose composition is held.
 
     Parameters

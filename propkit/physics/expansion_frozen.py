@@ -121,9 +121,7 @@ class Frozen:
         ratio = np.where(np.abs(ratio - 1.0) < _ACCEPTED, 1.0, ratio)
         good = np.isfinite(ratio) & (ratio >= 1.0)
         gamma = sonic.isentropic_exponent
-        mach = gas_dynamics.mach_from_area_ratio(
-            np.where(good, ratio, 1.0), gamma, "supersonic" if supersonic else "subsonic"
-        )
+        mach = gas_dynamics.mach_from_area_ratio(np.where(good, ratio, 1.0), gamma, "supersonic" if supersonic else "subsonic")
         fall = gas_dynamics.temperature_ratio(mach, gamma) / gas_dynamics.temperature_ratio(1.0, gamma)
         start = np.minimum(sonic.temperature * fall, self._rest_temperature() * (1.0 - 1e-9))
         goal = np.log(mass_flux)
@@ -142,9 +140,7 @@ class Frozen:
         t = np.exp(log_temperature)
         rows = self.coefficients[np.arange(t.size), self.table.interval(t)]
         cp, h, s = (GAS_CONSTANT * np.einsum("ij,ij->i", part, rows) for part in powers(t))
-        log_pressure = (
-            np.log(self.table.reference_pressure) + (s + self.mixing_entropy - self.entropy) / self.gas_constant
-        )
+        log_pressure = np.log(self.table.reference_pressure) + (s + self.mixing_entropy - self.entropy) / self.gas_constant
         return Mixture(t, cp, h * t, log_pressure)
 
     def _exponent(self, gas: Mixture) -> Array:
@@ -158,9 +154,7 @@ class Frozen:
         x = np.log(self.temperature)
         for _ in range(_ITERATIONS):
             gas = self.mixture(x)
-            step = np.clip(
-                (self.enthalpy - gas.enthalpy) / (gas.heat_capacity * gas.temperature), -_LARGEST_STEP, _LARGEST_STEP
-            )
+            step = np.clip((self.enthalpy - gas.enthalpy) / (gas.heat_capacity * gas.temperature), -_LARGEST_STEP, _LARGEST_STEP)
             x = x + step
             if not (magnitude(step) > _ACCEPTED).any():
                 break
@@ -206,15 +200,11 @@ class Frozen:
         )
 
 
-def frozen_gas(
-    table: SpeciesTable, amounts: Array, enthalpy: Array, entropy: Array, pressure: Array, temperature: Array
-) -> Frozen:
+def frozen_gas(table: SpeciesTable, amounts: Array, enthalpy: Array, entropy: Array, pressure: Array, temperature: Array) -> Frozen:
     """Return the isentrope of a held composition; arguments as for `propkit.physics.expansion.frozen`."""
     gas = amounts[:, : table.gas_count]
     moles = gas.sum(axis=1)
-    share = np.maximum(
-        gas / moles[:, None], np.finfo(float).tiny
-    )  # a trace below the smallest normal number adds nothing
+    share = np.maximum(gas / moles[:, None], np.finfo(float).tiny)  # a trace below the smallest normal number adds nothing
     mixing = -(gas * np.log(share)).sum(axis=1)
     coefficients = np.stack([amounts @ segment.T for segment in table.segments], axis=1)
     shape = moles.shape
@@ -305,7 +295,5 @@ class FrozenFrom:
         reached = np.where(self.at_the_throat, True, mass_flux <= self.place.mass_flux * (1.0 + 1e-12))
         if reached.all():
             return late
-        early = self.before.at_mass_flux(
-            np.where(reached, self.place.mass_flux, mass_flux), self.equilibrium_throat, True
-        )
+        early = self.before.at_mass_flux(np.where(reached, self.place.mass_flux, mass_flux), self.equilibrium_throat, True)
         return replace(choose(early, late, reached), equilibrium=None)

@@ -96,9 +96,7 @@ class Parallel:
         start = np.clip(middle + np.log(fall), low, high)
         sign = -1.0 if supersonic else 1.0
         found = self._root(lambda state: sign * (np.log(state.mass_flux) - goal), low, high, start)
-        return choose(
-            replace(found, status=np.where(good, found.status, OUT_OF_RANGE)), at_throat, usable - 1.0 < _AT_THROAT
-        )
+        return choose(replace(found, status=np.where(good, found.status, OUT_OF_RANGE)), at_throat, usable - 1.0 < _AT_THROAT)
 
     def _root(self, question: Callable[[FlowState], Array], low: Array, high: Array, start: Array) -> FlowState:
         """Return the state at which a question that falls with ln p vanishes: false position, halved where it is slow."""
@@ -133,9 +131,7 @@ class Parallel:
     def _combined(self, each: FlowState) -> FlowState:
         """Return the state of the whole from those of its streams at one pressure."""
         shape, w = self.shares.shape, self.shares
-        density, u, gamma = (
-            getattr(each, name).reshape(shape) for name in ("density", "velocity", "isentropic_exponent")
-        )
+        density, u, gamma = (getattr(each, name).reshape(shape) for name in ("density", "velocity", "isentropic_exponent"))
         pressure = each.pressure.reshape(shape)[:, 0]
         moving = (pressure < self.pressure * (1.0 - _AT_REST)) & (u > 0.0).all(axis=1)
         velocity = np.where(moving, self._mean(each.velocity), 0.0)

@@ -113,9 +113,7 @@ class Shifting:
         found = choose(found, at_throat, np.abs(np.log(ratio)) < _AT_THROAT)
         return self._rescued(
             found,
-            lambda part, rows: expansion_two_phase.at_mass_flux(
-                part, mass_flux[rows], at_throat.take(rows), supersonic
-            ),
+            lambda part, rows: expansion_two_phase.at_mass_flux(part, mass_flux[rows], at_throat.take(rows), supersonic),
         )
 
     @property

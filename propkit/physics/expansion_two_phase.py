@@ -104,9 +104,7 @@ def at_mass_flux(isentrope: Shifting, mass_flux: Array, at_throat: FlowState, su
     at_one = good & (ratio <= 1.0 + 1e-12)
     gamma = np.maximum(at_throat.isentropic_exponent, _LOWEST_EXPONENT)
     branch: gas_dynamics.Branch = "supersonic" if supersonic else "subsonic"
-    mach = gas_dynamics.mach_from_area_ratio(
-        np.where(good, np.maximum(ratio, 1.0), 1.0), np.where(good, gamma, 1.2), branch
-    )
+    mach = gas_dynamics.mach_from_area_ratio(np.where(good, np.maximum(ratio, 1.0), 1.0), np.where(good, gamma, 1.2), branch)
     middle = np.log(at_throat.pressure)
     guess = middle + np.log(gas_dynamics.pressure_ratio(mach, gamma) / gas_dynamics.pressure_ratio(1.0, gamma))
     goal = np.log(np.where(good, mass_flux, 1.0))
@@ -145,9 +143,7 @@ def _below(isentrope: Shifting, guess: Array, goal: Array, rows: Integers) -> Ar
     return low
 
 
-def _root(
-    isentrope: Shifting, question: Question, low: Array, high: Array, rows: Integers, guess: Array | None = None
-) -> FlowState:
+def _root(isentrope: Shifting, question: Question, low: Array, high: Array, rows: Integers, guess: Array | None = None) -> FlowState:
     """Return the state at which a question is answered, for the cases in `rows`; the others are left at the high end."""
     low, high = low.copy(), high.copy()
     x = 0.5 * (low + high) if guess is None else np.clip(guess, low, high)
@@ -177,9 +173,7 @@ def _root(
         keep = ~(solved | narrow | broken)
         left, near = left[keep], state.take(keep)
     found = isentrope.at_pressure(np.exp(result))
-    return replace(
-        found, status=np.where(settled, found.status, np.where(found.status == CONVERGED, NOT_CONVERGED, found.status))
-    )
+    return replace(found, status=np.where(settled, found.status, np.where(found.status == CONVERGED, NOT_CONVERGED, found.status)))
 
 
 def chosen(first: FlowState, second: FlowState, where: npt.NDArray[np.bool_]) -> FlowState:

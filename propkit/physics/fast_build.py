@@ -131,7 +131,9 @@ def _coarse(table: SpeciesTable, kernel: Kernel, near: Coordinates, log_pressure
     fine = (rest.status == 0) & (throat.status == 0)
     found: list[Start] = []
     for state in (rest, throat.equilibrium):
-        values = np.vstack([state.element_potentials.T, np.log(state.gas_moles), np.log(state.temperature), np.log(state.pressure / pressure)])
+        values = np.vstack(
+            [state.element_potentials.T, np.log(state.gas_moles), np.log(state.temperature), np.log(state.pressure / pressure)]
+        )
         fit = Fit.of(at[:, fine], values[:, fine], (3,) * near.count)
         if fit is None:
             return None
@@ -204,9 +206,7 @@ def _point(table: Array, elements: int, log_pressure: Array) -> Point:
     return Point(table[:elements], table[elements], table[elements + 1], log_pressure + table[elements + 2])
 
 
-def _with_exit(
-    kernel: Kernel, predictor: Predictor, far: Coordinates, further: Array, to: str, fineness: float
-) -> Predictor | None:
+def _with_exit(kernel: Kernel, predictor: Predictor, far: Coordinates, further: Array, to: str, fineness: float) -> Predictor | None:
     """Return the predictor with the fit of the exit."""
     coarse = _coarse_exit(kernel, predictor, far, further, to)
     if coarse is None:

@@ -96,7 +96,11 @@ def contracted(
         near = _between(flow, place) if before is None else _carried(*before, flow)
         inlet, fine, kept = nozzle_inlet(kernel, elements, flow, near, log_ratio, keep=keep)
         throat = flow.throat
-        flux = throat.pressure / (GAS_CONSTANT * throat.moles * throat.temperature) * np.sqrt(2.0 * np.maximum(enthalpy - throat.enthalpy, 0.0))
+        flux = (
+            throat.pressure
+            / (GAS_CONSTANT * throat.moles * throat.temperature)
+            * np.sqrt(2.0 * np.maximum(enthalpy - throat.enthalpy, 0.0))
+        )
         density = inlet.pressure / (GAS_CONSTANT * inlet.moles * inlet.temperature)
         velocity = flux / contraction_ratio / density
         face = inlet.pressure + density * velocity**2

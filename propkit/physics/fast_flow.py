@@ -195,7 +195,9 @@ def as_guessed(kernel: Kernel, elements: Array, enthalpy: Array, guess: tuple[Po
     entropy = enthalpy / temperature - GAS_CONSTANT * _dot(point.potentials, elements)
     blank = np.zeros(count)
     solved = [Solved(part, blank, blank, blank, np.ones(count, dtype=bool), np.zeros(count, dtype=np.intp)) for part in guess[:2]]
-    chamber = Station(kernel.reference_pressure * np.exp(point.log_pressure), temperature, np.exp(point.log_moles), enthalpy, blank, solved[0])
+    chamber = Station(
+        kernel.reference_pressure * np.exp(point.log_pressure), temperature, np.exp(point.log_moles), enthalpy, blank, solved[0]
+    )
     throat = _at(kernel, elements, entropy, solved[1])
     return Flow(chamber, throat, entropy, np.isfinite(throat.enthalpy), np.arange(0))
 
@@ -247,9 +249,7 @@ def guesses(predictor: Predictor, elements: Array, enthalpy: Array, log_pressure
     return (chamber, throat, rest[count + 3]), inside
 
 
-def exit_guess(
-    predictor: Predictor, elements: Array, enthalpy: Array, log_pressure: Array, log_exit: Array
-) -> tuple[Point, Truth]:
+def exit_guess(predictor: Predictor, elements: Array, enthalpy: Array, log_pressure: Array, log_exit: Array) -> tuple[Point, Truth]:
     """Return the first guess of the exit, and which designs lie inside the box.
 
     `log_exit` is ln of the area ratio, or ln of the exit pressure over that at rest.

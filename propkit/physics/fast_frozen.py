@@ -60,7 +60,14 @@ class HeldGas:
     """
 
     def __init__(
-        self, table: SpeciesTable, kept: npt.NDArray[np.intp], amounts: Array, moles: Array, temperature: Array, pressure: Array, enthalpy: Array
+        self,
+        table: SpeciesTable,
+        kept: npt.NDArray[np.intp],
+        amounts: Array,
+        moles: Array,
+        temperature: Array,
+        pressure: Array,
+        enthalpy: Array,
     ) -> None:
         self.table, self.kept, self.amounts = table, kept, amounts
         self.gas_constant = GAS_CONSTANT * moles
@@ -165,4 +172,6 @@ class HeldGas:
                 break
         gas = self.at(x)
         good &= gas.temperature > LOWEST_TEMPERATURE
-        return HeldFlow(np.exp(self.log_pressure(gas)), gas.temperature, gas.enthalpy_over_temperature * gas.temperature, gas.heat_capacity, good)
+        return HeldFlow(
+            np.exp(self.log_pressure(gas)), gas.temperature, gas.enthalpy_over_temperature * gas.temperature, gas.heat_capacity, good
+        )

@@ -94,9 +94,7 @@ def adiabatic_wall_temperature(static_temperature: Values, stagnation_temperatur
     return static + recovery_factor(prandtl) * (total - static)
 
 
-def property_correction(
-    wall_temperature: Values, stagnation_temperature: Values, mach: Values, isentropic_exponent: Values
-) -> Array:
+def property_correction(wall_temperature: Values, stagnation_temperature: Values, mach: Values, isentropic_exponent: Values) -> Array:
     """Return Bartz's factor for the variation of density and viscosity across the boundary layer.
 
     Parameters
@@ -211,9 +209,7 @@ def heat_transfer_coefficient(
     d, arc, mu, cp, pr, p0, cstar, sigma = (values(value) for value in given.values())
     ratio = values(area_ratio)
     require(ratio >= 1.0 - 1e-9, "area_ratio", ratio, "1 or more", "It is local over throat area.")
-    return values(
-        0.026 / d**0.2 * (mu**0.2 * cp / pr**0.6) * (p0 / cstar) ** 0.8 * (d / arc) ** 0.1 * ratio**-0.9 * sigma
-    )
+    return values(0.026 / d**0.2 * (mu**0.2 * cp / pr**0.6) * (p0 / cstar) ** 0.8 * (d / arc) ** 0.1 * ratio**-0.9 * sigma)
 
 
 def heat_flux(coefficient: Values, adiabatic_wall_temperature: Values, wall_temperature: Values) -> Array:

@@ -131,9 +131,7 @@ def characteristic_velocity(stagnation_temperature: Values, gas_constant: Values
     return 1.0 / choked_mass_flux(1.0, stagnation_temperature, gas_constant, isentropic_exponent)
 
 
-def exhaust_velocity(
-    pressure_ratio: Values, stagnation_temperature: Values, gas_constant: Values, isentropic_exponent: Values
-) -> Array:
+def exhaust_velocity(pressure_ratio: Values, stagnation_temperature: Values, gas_constant: Values, isentropic_exponent: Values) -> Array:
     """Velocity after isentropic expansion from rest at constant properties [m/s].
 
     Parameters

@@ -115,11 +115,7 @@ def _entry(loss: Loss, before: float) -> Entry:
     ratio = ratio_of_decrement(loss.decrement, before) if loss.decrement is not None else loss.ratio
     if ratio is None or not 0.0 < float(ratio) <= 1.0:
         shown = f"{ratio:g}" if ratio is not None else "missing"
-        raise InputError(
-            Problem(
-                f"losses: {loss.name}", shown, "above 0 and at most 1", "It is the Isp ratio: 0.98 is a loss of 2 %."
-            )
-        )
+        raise InputError(Problem(f"losses: {loss.name}", shown, "above 0 and at most 1", "It is the Isp ratio: 0.98 is a loss of 2 %."))
     after = before * float(ratio)
     return Entry(loss.name, float(ratio), before - after, before, after, loss.source, loss.estimate)
 

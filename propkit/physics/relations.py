@@ -32,8 +32,7 @@ def _oxygen_balance(net_valence: float, oxygen_mass: float) -> Any:
 
 
 _CHOKED = (
-    "sqrt({isentropic_exponent}) * (2 / ({isentropic_exponent} + 1))"
-    " ** (({isentropic_exponent} + 1) / (2 * ({isentropic_exponent} - 1)))"
+    "sqrt({isentropic_exponent}) * (2 / ({isentropic_exponent} + 1)) ** (({isentropic_exponent} + 1) / (2 * ({isentropic_exponent} - 1)))"
 )
 _T_RATIO = "(1 + ({isentropic_exponent} - 1) / 2 * {mach} ** 2)"
 
@@ -191,9 +190,7 @@ _LIST = (
     relation("mach", TERMS["mach"], "{velocity} / {sound_speed}", balances.mach, "definition"),
     relation("mass_flux", TERMS["local_mass_flux"], "{density} * {velocity}", balances.mass_flux, "definition"),
     # one-dimensional flow at constant properties
-    relation(
-        "temperature_ratio", Term(r"\frac{T}{T_{0}}"), f"1 / {_T_RATIO}", gas_dynamics.temperature_ratio, "naca1135"
-    ),
+    relation("temperature_ratio", Term(r"\frac{T}{T_{0}}"), f"1 / {_T_RATIO}", gas_dynamics.temperature_ratio, "naca1135"),
     relation(
         "pressure_ratio",
         Term(r"\frac{p}{p_{0}}"),
@@ -216,9 +213,7 @@ _LIST = (
         gas_dynamics.area_ratio,
         "naca1135",
     ),
-    relation(
-        "choked_mass_flux_function", Term(r"\Gamma"), _CHOKED, ideal_nozzle.choked_mass_flux_function, "sutton-biblarz"
-    ),
+    relation("choked_mass_flux_function", Term(r"\Gamma"), _CHOKED, ideal_nozzle.choked_mass_flux_function, "sutton-biblarz"),
     relation(
         "choked_mass_flux",
         TERMS["throat_mass_flux"],

@@ -31,8 +31,7 @@ DELIVERED: tuple[Relation, ...] = (
     relation(
         "lip_shock_ambient",
         TERMS["ambient_pressure"],
-        "{exit_pressure} * (2 * {isentropic_exponent} * {exit_mach} ** 2 - ({isentropic_exponent} - 1))"
-        " / ({isentropic_exponent} + 1)",
+        "{exit_pressure} * (2 * {isentropic_exponent} * {exit_mach} ** 2 - ({isentropic_exponent} - 1)) / ({isentropic_exponent} + 1)",
         separation.lip_shock_ambient,
         "naca1135",
     ),
@@ -44,9 +43,7 @@ DELIVERED: tuple[Relation, ...] = (
         contour.cone_length,
         "sutton-biblarz",
     ),
-    relation(
-        "stay_time", Term(r"t_{s}", "s"), "{volume} * {density} / {mass_flow}", contour.stay_time, "sutton-biblarz"
-    ),
+    relation("stay_time", Term(r"t_{s}", "s"), "{volume} * {density} / {mass_flow}", contour.stay_time, "sutton-biblarz"),
     relation(
         "cone_divergence_factor",
         TERMS["divergence_factor"],
@@ -82,9 +79,7 @@ DELIVERED: tuple[Relation, ...] = (
         boundary_layer.boundary_layer_drag,
         "cpia-246",
     ),
-    relation(
-        "boundary_layer_ratio", Term(r"\eta_{bl}"), "1 - {drag} / {thrust}", losses.boundary_layer_ratio, "cpia-246"
-    ),
+    relation("boundary_layer_ratio", Term(r"\eta_{bl}"), "1 - {drag} / {thrust}", losses.boundary_layer_ratio, "cpia-246"),
     relation(
         "two_phase_ratio",
         Term(r"\eta_{tp}"),

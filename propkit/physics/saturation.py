@@ -45,9 +45,7 @@ def saturation_ratios(phases: SpeciesTable, temperature: Values, potentials: Arr
     return np.where(t[:, None] > phases.temperature_high + ABOVE_TABLE, 0.0, ratios)
 
 
-def vapour_saturation_ratios(
-    phases: SpeciesTable, gas: SpeciesTable, temperature: Values, pressure: Values, amounts: Array
-) -> Array:
+def vapour_saturation_ratios(phases: SpeciesTable, gas: SpeciesTable, temperature: Values, pressure: Values, amounts: Array) -> Array:
     """Return the saturation ratio of liquids and solids over a gas of held composition that has their vapour.
 
     Parameters

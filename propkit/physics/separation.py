@@ -341,9 +341,7 @@ CRITERIA: Final[Mapping[str, Criterion]] = MappingProxyType(
 """The criteria by name, in order of their year."""
 
 
-def separation_share(
-    criterion: Criterion, pressure: Values, mach: Values, ambient_pressure: float, stagnation_pressure: float
-) -> float:
+def separation_share(criterion: Criterion, pressure: Values, mach: Values, ambient_pressure: float, stagnation_pressure: float) -> float:
     """Return where along a row of stations the flow separates, as a fractional index.
 
     Parameters
@@ -386,9 +384,7 @@ def at_share(share: float, column: Values) -> float:
     return float(np.exp(np.interp(share, np.arange(len(data)), data)))
 
 
-def separated_thrust(
-    mass_flow: Values, velocity: Values, pressure: Values, ambient_pressure: Values, area: Values
-) -> Array:
+def separated_thrust(mass_flow: Values, velocity: Values, pressure: Values, ambient_pressure: Values, area: Values) -> Array:
     """Return an estimate of the thrust of a separated nozzle [N].
 
     Parameters

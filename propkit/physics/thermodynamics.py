@@ -188,9 +188,7 @@ class SpeciesTable:
             The smaller table.
         """
         rows = np.arange(len(self.names))[np.asarray(species)]
-        columns = (
-            np.arange(len(self.elements)) if elements is None else np.arange(len(self.elements))[np.asarray(elements)]
-        )
+        columns = np.arange(len(self.elements)) if elements is None else np.arange(len(self.elements))[np.asarray(elements)]
         return SpeciesTable(
             names=tuple(self.names[row] for row in rows),
             elements=tuple(self.elements[column] for column in columns),

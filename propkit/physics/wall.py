@@ -77,18 +77,14 @@ class Curve:
         """Return x and r [m] at shares (0 to 1) of the segment."""
         t = values(share)
         x, r = (
-            (1.0 - t) ** 2 * a + 2.0 * t * (1.0 - t) * b + t**2 * c
-            for a, b, c in zip(self.start, self.crossing, self.end, strict=True)
+            (1.0 - t) ** 2 * a + 2.0 * t * (1.0 - t) * b + t**2 * c for a, b, c in zip(self.start, self.crossing, self.end, strict=True)
         )
         return values(x), values(r)
 
     def slopes(self, share: Array) -> tuple[Array, Array]:
         """Return dx and dr per share [m]."""
         t = values(share)
-        dx, dr = (
-            2.0 * ((1.0 - t) * (b - a) + t * (c - b))
-            for a, b, c in zip(self.start, self.crossing, self.end, strict=True)
-        )
+        dx, dr = (2.0 * ((1.0 - t) * (b - a) + t * (c - b)) for a, b, c in zip(self.start, self.crossing, self.end, strict=True))
         return values(dx), values(dr)
 
     def angles(self, share: Array) -> Array:
@@ -132,10 +128,7 @@ def draw(segments: Sequence[Segment], count: int = 33) -> Wall:
     """Return the wall as points for drawing and tables, `count` on each segment, joints once."""
     shares = np.linspace(0.0, 1.0, count)
     pieces = [(*segment.points(shares), segment.angles(shares), segment.curvatures(shares)) for segment in segments]
-    columns = [
-        np.concatenate([column if not i else column[1:] for i, column in enumerate(parts)])
-        for parts in zip(*pieces, strict=True)
-    ]
+    columns = [np.concatenate([column if not i else column[1:] for i, column in enumerate(parts)]) for parts in zip(*pieces, strict=True)]
     nothing = np.zeros_like(columns[0])
     return Wall(columns[0], columns[1], columns[2], columns[3], nothing, nothing, nothing)
 

@@ -47,7 +47,8 @@ class Plot:
 def structure(figure: Figure) -> str:
     """Return a text that is the same for two figures exactly when one can be shown by new data in the plot of the other."""
     layers = [
-        [type(layer).__name__, str(getattr(layer, "colour", "")), getattr(layer, "dash", ""), _layer_extra(layer)] for layer in figure.layers
+        [type(layer).__name__, str(getattr(layer, "colour", "")), getattr(layer, "dash", ""), _layer_extra(layer)]
+        for layer in figure.layers
     ]
     axes = [[axis.label, axis.unit, axis.scale] for axis in (figure.x, figure.y)]
     return json.dumps([figure.name, axes, layers, figure.equal_aspect, figure.bare])
@@ -79,12 +80,21 @@ def columns(layer: Layer, where: dict[str, Any]) -> dict[str, list[Any]]:
         return made | {f"hover{place}": list(series.values) for place, series in enumerate(layer.hover)}
     if isinstance(layer, Bars):
         texts = layer.texts or tuple(f"{value:.4g}" for value in layer.values.values)
-        return {"category": categories(layer), "start": list(layer.starts or (0.0,) * len(texts)), "value": list(layer.values.values), "text": list(texts)}
+        return {
+            "category": categories(layer),
+            "start": list(layer.starts or (0.0,) * len(texts)),
+            "value": list(layer.values.values),
+            "text": list(texts),
+        }
     if isinstance(layer, Mark):
         low, high = where["x"]
         late = layer.x > low + 0.7 * (high - low)
         high_up = layer.y > where["y"][0] + 0.85 * (where["y"][1] - where["y"][0])
-        side: dict[str, list[Any]] = {"align": ["right" if late else "left"], "shift": [-9.0 if late else 9.0], "lift": [16.0 if high_up else -8.0]}
+        side: dict[str, list[Any]] = {
+            "align": ["right" if late else "left"],
+            "shift": [-9.0 if late else 9.0],
+            "lift": [16.0 if high_up else -8.0],
+        }
         return {"x": [layer.x], "y": [layer.y], "text": [layer.label], **side}
     edge = where["y" if layer.axis == "x" else "x"]
     return {"at": [layer.at], "edge": [edge[1] if layer.axis == "x" else edge[0]], "text": [layer.label]}
@@ -272,7 +282,9 @@ def _bars(plot: Plot, layer: Bars, place: int) -> None:
     bar = made.hbar(y="category", right="value", left="start", height=0.62, source=source, line_color=None)
     plot.paint(bar.glyph, paint.role_of(layer.colour), "fill_color")
     plain(bar)
-    text = made.text("value", "category", text="text", source=source, x_offset=5, text_baseline="middle", text_font=value(FONT), text_font_size="12px")
+    text = made.text(
+        "value", "category", text="text", source=source, x_offset=5, text_baseline="middle", text_font=value(FONT), text_font_size="12px"
+    )
     plot.paint(text.glyph, "ink", "text_color")
     _hover(plot, bar, [(layer.values.label, "@text"), ("of", "@category")], [])
     made.min_border_right = 60
@@ -288,7 +300,17 @@ def _mark(plot: Plot, layer: Mark, place: int) -> None:
     plot.paint(dot.glyph, role, "fill_color")
     plot.paint(dot.glyph, "paper", "line_color")
     plain(dot)
-    text = made.text("x", "y", text="text", source=source, x_offset="shift", y_offset="lift", text_align="align", text_font=value(FONT), text_font_size="12px")
+    text = made.text(
+        "x",
+        "y",
+        text="text",
+        source=source,
+        x_offset="shift",
+        y_offset="lift",
+        text_align="align",
+        text_font=value(FONT),
+        text_font_size="12px",
+    )
     plot.paint(text.glyph, "ink", "text_color")
     _hover(plot, dot, [("", "@text"), ("x", "@x{%.5g}"), ("y", "@y{%.5g}")], ["x", "y"])
 
@@ -315,8 +337,12 @@ def _rule(plot: Plot, layer: Rule, place: int) -> None:
 def _regions(plot: Plot, layer: Regions, place: int) -> None:
     source, made = _source(plot, layer, place), plot.figure
     role = paint.role_of(layer.colour)
-    hatch: dict[str, Any] = {"hatch_pattern": "right_diagonal_line", "hatch_alpha": 0.6, "hatch_weight": 0.8, "hatch_scale": 9} if layer.hatched else {}
-    drawn = made.patches("xs", "ys", source=source, fill_alpha=layer.opacity, line_width=(1.4 if layer.hatched else 0.6) if layer.outlined else 0.0, **hatch)
+    hatch: dict[str, Any] = (
+        {"hatch_pattern": "right_diagonal_line", "hatch_alpha": 0.6, "hatch_weight": 0.8, "hatch_scale": 9} if layer.hatched else {}
+    )
+    drawn = made.patches(
+        "xs", "ys", source=source, fill_alpha=layer.opacity, line_width=(1.4 if layer.hatched else 0.6) if layer.outlined else 0.0, **hatch
+    )
     plot.paint(drawn.glyph, role, "fill_color", *(("line_color", "hatch_color") if layer.hatched else ()))
     if not layer.hatched:
         plot.paint(drawn.glyph, "quiet", "line_color")
@@ -329,7 +355,14 @@ def _texts(plot: Plot, layer: Texts, place: int) -> None:
     from bokeh.core.properties import value
 
     drawn = plot.figure.text(
-        "x", "y", text="text", source=_source(plot, layer, place), text_align="center", text_baseline="middle", text_font=value(FONT), text_font_size="11px"
+        "x",
+        "y",
+        text="text",
+        source=_source(plot, layer, place),
+        text_align="center",
+        text_baseline="middle",
+        text_font=value(FONT),
+        text_font_size="11px",
     )
     plot.paint(drawn.glyph, "ink", "text_color")
 

@@ -148,7 +148,9 @@ def gas_figure(chamber: Any, system: UnitSystem) -> Figure:
     line = Line(Series(x.label, x.values[:-1], x.unit, "p"), Series(y.label, y.values[:-1], y.unit, "u"), "accent", label="velocity")
     alt = f"Velocity against pressure on the isentrope: {y.values[-1]:.5g} {units.shown_unit(y.unit)} at the throat"
     x_axis = Axis(x.label, x.unit, "p", scale="log", low=min(x.values), high=max(x.values))
-    return Figure("expansion", "Velocity against pressure", alt, x_axis, axis_of(y, low=0.0), (line, Mark(x.values[-1], y.values[-1], "throat")))
+    return Figure(
+        "expansion", "Velocity against pressure", alt, x_axis, axis_of(y, low=0.0), (line, Mark(x.values[-1], y.values[-1], "throat"))
+    )
 
 
 # -- along the nozzle --------------------------------------------------------------------------------
@@ -176,7 +178,9 @@ def nozzle_figures(nozzle: Any, system: UnitSystem) -> tuple[Figure, Figure]:
     low, high = min(x.values), max(x.values)
     room = 0.06 * (high - low)
     along_axis = Axis(outline.x.label, length, "x", low=low - room, high=high + room)
-    along = Figure("flow", "Flow along the nozzle", alt, along_axis, Axis("Mach number and ratios", low=0.0), (*lines, Rule("x", 0.0, "throat")))
+    along = Figure(
+        "flow", "Flow along the nozzle", alt, along_axis, Axis("Mach number and ratios", low=0.0), (*lines, Rule("x", 0.0, "throat"))
+    )
     return drawing, along
 
 
@@ -239,12 +243,27 @@ def altitude_figure(performance: Any, name: str, system: UnitSystem) -> Figure:
     layers.append(Mark(at / scale, here, ambient.text))
     title = f"{curve.label[:1].upper()}{curve.label[1:]} against altitude"
     words = ", ".join(f"{criterion} {height / scale:.3g} {unit}" for criterion, height in limits.items())
-    alt = f"{title}: {here:.5g} {units.shown_unit(curve.unit)} at {ambient.text}" + (f"; separation predicted below: {words}" if words else "")
-    return Figure(f"altitude-{name}", title, alt, Axis("altitude", unit, "z", low=-0.015 * HIGHEST_ALTITUDE / scale, high=HIGHEST_ALTITUDE / scale), axis_of(curve), tuple(layers))
+    alt = f"{title}: {here:.5g} {units.shown_unit(curve.unit)} at {ambient.text}" + (
+        f"; separation predicted below: {words}" if words else ""
+    )
+    return Figure(
+        f"altitude-{name}",
+        title,
+        alt,
+        Axis("altitude", unit, "z", low=-0.015 * HIGHEST_ALTITUDE / scale, high=HIGHEST_ALTITUDE / scale),
+        axis_of(curve),
+        tuple(layers),
+    )
 
 
 def _line(x: tuple[float, ...], values: Any, curve: Series, unit: str, dash: Any, label: str) -> Line:
-    return Line(Series("altitude", x, unit, "z"), Series(curve.label, tuple(float(v) for v in values), curve.unit, curve.symbol), "accent", dash, label=label)
+    return Line(
+        Series("altitude", x, unit, "z"),
+        Series(curve.label, tuple(float(v) for v in values), curve.unit, curve.symbol),
+        "accent",
+        dash,
+        label=label,
+    )
 
 
 def _delivered(performance: Any, ambient: Any, name: str) -> Any:

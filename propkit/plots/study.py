@@ -150,7 +150,9 @@ def map_figure(
     values = shown_values(result, column, units)
     table = grid.on(values if less is None else values - _same_grid(result, less, column, units))
     if min(table.shape) < 2 or not np.isfinite(table).any():
-        raise InputError(Problem("designs", f"a grid of {len(xs)} by {len(ys)} with results", "at least two values on each axis, and a result"))
+        raise InputError(
+            Problem("designs", f"a grid of {len(xs)} by {len(ys)} with results", "at least two values on each axis, and a result")
+        )
     shown = shown_axis(result, column, units)
     axes = [shown_axis(result, path, units) for path in (grid.x, grid.y)]
     title = _title(shown, grid.held, less is not None)
@@ -255,7 +257,11 @@ def separation_margin(result: Any) -> Array:
         raise InputError(Problem(SEPARATION, "not available", "a study of a performance with all its results"))
     pressure, stagnation, mach = (result.values(name) for name in names)
     varied = {column.path for column in result.plan.plan.columns}
-    ambient = result.values("performance.ambient") if "performance.ambient" in varied else np.full(len(pressure), result.plan.target.si("ambient"))
+    ambient = (
+        result.values("performance.ambient")
+        if "performance.ambient" in varied
+        else np.full(len(pressure), result.plan.target.si("ambient"))
+    )
     with np.errstate(all="ignore"):
         found = [np.asarray(entry.ambient(pressure, stagnation, mach)) for entry in separation.CRITERIA.values()]
         return np.asarray(np.median(np.stack(found), axis=0) / ambient, dtype=np.float64)
@@ -293,7 +299,9 @@ def _points(
             hover.append(Series(name, tuple(grid.on(separation_margin(result)).ravel().tolist())))
             continue
         column = result.name_of(name)
-        hover.append(Series(column, tuple(grid.on(shown_values(result, column, system)).ravel().tolist()), result.display(column, system)[0]))
+        hover.append(
+            Series(column, tuple(grid.on(shown_values(result, column, system)).ravel().tolist()), result.display(column, system)[0])
+        )
     return Points(Series(axes[0].label, tuple(across), axes[0].unit), Series(axes[1].label, tuple(up), axes[1].unit), tuple(hover))
 
 

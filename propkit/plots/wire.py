@@ -27,7 +27,11 @@ def plot_json(figure: Figure, height: int) -> dict[str, Any]:
             # thousands of designs travel as bytes, not as text in the document as well
             source = plot.figure.select_one({"name": f"layer-{place}"})
             source.data = {column: [] for column in source.data}
-    return {"key": structure(figure), "item": item_of(plot), "painted": [[m.id, name, role, _is_vector(m)] for m, name, role in plot.painted]}
+    return {
+        "key": structure(figure),
+        "item": item_of(plot),
+        "painted": [[m.id, name, role, _is_vector(m)] for m, name, role in plot.painted],
+    }
 
 
 def _is_vector(model: Any) -> bool:

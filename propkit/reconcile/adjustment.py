@@ -273,9 +273,7 @@ class _Solver:
         missing = [figure.name for figure in self.figures if figure.key not in results and figure.key not in inputs]
         if missing:
             raise InputError(f"the model has no result {', '.join(missing)}")
-        return np.array(
-            [np.asarray(inputs.get(figure.key, results.get(figure.key)), dtype=np.float64) for figure in self.figures]
-        )
+        return np.array([np.asarray(inputs.get(figure.key, results.get(figure.key)), dtype=np.float64) for figure in self.figures])
 
     def linearise(self, estimate: Array) -> tuple[Array, Array]:
         """Return the figures and their derivatives at the estimate."""
@@ -374,9 +372,7 @@ class _Solver:
         ]
         if bad:
             where = ", ".join(f"{path} = {value:.6g}" for path, value in zip(self.paths, estimate, strict=True))
-            raise RangeError(
-                f"the model has no {', '.join(bad)} at {where}; start from another object", figures=tuple(bad)
-            )
+            raise RangeError(f"the model has no {', '.join(bad)} at {where}; start from another object", figures=tuple(bad))
 
     def _require_legal(self, estimate: Array, slopes: Array, residual: Array, free: npt.NDArray[np.bool_]) -> None:
         """Refuse figures that could only be true together outside the legal range of an unknown."""
@@ -391,8 +387,7 @@ class _Solver:
         limits = ", ".join(f"{self.paths[place]} beyond its limit {estimate[place]:.6g}" for place in held)
         worst = [self.figures[place].name for place in np.argsort(-np.abs(residual)) if abs(residual[place]) > 2.0][:3]
         raise InputError(
-            f"the figures cannot all be true: together they ask for {limits}. Furthest from what is possible: "
-            f"{', '.join(worst)}",
+            f"the figures cannot all be true: together they ask for {limits}. Furthest from what is possible: {', '.join(worst)}",
             figures=tuple(worst),
         )
 
@@ -463,9 +458,7 @@ def _check(figures: Sequence[Figure], unknowns: Sequence[Unknown]) -> None:
         for figure in figures
         if not (math.isfinite(figure.uncertainty) and figure.uncertainty > 0.0)
     ]
-    problems += [
-        Problem(figure.name, f"{figure.value:g}", "finite") for figure in figures if not math.isfinite(figure.value)
-    ]
+    problems += [Problem(figure.name, f"{figure.value:g}", "finite") for figure in figures if not math.isfinite(figure.value)]
     if problems:
         raise InputError(problems)
     names = [figure.name for figure in figures]
@@ -486,13 +479,9 @@ def _covariance(figures: Sequence[Figure], correlation: Mapping[tuple[str, str],
     matrix = np.eye(len(names))
     for (first, second), value in correlation.items():
         if first not in names or second not in names or first == second:
-            raise InputError(
-                Problem("correlation", f"given for {first!r} and {second!r}", f"between two of {', '.join(names)}")
-            )
+            raise InputError(Problem("correlation", f"given for {first!r} and {second!r}", f"between two of {', '.join(names)}"))
         if not -1.0 < value < 1.0:
-            raise InputError(
-                Problem(f"correlation of {first} and {second}", f"{value!r}", "between -1 and 1, the ends left out")
-            )
+            raise InputError(Problem(f"correlation of {first} and {second}", f"{value!r}", "between -1 and 1, the ends left out"))
         i, j = names.index(first), names.index(second)
         matrix[i, j] = matrix[j, i] = value
     if np.linalg.eigvalsh(matrix)[0] < 1e-12:

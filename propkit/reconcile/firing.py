@@ -166,9 +166,7 @@ class HotFire:
         unknown = [channel for channel in calibration if channel not in self._recording.channels]
         if unknown:
             listed = ", ".join(self._recording.channels)
-            raise InputError(
-                Problem("calibration", f"given for {', '.join(unknown)}", f"for channels of the recording ({listed})")
-            )
+            raise InputError(Problem("calibration", f"given for {', '.join(unknown)}", f"for channels of the recording ({listed})"))
         inside = self._recording.within(self._window.start, self._window.end)
         means = {}
         for name, channel in self._recording.channels.items():
@@ -208,19 +206,11 @@ class HotFire:
         own = self._target.nozzle.si("throat_diameter")
         cold = (own, 1e-3 * own) if before is None else measured("throat_before", before, "m")
         worn = None if after is None else measured("throat_after", after, "m")
-        hot = (
-            measured("throat_growth", growth, "")
-            if isinstance(growth, tuple | list)
-            else (units.to_si(growth, "", "throat_growth"), 0.0)
-        )
+        hot = measured("throat_growth", growth, "") if isinstance(growth, tuple | list) else (units.to_si(growth, "", "throat_growth"), 0.0)
         if not -0.1 < hot[0] < 0.1:
-            raise InputError(
-                Problem("throat_growth", f"{growth!r}", "between -0.1 and 0.1", "It is a share of the diameter.")
-            )
+            raise InputError(Problem("throat_growth", f"{growth!r}", "between -0.1 and 0.1", "It is a share of the diameter."))
         if worn is not None and not 0.8 < worn[0] / cold[0] < 1.25:
-            raise InputError(
-                Problem("throat_after", f"{worn[0]:g} m", f"like the {cold[0]:g} m before", "Is one of them a radius?")
-            )
+            raise InputError(Problem("throat_after", f"{worn[0]:g} m", f"like the {cold[0]:g} m before", "Is one of them a radius?"))
         share = min(max(self._window.share_of_burn, 0.0), 1.0)
         object.__setattr__(self, "_throat", throat_at(cold, worn, share, hot))
 
@@ -375,11 +365,7 @@ class HotFire:
 
     def as_figures(self) -> dict[str, tuple[float, float]]:
         """Return the means as figures for a `Reconciliation`: (value, standard uncertainty) in SI."""
-        found = {
-            name: (row.value, row.standard_uncertainty)
-            for name, row in self._means.items()
-            if name in KNOWN and name != AMBIENT
-        }
+        found = {name: (row.value, row.standard_uncertainty) for name, row in self._means.items() if name in KNOWN and name != AMBIENT}
         return {**found, "throat_diameter": self._throat}
 
     @staticmethod
@@ -398,9 +384,7 @@ class HotFire:
         made.index.name = "firing"
         made.columns.names = ["result", "statistic"]
         order = list(dict.fromkeys(name for firing in firings for name in firing.table.index))
-        return made.reindex(
-            columns=pd.MultiIndex.from_product([order, ["value", "standard_uncertainty"]], names=made.columns.names)
-        )
+        return made.reindex(columns=pd.MultiIndex.from_product([order, ["value", "standard_uncertainty"]], names=made.columns.names))
 
     @property
     def warnings(self) -> tuple[Doubt, ...]:

@@ -182,9 +182,7 @@ def _noise(rng: np.random.Generator, count: int, step: float, time: float) -> Ar
     return np.asarray(found)
 
 
-def _spoiled(
-    rng: np.random.Generator, values: Array, time: Array, start: float, end: float, level: float, name: str
-) -> Array:
+def _spoiled(rng: np.random.Generator, values: Array, time: Array, start: float, end: float, level: float, name: str) -> Array:
     burning = np.flatnonzero((time > start + 2.0) & (time < end - 1.0))
     spoiled = values.copy()
     spoiled[rng.choice(burning, 4, replace=False)] += level * rng.choice([-0.3, 0.3, 0.5], 4)

@@ -55,9 +55,7 @@ def quantity_of(channel: str) -> quantities.Quantity:
     except KeyError as error:
         near = near_matches(name, KNOWN)
         hint = f"Did you mean {' or '.join(near)}?" if near else ""
-        raise InputError(
-            Problem("channels", repr(channel), "named by a quantity, such as 'chamber.pressure' or 'thrust'", hint)
-        ) from error
+        raise InputError(Problem("channels", repr(channel), "named by a quantity, such as 'chamber.pressure' or 'thrust'", hint)) from error
 
 
 def result_unit(name: str) -> str:
@@ -69,15 +67,9 @@ def require_channels(channels: Mapping[str, str]) -> None:
     """Refuse channels from which nothing can be computed; every problem in one error."""
     problems = []
     if PRESSURE not in channels:
-        problems.append(
-            Problem(
-                PRESSURE, "missing", "among the channels", "It tells the burn from the rest and is the reference of c*."
-            )
-        )
+        problems.append(Problem(PRESSURE, "missing", "among the channels", "It tells the burn from the rest and is the reference of c*."))
     if not {FLOW, OXIDIZER, FUEL, THRUST} & set(channels):
-        problems.append(
-            Problem("channels", ", ".join(channels) or "empty", "with a flow or the thrust besides the pressure")
-        )
+        problems.append(Problem("channels", ", ".join(channels) or "empty", "with a flow or the thrust besides the pressure"))
     if (OXIDIZER in channels) != (FUEL in channels) and FLOW not in channels:
         problems.append(Problem("channels", "with one of two propellant flows", "with both flows, or with mass_flow"))
     if problems:
@@ -106,8 +98,6 @@ def stretch_of(name: str, given: Any) -> tuple[float, float]:
 def measured(name: str, given: Any, unit: str) -> tuple[float, float]:
     """Return a measured value and its standard uncertainty in SI."""
     if not isinstance(given, tuple | list) or len(given) != 2:
-        raise InputError(
-            Problem(name, f"{given!r}", "a pair: (value, standard uncertainty)", "For example ('180.2 mm', '0.05 mm').")
-        )
+        raise InputError(Problem(name, f"{given!r}", "a pair: (value, standard uncertainty)", "For example ('180.2 mm', '0.05 mm')."))
     value = units.to_si(given[0], unit, name)
     return value, spread(given[1], value, unit, name)

@@ -28,7 +28,9 @@ Mask = npt.NDArray[np.bool_]
 
 _HEADER = re.compile(r"\s*(?P<label>.*?)\s*(?:\[(?P<square>[^\]]*)\]|\((?P<round>[^)]*)\))\s*")
 _NO_UNIT = ("", "-", "1")
-_GAUGE = "That is a gauge pressure; pressures are absolute: add the barometer reading of the test to the column, and call its unit psi or bar."
+_GAUGE = (
+    "That is a gauge pressure; pressures are absolute: add the barometer reading of the test to the column, and call its unit psi or bar."
+)
 SPIKE = 8.0
 """Departure from the local median that makes a spike, in robust standard deviations."""
 SATURATED = 5
@@ -142,17 +144,14 @@ def read_recording(
         problems.append(Problem("channels", "empty", "a mapping of what is measured to its column"))
     moments = _column(table, time_header, "s", "time", problems) if time_header else np.array([])
     values = {
-        name: _column(table, header, wanted_units.get(name, ""), name, problems)
-        for name, header in found.items()
-        if header is not None
+        name: _column(table, header, wanted_units.get(name, ""), name, problems) for name, header in found.items() if header is not None
     }
     _check_time(moments, problems)
     if problems:
         raise InputError(problems)
     scales = full_scale or {}
     made = {
-        name: flagged(name, str(found[name]), wanted_units.get(name, ""), samples, scales.get(name))
-        for name, samples in values.items()
+        name: flagged(name, str(found[name]), wanted_units.get(name, ""), samples, scales.get(name)) for name, samples in values.items()
     }
     return Recording(moments, made)
 
@@ -250,9 +249,7 @@ def _table(source: Any) -> pd.DataFrame:
         except OSError as error:
             raise StorageError(f"{source} cannot be read: {error.strerror or error}", path=str(source)) from error
         except (ValueError, UnicodeDecodeError) as error:
-            raise InputError(
-                f"{source} is not a table of comma-separated columns with a header line: {error}"
-            ) from error
+            raise InputError(f"{source} is not a table of comma-separated columns with a header line: {error}") from error
     if len(table.columns) == 1 and any(mark in str(table.columns[0]) for mark in ";\t"):
         hint = "Columns seem to be divided by semicolons or tabs: save with commas, and with decimal points."
         raise InputError(Problem("recording", "one column", "a table of comma-separated columns", hint))
@@ -299,9 +296,7 @@ def _column(table: pd.DataFrame, header: str, unit: str, name: str, problems: li
     stated = split_header(header)[1]
     if stated is None:
         example = f"{header.strip()} [{units.shown_unit(unit) or '-'}]"
-        problems.append(
-            Problem(f"header of {name}", repr(header), "a label with its unit in brackets", f"For example {example!r}.")
-        )
+        problems.append(Problem(f"header of {name}", repr(header), "a label with its unit in brackets", f"For example {example!r}."))
         return np.array([])
     try:
         factor, offset = _conversion(stated, unit, name)
@@ -313,11 +308,7 @@ def _column(table: pd.DataFrame, header: str, unit: str, name: str, problems: li
         numbers = raw.to_numpy(dtype=np.float64, na_value=math.nan)
     except (TypeError, ValueError):
         first = next(entry for entry in raw if not _is_number(entry))
-        problems.append(
-            Problem(
-                f"column {header!r}", f"{first!r} among its values", "numbers only (empty where there is no sample)"
-            )
-        )
+        problems.append(Problem(f"column {header!r}", f"{first!r} among its values", "numbers only (empty where there is no sample)"))
         return np.array([])
     values: Array = numbers * factor + offset
     return values

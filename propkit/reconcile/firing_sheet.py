@@ -159,10 +159,7 @@ def _means_section(firing: HotFire, system: UnitSystem) -> Section:
         value = float(frame.loc[name, "value"])
         unit = quantity.shown_in(system, (value,))
         zero = units.convert(0.0, quantity.unit, unit)
-        parts = [
-            units.convert(float(frame.loc[name, key]), quantity.unit, unit) - zero
-            for key in ("random", "zero", "calibration")
-        ]
+        parts = [units.convert(float(frame.loc[name, key]), quantity.unit, unit) - zero for key in ("random", "zero", "calibration")]
         pair = rounded_together(units.convert(value, quantity.unit, unit), math.hypot(*parts))
         drift = firing.window.drift.get(str(name))
         rows.append(
@@ -188,8 +185,7 @@ def _means_section(firing: HotFire, system: UnitSystem) -> Section:
         ("drift", "drift", "percent", 2),
     )
     columns = tuple(
-        Column(name, label, "", unit, digits, tuple(row[k] for row in rows))
-        for k, (name, label, unit, digits) in enumerate(heads)
+        Column(name, label, "", unit, digits, tuple(row[k] for row in rows)) for k, (name, label, unit, digits) in enumerate(heads)
     )
     table = Table("means", "Channels", "channel", tuple(map(str, frame.index)), columns)
     return Section("means", "Channels", table=table)
@@ -214,9 +210,7 @@ def _zero_section(firing: HotFire, system: UnitSystem) -> Iterator[Section]:
         )
     heads = ("expected", "before", "after", "drift", "unit", "significant")
     columns = tuple(Column(head, head, "", "", 3, tuple(row[k] for row in rows)) for k, head in enumerate(heads))
-    table = Table(
-        "zeros", "Zeros", "channel", tuple(map(str, frame.index)), columns, "Zeros are subtracted from the means."
-    )
+    table = Table("zeros", "Zeros", "channel", tuple(map(str, frame.index)), columns, "Zeros are subtracted from the means.")
     yield Section("zeros", "Zeros", table=table)
 
 
@@ -228,8 +222,7 @@ def trace_figure(firing: HotFire, name: str, system: UnitSystem) -> Figure:
     unit = quantity.shown_in(system, (mean,))
     places = thinned(channel.values)
     values = tuple(
-        units.convert(float(value), quantity.unit, unit) if math.isfinite(value) else math.nan
-        for value in channel.values[places]
+        units.convert(float(value), quantity.unit, unit) if math.isfinite(value) else math.nan for value in channel.values[places]
     )
     x = Series("time", tuple(map(float, time[places])), "s", "t")
     line = Line(x, Series(quantity.label, values, unit, quantity.symbol))

@@ -242,11 +242,7 @@ def _checked(given: tuple[float, float], recording: Recording) -> tuple[float, f
     start, end = stretch_of("window", given)
     low, high = float(recording.time[0]), float(recording.time[-1])
     if not low <= start < end <= high:
-        raise InputError(
-            Problem(
-                "window", f"({start:g} s, {end:g} s)", f"inside the recording, {low:g} s to {high:g} s, start first"
-            )
-        )
+        raise InputError(Problem("window", f"({start:g} s, {end:g} s)", f"inside the recording, {low:g} s to {high:g} s, start first"))
     count = int(np.count_nonzero(recording.within(start, end)))
     if count < FEWEST:
         raise InputError(Problem("window", f"{count} samples long", f"at least {FEWEST} samples long"))

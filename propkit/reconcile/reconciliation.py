@@ -137,9 +137,7 @@ class Reconciliation:
                     raise InputError(Problem(name, "given twice", "given once at each level"))
                 read[name] = figure
             except InputError as error:
-                problems.extend(
-                    error.problems or (Problem(name, "not understood", "a figure of this engine", str(error)),)
-                )
+                problems.extend(error.problems or (Problem(name, "not understood", "a figure of this engine", str(error)),))
         if problems:
             raise InputError(problems)
         return read
@@ -151,8 +149,7 @@ class Reconciliation:
             names: tuple[str, ...] = default_free(self._target, keys)
             if not names:
                 raise InputError(
-                    "none of the quoted figures frees an input by itself; list what may move, for example "
-                    'free=["chamber.pressure"]'
+                    'none of the quoted figures frees an input by itself; list what may move, for example free=["chamber.pressure"]'
                 )
         else:
             listed = [free] if isinstance(free, str) else list(free)
@@ -187,8 +184,7 @@ class Reconciliation:
         model = FigureModel(self._target, self._free, keys, fixed)
         object.__setattr__(self, "_model", model)
         entries = [
-            Figure(figure.name, figure.value, figure.uncertainty, name_of(figure.key, figure.level))
-            for figure in self._figures.values()
+            Figure(figure.name, figure.value, figure.uncertainty, name_of(figure.key, figure.level)) for figure in self._figures.values()
         ]
         unknowns = []
         for path in self._free:
@@ -212,9 +208,7 @@ class Reconciliation:
             quoted = {figure.key: figure.value for figure in self._figures.values()}
             flow = quoted.get("mass_flow", self._target.si("mass_flow"))
             force = quoted.get("thrust", self._target.si("thrust"))
-            start = quoted.get(
-                "burn_time", quoted.get("propellant_mass", 0.0) / flow or quoted.get("total_impulse", 0.0) / force
-            )
+            start = quoted.get("burn_time", quoted.get("propellant_mass", 0.0) / flow or quoted.get("total_impulse", 0.0) / force)
         return start, low, high
 
     def __setattr__(self, name: str, value: Any) -> None:
@@ -341,9 +335,7 @@ class Reconciliation:
     def reconciled(self) -> Performance:
         """The chain at the adjusted inputs (a freed thrust-coefficient efficiency is not part of it)."""
         changes = {
-            path: float(value)
-            for path, value in zip(self._free, self._adjustment.estimate, strict=True)
-            if path not in EXTRA_UNKNOWNS
+            path: float(value) for path, value in zip(self._free, self._adjustment.estimate, strict=True) if path not in EXTRA_UNKNOWNS
         }
         return self._target.replace(changes)
 
@@ -482,6 +474,4 @@ def _check_level(figure: QuotedFigure, dumped: bool) -> None:
             )
         )
     if figure.key not in LEVELLED:
-        raise InputError(
-            Problem(figure.name, "at engine level", "at chamber level", "This model knows it for the chamber alone.")
-        )
+        raise InputError(Problem(figure.name, "at engine level", "at chamber level", "This model knows it for the chamber alone."))

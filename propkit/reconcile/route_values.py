@@ -40,11 +40,7 @@ def _to_chamber(fit: Reconciliation, figures: Mapping[str, QuotedFigure]) -> dic
     keys = [key for key, figure in figures.items() if figure.level == "engine" and key in LEVELLED]
     if not keys:
         return {}
-    values = {
-        key: value
-        for key, value in zip(fit.free, fit.adjustment.estimate, strict=True)
-        if key in EXTRA_UNKNOWNS
-    }
+    values = {key: value for key, value in zip(fit.free, fit.adjustment.estimate, strict=True) if key in EXTRA_UNKNOWNS}
     asked = tuple((key, level) for key in keys for level in ("engine", "chamber"))
     fixed = {**fit._model.fixed, **{key: float(value) for key, value in values.items()}}
     model = FigureModel(fit.target, (), asked, fixed)

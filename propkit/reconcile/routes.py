@@ -80,24 +80,18 @@ _MASS_FLOW = (
     Route(
         "chamber pressure, throat and quoted c*",
         ("chamber.pressure", "throat_area", "nozzle.characteristic_velocity"),
-        lambda q: (
-            q["model.pressure_ratio"] * q["chamber.pressure"] * q["throat_area"] / q["nozzle.characteristic_velocity"]
-        ),
+        lambda q: q["model.pressure_ratio"] * q["chamber.pressure"] * q["throat_area"] / q["nozzle.characteristic_velocity"],
     ),
     Route(
         "chamber pressure, throat and c* of the model",
         ("chamber.pressure", "throat_area"),
-        lambda q: (
-            q["model.pressure_ratio"] * q["chamber.pressure"] * q["throat_area"] / q["model.characteristic_velocity"]
-        ),
+        lambda q: q["model.pressure_ratio"] * q["chamber.pressure"] * q["throat_area"] / q["model.characteristic_velocity"],
     ),
 )
 
 _SPECIFIC_IMPULSE = (
     Route("as quoted", ("specific_impulse",), lambda q: q["specific_impulse"]),
-    Route(
-        "thrust over mass flow", ("thrust", "mass_flow"), lambda q: q["thrust"] / (STANDARD_GRAVITY * q["mass_flow"])
-    ),
+    Route("thrust over mass flow", ("thrust", "mass_flow"), lambda q: q["thrust"] / (STANDARD_GRAVITY * q["mass_flow"])),
     Route(
         "thrust over oxidizer and fuel flow",
         ("thrust", "oxidizer_mass_flow", "fuel_mass_flow"),
@@ -136,9 +130,7 @@ _THROAT_AREA = (
     Route(
         "mass flow, chamber pressure and c* of the model",
         ("mass_flow", "chamber.pressure"),
-        lambda q: (
-            q["mass_flow"] * q["model.characteristic_velocity"] / (q["model.pressure_ratio"] * q["chamber.pressure"])
-        ),
+        lambda q: q["mass_flow"] * q["model.characteristic_velocity"] / (q["model.pressure_ratio"] * q["chamber.pressure"]),
     ),
     Route(
         "thrust, chamber pressure and thrust coefficient of the model",
@@ -148,10 +140,7 @@ _THROAT_AREA = (
     Route(
         "vacuum thrust, chamber pressure and thrust coefficient of the model",
         ("thrust_vacuum", "chamber.pressure"),
-        lambda q: (
-            q["thrust_vacuum"]
-            / (q["model.thrust_coefficient_vacuum"] * q["model.pressure_ratio"] * q["chamber.pressure"])
-        ),
+        lambda q: q["thrust_vacuum"] / (q["model.thrust_coefficient_vacuum"] * q["model.pressure_ratio"] * q["chamber.pressure"]),
     ),
 )
 

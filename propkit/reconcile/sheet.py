@@ -54,8 +54,7 @@ def doubts(fit: Reconciliation) -> Iterator[Doubt]:
     held = [
         name
         for name, figure in fit.figures.items()
-        if figure.key.rpartition(".")[2]
-        in ("mixture_ratio", "equivalence_ratio", "cstar_efficiency", "discharge_coefficient")
+        if figure.key.rpartition(".")[2] in ("mixture_ratio", "equivalence_ratio", "cstar_efficiency", "discharge_coefficient")
         and figure.key not in fit.free
     ]
     if held:
@@ -95,9 +94,7 @@ def _plain(name: str, label: str, value: float | str | None) -> Row:
     return Row(name, label, "", value, "", 3, "computed", source="vdi2048")
 
 
-def _shown(
-    fit: Reconciliation, name: str, value: float, uncertainty: float, system: UnitSystem
-) -> tuple[str, str, str]:
+def _shown(fit: Reconciliation, name: str, value: float, uncertainty: float, system: UnitSystem) -> tuple[str, str, str]:
     quantity = fit.quantity_of(name)
     unit = quantity.shown_in(system, (value,))
     zero = units.convert(0.0, quantity.unit, unit)
@@ -136,9 +133,7 @@ def _figure_section(fit: Reconciliation, system: UnitSystem) -> Section:
         ("level", "level"),
         ("verdict", "verdict"),
     )
-    columns = tuple(
-        Column(name, label, "", "", 3, tuple(row[place] for row in rows)) for place, (name, label) in enumerate(heads)
-    )
+    columns = tuple(Column(name, label, "", "", 3, tuple(row[place] for row in rows)) for place, (name, label) in enumerate(heads))
     note = "Uncertainties are standard ones. Redundancy: variance of the residual over variance of the figure."
     return Section("figures", "Figures", table=Table("figures", "Figures", "figure", found.names, columns, note))
 
@@ -146,16 +141,12 @@ def _figure_section(fit: Reconciliation, system: UnitSystem) -> Section:
 def _unknown_section(fit: Reconciliation, system: UnitSystem) -> Section:
     frame = fit.unknowns
     rows = [
-        _shown(fit, f"prior of {path}", value, uncertainty, system)
-        if uncertainty > 0.0
-        else (f"{value:.6g}", "held by its range", "")
+        _shown(fit, f"prior of {path}", value, uncertainty, system) if uncertainty > 0.0 else (f"{value:.6g}", "held by its range", "")
         for path, value, uncertainty in zip(fit.free, frame["value"], frame["standard_uncertainty"], strict=True)
     ]
     columns = tuple(
         Column(name, label, "", "", 3, tuple(row[place] for row in rows))
-        for place, (name, label) in enumerate(
-            (("value", "value"), ("uncertainty", "standard uncertainty"), ("unit", "unit"))
-        )
+        for place, (name, label) in enumerate((("value", "value"), ("uncertainty", "standard uncertainty"), ("unit", "unit")))
     )
     return Section("unknowns", "Free inputs", table=Table("unknowns", "Free inputs", "input", fit.free, columns))
 

@@ -55,9 +55,7 @@ def content_of(calculation: Calculation, texts: Mapping[str, str], smallest: flo
     content["basis"] = _basis(chain)
     content["propellants"] = _propellants(chain)
     content["assumptions"] = [_assumption(entry) for entry in calculation.assumptions]
-    content["warnings"] = [
-        {"text": str(doubt), "code": doubt.code, "about": doubt.about} for doubt in calculation.warnings
-    ]
+    content["warnings"] = [{"text": str(doubt), "code": doubt.code, "about": doubt.about} for doubt in calculation.warnings]
     content["stations"] = _stations(chain)
     content["composition"] = _composition(chain, smallest)
     content["second_engine"] = _second_engine(calculation)
@@ -209,9 +207,7 @@ def _composition(chain: tuple[Calculation, ...], smallest: float) -> dict[str, d
             listed.append(("injector face", link.held.composition()))
         if link.kind == "nozzle":
             listed += link.held.compositions()
-    return {
-        station: {species: float(value) for species, value in pairs if value >= smallest} for station, pairs in listed
-    }
+    return {station: {species: float(value) for species, value in pairs if value >= smallest} for station, pairs in listed}
 
 
 def _second_engine(calculation: Calculation) -> dict[str, Any]:

@@ -143,8 +143,14 @@ def _differing(one: Any, two: Any, typed: bool = True) -> tuple[Leaf, ...]:
     found = [leaf for leaf in leaves(one, two) if not leaf.same]
     if not typed:
         moved = {leaf.path.rpartition(".")[0] for leaf in found if leaf.path.endswith(".value")}
-        found = [leaf for leaf in found if not leaf.path.endswith((".typed", ".kind", ".unit")) or leaf.path.rpartition(".")[0] not in moved]
-    whole = {leaf.path for leaf in found if ABSENT in (leaf.recorded, leaf.other) and isinstance(leaf.recorded if leaf.other == ABSENT else leaf.other, Mapping)}
+        found = [
+            leaf for leaf in found if not leaf.path.endswith((".typed", ".kind", ".unit")) or leaf.path.rpartition(".")[0] not in moved
+        ]
+    whole = {
+        leaf.path
+        for leaf in found
+        if ABSENT in (leaf.recorded, leaf.other) and isinstance(leaf.recorded if leaf.other == ABSENT else leaf.other, Mapping)
+    }
     return tuple(_unpacked(leaf) if leaf.path in whole else leaf for leaf in found)
 
 

@@ -149,7 +149,9 @@ def _order_check(cells: list[Any]) -> Check:
         return Check("execution order", "same", f"the {len(counts)} cells ran once each, from top to bottom")
     if all(count is None for count in counts):
         return Check("execution order", "noted", "no cell was executed")
-    return Check("execution order", "noted", "the cells did not run once each from top to bottom: outputs may not follow from the cells above them")
+    return Check(
+        "execution order", "noted", "the cells did not run once each from top to bottom: outputs may not follow from the cells above them"
+    )
 
 
 # -- pages ----------------------------------------------------------------------------------------
@@ -185,7 +187,9 @@ def _from_zip(data: bytes, name: str) -> Contents:
     for member, text in _members(data):
         suffix = Path(member).suffix.lower()
         if member.endswith(".record.json") or suffix in (".ipynb", ".html"):
-            inside = records_of(".json" if suffix == ".json" else suffix, text, f"{name}, {member if member.isprintable() else _shown(member)}")
+            inside = records_of(
+                ".json" if suffix == ".json" else suffix, text, f"{name}, {member if member.isprintable() else _shown(member)}"
+            )
             found += inside.found
             checks += inside.checks
     return Contents(tuple(found), tuple(checks))

@@ -130,7 +130,9 @@ class Verification:
         """Return a JUnit ``testsuite`` element: one test case for each check."""
         cases = "".join(self._junit_case(check) for check in self.checks)
         failed = sum(check.status == "differs" for check in self.checks)
-        return f"<testsuite name={_attribute(f'{self.name}: {self.title}')} tests=\"{len(self.checks)}\" failures=\"{failed}\">{cases}</testsuite>"
+        return (
+            f'<testsuite name={_attribute(f"{self.name}: {self.title}")} tests="{len(self.checks)}" failures="{failed}">{cases}</testsuite>'
+        )
 
     def _junit_case(self, check: Check) -> str:
         name = f"<testcase classname={_attribute(self.name)} name={_attribute(check.name)}"

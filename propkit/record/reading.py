@@ -78,9 +78,7 @@ def parse_json(data: bytes | str) -> Any:
     text = _text(data)
     _check_depth(text)
     try:
-        value = json.loads(
-            text, object_pairs_hook=_object, parse_constant=_refuse_constant, parse_float=_float, parse_int=_integer
-        )
+        value = json.loads(text, object_pairs_hook=_object, parse_constant=_refuse_constant, parse_float=_float, parse_int=_integer)
     except RecordError as error:
         raise RecordError(error.message) from None
     except json.JSONDecodeError as error:

@@ -212,7 +212,10 @@ class Record:
         found = records_in(path).found
         digests = {entry.record.digest for entry in found}
         if len(digests) != 1:
-            raise RecordError(f"{Path(path).name} holds {len(digests) or 'no'} records; Record.load reads a file with one" + (" (propkit verify reads them all)" if digests else ""))
+            raise RecordError(
+                f"{Path(path).name} holds {len(digests) or 'no'} records; Record.load reads a file with one"
+                + (" (propkit verify reads them all)" if digests else "")
+            )
         return found[0].record
 
     @classmethod
@@ -274,7 +277,9 @@ def check_paper(paper: str | None, suffix: str) -> None:
     if paper is not None and paper not in PAPERS:
         raise InputError(Problem("paper", repr(paper)[:60], " or ".join(f'"{name}"' for name in PAPERS)))
     if paper is not None and suffix not in _WITH_PAPER:
-        raise InputError(Problem("paper", repr(paper), f"a file with sheets: {' or '.join(_WITH_PAPER)}", f"A {suffix} file has none; leave paper out."))
+        raise InputError(
+            Problem("paper", repr(paper), f"a file with sheets: {' or '.join(_WITH_PAPER)}", f"A {suffix} file has none; leave paper out.")
+        )
 
 
 def _ordered(value: Any) -> Any:

@@ -99,7 +99,10 @@ def _sample_table(results: Mapping[str, Any]) -> Table | None:
             unit = f" [{units.shown_unit(entry['unit'])}]" if entry["unit"] else ""
             found.setdefault(match["result"].replace("_", " ") + unit, {})[match["design"]] = entry["value"]
     designs = sorted({design for values in found.values() for design in values}, key=int)
-    columns = tuple(Column(f"design {design}", f"design {design}", "", "", 6, tuple(values.get(design) for values in found.values())) for design in designs)
+    columns = tuple(
+        Column(f"design {design}", f"design {design}", "", "", 6, tuple(values.get(design) for values in found.values()))
+        for design in designs
+    )
     return Table("sample", "Designs that are recomputed", "result", tuple(found), columns) if found else None
 
 
@@ -149,7 +152,9 @@ def _rest(record: Record, content: Mapping[str, Any]) -> Iterator[Section]:
         yield Section("stations", "Stations", table=_station_table(rows, content["stations"]["units"]))
     if content["composition"]:
         yield Section("composition", "Composition", table=_composition_table(content["composition"]))
-    yield Section("assumptions", "Assumptions", lines=tuple(f"{entry['statement']} ({entry['origin']})" for entry in content["assumptions"]))
+    yield Section(
+        "assumptions", "Assumptions", lines=tuple(f"{entry['statement']} ({entry['origin']})" for entry in content["assumptions"])
+    )
 
 
 def _station_table(rows: list[dict[str, Any]], stored_units: Mapping[str, str]) -> Table:
@@ -177,9 +182,7 @@ def _composition_table(composition: Mapping[str, Mapping[str, float]], smallest:
         for species, value in composition[station].items():
             largest[species] = max(largest[species], value)
     names = tuple(sorted((name for name, value in largest.items() if value >= smallest), key=lambda name: (-largest[name], name)))
-    columns = tuple(
-        Column(station, station, "x", "", 5, tuple(composition[station].get(name) for name in names)) for station in stations
-    )
+    columns = tuple(Column(station, station, "x", "", 5, tuple(composition[station].get(name) for name in names)) for station in stations)
     return Table("composition", "Composition", "species", names, columns, f"Mole fractions of {smallest:g} and above at some station.")
 
 

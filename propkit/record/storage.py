@@ -38,7 +38,9 @@ def write_atomically(path: str | Path, data: bytes) -> Path:
         if isinstance(error, StorageError):
             raise
         reason = getattr(error, "strerror", None) or str(error)
-        raise StorageError(f"{target} cannot be written: {reason}. Choose a folder that exists and that you may write to.", path=str(target)) from None
+        raise StorageError(
+            f"{target} cannot be written: {reason}. Choose a folder that exists and that you may write to.", path=str(target)
+        ) from None
     return target
 
 

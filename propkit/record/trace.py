@@ -188,7 +188,12 @@ class _Tracer:
         unit = {"enthalpy": "J/kg", "density": "kg/m³", "valence": "mol/kg"}[what]
         source = row.density_source if what == "density" else row.source
         how = "from the valences of its elements" if what == "valence" else f"data row {row.name}, at the stored state"
-        return Origin(f"case.{argument}", f"{what} of the {role} {row.name} {numbers.pretty(value, 6)} {unit}", how, "" if what == "valence" else source)
+        return Origin(
+            f"case.{argument}",
+            f"{what} of the {role} {row.name} {numbers.pretty(value, 6)} {unit}",
+            how,
+            "" if what == "valence" else source,
+        )
 
     def _state(self, nozzle: Any, path: str, text: str, quantity: str) -> Origin:
         state = path.split(".")[1]

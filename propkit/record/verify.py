@@ -125,7 +125,9 @@ def seal_checks(document: Mapping[str, Any], computed: tuple[str, str]) -> Itera
         if kept == found:
             yield Check(label, "same", f"{kept[:23]}…")
         else:
-            yield Check(label, "differs", f"the record says {kept[:23]}…, its content gives {found[:23]}…: it was changed after it was sealed")
+            yield Check(
+                label, "differs", f"the record says {kept[:23]}…, its content gives {found[:23]}…: it was changed after it was sealed"
+            )
 
 
 def _version_notes(recorded: Mapping[str, str]) -> list[Check]:
@@ -141,7 +143,11 @@ def _data_notes(found: list[Leaf]) -> tuple[list[Check], set[str]]:
     """Return a note for each data checksum that differs, and the paths of those checksums."""
     differing = [leaf for leaf in found if not leaf.same and leaf.path.endswith(".checksum") and ABSENT not in (leaf.recorded, leaf.other)]
     notes = [
-        Check(f"data of {leaf.path.rpartition('.')[0].replace('.', ' ')}", "noted", f"recorded with {str(leaf.recorded)[:19]}…, recomputed with {str(leaf.other)[:19]}…")
+        Check(
+            f"data of {leaf.path.rpartition('.')[0].replace('.', ' ')}",
+            "noted",
+            f"recorded with {str(leaf.recorded)[:19]}…, recomputed with {str(leaf.other)[:19]}…",
+        )
         for leaf in differing
     ]
     return notes, {leaf.path for leaf in differing}

@@ -53,9 +53,7 @@ def has_stage(link: Calculation, variables: Sequence[str] = ()) -> bool:
 class Batch:
     """The stages of a chain over a batch; `results` by whole path, `good` where every stage has a solution."""
 
-    def __init__(
-        self, target: Calculation, inputs: Mapping[str, Array], count: int, quick: Accelerator | None = None
-    ) -> None:
+    def __init__(self, target: Calculation, inputs: Mapping[str, Array], count: int, quick: Accelerator | None = None) -> None:
         self.inputs, self.count, self.quick = inputs, count, quick
         self.target = target
         self.quick_cases = self.slow_cases = 0
@@ -134,8 +132,7 @@ class Batch:
 
     def _stored(self, propellant: Any, temperature: Any, pressure: Any, role: str) -> tuple[Array, Array]:
         columns = [
-            [None] * self.count if value is None else np.broadcast_to(value, (self.count,)).tolist()
-            for value in (temperature, pressure)
+            [None] * self.count if value is None else np.broadcast_to(value, (self.count,)).tolist() for value in (temperature, pressure)
         ]
         known: dict[tuple[Any, Any], tuple[float, float]] = {}
         for pair in zip(*columns, strict=True):

@@ -190,9 +190,7 @@ class Normal(Distribution):
     def __post_init__(self) -> None:
         k = self.k
         if isinstance(k, bool) or not isinstance(k, int | float) or not math.isfinite(k) or k <= 0.0:
-            raise InputError(
-                Problem("k", repr(k), "a finite number above 0", "1 for a standard uncertainty, 2 for an expanded one.")
-            )
+            raise InputError(Problem("k", repr(k), "a finite number above 0", "1 for a standard uncertainty, 2 for an expanded one."))
 
     def __repr__(self) -> str:
         return f"pk.Normal({self.uncertainty!r})" if self.k == 1.0 else f"pk.Normal({self.uncertainty!r}, k={self.k:g})"

@@ -72,11 +72,7 @@ def variable(target: Calculation, path: str) -> Variable:
     if not (isinstance(entry, QuantityInput | NumberInput) or is_ambient):
         raise InputError(Problem(place.path, "a choice", "an input that is a number", "A study varies choices."))
     if not link.has(place.name):
-        raise InputError(
-            Problem(
-                place.path, "not part of this recipe", "an input with a value", "Give it to the object first (replace)."
-            )
-        )
+        raise InputError(Problem(place.path, "not part of this recipe", "an input with a value", "Give it to the object first (replace)."))
     found = link.given_or_result(place.name)
     nominal = float(found.pressure if hasattr(found, "pressure") else found)
     if not math.isfinite(nominal):
@@ -106,9 +102,7 @@ def _assigned_enthalpy(target: Calculation, path: str) -> Variable | None:
     propellant = case._values[role]
     stream = getattr(case.held, role)
     molar_mass = float(propellant.row.molar_mass)
-    return Variable(
-        f"case.{role}.{ENTHALPY}", float(stream.enthalpy) * molar_mass, "J/mol", -math.inf, math.inf, "molar_enthalpy"
-    )
+    return Variable(f"case.{role}.{ENTHALPY}", float(stream.enthalpy) * molar_mass, "J/mol", -math.inf, math.inf, "molar_enthalpy")
 
 
 @dataclass(frozen=True, slots=True)

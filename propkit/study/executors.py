@@ -188,9 +188,7 @@ class _Pool:
                 return
             self.next += 1
 
-    def take(
-        self, function: Callable[[Block], Value], blocks: Sequence[Block], index: int, meter: Progress
-    ) -> Value | Failed:
+    def take(self, function: Callable[[Block], Value], blocks: Sequence[Block], index: int, meter: Progress) -> Value | Failed:
         """Return the result of block `index`."""
         if self.executor is None or not self.under_way:
             return _here(function, blocks[index])
@@ -215,13 +213,9 @@ class _Pool:
                     raise ConnectionError(f"the cluster has had no worker for {_PATIENCE:g} s") from None
         return future.result()
 
-    def _again(
-        self, function: Callable[[Block], Value], blocks: Sequence[Block], index: int, error: BaseException
-    ) -> Value | Failed:
+    def _again(self, function: Callable[[Block], Value], blocks: Sequence[Block], index: int, error: BaseException) -> Value | Failed:
         """Run a block whose future failed in this process: only an error of the calculation itself comes back."""
-        same_process = isinstance(self.executor, ThreadPoolExecutor) and not isinstance(
-            error, BrokenExecutor | CancelledError
-        )
+        same_process = isinstance(self.executor, ThreadPoolExecutor) and not isinstance(error, BrokenExecutor | CancelledError)
         value = Failed(error) if same_process and isinstance(error, Exception) else _here(function, blocks[index])
         if isinstance(value, Failed):
             self.under_way.popleft()
@@ -235,8 +229,7 @@ class _Pool:
             return
         kind = type(error).__name__
         self.notes.append(
-            f"the executor broke at block {index + 1} ({kind}); "
-            "that block and the rest ran in this process, with the same results"
+            f"the executor broke at block {index + 1} ({kind}); that block and the rest ran in this process, with the same results"
         )
         self.abandon()
         self.executor = None
@@ -293,9 +286,7 @@ def _workers(executor: Any) -> int:
 
 
 def _checked(executor: Any) -> Any:
-    if isinstance(executor, Executor) or (
-        callable(getattr(executor, "submit", None)) and hasattr(executor, "scheduler_info")
-    ):
+    if isinstance(executor, Executor) or (callable(getattr(executor, "submit", None)) and hasattr(executor, "scheduler_info")):
         return executor
     raise InputError(
         Problem(

@@ -84,9 +84,7 @@ class JointInputs:
         for (first, second), value in self.correlation.items():
             i, j = self._pair(first, second, value)
             matrix[i, j] = matrix[j, i] = value
-            scores[i, j] = scores[j, i] = score_correlation(
-                self.distributions[first], self.distributions[second], float(value)
-            )
+            scores[i, j] = scores[j, i] = score_correlation(self.distributions[first], self.distributions[second], float(value))
         object.__setattr__(self, "matrix", matrix)
         object.__setattr__(self, "_mix", _root(scores, paths))
 
@@ -161,9 +159,7 @@ class JointInputs:
         if not self.independent:
             scores = scores @ self._mix.T
         return {
-            path: entry.quantile(_inside(special.ndtr(scores[:, place])))
-            if not entry.normal
-            else _normal_at(entry, scores[:, place])
+            path: entry.quantile(_inside(special.ndtr(scores[:, place]))) if not entry.normal else _normal_at(entry, scores[:, place])
             for place, (path, entry) in enumerate(self.distributions.items())
         }
 
@@ -283,8 +279,7 @@ def _root(scores: Array, paths: tuple[str, ...]) -> Array:
         weights = np.abs(vectors[:, 0])
         clash = ", ".join(path for path, weight in zip(paths, weights, strict=True) if weight > 0.1)
         raise InputError(
-            f"the correlations of {clash} contradict each other: "
-            f"no set of inputs can have them (smallest eigenvalue {values[0]:.3g})"
+            f"the correlations of {clash} contradict each other: no set of inputs can have them (smallest eigenvalue {values[0]:.3g})"
         )
     root: Array = vectors * np.sqrt(np.maximum(values, 0.0))
     return root

@@ -81,7 +81,9 @@ def _limits(target: Calculation, subject_to: Mapping[str, Sequence[Any]]) -> dic
             problems.append(Problem(name, as_text(ends), "a pair (low, high), None for no limit"))
             continue
         if all(end is None for end in ends):
-            problems.append(Problem(name, as_text(ends), "a pair with a limit on one side at least", "Leave the result out if it has none."))
+            problems.append(
+                Problem(name, as_text(ends), "a pair with a limit on one side at least", "Leave the result out if it has none.")
+            )
             continue
         read = [target_values(target, {name: end}) if end is not None else None for end in ends]
         whole = result_name(target, name)
@@ -166,7 +168,13 @@ def _local(values: Any, room: Any, start: Array, sign: float, scale: float, coun
 
         conditions = [{"type": "ineq", "fun": left, "jac": left_slope}]
     found: Any = optimize.minimize(
-        loss, start, jac=slope, method="SLSQP", bounds=[(0.0, 1.0)] * len(start), constraints=conditions, options={"ftol": 1e-13, "maxiter": 80}
+        loss,
+        start,
+        jac=slope,
+        method="SLSQP",
+        bounds=[(0.0, 1.0)] * len(start),
+        constraints=conditions,
+        options={"ftol": 1e-13, "maxiter": 80},
     )
     best = np.clip(np.asarray(found.x, dtype=np.float64), 0.0, 1.0)
     return best if count else _polished(lambda points: -sign * values(points)[:, :1] / scale, best)

@@ -192,9 +192,7 @@ def _around(evaluate: Evaluate, inputs: JointInputs, paths: Sequence[str]) -> tu
     return around, tuple(answers), np.array([np.asarray(values, dtype=np.float64) for values in answers.values()])
 
 
-def _differences(
-    evaluate: Evaluate, inputs: JointInputs, paths: Sequence[str]
-) -> tuple[dict[str, float], dict[str, dict[str, float]]]:
+def _differences(evaluate: Evaluate, inputs: JointInputs, paths: Sequence[str]) -> tuple[dict[str, float], dict[str, dict[str, float]]]:
     """Return nominal results, and derivatives by input and result, from differences."""
     around, results, table = _around(evaluate, inputs, paths)
     bad = [name for name, row in zip(results, table, strict=True) if not np.isfinite(row).all()]
@@ -400,9 +398,7 @@ class _Run:
         parts = np.array([statistics(self.values[:, low:high]) for low, high in pairwise(ends)])
         scatter = parts.std(axis=0, ddof=1) / math.sqrt(len(parts))
         whole = statistics(self.values)[1]
-        return tuple(
-            Stability(tolerance(float(u)), float(2.0 * scatter[:, place].max())) for place, u in enumerate(whole)
-        )
+        return tuple(Stability(tolerance(float(u)), float(2.0 * scatter[:, place].max())) for place, u in enumerate(whole))
 
     def trials(self, stability: tuple[Stability, ...]) -> Trials:
         """Return the statistics over everything that was run."""
@@ -410,9 +406,7 @@ class _Run:
         count, samples = int(valid.sum()), self.values.shape[1]
         if samples < 2 or count < 0.5 * samples:
             if self.stopped and samples < 2:
-                raise ConvergenceError(
-                    "the run was interrupted before its first block ended: there is nothing to show", samples=samples
-                )
+                raise ConvergenceError("the run was interrupted before its first block ended: there is nothing to show", samples=samples)
             raise ConvergenceError(f"only {count} of {samples} trials have a solution", samples=samples, valid=count)
         mean, deviation, low, high = statistics(self.values)
         reach = self.inputs.reach(self.seed, [size for entry in self.rounds for size in self.sizes(entry)])

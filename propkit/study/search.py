@@ -123,7 +123,9 @@ class Search:
         self.nominal = np.array([entry.nominal for entry in known])
         self.legal = np.array([(entry.low, entry.high) for entry in known], dtype=np.float64)
         self.given = np.array([path in ranges for path in self.paths])
-        self.low, self.high = np.array([ranges.get(path, legal) for path, legal in zip(self.paths, self.legal, strict=True)], dtype=np.float64).T
+        self.low, self.high = np.array(
+            [ranges.get(path, legal) for path, legal in zip(self.paths, self.legal, strict=True)], dtype=np.float64
+        ).T
         self.evaluations = 0
 
     def __call__(self, points: Array) -> Array:
@@ -135,8 +137,12 @@ class Search:
     def first_ranges(self) -> tuple[Array, Array]:
         """Return where to look first: the range given, else the surroundings of the present value inside what is legal."""
         size = np.where(self.nominal == 0.0, 1.0, np.abs(self.nominal))
-        low = np.where(self.given, self.low, np.maximum(self.legal[:, 0], np.where(self.nominal > 0.0, self.nominal / _WIDE, -_WIDE * size)))
-        high = np.where(self.given, self.high, np.minimum(self.legal[:, 1], np.where(self.nominal > 0.0, self.nominal * _WIDE, _WIDE * size)))
+        low = np.where(
+            self.given, self.low, np.maximum(self.legal[:, 0], np.where(self.nominal > 0.0, self.nominal / _WIDE, -_WIDE * size))
+        )
+        high = np.where(
+            self.given, self.high, np.minimum(self.legal[:, 1], np.where(self.nominal > 0.0, self.nominal * _WIDE, _WIDE * size))
+        )
         return low, high
 
     def made(self, point: Array) -> Calculation:

@@ -119,15 +119,11 @@ def sobol_indices(
     table, results, notes = _evaluate(evaluate, drawn, executor, progress)
     bad = np.count_nonzero(~np.isfinite(table).all(axis=0))
     if bad:
-        raise ConvergenceError(
-            f"{bad} of {table.shape[1]} evaluations have no solution; Sobol indices need every one", failed=bad
-        )
+        raise ConvergenceError(f"{bad} of {table.shape[1]} evaluations have no solution; Sobol indices need every one", failed=bad)
     columns: dict[str, list[Array]] = {"S1": [], "ST": [], "S1_conf": [], "ST_conf": []}
     for row in table:
         flat = np.ptp(row) <= 1e-13 * np.abs(row).max()
-        found = (
-            None if flat else analysis.analyze(problem, row, calc_second_order=False, print_to_console=False, seed=seed)
-        )
+        found = None if flat else analysis.analyze(problem, row, calc_second_order=False, print_to_console=False, seed=seed)
         for key, kept in columns.items():
             kept.append(np.zeros(count) if found is None else np.asarray(found[key])[:count])
     first, total, first_width, total_width = (np.array(columns[key]) for key in ("S1", "ST", "S1_conf", "ST_conf"))
@@ -136,9 +132,7 @@ def sobol_indices(
 
 def _check_design(inputs: JointInputs, base: int) -> None:
     if not inputs.independent:
-        raise InputError(
-            "Sobol indices are defined for independent inputs; the first-order budget handles correlated ones"
-        )
+        raise InputError("Sobol indices are defined for independent inputs; the first-order budget handles correlated ones")
     if isinstance(base, bool) or not isinstance(base, int) or base < 64 or base & (base - 1):
         raise InputError(Problem("base", repr(base), "a power of 2 of at least 64"))
 
@@ -150,9 +144,7 @@ def _evaluate(
     progress: bool | Callable[[int, int, float], None],
 ) -> tuple[Array, tuple[str, ...], tuple[str, ...]]:
     count = len(next(iter(drawn.values())))
-    blocks = [
-        {path: values[start : start + BLOCK] for path, values in drawn.items()} for start in range(0, count, BLOCK)
-    ]
+    blocks = [{path: values[start : start + BLOCK] for path, values in drawn.items()} for start in range(0, count, BLOCK)]
     kept: list[Any] = []
 
     def keep(index: int, answer: Any) -> None:

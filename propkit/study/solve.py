@@ -154,7 +154,10 @@ def _nearest(search: Search, goal: float, best: tuple[Any, Any, tuple[float, flo
         return search.answer(np.array([found[1]]), True, notes, np.array([ends[0]]), np.array([ends[1]]))
     name, path = search.results[0], search.paths[0]
     near, first, last = search.told(name, float(search(np.array([[found[1]]]))[0, 0])), *(search.told(path, end) for end in ends)
-    notes.insert(0, f"the target is out of reach: {name} comes no nearer to {search.told(name, goal)} than {near} in the range searched, {first} to {last}")
+    notes.insert(
+        0,
+        f"the target is out of reach: {name} comes no nearer to {search.told(name, goal)} than {near} in the range searched, {first} to {last}",
+    )
     return search.answer(np.array([found[1]]), False, notes, np.array([ends[0]]), np.array([ends[1]]))
 
 
@@ -179,7 +182,9 @@ def _several(search: Search, goals: Array) -> Answer:
         return slopes_of(lambda points: (search(low + points * span) - goals) / scale, share)
 
     start = np.clip((search.nominal - low) / span, 0.0, 1.0)
-    found = optimize.least_squares(misses, start, jac=slopes, bounds=(0.0, 1.0), xtol=1e-15, ftol=1e-15, gtol=1e-15, x_scale=0.1, max_nfev=200)
+    found = optimize.least_squares(
+        misses, start, jac=slopes, bounds=(0.0, 1.0), xtol=1e-15, ftol=1e-15, gtol=1e-15, x_scale=0.1, max_nfev=200
+    )
     left = np.abs(misses(found.x))
     reached = bool((left <= 1e-8).all())
     notes = []

@@ -243,9 +243,7 @@ class Study:
                 counts[1] += answer.slow
             done[where] = True
 
-        how = run_blocks(
-            work, blocks, keep, executor=executor, progress=progress, sizes=blocks.sizes, keep_failures=True
-        )
+        how = run_blocks(work, blocks, keep, executor=executor, progress=progress, sizes=blocks.sizes, keep_failures=True)
         notes = list(how.notes)
         if self.one_by_one:
             notes.append(f"{self.one_by_one} designs have no batch form and were rebuilt one by one: slower, the same numbers")
@@ -260,9 +258,7 @@ class Study:
             notes.append(f"the quick engine solved {counts[0]} designs and left {counts[1]} of them to the damped solver")
         return StudyResult(self, columns, done, reasons, tuple(notes), how.interrupted, how.seconds)
 
-    def panel(
-        self, result: str | None = None, *, limits: Mapping[str, tuple[Any, Any]] | None = None, minimum: bool = False
-    ) -> Any:
+    def panel(self, result: str | None = None, *, limits: Mapping[str, tuple[Any, Any]] | None = None, minimum: bool = False) -> Any:
         """Return the interactive panel: a map or curves, solved anew while sliders move (extra ``notebook``).
 
         Parameters
@@ -298,9 +294,7 @@ def _wanted(target: Calculation, made: Sequence[Any], names: Sequence[str]) -> t
     return tuple(dict.fromkeys(found))
 
 
-def _part(
-    target: Calculation, template: Calculation | None, chosen: Mapping[str, Any], plan: Plan, names: tuple[str, ...] | None
-) -> Part:
+def _part(target: Calculation, template: Calculation | None, chosen: Mapping[str, Any], plan: Plan, names: tuple[str, ...] | None) -> Part:
     """Return how one group of designs is computed: as a batch where that is known to give the object's own numbers."""
     if template is None:
         return Part(None, target, chosen, names if names is not None else _every_result(target, plan))
@@ -356,7 +350,9 @@ def _hypercube(target: Calculation, ranges: Mapping[str, Sequence[Any]], count: 
     if isinstance(count, bool) or not isinstance(count, int | np.integer) or not 2 <= count <= LARGEST:
         raise InputError(Problem("count", repr(count), f"an integer from 2 to {LARGEST}"))
     if not isinstance(ranges, Mapping) or not ranges:
-        raise InputError(Problem("ranges", as_text(ranges), "a mapping of paths to ranges", 'For example {"chamber.pressure": ("5 MPa", "9 MPa")}.'))
+        raise InputError(
+            Problem("ranges", as_text(ranges), "a mapping of paths to ranges", 'For example {"chamber.pressure": ("5 MPa", "9 MPa")}.')
+        )
     draw = np.random.default_rng(seed)
     places = np.stack([(draw.permutation(count) + draw.random(count)) / count for _ in ranges], axis=1)
     columns: dict[str, Any] = {}
@@ -415,4 +411,3 @@ def target_values(target: Calculation, wanted: Mapping[str, Any]) -> dict[str, f
     if problems:
         raise InputError(problems)
     return found
-

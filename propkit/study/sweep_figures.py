@@ -44,7 +44,11 @@ def curves(result: Any, x: str | None, y: str | None, *, by: str | None, units: 
     others = [column for column in plan.columns if column.path != along]
     split = next((column for column in plan.columns if column.path == _any_path(result, by)), None) if by is not None else None
     if split is None and others:
-        split = max((column for column in others if len(np.unique(column.values)) > 1), key=lambda column: len(np.unique(column.values)), default=None)
+        split = max(
+            (column for column in others if len(np.unique(column.values)) > 1),
+            key=lambda column: len(np.unique(column.values)),
+            default=None,
+        )
     xs, ys = shown_values(result, along, units), shown_values(result, name, units)
     rows = np.arange(plan.count)
     keep = np.isfinite(xs)
@@ -108,5 +112,11 @@ def path_of(result: Any, name: str | None, *, longest: bool = False, but: str = 
             raise InputError(Problem("path", repr(name), "a number that varies in this study"))
         return path
     if not numbers:
-        raise InputError(Problem("designs", "without a number that varies" if not but else "with a single number that varies", "a study that varies another number"))
+        raise InputError(
+            Problem(
+                "designs",
+                "without a number that varies" if not but else "with a single number that varies",
+                "a study that varies another number",
+            )
+        )
     return str((max(numbers, key=lambda column: len(np.unique(column.values))) if longest else numbers[0]).path)

@@ -168,9 +168,7 @@ def read_plan(target: Calculation, what: Any) -> Plan:
     """
     table = hasattr(what, "columns") and hasattr(what, "iloc")
     if not table and not isinstance(what, Mapping):
-        raise InputError(
-            Problem("designs", as_text(what), "a mapping of paths to lists (a grid) or a DataFrame (a list of cases)")
-        )
+        raise InputError(Problem("designs", as_text(what), "a mapping of paths to lists (a grid) or a DataFrame (a list of cases)"))
     given = [(name, what[name]) for name in (what.columns if table else what)] if not _doubled(what, table) else []
     if not given:
         raise InputError(
@@ -194,8 +192,7 @@ def read_plan(target: Calculation, what: Any) -> Plan:
         return Plan(columns, sizes[0])
     strides = [math.prod(sizes[place + 1 :]) for place in range(len(sizes))]
     columns = tuple(
-        Column(path, unit, values, stride, options)
-        for (path, (unit, values, options)), stride in zip(read.items(), strides, strict=True)
+        Column(path, unit, values, stride, options) for (path, (unit, values, options)), stride in zip(read.items(), strides, strict=True)
     )
     return Plan(columns, math.prod(sizes), tuple(sizes))
 
@@ -336,9 +333,7 @@ def _choices(path: str, listed: Any, entry: Any) -> tuple[Integers, tuple[Any, .
 def blocks_of(groups: Sequence[tuple[Any, Integers]]) -> list[tuple[int, int, int]]:
     """Return the blocks of all groups in order: group, and where in its designs the block begins and ends."""
     return [
-        (number, first, min(first + BLOCK, len(rows)))
-        for number, (_, rows) in enumerate(groups)
-        for first in range(0, len(rows), BLOCK)
+        (number, first, min(first + BLOCK, len(rows))) for number, (_, rows) in enumerate(groups) for first in range(0, len(rows), BLOCK)
     ]
 
 
@@ -359,7 +354,9 @@ def units_of(target: Calculation, names: Sequence[str]) -> dict[str, str]:
     return found
 
 
-def templates(target: Calculation, plan: Plan, groups: Sequence[tuple[dict[str, Any], Integers]]) -> Iterator[Calculation | InputError | None]:
+def templates(
+    target: Calculation, plan: Plan, groups: Sequence[tuple[dict[str, Any], Integers]]
+) -> Iterator[Calculation | InputError | None]:
     """Yield the object that each group of designs is a variation of; the error where none of a few designs is allowed, None else."""
     given = {f"{link.kind}.{name}" for link in target.chain() for name in link.inputs}
     numbers = {column.path for column in plan.numbers if not is_enthalpy(column.path)}

@@ -26,6 +26,7 @@ if TYPE_CHECKING:
 
 Array = npt.NDArray[np.float64]
 
+
 class StudyResult:
     """The results of a study; immutable.
 
@@ -268,7 +269,9 @@ class StudyResult:
         names = tuple(dict.fromkeys(self._column_name(name) for name in (*results, *minimum)))
         small = {self._column_name(name) for name in minimum}
         if len(names) < 2:
-            raise InputError(Problem("results", ", ".join(names) or "missing", "two results or more", "With one there is a best design: best(...)."))
+            raise InputError(
+                Problem("results", ", ".join(names) or "missing", "two results or more", "With one there is a best design: best(...).")
+            )
         found = [(-1.0 if name in small else 1.0) * self.values(name) for name in names]
         table = np.stack(found, axis=1)
         usable = np.flatnonzero(np.isfinite(table).all(axis=1))
@@ -317,9 +320,7 @@ class StudyResult:
         frame["failed"] = [self._reasons.get(int(row), "") for row in frame.index]
         return frame
 
-    def record(
-        self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "", sample: int = 12, seed: int = 0
-    ) -> Any:
+    def record(self, *, title: str = "", author: str = "", purpose: str = "", notes: str = "", sample: int = 12, seed: int = 0) -> Any:
         """Return the record of the study: what varied, and a sample of designs that a reviewer recomputes.
 
         Parameters
@@ -443,9 +444,7 @@ class StudyResult:
         """
         return reach("study_map")(self, result, x=x, y=y, limits=limits, minimum=minimum, units=_system(units))
 
-    def panel(
-        self, result: str | None = None, *, limits: Mapping[str, tuple[Any, Any]] | None = None, minimum: bool = False
-    ) -> Any:
+    def panel(self, result: str | None = None, *, limits: Mapping[str, tuple[Any, Any]] | None = None, minimum: bool = False) -> Any:
         """Return the interactive panel: a map or curves, solved anew while sliders move (extra ``notebook``).
 
         Parameters

@@ -51,7 +51,9 @@ def designs_section(result: StudyResult, system: UnitSystem) -> Section:
     picked += [name for name in result._columns if name not in picked]
     columns += [_shown_column(result, name, shown, system) for name in picked[:SHOWN_COLUMNS]]
     note = f"{len(shown)} of {len(rows)} designs, spread evenly; .frame has all of them, with every result in SI."
-    return Section("designs", "Designs", table=Table("designs", "Designs", "design", tuple(str(row) for row in shown), tuple(columns), note))
+    return Section(
+        "designs", "Designs", table=Table("designs", "Designs", "design", tuple(str(row) for row in shown), tuple(columns), note)
+    )
 
 
 def _shown_column(result: StudyResult, name: str, rows: npt.NDArray[np.intp], system: UnitSystem) -> Column:

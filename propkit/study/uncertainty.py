@@ -84,9 +84,7 @@ class Uncertainty:
                 )
             )
         variables, given = _read(target, inputs)
-        resolved = {
-            path: entry.resolve(variables[path].nominal, variables[path].unit, path) for path, entry in given.items()
-        }
+        resolved = {path: entry.resolve(variables[path].nominal, variables[path].unit, path) for path, entry in given.items()}
         bounds = {path: (entry.low, entry.high) for path, entry in variables.items()}
         if results is not None:
             results = _wanted(target, results)
@@ -239,9 +237,7 @@ class Uncertainty:
         return SobolResult(self, found)
 
 
-def _read(
-    target: Calculation, inputs: Mapping[str, Distribution | str]
-) -> tuple[dict[str, Variable], dict[str, Distribution]]:
+def _read(target: Calculation, inputs: Mapping[str, Distribution | str]) -> tuple[dict[str, Variable], dict[str, Distribution]]:
     """Return variables and distributions by whole path; every problem in one error."""
     problems: list[Problem] = []
     variables: dict[str, Variable] = {}
@@ -300,7 +296,5 @@ def _pairs(target: Calculation, correlation: Any) -> dict[tuple[str, str], float
 
 def _pair(target: Calculation, pair: Any) -> tuple[str, str]:
     if not isinstance(pair, tuple) or len(pair) != 2:
-        raise InputError(
-            Problem("correlation", f"given for {pair!r}", "given for pairs of paths, as {(path, path): value}")
-        )
+        raise InputError(Problem("correlation", f"given for {pair!r}", "given for pairs of paths, as {(path, path): value}"))
     return variable(target, pair[0]).path, variable(target, pair[1]).path

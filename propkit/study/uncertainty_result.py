@@ -320,12 +320,8 @@ class UncertaintyResult:
             Column("unit", "unit", "", "", 0, tuple(shown_units)),
         )
         labels = tuple(self._quantity(name).label for name in self.results)
-        kind = (
-            "probabilistically symmetric, from the trials" if self.trials is not None else "1.96 standard uncertainties"
-        )
-        table = Table(
-            "uncertainties", "Uncertainty of the results", "result", labels, columns, f"95 % interval: {kind}."
-        )
+        kind = "probabilistically symmetric, from the trials" if self.trials is not None else "1.96 standard uncertainties"
+        table = Table("uncertainties", "Uncertainty of the results", "result", labels, columns, f"95 % interval: {kind}.")
         return Section("uncertainties", "Uncertainty of the results", table=table)
 
     def _input_section(self, system: UnitSystem) -> Section:
@@ -387,8 +383,7 @@ class UncertaintyResult:
         quantity = self._quantity(result)
         heights = tuple(float(value) * factor for value in frame["contribution"])
         texts = tuple(
-            f"±{value:.3g} {units.shown_unit(unit)} ({100.0 * share:.0f} %)"
-            for value, share in zip(heights, frame["share"], strict=True)
+            f"±{value:.3g} {units.shown_unit(unit)} ({100.0 * share:.0f} %)" for value, share in zip(heights, frame["share"], strict=True)
         )
         bars = Bars(tuple(map(str, frame.index)), Series("contribution", heights, unit, quantity.symbol), texts)
         listed = ", ".join(f"{path} {text}" for path, text in zip(frame.index, texts, strict=True))

@@ -56,11 +56,7 @@ def render(report: Report) -> str:
 
 def _strip(report: Report) -> str:
     title = f" <b class='propkit-title'>{escape(report.title)}</b>" if report.title else ""
-    below = (
-        f" <span class='propkit-sub'>{escape(report.subtitle)}</span>"
-        if report.subtitle not in ("", report.title)
-        else ""
-    )
+    below = f" <span class='propkit-sub'>{escape(report.subtitle)}</span>" if report.subtitle not in ("", report.title) else ""
     return f"<p class='propkit-strip'><span class='propkit-kind'>{escape(report.kind)}</span>{title}{below}</p>"
 
 
@@ -163,23 +159,15 @@ def _section(section: Section, full: bool = False) -> str:
         if not inner:
             inner.append(f"<p class='propkit-caption'>{escape(section.title)}</p>")
         long = " propkit-long" if full and len(section.lines) > _LONG else ""
-        inner.append(
-            f"<ul class='propkit-lines{long}'>{''.join(f'<li>{escape(line)}</li>' for line in section.lines)}</ul>"
-        )
+        inner.append(f"<ul class='propkit-lines{long}'>{''.join(f'<li>{escape(line)}</li>' for line in section.lines)}</ul>")
     return f"<div{' class=propkit-full' if full else ''}>{''.join(inner)}</div>" if inner else ""
 
 
 def _step(step: Step) -> str:
-    numbers_in = (
-        equation_html(step.numbers_latex, step.numbers)
-        if step.numbers_latex
-        else f"<p><code>{escape(step.numbers)}</code></p>"
-    )
+    numbers_in = equation_html(step.numbers_latex, step.numbers) if step.numbers_latex else f"<p><code>{escape(step.numbers)}</code></p>"
     result = ""
     if step.result is not None:
-        result = (
-            f"<p>= <b>{value_html(step.result)}</b> <span class='propkit-u'>{unit_html(step.result.unit)}</span></p>"
-        )
+        result = f"<p>= <b>{value_html(step.result)}</b> <span class='propkit-u'>{unit_html(step.result.unit)}</span></p>"
     source = f"<p class='propkit-note'>{escape(reference(step.source))}</p>" if step.source else ""
     return (
         f"<div class='propkit-step'><p class='propkit-steptitle'>{escape(step.label)}</p>"

@@ -78,8 +78,7 @@ def _row(row: Row, value: str, number: bool, beside: str) -> str:
     )
     if number:
         rest = (
-            f"<td class='propkit-s'>{sign}</td><td class='propkit-n'>{value}</td>{beside}"
-            f"<td class='propkit-u'>{unit_html(row.unit)}</td>"
+            f"<td class='propkit-s'>{sign}</td><td class='propkit-n'>{value}</td>{beside}<td class='propkit-u'>{unit_html(row.unit)}</td>"
         )
     elif sign:
         rest = f"<td class='propkit-s'>{sign}</td><td class='propkit-t' colspan='{2 + more}'>{value}</td>"
@@ -99,9 +98,7 @@ def is_wide(table: Table) -> bool:
     """Whether a table needs the full width of the sheet."""
     if cells.is_species(table.index_label):
         return len(table.columns) > 1
-    longest = max(
-        (len(value) for column in table.columns for value in column.values if isinstance(value, str)), default=0
-    )
+    longest = max((len(value) for column in table.columns for value in column.values if isinstance(value, str)), default=0)
     return len(table.columns) > 4 or longest > 40
 
 
@@ -139,9 +136,7 @@ def _head(column: Column, species: bool, bars: bool) -> str:
 def _cells(column: Column, largest: float) -> list[str]:
     """Return the cells of a column; with bars against `largest` where that is not zero."""
     written = html_species if column.name == "formula" else escape
-    set_numbers = iter(
-        lined_up(numbers.pretty(value, column.digits) for value in column.values if isinstance(value, int | float))
-    )
+    set_numbers = iter(lined_up(numbers.pretty(value, column.digits) for value in column.values if isinstance(value, int | float)))
     out = []
     for value in column.values:
         if isinstance(value, int | float):
@@ -172,9 +167,7 @@ def conditions_html(steps: Sequence[Step]) -> str:
     """Return the conditions that iterated states satisfy as one table, both sides evaluated."""
     if not steps:
         return ""
-    left, right = (
-        lined_up(numbers.pretty(float(getattr(step, side) or 0.0), 10) for step in steps) for side in ("left", "right")
-    )
+    left, right = (lined_up(numbers.pretty(float(getattr(step, side) or 0.0), 10) for step in steps) for side in ("left", "right"))
     rows = []
     for position, step in enumerate(steps):
         rows.append(
@@ -183,9 +176,7 @@ def conditions_html(steps: Sequence[Step]) -> str:
             f"<td class='propkit-n'>{numbers.pretty(step.residual or 0.0, 2)}</td></tr>"
         )
     sources = "; ".join(dict.fromkeys(reference(step.source).rstrip(".") for step in steps if step.source))
-    heads = "".join(
-        f"<th scope='col' class='propkit-n'>{head}</th>" for head in ("left side", "right side", "residual")
-    )
+    heads = "".join(f"<th scope='col' class='propkit-n'>{head}</th>" for head in ("left side", "right side", "residual"))
     return (
         "<div class='propkit-wide'><table class='propkit-mid'><caption>Conditions that the states satisfy</caption><thead><tr>"
         f"<th scope='col'>condition</th><th scope='col'>relation</th>{heads}</tr></thead>"

@@ -47,11 +47,7 @@ def unit_text(unit: str) -> str:
 
 def render(report: Report) -> str:
     """Return the report as LaTeX."""
-    head = (
-        rf"\textbf{{{escaped(report.kind)}}}: {escaped(report.title)}"
-        if report.title
-        else rf"\textbf{{{escaped(report.kind)}}}"
-    )
+    head = rf"\textbf{{{escaped(report.kind)}}}: {escaped(report.title)}" if report.title else rf"\textbf{{{escaped(report.kind)}}}"
     blocks = [head]
     if report.subtitle not in ("", report.title):
         blocks.append(escaped(report.subtitle))
@@ -83,9 +79,7 @@ def _rows(rows: Iterable[Row]) -> str:
     for row in rows:
         sign = f"${row.symbol}$" if row.symbol else ""
         typed = f" ({escaped(row.typed)})" if cells.shows_typed(row) else ""
-        lines.append(
-            rf"{_MARKS[row.kind]} & {escaped(row.label)}{typed} & {sign} & {_value(row)} & {unit_text(row.unit)} \\"
-        )
+        lines.append(rf"{_MARKS[row.kind]} & {escaped(row.label)}{typed} & {sign} & {_value(row)} & {unit_text(row.unit)} \\")
         for doubt in row.doubts:
             lines.append(rf"& \multicolumn{{4}}{{p{{0.8\linewidth}}}}{{\emph{{{escaped(doubt)}}}}} \\")
     return "\n".join([*lines, r"\end{tabular}"])
@@ -112,9 +106,7 @@ def _table(table: Table) -> str:
     form = _form(table.index) + "".join("r" if cells.numeric(column) else _form(column.values) for column in table.columns)
     heads = [escaped(table.index_label)]
     for column in table.columns:
-        name = (
-            f"${column.symbol}$" if column.symbol and not cells.is_species(table.index_label) else escaped(column.label)
-        )
+        name = f"${column.symbol}$" if column.symbol and not cells.is_species(table.index_label) else escaped(column.label)
         unit = unit_text(column.unit)
         heads.append(f"{name} [{unit}]" if unit else name)
     lines = [rf"\begin{{tabular}}{{{form}}}", " & ".join(heads) + r" \\ \hline"]
@@ -122,13 +114,7 @@ def _table(table: Table) -> str:
         row = [f"${latex_species(entry)}$" if cells.is_species(table.index_label) else escaped(entry)]
         for column in table.columns:
             value = column.values[position]
-            row.append(
-                ""
-                if value is None
-                else escaped(value)
-                if isinstance(value, str)
-                else f"${numbers.latex(value, column.digits)}$"
-            )
+            row.append("" if value is None else escaped(value) if isinstance(value, str) else f"${numbers.latex(value, column.digits)}$")
         lines.append(" & ".join(row) + r" \\")
     lines.append(r"\end{tabular}")
     if len(table.columns) >= _MANY:

@@ -15,13 +15,7 @@ _SPECIAL = re.compile(r"([\\`*_{}\[\]()#+!|<>~&$-])")
 
 def escaped(text: str) -> str:
     """Return a text in which nothing is Markdown or HTML."""
-    return (
-        _SPECIAL.sub(r"\\\1", text)
-        .replace("\\<", "&lt;")
-        .replace("\\>", "&gt;")
-        .replace("\\&", "&amp;")
-        .replace("\n", " ")
-    )
+    return _SPECIAL.sub(r"\\\1", text).replace("\\<", "&lt;").replace("\\>", "&gt;").replace("\\&", "&amp;").replace("\n", " ")
 
 
 def render(report: Report) -> str:
@@ -97,13 +91,7 @@ def _table(table: Table) -> str:
         row = [escaped(name)]
         for column in table.columns:
             value = column.values[position]
-            row.append(
-                ""
-                if value is None
-                else escaped(value)
-                if isinstance(value, str)
-                else numbers.pretty(value, column.digits)
-            )
+            row.append("" if value is None else escaped(value) if isinstance(value, str) else numbers.pretty(value, column.digits))
         lines.append("| " + " | ".join(row) + " |")
     return "\n".join(lines) + (f"\n\n{escaped(table.note)}" if table.note else "")
 

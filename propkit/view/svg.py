@@ -63,9 +63,7 @@ def _bars(bars: Bars, width: int, low: float, species: bool) -> tuple[str, int]:
         begin = left + room * (start - low) / largest
         long = max(1.0, room * abs(value - start) / largest)
         out.append(text(left - 8, y + 10, escape(_fitting(name, left - 16)), anchor="end"))
-        out.append(
-            f"<rect x='{number(begin)}' y='{y}' width='{number(long)}' height='{_BAR}' fill='{palette.colour(bars.colour)}'/>"
-        )
+        out.append(f"<rect x='{number(begin)}' y='{y}' width='{number(long)}' height='{_BAR}' fill='{palette.colour(bars.colour)}'/>")
         if bars.starts and low != 0.0 and start == low:
             out.append(_cut(begin + 7, y))
         out.append(text(begin + long + 6, y + 10, escape(entry), colour=palette.QUIET))
@@ -138,9 +136,7 @@ def _dimension(mark: Mark, x: float, high: float, low: float, height: int, left:
     colour = palette.colour(mark.colour)
     base = height - 9
     at = number(x)
-    arrows = "".join(
-        f"<path d='M{at} {number(y)}l-2.4 {6 * way}h4.8z' fill='{colour}'/>" for y, way in ((high, 1), (low, -1))
-    )
+    arrows = "".join(f"<path d='M{at} {number(y)}l-2.4 {6 * way}h4.8z' fill='{colour}'/>" for y, way in ((high, 1), (low, -1)))
     inside = arrows if low - high > 16 else ""
     return (
         f"<path d='M{at} {number(high)}V{number(low)}' stroke='{colour}' stroke-width='1'/>{inside}"

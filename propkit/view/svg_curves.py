@@ -77,9 +77,7 @@ def curves(figure: Figure, width: int, height: int, top: int) -> tuple[str, int]
         x = x_scale.at(value)
         out.append(f"<path d='M{number(x)} {number(y_foot)}v4' stroke='{palette.QUIET}' stroke-width='.8'/>")
         out.append(text(x, y_foot + 15, _tick(value), anchor="middle", colour=palette.QUIET))
-    out.append(
-        f"<path d='M{number(left)} {number(y_foot)}H{number(right)}' stroke='{palette.QUIET}' stroke-width='.8'/>"
-    )
+    out.append(f"<path d='M{number(left)} {number(y_foot)}H{number(right)}' stroke='{palette.QUIET}' stroke-width='.8'/>")
     out.append(text(right, height - 7, _axis_title(figure.x, 9.5), size=9.5, anchor="end", colour=palette.QUIET))
     out += [_regions(layer, x_scale, y_scale) for layer in regions]
     out += [_texts(layer, x_scale, y_scale) for layer in figure.layers if isinstance(layer, Texts)]
@@ -102,9 +100,7 @@ def _scale(axis: Axis, values: list[float], start: float, end: float, from_zero:
     log = axis.scale == "log"
     known = [_log(value) if log else value for value in values]
     finite = [value for value in known if math.isfinite(value)]
-    asked_low, asked_high = (
-        None if limit is None else _log(limit) if log else limit for limit in (axis.low, axis.high)
-    )
+    asked_low, asked_high = (None if limit is None else _log(limit) if log else limit for limit in (axis.low, axis.high))
     low = asked_low if asked_low is not None else min(finite, default=0.0)
     high = asked_high if asked_high is not None else max(finite, default=1.0)
     if from_zero and not log and asked_low is None and 0.0 < low < 0.5 * high:
@@ -244,8 +240,7 @@ def _mark(mark: Mark, x: Scale, y: Scale, inked: list[tuple[float, float]]) -> t
         if hits < score:
             best, score = (left, base), hits
     colour = palette.colour(mark.colour)
-    drawn = (
-        f"<circle cx='{number(at)}' cy='{number(level)}' r='3.6' fill='{colour}' stroke='{palette.PLATE}' stroke-width='1.2'/>"
-        + text(*best, escape(mark.label), colour=colour, weight="bold", halo=True)
+    drawn = f"<circle cx='{number(at)}' cy='{number(level)}' r='3.6' fill='{colour}' stroke='{palette.PLATE}' stroke-width='1.2'/>" + text(
+        *best, escape(mark.label), colour=colour, weight="bold", halo=True
     )
     return drawn, [(best[0] + share * wide, best[1] - 4) for share in (0.0, 0.25, 0.5, 0.75, 1.0)] + [(at, level)]

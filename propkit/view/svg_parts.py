@@ -44,9 +44,7 @@ def text(
     bold = f" font-weight='{weight}'" if weight else ""
     around = f" stroke='{palette.PLATE}' stroke-width='3' stroke-linejoin='round' paint-order='stroke'" if halo else ""
     at = "" if anchor == "start" else f" text-anchor='{anchor}'"
-    return (
-        f"<text x='{number(x)}' y='{number(y)}' font-size='{size:g}'{at} fill='{colour}'{bold}{around}>{markup}</text>"
-    )
+    return f"<text x='{number(x)}' y='{number(y)}' font-size='{size:g}'{at} fill='{colour}'{bold}{around}>{markup}</text>"
 
 
 def symbol(latex: str, size: float) -> str:

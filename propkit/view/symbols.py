@@ -75,10 +75,7 @@ def html_symbol(symbol: str) -> str:
         return f"<{tag}>{shown}</{tag}>"
 
     def plain(text: str) -> str:
-        return "".join(
-            f"<i>{escape(part)}</i>" if part.isalpha() else escape(part)
-            for part in re.findall(r"[^\W\d_]+|[\W\d_]+", text)
-        )
+        return "".join(f"<i>{escape(part)}</i>" if part.isalpha() else escape(part) for part in re.findall(r"[^\W\d_]+|[\W\d_]+", text))
 
     return _walk(symbol, script, plain, lambda text: escape(text))
 

@@ -58,13 +58,7 @@ def _rows(rows: Iterable[Row]) -> list[str]:
     for row in listed:
         typed = f"   ({row.typed})" if cells.shows_typed(row) else ""
         sure = f" ± {cells.uncertainty_text(row, plain=True)}" if row.uncertainty is not None else ""
-        value = (
-            next(lined)
-            if isinstance(row.value, int | float)
-            else "not available"
-            if row.value is None
-            else str(row.value)
-        )
+        value = next(lined) if isinstance(row.value, int | float) else "not available" if row.value is None else str(row.value)
         value = f"{value.rstrip()}{sure}" if sure else value
         sign = _padded(text_symbol(row.symbol), symbol)
         start = f"  {cells.MARKS[row.kind]} {row.label:<{label}}  {sign}  "
@@ -140,9 +134,7 @@ def _tall(first: list[str], block: list[str]) -> list[str]:
 
 def _texts(column: Column) -> list[str]:
     """Return the cells of a column, numbers with their decimal signs in line."""
-    lined = iter(
-        numbers.lined_up(numbers.rounded(v, column.digits) for v in column.values if isinstance(v, int | float))
-    )
+    lined = iter(numbers.lined_up(numbers.rounded(v, column.digits) for v in column.values if isinstance(v, int | float)))
     return [next(lined) if isinstance(v, int | float) else v or "" for v in column.values]
 
 
@@ -187,15 +179,11 @@ def _step(step: Step) -> list[str]:
 
 
 def _labelled(label: str, text: str) -> list[str]:
-    return textwrap.wrap(
-        text, WIDTH, initial_indent=f"  {label:<11}", subsequent_indent=" " * 13, break_long_words=False
-    )
+    return textwrap.wrap(text, WIDTH, initial_indent=f"  {label:<11}", subsequent_indent=" " * 13, break_long_words=False)
 
 
 def _bullets(texts: Iterable[str], mark: str, indent: str = "  ") -> list[str]:
     lines: list[str] = []
     for text in texts:
-        lines += textwrap.wrap(
-            text, WIDTH, initial_indent=indent + mark, subsequent_indent=indent + " " * len(mark)
-        ) or [indent + mark]
+        lines += textwrap.wrap(text, WIDTH, initial_indent=indent + mark, subsequent_indent=indent + " " * len(mark)) or [indent + mark]
     return lines

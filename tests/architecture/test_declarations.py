@@ -67,11 +67,7 @@ def test_public_functions_take_no_catch_all_keywords(path):
     tree = ast.parse(path.read_text(encoding="utf-8"))
     allowed = {"replace", "__init__", "__init_subclass__"}
     for node in ast.walk(tree):
-        if (
-            isinstance(node, ast.FunctionDef | ast.AsyncFunctionDef)
-            and node.args.kwarg
-            and not node.name.startswith("_")
-        ):
+        if isinstance(node, ast.FunctionDef | ast.AsyncFunctionDef) and node.args.kwarg and not node.name.startswith("_"):
             assert node.name in allowed, f"{path.name}: {node.name} takes **{node.args.kwarg.arg}"
 
 

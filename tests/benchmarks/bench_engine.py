@@ -48,7 +48,9 @@ def plain_cantera(gas, fractions, enthalpy, pressure, area_ratio):
         gas.equilibrate("SP", rtol=1e-10)
         return gas.density * np.sqrt(max(2.0 * (h0 - gas.enthalpy_mass), 0.0))
 
-    throat = optimize.minimize_scalar(lambda p: -flux(p), bounds=(0.45 * pressure, 0.65 * pressure), method="bounded", options={"xatol": 1.0})
+    throat = optimize.minimize_scalar(
+        lambda p: -flux(p), bounds=(0.45 * pressure, 0.65 * pressure), method="bounded", options={"xatol": 1.0}
+    )
     top = -throat.fun
     exit_pressure = optimize.brentq(lambda p: top / flux(p) - area_ratio, 1e-5 * pressure, 0.5 * pressure, rtol=1e-8)
     flux(exit_pressure)
@@ -91,7 +93,9 @@ def main() -> None:
         start = time.perf_counter()
         plain_cantera(gas, _elemental(gas, case.held.mixture), case.si("enthalpy"), pressure[k], area_ratio[k])
         same.append(time.perf_counter() - start)
-    print(f"one Performance from scratch: {1e3 * statistics.median(single):.1f} ms median; plain Cantera route {1e3 * statistics.median(same):.1f} ms")
+    print(
+        f"one Performance from scratch: {1e3 * statistics.median(single):.1f} ms median; plain Cantera route {1e3 * statistics.median(same):.1f} ms"
+    )
     times = []
     for _ in range(5):
         start = time.perf_counter()

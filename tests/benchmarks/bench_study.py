@@ -235,7 +235,9 @@ def live_map(executor):
         with Clock() as clock:
             pk.Study(target, axes, results=["specific_impulse", "thrust"]).run(executor=executor, progress=False)
         times.append(clock)
-    print(f"  map of 2500 designs re-solved: {1e3 * statistics.median(t.elapsed for t in times):.0f} ms elapsed, {1e3 * statistics.median(t.processor for t in times):.0f} ms processor")
+    print(
+        f"  map of 2500 designs re-solved: {1e3 * statistics.median(t.elapsed for t in times):.0f} ms elapsed, {1e3 * statistics.median(t.processor for t in times):.0f} ms processor"
+    )
 
 
 def first_order():
@@ -268,7 +270,9 @@ def large(executor):
     clock, _, frame = timed_study(made, executor)
     peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 2**20
     many = clock.processor / len(frame)
-    print(f"  1 000 000 designs, ten results: {1e6 * many:.1f} us a design, {many / few:.2f} of that at {DESIGNS}; peak memory {peak:.2f} GB")
+    print(
+        f"  1 000 000 designs, ten results: {1e6 * many:.1f} us a design, {many / few:.2f} of that at {DESIGNS}; peak memory {peak:.2f} GB"
+    )
     workers(executor, made, small)
 
 
@@ -280,7 +284,9 @@ def workers(one, made, small):
         rounds = [[timed_study(made, pool)[0].elapsed for pool in (one, threads, processes)] for _ in range(5)]
     for place, name in ((1, "threads"), (2, "processes")):
         gains = sorted(times[0] / times[place] for times in rounds)
-        print(f"  two {name} against one thread, {len(rounds)} rounds: best {gains[-1]:.2f}, median {statistics.median(gains):.2f} times as fast")
+        print(
+            f"  two {name} against one thread, {len(rounds)} rounds: best {gains[-1]:.2f}, median {statistics.median(gains):.2f} times as fast"
+        )
 
 
 def main() -> None:

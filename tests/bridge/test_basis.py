@@ -77,10 +77,7 @@ def test_checksums_are_of_the_data() -> None:
     first = base.checksum(("C", "H", "O"))
     assert re.fullmatch(r"sha256:[0-9a-f]{64}", first)
     assert first == base.checksum(("O", "C", "H"))
-    assert (
-        len({first, other.checksum(("C", "H", "O")), base.checksum(("H", "O")), base.checksum(("C", "H", "O"), True)})
-        == 4
-    )
+    assert len({first, other.checksum(("C", "H", "O")), base.checksum(("H", "O")), base.checksum(("C", "H", "O"), True)}) == 4
     assert base.checksum(("He",)) == other.checksum(("He",))
 
 

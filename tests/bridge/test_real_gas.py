@@ -10,9 +10,7 @@ from propkit.errors import InputError, MissingExtraError, RangeError
 
 pytest.importorskip("CoolProp")
 ROWS = library()
-GASES = [
-    name for name, row in ROWS.items() if "cold gas" in row.roles and row.phase == "gas" and row.coolprop_fluid != "Air"
-]
+GASES = [name for name, row in ROWS.items() if "cold gas" in row.roles and row.phase == "gas" and row.coolprop_fluid != "Air"]
 
 
 @pytest.mark.parametrize("name", GASES)
@@ -47,9 +45,7 @@ def test_the_choked_flux_is_that_of_gas_dynamics(name, exponent):
     ],
 )
 def test_compressibility_follows_the_second_virial_coefficient(name, temperature, pressure, compressibility, tolerance):
-    assert real_gas_price(ROWS[name], temperature, pressure).compressibility == pytest.approx(
-        compressibility, abs=tolerance
-    )
+    assert real_gas_price(ROWS[name], temperature, pressure).compressibility == pytest.approx(compressibility, abs=tolerance)
 
 
 def test_a_full_bottle_is_not_ideal():

@@ -50,9 +50,7 @@ def test_both_engines_agree(case, freeze_at) -> None:  # type: ignore[no-untyped
         assert len(parts) >= 6
         for name, value in parts.items():
             assert abs(value) < 1e-6, (station, name)
-    by_pressure = cross_check(
-        base, symbols, atoms, enthalpy=enthalpy, pressure=pressure, exit_pressure=float(end.pressure[0]), **keywords
-    )
+    by_pressure = cross_check(base, symbols, atoms, enthalpy=enthalpy, pressure=pressure, exit_pressure=float(end.pressure[0]), **keywords)
     assert by_pressure.stations["exit"]["velocity"] == pytest.approx(end.velocity[0], rel=1e-6)
 
 
@@ -65,9 +63,7 @@ def test_a_wrong_answer_is_seen() -> None:
 
 def test_an_exit_outside_the_data_is_not_compared() -> None:
     symbols, atoms, enthalpy, pressure = ("H", "O"), kilogram("HO", [59.8437, 58.7335]), -5.7e6, 2.5e6
-    found = cross_check(
-        load_basis(), symbols, atoms, enthalpy=enthalpy, pressure=pressure, flow="frozen", area_ratio=400.0
-    )
+    found = cross_check(load_basis(), symbols, atoms, enthalpy=enthalpy, pressure=pressure, flow="frozen", area_ratio=400.0)
     assert "outside the range" in found.reason
     assert not found.stations
 

@@ -138,9 +138,7 @@ def test_real_gas_at_pressure():
 
 
 def test_below_freezing_is_refused_where_the_equation_of_state_ends():
-    with pytest.raises(
-        RangeError, match=r"LOX has no fluid state at 40 K .*below the freezing point, 54\.36 K"
-    ) as caught:
+    with pytest.raises(RangeError, match=r"LOX has no fluid state at 40 K .*below the freezing point, 54\.36 K") as caught:
         state("LOX", 40.0)
     assert caught.value.data["temperature"] == 40.0
     with pytest.raises(RangeError, match="no fluid state"):
@@ -191,12 +189,8 @@ def test_liquid_without_an_equation_of_state_against_one_that_has_it():
     props = pytest.importorskip("CoolProp.CoolProp").PropsSI
     row = ROWS["n-dodecane"]
     heat_capacity = props("Cpmass", "T", 313.15, "P", 1e5, "n-Dodecane")
-    slope = (
-        props("Dmass", "T", 303.15, "P", 1e5, "n-Dodecane") - props("Dmass", "T", 293.15, "P", 1e5, "n-Dodecane")
-    ) / 10
-    plain = replace(
-        row, coolprop_fluid=None, heat_capacity=heat_capacity, heat_capacity_range=(270.0, 400.0), density_slope=slope
-    )
+    slope = (props("Dmass", "T", 303.15, "P", 1e5, "n-Dodecane") - props("Dmass", "T", 293.15, "P", 1e5, "n-Dodecane")) / 10
+    plain = replace(row, coolprop_fluid=None, heat_capacity=heat_capacity, heat_capacity_range=(270.0, 400.0), density_slope=slope)
     for temperature, pressure, tolerance in ((328.15, None, 2e-3), (298.15, 2e7, 0.05), (328.15, 2e7, 0.02)):
         ours, theirs = stored_state(plain, temperature, pressure), stored_state(row, temperature, pressure)
         assert ours.enthalpy_change == pytest.approx(theirs.enthalpy_change, rel=tolerance)
@@ -227,9 +221,7 @@ def test_no_data_is_a_clear_error():
     assert stored_state(ROWS["isopropyl nitrate"], 298.16).enthalpy_change == 0.0
 
 
-@pytest.mark.parametrize(
-    ("name", "temperature"), [("n-heptane", 330.0), ("ethanol", 330.0), ("methanol", 320.0), ("water", 350.0)]
-)
+@pytest.mark.parametrize(("name", "temperature"), [("n-heptane", 330.0), ("ethanol", 330.0), ("methanol", 320.0), ("water", 350.0)])
 def test_vapour_pressure_estimate_against_coolprop(name, temperature):
     props = pytest.importorskip("CoolProp.CoolProp").PropsSI
     row = ROWS[name]
@@ -249,9 +241,7 @@ def test_vapour_pressure_of_a_row_without_a_boiling_point():
 
 def test_mixture_is_the_sum_of_its_ingredients():
     mixture, parts = state("A-50", 320.0), [state("hydrazine", 320.0), state("UDMH", 320.0)]
-    by_mass = [
-        part.enthalpy_change / ROWS[name].molar_mass for part, name in zip(parts, ("hydrazine", "UDMH"), strict=True)
-    ]
+    by_mass = [part.enthalpy_change / ROWS[name].molar_mass for part, name in zip(parts, ("hydrazine", "UDMH"), strict=True)]
     assert mixture.enthalpy_change / ROWS["A-50"].molar_mass == pytest.approx(sum(by_mass) / 2, rel=1e-12)
     assert mixture.density < ROWS["A-50"].density
 

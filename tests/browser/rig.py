@@ -121,7 +121,9 @@ class Lab:
             "JUPYTERLAB_WORKSPACES_DIR": str(self.root / "workspaces"),
             "IPYTHONDIR": str(self.root / "ipython"),
             "OMP_NUM_THREADS": "1",
-            "PYTHONPATH": os.pathsep.join(path for path in (os.environ.get("PROPKIT_TREE", str(Path(__file__).parents[2])), os.environ.get("PYTHONPATH", "")) if path),
+            "PYTHONPATH": os.pathsep.join(
+                path for path in (os.environ.get("PROPKIT_TREE", str(Path(__file__).parents[2])), os.environ.get("PYTHONPATH", "")) if path
+            ),
         }
         command = [
             sys.executable, "-m", "jupyterlab", "--no-browser", f"--ServerApp.port={self.port}", "--ServerApp.ip=127.0.0.1", "--ServerApp.port_retries=0",
@@ -268,7 +270,9 @@ class Page:
                 return
             self.page.wait_for_timeout(100)
         seen = self.page.locator(".jp-OutputArea-output").all_inner_texts()
-        raise AssertionError(f"{count} live figures expected, {len(self.figures())} drawn; complaints: {self.complaints}; outputs: {str(seen)[-1500:]}")
+        raise AssertionError(
+            f"{count} live figures expected, {len(self.figures())} drawn; complaints: {self.complaints}; outputs: {str(seen)[-1500:]}"
+        )
 
     def panel(self, number: int = 0) -> PanelPage:
         """Return a panel of the page."""

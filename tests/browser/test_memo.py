@@ -51,7 +51,9 @@ def test_a_memo_needs_no_network(browser: Any, memos: list[Path], which: int, wi
 
 @pytest.mark.parametrize(("paper", "size"), [("A4", (595, 842)), ("Letter", (612, 792))])
 @pytest.mark.parametrize("which", [0, 1])
-def test_a_memo_prints_on_both_papers(browser: Any, memos: list[Path], tmp_path: Path, which: int, paper: str, size: tuple[int, int]) -> None:
+def test_a_memo_prints_on_both_papers(
+    browser: Any, memos: list[Path], tmp_path: Path, which: int, paper: str, size: tuple[int, int]
+) -> None:
     """Page numbers stand at the foot, nothing is cut at the right edge, and no heading is left alone at the foot of a page."""
     page = browser.new_page()
     page.goto(memos[which].as_uri())
@@ -64,7 +66,18 @@ def test_a_memo_prints_on_both_papers(browser: Any, memos: list[Path], tmp_path:
     assert abs(high - size[1]) <= 1
     count = int(re.findall(r"Pages:\s+(\d+)", info)[0])
     pages = subprocess.run(["pdftotext", "-layout", str(printed), "-"], capture_output=True, text=True, check=True).stdout.split("\f")
-    headings = {"Chamber", "Nozzle", "Records", "Cautions", "Code", "4. Inputs", "6. Working", "8. Checks", "11. References", "12. Provenance"}
+    headings = {
+        "Chamber",
+        "Nozzle",
+        "Records",
+        "Cautions",
+        "Code",
+        "4. Inputs",
+        "6. Working",
+        "8. Checks",
+        "11. References",
+        "12. Provenance",
+    }
     for number, text in enumerate(pages[:count], 1):
         lines = [line.strip() for line in text.splitlines() if line.strip()]
         assert f"page {number} of {count}" in lines[-1]

@@ -19,7 +19,9 @@ PRESSURE, RATIO = "chamber.pressure", "case.mixture_ratio"
 
 
 def built(pressure: Any = "9.7 MPa", ratio: Any = 3.4) -> pk.Performance:
-    nozzle = pk.Nozzle(pk.Chamber(pk.PropellantCase("LOX", "LCH4", mixture_ratio=ratio), pressure=pressure), area_ratio=35, throat_diameter="0.18 m")
+    nozzle = pk.Nozzle(
+        pk.Chamber(pk.PropellantCase("LOX", "LCH4", mixture_ratio=ratio), pressure=pressure), area_ratio=35, throat_diameter="0.18 m"
+    )
     return pk.Performance(nozzle, ambient="sea level")
 
 
@@ -181,7 +183,9 @@ def test_keyboard_labels_and_a_narrow_page_without_jumps(page: rig.Page) -> None
     panel.button("Pin").focus()
     for _ in range(30):
         page.page.keyboard.press("Tab")
-        reached.add(page.page.evaluate("() => document.activeElement.closest('[data-path]')?.dataset.path ?? document.activeElement.className"))
+        reached.add(
+            page.page.evaluate("() => document.activeElement.closest('[data-path]')?.dataset.path ?? document.activeElement.className")
+        )
     assert {PRESSURE, RATIO, "nozzle.area_ratio", "performance.ambient", "case.fuel"} <= reached
 
     page.page.set_viewport_size({"width": 700 + 330, "height": 1000})

@@ -23,7 +23,9 @@ POINTS, BAND, BEST = 3, 2, 4
 
 
 def built(pressure: str) -> pk.Performance:
-    nozzle = pk.Nozzle(pk.Chamber(pk.PropellantCase("LOX", "LCH4", mixture_ratio=3.4), pressure=pressure), area_ratio=35, throat_diameter="0.18 m")
+    nozzle = pk.Nozzle(
+        pk.Chamber(pk.PropellantCase("LOX", "LCH4", mixture_ratio=3.4), pressure=pressure), area_ratio=35, throat_diameter="0.18 m"
+    )
     return pk.Performance(nozzle, ambient="sea level")
 
 

@@ -40,10 +40,7 @@ def test_enough_rows_are_reliable():
 
 @pytest.mark.parametrize("row", ROWS, ids=lambda row: f"{row['oxidizer']}-{row['fuel']}-{row['mode']}")
 def test_handbook_rows(row):
-    if (
-        propellant(row["fuel"]) not in pk.propellants().index
-        or propellant(row["oxidizer"]) not in pk.propellants().index
-    ):
+    if propellant(row["fuel"]) not in pk.propellants().index or propellant(row["oxidizer"]) not in pk.propellants().index:
         pytest.skip("the library has no such propellant")
     case = pk.PropellantCase(
         propellant(row["oxidizer"]), propellant(row["fuel"]), mixture_ratio=float(row["OF_mass"]), thermo_basis="tm4513"
@@ -75,9 +72,7 @@ def test_a_choked_throat_at_those_reservoir_values():
     constant = pk.Nozzle(chamber, area_ratio=2, throat_area="1 m2", flow="constant-property").si("mass_flow")
     assert constant == pytest.approx(3872, rel=3e-3)
     assert pk.Nozzle(chamber, area_ratio=2, throat_area="1 m2").si("mass_flow") == pytest.approx(constant, rel=1e-2)
-    given = pk.Chamber.from_gas(
-        pressure="7 MPa", temperature="3558 K", molar_mass="22.19 g/mol", isentropic_exponent=1.151
-    )
+    given = pk.Chamber.from_gas(pressure="7 MPa", temperature="3558 K", molar_mass="22.19 g/mol", isentropic_exponent=1.151)
     assert pk.Nozzle(given, area_ratio=2, throat_area="1 m2").si("mass_flow") == pytest.approx(3872, rel=3e-3)
 
 
@@ -85,9 +80,7 @@ def test_closed_forms_against_constant_property_flow():
     """Mass flow, c*, exit state and CF of a gas of constant properties against the closed forms of NACA Report 1135 and the thrust coefficient."""
     from propkit.physics import gas_dynamics, ideal_nozzle
 
-    gas = pk.Chamber.from_gas(
-        pressure="5 MPa", temperature="3000 K", gas_constant="400 J/(kg K)", isentropic_exponent=1.22
-    )
+    gas = pk.Chamber.from_gas(pressure="5 MPa", temperature="3000 K", gas_constant="400 J/(kg K)", isentropic_exponent=1.22)
     nozzle = pk.Nozzle(gas, area_ratio=25, throat_area="0.01 m2")
     perf = pk.Performance(nozzle, ambient="20 kPa")
     mach = float(gas_dynamics.mach_from_area_ratio(25.0, 1.22))

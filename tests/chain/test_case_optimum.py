@@ -24,8 +24,7 @@ with (Path(__file__).parents[1] / "reference" / "optimum_mixture_ratio.csv").ope
 def impulse(row, ratios, basis):
     """Return the specific impulse [s] at the exit pressure, and the chamber temperature [K], at every mixture ratio."""
     oxidizer, fuel = (
-        pk.Propellant.from_library(NAMES.get(row[role], row[role])).stream(None, None, role)[0]
-        for role in ("oxidizer", "fuel")
+        pk.Propellant.from_library(NAMES.get(row[role], row[role])).stream(None, None, role)[0] for role in ("oxidizer", "fuel")
     )
     chamber = chamber_stage.combust(case_stage.two_streams(oxidizer, fuel, ratios), basis, pressure=1000 * PSI)
     found = nozzle_stage.expand(chamber, flow=row["mode"], freeze_at="chamber", exit_pressure=14.7 * PSI)

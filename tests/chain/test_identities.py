@@ -74,9 +74,7 @@ def test_thrust_relations(pair, pressure, rich, ratio, flow, ambient):
     assert perf.si("specific_impulse") == pytest.approx(
         nozzle.si("characteristic_velocity") * perf.thrust_coefficient / 9.80665, rel=1e-12, abs=1e-9
     )
-    assert perf.si("thrust_vacuum") - perf.si("thrust") == pytest.approx(
-        ambient * nozzle.si("exit_area"), rel=1e-9, abs=1e-6
-    )
+    assert perf.si("thrust_vacuum") - perf.si("thrust") == pytest.approx(ambient * nozzle.si("exit_area"), rel=1e-9, abs=1e-6)
 
 
 @given(pairs, pressures, richness, st.floats(2.0, 100.0))
@@ -161,15 +159,11 @@ def test_infinite_contraction_makes_all_readings_of_the_pressure_agree(chamber):
 
 
 def test_constant_property_combustor_conserves_momentum():
-    gas = pk.Chamber.from_gas(
-        pressure=7e6, temperature=3000, molar_mass=0.022, isentropic_exponent=1.2, contraction_ratio=2
-    )
+    gas = pk.Chamber.from_gas(pressure=7e6, temperature=3000, molar_mass=0.022, isentropic_exponent=1.2, contraction_ratio=2)
     nozzle = pk.Nozzle(gas, area_ratio=10, throat_diameter=0.1)
     inlet = nozzle.inlet
     assert inlet.si("pressure") + inlet.si("density") * inlet.si("velocity") ** 2 == pytest.approx(7e6, rel=1e-12)
-    assert inlet.si("density") * inlet.si("velocity") * 2 * nozzle.si("throat_area") == pytest.approx(
-        nozzle.si("mass_flow"), rel=1e-12
-    )
+    assert inlet.si("density") * inlet.si("velocity") * 2 * nozzle.si("throat_area") == pytest.approx(nozzle.si("mass_flow"), rel=1e-12)
 
 
 @pytest.mark.parametrize("flow", ["shifting", "frozen", "constant-property"])
@@ -179,14 +173,10 @@ def test_a_batch_equals_its_single_cases(flow):
     mixture_ratio = np.linspace(1.2, 5.0, 17)
     pressure = np.geomspace(2e5, 2e7, 17)
     options = {"flow": flow, "freeze_at": "chamber", "exponent": "equilibrium", "area_ratio": 25.0}
-    whole = chamber_stage.combust(
-        case_stage.two_streams(oxidizer, fuel, mixture_ratio), "tm4513+atct", pressure=pressure
-    )
+    whole = chamber_stage.combust(case_stage.two_streams(oxidizer, fuel, mixture_ratio), "tm4513+atct", pressure=pressure)
     batch = nozzle_stage.expand(whole, **options)
     for k in range(17):
-        one = chamber_stage.combust(
-            case_stage.two_streams(oxidizer, fuel, mixture_ratio[k]), "tm4513+atct", pressure=pressure[k]
-        )
+        one = chamber_stage.combust(case_stage.two_streams(oxidizer, fuel, mixture_ratio[k]), "tm4513+atct", pressure=pressure[k])
         single = nozzle_stage.expand(one, **options)
         for name in ("temperature", "pressure", "velocity", "mach"):
             assert getattr(single.exit, name)[0] == pytest.approx(getattr(batch.exit, name)[k], rel=1e-10)
@@ -196,9 +186,9 @@ def test_a_batch_equals_its_single_cases(flow):
 def test_states_along_the_nozzle_close_the_loop(nozzle):
     for ratio in (1.0, 1.0001, 1.5, 10.0, 35.0):
         state = nozzle.at(area_ratio=ratio)
-        assert nozzle.throat.si("density") * nozzle.throat.si("velocity") / (
-            state.si("density") * state.si("velocity")
-        ) == pytest.approx(ratio, rel=1e-10)
+        assert nozzle.throat.si("density") * nozzle.throat.si("velocity") / (state.si("density") * state.si("velocity")) == pytest.approx(
+            ratio, rel=1e-10
+        )
     for ratio in (1.0001, 1.5, 10.0):
         state = nozzle.at(area_ratio=ratio, branch="subsonic")
         assert state.mach < 1
@@ -212,9 +202,7 @@ def test_freezing_at_the_throat_keeps_the_equilibrium_throat(perf):
     assert 0.95 < frozen.throat.mach < 1.0
     assert frozen.exit.si("molar_mass") == pytest.approx(frozen.throat.si("molar_mass"), rel=1e-12)
     late = perf.nozzle.replace(flow="frozen", freeze_at=4.0)
-    assert late.at(area_ratio=3.0).si("temperature") == pytest.approx(
-        shifting.at(area_ratio=3.0).si("temperature"), rel=1e-10
-    )
+    assert late.at(area_ratio=3.0).si("temperature") == pytest.approx(shifting.at(area_ratio=3.0).si("temperature"), rel=1e-10)
     assert late.exit.si("molar_mass") == pytest.approx(shifting.at(area_ratio=4.0).si("molar_mass"), rel=1e-10)
     with pytest.raises(pk.InputError, match="freez|frozen"):
         frozen.at(pressure=frozen.throat.si("pressure") * 0.99)

@@ -75,11 +75,7 @@ def test_water_weighs_what_its_atoms_weigh():
     assert molar_mass(parse_formula("H2O")) == pytest.approx((2 * 1.008 + 15.999) * 1e-3, rel=1e-15)
 
 
-@given(
-    st.dictionaries(
-        st.sampled_from(sorted(ATOMIC_WEIGHTS)), st.floats(1e-8, 1e5, allow_nan=False), min_size=1, max_size=6
-    )
-)
+@given(st.dictionaries(st.sampled_from(sorted(ATOMIC_WEIGHTS)), st.floats(1e-8, 1e5, allow_nan=False), min_size=1, max_size=6))
 def test_text_of_counts_reads_back(counts):
     back = parse_formula(formula_text(counts, digits=17))
     assert back.keys() == counts.keys()

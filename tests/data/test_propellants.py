@@ -59,12 +59,7 @@ def test_row_is_complete_and_sane(name):
         assert row.freezing_point, "a liquid has a freezing point"
         assert row.freezing_point <= row.temperature
         assert row.boiling_point
-    if (
-        row.coolprop_fluid is None
-        and "mixture" not in row.source
-        and row.phase == "liquid"
-        and row.heat_capacity is None
-    ):
+    if row.coolprop_fluid is None and "mixture" not in row.source and row.phase == "liquid" and row.heat_capacity is None:
         assert row.components or name in ("isopropyl nitrate", "n-propyl nitrate", "nitric oxide in NTO")
     if row.heat_capacity_range:
         low, high = row.heat_capacity_range
@@ -282,12 +277,7 @@ def test_bad_mixture_names_file_row_and_field(tmp_path, mixture, field, words):
 
 
 ANYTHING = st.recursive(
-    st.none()
-    | st.booleans()
-    | st.integers()
-    | st.floats()
-    | st.text(max_size=12)
-    | st.sampled_from(["fuel", "C H2", "water"]),
+    st.none() | st.booleans() | st.integers() | st.floats() | st.text(max_size=12) | st.sampled_from(["fuel", "C H2", "water"]),
     lambda inside: st.lists(inside, max_size=3) | st.dictionaries(st.text(max_size=6), inside, max_size=3),
     max_leaves=6,
 )

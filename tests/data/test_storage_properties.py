@@ -48,9 +48,7 @@ def densities(cas, temperature):
     if cas in vdi.index:
         row = vdi.loc[cas]
         t = 1.0 - temperature / row["Tc"]
-        found["VDI"] = float(
-            row["rhoc"] + row["A"] * t**0.35 + row["B"] * t ** (2 / 3) + row["C"] * t + row["D"] * t ** (4 / 3)
-        )
+        found["VDI"] = float(row["rhoc"] + row["A"] * t**0.35 + row["B"] * t ** (2 / 3) + row["C"] * t + row["D"] * t ** (4 / 3))
     return found
 
 

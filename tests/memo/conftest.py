@@ -28,10 +28,16 @@ def small_notebook(tmp_path_factory):
     """A notebook with text, an equation, printed text, a table, hostile HTML and a record."""
     path = tmp_path_factory.mktemp("source") / "small.ipynb"
     cells = [
-        ("markdown", f"# A small memo & more\n\nMass flow $\\dot m = p_0 A_t / c^*$ and {HOSTILE}\n\n$$F = C_F p_0 A_t$$\n\n| a | b |\n|---|---|\n| 1 | 2 |"),
+        (
+            "markdown",
+            f"# A small memo & more\n\nMass flow $\\dot m = p_0 A_t / c^*$ and {HOSTILE}\n\n$$F = C_F p_0 A_t$$\n\n| a | b |\n|---|---|\n| 1 | 2 |",
+        ),
         ("code", SETUP),
         ("code", "print('printed <b>text</b>')\nperf"),
-        ("code", f"from IPython.display import HTML, SVG\nHTML({HOSTILE!r} + '<p style=\"background:url(http://example.invalid/)\">kept</p>')"),
+        (
+            "code",
+            f"from IPython.display import HTML, SVG\nHTML({HOSTILE!r} + '<p style=\"background:url(http://example.invalid/)\">kept</p>')",
+        ),
     ]
     path.write_text(json.dumps(notebook(*cells)))
     return path

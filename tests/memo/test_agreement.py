@@ -51,7 +51,9 @@ def shown(report):
         if section.table is not None and section.name in ("stations", "composition", "propellants"):
             for column in section.table.columns:
                 yield from (
-                    (f"{section.name} {column.name}", numbers.pretty(value, column.digits)) for value in column.values if isinstance(value, float)
+                    (f"{section.name} {column.name}", numbers.pretty(value, column.digits))
+                    for value in column.values
+                    if isinstance(value, float)
                 )
 
 

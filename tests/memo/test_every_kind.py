@@ -16,10 +16,20 @@ def others():
     film = pk.PropellantCase.with_film("LOX", "RP-1", mixture_ratio=2.4, film_fraction=0.08, film_mixture_ratio=0.8)
     yield "film", delivered(pk.Chamber(film, pressure="7 MPa"), area_ratio=20)
     case = OBJECTS["case"]
-    lossy = pk.Nozzle(pk.Chamber(case, pressure="9.7 MPa", cstar_efficiency=0.97), area_ratio=35, throat_diameter="0.18 m", contour=pk.Bell(length=0.8))
+    lossy = pk.Nozzle(
+        pk.Chamber(case, pressure="9.7 MPa", cstar_efficiency=0.97), area_ratio=35, throat_diameter="0.18 m", contour=pk.Bell(length=0.8)
+    )
     asked = {"two-phase": "1 s", "kinetics": 0.99, "boundary layer": {"ratio": 0.985, "source": "test series of an earlier nozzle"}}
     yield "losses", pk.Performance(lossy, ambient="12 km", losses=asked)
-    sized = pk.Nozzle(pk.Chamber(case, pressure="6 MPa"), area_ratio=20, thrust="50 kN", sizing_ambient="vacuum", discharge_coefficient=0.99, flow="frozen", freeze_at="throat")
+    sized = pk.Nozzle(
+        pk.Chamber(case, pressure="6 MPa"),
+        area_ratio=20,
+        thrust="50 kN",
+        sizing_ambient="vacuum",
+        discharge_coefficient=0.99,
+        flow="frozen",
+        freeze_at="throat",
+    )
     yield "sized, frozen", pk.Performance(sized, ambient="vacuum")
     gas = OBJECTS["given gas"]
     yield "gas by mass flow", pk.Performance(pk.Nozzle(gas, exit_pressure="20 kPa", mass_flow="3 kg/s"), ambient="12 km")
@@ -31,8 +41,15 @@ def analyses():
     perf = OBJECTS["performance"]
     yield "study", pk.Study(perf, {"chamber.pressure": ["5 MPa", "6 MPa"]}).run(progress=False)
     yield "uncertainty", pk.Uncertainty(perf, {"chamber.pressure": pk.Normal("1 %")}).run(samples=300, seed=1)
-    yield "reconciliation", pk.Reconciliation(perf, {"thrust": ("140 kN", "2 %"), "mass_flow": ("40 kg/s", "2 %"), "nozzle.throat_diameter": ("96 mm", "0.1 mm")})
-    target = pk.Performance(pk.Nozzle(pk.Chamber(OBJECTS["case"], pressure="5 MPa"), area_ratio=8, throat_diameter="80 mm"), ambient="sea level")
+    yield (
+        "reconciliation",
+        pk.Reconciliation(
+            perf, {"thrust": ("140 kN", "2 %"), "mass_flow": ("40 kg/s", "2 %"), "nozzle.throat_diameter": ("96 mm", "0.1 mm")}
+        ),
+    )
+    target = pk.Performance(
+        pk.Nozzle(pk.Chamber(OBJECTS["case"], pressure="5 MPa"), area_ratio=8, throat_diameter="80 mm"), ambient="sea level"
+    )
     made = demo_firing(target, 1)
     options = {"throat_before": made.throat_before, "throat_after": made.throat_after, "throat_growth": made.throat_growth}
     calibration = {name: f"{100.0 * share:g} %" for name, share in CALIBRATION.items()}

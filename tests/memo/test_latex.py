@@ -37,7 +37,12 @@ def test_latex_of_every_sheet_compiles(tmp_path):
     listed = dict(reports())
     body = "\n\\newpage\n".join(render(report, "latex") for report in listed.values())
     (tmp_path / "all.tex").write_text(f"{HEAD}\n{body}\n\\end{{document}}\n", encoding="utf-8")
-    run = subprocess.run(["pdflatex", "-interaction=nonstopmode", "-halt-on-error", "-no-shell-escape", "all.tex"], cwd=tmp_path, capture_output=True, timeout=300)
+    run = subprocess.run(
+        ["pdflatex", "-interaction=nonstopmode", "-halt-on-error", "-no-shell-escape", "all.tex"],
+        cwd=tmp_path,
+        capture_output=True,
+        timeout=300,
+    )
     log = (tmp_path / "all.log").read_text(encoding="utf-8", errors="replace")
     assert run.returncode == 0, re.findall(r"^!.*\n.*\n.*", log, re.MULTILINE)[:3]
     assert "Missing character" not in log

@@ -33,7 +33,6 @@ class Page(HTMLParser):
             if name.startswith("on"):
                 self.handlers.append(name)
 
-
     def handle_data(self, data):
         if self.in_style:
             self.css.append(data)
@@ -97,7 +96,9 @@ def test_notebook_says_which_cell(memo_folder, tmp_path):
 
 def test_an_edit_and_save_in_the_browser_keeps_the_seal(memo_folder, tmp_path):
     text = (memo_folder / "small.ipynb").read_text()
-    edited = json.dumps(json.loads(text, parse_float=lambda number: int(float(number)) if float(number).is_integer() else float(number)), indent=4)
+    edited = json.dumps(
+        json.loads(text, parse_float=lambda number: int(float(number)) if float(number).is_integer() else float(number)), indent=4
+    )
     assert edited != text
     path = tmp_path / "edited.ipynb"
     path.write_text(edited)
@@ -212,12 +213,16 @@ def test_terminal_text():
 
 
 def test_widget_views_are_left_out():
-    outputs = [{"output_type": "display_data", "data": {"application/vnd.jupyter.widget-view+json": {}, "text/plain": "Slider"}, "metadata": {}}]
+    outputs = [
+        {"output_type": "display_data", "data": {"application/vnd.jupyter.widget-view+json": {}, "text/plain": "Slider"}, "metadata": {}}
+    ]
     made = list(blocks_of({"cells": [{"cell_type": "code", "source": "x", "outputs": outputs}]}))
     assert [block.kind for block in made] == ["code"]
 
 
-@pytest.mark.parametrize("text", ["{}", "{", '{"cells": 3}', '{"cells": [{"cell_type": "code"}]}', "[]", '{"cells": [{"cell_type": "raw", "source": 3}]}'])
+@pytest.mark.parametrize(
+    "text", ["{}", "{", '{"cells": 3}', '{"cells": [{"cell_type": "code"}]}', "[]", '{"cells": [{"cell_type": "raw", "source": 3}]}']
+)
 def test_what_is_no_notebook(tmp_path, text):
     path = tmp_path / "x.ipynb"
     path.write_text(text)
@@ -273,8 +278,16 @@ def test_a_live_plot_leaves_its_drawing_in_page_and_pdf():
 
 def test_a_figure_shown_live_is_told_in_a_line():
     outputs = [
-        {"output_type": "display_data", "data": {"application/vnd.bokehjs_load.v0+json": "", "application/javascript": "x"}, "metadata": {}},
-        {"output_type": "display_data", "data": {"application/vnd.bokehjs_exec.v0+json": "", "text/html": "<div id='a'></div>"}, "metadata": {}},
+        {
+            "output_type": "display_data",
+            "data": {"application/vnd.bokehjs_load.v0+json": "", "application/javascript": "x"},
+            "metadata": {},
+        },
+        {
+            "output_type": "display_data",
+            "data": {"application/vnd.bokehjs_exec.v0+json": "", "text/html": "<div id='a'></div>"},
+            "metadata": {},
+        },
     ]
     made = list(blocks_of({"cells": [{"cell_type": "code", "source": "show(x)", "outputs": outputs}]}))
     assert [block.kind for block in made] == ["code", "markdown"]
@@ -310,7 +323,11 @@ def test_tables_are_set_to_fit():
     assert table["demand"] == pytest.approx(1.1 * (1 + 16) + 4)
     drawings = "".join(f"<img alt='{n}' src='data:image/svg+xml;base64,PHN2Zy8+'>" for n in range(3))
     assert [block["kind"] for block in typeset_blocks(f"<div>{drawings}</div>")] == ["gallery"]
-    text, whole = typeset_blocks("<p>Leads to</p><table><tr><td class='digest'>" + "0123456789abcdef" * 4 + "</td></tr></table><div class='formula'><p>a</p><p>b</p></div>")[0::2]
+    text, whole = typeset_blocks(
+        "<p>Leads to</p><table><tr><td class='digest'>"
+        + "0123456789abcdef" * 4
+        + "</td></tr></table><div class='formula'><p>a</p><p>b</p></div>"
+    )[0::2]
     assert text["leads"]
     assert whole["kind"] == "whole"
 

@@ -30,7 +30,7 @@ def perf():
 
 @pytest.fixture(scope="module")
 def record(perf):
-    return perf.record(title=f"Title {HOSTILE}", author="A. Analyst", purpose=f"Purpose {HOSTILE}", notes="#import \"@preview/x:1.0.0\"")
+    return perf.record(title=f"Title {HOSTILE}", author="A. Analyst", purpose=f"Purpose {HOSTILE}", notes='#import "@preview/x:1.0.0"')
 
 
 @pytest.fixture(scope="module")
@@ -192,7 +192,9 @@ def test_trace_ends_in_inputs_and_data_rows(record):
     origin = record.trace("specific_impulse")
     lines = list(origin.lines())
     ends = [entry for _, entry in lines if not entry.parts]
-    assert all(entry.how.startswith(("given", "default", "data row", "see above", "vacuum", "computed")) for entry in ends), [entry.how for entry in ends]
+    assert all(entry.how.startswith(("given", "default", "data row", "see above", "vacuum", "computed")) for entry in ends), [
+        entry.how for entry in ends
+    ]
     assert any(entry.how.startswith("data row MMH") and entry.source for entry in ends)
     assert len({entry.path for _, entry in lines}) > 15
     assert "<script" not in origin.to_html()
@@ -221,7 +223,9 @@ def test_prices_stand_beside_the_assumptions(perf, files):
 
 
 def page_size(path):
-    found = re.search(r"Page size:\s+([0-9.]+) x ([0-9.]+)", subprocess.run(["pdfinfo", str(path)], capture_output=True, text=True, check=True).stdout)
+    found = re.search(
+        r"Page size:\s+([0-9.]+) x ([0-9.]+)", subprocess.run(["pdfinfo", str(path)], capture_output=True, text=True, check=True).stdout
+    )
     return tuple(round(float(side)) for side in found.groups())
 
 
@@ -255,7 +259,9 @@ def test_a_study_shows_its_sample_as_a_table(perf):
         assert column.values[place] == stored[f"{column.name} thrust"]["value"]
 
 
-@pytest.mark.parametrize("title", ["推力 \u0928\u094d\u200d \u05d0\u05d1 \U0001f680", "12\u202f000\u2009N ½ ≤ Ω", "\U0001f468\u200d\U0001f680" * 20])
+@pytest.mark.parametrize(
+    "title", ["推力 \u0928\u094d\u200d \u05d0\u05d1 \U0001f680", "12\u202f000\u2009N ½ ≤ Ω", "\U0001f468\u200d\U0001f680" * 20]
+)
 def test_letters_of_any_script_can_be_set(perf, tmp_path, title):
     path = perf.nozzle.chamber.case.record(title=f"Title {title}", notes=title).save(tmp_path / "x.pdf")
     fonts = subprocess.run(["pdffonts", str(path)], capture_output=True, text=True, check=True).stdout
@@ -269,6 +275,11 @@ def test_control_characters_of_a_notebook_do_not_stop_the_pdf():
     from propkit.memo.page import NotebookMemo
 
     noise = "".join(map(chr, [*range(32), 0x7F, 0x85, 0xAD, 0x202E, 0xFFFE, 0xE000, 0x10FFFF])) + "end"
-    outputs = [{"output_type": "display_data", "data": {"text/html": f"<p title='{noise}'>{noise}</p><img alt='{noise}' src='x'>"}, "metadata": {}}]
-    cells = [{"cell_type": "markdown", "source": f"# T{noise}\n\n{noise}"}, {"cell_type": "code", "source": f"x{noise}", "outputs": outputs}]
+    outputs = [
+        {"output_type": "display_data", "data": {"text/html": f"<p title='{noise}'>{noise}</p><img alt='{noise}' src='x'>"}, "metadata": {}}
+    ]
+    cells = [
+        {"cell_type": "markdown", "source": f"# T{noise}\n\n{noise}"},
+        {"cell_type": "code", "source": f"x{noise}", "outputs": outputs},
+    ]
     assert notebook_pdf(NotebookMemo(f"T{noise}", f"{noise}.ipynb", tuple(blocks_of({"cells": cells})), (), noise)).startswith(b"%PDF")

@@ -33,7 +33,11 @@ CASES = [
     ("flow", "frozen from the inlet", {"nozzle.flow": "frozen"}),
     ("flow", "constant properties", {"nozzle.flow": "constant-property"}),
     ("contraction", "ratio 3, pressure at the injector", {"chamber.contraction_ratio": 3}),
-    ("contraction", "ratio 3, pressure static at the inlet", {"chamber.contraction_ratio": 3, "chamber.pressure_at": "nozzle inlet static"}),
+    (
+        "contraction",
+        "ratio 3, pressure static at the inlet",
+        {"chamber.contraction_ratio": 3, "chamber.pressure_at": "nozzle inlet static"},
+    ),
     ("basis", "tm4513", {"case.thermo_basis": "tm4513"}),
     ("cstar-efficiency", "0.97", {"chamber.cstar_efficiency": 0.97}),
     ("discharge", "0.98", {"nozzle.discharge_coefficient": 0.98}),
@@ -66,7 +70,11 @@ def test_finite_contraction_costs_what_published_trials_say():
     case = pk.PropellantCase("NTO", "MMH", mixture_ratio=1.9)
     for ratio, share in ((2.0, 0.9508), (3.0, 0.9778)):
         nozzle = pk.Nozzle(pk.Chamber(case, pressure="2.4 MPa", contraction_ratio=ratio), area_ratio=20, throat_diameter="0.1 m")
-        price = next(p for p in pk.Performance(nozzle, ambient="vacuum").assumptions.of("contraction").prices if p.alternative == "infinite contraction")
+        price = next(
+            p
+            for p in pk.Performance(nozzle, ambient="vacuum").assumptions.of("contraction").prices
+            if p.alternative == "infinite contraction"
+        )
         assert 1.0 / (1.0 + price.mass_flow) == pytest.approx(share, abs=1e-4)
 
 
@@ -81,7 +89,15 @@ def test_the_largest_comes_first_and_every_entry_is_an_assumption(perf):
         assert entry.statement.endswith(".")
         assert entry.origin in ("given", "default", "method")
         assert [price.size for price in entry.prices] == sorted((price.size for price in entry.prices), reverse=True)
-    assert {entry.key for entry in found} >= {"basis", "ideal-gas", "no-condensation", "contraction", "flow", "one-dimensional", "full-flow"}
+    assert {entry.key for entry in found} >= {
+        "basis",
+        "ideal-gas",
+        "no-condensation",
+        "contraction",
+        "flow",
+        "one-dimensional",
+        "full-flow",
+    }
     assert not found.unpriced
     with pytest.raises(KeyError, match="contraction"):
         found.of("luck")

@@ -114,18 +114,14 @@ OTHERS = [
         "gas_constant",
     ),
     (
-        lambda: pk.Chamber.from_gas(
-            pressure=7e6, temperature=3000, isentropic_exponent=1.2, molar_mass=0.02, gas_constant=400
-        ),
+        lambda: pk.Chamber.from_gas(pressure=7e6, temperature=3000, isentropic_exponent=1.2, molar_mass=0.02, gas_constant=400),
         "molar_mass",
         "one of the two",
     ),
 ]
 
 
-@pytest.mark.parametrize(
-    ("make", "name", "words"), OTHERS, ids=[f"{name}-{index}" for index, (_, name, _) in enumerate(OTHERS)]
-)
+@pytest.mark.parametrize(("make", "name", "words"), OTHERS, ids=[f"{name}-{index}" for index, (_, name, _) in enumerate(OTHERS)])
 def test_other_bad_inputs_name_themselves(make, name, words):
     with pytest.raises(pk.InputError) as caught:
         make()
@@ -237,18 +233,14 @@ def test_at_refuses_what_no_state_has(nozzle):
 
 
 def test_a_gas_hotter_than_the_data_is_a_range_error():
-    hot = pk.Propellant(
-        name="hot", formula="H2", enthalpy="900 kJ/mol", density="1 kg/m3", temperature="298.15 K", role="fuel"
-    )
+    hot = pk.Propellant(name="hot", formula="H2", enthalpy="900 kJ/mol", density="1 kg/m3", temperature="298.15 K", role="fuel")
     with pytest.raises(pk.RangeError) as caught:
         pk.Chamber(pk.PropellantCase("GOX", hot, mixture_ratio=1.0), pressure="1 MPa")
     assert caught.value.data["temperature"] > 0
 
 
 def _fuel_with(formula):
-    return pk.Propellant(
-        name="X", formula=formula, enthalpy="-24 kJ/mol", density="810 kg/m3", temperature="298.15 K", role="fuel"
-    )
+    return pk.Propellant(name="X", formula=formula, enthalpy="-24 kJ/mol", density="810 kg/m3", temperature="298.15 K", role="fuel")
 
 
 def test_an_element_without_species_data_is_refused_in_words():

@@ -107,9 +107,7 @@ def test_identity_copies_pickle_recipe_and_code():
     own = pk.Propellant(name="mine", formula="C H2", enthalpy="-20 kJ/mol", density=800.0)
     for made in (
         pk.blend({"AP": 0.70, "Al": 0.18, "HTPB": 0.12}, name="a solid"),
-        pk.blend(
-            {own: 0.5, "RP-1": 0.5}, by="volume", mixing_enthalpy="-1 kJ/kg", role="fuel", hazard="burns", source="mine"
-        ),
+        pk.blend({own: 0.5, "RP-1": 0.5}, by="volume", mixing_enthalpy="-1 kJ/kg", role="fuel", hazard="burns", source="mine"),
         pk.blend({pk.blend({"hydrazine": 0.5, "UDMH": 0.5}): 0.5, "MMH": 0.5}),
     ):
         again = eval(repr(made), {"pk": pk})

@@ -33,9 +33,7 @@ def test_the_definitions():
 
 def test_percent_is_read_in_percent():
     for value in (72, "72 %", "72 percent", 72.0):
-        assert pk.PropellantCase("LOX", "RP-1", oxidizer_percent=value).mixture_ratio == pytest.approx(
-            72 / 28, rel=1e-12
-        )
+        assert pk.PropellantCase("LOX", "RP-1", oxidizer_percent=value).mixture_ratio == pytest.approx(72 / 28, rel=1e-12)
     for value in (0, 100, -3, "7 m", "72"):
         with pytest.raises(pk.InputError, match="oxidizer_percent"):
             pk.PropellantCase("LOX", "RP-1", oxidizer_percent=value)
@@ -83,18 +81,12 @@ def test_an_additive_is_a_share_of_the_whole():
     plain = pk.PropellantCase("LOX", "RP-1", mixture_ratio=2.5)
     case = pk.PropellantCase("LOX", "RP-1", mixture_ratio=2.5, additives={"water": 0.06})
     water = pk.Propellant.from_library("water")
-    assert case.si("enthalpy") == pytest.approx(
-        0.94 * plain.si("enthalpy") + 0.06 * water.si("specific_enthalpy"), rel=1e-12
-    )
-    assert 1 / case.si("bulk_density") == pytest.approx(
-        0.94 / plain.si("bulk_density") + 0.06 / water.si("density"), rel=1e-4
-    )
+    assert case.si("enthalpy") == pytest.approx(0.94 * plain.si("enthalpy") + 0.06 * water.si("specific_enthalpy"), rel=1e-12)
+    assert 1 / case.si("bulk_density") == pytest.approx(0.94 / plain.si("bulk_density") + 0.06 / water.si("density"), rel=1e-4)
     for symbol in ("C", "H", "O"):
         expected = 0.94 * plain.elements[symbol] + 0.06 * water.elements.get(symbol, 0.0) / water.si("molar_mass")
         assert case.elements[symbol] == pytest.approx(expected, rel=1e-12)
-    perf = pk.Performance(
-        pk.Nozzle(pk.Chamber(case, pressure="7 MPa"), area_ratio=20, mass_flow="100 kg/s"), ambient="vacuum"
-    )
+    perf = pk.Performance(pk.Nozzle(pk.Chamber(case, pressure="7 MPa"), area_ratio=20, mass_flow="100 kg/s"), ambient="vacuum")
     assert perf.si("oxidizer_mass_flow") + perf.si("fuel_mass_flow") == pytest.approx(94.0, rel=1e-12)
     assert perf.si("oxidizer_mass_flow") / perf.si("fuel_mass_flow") == pytest.approx(2.5, rel=1e-12)
     assert perf.chamber.si("temperature") < pk.Chamber(plain, pressure="7 MPa").si("temperature")
@@ -110,9 +102,7 @@ def test_additives_survive_recipe_code_and_pickle():
         assert "seed" in str(case) or "water" in str(case)
 
 
-@pytest.mark.parametrize(
-    "additives", [{"water": 0}, {"water": 1.0}, {"water": 0.6, "AP": 0.5}, {"watr": 0.1}, "water", 3]
-)
+@pytest.mark.parametrize("additives", [{"water": 0}, {"water": 1.0}, {"water": 0.6, "AP": 0.5}, {"watr": 0.1}, "water", 3])
 def test_bad_additives_are_refused(additives):
     with pytest.raises(pk.InputError, match="additives"):
         pk.PropellantCase("LOX", "RP-1", mixture_ratio=2.5, additives=additives)
@@ -142,9 +132,7 @@ def test_a_gas_generator_points_to_a_measured_gas(pair):
     assert "pk.Chamber.from_gas" in doubt
     chamber = pk.Chamber(pk.PropellantCase(*pair, equivalence_ratio=10), pressure="5 MPa")
     assert "fuel-rich" in [entry.code for entry in chamber.warnings]
-    assert not [
-        entry for entry in pk.PropellantCase(*pair, equivalence_ratio=1.8).warnings if entry.code == "fuel-rich"
-    ]
+    assert not [entry for entry in pk.PropellantCase(*pair, equivalence_ratio=1.8).warnings if entry.code == "fuel-rich"]
 
 
 def test_supersaturated_carbon_is_told_and_forms_where_it_may():

@@ -30,18 +30,14 @@ def test_composite_at_7_mpa():
     assert gas_moles == pytest.approx(34.556, abs=6e-4)
     alumina = chamber.composition["Al2O3 (liquid)"]
     assert alumina / (1.0 - alumina) * gas_moles == pytest.approx(3.1146, abs=6e-5)  # composition is over all moles
-    assert chamber.si("density") == pytest.approx(
-        7e6 / (chamber.si("gas_constant") * chamber.si("temperature")), rel=1e-12
-    )
+    assert chamber.si("density") == pytest.approx(7e6 / (chamber.si("gas_constant") * chamber.si("temperature")), rel=1e-12)
 
 
 def test_condensed_mass_fraction_at_the_stations():
     flow = nozzle(composite())
     fractions = flow.stations["condensed_mass_fraction"]
     chamber = flow.chamber
-    alumina = (
-        chamber.composition["Al2O3 (liquid)"] / (1.0 - chamber.composition["Al2O3 (liquid)"]) / chamber.si("molar_mass")
-    )
+    alumina = chamber.composition["Al2O3 (liquid)"] / (1.0 - chamber.composition["Al2O3 (liquid)"]) / chamber.si("molar_mass")
     assert fractions.iloc[0] == pytest.approx(alumina * 0.1019600768, rel=1e-5)
     assert fractions.is_monotonic_increasing
     assert "condensed_mass_fraction" in flow.exit.names()
@@ -82,9 +78,7 @@ def test_throat_at_a_phase_boundary_tells_both_mach_numbers():
         state = flow.at(pressure=pressure * factor)
         assert state.si("density") * state.si("velocity") < flux * (1 + 1e-12)
     for name in ("mass_flow", "characteristic_velocity"):
-        assert all(
-            step.residual is None or step.residual < 1e-9 for step in flow.working(name).steps if step.name != "mach"
-        )
+        assert all(step.residual is None or step.residual < 1e-9 for step in flow.working(name).steps if step.name != "mach")
 
 
 def test_a_chamber_on_a_plateau_has_no_equilibrium_heat_capacity():
@@ -156,17 +150,13 @@ def test_graphite_of_a_fuel_rich_kerosene_case_is_canteras():
 
 def test_onset_of_graphite_is_where_the_gas_alone_is_just_saturated():
     oxidizer, fuel = (
-        pk.Propellant.from_library(name).stream(None, None, role)[0]
-        for name, role in (("LOX", "oxidizer"), ("RP-1", "fuel"))
+        pk.Propellant.from_library(name).stream(None, None, role)[0] for name, role in (("LOX", "oxidizer"), ("RP-1", "fuel"))
     )
     ratios = np.linspace(0.5, 1.3, 81)
     both = chamber_stage.combust(case_stage.two_streams(oxidizer, fuel, ratios, condensed=True), "tm4513", pressure=7e6)
     gas = chamber_stage.combust(case_stage.two_streams(oxidizer, fuel, ratios), "tm4513", pressure=7e6)
     forms = both.injector.amounts[:, both.table.names.index("C (graphite)")] > 0.0
-    told = [
-        any(code == "supersaturation" and "carbon" in text for text, code, _ in gas.doubts(k))
-        for k in range(len(ratios))
-    ]
+    told = [any(code == "supersaturation" and "carbon" in text for text, code, _ in gas.doubts(k)) for k in range(len(ratios))]
     assert forms[0]
     assert not forms[-1]
     assert list(forms) == told

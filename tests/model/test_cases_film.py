@@ -13,9 +13,7 @@ from propkit.physics import expansion, stoichiometry
 
 
 def film(**inputs):
-    return pk.PropellantCase.with_film(
-        "LOX", "RP-1", **{"mixture_ratio": 2.4, "film_fraction": 0.08, "film_mixture_ratio": 0.8, **inputs}
-    )
+    return pk.PropellantCase.with_film("LOX", "RP-1", **{"mixture_ratio": 2.4, "film_fraction": 0.08, "film_mixture_ratio": 0.8, **inputs})
 
 
 def perf(case, ambient="vacuum", **inputs):
@@ -43,9 +41,7 @@ def test_each_stream_is_solved_at_its_own_mixture_ratio(flow):
             throat_diameter=0.1,
             flow=flow,
         )
-        assert both.chamber.held.injector.temperature[place] == pytest.approx(
-            alone.chamber.si("temperature"), rel=1e-10
-        )
+        assert both.chamber.held.injector.temperature[place] == pytest.approx(alone.chamber.si("temperature"), rel=1e-10)
         for station in ("throat", "exit"):
             state = getattr(both.nozzle.held, station)
             stream = both.nozzle.held.streams_at(state)
@@ -85,10 +81,7 @@ def test_it_is_near_the_mass_mean_of_separate_nozzles():
     ratios = (both.case.core_mixture_ratio, 0.8)
     alone = [perf(pk.PropellantCase("LOX", "RP-1", mixture_ratio=ratio)) for ratio in ratios]
     for name in ("specific_impulse", "chamber.characteristic_velocity"):
-        mean = sum(
-            w * (one.si(name) if "." not in name else one.chamber.si(name[8:]))
-            for w, one in zip((0.92, 0.08), alone, strict=True)
-        )
+        mean = sum(w * (one.si(name) if "." not in name else one.chamber.si(name[8:])) for w, one in zip((0.92, 0.08), alone, strict=True))
         here = both.si(name) if "." not in name else both.chamber.si(name[8:])
         assert here == pytest.approx(mean, rel=2e-4)
 

@@ -28,9 +28,7 @@ def cold(gas="GN2", pressure="2 MPa", ratio=50, **inputs):
 CASES = [
     bed(0.55),
     pk.PropellantCase.monopropellant("HTP-90", propellant_temperature="300 K"),
-    pk.PropellantCase.monopropellant(
-        pk.blend({"AP": 0.70, "Al": 0.18, "HTPB": 0.12}), condensed=True, thermo_basis="tm4513"
-    ),
+    pk.PropellantCase.monopropellant(pk.blend({"AP": 0.70, "Al": 0.18, "HTPB": 0.12}), condensed=True, thermo_basis="tm4513"),
     pk.PropellantCase.cold_gas("GN2", temperature="293 K", tank_pressure="30 MPa"),
     pk.PropellantCase.cold_gas("air"),
 ]
@@ -49,9 +47,7 @@ def test_decomposed_hydrazine(x, temperature, pressure):
     assert chamber.si("isentropic_exponent") == chamber.si("frozen_isentropic_exponent")
 
 
-@given(
-    st.floats(0.0, 1.0), st.floats(1.1, 10.0), st.sampled_from(["injector", "nozzle stagnation", "nozzle inlet static"])
-)
+@given(st.floats(0.0, 1.0), st.floats(1.1, 10.0), st.sampled_from(["injector", "nozzle stagnation", "nozzle inlet static"]))
 def test_a_bed_of_finite_area_conserves_mass_momentum_and_energy(x, contraction, where):
     chamber = pk.Chamber(bed(x), pressure="1.5 MPa", contraction_ratio=contraction, pressure_at=where)
     held = chamber.held
@@ -130,9 +126,7 @@ def test_bulk_density_and_density_impulse_are_of_the_one_propellant():
     nozzle = pk.Nozzle(pk.Chamber(bed(0.5), pressure="2 MPa"), area_ratio=40, throat_diameter="5 mm")
     perf = pk.Performance(nozzle, ambient="vacuum")
     assert perf.case.si("bulk_density") == pytest.approx(1003.6, rel=1e-3)
-    assert perf.si("density_impulse") == pytest.approx(
-        perf.si("specific_impulse") * 9.80665 * perf.case.si("bulk_density"), rel=1e-12
-    )
+    assert perf.si("density_impulse") == pytest.approx(perf.si("specific_impulse") * 9.80665 * perf.case.si("bulk_density"), rel=1e-12)
     for name in ("oxidizer_mass_flow", "fuel_mass_flow"):
         with pytest.raises(pk.NotAvailableError, match="no mixture ratio"):
             getattr(perf, name)
@@ -144,22 +138,16 @@ def test_bulk_density_and_density_impulse_are_of_the_one_propellant():
 # -- cold gas
 
 
-@pytest.mark.parametrize(
-    "gas", ["GN2", "GHe", "argon", "krypton", "xenon", "neon", "CO2", "air", "GH2", "butane-gas", "N2O-gas"]
-)
+@pytest.mark.parametrize("gas", ["GN2", "GHe", "argon", "krypton", "xenon", "neon", "CO2", "air", "GH2", "butane-gas", "N2O-gas"])
 def test_cold_gases_expand_at_their_own_temperature(gas):
     nozzle = cold(gas, "1 MPa", temperature="310 K")
     assert nozzle.chamber.si("temperature") == pytest.approx(310.0, rel=1e-12)
     assert nozzle.exit.si("temperature") < 200.0
     rest = nozzle.inlet
-    assert nozzle.exit.si("enthalpy") + nozzle.exit.si("velocity") ** 2 / 2 == pytest.approx(
-        rest.si("enthalpy"), abs=1e-6 * R * 310
-    )
+    assert nozzle.exit.si("enthalpy") + nozzle.exit.si("velocity") ** 2 / 2 == pytest.approx(rest.si("enthalpy"), abs=1e-6 * R * 310)
 
 
-@pytest.mark.parametrize(
-    ("gas", "gamma", "mass"), [("GHe", 5 / 3, 4.002602e-3), ("argon", 5 / 3, 39.95e-3), ("xenon", 5 / 3, 131.293e-3)]
-)
+@pytest.mark.parametrize(("gas", "gamma", "mass"), [("GHe", 5 / 3, 4.002602e-3), ("argon", 5 / 3, 39.95e-3), ("xenon", 5 / 3, 131.293e-3)])
 def test_monatomic_gas_has_the_closed_forms(gas, gamma, mass):
     """NACA Report 1135: c* = sqrt(R T) / Gamma; 1e-5 for the rounding of atomic weights and of the heat capacity of the data."""
     nozzle = cold(gas, temperature="300 K")
@@ -200,9 +188,7 @@ def test_saturation_begins_where_the_vapour_pressure_is_that_of_the_fluid():
     ratio = float(doubt.partition("area ratio ")[2].partition(";")[0])
     state = nozzle.at(area_ratio=ratio)
     if state.si("temperature") > 216.6:
-        assert coolprop.PropsSI("P", "T", state.si("temperature"), "Q", 1, "CO2") == pytest.approx(
-            state.si("pressure"), rel=0.03
-        )
+        assert coolprop.PropsSI("P", "T", state.si("temperature"), "Q", 1, "CO2") == pytest.approx(state.si("pressure"), rel=0.03)
 
 
 def test_without_coolprop_it_is_said(monkeypatch):
@@ -247,9 +233,7 @@ def test_what_is_no_gas_is_refused(gas):
 
 @pytest.mark.parametrize("case", CASES, ids=lambda case: case.subtitle())
 def test_recipe_code_and_pickle_rebuild_the_chain(case):
-    perf = pk.Performance(
-        pk.Nozzle(pk.Chamber(case, pressure="2 MPa"), area_ratio=8, throat_diameter="20 mm"), ambient="vacuum"
-    )
+    perf = pk.Performance(pk.Nozzle(pk.Chamber(case, pressure="2 MPa"), area_ratio=8, throat_diameter="20 mm"), ambient="vacuum")
     assert isinstance(case, pk.PropellantCase)
     assert from_recipe(perf.recipe()) == perf
     assert eval(repr(perf), {"pk": pk}) == perf
@@ -265,9 +249,7 @@ def test_recipe_code_and_pickle_rebuild_the_chain(case):
 
 @pytest.mark.parametrize("case", CASES, ids=lambda case: case.subtitle())
 def test_every_result_has_a_working_that_holds(case):
-    perf = pk.Performance(
-        pk.Nozzle(pk.Chamber(case, pressure="2 MPa"), area_ratio=8, throat_diameter="20 mm"), ambient="vacuum"
-    )
+    perf = pk.Performance(pk.Nozzle(pk.Chamber(case, pressure="2 MPa"), area_ratio=8, throat_diameter="20 mm"), ambient="vacuum")
     for link in perf.chain():
         for name in (*link.declared_results, *link.resolved()):
             if not link.has(name) or (link is case and name == "bulk_density" and "gas" not in case.declared_inputs):
@@ -278,9 +260,7 @@ def test_every_result_has_a_working_that_holds(case):
 
 
 def test_studies_and_replace_reach_the_inputs():
-    perf = pk.Performance(
-        pk.Nozzle(pk.Chamber(bed(0.5), pressure="2 MPa"), area_ratio=40, throat_diameter="5 mm"), ambient="vacuum"
-    )
+    perf = pk.Performance(pk.Nozzle(pk.Chamber(bed(0.5), pressure="2 MPa"), area_ratio=40, throat_diameter="5 mm"), ambient="vacuum")
     warmer = perf.replace({"case.ammonia_dissociation": 0.2})
     assert warmer.chamber.si("temperature") > perf.chamber.si("temperature")
     gas = pk.Performance(cold("GN2"), ambient="vacuum")
@@ -290,9 +270,7 @@ def test_studies_and_replace_reach_the_inputs():
 
 @pytest.mark.parametrize("case", CASES[:4], ids=lambda case: case.subtitle())
 def test_a_study_in_one_batch_gives_the_numbers_of_the_objects(case):
-    perf = pk.Performance(
-        pk.Nozzle(pk.Chamber(case, pressure="2 MPa"), area_ratio=8, throat_diameter="20 mm"), ambient="vacuum"
-    )
+    perf = pk.Performance(pk.Nozzle(pk.Chamber(case, pressure="2 MPa"), area_ratio=8, throat_diameter="20 mm"), ambient="vacuum")
     pressures = [1e6, 2e6, 3e6]
     frame = pk.Study(perf, {"chamber.pressure": pressures}).run().frame
     for pressure, row in zip(pressures, frame.itertuples(), strict=True):

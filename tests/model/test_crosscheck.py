@@ -32,7 +32,12 @@ def test_it_says_why_it_does_not_compare(perf):
         closed.cross_check()
     assert "not compared" in crosscheck.one_line(closed)
     cold = pk.Performance(
-        pk.Nozzle(pk.Chamber(pk.PropellantCase("LOX", "LH2", mixture_ratio=2), pressure="7 MPa"), area_ratio=800, throat_diameter=0.1, flow="frozen"),
+        pk.Nozzle(
+            pk.Chamber(pk.PropellantCase("LOX", "LH2", mixture_ratio=2), pressure="7 MPa"),
+            area_ratio=800,
+            throat_diameter=0.1,
+            flow="frozen",
+        ),
         ambient="vacuum",
     )
     assert any(doubt.code == "data-range" for doubt in cold.warnings)

@@ -28,10 +28,7 @@ def variants(name, role):
     """Return the propellant with its own enthalpy and with each of the others."""
     row = ROWS[name]
     listed = (row.molar_enthalpy, *(other.molar_enthalpy for other in row.other_values))
-    return [
-        pk.Propellant(formula=_exact(row), enthalpy=f"{value / row.molar_mass!r} J/kg", role=role, name=name)
-        for value in listed
-    ]
+    return [pk.Propellant(formula=_exact(row), enthalpy=f"{value / row.molar_mass!r} J/kg", role=role, name=name) for value in listed]
 
 
 def _exact(row):

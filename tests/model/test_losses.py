@@ -86,6 +86,7 @@ def test_kinetics_is_estimated_between_shifting_and_frozen(nozzle):
 
 def test_the_boundary_layer_is_estimated_along_the_contour(nozzle):
     """Common practice, no source: 0.5 to 2 % for a thrust chamber of this size; it grows as the throat shrinks."""
+
     def lost(one, value="estimate"):
         return 1.0 - pk.Performance(one, ambient="vacuum", losses={"boundary layer": value}).ledger.loc["boundary layer", "ratio"]
 
@@ -112,7 +113,9 @@ def test_losses_are_part_of_the_recipe(nozzle):
     assert from_recipe(perf.recipe()) == perf
     assert eval(repr(perf), {"pk": pk}) == perf
     assert perf == perf.replace(losses=dict(reversed(ASKED.items())))
-    assert pk.Performance(nozzle, ambient=0.0, losses={"kinetics": "99 %"}) == pk.Performance(nozzle, ambient=0.0, losses={"kinetics": 0.99})
+    assert pk.Performance(nozzle, ambient=0.0, losses={"kinetics": "99 %"}) == pk.Performance(
+        nozzle, ambient=0.0, losses={"kinetics": 0.99}
+    )
     assert perf.losses["kinetics"] == 0.99
     assert perf.record(title="losses").verify().ok
 
@@ -151,7 +154,9 @@ def test_impossible_losses_are_refused_in_words(case, losses, words):
     assert len(caught.value.problems) == 2
 
 
-@pytest.mark.parametrize("losses", [ASKED | {"two-phase": 0.999}, {"kinetics": "estimate"}, {"kinetics": "3 s"}], ids=["ratios", "estimate", "decrement"])
+@pytest.mark.parametrize(
+    "losses", [ASKED | {"two-phase": 0.999}, {"kinetics": "estimate"}, {"kinetics": "3 s"}], ids=["ratios", "estimate", "decrement"]
+)
 def test_a_batch_takes_the_losses_as_single_objects_do(nozzle, losses):
     from propkit.study.evaluation import function_of
 

@@ -170,9 +170,7 @@ def test_results_and_frames_agree(perf):
 
 
 def test_lazy_results_are_safe_in_threads(case):
-    perf = pk.Performance(
-        pk.Nozzle(pk.Chamber(case, pressure="5 MPa"), area_ratio=20, throat_diameter=0.1), ambient="vacuum"
-    )
+    perf = pk.Performance(pk.Nozzle(pk.Chamber(case, pressure="5 MPa"), area_ratio=20, throat_diameter=0.1), ambient="vacuum")
     seen, start = [], threading.Barrier(6)
 
     def look():
@@ -200,9 +198,7 @@ def test_a_recipe_that_names_anything_else_is_refused():
 
 
 def test_every_result_has_a_working_that_holds(perf):
-    contracted = perf.replace(
-        {"chamber.contraction_ratio": 2.5, "chamber.cstar_efficiency": 0.96, "nozzle.discharge_coefficient": 0.98}
-    )
+    contracted = perf.replace({"chamber.contraction_ratio": 2.5, "chamber.cstar_efficiency": 0.96, "nozzle.discharge_coefficient": 0.98})
     for one in (
         perf,
         contracted,
@@ -227,16 +223,15 @@ def test_the_written_relation_gives_the_result(perf):
     from propkit.model import terms
     from propkit.physics.relations import RELATIONS
 
-    one = perf.replace(
-        {"chamber.contraction_ratio": 2.5, "chamber.cstar_efficiency": 0.96, "nozzle.discharge_coefficient": 0.98}
-    )
+    one = perf.replace({"chamber.contraction_ratio": 2.5, "chamber.cstar_efficiency": 0.96, "nozzle.discharge_coefficient": 0.98})
     checked = 0
     for link in one.chain():
         for name in (*link.declared_results, *link.resolved()):
             key = terms.key_for(link, name)
             if link.has(name) and key in RELATIONS:
-                assert RELATIONS[key].evaluate(terms.values_for(link, key, name)) == pytest.approx(
-                    link.si(name), rel=1e-12
-                ), (link.kind, name)
+                assert RELATIONS[key].evaluate(terms.values_for(link, key, name)) == pytest.approx(link.si(name), rel=1e-12), (
+                    link.kind,
+                    name,
+                )
                 checked += 1
     assert checked >= 22

@@ -131,9 +131,7 @@ def test_equality_hash_copies_pickle_and_recipe(file):
 
 
 def test_equal_means_same_values_however_typed():
-    assert pk.Propellant(**LOT) == pk.Propellant(
-        **{**LOT, "density": 810.0, "temperature": "25 °C", "formula": "C  H1.95"}
-    )
+    assert pk.Propellant(**LOT) == pk.Propellant(**{**LOT, "density": 810.0, "temperature": "25 °C", "formula": "C  H1.95"})
     assert pk.Propellant(**LOT) == pk.Propellant(**{**LOT, "name": "another name"})
     assert pk.Propellant(**LOT) != pk.Propellant(**{**LOT, "density": 811.0})
 
@@ -151,9 +149,7 @@ def test_it_is_immutable():
 
 
 def test_library_values_can_be_replaced_by_better_ones():
-    lot = pk.Propellant.from_library("RP-1").replace(
-        density="812 kg/m3", enthalpy="-1770 kJ/kg", name="lot 9", role="fuel"
-    )
+    lot = pk.Propellant.from_library("RP-1").replace(density="812 kg/m3", enthalpy="-1770 kJ/kg", name="lot 9", role="fuel")
     assert lot.density.magnitude == 812.0
     assert lot.si("specific_enthalpy") == pytest.approx(-1.77e6, rel=1e-14)
     assert lot.source == "as given"

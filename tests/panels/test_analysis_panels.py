@@ -8,9 +8,7 @@ from propkit.reconcile.firing_demo import HEADERS, demo_firing, demo_target
 pytest.importorskip("ipywidgets")
 
 TARGET = demo_target()
-FIRING = pk.HotFire(
-    TARGET, demo_firing(TARGET, 1).table, {name: head.partition(" [")[0] for name, head in HEADERS.items()}
-)
+FIRING = pk.HotFire(TARGET, demo_firing(TARGET, 1).table, {name: head.partition(" [")[0] for name, head in HEADERS.items()})
 GAS = pk.Chamber.from_gas(pressure="7 MPa", temperature="3400 K", molar_mass="22 g/mol", isentropic_exponent=1.2)
 PERF = pk.Performance(pk.Nozzle(GAS, area_ratio=20, throat_diameter="0.2 m"), ambient="sea level")
 

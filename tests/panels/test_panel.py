@@ -99,7 +99,14 @@ def test_every_declared_input_has_a_control_with_its_own_label(panel: Any) -> No
     for link in panel.value.chain():
         for name, declared in link.declared_inputs.items():
             path = f"{link.kind}.{name}"
-            group = next((entry["group"] for entry in shown.values() if "group" in entry and name in dict(entry["group"]["members"]) and entry["path"].startswith(link.kind)), None)
+            group = next(
+                (
+                    entry["group"]
+                    for entry in shown.values()
+                    if "group" in entry and name in dict(entry["group"]["members"]) and entry["path"].startswith(link.kind)
+                ),
+                None,
+            )
             if name == link.upstream_input or path in hidden or (group and group["member"] != name):
                 continue
             assert path in shown, path
@@ -115,7 +122,9 @@ def test_choosing_a_propellant_of_the_library(panel: Any) -> None:
 
 
 def test_a_propellant_of_ones_own_stays_until_another_is_chosen(perf: pk.Performance) -> None:
-    own = pk.Propellant(name="lot 7", formula="C H1.95", enthalpy="-24.717 kJ/mol", density="810 kg/m3", temperature="298.15 K", role="fuel")
+    own = pk.Propellant(
+        name="lot 7", formula="C H1.95", enthalpy="-24.717 kJ/mol", density="810 kg/m3", temperature="298.15 K", role="fuel"
+    )
     panel = perf.replace({"case.fuel": own}).panel()
     assert control(panel, "case.fuel")["choice"] == "as given"
     page(panel, do="slide", path=PRESSURE, at=8.0)
@@ -184,7 +193,9 @@ def test_equivalence_ratio_in_place_of_mixture_ratio(panel: Any, perf: pk.Perfor
         ("nozzle.throat_diameter", "3 kg", "kind"),
     ],
 )
-def test_an_error_stands_beside_its_control_and_the_last_good_result_stays(panel: Any, perf: pk.Performance, path: str, text: str, word: str) -> None:
+def test_an_error_stands_beside_its_control_and_the_last_good_result_stays(
+    panel: Any, perf: pk.Performance, path: str, text: str, word: str
+) -> None:
     before = panel.content()["results"]
     page(panel, do="type", path=path, text=text)
     shown = control(panel, path)
@@ -236,7 +247,9 @@ def test_resetting_a_refused_control_shows_the_accepted_value(panel: Any, perf: 
     assert panel.value is perf
 
 
-def test_what_nobody_foresaw_is_shown_and_logged(panel: Any, perf: pk.Performance, monkeypatch: pytest.MonkeyPatch, caplog: pytest.LogCaptureFixture) -> None:
+def test_what_nobody_foresaw_is_shown_and_logged(
+    panel: Any, perf: pk.Performance, monkeypatch: pytest.MonkeyPatch, caplog: pytest.LogCaptureFixture
+) -> None:
     def broken(*_: Any, **__: Any) -> Any:
         raise ZeroDivisionError("a bug")
 

@@ -20,7 +20,11 @@ FULL = {"separation_margin": (1, None)}
 
 
 def built(pressure: Any = "9.7 MPa", ratio: Any = 3.4, area_ratio: Any = 35) -> pk.Performance:
-    nozzle = pk.Nozzle(pk.Chamber(pk.PropellantCase("LOX", "LCH4", mixture_ratio=ratio), pressure=pressure), area_ratio=area_ratio, throat_diameter="0.18 m")
+    nozzle = pk.Nozzle(
+        pk.Chamber(pk.PropellantCase("LOX", "LCH4", mixture_ratio=ratio), pressure=pressure),
+        area_ratio=area_ratio,
+        throat_diameter="0.18 m",
+    )
     return pk.Performance(nozzle, ambient="sea level")
 
 
@@ -99,7 +103,9 @@ def test_a_move_of_the_slider_solves_every_design_anew(at: float) -> None:
     assert len(panel.value) == 2500
     # from other first guesses: the quick engine promises 1e-8
     for name in wanted.results:
-        np.testing.assert_allclose(panel.value.values(name), wanted.values(name), rtol=1e-8, atol=1e-8 * np.nanmax(np.abs(wanted.values(name))))
+        np.testing.assert_allclose(
+            panel.value.values(name), wanted.values(name), rtol=1e-8, atol=1e-8 * np.nanmax(np.abs(wanted.values(name)))
+        )
     sent = held_by_the_page(panel, 2, "hover0")
     assert np.sort(sent) == pytest.approx(np.sort(wanted.values("specific_impulse")), rel=1e-9)
     page(panel, do="slide", path=PRESSURE, at=at, phase="end", run="one")
@@ -251,12 +257,17 @@ def test_failed_designs_are_counted_with_their_reason() -> None:
     failed = len(panel.value.failed)
     assert failed
     doubts = panel.content()["doubts"]
-    assert any(doubt.startswith(f"{failed} of 144 designs have no result:") and "exit pressure is above the throat pressure" in doubt for doubt in doubts)
+    assert any(
+        doubt.startswith(f"{failed} of 144 designs have no result:") and "exit pressure is above the throat pressure" in doubt
+        for doubt in doubts
+    )
     panel.close()
 
 
 def test_a_study_without_any_result_says_so() -> None:
-    panel = pk.Study(built().replace({"nozzle.exit_pressure": "60 kPa"}), {"nozzle.exit_pressure": np.linspace(50e3, 100e3, 3), RATIO: RATIOS[:3]}).panel()
+    panel = pk.Study(
+        built().replace({"nozzle.exit_pressure": "60 kPa"}), {"nozzle.exit_pressure": np.linspace(50e3, 100e3, 3), RATIO: RATIOS[:3]}
+    ).panel()
     panel.set("study.x_high", "9 MPa")
     panel.set("study.x_low", "6 MPa")
     assert "No design has a result." in panel.content()["doubts"]
@@ -290,7 +301,9 @@ def test_an_input_set_to_one_value_throughout_is_held_there_and_infinite_values_
     axes = {RATIO: RATIOS, "chamber.contraction_ratio": [3, 4, 6, "infinite"], PRESSURE: ["8 MPa"]}
     panel = pk.Study(built(), axes, results=["specific_impulse"]).panel()
     assert panel.study.target == built("8 MPa")
-    wanted = pk.Study(built("8 MPa"), {RATIO: RATIOS, "chamber.contraction_ratio": [3, 4, 6]}, results=["specific_impulse"]).run(progress=False)
+    wanted = pk.Study(built("8 MPa"), {RATIO: RATIOS, "chamber.contraction_ratio": [3, 4, 6]}, results=["specific_impulse"]).run(
+        progress=False
+    )
     assert panel.value.frame.equals(wanted.frame)
     assert "Infinite values of an axis are left out." in panel.content()["facts"]
     panel.close()
@@ -319,7 +332,9 @@ def test_code_meanwhile_is_no_move_of_the_slider(panel: Any) -> None:
     page(panel, do="slide", path=PRESSURE, at=9.0, phase="drag")
     worker.join()
     assert result == [False]
-    assert panel.value.frame.equals(pk.Study(built("9.00 MPa").replace({"ambient": "10 km"}), {RATIO: RATIOS, EPSILON: EPSILONS}).run(progress=False).frame)
+    assert panel.value.frame.equals(
+        pk.Study(built("9.00 MPa").replace({"ambient": "10 km"}), {RATIO: RATIOS, EPSILON: EPSILONS}).run(progress=False).frame
+    )
 
 
 def test_choices_make_curves() -> None:
@@ -349,8 +364,12 @@ def test_a_large_study_is_coarser_while_the_slider_moves() -> None:
 
 
 def test_a_recipe_without_a_batch_form_is_solved_on_a_small_grid() -> None:
-    target = pk.Performance(built().nozzle.replace({"contour": pk.Bell(length=0.8), "wall_thickness": "3 mm", "wall_density": "8190 kg/m3"}), ambient="vacuum")
-    panel = pk.Study(target, {"nozzle.wall_thickness": np.linspace(2e-3, 5e-3, 12), EPSILON: np.linspace(20, 40, 12)}, results=["specific_impulse"]).panel()
+    target = pk.Performance(
+        built().nozzle.replace({"contour": pk.Bell(length=0.8), "wall_thickness": "3 mm", "wall_density": "8190 kg/m3"}), ambient="vacuum"
+    )
+    panel = pk.Study(
+        target, {"nozzle.wall_thickness": np.linspace(2e-3, 5e-3, 12), EPSILON: np.linspace(20, 40, 12)}, results=["specific_impulse"]
+    ).panel()
     assert len(panel.value) <= 100
     assert any("oarser grid" in fact for fact in panel.content()["facts"])
     panel.close()

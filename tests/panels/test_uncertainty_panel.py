@@ -18,7 +18,9 @@ SPREAD = "uncertainty.chamber.pressure"
 
 
 def built(pressure: Any = "9.7 MPa") -> pk.Performance:
-    nozzle = pk.Nozzle(pk.Chamber(pk.PropellantCase("LOX", "LCH4", mixture_ratio=3.4), pressure=pressure), area_ratio=35, throat_diameter="0.18 m")
+    nozzle = pk.Nozzle(
+        pk.Chamber(pk.PropellantCase("LOX", "LCH4", mixture_ratio=3.4), pressure=pressure), area_ratio=35, throat_diameter="0.18 m"
+    )
     return pk.Performance(nozzle, ambient="sea level")
 
 

@@ -43,15 +43,11 @@ def mixture(oxidizer: str, fuel: str, ratio: float) -> tuple[dict[str, float], f
 
 def stoichiometric(oxidizer: str, fuel: str) -> float:
     """Return the stoichiometric mixture ratio from valences."""
-    need, supply = (
-        sum(VALENCES.get(symbol, 0.0) * count for symbol, count in _atoms(name)[0].items()) for name in (fuel, oxidizer)
-    )
+    need, supply = (sum(VALENCES.get(symbol, 0.0) * count for symbol, count in _atoms(name)[0].items()) for name in (fuel, oxidizer))
     return -need / supply
 
 
-def draw(
-    count: int, seed: int, pressure: tuple[float, float], equivalence: tuple[float, float]
-) -> Mapping[tuple[str, ...], Cases]:
+def draw(count: int, seed: int, pressure: tuple[float, float], equivalence: tuple[float, float]) -> Mapping[tuple[str, ...], Cases]:
     """Return random cases, log-uniform in pressure and equivalence ratio, by the elements they hold."""
     rows = library()
     oxidizers = [name for name, row in rows.items() if row.role == "oxidizer"]

@@ -54,10 +54,7 @@ def test_conservation_from_the_face_to_the_inlet(hypergolic, ratio: float, at: s
 def test_a_wide_chamber_tends_to_the_infinite_one(hypergolic, at: str) -> None:  # type: ignore[no-untyped-def]
     """The difference falls as the square of the inlet Mach number."""
     wide = solved(hypergolic, 2e6, np.inf, at)
-    gaps = [
-        abs(solved(hypergolic, 2e6, ratio, at).throat.mass_flux[0] / wide.throat.mass_flux[0] - 1.0)
-        for ratio in (30.0, 300.0)
-    ]
+    gaps = [abs(solved(hypergolic, 2e6, ratio, at).throat.mass_flux[0] / wide.throat.mass_flux[0] - 1.0) for ratio in (30.0, 300.0)]
     assert gaps[1] < 1e-4
     if at != "nozzle stagnation":
         assert gaps[0] / gaps[1] == pytest.approx(100.0, rel=0.02)

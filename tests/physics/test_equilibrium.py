@@ -163,9 +163,7 @@ def test_derivatives_are_those_of_neighbouring_states() -> None:
 
     def slope(what: str, **held: float) -> float:
         up, down = (
-            equilibrium.solve(
-                table, atoms, **{name: value * (1.0 + sign * step * (name == what)) for name, value in held.items()}
-            )  # type: ignore[arg-type]
+            equilibrium.solve(table, atoms, **{name: value * (1.0 + sign * step * (name == what)) for name, value in held.items()})  # type: ignore[arg-type]
             for sign in (1.0, -1.0)
         )
         return float(np.log(down.density / up.density)[0] / np.log((1.0 + step) / (1.0 - step)))
@@ -173,9 +171,7 @@ def test_derivatives_are_those_of_neighbouring_states() -> None:
     entropy = float(here.entropy[0])
     assert slope("temperature", pressure=7e6, temperature=3500.0) == pytest.approx(here.dlnv_dlnt[0], rel=1e-6)
     assert slope("pressure", pressure=7e6, temperature=3500.0) == pytest.approx(here.dlnv_dlnp[0], rel=1e-6)
-    assert -1.0 / slope("pressure", pressure=7e6, entropy=entropy) == pytest.approx(
-        here.isentropic_exponent[0], rel=1e-6
-    )
+    assert -1.0 / slope("pressure", pressure=7e6, entropy=entropy) == pytest.approx(here.isentropic_exponent[0], rel=1e-6)
     warm, cool = (equilibrium.solve(table, atoms, pressure=7e6, temperature=3500.0 + shift) for shift in (0.5, -0.5))
     assert float((warm.enthalpy - cool.enthalpy)[0]) == pytest.approx(float(here.specific_heat[0]), rel=1e-6)
     volume, expansion = 1.0 / here.density[0], here.dlnv_dlnt[0]
@@ -190,9 +186,7 @@ def test_a_batch_equals_its_single_cases(random_cases) -> None:  # type: ignore[
         table = load_basis().table(symbols)
         whole = equilibrium.solve(table, cases.atoms, pressure=cases.pressure, enthalpy=cases.enthalpy)
         for row in range(len(cases.labels)):
-            single = equilibrium.solve(
-                table, cases.atoms[row], pressure=cases.pressure[row], enthalpy=cases.enthalpy[row]
-            )
+            single = equilibrium.solve(table, cases.atoms[row], pressure=cases.pressure[row], enthalpy=cases.enthalpy[row])
             assert single.temperature[0] == pytest.approx(whole.temperature[row], rel=1e-10)
             np.testing.assert_allclose(single.mole_fractions[0], whole.mole_fractions[row], rtol=1e-8, atol=1e-12)
 

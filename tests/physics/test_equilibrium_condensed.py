@@ -59,9 +59,7 @@ def test_reference_value_of_a_composite() -> None:
     assert held(state) == {"Al2O3 (liquid)": pytest.approx(3.1146, abs=0.00006)}
     alumina = state.amounts[0, TABLE.names.index("Al2O3 (liquid)")] * 0.1019600768
     assert state.condensed_mass_fraction[0] == pytest.approx(alumina, rel=1e-7)
-    assert state.density[0] == pytest.approx(
-        7e6 * state.molar_mass[0] / (GAS_CONSTANT * state.temperature[0]), rel=1e-12
-    )
+    assert state.density[0] == pytest.approx(7e6 * state.molar_mass[0] / (GAS_CONSTANT * state.temperature[0]), rel=1e-12)
 
 
 def cantera_amounts(table: SpeciesTable, atoms: np.ndarray, temperature: float, pressure: float) -> np.ndarray:
@@ -122,11 +120,7 @@ def test_composites_agree_with_canteras_multi_phase_solver() -> None:
 def test_graphite_and_water_agree_with_canteras_multi_phase_solver(symbols: tuple[str, ...]) -> None:
     """Fuel-rich kerosene and hypergolic gas down to cold exhaust; source and tolerance as above."""
     table = load_basis("tm4513").table(symbols, condensed=True)
-    rich = (
-        {"C": 45.0, "H": 88.0, "O": 21.0, "N": 0.0}
-        if len(symbols) == 3
-        else {"C": 30.0, "H": 80.0, "N": 20.0, "O": 17.0}
-    )
+    rich = {"C": 45.0, "H": 88.0, "O": 21.0, "N": 0.0} if len(symbols) == 3 else {"C": 30.0, "H": 80.0, "N": 20.0, "O": 17.0}
     lean = {"C": 8.0, "H": 30.0, "O": 54.0, "N": 10.0}
     compared = 0
     for amounts in (rich, lean):
@@ -178,9 +172,7 @@ def test_melting_plateau_at_given_enthalpy_and_entropy() -> None:
     np.testing.assert_allclose(np.diff(liquid, 2), 0.0, atol=1e-9)
     assert (np.diff(liquid) > 0.0).all()
     assert np.isnan(state.specific_heat).all()
-    low, high = (
-        equilibrium.solve(TABLE, ATOMS, pressure=7e6 * factor, entropy=state.entropy[2]) for factor in (0.9999, 1.0001)
-    )
+    low, high = (equilibrium.solve(TABLE, ATOMS, pressure=7e6 * factor, entropy=state.entropy[2]) for factor in (0.9999, 1.0001))
     slope = np.log(high.pressure / low.pressure) / np.log(high.density / low.density)
     assert slope[0] == pytest.approx(state.isentropic_exponent[2], rel=1e-6)
     assert state.isentropic_exponent[2] == pytest.approx(1.0, abs=0.01)

@@ -197,9 +197,7 @@ def test_constant_properties_are_the_closed_forms(gamma: float, ratio: float) ->
     """Source: NACA Report 1135 through propkit.physics.gas_dynamics, itself tested against its tables."""
     flow = expansion.perfect_gas(gamma, 350.0, 3000.0, 5e6)
     throat = expansion.throat(flow)
-    assert throat.mass_flux[0] == pytest.approx(
-        float(ideal_nozzle.choked_mass_flux(5e6, 3000.0, 350.0, gamma)), rel=1e-12
-    )
+    assert throat.mass_flux[0] == pytest.approx(float(ideal_nozzle.choked_mass_flux(5e6, 3000.0, 350.0, gamma)), rel=1e-12)
     end = expansion.at_area_ratio(flow, throat.mass_flux, ratio, throat)
     assert gas_dynamics.area_ratio(end.mach, gamma)[0] == pytest.approx(ratio, rel=1e-9)
     assert end.velocity[0] == pytest.approx(np.sqrt(-2.0 * end.enthalpy[0]), rel=1e-9)
@@ -216,9 +214,7 @@ def test_a_monatomic_gas_is_a_perfect_gas_in_every_model() -> None:
     held = expansion.frozen(table, rest.amounts, rest.enthalpy, rest.entropy, rest.pressure, rest.temperature)
     for flow in (shifting, held):
         for ratio in (1.0, 5.0, 50.0):
-            one, other = (
-                expansion.at_area_ratio(model, expansion.throat(model).mass_flux, ratio) for model in (flow, perfect)
-            )
+            one, other = (expansion.at_area_ratio(model, expansion.throat(model).mass_flux, ratio) for model in (flow, perfect))
             assert one.status[0] == CONVERGED
             assert one.temperature[0] == pytest.approx(other.temperature[0], rel=1e-9)
 

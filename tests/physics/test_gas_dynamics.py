@@ -59,9 +59,7 @@ def test_shock_rows(row: dict[str, str]) -> None:
 @given(st.floats(1e-3, 30.0), EXPONENTS)
 def test_inverses(mach: float, g: float) -> None:
     branch = "supersonic" if mach >= 1.0 else "subsonic"
-    assert float(gas.mach_from_area_ratio(gas.area_ratio(mach, g), g, branch)) == pytest.approx(
-        mach, rel=1e-9, abs=3e-8
-    )
+    assert float(gas.mach_from_area_ratio(gas.area_ratio(mach, g), g, branch)) == pytest.approx(mach, rel=1e-9, abs=3e-8)
     assert float(gas.mach_from_pressure_ratio(gas.pressure_ratio(mach, g), g)) == pytest.approx(mach, rel=1e-7)
     assert float(gas.mach_from_temperature_ratio(gas.temperature_ratio(mach, g), g)) == pytest.approx(mach, rel=1e-6)
 
@@ -88,9 +86,7 @@ def test_shock_conserves_mass_momentum_energy(mach: float, g: float) -> None:
     velocity = behind * math.sqrt(pressure / density)
     assert density * velocity == pytest.approx(mach, rel=1e-11)
     assert pressure / g + density * velocity**2 == pytest.approx(1.0 / g + mach**2, rel=1e-11)
-    assert pressure / density / (g - 1.0) + 0.5 * velocity**2 == pytest.approx(
-        1.0 / (g - 1.0) + 0.5 * mach**2, rel=1e-11
-    )
+    assert pressure / density / (g - 1.0) + 0.5 * velocity**2 == pytest.approx(1.0 / (g - 1.0) + 0.5 * mach**2, rel=1e-11)
 
 
 @given(EXPONENTS, st.floats(1.0, 1e4), st.floats(0.0, 1.0))
@@ -122,9 +118,7 @@ def test_choked_flux_of_a_kerosene_reservoir() -> None:
     """Common practice, no source: 7 MPa, 3558 K, 22.19 kg/kmol, exponent 1.151 pass about 3872 kg/s/m2 (0.3 %)."""
     flux = float(ideal_nozzle.choked_mass_flux(7e6, 3558.0, 8.314462618 / 22.19e-3, 1.151))
     assert flux == pytest.approx(3872.0, rel=3e-3)
-    assert float(ideal_nozzle.characteristic_velocity(3558.0, 8.314462618 / 22.19e-3, 1.151)) == pytest.approx(
-        7e6 / flux, rel=1e-12
-    )
+    assert float(ideal_nozzle.characteristic_velocity(3558.0, 8.314462618 / 22.19e-3, 1.151)) == pytest.approx(7e6 / flux, rel=1e-12)
 
 
 def test_limits() -> None:

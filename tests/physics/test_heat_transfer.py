@@ -17,9 +17,7 @@ def test_coefficient_by_hand() -> None:
     """Bartz (1957) evaluated with a desk calculator (20 digits) at Dt 0.25 m, arc 0.11763 m, 1e-4 Pa s, 2100 J/kg/K,
     Pr 0.75, 7 MPa, c* 1780 m/s, throat, sigma 1: 10991.387 W/m2/K."""
     given_state = (0.25, 0.11763, 1e-4, 2100.0, 0.75, 7e6, 1780.0)
-    assert float(heat_transfer.heat_transfer_coefficient(*given_state, 1.0, 1.0)) == pytest.approx(
-        10991.38712, rel=1e-9
-    )
+    assert float(heat_transfer.heat_transfer_coefficient(*given_state, 1.0, 1.0)) == pytest.approx(10991.38712, rel=1e-9)
     wider = heat_transfer.heat_transfer_coefficient(*given_state, 32.0, 1.0)
     assert float(wider) == pytest.approx(10991.38712 / 2.0**4.5, rel=1e-9)
 

@@ -22,9 +22,7 @@ def test_properties_are_those_of_cantera_inside_the_range(temperature: float) ->
     for row, species in enumerate(load_basis("tm4513").cantera_species(TABLE.elements)):
         if inside[row]:
             thermo = species.thermo
-            assert properties.heat_capacity[0, row] == pytest.approx(
-                thermo.cp(temperature) / cantera.gas_constant, rel=1e-12
-            )
+            assert properties.heat_capacity[0, row] == pytest.approx(thermo.cp(temperature) / cantera.gas_constant, rel=1e-12)
             enthalpy = thermo.h(temperature) / cantera.gas_constant / temperature
             assert properties.enthalpy[0, row] == pytest.approx(enthalpy, rel=1e-12, abs=1e-12)
             assert properties.entropy[0, row] == pytest.approx(thermo.s(temperature) / cantera.gas_constant, rel=1e-12)

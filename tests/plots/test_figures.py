@@ -239,7 +239,12 @@ def contrast(one: str, other: str) -> float:
 
 def test_every_kind_of_layer_is_built() -> None:
     x = Series("x", (1.0, 2.0, 3.0), "m")
-    layers = (Line(x, Series("y", (1.0, 4.0, 9.0), "Pa"), closed=True, fill=True), Mark(2.0, 4.0, "here"), Rule("y", 3.0, "limit"), Rule("x", 2.5, "at"))
+    layers = (
+        Line(x, Series("y", (1.0, 4.0, 9.0), "Pa"), closed=True, fill=True),
+        Mark(2.0, 4.0, "here"),
+        Rule("y", 3.0, "limit"),
+        Rule("x", 2.5, "at"),
+    )
     plot = build(Figure("all", "All", "all layers", Axis("x", "m", scale="log"), Axis("y", "Pa"), layers), width=300).figure
     assert [source_of(plot, place) is not None for place in range(4)] == [True] * 4
     assert plot.width == 300

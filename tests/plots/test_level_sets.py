@@ -80,7 +80,9 @@ PERF = pk.Performance(pk.Nozzle(GAS, area_ratio=20, throat_diameter="0.1 m"), am
 
 def found(pressure: str) -> object:
     target = PERF.replace({"chamber.temperature": pressure})
-    return pk.Study(target, {"chamber.pressure": np.linspace(4e6, 9e6, 12), "nozzle.area_ratio": np.linspace(4, 40, 13)}).run(progress=False)
+    return pk.Study(target, {"chamber.pressure": np.linspace(4e6, 9e6, 12), "nozzle.area_ratio": np.linspace(4, 40, 13)}).run(
+        progress=False
+    )
 
 
 def test_a_plot_of_a_map_stays_while_its_data_change():

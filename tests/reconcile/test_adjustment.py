@@ -55,9 +55,7 @@ def test_linear_case_against_scipy():
     found = adjust(linear, linear_figures(given), THREE)
     expected = optimize.lsq_linear(DESIGN / SIGMA[:, None], given / SIGMA).x
     np.testing.assert_allclose(found.estimate, expected, rtol=1e-9)
-    _, covariance = optimize.curve_fit(
-        lambda x, *p: DESIGN @ np.array(p), None, given, p0=[1, 1, 1], sigma=SIGMA, absolute_sigma=True
-    )
+    _, covariance = optimize.curve_fit(lambda x, *p: DESIGN @ np.array(p), None, given, p0=[1, 1, 1], sigma=SIGMA, absolute_sigma=True)
     np.testing.assert_allclose(found.estimate_covariance, covariance, rtol=1e-5)
     assert found.redundancy.sum() == pytest.approx(found.degrees_of_freedom, rel=1e-9)
     assert found.iterations <= 3
@@ -274,9 +272,7 @@ def test_unknowns_that_the_figures_do_not_tell_apart():
     with pytest.raises(InputError, match="do not tell a and b apart"):
         adjust(balance, figures, [Unknown("a", 5.0), Unknown("b", 5.0)])
     with pytest.raises(InputError, match="no figure depends on b"):
-        adjust(
-            balance, [Figure("a", 1.0, 1.0), Figure("a2", 1.0, 1.0, result="a")], [Unknown("a", 5.0), Unknown("b", 5.0)]
-        )
+        adjust(balance, [Figure("a", 1.0, 1.0), Figure("a2", 1.0, 1.0, result="a")], [Unknown("a", 5.0), Unknown("b", 5.0)])
 
 
 def test_figures_that_cannot_all_be_true_are_named():

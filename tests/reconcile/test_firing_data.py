@@ -146,9 +146,7 @@ def test_clean_series_have_hardly_any_flags():
 
 
 def test_measuring_range_and_transients():
-    values = np.concatenate(
-        [np.zeros(200), np.linspace(0.0, 50.0, 40), 50.0 + np.random.default_rng(1).standard_normal(500)]
-    )
+    values = np.concatenate([np.zeros(200), np.linspace(0.0, 50.0, 40), 50.0 + np.random.default_rng(1).standard_normal(500)])
     channel = flagged("thrust", "t [N]", "N", values, (-10.0, 51.0))
     assert np.array_equal(channel.saturated, values >= 51.0)
     rising = flagged("thrust", "t [N]", "N", values)
@@ -171,10 +169,7 @@ def check_mean(seeds, tolerance, low, high):
     for rho in (0.0, 0.5, 0.8, 0.9):
         count, sigma = 2000, 3.0
         known = sigma * math.sqrt(variance_ratio(rho, count) / count)
-        found = [
-            mean_of(10.0 + autoregressive(np.random.default_rng([seed, 77]), count, rho, sigma))
-            for seed in range(seeds)
-        ]
+        found = [mean_of(10.0 + autoregressive(np.random.default_rng([seed, 77]), count, rho, sigma)) for seed in range(seeds)]
         estimated = math.sqrt(np.mean([entry.standard_uncertainty**2 for entry in found]))
         assert estimated == pytest.approx(known, rel=tolerance)
         inside = sum(abs(entry.value - 10.0) <= 1.959964 * entry.standard_uncertainty for entry in found)
@@ -250,9 +245,7 @@ def test_drifting_burn_gets_a_shorter_window():
     wide = find_window(firing_of(slope=0.002), "chamber.pressure", criterion=Criterion(drift=0.1, band=0.1))
     assert wide.end - wide.start > 15.0
     with pytest.raises(RangeError, match="no stretch of the burn"):
-        find_window(
-            firing_of(noise=0.0005, slope=0.06), "chamber.pressure", criterion=Criterion(drift=0.001, band=0.001)
-        )
+        find_window(firing_of(noise=0.0005, slope=0.06), "chamber.pressure", criterion=Criterion(drift=0.001, band=0.001))
 
 
 def test_given_window_is_checked_not_changed():

@@ -66,9 +66,7 @@ def test_uncertainty_of_cstar_by_hand():
     assert row["standard_uncertainty"] / row["value"] == pytest.approx(math.sqrt(sum(r**2 for r in relative)), rel=1e-4)
     budget = FIRING.budget("characteristic_velocity")
     assert budget["share"].sum() == pytest.approx(1.0)
-    assert budget.loc["chamber.pressure", "share"] == pytest.approx(
-        relative[0] ** 2 / sum(r**2 for r in relative), rel=1e-3
-    )
+    assert budget.loc["chamber.pressure", "share"] == pytest.approx(relative[0] ** 2 / sum(r**2 for r in relative), rel=1e-3)
 
 
 def test_efficiencies_against_objects_at_the_measured_conditions():

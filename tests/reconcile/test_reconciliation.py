@@ -14,9 +14,7 @@ from propkit.reconcile.figures import printed_uncertainty, read_figure
 from propkit.reconcile.model import default_free, figure_key
 
 G0 = 9.80665
-GAS = pk.Chamber.from_gas(
-    pressure="7 MPa", temperature="3400 K", molar_mass="22 g/mol", isentropic_exponent=1.2, cstar_efficiency=0.97
-)
+GAS = pk.Chamber.from_gas(pressure="7 MPa", temperature="3400 K", molar_mass="22 g/mol", isentropic_exponent=1.2, cstar_efficiency=0.97)
 PERF = pk.Performance(pk.Nozzle(GAS, area_ratio=20, throat_diameter="0.2 m"), ambient="sea level")
 CASE = pk.PropellantCase("LOX", "RP-1", mixture_ratio=2.6)
 ENGINE = pk.Performance(
@@ -78,9 +76,7 @@ def test_two_figures_by_hand():
     weights = np.array([1.0 / (0.01 * 81.0) ** 2, 1.0 / 1.6**2])
     best = float(weights @ [81.0, 80.0] / weights.sum())
     assert fit.adjusted.loc["mass_flow", "value"] == pytest.approx(best, rel=1e-9)
-    assert fit.adjusted.loc["mass_flow", "standard_uncertainty"] == pytest.approx(
-        1.0 / math.sqrt(weights.sum()), rel=1e-6
-    )
+    assert fit.adjusted.loc["mass_flow", "standard_uncertainty"] == pytest.approx(1.0 / math.sqrt(weights.sum()), rel=1e-6)
     assert fit.chi_square == pytest.approx(1.0 / (0.81**2 + 1.6**2), rel=1e-6)
     assert fit.degrees_of_freedom == 1
 
@@ -172,9 +168,7 @@ def test_routes_against_hand_values():
     row = table.loc["thrust over specific impulse"]
     assert row["value"] == pytest.approx(360e3 / (285.0 * G0), rel=1e-12)
     assert row["standard_uncertainty"] / row["value"] == pytest.approx(math.hypot(0.01, 0.005), rel=1e-8)
-    assert table.loc["oxidizer and fuel flow", "standard_uncertainty"] == pytest.approx(
-        math.hypot(0.93, 0.36), rel=1e-8
-    )
+    assert table.loc["oxidizer and fuel flow", "standard_uncertainty"] == pytest.approx(math.hypot(0.93, 0.36), rel=1e-8)
     row = table.loc["propellant mass over burn time"]
     assert row["value"] == pytest.approx(130.0)
     assert row["standard_uncertainty"] / row["value"] == pytest.approx(math.hypot(0.005, 0.002), rel=1e-8)
@@ -346,9 +340,7 @@ def test_other_refusals():
 
 
 def test_held_mixture_ratio_is_said():
-    fit = pk.Reconciliation(
-        ENGINE, {"mixture_ratio": ("2.56", "1 %"), "mass_flow": ("130 kg/s", "1 %"), "thrust": ("375 kN", "1 %")}
-    )
+    fit = pk.Reconciliation(ENGINE, {"mixture_ratio": ("2.56", "1 %"), "mass_flow": ("130 kg/s", "1 %"), "thrust": ("375 kN", "1 %")})
     assert any(doubt.code == "held" for doubt in fit.warnings)
     free = pk.Reconciliation(
         ENGINE,

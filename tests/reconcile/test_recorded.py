@@ -32,9 +32,7 @@ def firing():
     made = demo_firing(target, 4)
     channels = {name: header.partition(" [")[0] for name, header in HEADERS.items()}
     calibration = {name: f"{100.0 * share:g} %" for name, share in CALIBRATION.items()}
-    return pk.HotFire(
-        target, made.table, channels, throat_before=made.throat_before, calibration=calibration, name="Firing 4"
-    )
+    return pk.HotFire(target, made.table, channels, throat_before=made.throat_before, calibration=calibration, name="Firing 4")
 
 
 def uncertainty():

@@ -93,7 +93,9 @@ def write_corpus(folder: Path) -> None:
         archive.writestr("x.record.json", document)
     output = f'{{"output_type":"display_data","metadata":{{}},"data":{{"{RECORD_MIME}":{document}}}}}'
     notebook = f'{{"cells":[{{"cell_type":"code","source":"x","execution_count":1,"metadata":{{}},"outputs":[{output}]}}],"metadata":{{}},"nbformat":4,"nbformat_minor":5}}'
-    for kind, data in enumerate((document.encode(), notebook.encode(), f"<p>{record_template(SAMPLE)}</p>".encode(), stream.getvalue(), b"change" * 20)):
+    for kind, data in enumerate(
+        (document.encode(), notebook.encode(), f"<p>{record_template(SAMPLE)}</p>".encode(), stream.getvalue(), b"change" * 20)
+    ):
         (folder / str(kind)).write_bytes(data + bytes([kind]))
 
 

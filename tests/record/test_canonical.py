@@ -104,7 +104,10 @@ def test_digest_is_sha256_of_the_form():
 
 def test_seals_do_not_see_how_an_editor_writes_numbers():
     document = sealed("propkit-record/1", {"b": 3500.0, "a": [1e-9]}, {"time": "x"})
-    rewritten = {**json.loads('{"content": {"a": [0.000000001], "b": 3500}}'), **{key: value for key, value in document.items() if key != "content"}}
+    rewritten = {
+        **json.loads('{"content": {"a": [0.000000001], "b": 3500}}'),
+        **{key: value for key, value in document.items() if key != "content"},
+    }
     assert whole_digest(rewritten) == document["digest"]
     assert digest_of(rewritten["content"]) == document["provenance"]["content_digest"]
 

@@ -21,7 +21,17 @@ def archive(*members, compression=zipfile.ZIP_DEFLATED):
     return stream.getvalue()
 
 
-@pytest.mark.parametrize("name", ["../x.record.json", "/etc/x.record.json", "a/../../x.record.json", "C:/x.record.json", "a\\..\\x.record.json", "\\\\host\\x.record.json"])
+@pytest.mark.parametrize(
+    "name",
+    [
+        "../x.record.json",
+        "/etc/x.record.json",
+        "a/../../x.record.json",
+        "C:/x.record.json",
+        "a\\..\\x.record.json",
+        "\\\\host\\x.record.json",
+    ],
+)
 def test_paths_that_lead_outside(name):
     with pytest.raises(RecordError, match="outside"):
         records_of(".zip", archive((name, "{}")), "x.zip")

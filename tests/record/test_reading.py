@@ -98,7 +98,11 @@ def mutate(data: bytes, draw) -> bytes:
     """Return the bytes of a file with a part cut, doubled or overwritten."""
     start = draw(st.integers(0, len(data) - 1))
     stop = draw(st.integers(start, min(start + 40, len(data))))
-    replacement = draw(st.sampled_from([b"", data[start:stop] * 2]) | st.binary(max_size=8) | st.sampled_from([b"NaN", b"1e999", b"[" * 99, b"\\ud800", b'"', b"-0", b"null"]))
+    replacement = draw(
+        st.sampled_from([b"", data[start:stop] * 2])
+        | st.binary(max_size=8)
+        | st.sampled_from([b"NaN", b"1e999", b"[" * 99, b"\\ud800", b'"', b"-0", b"null"])
+    )
     return data[:start] + replacement + data[stop:]
 
 

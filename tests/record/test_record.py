@@ -180,7 +180,10 @@ def test_a_missing_or_added_entry_fails_after_resealing(record):
         name = sorted(entries)[0]
         entry = entries.pop(name)
         assert reseal(document).verify().exit_code == 1
-        entries |= {name: entry, "another": {"kind": "given", "value": 1.0, "unit": "m"} if part == "inputs" else {"value": 1.0, "unit": "m"}}
+        entries |= {
+            name: entry,
+            "another": {"kind": "given", "value": 1.0, "unit": "m"} if part == "inputs" else {"value": 1.0, "unit": "m"},
+        }
         assert reseal(document).verify().exit_code == 1
     document = record.document
     document["content"]["composition"]["throat"]["Xe"] = 1e-4
@@ -219,12 +222,15 @@ def test_free_text_is_not_checked_and_that_is_said(record):
     assert "not checked" in str(verification)
 
 
-@pytest.mark.parametrize("recipe", [
-    {"object": "Record", "inputs": {}},
-    {"object": "Performance", "inputs": {"nozzle": "x", "ambient": "vacuum"}},
-    {"object": "os.system", "inputs": {"command": "true"}},
-    {"object": "Propellant", "inputs": {"library_name": "LOX"}},
-])
+@pytest.mark.parametrize(
+    "recipe",
+    [
+        {"object": "Record", "inputs": {}},
+        {"object": "Performance", "inputs": {"nozzle": "x", "ambient": "vacuum"}},
+        {"object": "os.system", "inputs": {"command": "true"}},
+        {"object": "Propellant", "inputs": {"library_name": "LOX"}},
+    ],
+)
 def test_a_recipe_that_makes_something_else_is_a_mismatch(record, recipe):
     document = record.document
     document["content"]["recipe"] = recipe

@@ -16,17 +16,13 @@ NOZZLE = pk.Nozzle(CHAMBER, area_ratio=35, throat_diameter="0.18 m")
 PERF = pk.Performance(NOZZLE, ambient="sea level")
 GAS = pk.Performance(
     pk.Nozzle(
-        pk.Chamber.from_gas(
-            pressure="7 MPa", temperature="3500 K", molar_mass="22 g/mol", isentropic_exponent=1.2, contraction_ratio=3
-        ),
+        pk.Chamber.from_gas(pressure="7 MPa", temperature="3500 K", molar_mass="22 g/mol", isentropic_exponent=1.2, contraction_ratio=3),
         area_ratio=20,
         throat_diameter="0.1 m",
     ),
     ambient="40 kPa",
 )
-SIZED = pk.Performance(
-    pk.Nozzle.sized_for(CHAMBER, thrust="400 kN", ambient="sea level", area_ratio=20), ambient="vacuum"
-)
+SIZED = pk.Performance(pk.Nozzle.sized_for(CHAMBER, thrust="400 kN", ambient="sea level", area_ratio=20), ambient="vacuum")
 FROZEN = PERF.replace({"nozzle.flow": "frozen", "nozzle.freeze_at": "throat"})
 TWO_SIZES = pk.Performance(pk.Nozzle(CHAMBER, throat_diameter="0.18 m", exit_diameter="1 m"), ambient="vacuum")
 CONTRACTED = PERF.replace({"chamber.contraction_ratio": 2.5})
@@ -51,11 +47,7 @@ CONTRACTED = PERF.replace({"chamber.contraction_ratio": 2.5})
 )
 def test_batch_agrees_with_objects(target, inputs):
     names = [name for name in own_results(target) if isinstance(target.si(name), float)]
-    upstream = (
-        ["chamber.temperature", "nozzle.exit.pressure", "nozzle.throat.velocity"]
-        if target.kind == "performance"
-        else []
-    )
+    upstream = ["chamber.temperature", "nozzle.exit.pressure", "nozzle.throat.velocity"] if target.kind == "performance" else []
     function = pickle.loads(pickle.dumps(function_of(target, inputs, [*names, *upstream])))
     assert function.batched
     rng = np.random.default_rng(5)
@@ -76,28 +68,20 @@ def test_batch_agrees_with_objects(target, inputs):
 
 def test_cases_that_the_object_refuses_are_no_numbers():
     function = function_of(PERF, ["performance.ambient", "nozzle.exit_pressure"], ["thrust"])
-    found = function(
-        {"performance.ambient": np.array([0.0, 2e7, 0.0]), "nozzle.exit_pressure": np.array([5e4, 5e4, 9e6])}
-    )["thrust"]
+    found = function({"performance.ambient": np.array([0.0, 2e7, 0.0]), "nozzle.exit_pressure": np.array([5e4, 5e4, 9e6])})["thrust"]
     assert np.isfinite(found).tolist() == [True, False, False]
 
 
 def test_stored_temperature_and_assigned_enthalpy():
-    function = (
-        function_of(CHAMBER, ["case.fuel_temperature"], ["temperature"]) if CASE.has("fuel_temperature") else None
-    )
+    function = function_of(CHAMBER, ["case.fuel_temperature"], ["temperature"]) if CASE.has("fuel_temperature") else None
     assert function is None
     warm = CHAMBER.replace({"case.fuel_temperature": "110 K"})
-    found = function_of(warm, ["fuel_temperature"], ["temperature"])(
-        {"case.fuel_temperature": np.array([100.0, 110.0])}
-    )
+    found = function_of(warm, ["fuel_temperature"], ["temperature"])({"case.fuel_temperature": np.array([100.0, 110.0])})
     assert found["temperature"][0] == pytest.approx(warm.replace(fuel_temperature=100.0).si("temperature"), rel=1e-9)
     assert found["temperature"][1] > found["temperature"][0]
     # 10 kJ/mol more in the fuel is the same as a propellant of one's own with that enthalpy
     nominal = variable(CHAMBER, "case.fuel.enthalpy").nominal
-    shifted = function_of(CHAMBER, ["case.fuel.enthalpy"], ["temperature"])(
-        {"case.fuel.enthalpy": np.array([nominal + 1e4])}
-    )
+    shifted = function_of(CHAMBER, ["case.fuel.enthalpy"], ["temperature"])({"case.fuel.enthalpy": np.array([nominal + 1e4])})
     own = pk.Propellant(
         name="fuel of the test", formula="C H4", enthalpy=f"{nominal + 1e4:.10g} J/mol", density="422 kg/m3",
         temperature="111.6 K", role="fuel",

@@ -67,8 +67,16 @@ RECIPES = {
         BURNT,
     ),
     "liquids and solids": (performance(pk.Chamber(SOLID, pressure="7 MPa"), area_ratio=12, throat_diameter=0.1), DUCT, BURNT),
-    "held liquids and solids": (performance(pk.Chamber(SOLID, pressure="7 MPa"), area_ratio=12, throat_diameter=0.1, flow="frozen"), DUCT, BURNT),
-    "given composition": (performance(pk.Chamber(BED, pressure="2 MPa"), area_ratio=40, throat_diameter=0.01, flow="frozen"), DUCT, RESULTS),
+    "held liquids and solids": (
+        performance(pk.Chamber(SOLID, pressure="7 MPa"), area_ratio=12, throat_diameter=0.1, flow="frozen"),
+        DUCT,
+        BURNT,
+    ),
+    "given composition": (
+        performance(pk.Chamber(BED, pressure="2 MPa"), area_ratio=40, throat_diameter=0.01, flow="frozen"),
+        DUCT,
+        RESULTS,
+    ),
     "given gas": (
         performance(GAS, area_ratio=20, throat_diameter=0.1),
         (*DUCT, "chamber.temperature", "chamber.molar_mass", "chamber.isentropic_exponent", "chamber.contraction_ratio"),

@@ -162,9 +162,7 @@ def test_only_a_few_blocks_are_under_way_at_once():
 
     items, ahead = Lazy(), []
     with ThreadPoolExecutor(2) as pool:
-        run_blocks(
-            blocks.heavy, items, lambda index, value: ahead.append(items.made - index), executor=pool, progress=False
-        )
+        run_blocks(blocks.heavy, items, lambda index, value: ahead.append(items.made - index), executor=pool, progress=False)
     assert len(ahead) == 500
     assert max(ahead) <= 6
 

@@ -28,7 +28,9 @@ def designs(pair, count, seed=1):
 def compared(pair, count, flow="shifting", seed=1, exit_pressure=False, basis="tm4513+atct", pressure_at=None):
     """Return largest relative differences of the quick engine from the plain stages, by station and quantity, and designs it left."""
     mixture, pressure, ratio = designs(pair, count, seed)
-    asked = {"area_ratio": None, "exit_pressure": pressure / (10.0 * ratio)} if exit_pressure else {"area_ratio": ratio, "exit_pressure": None}
+    asked = (
+        {"area_ratio": None, "exit_pressure": pressure / (10.0 * ratio)} if exit_pressure else {"area_ratio": ratio, "exit_pressure": None}
+    )
     contraction = {}
     if pressure_at:
         contraction = {"contraction_ratio": np.random.default_rng(seed).uniform(1.3, 12.0, count), "pressure_at": pressure_at}

@@ -235,8 +235,7 @@ CHAIN = {
 def test_first_order_agrees_with_the_uncertainties_package():
     found = first_order(thrust_chain, inputs_of(CHAIN))
     exact = {
-        path: uncertainties.ufloat(nominal, entry.resolve(nominal, "").standard_uncertainty)
-        for path, (nominal, entry) in CHAIN.items()
+        path: uncertainties.ufloat(nominal, entry.resolve(nominal, "").standard_uncertainty) for path, (nominal, entry) in CHAIN.items()
     }
     expected = thrust_chain(exact, umath.sqrt)
     for place, name in enumerate(found.results):
@@ -311,9 +310,7 @@ def test_illegal_draws_refuse_the_run_or_are_counted():
         called.append(v)
         return {"y": np.sqrt(1.0 - v["x"])}
 
-    with pytest.raises(
-        InputError, match=r"`x` reaches illegal values: 2.3 % of its distribution, \d+ trials"
-    ) as caught:
+    with pytest.raises(InputError, match=r"`x` reaches illegal values: 2.3 % of its distribution, \d+ trials") as caught:
         monte_carlo(evaluate, inputs, 5000, seed=1, progress=False)
     assert len(called) == 1  # the nominal values alone
     count = caught.value.data["reach"][0].count

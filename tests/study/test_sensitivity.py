@@ -67,9 +67,7 @@ def test_what_has_no_indices_is_refused():
     with pytest.raises(InputError, match="illegal"):
         sobol_indices(ishigami, JointInputs({"a": one}, bounds={"a": (0.0, 9.0)}), seed=1)
     with pytest.raises(ConvergenceError, match="no solution"):
-        sobol_indices(
-            lambda x: {"y": np.where(x["x1"] > 3.0, np.nan, x["x1"])}, INPUTS, seed=1, base=64, progress=False
-        )
+        sobol_indices(lambda x: {"y": np.where(x["x1"] > 3.0, np.nan, x["x1"])}, INPUTS, seed=1, base=64, progress=False)
 
 
 def test_missing_package_names_the_line_that_installs_it(monkeypatch):

@@ -206,7 +206,9 @@ def test_tables_for_people_have_units_in_their_titles():
 def test_exports_keep_every_digit(tmp_path):
     result = pk.Study(GAS, {"area_ratio": [10.0, 20.0], "performance.ambient": ["vacuum", "50 MPa"]}).run(progress=False)
     back = pd.read_csv(result.to_csv(tmp_path / "a.csv"), index_col="design")
-    assert f"{result.frame['thrust'][0]!r}" in (tmp_path / "a.csv").read_text() or back["thrust [N]"].tolist()[0] == result.frame["thrust"][0]
+    assert (
+        f"{result.frame['thrust'][0]!r}" in (tmp_path / "a.csv").read_text() or back["thrust [N]"].tolist()[0] == result.frame["thrust"][0]
+    )
     assert "stagnation pressure" in back["failed"][1]
     with pytest.raises(pk.StorageError):
         result.to_csv(tmp_path / "none" / "a.csv")

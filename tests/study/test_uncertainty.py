@@ -41,9 +41,7 @@ def test_first_order_against_the_uncertainties_package():
     assert row["standard_uncertainty"] == pytest.approx(flow.s, rel=1e-6)
     budget = found.budget("mass_flow")
     assert budget.loc["chamber.pressure", "sensitivity"] == pytest.approx(flow.derivatives[p], rel=1e-6)
-    assert budget.loc["chamber.temperature", "share"] == pytest.approx(
-        (flow.derivatives[t] * 60.0 / flow.s) ** 2, rel=1e-5
-    )
+    assert budget.loc["chamber.temperature", "share"] == pytest.approx((flow.derivatives[t] * 60.0 / flow.s) ** 2, rel=1e-5)
     assert budget["share"].sum() == pytest.approx(1.0)
     assert list(budget["share"]) == sorted(budget["share"], reverse=True)
     assert found.expanded_uncertainty("mass_flow") == pytest.approx(2.0 * flow.s, rel=1e-6)
@@ -63,9 +61,7 @@ def test_trials_agree_with_first_order_on_the_chain():
     found = PLAN.run(samples=40_000, seed=3, progress=False)
     linear = PLAN.run()
     # nearly linear: 0.5 % is three standard errors of the deviation of 40 000 trials with some room for curvature
-    np.testing.assert_allclose(
-        found.table["standard_uncertainty"][:3], linear.table["standard_uncertainty"][:3], rtol=1.5e-2
-    )
+    np.testing.assert_allclose(found.table["standard_uncertainty"][:3], linear.table["standard_uncertainty"][:3], rtol=1.5e-2)
     np.testing.assert_allclose(found.correlation(), linear.correlation(), atol=0.02)
 
 
@@ -153,9 +149,7 @@ def test_figures():
     tornado = found.tornado("thrust")
     heights = tornado.layers[0].values.values
     assert list(heights) == sorted(heights, reverse=True)
-    assert math.sqrt(sum(height**2 for height in heights)) == pytest.approx(
-        PLAN.run().standard_uncertainty("thrust") / 1e3
-    )
+    assert math.sqrt(sum(height**2 for height in heights)) == pytest.approx(PLAN.run().standard_uncertainty("thrust") / 1e3)
     assert "chamber.pressure" in tornado.alt
     histogram = found.histogram("thrust")
     x, y = histogram.layers[0].x.values, histogram.layers[0].y.values
@@ -177,9 +171,7 @@ def test_plan_and_result_are_immutable_and_pickle():
 
 def test_every_bad_input_is_named_at_once():
     with pytest.raises(InputError) as caught:
-        pk.Uncertainty(
-            PERF, {"chamber.presure": "1 %", "ambient": "1 %", "throat_diameter": "-1 mm", "temperature": "1 K"}
-        )
+        pk.Uncertainty(PERF, {"chamber.presure": "1 %", "ambient": "1 %", "throat_diameter": "-1 mm", "temperature": "1 K"})
     text = str(caught.value)
     for word in ("presure", "percentage", "above 0"):
         assert word in text

@@ -44,9 +44,7 @@ def plain(medium: str, text: str) -> str:
         text = re.sub(r"[$&{}\\]", " ", text)
     if medium == "markdown":
         text = text.replace("\\", "").replace("|", " ")
-    text = re.sub(
-        "\u202f×\u202f10([⁻⁰¹²³⁴⁵⁶⁷⁸⁹]+)", lambda power: f"e{power[1].translate(SUPERSCRIPTS)}", text
-    ).replace("\u2212", "-")
+    text = re.sub("\u202f×\u202f10([⁻⁰¹²³⁴⁵⁶⁷⁸⁹]+)", lambda power: f"e{power[1].translate(SUPERSCRIPTS)}", text).replace("\u2212", "-")
     return re.sub(r"(?<=\d)\u202f(?=\d)", "", text)
 
 
@@ -249,9 +247,7 @@ def test_nothing_typed_escapes_in_latex(reports: dict[str, Report]) -> None:
     shown = render(reports["nasty"], "latex")
     outside = re.sub(r"\$[^$]*\$", "", re.sub(r"\\[$&%#_{}]", "", shown))
     assert not re.search(r"[#%~^_<>]", outside)
-    assert shown.replace(r"\{", "").replace(r"\}", "").count("{") == shown.replace(r"\{", "").replace(r"\}", "").count(
-        "}"
-    )
+    assert shown.replace(r"\{", "").replace(r"\}", "").count("{") == shown.replace(r"\{", "").replace(r"\}", "").count("}")
     assert len(re.findall(r"(?<!\\)\$", shown)) % 2 == 0
 
 
@@ -320,12 +316,8 @@ def test_the_style_sheet_is_small() -> None:
     assert "@media print" in STYLE
 
 
-@pytest.mark.parametrize(
-    "make", [lambda r: r._repr_mimebundle_(), lambda r: r._repr_mimebundle_(include=["text/html"])]
-)
-def test_the_bundle_goes_through_the_views(
-    reports: dict[str, Report], make: Callable[[Report], dict[str, str]]
-) -> None:
+@pytest.mark.parametrize("make", [lambda r: r._repr_mimebundle_(), lambda r: r._repr_mimebundle_(include=["text/html"])])
+def test_the_bundle_goes_through_the_views(reports: dict[str, Report], make: Callable[[Report], dict[str, str]]) -> None:
     import dataclasses
 
     report = dataclasses.replace(reports["performance"], render=render)

@@ -59,9 +59,7 @@ def test_everything_drawn_lies_on_the_plate(figures: dict[str, Figure]) -> None:
 
 def test_a_nozzle_is_drawn_to_one_scale(figures: dict[str, Figure]) -> None:
     """Length 0.6 m and exit diameter 0.6 m of the sample must take the same number of pixels."""
-    outline = next(
-        path for path in drawn(figures["outline"]).iter(f"{SPACE}path") if (path.get("d") or "").endswith("Z")
-    )
+    outline = next(path for path in drawn(figures["outline"]).iter(f"{SPACE}path") if (path.get("d") or "").endswith("Z"))
     points = [(float(x), float(y)) for x, y in re.findall(r"[ML](-?[\d.]+) (-?[\d.]+)", outline.get("d") or "")]
     wide = max(x for x, _ in points) - min(x for x, _ in points)
     high = max(y for _, y in points) - min(y for _, y in points)
@@ -69,20 +67,12 @@ def test_a_nozzle_is_drawn_to_one_scale(figures: dict[str, Figure]) -> None:
 
 
 def test_a_gap_in_the_data_is_a_gap_in_the_line(figures: dict[str, Figure]) -> None:
-    solid = [
-        path.get("d") or ""
-        for path in drawn(figures["altitude"]).iter(f"{SPACE}path")
-        if path.get("stroke") == palette.ACCENT
-    ]
+    solid = [path.get("d") or "" for path in drawn(figures["altitude"]).iter(f"{SPACE}path") if path.get("stroke") == palette.ACCENT]
     assert any(data.count("M") == 2 for data in solid)
 
 
 def test_bars_are_as_long_as_their_values(figures: dict[str, Figure]) -> None:
-    rects = [
-        float(r.get("width") or 0)
-        for r in drawn(figures["composition"]).iter(f"{SPACE}rect")
-        if r.get("fill") != palette.PLATE
-    ]
+    rects = [float(r.get("width") or 0) for r in drawn(figures["composition"]).iter(f"{SPACE}rect") if r.get("fill") != palette.PLATE]
     assert rects[1] / rects[0] == pytest.approx(13.0 / 49.3, rel=0.01)
     assert "H₂O" in texts(drawn(figures["composition"]))
 
@@ -91,9 +81,7 @@ def test_axis_titles_tell_symbol_and_unit(figures: dict[str, Figure]) -> None:
     assert any(text.replace("\u200b", "") == "thrust Fvac [kN]" for text in texts(drawn(figures["altitude"])))
 
 
-@pytest.mark.parametrize(
-    ("low", "high"), [(0.0, 1.0), (376.0, 468.0), (-3.0, 7.0), (0.0, 1e-7), (2e6, 9e6), (5.0, 5.0)]
-)
+@pytest.mark.parametrize(("low", "high"), [(0.0, 1.0), (376.0, 468.0), (-3.0, 7.0), (0.0, 1e-7), (2e6, 9e6), (5.0, 5.0)])
 def test_ticks_are_round_inside_and_not_too_many(low: float, high: float) -> None:
     found = ticks(low, high)
     assert 1 <= len(found) <= 8
@@ -127,9 +115,7 @@ def test_text_on_the_plate_has_the_contrast_that_wcag_asks(colour: str) -> None:
     assert contrast(colour, palette.PLATE) >= 4.5
 
 
-@pytest.mark.parametrize(
-    "colour", [palette.INK_DARK, palette.QUIET_DARK, palette.ACCENT_DARK, palette.DOUBT_DARK, palette.BAR_DARK]
-)
+@pytest.mark.parametrize("colour", [palette.INK_DARK, palette.QUIET_DARK, palette.ACCENT_DARK, palette.DOUBT_DARK, palette.BAR_DARK])
 def test_text_on_dark_paper_has_the_contrast_that_wcag_asks(colour: str) -> None:
     assert contrast(colour, palette.PLATE_DARK) >= 4.5
 
@@ -146,11 +132,7 @@ DEFICIENCIES = {
 def test_series_are_told_apart_with_every_colour_deficiency(kind: str) -> None:
     """CIE 1976 difference of any two of the series above 10, about ten times what is just noticeable."""
     seen = [lab(colour, kind) for colour in palette.SERIES]
-    apart = [
-        sum((a - b) ** 2 for a, b in zip(one, other, strict=True)) ** 0.5
-        for k, one in enumerate(seen)
-        for other in seen[k + 1 :]
-    ]
+    apart = [sum((a - b) ** 2 for a, b in zip(one, other, strict=True)) ** 0.5 for k, one in enumerate(seen) for other in seen[k + 1 :]]
     assert min(apart) > 10.0
 
 
@@ -159,14 +141,9 @@ def lab(colour: str, kind: str) -> tuple[float, float, float]:
     parts = [int(colour[place : place + 2], 16) / 255 for place in (1, 3, 5)]
     linear = [part / 12.92 if part <= 0.04045 else ((part + 0.055) / 1.055) ** 2.4 for part in parts]
     if kind:
-        linear = [
-            min(1.0, max(0.0, sum(m * p for m, p in zip(line, linear, strict=True)))) for line in DEFICIENCIES[kind]
-        ]
+        linear = [min(1.0, max(0.0, sum(m * p for m, p in zip(line, linear, strict=True)))) for line in DEFICIENCIES[kind]]
     rows = ((0.4124, 0.3576, 0.1805), (0.2126, 0.7152, 0.0722), (0.0193, 0.1192, 0.9505))
-    xyz = [
-        sum(m * p for m, p in zip(line, linear, strict=True)) / white
-        for line, white in zip(rows, (0.9505, 1.0, 1.089), strict=True)
-    ]
+    xyz = [sum(m * p for m, p in zip(line, linear, strict=True)) / white for line, white in zip(rows, (0.9505, 1.0, 1.089), strict=True)]
     f = [value ** (1 / 3) if value > (6 / 29) ** 3 else value / (3 * (6 / 29) ** 2) + 4 / 29 for value in xyz]
     return 116 * f[1] - 16, 500 * (f[0] - f[1]), 200 * (f[1] - f[2])
 
