@@ -197,7 +197,7 @@ def facts(plan: StudyPlan) -> list[str]:
         when = "A coarser grid while the slider moves" if plan.unsettled else "A coarser grid than asked for"
         more = "when it is let go" if plan.unsettled else "by the code with more values"
         found.append(f"{when}: {_count(wanted)} designs {more}.")
-    found += [f"{show.sentence(note.replace('left 0 of them', 'left none'))}." for note in result.notes]
+    found += [f"{show.sentence(note)}." for note in result.notes]
     kinds = [link.kind for link in plan.target.chain()]
     if {"case", "chamber"} <= set(kinds) and not any("quick engine" in note or "one by one" in note for note in result.notes):
         found.append("Solved by the damped solver.")

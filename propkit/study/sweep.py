@@ -16,7 +16,7 @@ from propkit.study.batch import batch_names
 from propkit.study.evaluation import ChainFunction, result_name
 from propkit.study.executors import Failed, run_blocks
 from propkit.study.joint import check_seed
-from propkit.study.sweep_plan import Plan, read_plan, templates, unit_of, units_of
+from propkit.study.sweep_plan import QUICK, Plan, read_plan, templates, unit_of, units_of
 from propkit.study.sweep_result import StudyResult
 from propkit.study.sweep_work import ENOUGH, Blocks, Part, Work
 
@@ -255,7 +255,8 @@ class Study:
         if damped:
             notes.append(f"the quick engine does not serve {damped} designs (their recipe, or too wide a box): the damped solver took them")
         if counts[0]:
-            notes.append(f"the quick engine solved {counts[0]} designs and left {counts[1]} of them to the damped solver")
+            left = f"{counts[1]} of them" if counts[1] else "none"
+            notes.append(f"{QUICK} {counts[0]} designs and left {left} to the damped solver")
         return StudyResult(self, columns, done, reasons, tuple(notes), how.interrupted, how.seconds)
 
     def panel(self, result: str | None = None, *, limits: Mapping[str, tuple[Any, Any]] | None = None, minimum: bool = False) -> Any:

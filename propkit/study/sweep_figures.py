@@ -16,6 +16,8 @@ Array = npt.NDArray[np.float64]
 
 MOST_CURVES = 6
 """Curves of one figure; of more values that many are shown, evenly spread."""
+ROUNDING = 1e-7
+"""Relative range below which a result counts as one that does not vary."""
 
 
 def shown_axis(result: Any, name: str, system: UnitSystem) -> Axis:
@@ -91,8 +93,14 @@ def _kinds(result: Any, split: Any, rows: npt.NDArray[np.intp], system: UnitSyst
 
 
 def headline(result: Any) -> str:
-    """Return the result that is shown where none is named: the first of the object's headline."""
-    return str(next((name for name in result.plan.target.headline if name in result.results), result.results[0]))
+    """Return the result that is shown where none is named: the first of the object's headline that varies, else the first."""
+    named = [*(name for name in result.plan.target.headline if name in result.results), *result.results]
+    return str(next((name for name in named if _varies(result.values(name))), named[0]))
+
+
+def _varies(values: Any) -> bool:
+    finite = values[np.isfinite(values)]
+    return bool(len(finite)) and float(np.ptp(finite)) > ROUNDING * float(np.abs(finite).max())
 
 
 def _any_path(result: Any, name: str) -> str:

@@ -28,6 +28,8 @@ BLOCK = 2500
 """Designs in one block."""
 LISTED = 5
 """Bad values listed for one column."""
+QUICK = "the quick engine solved"
+"""How the note begins that says which engine solved a study."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -18,6 +18,7 @@ from propkit.model.doubts import Doubt
 from propkit.report import Report, UnitSystem
 from propkit.series import Figure
 from propkit.study.pareto import undominated
+from propkit.study.sweep_plan import QUICK
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -345,8 +346,8 @@ class StudyResult:
 
     @property
     def warnings(self) -> tuple[Doubt, ...]:
-        """What to doubt about the study as a whole."""
-        found = [Doubt(note, code="run", about="frame") for note in self.notes]
+        """What to doubt about the study as a whole; which engine solved it is no doubt, and stands among `notes`."""
+        found = [Doubt(note, code="run", about="frame") for note in self.notes if not note.startswith(QUICK)]
         if self._reasons:
             kinds: dict[str, int] = {}
             for text in self._reasons.values():

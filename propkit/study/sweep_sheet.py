@@ -9,7 +9,7 @@ import numpy.typing as npt
 
 from propkit import units
 from propkit.report import Column, Section, Table, UnitSystem
-from propkit.study.sweep_plan import option_text
+from propkit.study.sweep_plan import QUICK, option_text
 
 if TYPE_CHECKING:
     from propkit.study.sweep_result import StudyResult
@@ -23,7 +23,8 @@ SHOWN_COLUMNS = 5
 def axes_section(result: StudyResult, system: UnitSystem) -> Section:
     """Return what varies."""
     lines = tuple(_axis_text(result, column, system) for column in result.plan.plan.columns)
-    return Section("axes", "What varies", lines=lines)
+    said = tuple(f"{note[:1].upper()}{note[1:]}." for note in result.notes if note.startswith(QUICK))
+    return Section("axes", "What varies", lines=(*lines, *said))
 
 
 def _axis_text(result: StudyResult, column: Any, system: UnitSystem) -> str:

@@ -105,3 +105,13 @@ def test_a_record_of_a_study_verifies_and_a_changed_table_is_refused(found):
     forged = StudyResult(found.plan, columns, found._done, {}, (), False, 0.0)
     with pytest.raises(pk.RecordError, match="thrust"):
         forged.record(sample=3, seed=4)
+
+
+def test_the_figure_of_a_sheet_shows_a_result_that_varies():
+    case = pk.PropellantCase("LOX", "LCH4", mixture_ratio=3.4)
+    nozzle = pk.Nozzle.sized_for(pk.Chamber(case, pressure="7 MPa"), thrust="80 kN", ambient="vacuum", area_ratio=20)
+    result = pk.Study(pk.Performance(nozzle, ambient="vacuum"), {"chamber.pressure": [6e6, 7e6, 8e6]}).run(progress=False)
+    assert np.ptp(result.frame["thrust"]) < 1e-3
+    (figure,) = result.figures()
+    assert figure.y.label == "specific impulse"
+    assert np.ptp(figure.layers[0].y.values) > 0.01
