@@ -228,12 +228,15 @@ def _mark(mark: Mark, x: Scale, y: Scale, inked: list[tuple[float, float]]) -> t
     """Return a marked point with its label on the side where least is drawn, and points of the label."""
     at, level = x.at(mark.x), y.at(mark.y)
     wide = width_of(mark.label, 10.5)
+    inside = max(x.start, min(at - 0.5 * wide, x.end - wide))
     best, score = (at + 8, level - 7), math.inf
     for left, base in (
         (at + 8, level - 7),
         (at + 8, level + 15),
         (at - 8 - wide, level - 7),
         (at - 8 - wide, level + 15),
+        (inside, level - 9),
+        (inside, level + 17),
     ):
         outside = 1000 * (left < x.start - 30 or left + wide > x.end + 12 or base - 9 < y.end - 4 or base > y.start - 2)
         hits = outside + _hits(left, base, wide, inked)

@@ -167,3 +167,14 @@ def test_labels_of_dimensions_never_overlap(at: tuple[float, float]) -> None:
     left, right = (float(t.get("x") or 0) for t in root.iter(f"{SPACE}text") if "180 mm" in "".join(t.itertext()))
     assert right - left >= width_of("throat 180 mm", 10)
     assert right + width_of("exit 180 mm", 10) <= svg.WIDTH - 5
+
+
+@pytest.mark.parametrize("x", [0.0, 4.0, 9.5, 10.0])
+def test_a_long_label_of_a_mark_stays_inside_the_drawing(x: float) -> None:
+    words = "thrust, chamber pressure and thrust coefficient of the model"
+    line = Line(Series("x", (0.0, 10.0), "m"), Series("y", (1.0, 2.0), "m"))
+    root = drawn(Figure("routes", "t", "a", Axis("x", "m"), Axis("y", "m"), (line, Mark(x, 1.5, words))))
+    (label,) = (t for t in root.iter(f"{SPACE}text") if words in "".join(t.itertext()))
+    left = float(label.get("x") or 0)
+    assert left >= 0.0
+    assert left + width_of(words, 10.5) <= svg.WIDTH
