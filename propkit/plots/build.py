@@ -139,7 +139,7 @@ def _extent(layer: Any, axis: str) -> list[float]:
         return [layer.x if axis == "x" else layer.y]
     if not isinstance(layer, Rule):
         return []
-    return [layer.at] if layer.axis == axis else []
+    return [layer.at] if layer.axis == axis and layer.at == layer.at else []
 
 
 def _room_for_texts(bars: Bars) -> float:

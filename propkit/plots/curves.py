@@ -221,23 +221,25 @@ def altitude_figure(performance: Any, name: str, system: UnitSystem) -> Figure:
     """Return a result of the performance against altitude, with the ambient condition and predicted separation marked.
 
     The line is dashed below the lowest altitude at which any criterion predicts separation at the lip: the values there are
-    the full-flowing ones.
+    the full-flowing ones. What is not predicted stays among the layers as NaN: a live plot then changes its data only.
     """
     heights = np.linspace(0.0, HIGHEST_ALTITUDE, 81)
     y = shown(name, [*_delivered(performance, atmosphere.pressure(heights), name), performance.si(name)], system)
     curve, here = Series(y.label, y.values[:-1], y.unit, y.symbol), y.values[-1]
     scale, unit = (1e3, "km") if system == "SI" else (304.8, "kft")
-    limits = {criterion: height for criterion, height in separation_altitudes(performance).items() if height > LOWEST_SHOWN}
+    predicted = separation_altitudes(performance)
+    limits = {criterion: height for criterion, height in predicted.items() if height > LOWEST_SHOWN}
     highest = max(limits.values(), default=0.0)
     full = heights >= highest
-    layers: list[Any] = []
     x = tuple((heights / scale).tolist())
+    below = np.where(full, np.nan, curve.values)
     if not full.all():
-        share = np.where(full, np.nan, curve.values)
-        share[min(int(full.argmax()), len(share) - 1)] = curve.values[int(full.argmax())]
-        layers.append(_line(x, share, curve, unit, "dashed", "full-flowing value, below a limit of separation"))
-    layers.append(_line(x, np.where(full, curve.values, np.nan), curve, unit, "solid", curve.label))
-    layers += [Rule("x", height / scale, f"{criterion} limit") for criterion, height in limits.items()]
+        below[int(full.argmax())] = curve.values[int(full.argmax())]
+    layers: list[Any] = [
+        _line(x, below, curve, unit, "dashed", "full-flowing value, below a limit of separation"),
+        _line(x, np.where(full, curve.values, np.nan), curve, unit, "solid", curve.label),
+        *(Rule("x", limits.get(criterion, np.nan) / scale, f"{criterion} limit") for criterion in predicted),
+    ]
     ambient = performance._values["ambient"]
     at = _altitude(ambient)
     layers.append(Mark(at / scale, here, ambient.text))

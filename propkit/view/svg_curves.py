@@ -53,9 +53,9 @@ def curves(figure: Figure, width: int, height: int, top: int) -> tuple[str, int]
     """Return regions, lines, rules and marks in axes, and the height of the drawing."""
     lines = [layer for layer in figure.layers if isinstance(layer, Line)]
     marks = [layer for layer in figure.layers if isinstance(layer, Mark)]
-    rules = [layer for layer in figure.layers if isinstance(layer, Rule)]
+    rules = [layer for layer in figure.layers if isinstance(layer, Rule) and math.isfinite(layer.at)]
     regions = [layer for layer in figure.layers if isinstance(layer, Regions)]
-    named = [line for line in lines if line.label]
+    named = [line for line in lines if line.label and any(map(math.isfinite, line.y.values))]
     legend, rows = _legend([*(named if len(named) > 1 else []), *(layer for layer in regions if layer.label)], width, top + 6)
     height += 13 * rows
     xs = [x for line in lines for x in line.x.values]
