@@ -236,7 +236,7 @@ def altitude_figure(performance: Any, name: str, system: UnitSystem) -> Figure:
     if not full.all():
         below[int(full.argmax())] = curve.values[int(full.argmax())]
     layers: list[Any] = [
-        _line(x, below, curve, unit, "dashed", "full-flowing value, below a limit of separation"),
+        _line(x, below, curve, unit, "dashed", "below a limit of separation"),
         _line(x, np.where(full, curve.values, np.nan), curve, unit, "solid", curve.label),
         *(Rule("x", limits.get(criterion, np.nan) / scale, f"{criterion} limit") for criterion in predicted),
     ]
@@ -298,8 +298,8 @@ def _separation_altitudes(performance: Any) -> dict[str, float]:
     reservoir = performance.nozzle.chamber.si("stagnation_pressure")
     limits = {
         "Summerfield": separation.summerfield_ambient(pressure),
-        "Kalt and Badal": separation.kalt_badal_ambient(pressure, reservoir),
         "Schmucker": separation.schmucker_ambient(pressure, mach),
+        "Kalt and Badal": separation.kalt_badal_ambient(pressure, reservoir),
     }
     ground, top = (float(atmosphere.pressure(height)) for height in (0.0, HIGHEST_ALTITUDE))
     inside = np.clip([float(limit) for limit in limits.values()], top, ground)
