@@ -247,10 +247,15 @@ function changeTexts(element, before, markup) {
   return true;
 }
 
+// What is folded away is written when it is unfolded.
+function fillFold(box, body, markup) {
+  if (!box.__fill) box.addEventListener("toggle", () => box.open && box.__fill());
+  box.__fill = () => setMarkup(body, markup());
+  if (box.open) box.__fill();
+}
+
 function escapeText(text) {
-  const box = document.createElement("span");
-  box.textContent = text;
-  return box.innerHTML;
+  return String(text).replaceAll("&", "&amp;").replaceAll("<", "&lt;").replaceAll(">", "&gt;");
 }
 
 function quoted(text) {
@@ -429,8 +434,8 @@ class PanelView {
     this.updateActions(shown.actions ?? []);
     this.updateTabs(shown.figures);
     this.figures.hidden = Boolean(shown.figures.error);
-    this.updateFold("pins", compared ? pinsMarkup(shown.pins) : "");
-    this.updateFold("stations", shown.stations ? stationsMarkup(shown.stations) : "");
+    this.updateFold("pins", compared, () => pinsMarkup(shown.pins));
+    this.updateFold("stations", Boolean(shown.stations), () => stationsMarkup(shown.stations));
     this.updateAbove(shown.above, compared, shown.pins.baseline);
     setText(this.code, shown.code);
     this.state();
@@ -508,10 +513,10 @@ class PanelView {
     this.actions.replaceChildren(...actions.map(([what, label, title]) => h("button", { type: "button", class: "pk-button", title, onclick: () => this.ask({ do: "press", what }) }, label)));
   }
 
-  updateFold(key, markup) {
+  updateFold(key, there, markup) {
     const { box, body } = this.details[key];
-    box.hidden = !markup;
-    setMarkup(body, markup);
+    box.hidden = !there;
+    fillFold(box, body, there ? markup : () => "");
   }
 
   updateAbove(above, compared, baseline) {
@@ -523,7 +528,7 @@ class PanelView {
         this.above.append(box);
       }
       setText(box.firstChild, `${link.title} results`);
-      setMarkup(box.lastChild, tableMarkup(link.rows, compared && !link.plain, baseline));
+      fillFold(box, box.lastChild, () => tableMarkup(link.rows, compared && !link.plain, baseline));
     });
   }
 
